@@ -1,0 +1,1 @@
+"""Numbers: op-amps, supplies, signals, the linear solution, loops, corners, stages."""

@@ -1,0 +1,340 @@
+"""What the analysis hands to the rules: rails, packages, stages and the design as a whole.
+
+Plain frozen values; nothing here computes. Volts are relative to ground, currents positive,
+everything SI. A number that was not worked out is None, and `Stage.unknown` says why.
+"""
+
+from collections.abc import Mapping
+from typing import Literal
+
+import msgspec
+
+from railguard.circuit.model import Circuit
+from railguard.devices.model import Device
+from railguard.location import Location
+from railguard.notices import Problem, Remark
+from railguard.settings.model import Settings
+from railguard.words import Basis, Kind, Use
+
+
+class Range(msgspec.Struct, frozen=True):
+    """The lowest and the highest value of a quantity."""
+
+    low: float | None = None
+    high: float | None = None
+
+    @property
+    def span(self) -> float | None:
+        """Width of the range."""
+        return None if self.low is None or self.high is None else self.high - self.low
+
+
+class Pair(msgspec.Struct, frozen=True):
+    """A demand and the limit it meets, at one corner of the tolerances."""
+
+    demand: float
+    limit: float
+
+
+class Bound(msgspec.Struct, frozen=True, kw_only=True):
+    """One side of one quantity, and everything that stands against it.
+
+    upper        True: demand must stay below the limits; False: above them
+    demand       nominal
+    level        the DC level alone, nominal
+    span         of the whole demanded range (both sides)
+    typical      the typical limit
+    guaranteed   what the data sheet guarantees
+    absolute     the rail itself, or an absolute maximum
+    stated       demand and guaranteed limit at the worst corner of tolerances the user stated
+    default      the same with default tolerances, offset and bias added
+    typical_basis, guaranteed_basis   where each limit came from
+    demand_basis  where the demand came from, the least trusted of its parts
+    culprits     designators that move the corner most, worst first
+    condition    the load, current or supply the limit was taken at, in words
+    """
+
+    upper: bool
+    demand: float | None = None
+    level: float | None = None
+    span: float | None = None
+    typical: float | None = None
+    guaranteed: float | None = None
+    absolute: float | None = None
+    stated: Pair | None = None
+    default: Pair | None = None
+    typical_basis: Basis = "catalogue"
+    guaranteed_basis: Basis = "catalogue"
+    demand_basis: Basis = "netlist"
+    culprits: tuple[str, ...] = ()
+    condition: str = ""
+
+
+class Capacitor(msgspec.Struct, frozen=True):
+    """A capacitor between a rail and another net.
+
+    farads   None where its value is unknown
+    to       the net of its other end
+    behind   designator of a series element between it and the supply pins, or ""
+    """
+
+    designator: str
+    farads: float | None
+    to: str
+    behind: str = ""
+    location: Location | None = None
+
+
+class Rail(msgspec.Struct, frozen=True, kw_only=True):
+    """A net that feeds supply pins.
+
+    sign        "positive" or "negative": the pins it feeds
+    level       volts; None: nothing states it
+    worst       with the rail's tolerance
+    basis       where the level came from
+    origin      in words: `VP`, `the net's name`, `railguard.toml`
+    tolerance   share, and whether the user stated it
+    named       the level its name says, where it says one
+    returns     nets that count as its return: ground, or the opposite rail where no ground is used
+    decoupling  capacitors from the rail to a return
+    across      capacitors from the rail to another rail
+    packages    designators of packages fed
+    ideal       True where an ideal source holds it directly
+    series      designators between its source and its pins
+    """
+
+    net: str
+    sign: Literal["positive", "negative"]
+    level: float | None = None
+    worst: Range = Range()
+    basis: Basis = "netlist"
+    origin: str = ""
+    tolerance: float = 0.0
+    tolerance_stated: bool = False
+    named: float | None = None
+    returns: tuple[str, ...] = ("0",)
+    decoupling: tuple[Capacitor, ...] = ()
+    across: tuple[Capacitor, ...] = ()
+    upstream: tuple[Capacitor, ...] = ()
+    packages: tuple[str, ...] = ()
+    ideal: bool = False
+    series: tuple[str, ...] = ()
+    location: Location | None = None
+
+
+class Package(msgspec.Struct, frozen=True, kw_only=True):
+    """What is soldered: its channels and the nets of its supply pins."""
+
+    designator: str
+    device: str
+    family: str
+    channels: tuple[str, ...]
+    positive: tuple[str, ...]
+    negative: tuple[str, ...]
+    size: int | None = None
+    location: Location | None = None
+
+
+class Supply(msgspec.Struct, frozen=True, kw_only=True):
+    """The rails of one stage, at its pins.
+
+    total_low, total_high  total supply with the rails' tolerances
+    """
+
+    positive: float | None = None
+    negative: float | None = None
+    positive_net: str = ""
+    negative_net: str = ""
+    basis: Basis = "netlist"
+    positive_worst: Range = Range()
+    negative_worst: Range = Range()
+    tolerance_stated: bool = False
+    pins: bool = True
+
+    @property
+    def total(self) -> float | None:
+        """V+ minus V-."""
+        if self.positive is None or self.negative is None:
+            return None
+        return self.positive - self.negative
+
+
+class Output(msgspec.Struct, frozen=True, kw_only=True):
+    """The output's range. `level` is its DC level; `slew` the steepest demanded dv/dt, V/s."""
+
+    net: str
+    level: float | None = None
+    demand: Range = Range()
+    worst: Range = Range()
+    available: Range = Range()
+    guaranteed: Range = Range()
+    high: Bound = Bound(upper=True)
+    low: Bound = Bound(upper=False)
+    frequency: float | None = None
+    slew: float | None = None
+
+
+class Current(msgspec.Struct, frozen=True, kw_only=True):
+    """The output's current. `load` the resistance it sees at DC, `into` the heaviest element."""
+
+    demand_source: float | None = None
+    demand_sink: float | None = None
+    worst_source: float | None = None
+    worst_sink: float | None = None
+    available_source: float | None = None
+    available_sink: float | None = None
+    source: Bound = Bound(upper=True)
+    sink: Bound = Bound(upper=True)
+    short_circuit: float | None = None
+    load: float | None = None
+    load_capacitance: float | None = None
+    into: str = ""
+
+
+class Pin(msgspec.Struct, frozen=True, kw_only=True):
+    """One input pin.
+
+    state       "held": reaches a defined potential at DC; "open": leaves what can be seen;
+                "floating": nothing at DC; "held-by-own-output": only through its own feedback
+    resistance  seen from the pin at DC, ohm, own output counted as a source
+    level       DC level, V
+    path        designators of the DC path, or what the net hangs on
+    """
+
+    net: str
+    state: Literal["held", "open", "floating", "held-by-own-output"] = "held"
+    resistance: float | None = None
+    level: float | None = None
+    demand: Range = Range()
+    path: tuple[str, ...] = ()
+
+
+class Inputs(msgspec.Struct, frozen=True, kw_only=True):
+    """Both inputs together: the common-mode range asked for and allowed."""
+
+    plus: Pin
+    minus: Pin
+    demand: Range = Range()
+    worst: Range = Range()
+    available: Range = Range()
+    guaranteed: Range = Range()
+    high: Bound = Bound(upper=True)
+    low: Bound = Bound(upper=False)
+    differential: float | None = None
+
+
+class Feedback(msgspec.Struct, frozen=True, kw_only=True):
+    """The network between output and inverting input.
+
+    elements     designators on the way from the output to the inverting input
+    resistance   of that way at DC, ohm; 0 for a wire; None: no DC way
+    seen         resistance at the inverting input to AC ground, output counted as ground, ohm
+    load         resistance the network is to the output, ohm
+    capacitance  across the feedback resistance, F
+    current      peak current into the network, A
+    """
+
+    elements: tuple[str, ...] = ()
+    resistance: float | None = None
+    seen: float | None = None
+    load: float | None = None
+    capacitance: float | None = None
+    current: float | None = None
+
+
+class Loop(msgspec.Struct, frozen=True, kw_only=True):
+    """The stage's own loop, all other stages active.
+
+    dc          sign of the feedback at DC
+    beta_dc     feedback factor at DC, output to (inverting minus non-inverting input)
+    noise_gain  |1/beta| at the top of the stated band, or the largest in band
+    crossover   hertz where |A beta| is one: the bandwidth
+    band        top of the stated band, hertz
+    loop_gain   |A beta| at the top of the band
+    points      (hertz, |1/beta|, |A|, phase of A beta in degrees) for drawing
+    holds       designators of other stages that hold the DC level where its own loop does not
+    """
+
+    dc: Literal["negative", "positive", "open"] | None = None
+    beta_dc: float | None = None
+    beta_plus: float | None = None
+    noise_gain: float | None = None
+    noise_gain_dc: float | None = None
+    noise_gain_crossover: float | None = None
+    crossover: float | None = None
+    phase_margin: float | None = None
+    band: float | None = None
+    loop_gain: float | None = None
+    points: tuple[tuple[float, float, float, float], ...] = ()
+    holds: tuple[str, ...] = ()
+    capacitor_across_plus: str = ""
+    thresholds: Range = Range()
+    feeds_linear: bool = False
+
+
+class Allowed(msgspec.Struct, frozen=True):
+    """The largest input that keeps every stage inside its ranges, and what limits it."""
+
+    net: str
+    low: float
+    high: float
+    limited_by: str
+
+
+class Unknown(msgspec.Struct, frozen=True):
+    """Why a part of a stage was not worked out, and what the user can state to get it."""
+
+    why: str
+    add: str
+
+
+Part = Literal["device", "supply", "output", "current", "input", "bias", "loop", "dissipation"]
+
+
+class Stage(msgspec.Struct, frozen=True, kw_only=True):
+    """One op-amp channel in its surroundings.
+
+    designator   as in the netlist, hierarchical: `XCH1.XU2`
+    schematic    as on the schematic: `U2`
+    device       as written: `TL072CP`
+    family       the catalogue's family, or None
+    gain         from each input net: (net, V/V at DC or in band)
+    after        designators of stages whose output reaches this one's inputs
+    unknown      by part: why it was not worked out
+    """
+
+    designator: str
+    schematic: str
+    device: str
+    family: Device | None
+    package: str
+    topology: str
+    use: Use = "linear"
+    use_stated: bool = False
+    supply: Supply = Supply()
+    output: Output
+    current: Current = Current()
+    inputs: Inputs
+    loop: Loop = Loop()
+    feedback: Feedback = Feedback()
+    allowed: Allowed | None = None
+    dissipation: float | None = None
+    junction: float | None = None
+    gain: tuple[tuple[str, float], ...] = ()
+    after: tuple[str, ...] = ()
+    unknown: Mapping[Part, Unknown] = {}
+    location: Location | None = None
+
+
+class Design(msgspec.Struct, frozen=True, kw_only=True):
+    """Everything the rules may look at."""
+
+    circuit: Circuit
+    settings: Settings
+    kind: Kind
+    kind_reason: str
+    rails: tuple[Rail, ...]
+    packages: tuple[Package, ...]
+    stages: tuple[Stage, ...]
+    problems: tuple[Problem, ...] = ()
+    remarks: tuple[Remark, ...] = ()

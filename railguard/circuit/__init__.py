@@ -1,0 +1,1 @@
+"""Structure: expressions, parameters, flattening, elements, sources, nets."""

@@ -1,0 +1,1 @@
+"""People: one file per command, and the command line itself."""

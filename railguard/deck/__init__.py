@@ -1,0 +1,1 @@
+"""Text in: files, encodings, includes, logical lines, cards."""

@@ -1,0 +1,1 @@
+"""Knowledge: the op-amp catalogue, matching of names, pin-outs. Knows no circuit."""

@@ -1,0 +1,1 @@
+"""ngspice: writing cards out, running it, reading what it worked out."""

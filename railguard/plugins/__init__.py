@@ -1,0 +1,1 @@
+"""Hosts: pytest and PySpice."""

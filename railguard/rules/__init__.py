@@ -1,0 +1,1 @@
+"""Judgement: one family each, the rule's signature, the registry, waivers."""
