@@ -3,6 +3,7 @@
 import msgspec
 
 from railguard.location import Location
+from railguard.words import Severity
 
 
 class Problem(msgspec.Struct, frozen=True):
@@ -16,6 +17,7 @@ class Problem(msgspec.Struct, frozen=True):
     spice_value   the value as SPICE takes it (SI), where the problem is a value
     likely_value  the value its author most likely meant (SI); the analysis goes on with this one
     unit          unit of both
+    severity      where the reader knows better than the rule's own severity
     """
 
     rule: str
@@ -27,6 +29,7 @@ class Problem(msgspec.Struct, frozen=True):
     spice_value: float | None = None
     likely_value: float | None = None
     unit: str = ""
+    severity: Severity | None = None
 
 
 class Remark(msgspec.Struct, frozen=True):

@@ -45,7 +45,7 @@ class Bound(msgspec.Struct, frozen=True, kw_only=True):
     span         of the whole demanded range (both sides)
     typical      the typical limit
     guaranteed   what the data sheet guarantees
-    absolute     the rail itself, or an absolute maximum
+    absolute     the rail itself, or an absolute maximum; `absolute_basis` where it came from
     stated       demand and guaranteed limit at the worst corner of tolerances the user stated
     default      the same with default tolerances, offset and bias added
     typical_basis, guaranteed_basis   where each limit came from
@@ -65,6 +65,7 @@ class Bound(msgspec.Struct, frozen=True, kw_only=True):
     default: Pair | None = None
     typical_basis: Basis = "catalogue"
     guaranteed_basis: Basis = "catalogue"
+    absolute_basis: Basis = "netlist"
     demand_basis: Basis = "netlist"
     culprits: tuple[str, ...] = ()
     condition: str = ""
@@ -76,12 +77,16 @@ class Capacitor(msgspec.Struct, frozen=True):
     farads   None where its value is unknown
     to       the net of its other end
     behind   designator of a series element between it and the supply pins, or ""
+    rating   V, where the card states one
+    reversed  True where the card states a polarity and the level is the other way round
     """
 
     designator: str
     farads: float | None
     to: str
     behind: str = ""
+    rating: float | None = None
+    reversed: bool = False
     location: Location | None = None
 
 
@@ -101,6 +106,9 @@ class Rail(msgspec.Struct, frozen=True, kw_only=True):
     packages    designators of packages fed
     ideal       True where an ideal source holds it directly
     series      designators between its source and its pins
+    feed        "stated": a level is known; "outside": the net leaves what can be seen; "nothing":
+                nothing on it could give it a level
+    drop        V lost in `series` at the current its pins draw
     """
 
     net: str
@@ -119,6 +127,8 @@ class Rail(msgspec.Struct, frozen=True, kw_only=True):
     packages: tuple[str, ...] = ()
     ideal: bool = False
     series: tuple[str, ...] = ()
+    feed: Literal["stated", "outside", "nothing"] = "outside"
+    drop: float | None = None
     location: Location | None = None
 
 
@@ -160,7 +170,10 @@ class Supply(msgspec.Struct, frozen=True, kw_only=True):
 
 
 class Output(msgspec.Struct, frozen=True, kw_only=True):
-    """The output's range. `level` is its DC level; `slew` the steepest demanded dv/dt, V/s."""
+    """The output's range. `level` is its DC level; `slew` the steepest demanded dv/dt, V/s.
+
+    offset  worst DC error at the output from offset and bias of this and all stages before, V
+    """
 
     net: str
     level: float | None = None
@@ -172,6 +185,7 @@ class Output(msgspec.Struct, frozen=True, kw_only=True):
     low: Bound = Bound(upper=False)
     frequency: float | None = None
     slew: float | None = None
+    offset: float | None = None
 
 
 class Current(msgspec.Struct, frozen=True, kw_only=True):
@@ -191,6 +205,18 @@ class Current(msgspec.Struct, frozen=True, kw_only=True):
     into: str = ""
 
 
+class Divider(msgspec.Struct, frozen=True):
+    """Resistors from a rail that set a pin's level.
+
+    resistance  of the tap, ohm
+    bypass      capacitance from the tap to a return, F; 0: none
+    """
+
+    elements: tuple[str, ...]
+    resistance: float
+    bypass: float = 0.0
+
+
 class Pin(msgspec.Struct, frozen=True, kw_only=True):
     """One input pin.
 
@@ -199,6 +225,7 @@ class Pin(msgspec.Struct, frozen=True, kw_only=True):
     resistance  seen from the pin at DC, ohm, own output counted as a source
     level       DC level, V
     path        designators of the DC path, or what the net hangs on
+    series      least resistance between the pin and what drives it, ohm
     """
 
     net: str
@@ -207,6 +234,8 @@ class Pin(msgspec.Struct, frozen=True, kw_only=True):
     level: float | None = None
     demand: Range = Range()
     path: tuple[str, ...] = ()
+    series: float | None = None
+    divider: Divider | None = None
 
 
 class Inputs(msgspec.Struct, frozen=True, kw_only=True):
@@ -253,6 +282,8 @@ class Loop(msgspec.Struct, frozen=True, kw_only=True):
     loop_gain   |A beta| at the top of the band
     points      (hertz, |1/beta|, |A|, phase of A beta in degrees) for drawing
     holds       designators of other stages that hold the DC level where its own loop does not
+    thresholds  input volts at which a stage with positive feedback switches
+    drive       the stated signal at that input, in the terms of `thresholds`
     """
 
     dc: Literal["negative", "positive", "open"] | None = None
@@ -269,6 +300,7 @@ class Loop(msgspec.Struct, frozen=True, kw_only=True):
     holds: tuple[str, ...] = ()
     capacitor_across_plus: str = ""
     thresholds: Range = Range()
+    drive: Range = Range()
     feeds_linear: bool = False
 
 
@@ -288,6 +320,15 @@ class Unknown(msgspec.Struct, frozen=True):
     add: str
 
 
+class Filter(msgspec.Struct, frozen=True):
+    """A recognised filter stage: hertz, quality factor, gain in its pass band."""
+
+    kind: str
+    frequency: float
+    q: float
+    gain: float = 1.0
+
+
 Part = Literal["device", "supply", "output", "current", "input", "bias", "loop", "dissipation"]
 
 
@@ -300,6 +341,11 @@ class Stage(msgspec.Struct, frozen=True, kw_only=True):
     family       the catalogue's family, or None
     gain         from each input net: (net, V/V at DC or in band)
     after        designators of stages whose output reaches this one's inputs
+    generic      True for an amplifier without a type: OPAMP
+    ac_coupled   True where every signal reaches it through a capacitor
+    band         hertz, of the stated signals that reach it; low 0: DC counts
+    high_pass    hertz, the corner that coupling capacitors give it
+    junction     degrees Celsius at the hottest ambient; `dissipation` W; both of the whole package
     unknown      by part: why it was not worked out
     """
 
@@ -322,6 +368,11 @@ class Stage(msgspec.Struct, frozen=True, kw_only=True):
     junction: float | None = None
     gain: tuple[tuple[str, float], ...] = ()
     after: tuple[str, ...] = ()
+    generic: bool = False
+    ac_coupled: bool = False
+    band: Range = Range()
+    high_pass: float | None = None
+    filter: Filter | None = None
     unknown: Mapping[Part, Unknown] = {}
     location: Location | None = None
 
