@@ -63,7 +63,8 @@ class Load(msgspec.Struct, frozen=True, kw_only=True):
 class Tolerances(msgspec.Struct, frozen=True):
     """Shares by element class; None: the default of `analysis.corners`.
 
-    rules  narrower statements, first match wins: (designator pattern, share)
+    rules  narrower statements, first match wins: (designator pattern, share); `*` and `?` stand
+           for any letters and for one, case does not count
     """
 
     resistor: float | None = None
@@ -79,7 +80,8 @@ class Waiver(msgspec.Struct, frozen=True, kw_only=True):
     rule        its name
     designator  as in the netlist or the schematic; "" : any
     net         "" : any
-    file        a glob on the deck's path relative to the settings file; "" : any
+    file        a glob on the deck's path relative to the settings file; "" : any. `*` stays
+                within a folder, `**` is any number of folders
     accepted    the margin accepted, in the finding's unit; a worse one is a finding again
     until       last day it holds
     """
@@ -95,12 +97,27 @@ class Waiver(msgspec.Struct, frozen=True, kw_only=True):
     location: Location | None = None
 
 
+class Named(msgspec.Struct, frozen=True):
+    """A rule a statement names, checked by `settings.names` once the rules are known.
+
+    limit  the limit of it that is set, or ""
+    unit   the unit written with the limit's value, or ""
+    """
+
+    rule: str
+    limit: str = ""
+    unit: str = ""
+    location: Location | None = None
+
+
 class Settings(msgspec.Struct, frozen=True, kw_only=True):
     """Everything stated, from every reader, in one value.
 
     file        the railguard.toml used, or ""
     hold_at     the level that stops a commit or a build
     kind        "board" or "bench"; "" : worked out
+    nets, uses, pins  by the name as its author spelt it: compare without regard to case
+    pins        pin names in the order of the card: `in+ in- v+ v- out`, `1out 1in- 1in+ ...`
     ambient     lowest and highest, degrees Celsius; None: 25 throughout
     limits      rule name -> limit name -> value
     severities  rule name -> severity used instead of the worked-out one
@@ -108,6 +125,7 @@ class Settings(msgspec.Struct, frozen=True, kw_only=True):
     devices     device tables of the user's own, as read from TOML, with their line
     as_of       the day waivers are judged on
     require     families that count as a hold where they stay open
+    named       every rule the file names, with its place
     """
 
     file: str = ""
@@ -127,3 +145,4 @@ class Settings(msgspec.Struct, frozen=True, kw_only=True):
     devices: tuple[tuple[Mapping[str, object], Location], ...] = ()
     as_of: dt.date = dt.date(1970, 1, 1)
     require: tuple[str, ...] = ()
+    named: tuple[Named, ...] = ()
