@@ -1,0 +1,128 @@
+"""What an amplifier can do: swing, current and input range from rails, data sheet and load.
+
+Swing is a function of output current, and the current at the end of the swing is a function of
+the swing, so the two are found together. A family without figures is judged by common practice:
+rails one to two volts beyond the signal, a few milliamperes, and says so in its basis.
+"""
+
+from collections.abc import Callable
+
+import msgspec
+
+from railguard.devices.model import Device, Figure, SwingPoint
+from railguard.devices.swing import drop
+from railguard.words import Basis
+
+PRACTICE_DROP = (1.0, 2.0)
+"""V from each rail, typical and worst, for a device nobody lists: common practice, no source."""
+PRACTICE_DROP_RAIL_TO_RAIL = (0.1, 0.2)
+"""The same for a device its maker calls rail-to-rail, no swing listed: common practice."""
+PRACTICE_CURRENT = (5e-3, 2e-3)
+"""A, typical and safe, for a small general-purpose op-amp: common practice, no source."""
+CARRIED_SUPPLY = 0.05
+"""A guaranteed figure counts as carried when the supply differs by more than this share."""
+_ROUNDS = 12
+
+
+class Reach(msgspec.Struct, frozen=True):
+    """How far a quantity can go on one side: typical and guaranteed, and where that is from."""
+
+    typical: float | None
+    guaranteed: float | None
+    typical_basis: Basis
+    guaranteed_basis: Basis
+    condition: str = ""
+
+
+def output_reach(
+    device: Device | None,
+    positive: float,
+    negative: float,
+    upper: bool,
+    current_at: Callable[[float], float],
+) -> Reach:
+    """Return how far the output goes towards one rail.
+
+    current_at  amperes the output must source (upper) or sink at a given output voltage; below
+                zero counts as no load
+    """
+    points = () if device is None else (device.swing_high if upper else device.swing_low)
+    rail = positive if upper else negative
+    sign = -1.0 if upper else 1.0
+    total = positive - negative
+    if device is None or not points:
+        rail_to_rail = device is not None and device.rail_to_rail_output
+        near, far = PRACTICE_DROP_RAIL_TO_RAIL if rail_to_rail else PRACTICE_DROP
+        return Reach(
+            rail + sign * near, rail + sign * far, "practice", "practice", "common practice"
+        )
+
+    def settle(which: int) -> tuple[float | None, Basis, str]:
+        level = rail
+        found: tuple[float | None, Basis, str] = (None, "memory", "")
+        for turn in range(_ROUNDS):
+            amps = max(current_at(level), 0.0)
+            typical, typical_basis, guaranteed, guaranteed_basis, condition = drop(
+                points, amps, total
+            )
+            volts = (typical, guaranteed)[which]
+            if volts is None:
+                return None, "memory", condition
+            new = rail + sign * min(volts, total)
+            found = new, (typical_basis, guaranteed_basis)[which], condition
+            if abs(new - level) < 1e-6 * max(total, 1.0):
+                break
+            level = (new + level) / 2 if turn else new
+        return found
+
+    typical, typical_basis, condition = settle(0)
+    guaranteed, guaranteed_basis, guaranteed_condition = settle(1)
+    if guaranteed is not None and carried(points, total):
+        guaranteed_basis = "memory"
+    return Reach(
+        typical, guaranteed, typical_basis, guaranteed_basis, guaranteed_condition or condition
+    )
+
+
+def carried(points: tuple[SwingPoint, ...], total: float) -> bool:
+    """Tell whether the swing was tested at a supply other than this one."""
+    supplies = [p.supply for p in points if p.supply]
+    return bool(supplies) and all(abs(s - total) > CARRIED_SUPPLY * s for s in supplies)
+
+
+def current_reach(device: Device | None, source: bool) -> Reach:
+    """Return the output current a device gives: typical, and known to be given."""
+    if device is None:
+        return _practice_current()
+    figure = device.source_current if source else device.sink_current
+    short = device.short_circuit
+    typical, basis = figure.typical, figure.typical_basis
+    if typical is None and short.typical is not None:
+        # Between what a test load draws and the short-circuit current nothing is listed.
+        typical, basis = short.typical, short.typical_basis
+    guaranteed, guaranteed_basis = figure.guaranteed, figure.guaranteed_basis
+    if guaranteed is None and short.guaranteed is not None:
+        guaranteed, guaranteed_basis = short.guaranteed, short.guaranteed_basis
+    if typical is None and guaranteed is None:
+        return _practice_current()
+    if typical is not None and guaranteed is not None and typical < guaranteed:
+        typical, basis = guaranteed, guaranteed_basis
+    return Reach(typical, guaranteed, basis, guaranteed_basis, figure.condition)
+
+
+def _practice_current() -> Reach:
+    typical, safe = PRACTICE_CURRENT
+    return Reach(typical, safe, "practice", "practice", "common practice")
+
+
+def input_reach(device: Device | None, positive: float, negative: float, upper: bool) -> Reach:
+    """Return how far the inputs may go towards one rail; all None for an unknown device."""
+    if device is None:
+        return Reach(None, None, "practice", "practice")
+    figure: Figure = device.input_high if upper else device.input_low
+    rail = positive if upper else negative
+    typical = None if figure.typical is None else rail + figure.typical
+    guaranteed = None if figure.guaranteed is None else rail + figure.guaranteed
+    return Reach(
+        typical, guaranteed, figure.typical_basis, figure.guaranteed_basis, figure.condition
+    )

@@ -1,0 +1,75 @@
+"""Demand against limit on one side of one quantity, nominal and at the corners."""
+
+import numpy as np
+
+from railguard.analysis.available import Reach
+from railguard.analysis.corners import Flags, Spread
+from railguard.analysis.network import Real
+from railguard.analysis.stage import Bound, Pair
+from railguard.words import Basis
+
+CULPRITS = 3
+
+
+def bound(
+    *,
+    upper: bool,
+    demand: float,
+    level: float,
+    span: float,
+    reach: Reach,
+    absolute: float | None,
+    absolute_basis: Basis,
+    demand_basis: Basis,
+    spread: Spread,
+    moves: Real,
+    limit_moves: Real,
+) -> Bound:
+    """Build a bound.
+
+    moves        derivative of the demand's end to every parameter, shape (parameters,)
+    limit_moves  the same of the limit: what moves both together leaves the margin alone
+    """
+    limit = reach.guaranteed if reach.guaranteed is not None else reach.typical
+    stated = default = None
+    culprits: tuple[str, ...] = ()
+    if limit is not None and len(spread.delta):
+        if spread.stated.any():
+            stated = _corner(upper, demand, limit, moves, limit_moves, spread, spread.stated)
+        everything = np.ones(len(spread.delta), dtype=bool)
+        default = _corner(upper, demand, limit, moves, limit_moves, spread, everything)
+        weight = np.abs(limit_moves - moves) * spread.delta
+        order = np.argsort(-weight)[:CULPRITS]
+        culprits = tuple(dict.fromkeys(spread.names[i] for i in order if weight[i] > 0))
+    return Bound(
+        upper=upper,
+        demand=demand,
+        level=level,
+        span=span,
+        typical=reach.typical,
+        guaranteed=reach.guaranteed,
+        absolute=absolute,
+        stated=stated,
+        default=default,
+        typical_basis=reach.typical_basis,
+        guaranteed_basis=reach.guaranteed_basis,
+        absolute_basis=absolute_basis,
+        demand_basis=demand_basis,
+        culprits=culprits,
+        condition=reach.condition,
+    )
+
+
+def _corner(
+    upper: bool,
+    demand: float,
+    limit: float,
+    moves: Real,
+    limit_moves: Real,
+    spread: Spread,
+    mask: Flags,
+) -> Pair:
+    """Return demand and limit where tolerances leave the least room between them."""
+    room = (limit_moves - moves) if upper else (moves - limit_moves)
+    shift = -np.sign(room) * spread.delta * mask
+    return Pair(float(demand + moves @ shift), float(limit + limit_moves @ shift))

@@ -1,0 +1,206 @@
+"""What tolerances do to every quantity: extreme values through adjoint sensitivities.
+
+For y = c.x with M x = b, one adjoint row a = c.M^-1 gives the derivative to every element:
+dy/dln R = g (a_i - a_j)(x_i - x_j), dy/dln C = -sC (a_i - a_j)(x_i - x_j), dy/dV = a_row. The
+extreme value is the sum of the magnitudes times the tolerances; a margin's extreme value uses
+the difference of the sensitivities of its two sides, so what moves both together cancels.
+
+Source  ECSS-Q-HB-30-01A, Worst case analysis (method: extreme value analysis, RSS)
+"""
+
+import fnmatch
+import re
+from collections.abc import Iterable, Mapping
+
+import msgspec
+import numpy as np
+import numpy.typing as npt
+
+from railguard.analysis.network import Network, Real, Stamp
+from railguard.analysis.ranges import Answers
+from railguard.circuit.model import Element
+from railguard.devices.names import schematic_name
+from railguard.settings.model import Tolerances
+
+DEFAULT_RESISTOR = 0.01
+"""Common practice, no source."""
+DEFAULT_CAPACITOR = 0.10
+"""Common practice, no source."""
+DEFAULT_INDUCTOR = 0.20
+"""Common practice, no source."""
+
+Flags = npt.NDArray[np.bool_]
+
+
+class Spread(msgspec.Struct, frozen=True, kw_only=True):
+    """Everything that may be off, and by how much.
+
+    names   designator of each parameter, shape (parameters,)
+    delta   its share (elements, rails) or its size in SI units (offset, bias)
+    stated  True where the user or the card states it
+    error   True for an amplifier's own offset and bias current
+    high, low  derivative of each quantity's upper and lower end, shape (quantities, parameters)
+    """
+
+    names: tuple[str, ...]
+    delta: Real
+    stated: Flags
+    error: Flags
+    high: Real
+    low: Real
+
+    def reach(self, side: Real) -> Real:
+        """Return the extreme-value excursion of each quantity, shape (quantities,)."""
+        return np.asarray(np.abs(side) @ self.delta)
+
+
+_TEXT_TOLERANCE = re.compile(r"(?i)(?:^|[\s,;(=]|tol(?:erance)?\s*=\s*)±?(\d+(?:\.\d+)?)\s*%")
+_LARGEST_SHARE = 0.5
+
+
+def tolerance_of(element: Element, stated: Tolerances) -> tuple[float, bool]:
+    """Return an element's tolerance as a share, and whether somebody stated it."""
+    names = (element.designator, schematic_name(element.designator))
+    for pattern, share in stated.rules:
+        if any(fnmatch.fnmatchcase(name.upper(), pattern.upper()) for name in names):
+            return share, True
+    card = element.parameters.get("tol")
+    if card is not None and 0 <= card < 1:
+        return card, True
+    written = _TEXT_TOLERANCE.search(element.text)
+    if written is not None and float(written[1]) / 100 <= _LARGEST_SHARE:
+        return float(written[1]) / 100, True
+    by_class: dict[str, tuple[float | None, float]] = {
+        "R": (stated.resistor, DEFAULT_RESISTOR),
+        "C": (stated.capacitor, DEFAULT_CAPACITOR),
+        "L": (stated.inductor, DEFAULT_INDUCTOR),
+    }
+    told, default = by_class.get(element.kind, (None, 0.0))
+    return (told, True) if told is not None else (default, False)
+
+
+class Nuisance(msgspec.Struct, frozen=True):
+    """Offset voltage and bias current of one amplifier, worst: V, A."""
+
+    offset: float
+    bias: float
+
+
+def spread(
+    answers: Answers,
+    elements: Iterable[Element],
+    exempt: frozenset[str],
+    stated: Tolerances,
+    rails: Mapping[str, tuple[float, float, bool]],
+    nuisances: Mapping[str, Nuisance],
+) -> Spread:
+    """Work out the sensitivity of every quantity to everything that may be off.
+
+    exempt     designators without a tolerance: bridges, signals' own resistances
+    rails      injection name -> (volts, share, stated) of every rail's source
+    nuisances  by amplifier
+    """
+    network = answers.network
+    by_name = {e.designator: e for e in elements}
+    stamps, shares, flags = [], [], []
+    for stamp in network.stamps:
+        element = by_name.get(stamp.designator)
+        if element is None or element.kind == "link" or stamp.designator in exempt:
+            continue
+        share, is_stated = tolerance_of(element, stated)
+        if share > 0:
+            stamps.append(stamp)
+            shares.append(share)
+            flags.append(is_stated)
+    rail_names = [n for n in rails if n in network.injections and rails[n][1] > 0]
+    amplifiers = [a for a in answers.amplifiers if a.designator in nuisances]
+    high, low = _elements(answers, stamps)
+    extra, names, delta, is_stated_extra = _levels(
+        answers, rails, rail_names, {a.designator: nuisances[a.designator] for a in amplifiers}
+    )
+    return Spread(
+        names=(*(s.designator for s in stamps), *names),
+        delta=np.array([*shares, *delta]),
+        stated=np.array([*flags, *is_stated_extra], dtype=bool),
+        error=np.array([False] * len(stamps) + [n not in rails for n in names], dtype=bool),
+        high=np.hstack([high, extra]),
+        low=np.hstack([low, extra]),
+    )
+
+
+def _factors(stamps: list[Stamp], s: complex) -> npt.NDArray[np.complex128]:
+    """Return -dM/dln p of each element for its unit pattern, shape (elements,)."""
+    return np.array(
+        [stamp.value if stamp.kind == "R" else (-s if stamp.kind == "C" else s) * stamp.value
+         for stamp in stamps],
+        dtype=np.complex128,
+    )  # fmt: skip
+
+
+def _differences(
+    vectors: npt.NDArray[np.complex128], stamps: list[Stamp]
+) -> npt.NDArray[np.complex128]:
+    """Return each vector's difference across each element, shape (vectors, elements)."""
+    padded = np.concatenate([vectors, np.zeros((len(vectors), 1))], axis=1)
+    a = np.array([stamp.a for stamp in stamps], dtype=np.int64)
+    b = np.array([-1 if stamp.kind == "L" else stamp.b for stamp in stamps], dtype=np.int64)
+    return np.asarray(padded[:, a] - padded[:, b])
+
+
+def _elements(answers: Answers, stamps: list[Stamp]) -> tuple[Real, Real]:
+    count = len(answers.rows)
+    if not stamps:
+        return np.zeros((count, 0)), np.zeros((count, 0))
+    adjoint = answers.dc.adjoint([int(r) for r in answers.rows])
+    level = _differences(adjoint, stamps) * _differences(answers.x[None, :].astype(complex), stamps)
+    dc = (level * _factors(stamps, 0j)).real
+    peaks = np.zeros_like(dc)
+    for tone in answers.tones:
+        for worst in tone.worst:
+            rows = answers.rows[worst.picks]
+            values = np.where(rows >= 0, worst.x[rows], 0)
+            alive = np.abs(values) > 0
+            if not alive.any():
+                continue
+            picks, rows, values = worst.picks[alive], rows[alive], values[alive]
+            adjoint = worst.factor.adjoint([int(r) for r in rows])
+            change = _differences(adjoint, stamps) * _differences(worst.x[None, :], stamps)
+            change = change * _factors(stamps, 2j * np.pi * worst.hertz)
+            direction = np.conj(values) / np.abs(values)
+            peaks[picks] += (direction[:, None] * change).real
+    return dc + peaks, dc - peaks
+
+
+def _levels(
+    answers: Answers,
+    rails: Mapping[str, tuple[float, float, bool]],
+    rail_names: list[str],
+    nuisances: Mapping[str, Nuisance],
+) -> tuple[Real, list[str], list[float], list[bool]]:
+    """Derivatives to rails, offsets and bias currents: they move the DC level only."""
+    network: Network = answers.network
+    adjoint = answers.dc.adjoint([int(r) for r in answers.rows]).real
+    columns, names, delta, stated = [], [], [], []
+    for name in rail_names:
+        volts, share, is_stated = rails[name]
+        columns.append(adjoint[:, network.injections[name].row] * volts)
+        names.append(name)
+        delta.append(share)
+        stated.append(is_stated)
+    for amplifier in answers.amplifiers:
+        nuisance = nuisances.get(amplifier.designator)
+        row = network.outputs.get(amplifier.designator, -1)
+        if nuisance is None or row < 0 or amplifier.designator in network.forced:
+            continue
+        columns.append(adjoint[:, row])
+        names.append(f"offset of {amplifier.designator}")
+        delta.append(nuisance.offset)
+        for net in (amplifier.plus, amplifier.minus):
+            at = network.row(net)
+            if at >= 0:
+                columns.append(adjoint[:, at])
+                names.append(f"bias current of {amplifier.designator}")
+                delta.append(nuisance.bias)
+    stated += [False] * (len(names) - len(stated))
+    stacked = np.stack(columns, axis=1) if columns else np.zeros((len(answers.rows), 0))
+    return stacked, names, delta, stated

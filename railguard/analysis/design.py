@@ -1,0 +1,88 @@
+"""A flat circuit to a design: the analysis from beginning to end."""
+
+from railguard.analysis.kind import kind_of
+from railguard.analysis.rails import packages_of, rails_of
+from railguard.analysis.recognise import Recognised, recognise
+from railguard.analysis.signals import Prepared, prepare
+from railguard.analysis.solution import Solution, solve
+from railguard.analysis.solve import factor
+from railguard.analysis.stage import Design, Stage
+from railguard.analysis.stages import stages_of, unsolved
+from railguard.analysis.supplies import Feed, feeds, supply_nets
+from railguard.analysis.surroundings import MID_HERTZ
+from railguard.analysis.unseen import spoiled, unseen_things
+from railguard.circuit.model import Circuit
+from railguard.devices.catalogue import Catalogue
+from railguard.errors import SolveError
+from railguard.notices import Problem
+from railguard.settings.model import Settings
+
+
+def analyse(circuit: Circuit, settings: Settings, catalogue: Catalogue) -> Design:
+    """Work a circuit out: who is an op-amp, what feeds it, what is asked of it, what it can do."""
+    found = recognise(circuit, catalogue, settings)
+    signs = supply_nets(found.amplifiers)
+    fed = feeds(signs, circuit.elements, settings, found.amplifiers)
+    kind, reason = kind_of(circuit, settings, fed)
+    prepared = prepare(circuit.elements, settings, fed)
+    problems = list(circuit.problems)
+    solution: Solution | None = None
+    stages: tuple[Stage, ...] = ()
+    if found.amplifiers:
+        try:
+            solution = solve(prepared, found.amplifiers, fed, settings)
+        except SolveError as error:
+            problems.append(Problem(rule="netlist-no-solution", message=error.what))
+            stages = unsolved(found.amplifiers, error.what, settings)
+    if solution is not None:
+        stages = _stages(circuit, settings, found, prepared, solution, fed)
+        problems += _conflicts(solution)
+    return Design(
+        circuit=circuit,
+        settings=settings,
+        kind=kind,
+        kind_reason=reason,
+        rails=rails_of(
+            signs, fed, prepared.elements, found.amplifiers,
+            solution.answers if solution is not None else None, settings,
+        ),
+        packages=packages_of(found.amplifiers),
+        stages=stages,
+        problems=tuple(problems),
+        remarks=(*circuit.remarks, *found.remarks),
+    )  # fmt: skip
+
+
+def _stages(
+    circuit: Circuit,
+    settings: Settings,
+    found: Recognised,
+    prepared: Prepared,
+    solution: Solution,
+    fed: dict[str, Feed],
+) -> tuple[Stage, ...]:
+    own = frozenset(a.element.designator for a in found.amplifiers)
+    things = unseen_things(
+        circuit, prepared.elements, own, prepared.unstated, settings, solution.answers
+    )
+    hertz = solution.tops[0] if solution.tops else MID_HERTZ
+    mid = solution.mid if hertz == MID_HERTZ else factor(solution.answers.network, hertz)
+    flags = spoiled(solution.answers, things, mid)
+    return stages_of(solution, fed, settings, flags, frozenset(fed))
+
+
+def _conflicts(solution: Solution) -> list[Problem]:
+    """Turn voltages that contradict each other into problems, named by net and element."""
+    problems = []
+    for designator, *nets in solution.answers.network.conflicts:
+        where = " and ".join(dict.fromkeys(nets))
+        problems.append(
+            Problem(
+                rule="netlist-sources-fight",
+                message=f"{designator} sets a voltage at {where} that other sources already set.",
+                remedy="Put a resistance in series, or take one of them out.",
+                designators=(designator,),
+                nets=tuple(nets),
+            )
+        )
+    return problems

@@ -1,0 +1,214 @@
+"""Each amplifier's own loop: sign, noise gain, bandwidth, phase margin.
+
+The loop is broken at one amplifier with all others active, so outer loops, balanced loops and
+composite amplifiers are judged as they work. A transistor inside a loop is taken at its
+small-signal sign (follower +, common emitter -); it gives the loop its sign, not its numbers.
+"""
+
+from collections.abc import Iterable, Mapping, Sequence
+
+import msgspec
+import numpy as np
+
+from railguard.analysis.network import (
+    Complex,
+    Network,
+    Parasitics,
+    Real,
+    gain_bandwidth,
+    open_loop_gain,
+)
+from railguard.analysis.recognise import Amplifier
+from railguard.analysis.solve import return_ratios
+from railguard.analysis.stage import Loop
+from railguard.circuit.model import Control, Element
+
+OPEN_BETA = 1e-6
+"""A feedback factor below this is no feedback: the loop gain of any op-amp is then below one."""
+LOWEST_HERTZ = 1.0
+POINTS = 41
+SURE_DEGREES = 5.0
+"""A phase margin is given where what is not listed moves it by less than this."""
+LARGEST_INPUT_FARADS = 20e-12
+LARGEST_OUTPUT_OHMS = 200.0
+"""What an unlisted input capacitance and output resistance may be at most: common practice."""
+BASE_OHMS = 1e3
+CURRENT_GAIN = 100.0
+
+
+class LoopSweep(msgspec.Struct, frozen=True):
+    """Loop transmission of all amplifiers over frequency.
+
+    hertz   shape (frequencies,)
+    a_beta  shape (frequencies, amplifiers)
+    dc      A*beta at DC, shape (amplifiers,)
+    """
+
+    hertz: Real
+    a_beta: Complex
+    dc: Real
+
+
+def small_signal(elements: Iterable[Element]) -> tuple[tuple[Element, ...], bool]:
+    """Replace transistors by what gives a loop its sign; tell whether there were any."""
+    result: list[Element] = []
+    any_found = False
+    for element in elements:
+        if element.kind not in ("Q", "J", "M") or len(element.nets) < 3 or not element.fitted:
+            result.append(element)
+            continue
+        any_found = True
+        collector, base, emitter = element.nets[:3]
+        name = element.designator
+        result.append(
+            Element(kind="R", designator=f"{name} input", nets=(base, emitter), value=BASE_OHMS)
+        )
+        result.append(
+            Element(
+                kind="G",
+                designator=f"{name} output",
+                nets=(collector, emitter),
+                control=Control(gain=CURRENT_GAIN / BASE_OHMS, nets=(base, emitter)),
+            )
+        )
+    return tuple(result), any_found
+
+
+def open_loop(amplifier: Amplifier, hertz: Real) -> Complex:
+    """Return A(f) of one amplifier, shape (frequencies,)."""
+    gbw = gain_bandwidth(amplifier)
+    inverse = np.full(len(hertz), 1.0 / open_loop_gain(amplifier), dtype=np.complex128)
+    if gbw:
+        inverse += 1j * hertz / gbw
+    return 1.0 / inverse
+
+
+def sweep(network: Network, tops: Sequence[float]) -> LoopSweep:
+    """Sweep all loops from DC to ten times the fastest amplifier's gain-bandwidth product.
+
+    tops  further frequencies of interest: the tops of the stated bands, hertz
+    """
+    fastest = max((gain_bandwidth(a) or 0.0 for a in network.amplifiers), default=0.0) or 1e6
+    grid = np.geomspace(LOWEST_HERTZ, 10 * fastest, POINTS)
+    hertz = np.unique(np.concatenate([grid, [t for t in tops if t > 0]]))
+    dc = return_ratios(network, np.zeros(1))[0].real
+    return LoopSweep(hertz=hertz, a_beta=return_ratios(network, hertz), dc=dc)
+
+
+def known_parasitics(amplifiers: Iterable[Amplifier]) -> dict[str, Parasitics]:
+    """Return what is listed of input capacitance and output resistance."""
+    return _parasitics(amplifiers, 0.0, 0.0)
+
+
+def bounding_parasitics(amplifiers: Iterable[Amplifier]) -> dict[str, Parasitics]:
+    """Return the same with the largest values for what is not listed."""
+    return _parasitics(amplifiers, LARGEST_INPUT_FARADS, LARGEST_OUTPUT_OHMS)
+
+
+def _parasitics(
+    amplifiers: Iterable[Amplifier], farads: float, ohms: float
+) -> dict[str, Parasitics]:
+    found = {}
+    for amplifier in amplifiers:
+        device = amplifier.match.device
+        if device is None:
+            continue
+        listed_c = device.input_capacitance.best
+        listed_r = device.output_resistance.best
+        found[amplifier.designator] = Parasitics(
+            farads if listed_c is None else listed_c, ohms if listed_r is None else listed_r
+        )
+    return found
+
+
+def crossing(hertz: Real, magnitude: Real) -> float | None:
+    """Return the highest frequency at which a magnitude falls through one, hertz; None: never.
+
+    Between two points both axes are taken as logarithmic.
+    """
+    above = np.flatnonzero((magnitude[:-1] >= 1.0) & (magnitude[1:] < 1.0))
+    if not len(above):
+        return None
+    i = int(above[-1])
+    m0, m1 = np.log(magnitude[i]), np.log(max(magnitude[i + 1], 1e-300))
+    share = m0 / (m0 - m1) if m0 != m1 else 0.0
+    return float(np.exp(np.log(hertz[i]) + share * (np.log(hertz[i + 1]) - np.log(hertz[i]))))
+
+
+def _at(hertz: Real, values: Real, f: float) -> float:
+    return float(np.interp(np.log(f), np.log(hertz), values))
+
+
+def phase_margin(hertz: Real, a_beta: Complex, f: float) -> float:
+    """Return 180 degrees plus the loop's phase at `f`, degrees."""
+    degrees = np.degrees(np.unwrap(np.angle(a_beta)))
+    return 180.0 + _at(hertz, degrees, f)
+
+
+def crossover_margins(network: Network, crossovers: Mapping[str, float]) -> dict[str, float]:
+    """Return the phase margin of each amplifier in `network`, its crossover found anew near by."""
+    steps = np.geomspace(0.1, 1.6, 9)
+    hertz = np.unique(np.concatenate([steps * f for f in crossovers.values()]))
+    if not len(hertz):
+        return {}
+    ratios = return_ratios(network, hertz)
+    margins = {}
+    for column, amplifier in enumerate(network.amplifiers):
+        near = crossovers.get(amplifier.designator)
+        if near is None:
+            continue
+        own = (hertz >= near * 0.099) & (hertz <= near * 1.61)
+        f, t = hertz[own], ratios[own, column]
+        at = crossing(f, np.abs(t))
+        if at is not None:
+            margins[amplifier.designator] = phase_margin(f, t, at)
+    return margins
+
+
+def loop_of(
+    amplifier: Amplifier, column: int, swept: LoopSweep, top: float | None, margin: float | None
+) -> Loop:
+    """Return one amplifier's loop.
+
+    top     top of the band of the signals that reach it, hertz; None: nothing stated
+    margin  phase margin, degrees; None where something that matters is not listed
+    """
+    beta_dc = float(swept.dc[column]) / open_loop_gain(amplifier)
+    if abs(beta_dc) < OPEN_BETA:
+        return Loop(dc="open", beta_dc=0.0, band=top)
+    if beta_dc < 0:
+        return Loop(dc="positive", beta_dc=beta_dc, band=top)
+    a = open_loop(amplifier, swept.hertz)
+    a_beta = swept.a_beta[:, column]
+    magnitude = np.abs(a_beta)
+    with np.errstate(divide="ignore"):
+        noise_gain = np.abs(a) / np.maximum(magnitude, 1e-300)
+    known = gain_bandwidth(amplifier) is not None
+    f_cross = crossing(swept.hertz, magnitude) if known else None
+    at_cross = None
+    if f_cross is not None:
+        at_cross = float(np.exp(_at(swept.hertz, np.log(noise_gain), f_cross)))
+    if top:
+        in_band = _at(swept.hertz, noise_gain, max(top, LOWEST_HERTZ))
+    elif f_cross is not None:
+        in_band = float(np.max(noise_gain[swept.hertz <= f_cross], initial=1.0 / beta_dc))
+    else:
+        in_band = 1.0 / beta_dc
+    phase = np.degrees(np.unwrap(np.angle(a_beta)))
+    return Loop(
+        dc="negative",
+        beta_dc=beta_dc,
+        noise_gain=in_band,
+        noise_gain_dc=1.0 / beta_dc,
+        noise_gain_crossover=at_cross,
+        crossover=f_cross,
+        phase_margin=margin,
+        band=top,
+        loop_gain=_at(swept.hertz, magnitude, max(top, LOWEST_HERTZ)) if top and known else None,
+        points=tuple(
+            (float(f), float(n), float(g), float(p))
+            for f, n, g, p in zip(swept.hertz, noise_gain, np.abs(a), phase, strict=True)
+        )
+        if known
+        else (),
+    )

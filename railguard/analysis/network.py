@@ -1,0 +1,374 @@
+"""The circuit as equations: modified nodal analysis, (G + sC) x = b.
+
+Unknowns are the voltages of all nets but ground, then one current for each branch whose voltage
+is defined: V, E and H sources, inductors, amplifier outputs. An amplifier with one pole is the row
+
+    v(out) (1/A0 + s / 2 pi GBW) - (v(in+) - v(in-)) = Vos
+
+so that the whole network stays linear in s, its output current is an unknown of its own, and its
+offset is an entry of b. Currents of branches count from the first net through the branch to the
+second; an amplifier's current counts as flowing out of it into its net.
+"""
+
+from collections.abc import Iterable, Mapping, Sequence
+from types import MappingProxyType
+
+import msgspec
+import numpy as np
+import numpy.typing as npt
+
+from railguard.analysis.recognise import Amplifier
+from railguard.circuit.model import GROUND, Element
+
+Real = npt.NDArray[np.float64]
+Complex = npt.NDArray[np.complex128]
+
+OPEN_LOOP_GAIN = 2e5
+"""DC open-loop gain of an amplifier whose data sheet's is not in the catalogue: common practice."""
+WINDING_OHMS = 1e-3
+"""Resistance given to an inductor or a link, so that two in parallel stay solvable at DC."""
+LEAK_SIEMENS = 1e-12
+"""Ties a net without DC path to ground, so that the rest can be solved. Its level means nothing."""
+
+
+class Stamp(msgspec.Struct, frozen=True):
+    """An element that stands in G or C: between rows `a` and `b` (-1: ground), SI value.
+
+    kind  "R" (value is siemens), "C" (farad) or "L" (henry; `a` is then its branch row)
+    """
+
+    designator: str
+    kind: str
+    a: int
+    b: int
+    value: float
+
+
+class Branch(msgspec.Struct, frozen=True):
+    """A row of x that is a current."""
+
+    designator: str
+    kind: str
+    row: int
+    nets: tuple[str, str]
+
+
+class Injection(msgspec.Struct, frozen=True):
+    """Something from outside: a voltage or a current that b can carry.
+
+    row    for a voltage source: its branch row (b[row] = volts)
+    nets   for a current: amperes leave nets[0] and enter nets[1] inside the source
+    """
+
+    name: str
+    row: int
+    a: int
+    b: int
+
+    def into(self, b: Complex, value: complex) -> None:
+        """Add `value` volts or amperes of this injection to a right-hand side, in place."""
+        if self.row >= 0:
+            b[self.row] += value
+            return
+        if self.a >= 0:
+            b[self.a] -= value
+        if self.b >= 0:
+            b[self.b] += value
+
+
+class Parasitics(msgspec.Struct, frozen=True):
+    """What an amplifier adds to its own loop: farads at the inverting input, ohms at the output."""
+
+    input_farads: float
+    output_ohms: float
+
+
+class Network:
+    """G, C and the way from names to rows.
+
+    g, c        matrices, shape (unknowns, unknowns)
+    stamps      the elements with a tolerance, for sensitivities
+    injections  by source designator
+    outputs     amplifier designator -> its branch row
+    floating    nets whose DC level nothing defines
+    conflicts   designators left out because their voltage contradicts others (loops of sources)
+    """
+
+    def __init__(
+        self,
+        elements: Iterable[Element],
+        amplifiers: Sequence[Amplifier],
+        forced: frozenset[str] = frozenset(),
+        extra: "Mapping[str, Parasitics]" = MappingProxyType({}),
+    ) -> None:
+        """Stamp everything.
+
+        forced  amplifiers whose output is a plain source: those without a working loop
+        extra   input capacitance and output resistance by amplifier
+        """
+        self.rows: dict[str, int] = {}
+        self.branches: list[Branch] = []
+        self.stamps: list[Stamp] = []
+        self.injections: dict[str, Injection] = {}
+        self.outputs: dict[str, int] = {}
+        self.conflicts: list[tuple[str, ...]] = []
+        self._g: list[tuple[int, int, float]] = []
+        self._c: list[tuple[int, int, float]] = []
+        self.amplifiers = tuple(amplifiers)
+        self.forced = forced
+        kept = [e for e in elements if e.fitted]
+        self._held = _Sets()
+        amplifier_elements = {id(a.element) for a in amplifiers}
+        for element in kept:
+            for net in element.nets:
+                self._row(net)
+        for amplifier in amplifiers:
+            for net in (amplifier.plus, amplifier.minus, amplifier.output):
+                self._row(net)
+        self.net_count = len(self.rows)
+        self._next = self.net_count
+        later = []
+        for element in kept:
+            if id(element) in amplifier_elements:
+                continue
+            if element.kind in ("F", "H"):
+                later.append(element)
+            else:
+                self._stamp(element)
+        for amplifier in amplifiers:
+            self._stamp_amplifier(
+                amplifier, amplifier.designator in forced, extra.get(amplifier.designator)
+            )
+        for element in later:
+            self._stamp_current_controlled(element)
+        self.size = self._next
+        self.floating = self._find_floating()
+        self.g = _dense(self._g, self.size)
+        self.c = _dense(self._c, self.size)
+
+    def row(self, net: str) -> int:
+        """Return the row of a net's voltage; -1 for ground or a net nobody is on."""
+        return -1 if net == GROUND else self.rows.get(net, -1)
+
+    def has(self, net: str) -> bool:
+        """Tell whether a net exists."""
+        return net == GROUND or net in self.rows
+
+    def right_hand_side(self, drives: Iterable[tuple[str, complex]]) -> Complex:
+        """Return b for some (injection, volts or amperes), shape (unknowns,)."""
+        b = np.zeros(self.size, dtype=np.complex128)
+        for name, value in drives:
+            if name in self.injections:
+                self.injections[name].into(b, value)
+        return b
+
+    def _row(self, net: str) -> int:
+        if net == GROUND:
+            return -1
+        return self.rows.setdefault(net, len(self.rows))
+
+    def _branch(self, designator: str, kind: str, a: str, b: str) -> int | None:
+        """Add a branch whose voltage is defined; None where its two nets are already held."""
+        if kind != "L" and not self._held.join(a, b):
+            self.conflicts.append((designator, a, b))
+            return None
+        row = self._next
+        self._next += 1
+        self.branches.append(Branch(designator, kind, row, (a, b)))
+        for net, sign in ((a, 1.0), (b, -1.0)):
+            at = self.row(net)
+            if at >= 0:
+                self._g.append((at, row, sign))
+                self._g.append((row, at, sign))
+        return row
+
+    def _conductance(self, designator: str, a: str, b: str, siemens: float, kind: str) -> None:
+        i, j = self.row(a), self.row(b)
+        if i == j:
+            return
+        target = self._g if kind == "R" else self._c
+        for p, q, sign in ((i, i, 1.0), (j, j, 1.0), (i, j, -1.0), (j, i, -1.0)):
+            if p >= 0 and q >= 0:
+                target.append((p, q, sign * siemens))
+        self.stamps.append(Stamp(designator, kind, i, j, siemens))
+
+    def _stamp(self, element: Element) -> None:
+        nets = element.nets
+        match element.kind:
+            case "R" if element.value is not None:
+                ohms = element.value if abs(element.value) > WINDING_OHMS else WINDING_OHMS
+                self._conductance(element.designator, nets[0], nets[1], 1.0 / ohms, "R")
+            case "link" if len(nets) >= 2:
+                ohms = max(element.value or 0.0, WINDING_OHMS)
+                self._conductance(element.designator, nets[0], nets[1], 1.0 / ohms, "R")
+            case "C" if element.value is not None:
+                self._conductance(element.designator, nets[0], nets[1], element.value, "C")
+            case "L":
+                row = self._branch(element.designator, "L", nets[0], nets[1])
+                if row is not None:
+                    henry = element.value or 0.0
+                    self._g.append((row, row, -WINDING_OHMS))
+                    self._c.append((row, row, -henry))
+                    self.stamps.append(Stamp(element.designator, "L", row, row, henry))
+            case "V" | "battery":
+                row = self._branch(element.designator, "V", nets[0], nets[1])
+                if row is not None:
+                    self.injections[element.designator] = Injection(element.designator, row, -1, -1)
+            case "I":
+                self.injections[element.designator] = Injection(
+                    element.designator, -1, self.row(nets[0]), self.row(nets[1])
+                )
+            case "E":
+                self._stamp_voltage_controlled(element)
+            case "G":
+                self._stamp_transconductance(element)
+            case "B" if "v" in element.parameters or element.text[:1].lower() == "v":
+                row = self._branch(element.designator, "V", nets[0], nets[1])
+                if row is not None:
+                    self.injections[element.designator] = Injection(element.designator, row, -1, -1)
+            case _:
+                pass
+
+    def _stamp_voltage_controlled(self, element: Element) -> None:
+        row = self._branch(element.designator, "E", element.nets[0], element.nets[1])
+        control = element.control
+        if row is None:
+            return
+        self.injections[element.designator] = Injection(element.designator, row, -1, -1)
+        if control is None or control.gain is None or len(control.nets) != 2:
+            return
+        for net, sign in zip(control.nets, (-1.0, 1.0), strict=True):
+            at = self.row(net)
+            if at >= 0:
+                self._g.append((row, at, sign * control.gain))
+
+    def _stamp_transconductance(self, element: Element) -> None:
+        control = element.control
+        if control is None or control.gain is None or len(control.nets) != 2:
+            return
+        for net, out in zip(element.nets, (1.0, -1.0), strict=False):
+            i = self.row(net)
+            for sense, sign in zip(control.nets, (1.0, -1.0), strict=True):
+                j = self.row(sense)
+                if i >= 0 and j >= 0:
+                    self._g.append((i, j, out * sign * control.gain))
+
+    def _stamp_current_controlled(self, element: Element) -> None:
+        control = element.control
+        sensed = next(
+            (b.row for b in self.branches if control and b.designator == control.element), None
+        )
+        if control is None or control.gain is None or sensed is None:
+            return
+        if element.kind == "H":
+            row = self._branch(element.designator, "H", element.nets[0], element.nets[1])
+            if row is not None:
+                self._g.append((row, sensed, -control.gain))
+            return
+        for net, sign in zip(element.nets, (1.0, -1.0), strict=False):
+            at = self.row(net)
+            if at >= 0:
+                self._g.append((at, sensed, sign * control.gain))
+
+    def _stamp_amplifier(
+        self, amplifier: Amplifier, forced: bool, parasitics: "Parasitics | None"
+    ) -> None:
+        out = self.row(amplifier.output)
+        if out < 0 or not self._held.join(amplifier.output, GROUND):
+            self.conflicts.append((amplifier.designator, amplifier.output, GROUND))
+            return
+        row = self._next
+        self._next += 1
+        self.branches.append(Branch(amplifier.designator, "A", row, (amplifier.output, GROUND)))
+        self.outputs[amplifier.designator] = row
+        self._g.append((out, row, -1.0))
+        self.injections[amplifier.designator] = Injection(amplifier.designator, row, -1, -1)
+        if forced:
+            self._g.append((row, out, 1.0))
+            return
+        inverse_gain = 1.0 / open_loop_gain(amplifier)
+        self._g.append((row, out, inverse_gain))
+        gbw = gain_bandwidth(amplifier)
+        integration = 1.0 / (2 * np.pi * gbw) if gbw else 0.0
+        if integration:
+            self._c.append((row, out, integration))
+        if parasitics is not None:
+            self._g.append((row, row, parasitics.output_ohms * inverse_gain))
+            self._c.append((row, row, parasitics.output_ohms * integration))
+            minus = self.row(amplifier.minus)
+            if minus >= 0:
+                self._c.append((minus, minus, parasitics.input_farads))
+        for net, sign in ((amplifier.plus, -1.0), (amplifier.minus, 1.0)):
+            at = self.row(net)
+            if at >= 0:
+                self._g.append((row, at, sign))
+
+    def _find_floating(self) -> frozenset[str]:
+        """Tie nets without a DC way to ground down, and return them."""
+        sets = _Sets()
+        for branch in self.branches:
+            sets.join(*branch.nets)
+        names = {row: net for net, row in self.rows.items()} | {-1: GROUND}
+        for stamp in self.stamps:
+            if stamp.kind == "R":
+                sets.join(names[stamp.a], names[stamp.b])
+        home = sets.find(GROUND)
+        groups: dict[str, list[str]] = {}
+        for net in self.rows:
+            root = sets.find(net)
+            if root != home:
+                groups.setdefault(root, []).append(net)
+        for nets in groups.values():
+            row = self.rows[nets[0]]
+            self._g.append((row, row, LEAK_SIEMENS))
+        return frozenset(net for nets in groups.values() for net in nets)
+
+
+def open_loop_gain(amplifier: Amplifier) -> float:
+    """Return an amplifier's DC open-loop gain, V/V."""
+    if amplifier.gain is not None:
+        return amplifier.gain
+    device = amplifier.match.device
+    listed = device.open_loop_gain.best if device is not None else None
+    return listed or OPEN_LOOP_GAIN
+
+
+def gain_bandwidth(amplifier: Amplifier) -> float | None:
+    """Return an amplifier's gain-bandwidth product, hertz; typical, as a bandwidth is drawn."""
+    device = amplifier.match.device
+    if device is None:
+        return None
+    listed = device.gain_bandwidth
+    return listed.typical if listed.typical is not None else listed.guaranteed
+
+
+class _Sets:
+    """Nets joined into groups."""
+
+    def __init__(self) -> None:
+        self._parent: dict[str, str] = {}
+
+    def find(self, net: str) -> str:
+        parent = self._parent
+        root = net
+        while parent.get(root, root) != root:
+            root = parent[root]
+        while parent.get(net, net) != root:
+            parent[net], net = root, parent[net]
+        return root
+
+    def join(self, a: str, b: str) -> bool:
+        """Join two groups; False where they already were one."""
+        ra, rb = self.find(a), self.find(b)
+        if ra == rb:
+            return False
+        self._parent[ra] = rb
+        return True
+
+
+def _dense(entries: list[tuple[int, int, float]], size: int) -> Real:
+    matrix = np.zeros((size, size))
+    if entries:
+        i, j, v = zip(*entries, strict=True)
+        np.add.at(matrix, (np.array(i), np.array(j)), np.array(v))
+    return matrix

@@ -1,0 +1,148 @@
+"""The output side of a stage: range, swing, current, each against its limits."""
+
+import numpy as np
+
+from railguard.analysis.available import Reach, current_reach, output_reach
+from railguard.analysis.bounds import bound
+from railguard.analysis.stage import Bound, Current, Output, Part, Range, Supply, Unknown
+from railguard.analysis.surroundings import heaviest_load, load_capacitance
+from railguard.analysis.view import View
+
+_NO_LOOP = Unknown("its output stands at one of its limits: no feedback holds it", "a use for it")
+
+
+def output_side(
+    view: View,
+    supply: Supply,
+    load: float | None,
+    working: bool,
+    unknown: dict[Part, Unknown],
+) -> tuple[Current, Output]:
+    """Return what is asked of an output and what it can do, in volts and in amperes.
+
+    load     resistance it works into, ohm
+    working  False where no loop holds it
+    unknown  filled with the reasons for what stays open
+    """
+    amplifier, device = view.amplifier, view.amplifier.match.device
+    solved = amplifier.designator in view.answers.network.outputs
+    known = working and view.known("output")
+    current_known = solved and view.known("current") and (working or supply.total is not None)
+    parts: tuple[Part, ...] = ("output", "current")
+    for part in parts:
+        why = view.why(part)
+        if why is not None:
+            unknown[part] = why
+    if not working and "output" not in unknown:
+        unknown["output"] = _NO_LOOP
+    level, (low, high) = view.level("output"), view.range("output")
+    amps, amps_high = view.level("current"), view.range("current")[1]
+    if not current_known:
+        amps, amps_high = 0.0, 0.0
+    slope = 1.0 / load if load else 0.0
+    if known and high - low > 1e-9:
+        slope = max(slope, (amps_high - amps) / (high - level))
+
+    def line(volts: float) -> float:
+        return amps + slope * (volts - level) if known else slope * volts
+
+    reaches: dict[bool, Reach | None] = {True: None, False: None}
+    if supply.positive is not None and supply.negative is not None:
+        for upper in (True, False):
+            reaches[upper] = output_reach(
+                device,
+                supply.positive,
+                supply.negative,
+                upper,
+                line if upper else lambda volts: -line(volts),
+            )
+    q = view.at("output")
+    spread = view.solution.spread
+    bounds = {}
+    for upper in (True, False):
+        reach = reaches[upper]
+        if not known or reach is None:
+            bounds[upper] = Bound(upper=upper, demand=(high if upper else low) if known else None)
+            continue
+        pin = view.at("positive" if upper else "negative")
+        bounds[upper] = bound(
+            upper=upper,
+            demand=high if upper else low,
+            level=level,
+            span=high - low,
+            reach=reach,
+            absolute=supply.positive if upper else supply.negative,
+            absolute_basis=supply.basis,
+            demand_basis=view.basis("output"),
+            spread=spread,
+            moves=spread.high[q] if upper else spread.low[q],
+            limit_moves=spread.high[pin],
+        )
+    error = float((np.abs(spread.high[q]) * spread.delta * spread.error).sum())
+    up, down = reaches[True], reaches[False]
+    output = Output(
+        net=amplifier.output,
+        level=level if known else None,
+        demand=Range(low, high) if known else Range(),
+        worst=view.worst("output") if known else Range(),
+        available=Range(down.typical if down else None, up.typical if up else None),
+        guaranteed=Range(down.guaranteed if down else None, up.guaranteed if up else None),
+        high=bounds[True],
+        low=bounds[False],
+        frequency=_worst_frequency(view),
+        slew=float(view.answers.slew[q]) if known and view.answers.slew[q] > 0 else None,
+        offset=error if known and device is not None else None,
+    )
+    return _current(view, current_known, load), output
+
+
+def _worst_frequency(view: View) -> float | None:
+    q = view.at("output")
+    best = max(view.answers.tones, key=lambda t: float(t.peaks[q]), default=None)
+    return float(best.hertz[q]) if best is not None and best.peaks[q] > 0 else None
+
+
+def _current(view: View, known: bool, load: float | None) -> Current:
+    device = view.amplifier.match.device
+    amps = view.level("current")
+    low, high = view.range("current")
+    q, spread = view.at("current"), view.solution.spread
+    worst = view.worst("current")
+    bounds, available = {}, {}
+    for source in (True, False):
+        reach = current_reach(device, source)
+        demand = max(high if source else -low, 0.0)
+        available[source] = reach.guaranteed if reach.guaranteed is not None else reach.typical
+        moves = spread.high[q] if source else -spread.low[q]
+        bounds[source] = (
+            bound(
+                upper=True,
+                demand=demand,
+                level=amps if source else -amps,
+                span=high - low,
+                reach=reach,
+                absolute=None,
+                absolute_basis="catalogue",
+                demand_basis=view.basis("current"),
+                spread=spread,
+                moves=moves,
+                limit_moves=np.zeros_like(moves),
+            )
+            if known
+            else Bound(upper=True, typical=reach.typical, guaranteed=reach.guaranteed)
+        )
+    capacitance = load_capacitance(view.amplifier, view.solution.ways)
+    return Current(
+        demand_source=max(high, 0.0) if known else None,
+        demand_sink=max(-low, 0.0) if known else None,
+        worst_source=max(worst.high or 0.0, 0.0) if known else None,
+        worst_sink=max(-(worst.low or 0.0), 0.0) if known else None,
+        available_source=available[True],
+        available_sink=available[False],
+        source=bounds[True],
+        sink=bounds[False],
+        short_circuit=device.short_circuit.best if device is not None else None,
+        load=load,
+        load_capacitance=capacitance,
+        into=heaviest_load(view.amplifier, view.solution.ways),
+    )

@@ -1,0 +1,160 @@
+"""The demand: the range every quantity of interest covers, unclipped, at values as drawn.
+
+Superposition: the DC solution, plus for every tone the largest peak over its band. Tones of
+different groups are taken to meet at their worst, so their peaks add.
+"""
+
+import msgspec
+import numpy as np
+import numpy.typing as npt
+
+from railguard.analysis.network import Complex, Network, Real
+from railguard.analysis.recognise import Amplifier
+from railguard.analysis.signals import Prepared, Tone
+from railguard.analysis.solve import Factor, factor
+
+QUANTITIES = ("output", "current", "plus", "minus", "positive", "negative")
+"""Per amplifier: output volts, output amperes (out of the pin), both inputs, both supply pins."""
+
+Index = npt.NDArray[np.int64]
+
+
+class Worst(msgspec.Struct, frozen=True):
+    """One tone where it is worst for some quantities: the factor and the solution there.
+
+    picks  indexes of the quantities whose peak over the band is here
+    """
+
+    hertz: float
+    factor: Factor
+    x: Complex
+    picks: Index
+
+
+class ToneAnswer(msgspec.Struct, frozen=True):
+    """One tone's peaks, shape (quantities,), and where each is reached."""
+
+    tone: Tone
+    peaks: Real
+    hertz: Real
+    slew: Real
+    worst: tuple[Worst, ...]
+
+
+class Answers(msgspec.Struct, frozen=True, kw_only=True):
+    """The solved circuit.
+
+    rows    row of each quantity in x; -1 where there is none. Shape (amplifiers * 6,)
+    x       DC solution, shape (unknowns,)
+    level   DC value of each quantity; high, low: its range; slew: its steepest slope per second
+    """
+
+    network: Network
+    amplifiers: tuple[Amplifier, ...]
+    rows: Index
+    dc: Factor
+    x: Real
+    level: Real
+    high: Real
+    low: Real
+    slew: Real
+    tones: tuple[ToneAnswer, ...]
+
+    def at(self, amplifier: int, quantity: str) -> int:
+        """Return the index of one amplifier's quantity."""
+        return amplifier * len(QUANTITIES) + QUANTITIES.index(quantity)
+
+
+def quantity_rows(network: Network, amplifiers: tuple[Amplifier, ...]) -> Index:
+    """Return the row of x each quantity is, shape (amplifiers * 6,)."""
+    rows = []
+    for a in amplifiers:
+        rows += [
+            network.row(a.output),
+            network.outputs.get(a.designator, -1),
+            network.row(a.plus),
+            network.row(a.minus),
+            network.row(a.positive) if a.positive else -1,
+            network.row(a.negative) if a.negative else -1,
+        ]
+    return np.array(rows, dtype=np.int64)
+
+
+def answer(
+    network: Network,
+    amplifiers: tuple[Amplifier, ...],
+    prepared: Prepared,
+    draws: dict[str, float],
+    held: dict[str, tuple[float, float]],
+) -> Answers:
+    """Solve the circuit for every level and tone.
+
+    draws  amperes of quiescent current by supply net: positive is taken from the net
+    held   middle and half range of the output of each forced amplifier, V
+
+    Raises  SolveError
+    """
+    rows = quantity_rows(network, amplifiers)
+    levels = [(d.injection, complex(d.value)) for d in prepared.levels]
+    levels += [(name, complex(middle)) for name, (middle, _) in held.items()]
+    b = network.right_hand_side(levels)
+    for net, amps in draws.items():
+        row = network.row(net)
+        if row >= 0:
+            b[row] -= amps
+    dc = factor(network, 0.0)
+    x = dc.forward(b).real
+    level = picked(x, rows)
+    tones = [*prepared.tones]
+    for name, (_, half) in held.items():
+        tones.append(Tone(name=name, drives=((name, half),), frequencies=(0.0,)))
+    factors: dict[float, Factor] = {0.0: dc}
+    answers = tuple(_tone(network, tone, rows, factors) for tone in tones)
+    peaks = sum((a.peaks for a in answers), np.zeros(len(rows)))
+    slew = sum((a.slew for a in answers), np.zeros(len(rows)))
+    return Answers(
+        network=network,
+        amplifiers=amplifiers,
+        rows=rows,
+        dc=dc,
+        x=x,
+        level=level,
+        high=level + peaks,
+        low=level - peaks,
+        slew=slew,
+        tones=answers,
+    )
+
+
+def picked(x: Real, rows: Index) -> Real:
+    """Take some rows of a solution; ground is zero."""
+    values = np.array(x[rows])
+    values[rows < 0] = 0.0
+    return values
+
+
+def _tone(network: Network, tone: Tone, rows: Index, factors: dict[float, Factor]) -> ToneAnswer:
+    b = network.right_hand_side(tone.drives)
+    frequencies = np.array(tone.frequencies)
+    solutions = []
+    for hertz in tone.frequencies:
+        if hertz not in factors:
+            factors[hertz] = factor(network, hertz)
+        solutions.append(factors[hertz].forward(b))
+    x = np.stack(solutions)
+    values = np.array(x[:, rows])
+    values[:, rows < 0] = 0.0
+    magnitude = np.abs(values)
+    best = np.argmax(magnitude, axis=0)
+    peaks = magnitude[best, np.arange(len(rows))]
+    slew = np.max(magnitude * (2 * np.pi * frequencies)[:, None], axis=0)
+    worst = tuple(
+        Worst(
+            hertz=float(frequencies[f]),
+            factor=factors[float(frequencies[f])],
+            x=x[f],
+            picks=np.flatnonzero(best == f),
+        )
+        for f in np.unique(best)
+    )
+    return ToneAnswer(tone=tone, peaks=peaks, hertz=frequencies[best], slew=slew, worst=worst)

@@ -1,0 +1,209 @@
+"""Which elements are amplifiers, with which device and pins.
+
+Here the circuit and the catalogue meet. An amplifier comes from a closed X card or an IC of a
+board export whose name the catalogue knows (or which is called just OPAMP), or from an E source
+wired as an amplifier. What is an IC but no op-amp stays opaque.
+"""
+
+import re
+from collections import defaultdict
+from collections.abc import Callable
+
+import msgspec
+
+from railguard.circuit.model import GROUND, Circuit, Element
+from railguard.devices.catalogue import Catalogue
+from railguard.devices.model import Match
+from railguard.devices.names import package_of, schematic_name
+from railguard.devices.pinouts import pin_order
+from railguard.notices import Remark
+from railguard.settings.model import Settings
+
+CONTROLLED_GAIN = 1000.0
+"""An E source with at least this gain, fed from a net no source holds, is an amplifier."""
+
+
+class Amplifier(msgspec.Struct, frozen=True, kw_only=True):
+    """One op-amp channel as it is wired.
+
+    positive, negative  supply nets; "" where the card has no such pin
+    gain                open-loop gain of an E source; None: the device's
+    """
+
+    designator: str
+    schematic: str
+    package: str
+    element: Element
+    match: Match
+    plus: str
+    minus: str
+    positive: str
+    negative: str
+    output: str
+    gain: float | None = None
+
+    @property
+    def has_supply(self) -> bool:
+        """Tell whether the card has supply pins at all."""
+        return bool(self.positive and self.negative)
+
+
+class Recognised(msgspec.Struct, frozen=True):
+    """The amplifiers of a circuit, the ICs that are none, and what had to be assumed.
+
+    unknown  elements that may be op-amps but whose name nobody knows
+    """
+
+    amplifiers: tuple[Amplifier, ...]
+    others: tuple[tuple[Element, Match], ...]
+    unknown: tuple[tuple[Element, Match], ...]
+    remarks: tuple[Remark, ...]
+
+
+def keeps_closed(catalogue: Catalogue) -> Callable[[str, tuple[str, ...]], bool]:
+    """Return the predicate flattening asks: is this subcircuit a device, not a sheet?"""
+
+    def closed(name: str, ports: tuple[str, ...]) -> bool:
+        match = catalogue.match(name)
+        if match.sort == "generic":
+            return 3 <= len(ports) <= 8
+        return match.sort != "unknown" and len(ports) >= 3
+
+    return closed
+
+
+def recognise(circuit: Circuit, catalogue: Catalogue, settings: Settings) -> Recognised:
+    """Find every amplifier of the flat circuit.
+
+    A stated pin order (`pins` of `[stages]`) wins over the header, the header over the usual order.
+    """
+    amplifiers: list[Amplifier] = []
+    others: list[tuple[Element, Match]] = []
+    unknown: list[tuple[Element, Match]] = []
+    assumed: dict[str, list[str]] = defaultdict(list)
+    for element in circuit.elements:
+        if not element.fitted:
+            continue
+        if element.kind in ("X", "ic"):
+            match = catalogue.match(element.model)
+            if match.sort not in ("op-amp", "generic"):
+                (unknown if match.sort == "unknown" else others).append((element, match))
+                continue
+            found, remark = _channels(element, match, settings)
+            if not found:
+                unknown.append((element, match))
+            amplifiers += found
+            if remark:
+                assumed[remark].append(element.designator)
+        elif element.kind == "E" and _is_amplifier(element, circuit):
+            amplifiers.append(_controlled(element))
+    remarks = tuple(
+        Remark(message=f"{_names(subjects)}: {text}") for text, subjects in assumed.items()
+    )
+    return Recognised(_grouped(amplifiers), tuple(others), tuple(unknown), remarks)
+
+
+def _names(subjects: list[str]) -> str:
+    shown = ", ".join(subjects[:6])
+    return shown if len(subjects) <= 6 else f"{shown} and {len(subjects) - 6} more"
+
+
+def _stated_pins(element: Element, settings: Settings) -> tuple[str, ...]:
+    for name in (element.designator, schematic_name(element.designator)):
+        if name in settings.pins:
+            return settings.pins[name]
+    return ()
+
+
+def _channels(element: Element, match: Match, settings: Settings) -> tuple[list[Amplifier], str]:
+    order = pin_order(
+        match,
+        len(element.nets),
+        element.ports,
+        element.pin_notes,
+        _stated_pins(element, settings),
+        element.kind == "ic",
+    )
+    if order is None:
+        return [], ""
+    found = []
+    package, _unit = package_of(element.designator)
+    for channel in order.channels:
+        suffix = channel.suffix if len(order.channels) > 1 else ""
+        nets = element.nets
+        found.append(
+            Amplifier(
+                designator=element.designator + suffix,
+                schematic=schematic_name(element.designator) + suffix,
+                package=schematic_name(element.designator) if suffix else package,
+                element=element,
+                match=match,
+                plus=nets[channel.plus],
+                minus=nets[channel.minus],
+                positive="" if channel.positive is None else nets[channel.positive],
+                negative="" if channel.negative is None else nets[channel.negative],
+                output=nets[channel.output],
+            )
+        )
+    return found, order.remark if order.basis == "assumed" else ""
+
+
+def _grouped(amplifiers: list[Amplifier]) -> tuple[Amplifier, ...]:
+    """Undo the grouping of sub-units that are not one package.
+
+    `XU3A` and `XU3B` are one package only where both exist and carry the same device; a lone
+    `XUA` or a device with one channel is its own package.
+    """
+    by_package: dict[str, list[Amplifier]] = defaultdict(list)
+    for amplifier in amplifiers:
+        by_package[amplifier.package].append(amplifier)
+    result = []
+    for amplifier in amplifiers:
+        mates = by_package[amplifier.package]
+        same = {m.match.device.family if m.match.device else m.match.name for m in mates}
+        channels = amplifier.match.channels
+        fits = channels is None or len(mates) <= max(channels, 1)
+        alone = len(mates) == 1 and amplifier.element.kind != "ic"
+        if len(same) > 1 or not fits or alone:
+            result.append(msgspec.structs.replace(amplifier, package=amplifier.schematic))
+        else:
+            result.append(amplifier)
+    return tuple(result)
+
+
+def _is_amplifier(element: Element, circuit: Circuit) -> bool:
+    control = element.control
+    if control is None or control.gain is None or len(control.nets) != 2:
+        return False
+    if abs(control.gain) < CONTROLLED_GAIN or element.nets[1] != GROUND:
+        return False
+    # A supply or a test source that happens to have a high gain drives nothing back.
+    return element.nets[0] != GROUND and len(set(control.nets)) == 2 and bool(circuit.elements)
+
+
+def _controlled(element: Element) -> Amplifier:
+    control = element.control
+    if control is None or control.gain is None:  # _is_amplifier has looked
+        raise ValueError(element.designator)
+    plus, minus = control.nets if control.gain > 0 else control.nets[::-1]
+    return Amplifier(
+        designator=element.designator,
+        schematic=element.designator,
+        package=element.designator,
+        element=element,
+        match=Match(name="controlled source", sort="generic"),
+        plus=plus,
+        minus=minus,
+        positive="",
+        negative="",
+        output=element.nets[0],
+        gain=abs(control.gain),
+    )
+
+
+_AUTOMATIC = re.compile(r"(?i)^(n?\d+|net-?[._(].*|n\$\d+|\$n_\d+|nc[_-]?\d*|unconnected.*|\?.*)$")
+
+
+def is_automatic(net: str) -> bool:
+    """Tell whether a net's name was made by a program, not by a person."""
+    return bool(_AUTOMATIC.match(net.rsplit(".", 1)[-1]))

@@ -1,0 +1,250 @@
+"""The circuit solved: operating point, ranges, loops, passive view, all in one value."""
+
+from collections.abc import Mapping
+
+import msgspec
+import numpy as np
+
+from railguard.analysis.available import output_reach
+from railguard.analysis.corners import Nuisance, Spread, spread
+from railguard.analysis.dcpaths import DcMap
+from railguard.analysis.loops import (
+    OPEN_BETA,
+    SURE_DEGREES,
+    LoopSweep,
+    bounding_parasitics,
+    crossing,
+    crossover_margins,
+    known_parasitics,
+    phase_margin,
+    small_signal,
+    sweep,
+)
+from railguard.analysis.network import Network, Real, open_loop_gain
+from railguard.analysis.rails import rail_tolerance
+from railguard.analysis.ranges import Answers, answer
+from railguard.analysis.recognise import Amplifier
+from railguard.analysis.signals import Prepared
+from railguard.analysis.solve import Factor, factor, return_ratios
+from railguard.analysis.supplies import Feed
+from railguard.analysis.surroundings import (
+    MID_HERTZ,
+    Passive,
+    Ways,
+    bridge_resistors,
+    passive_view,
+)
+from railguard.circuit.model import GROUND, Element
+from railguard.settings.model import Settings
+from railguard.words import Use
+
+
+class Solution(msgspec.Struct, frozen=True, kw_only=True):
+    """Everything the stages are read from.
+
+    forced   amplifiers without a working loop: their output stands at either limit
+    margins  phase margin by amplifier, where what matters is listed
+    bent     amplifiers whose loop runs through a transistor
+    """
+
+    prepared: Prepared
+    amplifiers: tuple[Amplifier, ...]
+    answers: Answers
+    passive: Passive
+    ways: Ways
+    dc_map: DcMap
+    swept: LoopSweep
+    forced: frozenset[str]
+    margins: Mapping[str, float]
+    spread: Spread
+    mid: Factor
+    tops: tuple[float, ...]
+
+
+def solve(
+    prepared: Prepared,
+    amplifiers: tuple[Amplifier, ...],
+    feeds: Mapping[str, Feed],
+    settings: Settings,
+) -> Solution:
+    """Solve a circuit.
+
+    Raises  SolveError
+    """
+    known = known_parasitics(amplifiers)
+    elements, bent = small_signal(prepared.elements)
+    network = Network(prepared.elements, amplifiers, extra=known)
+    loop_network = Network(elements, amplifiers, extra=known) if bent else network
+    signs = return_ratios(loop_network, np.zeros(1))[0].real
+    forced = _without_loop(amplifiers, signs, settings)
+    if forced:
+        network = Network(prepared.elements, amplifiers, forced, known)
+        loop_network = Network(elements, amplifiers, forced, known) if bent else network
+    draws = _quiescent(amplifiers, feeds)
+    answers = answer(network, amplifiers, prepared, draws, {})
+    if forced:
+        answers = answer(network, amplifiers, prepared, draws, _limits(answers, forced))
+    tops = tuple(sorted({t.top for t in prepared.tones if t.top > 0}))
+    swept = sweep(loop_network, tops)
+    swept = msgspec.structs.replace(swept, dc=signs)
+    return Solution(
+        prepared=prepared,
+        amplifiers=amplifiers,
+        answers=answers,
+        passive=passive_view(prepared.elements, amplifiers),
+        ways=Ways(prepared.elements, amplifiers),
+        dc_map=DcMap(prepared.elements, amplifiers, _stated(prepared, feeds, settings)),
+        swept=swept,
+        forced=forced,
+        margins=_margins(swept, elements, amplifiers, forced),
+        spread=_spread(answers, prepared, amplifiers, feeds, settings),
+        mid=factor(network, MID_HERTZ),
+        tops=tops,
+    )
+
+
+def _without_loop(
+    amplifiers: tuple[Amplifier, ...], signs: Real, settings: Settings
+) -> frozenset[str]:
+    forced = set()
+    for amplifier, a_beta in zip(amplifiers, signs, strict=True):
+        use = stated_use(amplifier, settings)
+        if use in ("comparator", "oscillator") or a_beta / open_loop_gain(amplifier) < OPEN_BETA:
+            forced.add(amplifier.designator)
+    return frozenset(forced)
+
+
+def stated_use(amplifier: Amplifier, settings: Settings) -> Use | None:
+    """Return what the user says a stage is meant to be."""
+    for name in (amplifier.designator, amplifier.schematic):
+        if name in settings.uses:
+            return settings.uses[name]
+    return None
+
+
+def _quiescent(amplifiers: tuple[Amplifier, ...], feeds: Mapping[str, Feed]) -> dict[str, float]:
+    """Return the quiescent current each rail gives, A; positive is taken from the net."""
+    draws: dict[str, float] = {}
+    for amplifier in amplifiers:
+        device = amplifier.match.device
+        amps = device.supply_current.typical if device is not None else None
+        if not amps or not amplifier.has_supply:
+            continue
+        for net, sign in ((amplifier.positive, 1.0), (amplifier.negative, -1.0)):
+            if net != GROUND and net in feeds and feeds[net].held:
+                draws[net] = draws.get(net, 0.0) + sign * amps
+    return draws
+
+
+def _limits(answers: Answers, forced: frozenset[str]) -> dict[str, tuple[float, float]]:
+    """Return middle and half range of each forced output, V: its limits on its rails, unloaded."""
+    held = {}
+    for k, amplifier in enumerate(answers.amplifiers):
+        if amplifier.designator not in forced or not amplifier.has_supply:
+            continue
+        positive = float(answers.level[answers.at(k, "positive")])
+        negative = float(answers.level[answers.at(k, "negative")])
+        device = amplifier.match.device
+        ends = []
+        for upper in (True, False):
+            reach = output_reach(device, positive, negative, upper, lambda _volts: 0.0)
+            found = reach.typical if reach.typical is not None else reach.guaranteed
+            ends.append(found if found is not None else (positive if upper else negative))
+        held[amplifier.designator] = (sum(ends) / 2, abs(ends[0] - ends[1]) / 2)
+    return held
+
+
+def _stated(prepared: Prepared, feeds: Mapping[str, Feed], settings: Settings) -> set[str]:
+    """Return the nets whose potential somebody states."""
+    nets = set(settings.nets) | {f.net for f in feeds.values() if f.held}
+    nets |= {f.at for f in feeds.values() if f.held and f.at}
+    nets |= {net for signal in settings.signals for net in (signal.between or (signal.name,))}
+    nets |= {
+        net
+        for element in prepared.elements
+        if element.kind in ("V", "battery") and GROUND in element.nets[:2]
+        for net in element.nets[:2]
+    }
+    return nets
+
+
+def _margins(
+    swept: LoopSweep,
+    elements: tuple[Element, ...],
+    amplifiers: tuple[Amplifier, ...],
+    forced: frozenset[str],
+) -> dict[str, float]:
+    """Return phase margins that do not hang on a figure nobody lists."""
+    crossovers, listed = {}, {}
+    for k, amplifier in enumerate(amplifiers):
+        if amplifier.designator in forced or amplifier.match.device is None:
+            continue
+        at = crossing(swept.hertz, np.abs(swept.a_beta[:, k]))
+        if at is not None:
+            crossovers[amplifier.designator] = at
+            listed[amplifier.designator] = phase_margin(swept.hertz, swept.a_beta[:, k], at)
+    if not crossovers:
+        return {}
+    bounding = Network(elements, amplifiers, forced, bounding_parasitics(amplifiers))
+    bounds = crossover_margins(bounding, crossovers)
+    return {
+        name: margin
+        for name, margin in listed.items()
+        if name in bounds and abs(bounds[name] - margin) <= SURE_DEGREES
+    }
+
+
+def _spread(
+    answers: Answers,
+    prepared: Prepared,
+    amplifiers: tuple[Amplifier, ...],
+    feeds: Mapping[str, Feed],
+    settings: Settings,
+) -> Spread:
+    exempt = bridge_resistors(prepared.elements, amplifiers)
+    rails: dict[str, tuple[float, float, bool]] = {}
+    volts = {d.injection: d.value for d in prepared.levels}
+    holders = {
+        net: e.designator
+        for e in prepared.elements
+        if e.kind in ("V", "battery") and GROUND in e.nets[:2]
+        for net in e.nets[:2]
+        if net != GROUND
+    }
+    for feed in feeds.values():
+        names = {feed.source, holders.get(feed.at, ""), *_chain(feed, prepared)}
+        share, stated = rail_tolerance(feed, settings)
+        for name in names:
+            if name in volts:
+                rails[name] = (volts[name], share, stated)
+    for net, level in settings.nets.items():
+        name = holders.get(net, "")
+        if name in volts and level.tolerance is not None:
+            rails[name] = (volts[name], level.tolerance, True)
+    nuisances = {}
+    for amplifier in amplifiers:
+        device = amplifier.match.device
+        if device is not None:
+            nuisances[amplifier.designator] = Nuisance(
+                device.offset_voltage.best or 0.0, device.bias_current.best or 0.0
+            )
+    return spread(answers, prepared.elements, exempt, settings.tolerances, rails, nuisances)
+
+
+def _chain(feed: Feed, prepared: Prepared) -> set[str]:
+    """Return the sources stacked behind a rail's own: a split supply on top of a battery."""
+    chain: set[str] = set()
+    by_net: dict[str, list[tuple[str, str]]] = {}
+    for element in prepared.elements:
+        if element.kind in ("V", "battery"):
+            a, b = element.nets[:2]
+            by_net.setdefault(a, []).append((element.designator, b))
+            by_net.setdefault(b, []).append((element.designator, a))
+    queue, seen = [feed.at], {feed.at, GROUND}
+    while queue:
+        for name, other in by_net.get(queue.pop(), ()):
+            chain.add(name)
+            if other not in seen:
+                seen.add(other)
+                queue.append(other)
+    return chain

@@ -1,0 +1,119 @@
+"""Solving (G + sC) x = b, forwards and adjoint, each factorisation used for everything.
+
+Dense numpy up to a few hundred unknowns; above that scipy's sparse factorisation, imported only
+then because the import alone costs as much as a whole review.
+"""
+
+from typing import Protocol
+
+import numpy as np
+
+from railguard.analysis.network import Complex, Network, Real
+from railguard.errors import SolveError
+
+DENSE_LIMIT = 400
+"""Unknowns up to which a dense inverse is cheaper than a sparse factorisation."""
+
+
+class Factor(Protocol):
+    """One factorised matrix M = G + sC."""
+
+    def forward(self, b: Complex) -> Complex:
+        """Return M^-1 b; b of shape (unknowns,) or (unknowns, columns)."""
+        ...
+
+    def adjoint(self, rows: list[int]) -> Complex:
+        """Return the rows of M^-1, shape (len(rows), unknowns); a row of -1 gives zeros."""
+        ...
+
+
+class _Dense:
+    def __init__(self, matrix: Complex | Real) -> None:
+        try:
+            self._inverse = np.linalg.inv(matrix)
+        except np.linalg.LinAlgError as error:
+            raise SolveError("The circuit's equations have no single answer.") from error
+
+    def forward(self, b: Complex) -> Complex:
+        return np.asarray(self._inverse @ b, dtype=np.complex128)
+
+    def adjoint(self, rows: list[int]) -> Complex:
+        picked = np.array(self._inverse[rows, :], dtype=np.complex128)
+        picked[np.array(rows) < 0] = 0.0
+        return picked
+
+
+class _Sparse:
+    def __init__(self, network: Network, s: complex) -> None:
+        # scipy costs as much to import as the whole start-up; only large circuits need it.
+        from scipy.sparse import csc_matrix
+        from scipy.sparse.linalg import splu
+
+        matrix = csc_matrix(network.g + s * network.c)
+        self._size = network.size
+        try:
+            self._factor = splu(matrix.astype(np.complex128))
+        except RuntimeError as error:
+            raise SolveError("The circuit's equations have no single answer.") from error
+
+    def forward(self, b: Complex) -> Complex:
+        return np.asarray(self._factor.solve(np.ascontiguousarray(b, dtype=np.complex128)))
+
+    def adjoint(self, rows: list[int]) -> Complex:
+        picks = np.zeros((self._size, len(rows)), dtype=np.complex128)
+        for column, row in enumerate(rows):
+            if row >= 0:
+                picks[row, column] = 1.0
+        return np.asarray(self._factor.solve(picks, "T")).T
+
+
+def factor(network: Network, hertz: float) -> Factor:
+    """Factor the network at one frequency; 0 is DC.
+
+    Raises  SolveError: no single answer (the network ties floating nets down, so this means
+            sources that contradict each other in a way a search through the nets does not see)
+    """
+    s = 2j * np.pi * hertz
+    if network.size <= DENSE_LIMIT:
+        matrix = network.g if hertz == 0 else network.g + s * network.c
+        return _Dense(np.asarray(matrix))
+    return _Sparse(network, s)
+
+
+def return_ratios(network: Network, hertz: np.ndarray[tuple[int], np.dtype[np.float64]]) -> Complex:
+    """Return each amplifier's own loop transmission A*beta, all others active.
+
+    hertz    shape (frequencies,)
+    returns  shape (frequencies, amplifiers): positive real is negative feedback. Zero for an
+             amplifier that is forced.
+
+    With z = (v+ - v-) per unit entry in an amplifier's row, breaking its loop by itself gives
+    w = z / (1 + z) and A*beta = -w (Sherman-Morrison on the row).
+
+    Source  H. W. Bode, Network Analysis and Feedback Amplifier Design, return ratio; from memory
+    """
+    rows = [network.outputs.get(a.designator, -1) for a in network.amplifiers]
+    picks = np.zeros((network.size, len(rows)), dtype=np.complex128)
+    for column, row in enumerate(rows):
+        if row >= 0:
+            picks[row, column] = 1.0
+    result = np.zeros((len(hertz), len(rows)), dtype=np.complex128)
+    if network.size <= DENSE_LIMIT:
+        s = (2j * np.pi * hertz)[:, None, None]
+        try:
+            solved = np.linalg.solve(network.g + s * network.c, picks[None, :, :])
+        except np.linalg.LinAlgError as error:
+            raise SolveError("The circuit's equations have no single answer.") from error
+    else:
+        solved = np.stack([factor(network, float(f)).forward(picks) for f in hertz])
+    for column, amplifier in enumerate(network.amplifiers):
+        if rows[column] < 0 or amplifier.designator in network.forced:
+            continue
+        plus, minus = network.row(amplifier.plus), network.row(amplifier.minus)
+        z = np.zeros(len(hertz), dtype=np.complex128)
+        if plus >= 0:
+            z += solved[:, plus, column]
+        if minus >= 0:
+            z -= solved[:, minus, column]
+        result[:, column] = -z / (1.0 + z)
+    return result

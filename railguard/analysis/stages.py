@@ -1,0 +1,213 @@
+"""Each amplifier's stage, read from the solved circuit."""
+
+from collections.abc import Mapping
+
+import msgspec
+import numpy as np
+
+from railguard.analysis.allowed import allowed_inputs
+from railguard.analysis.inputs import inputs_of
+from railguard.analysis.loops import loop_of
+from railguard.analysis.outputs import output_side
+from railguard.analysis.positive import with_thresholds
+from railguard.analysis.reach import band_of, gains_of, is_ac_coupled, top_of
+from railguard.analysis.recognise import Amplifier
+from railguard.analysis.solution import Solution, stated_use
+from railguard.analysis.stage import (
+    Inputs,
+    Output,
+    Part,
+    Pin,
+    Range,
+    Stage,
+    Supply,
+    Unknown,
+)
+from railguard.analysis.supplies import Feed
+from railguard.analysis.surroundings import feedback_of, output_load
+from railguard.analysis.thermal import dissipation, junction
+from railguard.analysis.topology import topology_of
+from railguard.analysis.unseen import Spoiled
+from railguard.analysis.view import View
+from railguard.circuit.model import GROUND
+from railguard.settings.model import Settings
+from railguard.words import Basis, Use
+
+WEAK = 1e-6
+"""A share of an output below this at an input is no connection."""
+
+
+def stages_of(
+    solution: Solution,
+    feeds: Mapping[str, Feed],
+    settings: Settings,
+    spoiled: list[Spoiled],
+    rails: frozenset[str],
+) -> tuple[Stage, ...]:
+    """Build the stage of every amplifier of a solved circuit."""
+    views = [View(solution, k, spoiled) for k in range(len(solution.amplifiers))]
+    after = [_after(view) for view in views]
+    drafts = [_stage(view, feeds, settings, rails, after) for view in views]
+    allowed = allowed_inputs(solution, drafts)
+    return tuple(
+        msgspec.structs.replace(stage, allowed=allowed.get(stage.designator)) for stage in drafts
+    )
+
+
+def _after(view: View) -> tuple[str, ...]:
+    """Return the amplifiers whose output reaches this one's inputs without passing a third."""
+    passive, amplifier = view.solution.passive, view.amplifier
+    rows = [passive.network.row(amplifier.plus), passive.network.row(amplifier.minus)]
+    dc, mid = passive.dc.adjoint(rows), passive.mid.adjoint(rows)
+    found = []
+    for other in view.solution.amplifiers:
+        row = passive.network.outputs.get(other.designator, -1)
+        if other is amplifier or row < 0:
+            continue
+        if max(float(np.abs(dc[:, row]).max()), float(np.abs(mid[:, row]).max())) > WEAK:
+            found.append(other.designator)
+    return tuple(found)
+
+
+def _stage(
+    view: View,
+    feeds: Mapping[str, Feed],
+    settings: Settings,
+    rails: frozenset[str],
+    after: list[tuple[str, ...]],
+) -> Stage:
+    solution, amplifier, device = view.solution, view.amplifier, view.amplifier.match.device
+    name = amplifier.designator
+    unknown: dict[Part, Unknown] = {}
+    supply = _supply(view, feeds, unknown)
+    top = top_of(view)
+    loop = loop_of(amplifier, view.k, solution.swept, top, solution.margins.get(name))
+    use, use_stated = _use(amplifier, settings)
+    working = name not in solution.forced and name in solution.answers.network.outputs
+    loop = with_thresholds(view, loop, after)
+    feedback = feedback_of(amplifier, solution.passive, solution.ways, solution.answers)
+    load = output_load(amplifier, solution.passive)
+    current, output = output_side(view, supply, load, working, unknown)
+    inputs = inputs_of(view, supply, rails, working, unknown)
+    _device_unknown(view, unknown)
+    if loop.dc is None or name not in solution.answers.network.outputs:
+        unknown["loop"] = Unknown(
+            f"the output of {name} is tied to {amplifier.output}, which something else holds",
+            "see the finding on it",
+        )
+    heat = dissipation(device, supply, output, current, load)
+    return Stage(
+        designator=name,
+        schematic=amplifier.schematic,
+        device=amplifier.match.name,
+        family=device,
+        package=amplifier.package,
+        topology=topology_of(amplifier, solution.ways, loop, rails),
+        use=use,
+        use_stated=use_stated,
+        supply=supply,
+        output=output,
+        current=current,
+        inputs=inputs,
+        loop=loop,
+        feedback=feedback,
+        dissipation=heat,
+        junction=junction(device, heat, settings),
+        gain=gains_of(view),
+        after=after[view.k],
+        generic=amplifier.match.sort == "generic",
+        ac_coupled=is_ac_coupled(view),
+        band=band_of(view),
+        unknown=unknown,
+        location=amplifier.element.location,
+    )
+
+
+def _supply(view: View, feeds: Mapping[str, Feed], unknown: dict[Part, Unknown]) -> Supply:
+    amplifier = view.amplifier
+    if not amplifier.has_supply:
+        unknown["supply"] = Unknown(
+            f"{amplifier.designator} has no supply pins in the netlist",
+            "an op-amp card with its supply pins",
+        )
+        return Supply(pins=False)
+    levels: list[float | None] = []
+    worst: list[Range] = []
+    stated: list[bool] = []
+    basis: Basis = "netlist"
+    for net, quantity in ((amplifier.positive, "positive"), (amplifier.negative, "negative")):
+        feed = feeds.get(net)
+        held = net == GROUND or (feed is not None and feed.held)
+        level = view.level(quantity) if held else None
+        levels.append(level)
+        if not held:
+            unknown["supply"] = Unknown(
+                f"nothing states the level of {net}, the supply of {amplifier.designator}",
+                f'[nets] "{net}" = {{ volts = ... }}',
+            )
+        if feed is not None and feed.basis == "user":
+            basis = "user"
+        excursion = 0.0
+        if level is not None:
+            q = view.at(quantity)
+            mask = ~view.solution.spread.error
+            moves = np.abs(view.solution.spread.high[q]) * view.solution.spread.delta * mask
+            excursion = float(moves.sum())
+            stated.append(
+                bool((moves * view.solution.spread.stated).sum() >= 0.5 * moves.sum() > 0)
+            )
+        worst.append(Range() if level is None else Range(level - excursion, level + excursion))
+    return Supply(
+        positive=levels[0],
+        negative=levels[1],
+        positive_net=amplifier.positive,
+        negative_net=amplifier.negative,
+        basis=basis,
+        positive_worst=worst[0],
+        negative_worst=worst[1],
+        tolerance_stated=bool(stated) and any(stated),
+    )
+
+
+def _use(amplifier: Amplifier, settings: Settings) -> tuple[Use, bool]:
+    stated = stated_use(amplifier, settings)
+    return (stated, True) if stated else ("linear", False)
+
+
+def _device_unknown(view: View, unknown: dict[Part, Unknown]) -> None:
+    match = view.amplifier.match
+    if match.device is not None:
+        return
+    if match.sort == "generic":
+        why = f"{view.amplifier.designator} is an amplifier without a type ({match.name})"
+    else:
+        near = f"; the nearest name is {match.nearest}" if match.nearest else ""
+        why = f"{match.name} is not in the catalogue{near}"
+    unknown["device"] = Unknown(why, "a device name, or [[devices]] with its data-sheet figures")
+
+
+def unsolved(amplifiers: tuple[Amplifier, ...], why: str, settings: Settings) -> tuple[Stage, ...]:
+    """Return stages of a circuit that could not be solved: nothing is known, and why."""
+    reason = Unknown(why, "see the finding on it")
+    parts: tuple[Part, ...] = ("supply", "output", "current", "input", "bias", "loop")
+    stages = []
+    for amplifier in amplifiers:
+        use, stated = _use(amplifier, settings)
+        stages.append(
+            Stage(
+                designator=amplifier.designator,
+                schematic=amplifier.schematic,
+                device=amplifier.match.name,
+                family=amplifier.match.device,
+                package=amplifier.package,
+                topology="other",
+                use=use,
+                use_stated=stated,
+                output=Output(net=amplifier.output),
+                inputs=Inputs(plus=Pin(net=amplifier.plus), minus=Pin(net=amplifier.minus)),
+                generic=amplifier.match.sort == "generic",
+                unknown=dict.fromkeys(parts, reason),
+                location=amplifier.element.location,
+            )
+        )
+    return tuple(stages)

@@ -1,0 +1,49 @@
+"""Heat: quiescent power, the output stage at its worst, and the junction."""
+
+import numpy as np
+
+from railguard.analysis.stage import Current, Output, Supply
+from railguard.devices.model import Device
+from railguard.settings.model import Settings
+
+ROOM = 25.0
+"""Degrees Celsius where no ambient is stated."""
+_STEPS = 21
+
+
+def dissipation(
+    device: Device | None,
+    supply: Supply,
+    output: Output,
+    current: Current,
+    load: float | None,
+) -> float | None:
+    """Return one channel's power, W: quiescent plus the output stage at its worst level.
+
+    None where the quiescent current, the rails or the output's range are not known.
+
+    Source  TI OPA548 SBOS070D, power dissipation; Intersil FN6377
+    """
+    iq = device.supply_current.best if device is not None else None
+    low, high, level = output.demand.low, output.demand.high, output.level
+    if iq is None or supply.positive is None or supply.negative is None or supply.total is None:
+        return None
+    if low is None or high is None or level is None or current.demand_source is None:
+        return None
+    amps = current.source.level or 0.0
+    slope = 1.0 / load if load else 0.0
+    volts = np.clip(np.linspace(low, high, _STEPS), supply.negative, supply.positive)
+    line = amps + slope * (volts - level)
+    stage = np.where(line > 0, (supply.positive - volts) * line, (supply.negative - volts) * line)
+    return supply.total * iq + float(np.max(stage))
+
+
+def junction(device: Device | None, watts: float | None, settings: Settings) -> float | None:
+    """Return the junction temperature at the hottest ambient, degrees Celsius.
+
+    The package is not in the netlist, so the listed one with the highest resistance counts.
+    """
+    if device is None or watts is None or not device.theta:
+        return None
+    hottest = settings.ambient[1] if settings.ambient is not None else ROOM
+    return hottest + max(device.theta.values()) * watts

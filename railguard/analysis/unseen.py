@@ -1,0 +1,229 @@
+"""What the netlist does not tell, and which numbers that spoils.
+
+A net that leaves the sheet may take or bring any current; a small-signal probe states no
+amplitude; a conducting diode or a transistor follows no straight line. Each is an injection into
+the solved circuit: a quantity it does not move stays known, one it moves at DC has no number, one
+it moves only at signal frequencies keeps its DC number and is listed as not checked.
+"""
+
+import re
+from collections.abc import Iterable
+
+import msgspec
+import numpy as np
+
+from railguard.analysis.dcpaths import leaves_sheet
+from railguard.analysis.network import Complex, Network, Real
+from railguard.analysis.ranges import QUANTITIES, Answers
+from railguard.analysis.signals import Unstated
+from railguard.analysis.solve import Factor
+from railguard.circuit.model import Circuit, Element
+from railguard.settings.model import Settings
+
+VOLTS_PER_VOLT = 1e-4
+"""A transfer below this is no influence."""
+VOLTS_PER_AMPERE = 10.0
+"""A net moves by less than 10 mV per milliampere: it is held."""
+AMPERES_PER_AMPERE = 1e-3
+FORWARD_VOLTS = 0.3
+"""Below this a silicon diode's current is microamperes: common practice, no source."""
+BREAKDOWN_VOLTS = 2.0
+_ZENER = re.compile(
+    r"(?i)(BZ[VXT]|1N47\d\d|1N52\d\d|MMSZ|ZENER|ZPD|SMBJ|TVS|LM4040|LM385|TL431|REF)"
+)
+
+
+class Unseen(msgspec.Struct, frozen=True, kw_only=True):
+    """One thing the netlist does not tell.
+
+    sort  "signal" (no amplitude stated), "load" (the net leaves the sheet) or "bend" (follows no
+          straight line)
+    rows  (row, sign) entries of b for one unit of it
+    volts True: the unit is a volt; False: an ampere
+    net   where it acts
+    """
+
+    sort: str
+    why: str
+    add: str
+    rows: tuple[tuple[int, float], ...]
+    volts: bool
+    net: str
+
+
+class Spoiled(msgspec.Struct, frozen=True):
+    """Which unseen things move a quantity: at DC, and at signal frequencies only."""
+
+    dc: tuple[Unseen, ...]
+    ac: tuple[Unseen, ...]
+
+
+def unseen_things(
+    circuit: Circuit,
+    elements: Iterable[Element],
+    own: frozenset[str],
+    unstated: Iterable[Unstated],
+    settings: Settings,
+    answers: Answers,
+) -> tuple[Unseen, ...]:
+    """Collect everything the netlist does not tell about a solved circuit.
+
+    own  designators of the amplifiers' cards
+    """
+    network = answers.network
+    found: list[Unseen] = []
+    for item in unstated:
+        if item.injection in network.injections:
+            row = network.injections[item.injection].row
+            rows = ((row, 1.0),) if row >= 0 else ()
+            found.append(
+                Unseen(
+                    sort="signal", why=item.what, add=item.add, rows=rows, volts=True, net=item.net
+                )
+            )
+    told = {load.net for load in settings.loads} | set(settings.nets)
+    told |= {net for signal in settings.signals for net in (signal.between or (signal.name,))}
+    for element in elements:
+        if element.designator in own or not element.fitted:
+            continue
+        if element.kind == "D":
+            found += _diode(element, circuit, answers)
+        elif element.kind in ("Q", "J", "M"):
+            found += _transistor(element, network)
+        elif leaves_sheet(element):
+            found += _leaving(element, network, told)
+    return tuple(found)
+
+
+def _leaving(element: Element, network: Network, told: set[str]) -> list[Unseen]:
+    found = []
+    if element.kind == "B" and element.designator in network.injections:
+        row = network.injections[element.designator].row
+        why = f"{element.designator} is an expression the built-in solver does not work out"
+        add = f'[nets] "{element.nets[0]}", or --engine ngspice'
+        return [
+            Unseen(
+                sort="bend", why=why, add=add, rows=((row, 1.0),), volts=True, net=element.nets[0]
+            )
+        ]
+    for net in dict.fromkeys(element.nets):
+        row = network.row(net)
+        if row < 0 or net in told:
+            continue
+        found.append(
+            Unseen(
+                sort="load",
+                why=f"net {net} leaves the sheet at {element.designator}",
+                add=f'[signals] "{net}" or [loads] "{net}"',
+                rows=((row, 1.0),),
+                volts=False,
+                net=net,
+            )
+        )
+    return found
+
+
+def _across(answers: Answers, a: str, b: str) -> tuple[float, float]:
+    """Return the lowest and highest voltage between two nets over levels and tones."""
+    network = answers.network
+    rows = (network.row(a), network.row(b))
+
+    def difference(x: Complex | Real) -> complex:
+        first = x[rows[0]] if rows[0] >= 0 else 0.0
+        second = x[rows[1]] if rows[1] >= 0 else 0.0
+        return complex(first - second)
+
+    level = difference(answers.x).real
+    peak = sum(
+        max((abs(difference(w.x)) for w in tone.worst), default=0.0) for tone in answers.tones
+    )
+    return level - peak, level + peak
+
+
+def _diode(element: Element, circuit: Circuit, answers: Answers) -> list[Unseen]:
+    if len(element.nets) < 2:
+        return []
+    anode, cathode = element.nets[:2]
+    lowest, highest = _across(answers, anode, cathode)
+    breakdown = _breakdown(element, circuit)
+    if highest < FORWARD_VOLTS and (breakdown is None or -lowest < breakdown):
+        return []
+    network = answers.network
+    rows = tuple(
+        (row, sign)
+        for row, sign in ((network.row(anode), -1.0), (network.row(cathode), 1.0))
+        if row >= 0
+    )
+    return [
+        Unseen(
+            sort="bend",
+            why=f"it rests on {element.designator}, which conducts",
+            add="--engine ngspice",
+            rows=rows,
+            volts=False,
+            net=anode,
+        )
+    ]
+
+
+def _breakdown(element: Element, circuit: Circuit) -> float | None:
+    model = circuit.models.get(element.model.lower())
+    if model is not None and "bv" in model.parameters:
+        return 0.9 * model.parameters["bv"]
+    return BREAKDOWN_VOLTS if _ZENER.search(element.model) else None
+
+
+def _transistor(element: Element, network: Network) -> list[Unseen]:
+    return [
+        Unseen(
+            sort="bend",
+            why=f"it rests on the transistor {element.designator}",
+            add="--engine ngspice",
+            rows=((network.row(net), 1.0),),
+            volts=False,
+            net=net,
+        )
+        for net in dict.fromkeys(element.nets[:3])
+        if network.row(net) >= 0
+    ]
+
+
+def spoiled(answers: Answers, things: tuple[Unseen, ...], mid: Factor | None) -> list[Spoiled]:
+    """Return, for each quantity, what it is moved by.
+
+    mid  factor at a signal frequency; None where nothing is frequency dependent
+    """
+    rows = [int(r) for r in answers.rows]
+    if not things:
+        return [Spoiled((), ()) for _ in rows]
+    dc = answers.dc.adjoint(rows)
+    ac = dc if mid is None else mid.adjoint(rows)
+    moved_dc = _moved(dc, things)
+    moved_ac = _moved(ac, things)
+    return [
+        Spoiled(
+            tuple(t for k, t in enumerate(things) if moved_dc[q, k]),
+            tuple(t for k, t in enumerate(things) if moved_ac[q, k] and not moved_dc[q, k]),
+        )
+        for q in range(len(rows))
+    ]
+
+
+def _moved(
+    adjoint: Complex, things: tuple[Unseen, ...]
+) -> np.ndarray[tuple[int, int], np.dtype[np.bool_]]:
+    effect = np.zeros((len(adjoint), len(things)))
+    for k, thing in enumerate(things):
+        total = np.zeros(len(adjoint), dtype=np.complex128)
+        for row, sign in thing.rows:
+            total += sign * adjoint[:, row]
+        effect[:, k] = np.abs(total)
+    width = len(QUANTITIES)
+    is_current = np.arange(len(adjoint)) % width == QUANTITIES.index("current")
+    volts = np.array([t.volts for t in things])
+    threshold = np.where(
+        volts[None, :],
+        np.where(is_current[:, None], VOLTS_PER_VOLT * 1e-4, VOLTS_PER_VOLT),
+        np.where(is_current[:, None], AMPERES_PER_AMPERE, VOLTS_PER_AMPERE),
+    )
+    return np.asarray(effect > threshold)
