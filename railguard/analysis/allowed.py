@@ -76,7 +76,7 @@ def _span(
                     )
     if not np.isfinite(low) or not np.isfinite(high):
         return 0.0, 0.0, "", reached
-    return low, high, limited, reached
+    return float(low), float(high), limited, reached
 
 
 def _tighten(

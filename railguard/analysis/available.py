@@ -10,7 +10,7 @@ from collections.abc import Callable
 import msgspec
 
 from railguard.devices.model import Device, Figure, SwingPoint
-from railguard.devices.swing import drop
+from railguard.devices.swing import Drop, drop
 from railguard.words import Basis
 
 PRACTICE_DROP = (1.0, 2.0)
@@ -57,22 +57,28 @@ def output_reach(
             rail + sign * near, rail + sign * far, "practice", "practice", "common practice"
         )
 
+    def end(level: float) -> Drop:
+        return drop(points, max(current_at(level), 0.0), total)
+
     def settle(which: int) -> tuple[float | None, Basis, str]:
-        level = rail
+        # The end of the swing is where rail, drop and load line meet. The curves are straight
+        # piecewise, so a secant meets them in a few turns.
+        level, before = rail, None
         found: tuple[float | None, Basis, str] = (None, "memory", "")
-        for turn in range(_ROUNDS):
-            amps = max(current_at(level), 0.0)
-            typical, typical_basis, guaranteed, guaranteed_basis, condition = drop(
-                points, amps, total
-            )
-            volts = (typical, guaranteed)[which]
+        for _ in range(_ROUNDS):
+            dropped = end(level)
+            volts = dropped.typical if which == 0 else dropped.guaranteed
+            basis = dropped.typical_basis if which == 0 else dropped.guaranteed_basis
             if volts is None:
-                return None, "memory", condition
-            new = rail + sign * min(volts, total)
-            found = new, (typical_basis, guaranteed_basis)[which], condition
-            if abs(new - level) < 1e-6 * max(total, 1.0):
+                return None, "memory", dropped.condition
+            met = rail + sign * min(volts, total)
+            found = met, basis, dropped.condition
+            gap = met - level
+            if abs(gap) < 1e-6 * total:
                 break
-            level = (new + level) / 2 if turn else new
+            slope = None if before is None else (gap - before[1]) / (level - before[0])
+            before = level, gap
+            level = level - gap / slope if slope is not None and slope < -0.5 else met
         return found
 
     typical, typical_basis, condition = settle(0)

@@ -1,7 +1,9 @@
 """A flat circuit to a design: the analysis from beginning to end."""
 
+from railguard.analysis.clamping import clamps_of, followers_replaced
 from railguard.analysis.kind import kind_of
 from railguard.analysis.rails import packages_of, rails_of
+from railguard.analysis.ranges import Clamp
 from railguard.analysis.recognise import Recognised, recognise
 from railguard.analysis.signals import Prepared, prepare
 from railguard.analysis.solution import Solution, solve
@@ -36,6 +38,12 @@ def analyse(circuit: Circuit, settings: Settings, catalogue: Catalogue) -> Desig
             stages = unsolved(found.amplifiers, error.what, settings)
     if solution is not None:
         stages = _stages(circuit, settings, found, prepared, solution, fed)
+        clamps: dict[str, Clamp] = {}
+        while len(found_clamps := clamps_of(stages, clamps)) > len(clamps):
+            clamps = found_clamps
+            clamped = solve(prepared, found.amplifiers, fed, settings, clamps)
+            real = _stages(circuit, settings, found, prepared, clamped, fed)
+            stages = followers_replaced(stages, real, frozenset(clamps))
         problems += _conflicts(solution)
     return Design(
         circuit=circuit,

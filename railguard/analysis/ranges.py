@@ -4,6 +4,8 @@ Superposition: the DC solution, plus for every tone the largest peak over its ba
 different groups are taken to meet at their worst, so their peaks add.
 """
 
+from collections.abc import Mapping
+
 import msgspec
 import numpy as np
 import numpy.typing as npt
@@ -17,6 +19,14 @@ QUANTITIES = ("output", "current", "plus", "minus", "positive", "negative")
 """Per amplifier: output volts, output amperes (out of the pin), both inputs, both supply pins."""
 
 Index = npt.NDArray[np.int64]
+
+
+class Clamp(msgspec.Struct, frozen=True):
+    """An output that no loop holds: it moves by `half` round `middle` (V), at `hertz`."""
+
+    middle: float
+    half: float
+    hertz: float = 0.0
 
 
 class Worst(msgspec.Struct, frozen=True):
@@ -85,18 +95,18 @@ def answer(
     amplifiers: tuple[Amplifier, ...],
     prepared: Prepared,
     draws: dict[str, float],
-    held: dict[str, tuple[float, float]],
+    held: Mapping[str, Clamp],
 ) -> Answers:
     """Solve the circuit for every level and tone.
 
     draws  amperes of quiescent current by supply net: positive is taken from the net
-    held   middle and half range of the output of each forced amplifier, V
+    held   what the output of each forced amplifier does
 
     Raises  SolveError
     """
     rows = quantity_rows(network, amplifiers)
     levels = [(d.injection, complex(d.value)) for d in prepared.levels]
-    levels += [(name, complex(middle)) for name, (middle, _) in held.items()]
+    levels += [(name, complex(clamp.middle)) for name, clamp in held.items()]
     b = network.right_hand_side(levels)
     for net, amps in draws.items():
         row = network.row(net)
@@ -106,8 +116,8 @@ def answer(
     x = dc.forward(b).real
     level = picked(x, rows)
     tones = [*prepared.tones]
-    for name, (_, half) in held.items():
-        tones.append(Tone(name=name, drives=((name, half),), frequencies=(0.0,)))
+    for name, clamp in held.items():
+        tones.append(Tone(name=name, drives=((name, clamp.half),), frequencies=(clamp.hertz,)))
     factors: dict[float, Factor] = {0.0: dc}
     answers = tuple(_tone(network, tone, rows, factors) for tone in tones)
     peaks = sum((a.peaks for a in answers), np.zeros(len(rows)))

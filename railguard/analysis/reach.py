@@ -1,5 +1,8 @@
 """Which signals reach a stage: its gains, its band, whether they come through a capacitor."""
 
+import numpy as np
+
+from railguard.analysis.solve import factor
 from railguard.analysis.stage import Range
 from railguard.analysis.view import View
 
@@ -56,3 +59,35 @@ def gains_of(view: View) -> tuple[tuple[str, float], ...]:
         if abs(gain) > 1e-6:
             gains.append((net, gain))
     return tuple(gains)
+
+
+_LOWEST_CORNER = 1e-4
+_HALVINGS = 24
+
+
+def high_pass_of(view: View) -> float | None:
+    """Return the -3 dB corner that coupling capacitors give on the way to the output, hertz.
+
+    Looked for below the frequency where the strongest signal is largest; None where no signal is
+    stated, or where the stage passes DC.
+    """
+    q = view.at("output")
+    moved = [t for t in view.answers.tones if t.peaks[q] > 0 and t.hertz[q] > 0]
+    row = int(view.answers.rows[q])
+    if not moved or row < 0 or not is_ac_coupled(view):
+        return None
+    tone = max(moved, key=lambda t: float(t.peaks[q]))
+    network = view.answers.network
+    b = network.right_hand_side(tone.tone.drives)
+    target = float(tone.peaks[q]) / np.sqrt(2.0)
+
+    def size(hertz: float) -> float:
+        return abs(complex(factor(network, hertz).forward(b)[row]))
+
+    low, high = _LOWEST_CORNER, float(tone.hertz[q])
+    if size(low) >= target:
+        return None
+    for _ in range(_HALVINGS):
+        middle = float(np.sqrt(low * high))
+        low, high = (middle, high) if size(middle) < target else (low, middle)
+    return float(np.sqrt(low * high))

@@ -1,6 +1,7 @@
 """The circuit solved: operating point, ranges, loops, passive view, all in one value."""
 
 from collections.abc import Mapping
+from types import MappingProxyType
 
 import msgspec
 import numpy as np
@@ -22,7 +23,7 @@ from railguard.analysis.loops import (
 )
 from railguard.analysis.network import Network, Real, open_loop_gain
 from railguard.analysis.rails import rail_tolerance
-from railguard.analysis.ranges import Answers, answer
+from railguard.analysis.ranges import Answers, Clamp, answer
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.signals import Prepared
 from railguard.analysis.solve import Factor, factor, return_ratios
@@ -66,8 +67,11 @@ def solve(
     amplifiers: tuple[Amplifier, ...],
     feeds: Mapping[str, Feed],
     settings: Settings,
+    clamps: Mapping[str, Clamp] = MappingProxyType({}),
 ) -> Solution:
     """Solve a circuit.
+
+    clamps  outputs that cannot follow: each is held to what it reaches, at its own frequency
 
     Raises  SolveError
     """
@@ -76,14 +80,15 @@ def solve(
     network = Network(prepared.elements, amplifiers, extra=known)
     loop_network = Network(elements, amplifiers, extra=known) if bent else network
     signs = return_ratios(loop_network, np.zeros(1))[0].real
-    forced = _without_loop(amplifiers, signs, settings)
+    forced = _without_loop(amplifiers, signs, settings) | frozenset(clamps)
     if forced:
         network = Network(prepared.elements, amplifiers, forced, known)
         loop_network = Network(elements, amplifiers, forced, known) if bent else network
     draws = _quiescent(amplifiers, feeds)
     answers = answer(network, amplifiers, prepared, draws, {})
     if forced:
-        answers = answer(network, amplifiers, prepared, draws, _limits(answers, forced))
+        held = {**_limits(answers, forced), **clamps}
+        answers = answer(network, amplifiers, prepared, draws, held)
     tops = tuple(sorted({t.top for t in prepared.tones if t.top > 0}))
     swept = sweep(loop_network, tops)
     swept = msgspec.structs.replace(swept, dc=signs)
@@ -136,9 +141,9 @@ def _quiescent(amplifiers: tuple[Amplifier, ...], feeds: Mapping[str, Feed]) -> 
     return draws
 
 
-def _limits(answers: Answers, forced: frozenset[str]) -> dict[str, tuple[float, float]]:
+def _limits(answers: Answers, forced: frozenset[str]) -> dict[str, Clamp]:
     """Return middle and half range of each forced output, V: its limits on its rails, unloaded."""
-    held = {}
+    held: dict[str, Clamp] = {}
     for k, amplifier in enumerate(answers.amplifiers):
         if amplifier.designator not in forced or not amplifier.has_supply:
             continue
@@ -150,7 +155,7 @@ def _limits(answers: Answers, forced: frozenset[str]) -> dict[str, tuple[float, 
             reach = output_reach(device, positive, negative, upper, lambda _volts: 0.0)
             found = reach.typical if reach.typical is not None else reach.guaranteed
             ends.append(found if found is not None else (positive if upper else negative))
-        held[amplifier.designator] = (sum(ends) / 2, abs(ends[0] - ends[1]) / 2)
+        held[amplifier.designator] = Clamp(sum(ends) / 2, abs(ends[0] - ends[1]) / 2)
     return held
 
 

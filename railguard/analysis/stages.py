@@ -10,7 +10,7 @@ from railguard.analysis.inputs import inputs_of
 from railguard.analysis.loops import loop_of
 from railguard.analysis.outputs import output_side
 from railguard.analysis.positive import with_thresholds
-from railguard.analysis.reach import band_of, gains_of, is_ac_coupled, top_of
+from railguard.analysis.reach import band_of, gains_of, high_pass_of, is_ac_coupled, top_of
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.solution import Solution, stated_use
 from railguard.analysis.stage import (
@@ -118,6 +118,7 @@ def _stage(
         generic=amplifier.match.sort == "generic",
         ac_coupled=is_ac_coupled(view),
         band=band_of(view),
+        high_pass=high_pass_of(view),
         unknown=unknown,
         location=amplifier.element.location,
     )

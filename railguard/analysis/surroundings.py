@@ -148,7 +148,7 @@ def _load_of(first: list[Element], amplifier: Amplifier, passive: Passive) -> fl
         other = element.nets[1] if element.nets[0] == amplifier.output else element.nets[0]
         row = network.row(other)
         siemens += (1.0 - (x[row] if row >= 0 else 0.0)) / (element.value or np.inf)
-    return 1.0 / siemens if siemens > TINY else None
+    return float(1.0 / siemens) if siemens > TINY else None
 
 
 def _peak_current(first: list[Element], amplifier: Amplifier, answers: Answers) -> float:
@@ -171,7 +171,7 @@ def _peak_current(first: list[Element], amplifier: Amplifier, answers: Answers) 
                 total += siemens * (worst.x[out] - (worst.x[row] if row >= 0 else 0.0))
             peaks.append(abs(total))
         swing += max(peaks, default=0.0)
-    return abs(level) + swing
+    return float(abs(level) + swing)
 
 
 def output_load(amplifier: Amplifier, passive: Passive) -> float | None:
