@@ -78,6 +78,8 @@ class Device(msgspec.Struct, frozen=True, kw_only=True):
     supply_*     total supply, V
     current_known  output current a device is known to give because its swing is tested at it
     theta        kelvin per watt by package name
+    input_reach  input limit measured upward from the *negative* rail, V, where the sheet allows
+                 inputs above the positive rail; it then stands in place of `input_high`
     """
 
     family: str
@@ -116,6 +118,7 @@ class Device(msgspec.Struct, frozen=True, kw_only=True):
     temperature: tuple[float, float] | None = None
     theta: Mapping[str, float] = {}
     theta_basis: Basis = "practice"
+    input_reach: float | None = None
     conditions: str = ""
     sheet_supply: float | None = None
     source: SheetSource = SheetSource(title="")

@@ -1,0 +1,180 @@
+"""The catalogue: families by name, loaded one by one when they are asked for.
+
+`data/` holds one TOML file per family, the truth. `data/index.json` is made from them (and a test
+holds it equal): which names lead to which family, so that reading one netlist costs one or two
+small TOML files, not all of them.
+"""
+
+import tomllib
+from collections.abc import Iterator, Mapping, Sequence
+from functools import lru_cache
+from pathlib import Path
+
+import msgspec
+
+from railguard.devices import match as matching
+from railguard.devices.model import Device, Match
+from railguard.devices.tables import FamilyTable, device_of, read_table
+from railguard.errors import CatalogueError
+from railguard.location import Location
+
+DATA = Path(__file__).parent / "data"
+"""Where the families' tables stand: beside this file in every kind of install."""
+
+
+class IndexEntry(msgspec.Struct, frozen=True):
+    """Where a family stands and what its order codes begin with, by channels."""
+
+    file: str
+    names: dict[int, tuple[str, ...]]
+
+
+class Index(msgspec.Struct, frozen=True):
+    """Every family of the catalogue, and op-amps known by name without figures."""
+
+    families: dict[str, IndexEntry]
+    named_only: dict[int, tuple[str, ...]] = {}
+
+
+class Catalogue:
+    """Families of the shipped catalogue, with the user's own before them."""
+
+    def __init__(self, index: Index, user: Mapping[str, Device], names: matching.Names) -> None:
+        """Take what `load` made; tables are read when first asked for."""
+        self._index = index
+        self._user = user
+        self._names = names
+        self._read = lru_cache(maxsize=None)(_shipped_device)
+
+    def match(self, name: str) -> Match:
+        """Say what a name in a netlist stands for."""
+        found = matching.identify(name, self._names)
+        return Match(
+            name=name,
+            sort=found.sort,
+            device=self.device(found.family) if found.family else None,
+            channels=found.channels,
+            also=found.also,
+            nearest=found.nearest,
+        )
+
+    def families(self) -> tuple[str, ...]:
+        """Return every family's name, sorted; the user's own among them."""
+        return tuple(sorted({*self._index.families, *self._user}, key=str.lower))
+
+    def device(self, family: str) -> Device:
+        """Return a family's figures.
+
+        Raises:
+            CatalogueError: there is no such family.
+        """
+        if family in self._user:
+            return self._user[family]
+        entry = self._index.families.get(family)
+        if entry is None:
+            raise CatalogueError(f"There is no family {family} in the catalogue.")
+        return self._read(entry.file)
+
+
+def load(user: Sequence[tuple[Mapping[str, object], Location]] = ()) -> Catalogue:
+    """Load the catalogue with the user's tables on top.
+
+    A user's table of a family the catalogue has changes the fields it states and leaves the others;
+    any other table is a new family, matched by its `names` (its own name where it states none).
+
+    Raises:
+        CatalogueError: a table that cannot be used, with the place of it.
+    """
+    index = msgspec.json.decode((DATA / "index.json").read_bytes(), type=Index)
+    names = matching.Names()
+    for family, entry in index.families.items():
+        _register(names, family, entry.names)
+    for channels, bases in index.named_only.items():
+        for base in _spelled_out(bases):
+            names.bases[base] = ("", channels)
+    devices: dict[str, Device] = {}
+    for data, location in user:
+        table, device = _user_device(data, location, index)
+        if table.family in devices:
+            raise CatalogueError(
+                f"{table.family} is described twice.", location, "Keep one of the two tables."
+            )
+        devices[table.family] = device
+        spelled = table.names or {0: (table.family,)}
+        if table.family not in index.families or table.names:
+            _register(names, table.family, spelled, overriding=True)
+    return Catalogue(index, devices, names)
+
+
+def _register(
+    names: matching.Names,
+    family: str,
+    by_channels: Mapping[int, tuple[str, ...]],
+    overriding: bool = False,
+) -> None:
+    for channels, bases in by_channels.items():
+        for base in _spelled_out(bases):
+            earlier = names.bases.get(base)
+            if overriding and earlier and earlier[0] not in ("", family):
+                names.also.setdefault(base, []).append(earlier[0])
+            names.bases[base] = (family, channels or None)
+
+
+def _spelled_out(bases: Sequence[str]) -> Iterator[str]:
+    """Yield every name a list stands for: `TL07[124]` is three."""
+    for base in bases:
+        if "[" in base:
+            yield from matching.spell_out(base)
+        else:
+            yield base.upper()
+
+
+def read_family_file(path: Path) -> FamilyTable:
+    """Read one family's TOML file."""
+    place = Location(file=str(path), line=1)
+    try:
+        data = tomllib.loads(path.read_text(encoding="utf-8"))
+    except tomllib.TOMLDecodeError as wrong:
+        raise CatalogueError(f"{path.name} is not TOML: {wrong}.", place) from wrong
+    return read_table(data, place)
+
+
+def _shipped_device(file: str) -> Device:
+    return device_of(read_family_file(DATA / file))
+
+
+def _user_device(
+    data: Mapping[str, object], location: Location, index: Index
+) -> tuple[FamilyTable, Device]:
+    # Imported here: schema checks are for tables of unknown quality, not for every start.
+    from railguard.devices.schema import faults
+
+    table = read_table(data, location)
+    stated = device_of(table, location, stated_by_user=True)
+    entry = index.families.get(table.family)
+    if entry is not None:
+        shipped = _shipped_device(entry.file)
+        changed = {
+            field: getattr(stated, field)
+            for field in (*data, *_derived(data))
+            if field in Device.__struct_fields__
+        }
+        stated = msgspec.structs.replace(shipped, **changed, location=location)
+    wrong = faults(stated)
+    if wrong:
+        raise CatalogueError(
+            f"The device table of {table.family} describes no possible device: {wrong[0]}.",
+            location,
+            "Check the figure and its unit (all are SI: volts, amperes, hertz, volts per second).",
+        )
+    return table, stated
+
+
+def _derived(data: Mapping[str, object]) -> tuple[str, ...]:
+    """Name the device's fields that follow from other fields of a table."""
+    found: tuple[str, ...] = ()
+    if "supply" in data:
+        found += ("supply_low", "supply_high", "supply_absolute", "supply_basis")
+    if "theta" in data:
+        found += ("theta_basis",)
+    return found

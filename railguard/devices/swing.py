@@ -1,0 +1,141 @@
+"""How far an output stays from a rail, as a function of the current it gives.
+
+A data sheet lists the drop at a few loads; between them the drop is a straight line, which is
+what a saturated transistor and an emitter resistor both come to over a small range.
+"""
+
+from collections.abc import Callable, Iterable
+from itertools import pairwise
+from typing import NamedTuple
+
+from railguard.devices.model import SwingPoint
+from railguard.words import Basis
+
+LIGHT = 10e-6
+"""Up to this current a figure listed without load still holds, A (microamperes)."""
+
+FOLLOWER_DROP = 0.5
+"""A drop above this at a test load holds one junction at least, V: half of it stays at no load."""
+
+
+class Drop(NamedTuple):
+    """The distance to a rail at one output current, V; None: not known.
+
+    condition  the data-sheet points it rests on, in words
+    """
+
+    typical: float | None
+    typical_basis: Basis
+    guaranteed: float | None
+    guaranteed_basis: Basis
+    condition: str
+
+
+class _Known(NamedTuple):
+    amps: float
+    drop: float
+    basis: Basis
+    condition: str
+
+
+def drop(points: Iterable[SwingPoint], amps: float, supply: float | None = None) -> Drop:
+    """Return the drop to a rail while the output gives `amps` (A, not negative) at that rail.
+
+    Typical and guaranteed figures are two separate curves. Each is made monotone (a heavier load
+    never drops less), is linear between two listed points, flat below the lightest, and beyond
+    the heaviest goes on with the last slope, marked as from memory. A curve known at one point
+    only goes on with the steepest slope listed at another supply, else as a line from the origin,
+    or from half its drop where that drop holds a junction. A curve known without load only says
+    nothing above microamperes.
+
+    `supply` (total, V) picks the points tested nearest to it where a sheet lists several supplies;
+    a figure taken from another supply than half to twice the actual one counts as from memory.
+    """
+    known = tuple(points)
+    typical = _read(known, amps, supply, lambda point: (point.typical, point.typical_basis))
+    guaranteed = _read(
+        known, amps, supply, lambda point: (point.guaranteed, point.guaranteed_basis)
+    )
+    said = guaranteed or typical
+    return Drop(
+        typical.drop if typical else None,
+        typical.basis if typical else "memory",
+        guaranteed.drop if guaranteed else None,
+        guaranteed.basis if guaranteed else "memory",
+        said.condition if said else "",
+    )
+
+
+Side = Callable[[SwingPoint], tuple[float | None, Basis]]
+
+
+def _read(
+    points: tuple[SwingPoint, ...], amps: float, supply: float | None, side: Side
+) -> _Known | None:
+    listed = tuple(point for point in points if side(point)[0] is not None)
+    curve = _curve(_at_supply(listed, supply), supply, side)
+    if not curve:
+        return None
+    if amps <= curve[0].amps:
+        return curve[0]
+    for left, right in pairwise(curve):
+        if amps <= right.amps:
+            share = (amps - left.amps) / (right.amps - left.amps)
+            basis: Basis = "memory" if "memory" in (left.basis, right.basis) else right.basis
+            between = left.drop + share * (right.drop - left.drop)
+            return _Known(amps, between, basis, right.condition)
+    if curve[-1].amps <= LIGHT:
+        return curve[-1] if amps <= LIGHT else None
+    slope = _last_slope(curve) or _listed_slope(listed, side) or _single_slope(curve[-1])
+    last = curve[-1]
+    condition = f"carried on beyond {last.condition}" if last.condition else ""
+    return _Known(amps, last.drop + slope * (amps - last.amps), "memory", condition)
+
+
+def _at_supply(points: tuple[SwingPoint, ...], supply: float | None) -> tuple[SwingPoint, ...]:
+    """Keep the points of the test supply nearest to the actual one, and those without any."""
+    stated = {point.supply for point in points if point.supply}
+    if supply is None or len(stated) < 2:
+        return points
+    best = min(stated, key=lambda volts: abs(volts - supply))
+    return tuple(point for point in points if not point.supply or point.supply == best)
+
+
+def _curve(points: tuple[SwingPoint, ...], supply: float | None, side: Side) -> list[_Known]:
+    """Sort by current and let no heavier load drop less than a lighter one."""
+    known = []
+    for point in points:
+        value, basis = side(point)
+        near = supply is None or not point.supply or 0.5 <= supply / point.supply <= 2.0
+        if value is not None:
+            known.append(_Known(point.amps, value, basis if near else "memory", point.condition))
+    curve: list[_Known] = []
+    for entry in sorted(known, key=lambda item: (item.amps, item.drop)):
+        if curve and curve[-1].drop > entry.drop:
+            entry = entry._replace(drop=curve[-1].drop, basis=curve[-1].basis)
+        if curve and curve[-1].amps == entry.amps:
+            curve.pop()
+        curve.append(entry)
+    return curve
+
+
+def _last_slope(curve: list[_Known]) -> float | None:
+    if len(curve) < 2:
+        return None
+    left, right = curve[-2:]
+    return (right.drop - left.drop) / (right.amps - left.amps)
+
+
+def _listed_slope(points: tuple[SwingPoint, ...], side: Side) -> float | None:
+    """Return the steepest slope between two points tested at one supply."""
+    slopes = [
+        slope
+        for volts in {point.supply for point in points}
+        if (slope := _last_slope(_curve(tuple(p for p in points if p.supply == volts), None, side)))
+    ]
+    return max(slopes, default=None)
+
+
+def _single_slope(last: _Known) -> float:
+    held = 0.5 if last.drop > FOLLOWER_DROP else 0.0
+    return (1.0 - held) * last.drop / last.amps

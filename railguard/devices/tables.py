@@ -1,0 +1,300 @@
+"""The layout of a family's TOML table, and its conversion to a `Device`.
+
+The catalogue's own files and a user's `[[devices]]` have the same layout (see `data/README.md`).
+All numbers SI. `seen` says which of a figure's values were read in the named document: "typical",
+"guaranteed" or "all"; what is not said is from memory.
+"""
+
+from collections.abc import Mapping
+from typing import Literal
+
+import msgspec
+
+from railguard.devices.model import Device, Figure, SheetSource, SwingPoint
+from railguard.devices.packages import class_resistances
+from railguard.errors import CatalogueError
+from railguard.location import Location
+from railguard.units import si
+from railguard.words import Basis
+
+Seen = Literal["", "typical", "guaranteed", "all"]
+
+FIGURES = (
+    "input_low",
+    "input_high",
+    "source_current",
+    "sink_current",
+    "short_circuit",
+    "gain_bandwidth",
+    "slew_rate",
+    "open_loop_gain",
+    "stable_gain",
+    "bias_current",
+    "offset_current",
+    "offset_voltage",
+    "supply_current",
+    "voltage_noise",
+    "current_noise",
+    "load_capacitance",
+    "input_capacitance",
+    "output_resistance",
+    "differential_input",
+    "feedback_resistor",
+)
+"""Names that are `Figure` both in the table and in `Device`."""
+
+
+class FigureTable(msgspec.Struct, frozen=True, forbid_unknown_fields=True):
+    """One limit as written."""
+
+    typical: float | None = None
+    guaranteed: float | None = None
+    hot: float | None = None
+    seen: Seen = ""
+    condition: str = ""
+
+
+class SwingTable(msgspec.Struct, frozen=True, forbid_unknown_fields=True):
+    """The drop to a rail at one load.
+
+    ohms, to  load resistance and where its other end is; `to` counts for `ohms` only
+    amps      load current, where the sheet states that; neither: without load
+    supply    total, V; none: the sheet's own
+    light_sink  True: the figure holds for microamperes only
+    """
+
+    typical: float | None = None
+    guaranteed: float | None = None
+    ohms: float | None = None
+    amps: float | None = None
+    to: Literal["middle", "negative", "positive"] = "middle"
+    supply: float | None = None
+    seen: Seen = ""
+    light_sink: bool = False
+    condition: str = ""
+
+
+class SupplyTable(msgspec.Struct, frozen=True, forbid_unknown_fields=True):
+    """Total supply, V, and which of the three were read in the document."""
+
+    low: float | None = None
+    high: float | None = None
+    absolute: float | None = None
+    seen: tuple[Literal["low", "high", "absolute"], ...] = ()
+
+
+class SourceTable(msgspec.Struct, frozen=True, forbid_unknown_fields=True):
+    """The data sheet."""
+
+    title: str
+    document: str = ""
+    revision: str = ""
+    publisher: str = ""
+
+
+class FamilyTable(msgspec.Struct, frozen=True, forbid_unknown_fields=True, kw_only=True):
+    """A family as written.
+
+    names  what its order codes begin with, by the number of amplifiers in the package
+    """
+
+    family: str
+    names: Mapping[int, tuple[str, ...]] = {}
+    description: str = ""
+    technology: str = ""
+    feedback: Literal["voltage", "current"] = "voltage"
+    source: SourceTable | None = None
+    conditions: str = ""
+    sheet_supply: float | None = None
+    supply: SupplyTable = SupplyTable()
+    swing_high: tuple[SwingTable, ...] = ()
+    swing_low: tuple[SwingTable, ...] = ()
+    input_reach: float | None = None
+    phase_reversal: bool | None = None
+    rail_to_rail_input: bool = False
+    rail_to_rail_output: bool = False
+    temperature: tuple[float, float] | None = None
+    theta: Mapping[str, float] = {}
+    theta_seen: bool = False
+    notes: str = ""
+    input_low: FigureTable = FigureTable()
+    input_high: FigureTable = FigureTable()
+    source_current: FigureTable = FigureTable()
+    sink_current: FigureTable = FigureTable()
+    short_circuit: FigureTable = FigureTable()
+    gain_bandwidth: FigureTable = FigureTable()
+    slew_rate: FigureTable = FigureTable()
+    open_loop_gain: FigureTable = FigureTable()
+    stable_gain: FigureTable = FigureTable()
+    bias_current: FigureTable = FigureTable()
+    offset_current: FigureTable = FigureTable()
+    offset_voltage: FigureTable = FigureTable()
+    supply_current: FigureTable = FigureTable()
+    voltage_noise: FigureTable = FigureTable()
+    current_noise: FigureTable = FigureTable()
+    load_capacitance: FigureTable = FigureTable()
+    input_capacitance: FigureTable = FigureTable()
+    output_resistance: FigureTable = FigureTable()
+    differential_input: FigureTable = FigureTable()
+    feedback_resistor: FigureTable = FigureTable()
+
+
+def read_table(data: Mapping[str, object], location: Location | None = None) -> FamilyTable:
+    """Check a table's layout.
+
+    Raises:
+        CatalogueError: an unknown or missing field, or a value of the wrong kind.
+    """
+    try:
+        return msgspec.convert(data, FamilyTable, str_keys=True)
+    except msgspec.ValidationError as wrong:
+        name = data.get("family", "without a name")
+        raise CatalogueError(
+            f"The device table of {name} cannot be used: {wrong}.",
+            location,
+            "The fields are those of the shipped catalogue; `railguard devices NAME` shows one.",
+        ) from wrong
+
+
+def device_of(
+    table: FamilyTable, location: Location | None = None, stated_by_user: bool = False
+) -> Device:
+    """Turn a checked table into the value the analysis works with."""
+    user: Basis | None = "user" if stated_by_user else None
+    figures = {name: _figure(getattr(table, name), user) for name in FIGURES}
+    high = tuple(_swing(entry, table, True, user) for entry in table.swing_high)
+    low = tuple(_swing(entry, table, False, user) for entry in table.swing_low)
+    if figures["source_current"].best is None:
+        figures["source_current"] = _tested_current(high)
+    if figures["sink_current"].best is None:
+        figures["sink_current"] = _tested_current(low)
+    theta, theta_basis = _theta(table, user)
+    return Device(
+        family=table.family,
+        description=table.description,
+        technology=table.technology,
+        feedback=table.feedback,
+        supply_low=table.supply.low,
+        supply_high=table.supply.high,
+        supply_absolute=table.supply.absolute,
+        supply_basis={
+            name: user or ("catalogue" if name in table.supply.seen else "memory")
+            for name in ("low", "high", "absolute")
+        },
+        swing_high=high,
+        swing_low=low,
+        input_reach=table.input_reach,
+        phase_reversal=table.phase_reversal,
+        rail_to_rail_input=table.rail_to_rail_input,
+        rail_to_rail_output=table.rail_to_rail_output,
+        temperature=table.temperature,
+        theta=theta,
+        theta_basis=theta_basis,
+        conditions=table.conditions,
+        sheet_supply=table.sheet_supply,
+        source=_source(table, location, stated_by_user),
+        notes=table.notes,
+        location=location,
+        **figures,
+    )
+
+
+def _figure(table: FigureTable, user: Basis | None) -> Figure:
+    return Figure(
+        typical=table.typical,
+        guaranteed=table.guaranteed,
+        hot=table.hot,
+        typical_basis=user or _basis(table.seen, "typical"),
+        guaranteed_basis=user or _basis(table.seen, "guaranteed"),
+        condition=table.condition,
+    )
+
+
+def _basis(seen: Seen, half: Seen) -> Basis:
+    return "catalogue" if seen in ("all", half) else "memory"
+
+
+def _swing(entry: SwingTable, table: FamilyTable, upper: bool, user: Basis | None) -> SwingPoint:
+    supply = entry.supply if entry.supply is not None else table.sheet_supply
+    amps, assisted = _load_current(entry, supply, upper)
+    return SwingPoint(
+        amps=amps,
+        typical=entry.typical,
+        guaranteed=entry.guaranteed,
+        supply=supply,
+        typical_basis=user or _basis(entry.seen, "typical"),
+        guaranteed_basis=user or _basis(entry.seen, "guaranteed"),
+        light_sink=assisted or entry.light_sink,
+        condition=entry.condition or _load_words(entry, supply),
+    )
+
+
+def _load_current(entry: SwingTable, supply: float | None, upper: bool) -> tuple[float, bool]:
+    """Return the current into the load with the output at its limit, and whether the load helps.
+
+    A load to the rail the output is near asks for no current from it: the figure then holds for
+    microamperes only. Without a test supply the smallest usable one, 5 V, is taken: a smaller
+    current makes the curve more careful.
+    """
+    if entry.amps is not None:
+        return entry.amps, False
+    if entry.ohms is None:
+        return 0.0, True
+    volts = supply if supply is not None else 5.0
+    worst = max(filter(None, (entry.typical, entry.guaranteed)), default=0.0)
+    if entry.to == "middle":
+        return max((volts / 2 - worst) / entry.ohms, 0.0), False
+    if (entry.to == "negative") == upper:
+        return max((volts - worst) / entry.ohms, 0.0), False
+    return 0.0, True
+
+
+_ENDS = {"middle": "mid-supply", "negative": "the negative rail", "positive": "the positive rail"}
+
+
+def _load_words(entry: SwingTable, supply: float | None) -> str:
+    if entry.amps is not None:
+        load = si(entry.amps, "A")
+    elif entry.ohms is not None:
+        load = f"{si(entry.ohms, 'Ω')} to {_ENDS[entry.to]}"
+    else:
+        load = "no load"
+    return load if supply is None else f"{load}, {si(supply, 'V')} supply"
+
+
+def _tested_current(points: tuple[SwingPoint, ...]) -> Figure:
+    """Return the heaviest guaranteed swing test: a current known to be given."""
+    tested = [point for point in points if point.guaranteed is not None and point.amps > 0.0]
+    if not tested:
+        return Figure()
+    heaviest = max(tested, key=lambda point: point.amps)
+    return Figure(
+        guaranteed=heaviest.amps,
+        guaranteed_basis=heaviest.guaranteed_basis,
+        condition=f"no output current is listed: swing is guaranteed at {heaviest.condition}",
+    )
+
+
+def _theta(table: FamilyTable, user: Basis | None) -> tuple[Mapping[str, float], Basis]:
+    if not table.theta:
+        return class_resistances(tuple(table.names)), "practice"
+    return table.theta, user or ("catalogue" if table.theta_seen else "memory")
+
+
+def _source(table: FamilyTable, location: Location | None, stated_by_user: bool) -> SheetSource:
+    if table.source is None:
+        return SheetSource(title=str(location.file) if location else "", seen=stated_by_user)
+    return SheetSource(
+        title=table.source.title,
+        document=table.source.document,
+        revision=table.source.revision,
+        publisher=table.source.publisher,
+        seen=stated_by_user or anything_seen(table),
+    )
+
+
+def anything_seen(table: FamilyTable) -> bool:
+    """Tell whether any figure of the table was read in its document."""
+    figures = (getattr(table, name).seen for name in FIGURES)
+    swings = (entry.seen for entry in (*table.swing_high, *table.swing_low))
+    return bool(table.supply.seen) or any(figures) or any(swings)
