@@ -14,6 +14,7 @@ from railguard.analysis.network import Complex, Network, Real
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.signals import Prepared, Tone
 from railguard.analysis.solve import Factor, factor
+from railguard.analysis.transient import excursion
 
 QUANTITIES = ("output", "current", "plus", "minus", "positive", "negative")
 """Per amplifier: output volts, output amperes (out of the pin), both inputs, both supply pins."""
@@ -42,9 +43,15 @@ class Worst(msgspec.Struct, frozen=True):
 
 
 class ToneAnswer(msgspec.Struct, frozen=True):
-    """One tone's peaks, shape (quantities,), and where each is reached."""
+    """One tone's excursions, shape (quantities,), and where each is reached.
+
+    up, down  how far each quantity goes above and below its level; alike for a sine
+    peaks     the larger of both
+    """
 
     tone: Tone
+    up: Real
+    down: Real
     peaks: Real
     hertz: Real
     slew: Real
@@ -120,7 +127,8 @@ def answer(
         tones.append(Tone(name=name, drives=((name, clamp.half),), frequencies=(clamp.hertz,)))
     factors: dict[float, Factor] = {0.0: dc}
     answers = tuple(_tone(network, tone, rows, factors) for tone in tones)
-    peaks = sum((a.peaks for a in answers), np.zeros(len(rows)))
+    up = sum((a.up for a in answers), np.zeros(len(rows)))
+    down = sum((a.down for a in answers), np.zeros(len(rows)))
     slew = sum((a.slew for a in answers), np.zeros(len(rows)))
     return Answers(
         network=network,
@@ -129,8 +137,8 @@ def answer(
         dc=dc,
         x=x,
         level=level,
-        high=level + peaks,
-        low=level - peaks,
+        high=level + up,
+        low=level - down,
         slew=slew,
         tones=answers,
     )
@@ -167,4 +175,11 @@ def _tone(network: Network, tone: Tone, rows: Index, factors: dict[float, Factor
         )
         for f in np.unique(best)
     )
-    return ToneAnswer(tone=tone, peaks=peaks, hertz=frequencies[best], slew=slew, worst=worst)
+    up = down = peaks
+    if tone.wave is not None:
+        followed = excursion(network, tone.drives[0][0], tone.wave, tone.mean)
+        up, down = picked(followed.up, rows), picked(followed.down, rows)
+        peaks, slew = np.maximum(up, down), picked(followed.slew, rows)
+    return ToneAnswer(
+        tone=tone, up=up, down=down, peaks=peaks, hertz=frequencies[best], slew=slew, worst=worst
+    )

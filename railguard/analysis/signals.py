@@ -21,6 +21,7 @@ from railguard.circuit.sources import (
     Pulse,
     Sine,
     Source,
+    Wave,
 )
 from railguard.settings.model import Settings, Signal
 from railguard.words import Basis
@@ -44,6 +45,8 @@ class Tone(msgspec.Struct, frozen=True, kw_only=True):
 
     frequencies  hertz; 0 is a slow change
     net          the net it arrives at, for the report
+    wave, mean   a time function that is no sine, and the level it is superposed on: followed
+                 through time, the drives then serve for sensitivities only
     """
 
     name: str
@@ -51,6 +54,8 @@ class Tone(msgspec.Struct, frozen=True, kw_only=True):
     frequencies: tuple[float, ...]
     net: str = ""
     basis: Basis = "netlist"
+    wave: Wave | None = None
+    mean: float = 0.0
 
     @property
     def top(self) -> float:
@@ -284,8 +289,21 @@ def _deck_source(build: _Builder, element: Element, source: Source) -> None:
     build.levels.setdefault(name, Drive(name, level))
     if source.wave is not None or level:
         build.entries.append((net, name))
+    timed = source.wave is not None and not isinstance(source.wave, Sine)
     for frequency, amplitude in tones:
-        build.coherent[frequency].append((name, amplitude, net))
+        if timed:
+            build.tones.append(
+                Tone(
+                    name=name,
+                    drives=((name, amplitude),),
+                    frequencies=(frequency,),
+                    net=net,
+                    wave=source.wave,
+                    mean=level,
+                )
+            )
+        else:
+            build.coherent[frequency].append((name, amplitude, net))
     probes = source.ac is not None and source.ac[0] != 0
     if probes and not tones and not level:
         build.entries.append((net, name))
@@ -303,8 +321,8 @@ def levels_and_tones(source: Source) -> tuple[float, list[tuple[float, complex]]
     """Return the mean level of a source and its tones (hertz, complex amplitude).
 
     A sine is itself. A carrier modulated in frequency is taken at its highest instantaneous
-    frequency; one modulated in amplitude at its largest envelope. Steps and slopes are taken as
-    a slow change between their extremes here; `analysis.transient` adds what their edges do.
+    frequency; one modulated in amplitude at its largest envelope. Steps and slopes are a slow
+    change between their extremes here; `analysis.transient` follows what their edges do.
     """
     wave = source.wave
     match wave:

@@ -80,6 +80,38 @@ def factor(network: Network, hertz: float) -> Factor:
     return _Sparse(network, s)
 
 
+class TimeStep:
+    """One factorised step of a linear transient, and the state it starts from."""
+
+    def __init__(self, network: Network, seconds: float) -> None:
+        """Factor G + C/h (dense; sparse circuits use scipy's factors)."""
+        self._steady = factor(network, 0.0)
+        self._inverse: Real | None = None
+        if network.size <= DENSE_LIMIT:
+            try:
+                self._inverse = np.asarray(np.linalg.inv(network.g + network.c / seconds))
+            except np.linalg.LinAlgError as error:
+                raise SolveError("The circuit's equations have no single answer.") from error
+        else:
+            # A step of h seconds is the matrix at s = 1/h.
+            self._sparse = _Sparse(network, 1.0 / seconds)
+
+    def steady(self, b: Real) -> Real:
+        """Return the state that a standing right-hand side leads to."""
+        return self._steady.forward(b.astype(np.complex128)).real
+
+    def step(self, b: Real) -> Real:
+        """Return the next state."""
+        if self._inverse is not None:
+            return np.asarray(self._inverse @ b)
+        return self._sparse.forward(b.astype(np.complex128)).real
+
+
+def transient_factor(network: Network, seconds: float) -> tuple[TimeStep, Real]:
+    """Return the factorised step of a linear transient, and C/h for the history term."""
+    return TimeStep(network, seconds), network.c / seconds
+
+
 def return_ratios(network: Network, hertz: np.ndarray[tuple[int], np.dtype[np.float64]]) -> Complex:
     """Return each amplifier's own loop transmission A*beta, all others active.
 
