@@ -1,5 +1,6 @@
 """How bad: one table for every quantity, by what is broken and by how good the evidence is."""
 
+from collections.abc import Iterator
 from typing import Literal
 
 import msgspec
@@ -22,6 +23,10 @@ SMALL_SHARE = 0.02
 """An overrun below this share of the demanded span is `minor`."""
 MEDIUM_SHARE = 0.10
 """An overrun below this share of the demanded span is at most `major`."""
+AT_REST = 1e-3
+"""A level closer to the rail than this share of the span rests on the rail."""
+ROUNDING = 1e-9
+"""Shares of the numbers compared below which a difference is one of arithmetic only."""
 
 
 def evidence(*bases: Basis) -> Evidence:
@@ -31,8 +36,17 @@ def evidence(*bases: Basis) -> Evidence:
     return "memory" if "memory" in bases else "stated"
 
 
+def capped(severity: Severity, cap: Severity) -> Severity:
+    """Return `severity`, but nothing worse than `cap`."""
+    return max(severity, cap, key=SEVERITIES.index)
+
+
 class Breach(msgspec.Struct, frozen=True):
-    """A limit that is broken: which, by what numbers, and how bad that is."""
+    """A limit that is broken: which, by what numbers, and how bad that is.
+
+    margin  room, negative where the limit itself is passed; `share` of the demanded span
+    basis   of demand and limit, without repeats; `limit_basis` of the limit alone
+    """
 
     broken: Broken
     severity: Severity
@@ -41,7 +55,19 @@ class Breach(msgspec.Struct, frozen=True):
     margin: float
     share: float | None
     basis: tuple[Basis, ...]
+    limit_basis: Basis
     at_corner: bool
+
+
+class _Check(msgspec.Struct, frozen=True):
+    """One demand against one limit."""
+
+    broken: Broken
+    demand: float
+    limit: float
+    limit_basis: Basis
+    at_corner: bool = False
+    wanted: float = 0.0
 
 
 def _room(bound: Bound, demand: float, limit: float) -> float:
@@ -57,51 +83,88 @@ def soften(severity: Severity, overrun: float, span: float | None, level_outside
     if level_outside or not span:
         return severity
     share = overrun / span
-    cap: Severity = "critical"
     if share < SMALL_SHARE:
-        cap = "minor"
-    elif share < MEDIUM_SHARE:
-        cap = "major"
-    return max(severity, cap, key=SEVERITIES.index)
+        return capped(severity, "minor")
+    if share < MEDIUM_SHARE:
+        return capped(severity, "major")
+    return severity
 
 
-def breach(bound: Bound, reserve: float = 0.0, softened: bool = True) -> Breach | None:
+def breach(
+    bound: Bound,
+    reserve: float = 0.0,
+    *,
+    scale: float | None = None,
+    cap: Severity = "critical",
+) -> Breach | None:
     """Find the worst limit a quantity breaks, or None where it keeps them all.
 
     reserve  room wanted at the guaranteed (else typical) limit at nominal, in the quantity's unit
+    scale    what an overrun is measured against where the demand has no span and rests at zero
+             scale, exactly on the lower rail: the total supply. None: nothing rests there.
+    cap      the worst severity allowed: `minor` for a device nobody knows
     """
-    if bound.demand is None:
-        return None
-    found: list[Breach] = []
-
-    def judge(
-        broken: Broken, demand: float, limit: float | None, bases: tuple[Basis, ...], corner: bool
-    ) -> None:
-        if limit is None:
-            return
-        wanted = reserve if broken == "reserve" else 0.0
-        room = _room(bound, demand, limit)
-        if room - wanted >= -1e-9 * max(abs(limit), abs(demand)):
-            return
-        severity = TABLE[broken][evidence(*bases)]
-        if softened and broken in ("absolute", "typical", "guaranteed"):
-            level = bound.level
-            outside = level is not None and _room(bound, level, limit) < 0
-            severity = soften(severity, -room, bound.span, outside)
-        share = room / bound.span if bound.span else None
-        kept = tuple(dict.fromkeys(bases))
-        found.append(Breach(broken, severity, demand, limit, room, share, kept, corner))
-
-    typical = (bound.demand_basis, bound.typical_basis)
-    guaranteed = (bound.demand_basis, bound.guaranteed_basis)
-    judge("absolute", bound.demand, bound.absolute, (bound.demand_basis, "netlist"), False)
-    judge("typical", bound.demand, bound.typical, typical, False)
-    judge("guaranteed", bound.demand, bound.guaranteed, guaranteed, False)
-    if bound.stated is not None:
-        judge("guaranteed", bound.stated.demand, bound.stated.limit, guaranteed, True)
-    if bound.default is not None:
-        judge("default-corner", bound.default.demand, bound.default.limit, guaranteed, True)
-    if reserve > 0:
-        best = bound.guaranteed if bound.guaranteed is not None else bound.typical
-        judge("reserve", bound.demand, best, guaranteed, False)
+    found = [
+        _judged(bound, check, scale, cap)
+        for check in _checks(bound, reserve)
+        if _fails(bound, check)
+    ]
     return min(found, key=lambda b: SEVERITIES.index(b.severity), default=None)
+
+
+def _checks(bound: Bound, reserve: float) -> Iterator[_Check]:
+    """Yield what is to be compared, the gravest limit first: it leads among equals."""
+    if bound.demand is None:
+        return
+    demand = bound.demand
+    best = bound.guaranteed if bound.guaranteed is not None else bound.typical
+    best_basis = bound.guaranteed_basis if bound.guaranteed is not None else bound.typical_basis
+    if bound.absolute is not None:
+        yield _Check("absolute", demand, bound.absolute, bound.absolute_basis)
+    if bound.typical is not None:
+        yield _Check("typical", demand, bound.typical, bound.typical_basis)
+    if bound.guaranteed is not None:
+        yield _Check("guaranteed", demand, bound.guaranteed, bound.guaranteed_basis)
+    if (stated := bound.stated) is not None:
+        yield _Check("guaranteed", stated.demand, stated.limit, best_basis, at_corner=True)
+    if (default := bound.default) is not None:
+        yield _Check("default-corner", default.demand, default.limit, best_basis, at_corner=True)
+    if reserve > 0 and best is not None:
+        yield _Check("reserve", demand, best, best_basis, wanted=reserve)
+
+
+def _fails(bound: Bound, check: _Check) -> bool:
+    slack = ROUNDING * max(abs(check.limit), abs(check.demand))
+    return _room(bound, check.demand, check.limit) - check.wanted < -slack
+
+
+def _judged(bound: Bound, check: _Check, scale: float | None, cap: Severity) -> Breach:
+    bases = (bound.demand_basis, check.limit_basis)
+    room = _room(bound, check.demand, check.limit)
+    severity = TABLE[check.broken][evidence(*bases)]
+    if not check.at_corner and check.broken != "reserve":
+        resting = _rests_at_zero(bound, scale)
+        span = bound.span or (scale if resting else None)
+        severity = soften(severity, -room, span, _level_outside(bound, check.limit) and not resting)
+    return Breach(
+        check.broken,
+        capped(severity, cap),
+        check.demand,
+        check.limit,
+        room,
+        room / bound.span if bound.span else None,
+        tuple(dict.fromkeys(bases)),
+        check.limit_basis,
+        check.at_corner,
+    )
+
+
+def _level_outside(bound: Bound, limit: float) -> bool:
+    return bound.level is not None and _room(bound, bound.level, limit) < 0
+
+
+def _rests_at_zero(bound: Bound, scale: float | None) -> bool:
+    """Tell whether the level stands on the lower rail: a sensor at zero on a single supply."""
+    if scale is None or bound.upper or bound.level is None or bound.absolute is None:
+        return False
+    return abs(bound.level - bound.absolute) <= AT_REST * (bound.span or scale)

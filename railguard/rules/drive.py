@@ -1,0 +1,137 @@
+"""Drive: the current and the power a stage's load asks of its output."""
+
+from collections.abc import Iterator
+
+from railguard.analysis.stage import Bound, Design, Stage, Unknown
+from railguard.rules.compose import (
+    breach_finding,
+    loop_is_broken,
+    missing_figure,
+    open_point,
+)
+from railguard.rules.headroom.ranges import NO_LINEAR_RANGE, corner_words
+from railguard.rules.protocol import Limit, Limits, Outcome, Rule
+from railguard.rules.remedies import fit, sentence
+from railguard.rules.severity import Breach, breach
+from railguard.rules.wording import NO_SOURCE, device, limit_note, sheet
+from railguard.units import si
+from railguard.words import SEVERITIES, Severity
+
+NO_CURRENT = Unknown(
+    "its output current is not known",
+    "state the signal that reaches it under [signals], and its load under [loads]",
+)
+
+
+def _cap(stage: Stage) -> Severity:
+    return "minor" if stage.family is None else "critical"
+
+
+# --- drive-current
+
+
+def judge_current(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome]:
+    """Judge the peak current an output must source and sink."""
+    if stage.use == "unused":
+        return
+    bounds = {"source": stage.current.source, "sink": stage.current.sink}
+    broken_loop = stage.use == "linear" and loop_is_broken(stage)
+    gap = NO_LINEAR_RANGE if broken_loop else _gap(stage)
+    yield from open_point("drive-current", stage, ("supply", "current", "device"), gap)
+    if broken_loop:
+        return
+    sides = []
+    for verb, bound in bounds.items():
+        broken = breach(bound, limits["reserve-share"] * (bound.guaranteed or bound.typical or 0.0),
+                        cap=_cap(stage))  # fmt: skip
+        if broken is not None:
+            sides.append((verb, bound, broken))
+    if not sides:
+        return
+    sides.sort(key=lambda s: (SEVERITIES.index(s[2].severity), s[2].margin))
+    verb, bound, broken = sides[0]
+    message = _current_message(stage, verb, bound, broken)
+    for other_verb, _, other in sides[1:]:
+        message += (
+            f" It must {other_verb} {si(other.demand, 'A')} as well, against "
+            f"{si(other.limit, 'A')}."
+        )
+    yield breach_finding(
+        "drive-current",
+        stage,
+        broken,
+        "A",
+        message,
+        nets=(stage.output.net,),
+        remedy=_current_remedy(stage, broken),
+        source=sheet(stage, broken),
+    )
+
+
+def _gap(stage: Stage) -> Unknown | None:
+    bounds = (stage.current.source, stage.current.sink)
+    if all(b.demand is None for b in bounds):
+        return None if stage.use != "linear" else NO_CURRENT
+    if any(b.typical is None and b.guaranteed is None for b in bounds):
+        return missing_figure(stage, "output current", "source_current and sink_current")
+    return None
+
+
+def _current_message(stage: Stage, verb: str, bound: Bound, broken: Breach) -> str:
+    lead = corner_words(bound, broken)
+    into = f" into {stage.current.into}" if stage.current.into else ""
+    asked = f"{lead}{stage.schematic} must {verb} {si(broken.demand, 'A')}{into}"
+    limit = si(broken.limit, "A")
+    if broken.broken == "absolute":
+        note = limit_note("short-circuit current", broken.limit_basis, bound.condition)
+        return (
+            f"{asked}; even shorted, {device(stage)} gives {limit} {note}, so "
+            f"{si(-broken.margin, 'A')} is missing."
+        )
+    kind = "typical" if broken.broken == "typical" or bound.guaranteed is None else "guaranteed"
+    note = limit_note(kind, broken.limit_basis, bound.condition)
+    gives = "gives" if kind == "typical" else "is known to give"
+    if broken.broken == "reserve":
+        return f"{asked}; {device(stage)} {gives} {limit} {note}: {si(broken.margin, 'A')} is left."
+    end = "missing" if broken.broken == "typical" else "not covered"
+    return (
+        f"{asked}; {device(stage)} {gives} {limit} {note}, so {si(-broken.margin, 'A')} is {end}."
+    )
+
+
+def _current_remedy(stage: Stage, broken: Breach) -> str:
+    load, buffer = "", "put a buffer behind the stage"
+    ohms = stage.current.load
+    if ohms is not None and ohms > 0 and broken.demand > 0:
+        fitting = fit(ohms * broken.demand / broken.limit, "up") if broken.limit > 0 else None
+        if fitting is not None:
+            load = (
+                f"raise what the output works into from {si(ohms, 'Ω')} to at least "
+                f"{si(fitting, 'Ω')}, its feedback network included"
+            )
+    return sentence(load, buffer, "fit a device that gives more current")
+
+
+CURRENT = Rule(
+    name="drive-current",
+    family="drive",
+    looks_at="stage",
+    judges="The peak current an output must source and sink, its own feedback network and any "
+    "capacitive load included, against what the device is known to give, then its short-circuit "
+    "current.",
+    reason="Beyond its current an output follows the load, not the input. The short-circuit "
+    "current is the point of gross distortion and falls when hot.",
+    source="the device's data sheet; Texas Instruments on OPA2134 output current, hot and cold",
+    silent="Unused channels. Open loops, unknown devices and loads nobody states are listed as not "
+    "checked.",
+    limits=(
+        Limit(
+            name="reserve-share",
+            default=0.0,
+            unit="",
+            meaning="share of the guaranteed (else typical) current to be left",
+            source=NO_SOURCE,
+        ),
+    ),
+    judge=judge_current,
+)

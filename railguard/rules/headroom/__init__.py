@@ -1,0 +1,1 @@
+"""Headroom: whether outputs and inputs stay inside what rails and device allow."""

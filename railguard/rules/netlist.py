@@ -1,0 +1,223 @@
+"""The reading itself: what the netlist says otherwise than its author most likely meant."""
+
+from collections.abc import Callable, Iterator
+
+import msgspec
+
+from railguard.analysis.stage import Design
+from railguard.notices import Problem
+from railguard.rules.finding import Finding
+from railguard.rules.protocol import Limits, Outcome, Rule
+from railguard.rules.wording import NO_SOURCE
+from railguard.units import si
+from railguard.words import Kind, Severity
+
+Weight = Callable[[Kind], Severity]
+
+SPICE_SOURCE = "SPICE reads it so: ngspice manual, chapter on circuit description"
+
+
+class _Topic(msgspec.Struct, frozen=True):
+    """One kind of reading trouble: its name, what it is about, and how bad it is."""
+
+    what: str
+    judges: str
+    reason: str
+    severity: Severity = "major"
+    on_board: Severity | None = None
+    source: str = SPICE_SOURCE
+
+
+_TOPICS = (
+    _Topic(
+        "value-suffix",
+        "A value whose suffix SPICE reads otherwise than meant: 1M is a thousandth, 1F is a "
+        "femtofarad.",
+        "SPICE takes M as milli in either case and drops what it does not know behind a number.",
+        "major",
+        "minor",
+    ),
+    _Topic(
+        "value-second-number",
+        "A value with a second number behind it: 10k 0603, 10u 16V, 1uF 20%.",
+        "Some SPICE programs take the second number for the value or a model's name.",
+        "major",
+        "minor",
+    ),
+    _Topic(
+        "value-missing",
+        "An element without a value, or with one that cannot be worked out.",
+        "What has no value cannot be solved, and what hangs on it is not checked.",
+    ),
+    _Topic(
+        "value-form",
+        "A value that is no number to SPICE: a decimal comma, 1.2.3, 0x10, 10 uF with a blank.",
+        "SPICE stops reading at the first character it does not know, without a word.",
+        "major",
+        "minor",
+    ),
+    _Topic(
+        "value-sign",
+        "A value of zero or below where that is odd.",
+        "A resistor of zero ohms divides by zero in some programs; a negative one is a source.",
+        "minor",
+    ),
+    _Topic(
+        "unreadable",
+        "A file that is no readable netlist at all.",
+        "Of a file that cannot be read nothing can be said.",
+        "critical",
+        source=NO_SOURCE,
+    ),
+    _Topic(
+        "encoding",
+        "Characters that were lost or had to be mended on reading.",
+        "A look-alike letter in a net's name makes two nets of one.",
+        "minor",
+        source=NO_SOURCE,
+    ),
+    _Topic(
+        "title",
+        "A card on the first line, which SPICE takes for the title.",
+        "The element on it is not in the circuit.",
+    ),
+    _Topic(
+        "continuation",
+        "A continuation line that continues nothing, or a comment.",
+        "What stands on it is lost or belongs to another card than it seems.",
+        "minor",
+    ),
+    _Topic(
+        "end",
+        "Cards behind .end, and blocks that are not closed.",
+        "SPICE does not read behind .end.",
+    ),
+    _Topic(
+        "card",
+        "A card that could not be read.",
+        "An element that cannot be read is not in the circuit that was judged.",
+    ),
+    _Topic(
+        "node-count",
+        "A card with too few or too many nodes for its letter or subcircuit.",
+        "Nodes shift into each other's places, and the circuit is another one.",
+    ),
+    _Topic(
+        "duplicate",
+        "A designator, model, subcircuit or port that stands twice.",
+        "Programs keep the first, the last, or stop; the two cards cannot both be meant.",
+    ),
+    _Topic(
+        "model",
+        "A model or subcircuit that is called and defined nowhere.",
+        "A simulator stops there; a review has to do without what the model would say.",
+        "major",
+        "minor",
+    ),
+    _Topic(
+        "include",
+        "A file to be included that is missing, goes in circles, or lies outside the folder.",
+        "What it holds is not in the circuit that was judged.",
+    ),
+    _Topic(
+        "parameter",
+        "A parameter that is not defined, defined in circles, or defined twice.",
+        "Values that rest on it cannot be worked out, or are not the ones meant.",
+    ),
+    _Topic(
+        "expression",
+        "An expression that cannot be worked out.",
+        "The value that rests on it is missing.",
+    ),
+    _Topic(
+        "source",
+        "A source whose time function is incomplete or contradicts itself.",
+        "What the source delivers is not what its author meant.",
+    ),
+    _Topic(
+        "ground",
+        "A circuit without ground, or with a second name for it.",
+        "Every voltage is counted from net 0.",
+    ),
+    _Topic(
+        "bound",
+        "A netlist that passed a bound on size, depth or expansion.",
+        "What lies beyond the bound was not read.",
+        source=NO_SOURCE,
+    ),
+    _Topic(
+        "other-dialect",
+        "A card that other SPICE programs read otherwise or refuse.",
+        "The netlist means one thing here and another elsewhere.",
+        "remark",
+    ),
+)
+
+
+def _judge(topic: _Topic) -> Callable[[Design, Limits, Design], Iterator[Outcome]]:
+    """Make the judge of one topic: every problem the reader filed under its name."""
+    name = f"netlist-{topic.what}"
+
+    def judge(subject: Design, limits: Limits, design: Design) -> Iterator[Outcome]:
+        for problem in subject.problems:
+            if problem.rule == name:
+                yield finding_of(problem, _severity(topic, problem, subject.kind), topic.source)
+
+    return judge
+
+
+def _severity(topic: _Topic, problem: Problem, kind: Kind) -> Severity:
+    if problem.severity is not None:
+        return problem.severity
+    if topic.on_board is not None and kind != "bench":
+        return topic.on_board
+    return topic.severity
+
+
+def finding_of(problem: Problem, severity: Severity, source: str = NO_SOURCE) -> Finding:
+    """Make the finding of a problem the reader met; both readings of a value are shown."""
+    message = problem.message
+    spice, likely = problem.spice_value, problem.likely_value
+    if spice is not None and likely is not None and not _both_shown(problem):
+        message = (
+            f"{message} SPICE reads {si(spice, problem.unit)}; {si(likely, problem.unit)} was most "
+            "likely meant, and the review went on with that."
+        )
+    return Finding(
+        rule=problem.rule,
+        family="netlist",
+        severity=severity,
+        designators=problem.designators,
+        nets=problem.nets,
+        demand=likely,
+        limit=spice,
+        unit=problem.unit,
+        basis=("netlist",),
+        message=message,
+        remedy=problem.remedy,
+        source=source,
+        location=problem.location,
+    )
+
+
+def _both_shown(problem: Problem) -> bool:
+    shown = (si(v, problem.unit) for v in (problem.spice_value, problem.likely_value))
+    return all(text in problem.message for text in shown)
+
+
+READING = tuple(
+    Rule(
+        name=f"netlist-{topic.what}",
+        family="netlist",
+        looks_at="design",
+        judges=topic.judges,
+        reason=topic.reason,
+        source=topic.source,
+        silent="Minor on a board, where the value that is bought is the one meant, major on a "
+        "bench."
+        if topic.on_board == "minor"
+        else "",
+        judge=_judge(topic),
+    )
+    for topic in _TOPICS
+)
