@@ -159,14 +159,13 @@ def split_quantity(text: str, unit: str | None = None, *, spice: bool = False) -
     wanted = None if unit is None else canonical_unit(unit)
     sign, whole, power, tail = _number_and_tail(text, wanted)
     readings = _readings(text, tail, wanted, spice)
-    fitting = [r for r in readings if wanted is None or r[1] in ("", wanted)] or readings
-    if not fitting:
+    if not readings:
         raise _unreadable(text, wanted)
-    if len({factor for factor, _ in fitting}) > 1:
+    if len({factor for factor, _ in readings}) > 1:
         raise QuantityError(
-            f'"{text}" leaves open whether F is farad or femto: write a plain number or fF.'
+            f'"{text}" leaves open whether F is farad or femto: write a plain number.'
         )
-    factor, found = fitting[0]
+    factor, found = next((r for r in readings if r[1] in ("", wanted)), readings[0])
     # one decimal text converted once is correctly rounded: 100 n is 1e-7, not a neighbour of it
     value = float(f"{sign}{whole}e{power + factor}")
     if math.isinf(value):

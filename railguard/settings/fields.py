@@ -79,16 +79,15 @@ class Fields:
         """Return a number that has no sense at or below zero."""
         value = self.number(key, unit)
         if value is not None and value <= 0:
-            raise self.fault(f"needs a {key} above zero.", key)
+            raise self.fault(f"needs {key} above zero.", key)
         return value
 
     def share(self, key: str) -> float | None:
         """Return a tolerance: at least 0, below 1."""
         value = self.number(key, "%")
         if value is not None and not 0 <= value < 1:
-            raise self.fault(
-                f"has a {key} of {value * 100:g} %.", key, 'Write for example "5 %" or 0.05.'
-            )
+            what = f"cannot use its {key}: {value * 100:g} % is no share from 0 to below 100 %."
+            raise self.fault(what, key, 'Write for example "5%" or 0.05.')
         return value
 
     def entries(self, key: str) -> Sequence[object] | None:
@@ -109,7 +108,7 @@ class Fields:
             raise self.fault(f"needs two numbers as its {key}: the lowest and the highest.", key)
         low, high = (self._read(key, entry, unit) for entry in raw)
         if low > high:
-            raise self.fault(f"has a {key} whose first number is above its second.", key)
+            raise self.fault(f"gives its {key} with the higher number first.", key)
         return low, high
 
     def text(self, key: str) -> str:
@@ -142,6 +141,5 @@ class Fields:
         try:
             return dt.datetime.strptime(str(raw), "%Y-%m-%d").date()
         except ValueError as error:
-            raise self.fault(
-                f'has an {key} "{raw}" that is no day.', key, "Write year-month-day: 2027-06-30."
-            ) from error
+            what = f'cannot use its {key}: "{raw}" is no day.'
+            raise self.fault(what, key, "Write year-month-day: 2027-06-30.") from error

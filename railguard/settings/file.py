@@ -121,4 +121,8 @@ def _syntax(error: tomllib.TOMLDecodeError, text: str, name: str) -> SettingsErr
         line = int(match[2]) if match[2] else text.count("\n") + 1
         place = Location(name, line, int(match[3]) if match[3] else 1)
     what = f"The settings file is no valid TOML: {words[0].lower()}{words[1:]}."
-    return SettingsError(what, place, "Names with other signs than letters and digits need quotes.")
+    return SettingsError(
+        what,
+        place,
+        "Texts need quotes, and names with signs other than letters, digits, - and _ as well.",
+    )

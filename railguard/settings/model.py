@@ -116,7 +116,7 @@ class Settings(msgspec.Struct, frozen=True, kw_only=True):
     file        the railguard.toml used, or ""
     hold_at     the level that stops a commit or a build
     kind        "board" or "bench"; "" : worked out
-    nets, uses, pins  by the name as its author spelt it: compare without regard to case
+    nets, uses, pins  by name; `settings.spelling` makes it the netlist's own
     pins        pin names in the order of the card: `in+ in- v+ v- out`, `1out 1in- 1in+ ...`
     ambient     lowest and highest, degrees Celsius; None: 25 throughout
     limits      rule name -> limit name -> value

@@ -27,7 +27,7 @@ def net_level(_: str, fields: Fields, place: Location | None) -> NetLevel:
     fields.only("volts", "tolerance")
     volts = fields.number("volts", "V")
     if volts is None:
-        raise fields.fault("says no volts.", remedy="State its level: volts = 12.0.")
+        raise fields.fault("says no volts.", remedy="State its level in volts.")
     return NetLevel(volts, fields.share("tolerance"), place)
 
 
