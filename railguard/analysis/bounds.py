@@ -40,7 +40,7 @@ def bound(
         default = _corner(upper, demand, limit, moves, limit_moves, spread, everything)
         weight = np.abs(limit_moves - moves) * spread.delta
         order = np.argsort(-weight)[:CULPRITS]
-        culprits = tuple(dict.fromkeys(spread.names[i] for i in order if weight[i] > 0))
+        culprits = tuple(dict.fromkeys(spread.parameters[i].name for i in order if weight[i] > 0))
     return Bound(
         upper=upper,
         demand=demand,

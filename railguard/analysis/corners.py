@@ -32,22 +32,39 @@ DEFAULT_INDUCTOR = 0.20
 Flags = npt.NDArray[np.bool_]
 
 
+class Parameter(msgspec.Struct, frozen=True):
+    """One thing that may be off.
+
+    stamp  an element; None for an entry of b, which then stands in `row` with `value` per unit
+    """
+
+    name: str
+    stamp: Stamp | None = None
+    row: int = -1
+    value: float = 0.0
+
+
 class Spread(msgspec.Struct, frozen=True, kw_only=True):
     """Everything that may be off, and by how much.
 
-    names   designator of each parameter, shape (parameters,)
+    parameters  shape (parameters,)
     delta   its share (elements, rails) or its size in SI units (offset, bias)
     stated  True where the user or the card states it
     error   True for an amplifier's own offset and bias current
     high, low  derivative of each quantity's upper and lower end, shape (quantities, parameters)
     """
 
-    names: tuple[str, ...]
+    parameters: tuple[Parameter, ...]
     delta: Real
     stated: Flags
     error: Flags
     high: Real
     low: Real
+
+    @property
+    def names(self) -> tuple[str, ...]:
+        """Designators of the parameters, as a report names them."""
+        return tuple(p.name for p in self.parameters)
 
     def reach(self, side: Real) -> Real:
         """Return the extreme-value excursion of each quantity, shape (quantities,)."""
@@ -115,14 +132,14 @@ def spread(
     rail_names = [n for n in rails if n in network.injections and rails[n][1] > 0]
     amplifiers = [a for a in answers.amplifiers if a.designator in nuisances]
     high, low = _elements(answers, stamps)
-    extra, names, delta, is_stated_extra = _levels(
+    extra, entries, delta, is_stated_extra = _levels(
         answers, rails, rail_names, {a.designator: nuisances[a.designator] for a in amplifiers}
     )
     return Spread(
-        names=(*(s.designator for s in stamps), *names),
+        parameters=(*(Parameter(s.designator, s) for s in stamps), *entries),
         delta=np.array([*shares, *delta]),
         stated=np.array([*flags, *is_stated_extra], dtype=bool),
-        error=np.array([False] * len(stamps) + [n not in rails for n in names], dtype=bool),
+        error=np.array([False] * len(stamps) + [e.name not in rails for e in entries], dtype=bool),
         high=np.hstack([high, extra]),
         low=np.hstack([low, extra]),
     )
@@ -176,15 +193,19 @@ def _levels(
     rails: Mapping[str, tuple[float, float, bool]],
     rail_names: list[str],
     nuisances: Mapping[str, Nuisance],
-) -> tuple[Real, list[str], list[float], list[bool]]:
+) -> tuple[Real, list[Parameter], list[float], list[bool]]:
     """Derivatives to rails, offsets and bias currents: they move the DC level only."""
     network: Network = answers.network
     adjoint = answers.dc.adjoint([int(r) for r in answers.rows]).real
-    columns, names, delta, stated = [], [], [], []
+    columns: list[Real] = []
+    entries: list[Parameter] = []
+    delta: list[float] = []
+    stated: list[bool] = []
     for name in rail_names:
         volts, share, is_stated = rails[name]
-        columns.append(adjoint[:, network.injections[name].row] * volts)
-        names.append(name)
+        row = network.injections[name].row
+        columns.append(adjoint[:, row] * volts)
+        entries.append(Parameter(name, None, row, volts))
         delta.append(share)
         stated.append(is_stated)
     for amplifier in answers.amplifiers:
@@ -193,14 +214,14 @@ def _levels(
         if nuisance is None or row < 0 or amplifier.designator in network.forced:
             continue
         columns.append(adjoint[:, row])
-        names.append(f"offset of {amplifier.designator}")
+        entries.append(Parameter(f"offset of {amplifier.designator}", None, row, 1.0))
         delta.append(nuisance.offset)
         for net in (amplifier.plus, amplifier.minus):
             at = network.row(net)
             if at >= 0:
                 columns.append(adjoint[:, at])
-                names.append(f"bias current of {amplifier.designator}")
+                entries.append(Parameter(f"bias current of {amplifier.designator}", None, at, 1.0))
                 delta.append(nuisance.bias)
-    stated += [False] * (len(names) - len(stated))
+    stated += [False] * (len(entries) - len(stated))
     stacked = np.stack(columns, axis=1) if columns else np.zeros((len(answers.rows), 0))
-    return stacked, names, delta, stated
+    return stacked, entries, delta, stated

@@ -1,0 +1,99 @@
+"""Extreme values against sampling and against hand calculation."""
+
+import numpy as np
+import pytest
+
+from railguard.analysis.corners import spread, tolerance_of
+from railguard.analysis.network import Network
+from railguard.analysis.ranges import answer
+from railguard.analysis.recognise import recognise
+from railguard.analysis.sampling import exact_corners, monte_carlo
+from railguard.analysis.signals import prepare
+from railguard.analysis.supplies import feeds, supply_nets
+from railguard.circuit.model import Element
+from railguard.devices import catalogue
+from railguard.settings.model import Settings, Tolerances
+
+CIRCUITS = {
+    "inverting": "VIN in 0 SIN(0 0.5 1k)\nR1 in n 10k\nR2 n out 100k\nXU1 0 n vp vn out TL072",
+    "non-inverting": "VIN in 0 SIN(1 0.2 1k)\nR1 n 0 1k\nR2 n out 9k\nXU1 in n vp vn out TL072",
+    "difference": (
+        "V1 a 0 SIN(2 0.1 1k)\nV2 b 0 2\nR1 a n 10k\nR2 n out 50k\nR3 b p 10k\nR4 p 0 50k\n"
+        "XU1 p n vp vn out TL072"
+    ),
+    "summing": (
+        "V1 a 0 SIN(0 1 1k)\nV2 b 0 0.5\nR1 a n 10k\nR2 b n 20k\nRF n out 30k\n"
+        "XU1 0 n vp vn out TL072"
+    ),
+    "low-pass": "VIN in 0 SIN(0 1 1k)\nR1 in n 10k\nR2 n out 20k\nC2 n out 8.2n\n"
+    "XU1 0 n vp vn out TL072",
+    "Sallen-Key": "VIN in 0 SIN(0 1 9k)\nR1 in a 11.3k\nR2 a p 11.3k\nC1 a out 2n\nC2 p 0 1n\n"
+    "XU1 p out vp vn out TL072",
+    "divider": "VIN in 0 SIN(2 2 50)\nR1 in p 33k\nR2 p 0 10k\nXU1 p out vp vn out TL072",
+    "two-stage": (
+        "VIN in 0 SIN(0 0.1 1k)\nR1 n 0 1k\nR2 n a 9k\nXU1 in n vp vn a TL072\nR3 a m 10k\n"
+        "R4 m out 30k\nXU2 0 m vp vn out TL072"
+    ),
+    "rail reference": "R1 vp p 20k\nR2 p 0 10k\nXU1 p out vp vn out TL072",
+    "transimpedance": "IIN 0 n SIN(1u 1u 1k)\nR2 n out 1meg\nXU1 0 n vp vn out TL072",
+}
+
+
+def _solved(design, cards):
+    circuit = design(cards).circuit
+    found = recognise(circuit, catalogue.load(), Settings()).amplifiers
+    fed = feeds(supply_nets(found), circuit.elements, Settings(), found)
+    prepared = prepare(circuit.elements, Settings(), fed)
+    network = Network(prepared.elements, found)
+    answers = answer(network, found, prepared, {}, {})
+    rails = {"VP": (15.0, 0.05, False), "VN": (-15.0, 0.05, False)}
+    return answers, spread(answers, prepared.elements, frozenset(), Tolerances(), rails, {})
+
+
+@pytest.mark.parametrize("name", CIRCUITS)
+def test_no_sample_leaves_the_extreme_value(design, name):
+    """10,000 samples stay inside the reported bound, or leave it by less than 0.5 % of its width."""
+    answers, found = _solved(design, CIRCUITS[name])
+    sampled = monte_carlo(answers, found, 10_000, seed=1)
+    for k in range(len(answers.amplifiers)):
+        for quantity in ("output", "current"):
+            q = answers.at(k, quantity)
+            high = answers.high[q] + np.abs(found.high[q]) @ found.delta
+            low = answers.low[q] - np.abs(found.low[q]) @ found.delta
+            slack = 0.005 * max(high - low, 1e-12)
+            assert sampled.high[:, q].max() <= high + slack
+            assert sampled.low[:, q].min() >= low - slack
+
+
+@pytest.mark.parametrize("name", CIRCUITS)
+def test_no_sample_leaves_the_exact_corner(design, name):
+    """The re-solved corner bounds every sample."""
+    answers, found = _solved(design, CIRCUITS[name])
+    sampled = monte_carlo(answers, found, 10_000, seed=2)
+    q = answers.at(len(answers.amplifiers) - 1, "output")
+    exact = exact_corners(answers, found, [q])
+    slack = 1e-9 * (1 + abs(exact.high[0, 0]))
+    assert sampled.high[:, q].max() <= exact.high[0, 0] + slack
+    assert sampled.low[:, q].min() >= exact.low[0, 0] - slack
+
+
+def test_inverting_gain_spreads_twice_the_tolerance(design):
+    """Gain -10 with 1 % resistors: 2 % of 5 V either way, to first order."""
+    answers, found = _solved(design, CIRCUITS["inverting"])
+    q = answers.at(0, "output")
+    assert np.abs(found.high[q]) @ found.delta == pytest.approx(0.02 * 5.0, rel=5e-3)
+
+
+@pytest.mark.parametrize(
+    ("text", "expected"),
+    [
+        ("5%", (0.05, True)),
+        ("tol=0.1 %", (0.001, True)),
+        ("0603 1%", (0.01, True)),
+        ("", (0.01, False)),
+    ],
+)
+def test_tolerance_is_read_from_the_card(text, expected):
+    """A card's own tolerance counts as stated; else the class's default."""
+    element = Element(kind="R", designator="R1", nets=("a", "b"), value=1e3, text=text)
+    assert tolerance_of(element, Tolerances()) == expected

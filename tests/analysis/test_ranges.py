@@ -1,0 +1,130 @@
+"""The demanded ranges against hand calculation."""
+
+import math
+
+import pytest
+
+INVERTING = """
+VIN in 0 SIN(0 0.5 1k)
+R1 in n 10k
+R2 n out 100k
+RL out 0 2k
+XU1 0 n vp vn out TL072
+"""
+
+
+def test_inverting_stage_swings_gain_times_input(stage):
+    """0.5 V peak times 10, either way."""
+    output = stage(INVERTING).output
+    assert output.demand.high == pytest.approx(5.0, rel=1e-3)
+    assert output.demand.low == pytest.approx(-5.0, rel=1e-3)
+    assert output.level == pytest.approx(0.0, abs=1e-6)
+
+
+def test_output_current_is_load_and_feedback(stage):
+    """5 V into 2 kilohm and into 100 kilohm to the virtual ground."""
+    current = stage(INVERTING).current
+    assert current.demand_source == pytest.approx(5 / 2e3 + 5 / 100e3, rel=1e-3)
+    assert current.demand_sink == pytest.approx(current.demand_source, rel=1e-9)
+    assert current.into == "RL"
+
+
+def test_capacitive_load_adds_in_quadrature(stage):
+    """A follower at 10 kHz, 1 V peak, with 10 nF and 1 kilohm."""
+    cards = "VIN in 0 SIN(0 1 10k)\nXU1 in out vp vn out TL072\nRL out 0 1k\nCL out 0 10n"
+    expected = math.hypot(1e-3, 2 * math.pi * 10e3 * 10e-9)
+    assert stage(cards).current.demand_source == pytest.approx(expected, rel=2e-3)
+
+
+def test_two_tones_meet_at_their_worst(stage):
+    """Two sines of different frequency add their peaks."""
+    cards = """
+V1 a 0 SIN(0 1 1k)
+V2 b 0 SIN(0 0.5 1.7k)
+R1 a n 10k
+R2 b n 10k
+R3 n out 10k
+XU1 0 n vp vn out TL072
+"""
+    assert stage(cards).output.demand.high == pytest.approx(1.5, rel=2e-3)
+
+
+def test_tones_of_one_frequency_keep_their_phase(stage):
+    """Two equal sines in opposite phase cancel at a summing node."""
+    cards = """
+V1 a 0 SIN(0 1 1k)
+V2 b 0 SIN(0 1 1k 0 0 180)
+R1 a n 10k
+R2 b n 10k
+R3 n out 10k
+XU1 0 n vp vn out TL072
+"""
+    assert stage(cards).output.demand.high == pytest.approx(0.0, abs=1e-6)
+
+
+def test_stated_band_keeps_its_worst_frequency(stage):
+    """A Q of 5 peaks at 10 kHz inside a band up to 20 kHz."""
+    cards = """
+R1 in a 5.758k
+R2 a p 2.199k
+C1 a out 20n
+C2 p 0 1n
+XU1 p out vp vn out TL072
+"""
+    settings = '[signals]\n"in" = { low = -1, high = 1, to = 20e3 }'
+    output = stage(cards, settings).output
+    assert output.demand.high == pytest.approx(2.06, rel=0.03)
+    assert output.frequency == pytest.approx(9.35e3, rel=0.25)
+
+
+def test_slew_is_the_steepest_slope(stage):
+    """5 V peak at 1 kHz needs 2 pi f V."""
+    assert stage(INVERTING).output.slew == pytest.approx(2 * math.pi * 1e3 * 5, rel=2e-3)
+
+
+def test_pulse_is_followed_through_its_edges(stage):
+    """A first-order stage reaches 1 - exp(-T/tau) of its step."""
+    cards = """
+VIN in 0 PULSE(0 2 0 1u 1u 100u 200u)
+R1 in n 10k
+R2 n out 20k
+C2 n out 1n
+XU1 0 n vp vn out TL072
+"""
+    output = stage(cards).output
+    assert output.demand.low == pytest.approx(-4 * (1 - math.exp(-5.05)), rel=5e-3)
+    assert output.demand.high == pytest.approx(0.0, abs=0.01)
+
+
+def test_probe_states_no_amplitude(stage):
+    """AC 1 leaves the DC level and an open question."""
+    cards = "VIN in 0 AC 1\nR1 in n 10k\nR2 n out 100k\nXU1 0 n vp vn out TL072"
+    found = stage(cards)
+    assert found.output.level == pytest.approx(0.0, abs=1e-6)
+    assert "VIN" in found.unknown["output"].why
+    assert found.allowed.net == "in"
+
+
+def test_saturated_stage_feeds_its_limit(design):
+    """The second stage sees what the first really reaches, not its demand."""
+    cards = """
+VIN in 0 SIN(0 0.5 1k)
+R1 in n 10k
+R2 n a 500k
+XU1 0 n vp vn a TL072
+R3 a m 10k
+R4 m out 5k
+XU2 0 m vp vn out TL072
+"""
+    first, second = design(cards).stages
+    assert first.output.demand.high == pytest.approx(25.0, rel=2e-3)
+    assert second.output.demand.high == pytest.approx(first.output.available.high / 2, rel=0.02)
+
+
+def test_unknown_load_leaves_the_current_open(design):
+    """A connector on the output takes what nobody states; the voltage is known all the same."""
+    cards = "VIN in 0 SIN(0 1 1k)\nXU1 in out vp vn out TL072\nJ1 out 0 CONN_2"
+    found = design(cards).stages[0]
+    assert found.output.demand.high == pytest.approx(1.0, rel=1e-3)
+    assert "J1" in found.unknown["current"].why
+    assert "output" not in found.unknown
