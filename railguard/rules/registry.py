@@ -8,24 +8,31 @@ import msgspec
 from railguard.analysis.stage import Design
 from railguard.errors import PluginError, UsageError
 from railguard.notices import NotChecked
-from railguard.rules import bias, decoupling, drive, netlist, supply
+from railguard.rules.bias import path
 from railguard.rules.causes import merge
+from railguard.rules.decoupling import presence, quality
+from railguard.rules.drive import current
 from railguard.rules.feedback import sign, size
 from railguard.rules.finding import Finding
 from railguard.rules.headroom import ranges
+from railguard.rules.netlist import reading
 from railguard.rules.protocol import Limits, Outcome, Rule
+from railguard.rules.supply import levels
+from railguard.rules.supply import presence as supplies
 from railguard.settings.model import Settings
 from railguard.settings.names import advice
 
 RULES: tuple[Rule, ...] = (
-    *supply.RULES,
-    *decoupling.RULES,
+    *supplies.RULES,
+    *levels.RULES,
+    *presence.RULES,
+    *quality.RULES,
     *ranges.RULES,
-    drive.CURRENT,
-    bias.NO_DC_PATH,
+    *current.RULES,
+    *path.RULES,
     *sign.RULES,
     *size.RULES,
-    *netlist.READING,
+    *reading.RULES,
 )
 
 

@@ -1,4 +1,4 @@
-"""The reading itself: what the netlist says otherwise than its author most likely meant."""
+"""What the netlist says otherwise than its author most likely meant."""
 
 from collections.abc import Callable, Iterator
 
@@ -205,7 +205,7 @@ def _both_shown(problem: Problem) -> bool:
     return all(text in problem.message for text in shown)
 
 
-READING = tuple(
+RULES = tuple(
     Rule(
         name=f"netlist-{topic.what}",
         family="netlist",

@@ -1,4 +1,4 @@
-"""Drive: the current and the power a stage's load asks of its output."""
+"""The current an output must give."""
 
 from collections.abc import Iterator
 
@@ -135,3 +135,5 @@ CURRENT = Rule(
     ),
     judge=judge_current,
 )
+
+RULES = (CURRENT,)

@@ -1,4 +1,4 @@
-"""Bias: whether every input has a DC path, at a legal level, with small enough an error."""
+"""Whether every input has a DC path."""
 
 from collections.abc import Iterator
 
@@ -107,3 +107,5 @@ NO_DC_PATH = Rule(
     "not checked. Unused channels have a rule of their own.",
     judge=judge_path,
 )
+
+RULES = (NO_DC_PATH,)

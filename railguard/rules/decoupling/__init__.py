@@ -1,0 +1,1 @@
+"""Decoupling, judged per rail: a netlist knows no distance."""
