@@ -88,9 +88,10 @@ def _solved(answers: Answers, spread: Spread, moved: Real, hertz: float, b: Comp
             continue
         share = moved[:, column]
         if stamp.kind == "R":
-            change = (stamp.value * (1.0 / (1.0 + share) - 1.0)).astype(np.complex128)
+            change = np.asarray(stamp.value * (1.0 / (1.0 + share) - 1.0), dtype=np.complex128)
         else:
-            change = (s if stamp.kind == "C" else -s) * stamp.value * share
+            unit = s if stamp.kind == "C" else -s
+            change = np.asarray(unit * stamp.value * share, dtype=np.complex128)
         if stamp.kind == "L":
             matrix[:, stamp.a, stamp.a] += change
             continue

@@ -52,7 +52,7 @@ def _solved(design, cards):
 
 @pytest.mark.parametrize("name", CIRCUITS)
 def test_no_sample_leaves_the_extreme_value(design, name):
-    """10,000 samples stay inside the reported bound, or leave it by less than 0.5 % of its width."""
+    """10,000 samples stay inside the bound, or leave it by less than 0.5 % of its width."""
     answers, found = _solved(design, CIRCUITS[name])
     sampled = monte_carlo(answers, found, 10_000, seed=1)
     for k in range(len(answers.amplifiers)):
