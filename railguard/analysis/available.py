@@ -9,7 +9,7 @@ from collections.abc import Callable
 
 import msgspec
 
-from railguard.devices.model import Device, Figure, SwingPoint
+from railguard.devices.model import UNLISTED_CURRENT, Device, Figure, SwingPoint
 from railguard.devices.swing import Drop, drop
 from railguard.words import Basis
 
@@ -19,6 +19,8 @@ PRACTICE_DROP_RAIL_TO_RAIL = (0.1, 0.2)
 """The same for a device its maker calls rail-to-rail, no swing listed: common practice."""
 PRACTICE_CURRENT = (5e-3, 2e-3)
 """A, typical and safe, for a small general-purpose op-amp: common practice, no source."""
+USABLE_SHARE = 0.5
+"""Share of the short-circuit current that is usable: common practice, no source."""
 CARRIED_SUPPLY = 0.05
 """A guaranteed figure counts as carried when the supply differs by more than this share."""
 _ROUNDS = 12
@@ -97,7 +99,11 @@ def carried(points: tuple[SwingPoint, ...], total: float) -> bool:
 
 
 def current_reach(device: Device | None, source: bool) -> Reach:
-    """Return the output current a device gives: typical, and known to be given."""
+    """Return the output current a device gives: typical, and known to be given.
+
+    Where only a swing test's load or the short-circuit current is known, half the short-circuit
+    current counts as usable by common practice: it is the point of gross distortion, no rating.
+    """
     if device is None:
         return _practice_current()
     figure = device.source_current if source else device.sink_current
@@ -107,8 +113,11 @@ def current_reach(device: Device | None, source: bool) -> Reach:
         # Between what a test load draws and the short-circuit current nothing is listed.
         typical, basis = short.typical, short.typical_basis
     guaranteed, guaranteed_basis = figure.guaranteed, figure.guaranteed_basis
-    if guaranteed is None and short.guaranteed is not None:
-        guaranteed, guaranteed_basis = short.guaranteed, short.guaranteed_basis
+    listed = guaranteed is not None and not figure.condition.startswith(UNLISTED_CURRENT)
+    if not listed and short.best is not None:
+        usable = USABLE_SHARE * short.best
+        if guaranteed is None or usable > guaranteed:
+            guaranteed, guaranteed_basis = usable, "practice"
     if typical is None and guaranteed is None:
         return _practice_current()
     if typical is not None and guaranteed is not None and typical < guaranteed:
@@ -127,6 +136,9 @@ def input_reach(device: Device | None, positive: float, negative: float, upper: 
         return Reach(None, None, "practice", "practice")
     figure: Figure = device.input_high if upper else device.input_low
     rail = positive if upper else negative
+    if upper and device.input_reach is not None:
+        top = negative + device.input_reach
+        return Reach(None, top, "memory", figure.guaranteed_basis, figure.condition)
     typical = None if figure.typical is None else rail + figure.typical
     guaranteed = None if figure.guaranteed is None else rail + figure.guaranteed
     return Reach(

@@ -14,6 +14,10 @@ from railguard.location import Location
 from railguard.words import Basis
 
 
+UNLISTED_CURRENT = "no output current is listed"
+"""Begins the condition of a current that is only known from the load of a swing test."""
+
+
 class SheetSource(msgspec.Struct, frozen=True):
     """The document a family's figures come from. `seen` is False where all are from memory."""
 

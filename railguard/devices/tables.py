@@ -10,7 +10,13 @@ from typing import Literal
 
 import msgspec
 
-from railguard.devices.model import Device, Figure, SheetSource, SwingPoint
+from railguard.devices.model import (
+    UNLISTED_CURRENT,
+    Device,
+    Figure,
+    SheetSource,
+    SwingPoint,
+)
 from railguard.devices.packages import class_resistances
 from railguard.errors import CatalogueError
 from railguard.location import Location
@@ -271,7 +277,7 @@ def _tested_current(points: tuple[SwingPoint, ...]) -> Figure:
     return Figure(
         guaranteed=heaviest.amps,
         guaranteed_basis=heaviest.guaranteed_basis,
-        condition=f"no output current is listed: swing is guaranteed at {heaviest.condition}",
+        condition=f"{UNLISTED_CURRENT}: swing is guaranteed at {heaviest.condition}",
     )
 
 
