@@ -186,12 +186,12 @@ def test_what_is_no_such_quantity_is_refused_in_a_sentence(text, unit, sentence)
     [
         ("50M", "V", 0.05),
         ("50m", "V", 0.05),
-        ("1MEG", "Ω", 1000000.0),
-        ("1meg", "Ω", 1000000.0),
+        ("1MEG", "Ω", 1e6),
+        ("1meg", "Ω", 1e6),
         ("100NF", "F", 1e-07),
         ("10%", "%", 0.1),
         ("20MA", "A", 0.02),
-        ("2G", "Ω", 2000000000.0),
+        ("2G", "Ω", 2e9),
     ],
 )
 def test_spice_notation_takes_m_as_milli_in_either_case(text, unit, value):
