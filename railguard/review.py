@@ -1,7 +1,6 @@
 """Path, text or circuit to Review: the library's entry."""
 
 import datetime as dt
-from collections.abc import Iterable
 from pathlib import Path
 
 import msgspec
@@ -63,13 +62,12 @@ class Review(msgspec.Struct, frozen=True, kw_only=True):
 
     @property
     def held(self) -> bool:
-        """Tell whether anything of the run stands at the hold level, or a required family is open.
-        """
+        """Tell whether any design of the run is on hold."""
         return any(design.verdict == "hold" for design in self.designs)
 
 
 def review(
-    source: str | Path | object | Iterable[str | Path],
+    source: object,
     settings: Settings | Path | str | None = None,
     *,
     as_of: dt.date | None = None,
@@ -89,11 +87,11 @@ def review(
         SettingsError: the settings file cannot be obeyed.
         CatalogueError: a device table of the user's cannot be.
     """
-    many = isinstance(source, list | tuple | set | frozenset)
-    sources = list(source) if many else [source]  # type: ignore[call-overload]
+    sources: list[object] = list(source) if isinstance(source, list | tuple) else [source]
     day = as_of or dt.date.today()
     stated = _load(settings)
-    designs, matched = [], set()
+    designs: list[DesignReview] = []
+    matched: set[int] = set()
     used = stated
     for one in sources:
         own = stated if stated is not None else _found_beside(one)

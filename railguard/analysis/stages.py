@@ -6,6 +6,7 @@ import msgspec
 import numpy as np
 
 from railguard.analysis.allowed import allowed_inputs
+from railguard.analysis.filters import filter_of
 from railguard.analysis.inputs import inputs_of
 from railguard.analysis.loops import loop_of
 from railguard.analysis.outputs import output_side
@@ -95,6 +96,8 @@ def _stage(
             f"the output of {name} is tied to {amplifier.output}, which something else holds",
             "see the finding on it",
         )
+    topology = topology_of(amplifier, solution.ways, loop, rails)
+    gains = gains_of(view)
     heat = dissipation(device, supply, output, current, load)
     return Stage(
         designator=name,
@@ -102,7 +105,7 @@ def _stage(
         device=amplifier.match.name,
         family=device,
         package=amplifier.package,
-        topology=topology_of(amplifier, solution.ways, loop, rails),
+        topology=topology,
         use=use,
         use_stated=use_stated,
         supply=supply,
@@ -113,15 +116,32 @@ def _stage(
         feedback=feedback,
         dissipation=heat,
         junction=junction(device, heat, settings),
-        gain=gains_of(view),
+        gain=gains,
         after=after[view.k],
         generic=amplifier.match.sort == "generic",
         ac_coupled=is_ac_coupled(view),
         band=band_of(view),
         high_pass=high_pass_of(view),
+        filter=filter_of(
+            amplifier,
+            solution.ways,
+            topology,
+            _share_at_minus(view),
+            max((abs(gain) for _, gain in gains), default=0.0),
+        ),
         unknown=unknown,
         location=amplifier.element.location,
     )
+
+
+def _share_at_minus(view: View) -> float | None:
+    """Return the share of the output that reaches the inverting input at DC."""
+    passive, amplifier = view.solution.passive, view.amplifier
+    branch = passive.network.outputs.get(amplifier.designator, -1)
+    row = passive.network.row(amplifier.minus)
+    if branch < 0 or row < 0:
+        return None
+    return float(passive.dc.adjoint([row])[0, branch].real)
 
 
 def _supply(view: View, feeds: Mapping[str, Feed], unknown: dict[Part, Unknown]) -> Supply:

@@ -1,0 +1,108 @@
+"""Active filters of second order: natural frequency and quality factor.
+
+The stage is taken with an ideal amplifier and everything around it held, so its characteristic
+polynomial is of second order; three values of the determinant give it. That covers Sallen-Key and
+multiple-feedback stages of every kind without a formula for each.
+
+Source  TI SLOA049, Active low-pass filter design (the topologies); S. Franco, Design with
+        Operational Amplifiers, ch. 3 (worked values in tests/outside)
+"""
+
+import numpy as np
+
+from railguard.analysis.recognise import Amplifier
+from railguard.analysis.stage import Filter
+from railguard.analysis.surroundings import Ways
+from railguard.circuit.model import Element
+
+_KINDS = {
+    "Sallen-Key low-pass": "low-pass",
+    "Sallen-Key high-pass": "high-pass",
+    "Sallen-Key band-pass": "band-pass",
+}
+
+
+def filter_of(
+    amplifier: Amplifier, ways: Ways, topology: str, beta_minus: float | None, gain: float
+) -> Filter | None:
+    """Return the filter a stage is, or None.
+
+    beta_minus  share of the output at the inverting input, V/V (1 for a follower)
+    gain        magnitude in the pass band, where a signal tells it
+    """
+    if topology.startswith("Sallen-Key") and beta_minus:
+        pin, positive = amplifier.plus, True
+    elif topology == "multiple-feedback filter":
+        pin, positive = amplifier.minus, False
+    else:
+        return None
+    inner = _inner(pin, amplifier, ways)
+    if inner is None:
+        return None
+    found = _natural(pin, inner, amplifier, ways, beta_minus if positive else None)
+    if found is None:
+        return None
+    frequency, quality = found
+    kind = _KINDS.get(topology) or _multiple_feedback(amplifier, inner, ways)
+    reference = 1.0 / beta_minus if positive and beta_minus else gain
+    return Filter(kind, frequency, quality, gain or reference)
+
+
+def _other(element: Element, net: str) -> str:
+    return element.nets[1] if element.nets[0] == net else element.nets[0]
+
+
+def _passive(net: str, ways: Ways) -> list[Element]:
+    return [
+        e for e in ways.around.get(net, ()) if e.kind in ("R", "C") and e.value and len(e.nets) >= 2
+    ]
+
+
+def _inner(pin: str, amplifier: Amplifier, ways: Ways) -> str | None:
+    """Return the net between the pin and the signal that the output also reaches."""
+    for element in _passive(pin, ways):
+        net = _other(element, pin)
+        if net in ways.held or net in ways.outputs:
+            continue
+        if any(_other(e, net) == amplifier.output for e in _passive(net, ways)):
+            return net
+    return None
+
+
+def _multiple_feedback(amplifier: Amplifier, inner: str, ways: Ways) -> str:
+    """A capacitor from the inner net to the pin cuts DC: band-pass; a resistor passes it."""
+    to_pin = [e.kind for e in _passive(inner, ways) if _other(e, inner) == amplifier.minus]
+    to_output = [e.kind for e in _passive(inner, ways) if _other(e, inner) == amplifier.output]
+    if "R" in to_pin:
+        return "low-pass"
+    return "band-pass" if "C" in to_output else "high-pass"
+
+
+def _natural(
+    pin: str, inner: str, amplifier: Amplifier, ways: Ways, beta: float | None
+) -> tuple[float, float] | None:
+    """Return (hertz, Q) of the stage's pair of poles, or None where it has no such pair."""
+    index = {pin: 0, inner: 1, amplifier.output: 2}
+    g, c = np.zeros((3, 3)), np.zeros((3, 3))
+    elements = {id(e): e for net in (pin, inner) for e in _passive(net, ways)}
+    for element in elements.values():
+        value = element.value or 0.0
+        matrix, size = (g, 1.0 / value) if element.kind == "R" else (c, value)
+        a, b = (index.get(n, -1) for n in element.nets[:2])
+        for i, j, sign in ((a, a, 1.0), (b, b, 1.0), (a, b, -1.0), (b, a, -1.0)):
+            if i >= 0 and j >= 0:
+                matrix[i, j] += sign * size
+    # The third row is the amplifier: both inputs at one voltage.
+    g[2, :], c[2, :] = 0.0, 0.0
+    g[2, 0] = 1.0
+    if beta is not None:
+        g[2, 2] = -beta
+    if not c.any():
+        return None
+    scale = float(np.abs(g[:2]).max() / np.abs(c).max())
+    d0 = float(np.linalg.det(g))
+    plus, minus = (float(np.linalg.det(g + s * scale * c)) for s in (1.0, -1.0))
+    d1, d2 = (plus - minus) / 2, (plus + minus) / 2 - d0
+    if d0 * d2 <= 0 or d0 * d1 <= 0:
+        return None
+    return scale * float(np.sqrt(d0 / d2)) / (2 * np.pi), float(np.sqrt(d0 * d2)) / abs(d1)
