@@ -16,8 +16,10 @@ class Around:
         self.currents: list[str] = []
         self.own_output: list[Element] = []
         self.first: list[Element] = []
+        self.driven_by: set[str] = set()
+        stiff = start in ways.held or (start in ways.outputs and start != amplifier.output)
         seen = {start}
-        queue = [start]
+        queue = [] if stiff else [start]
         while queue:
             at = queue.pop()
             for element in ways.around.get(at, ()):
@@ -28,16 +30,17 @@ class Around:
                         self.driven.append(at)
                     continue
                 other = element.nets[1] if element.nets[0] == at else element.nets[0]
-                if other == skip:
-                    continue
                 if other == amplifier.output:
                     self.own_output.append(element)
+                    continue
+                if other == skip:
                     continue
                 if at == start:
                     self.first.append(element)
                 if other in ways.held or other in ways.outputs:
                     if other != GROUND and not _is_level(other, ways):
                         self.driven.append(other)
+                        self.driven_by.add(element.kind)
                     continue
                 if other not in seen:
                     seen.add(other)
@@ -45,7 +48,7 @@ class Around:
         direct = start in ways.outputs or (start in ways.held and start != GROUND)
         if direct and not _is_level(start, ways):
             self.driven.append(start)
-        for element in ways.around.get(start, ()):
+        for element in () if stiff else ways.around.get(start, ()):
             if element.kind in ("open", "ic", "opaque"):
                 self.driven.append(start)
 
@@ -108,6 +111,6 @@ def _sallen_key(plus: Around) -> str:
     kinds = {e.kind for e in plus.own_output}
     if kinds == {"C"}:
         return "Sallen-Key low-pass"
-    if kinds == {"R"} and any(e.kind == "C" for e in plus.first):
-        return "Sallen-Key high-pass"
-    return "Sallen-Key band-pass" if kinds == {"R"} and len(plus.first) > 1 else ""
+    if kinds != {"R"} or not any(e.kind == "C" for e in plus.first):
+        return ""
+    return "Sallen-Key high-pass" if plus.driven_by == {"C"} else "Sallen-Key band-pass"
