@@ -100,24 +100,33 @@ def load(user: Sequence[tuple[Mapping[str, object], Location]] = ()) -> Catalogu
                 f"{table.family} is described twice.", location, "Keep one of the two tables."
             )
         devices[table.family] = device
-        spelled = table.names or {0: (table.family,)}
-        if table.family not in index.families or table.names:
-            _register(names, table.family, spelled, overriding=True)
+        _register_user(names, table, table.family in index.families)
     return Catalogue(index, devices, names)
 
 
-def _register(
-    names: matching.Names,
-    family: str,
-    by_channels: Mapping[int, tuple[str, ...]],
-    overriding: bool = False,
-) -> None:
-    for channels, bases in by_channels.items():
+def _register(names: matching.Names, family: str, listed: Mapping[int, Sequence[str]]) -> None:
+    for channels, bases in listed.items():
         for base in _spelled_out(bases):
-            earlier = names.bases.get(base)
-            if overriding and earlier and earlier[0] not in ("", family):
-                names.also.setdefault(base, []).append(earlier[0])
             names.bases[base] = (family, channels or None)
+
+
+def _register_user(names: matching.Names, table: FamilyTable, shipped: bool) -> None:
+    """Let a user's table claim its names, and its family's name; say which family had them."""
+    listed = [
+        (matching.normalised(base), channels or None)
+        for channels, bases in table.names.items()
+        for base in _spelled_out(bases)
+    ]
+    if not shipped:
+        counts = set(table.names)
+        count = (counts.pop() or None) if len(counts) == 1 else None
+        listed.append((matching.normalised(table.family), count))
+    for base, channels in listed:
+        earlier = names.bases.get(base)
+        if earlier and earlier[0] not in ("", table.family):
+            names.also.setdefault(base, []).append(earlier[0])
+        if earlier is None or earlier[0] != table.family:
+            names.bases[base] = (table.family, channels)
 
 
 def _spelled_out(bases: Sequence[str]) -> Iterator[str]:

@@ -56,7 +56,7 @@ _TOKENS = re.compile(r"[/|,;:_()\[\]]+")
 def identify(name: str, names: Names) -> Found:
     """Say what a name stands for: an op-amp of the catalogue, another device, or nothing known."""
     code = normalised(name)
-    if not code or _STAGE_WORDS.search(code):
+    if not code or (_STAGE_WORDS.search(code) and code not in names.bases):
         return Found(sort="unknown")
     tokens = [code, *(token for token in _TOKENS.split(code) if len(token) > 3)]
     for token in tokens:
@@ -64,11 +64,11 @@ def identify(name: str, names: Names) -> Found:
             return found
     if _GENERIC.match(code):
         return Found(sort="generic", channels=1)
+    if code.isdigit() and (found := _bare_number(code, names)):
+        return found
     for token in tokens:
         if other := sort_of(token):
             return Found(sort=other)
-    if code.isdigit():
-        return _bare_number(code, names)
     if found := _by_series(code):
         return found
     return Found(sort="unknown", nearest=_nearest(code, names))
@@ -124,17 +124,15 @@ def _op_amp(code: str, names: Names) -> Found | None:
     )
 
 
-def _bare_number(code: str, names: Names) -> Found:
+def _bare_number(code: str, names: Names) -> Found | None:
     """Look for a code without its letters: `4558`, and `358`, which several families share."""
-    if len(code) < 3:
-        return Found(sort="unknown")
     hits: dict[str, int | None] = {}
     for base, (family, channels) in names.bases.items():
         letters = base.rstrip("0123456789")
-        if base[len(letters) :] == code and family:
+        if family and base[len(letters) :] == code:
             hits.setdefault(family, channels)
-    if not hits:
-        return Found(sort="unknown")
+    if len(code) < 3 or not hits:
+        return None
     first = next(iter(hits))
     if len(hits) == 1:
         return Found(sort="op-amp", family=first, channels=hits[first])

@@ -13,7 +13,6 @@ import msgspec
 from railguard.location import Location
 from railguard.words import Basis
 
-
 UNLISTED_CURRENT = "no output current is listed"
 """Begins the condition of a current that is only known from the load of a swing test."""
 
