@@ -218,7 +218,8 @@ def _levels(
         delta.append(nuisance.offset)
         for net in (amplifier.plus, amplifier.minus):
             at = network.row(net)
-            if at >= 0:
+            # A bias current into a net without DC path has no level: that is a finding of its own.
+            if at >= 0 and net not in network.floating:
                 columns.append(adjoint[:, at])
                 entries.append(Parameter(f"bias current of {amplifier.designator}", None, at, 1.0))
                 delta.append(nuisance.bias)

@@ -8,6 +8,7 @@ from railguard.analysis.stage import Bound, Current, Output, Part, Range, Supply
 from railguard.analysis.surroundings import heaviest_load, load_capacitance
 from railguard.analysis.view import View
 
+_NO_SUPPLY = Unknown("its supply pins leave it no supply voltage", "see the finding on its supply")
 _NO_LOOP = Unknown("its output stands at one of its limits: no feedback holds it", "a use for it")
 
 
@@ -35,6 +36,9 @@ def output_side(
             unknown[part] = why
     if not working and "output" not in unknown:
         unknown["output"] = _NO_LOOP
+    if supply.total is not None and supply.total <= 0:
+        unknown["output"] = unknown["current"] = _NO_SUPPLY
+        known = False
     level, (low, high) = view.level("output"), view.range("output")
     amps, amps_high = view.level("current"), view.range("current")[1]
     if not current_known:
@@ -47,7 +51,11 @@ def output_side(
         return amps + slope * (volts - level) if known else slope * volts
 
     reaches: dict[bool, Reach | None] = {True: None, False: None}
-    if supply.positive is not None and supply.negative is not None:
+    if (
+        supply.positive is not None
+        and supply.negative is not None
+        and supply.positive > supply.negative
+    ):
         for upper in (True, False):
             reaches[upper] = output_reach(
                 device,

@@ -22,9 +22,14 @@ def with_thresholds(view: View, loop: Loop, after: list[tuple[str, ...]]) -> Loo
     )
     row = network.outputs.get(amplifier.designator, -1)
     beta = float(solution.passive.dc.adjoint([network.row(amplifier.plus)])[0, row].real)
-    low, high = view.range("output")
-    level = view.level("plus")
-    middle = view.level("output")
+    half = (view.range("output")[1] - view.range("output")[0]) / 2
+    moved_plus, moved_minus = (_signal(view, quantity) for quantity in ("plus", "minus"))
+    if moved_minus.span or not moved_plus.span:
+        # The signal is on the inverting input: the other one carries the two thresholds.
+        middle, drive = view.level("plus"), moved_minus
+    else:
+        middle, drive = view.level("minus"), moved_plus
+    thresholds = Range(middle - abs(beta) * half, middle + abs(beta) * half)
     feeds = any(
         amplifier.designator in reached and solution.amplifiers[j].designator not in solution.forced
         for j, reached in enumerate(after)
@@ -33,7 +38,18 @@ def with_thresholds(view: View, loop: Loop, after: list[tuple[str, ...]]) -> Loo
         loop,
         beta_plus=beta,
         capacitor_across_plus=across,
-        thresholds=Range(level + beta * (low - middle), level + beta * (high - middle)),
-        drive=Range(*view.range("minus")),
+        thresholds=thresholds,
+        drive=drive,
         feeds_linear=feeds,
+    )
+
+
+def _signal(view: View, quantity: str) -> Range:
+    """Return what the signals alone do at an input, the stage's own output at its middle."""
+    q, level = view.at(quantity), view.level(quantity)
+    own = view.amplifier.designator
+    others = [tone for tone in view.answers.tones if tone.tone.name != own]
+    return Range(
+        level - sum(float(tone.down[q]) for tone in others),
+        level + sum(float(tone.up[q]) for tone in others),
     )

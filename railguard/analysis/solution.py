@@ -150,6 +150,8 @@ def _limits(answers: Answers, forced: frozenset[str]) -> dict[str, Clamp]:
         positive = float(answers.level[answers.at(k, "positive")])
         negative = float(answers.level[answers.at(k, "negative")])
         device = amplifier.match.device
+        if positive <= negative:
+            continue
         ends = []
         for upper in (True, False):
             reach = output_reach(device, positive, negative, upper, lambda _volts: 0.0)
