@@ -140,6 +140,20 @@ _TOPICS = (
         "Every voltage is counted from net 0.",
     ),
     _Topic(
+        "directive",
+        "A comment card `* railguard: ...` that could not be obeyed.",
+        "What it was meant to state is not known, and the review went on without it.",
+        "minor",
+        source=NO_SOURCE,
+    ),
+    _Topic(
+        "waiver-stale",
+        "A waiver that matches no finding of the whole run.",
+        "A leftover waiver may one day accept a finding nobody has looked at.",
+        "remark",
+        source=NO_SOURCE,
+    ),
+    _Topic(
         "bound",
         "A netlist that passed a bound on size, depth or expansion.",
         "What lies beyond the bound was not read.",
