@@ -339,6 +339,8 @@ class Stage(msgspec.Struct, frozen=True, kw_only=True):
     schematic    as on the schematic: `U2`
     device       as written: `TL072CP`
     family       the catalogue's family, or None
+    dissipation  W, of the whole package with all its channels at their worst
+    junction     degrees Celsius, at the hottest ambient with that heat
     gain         from each input net: (net, V/V at DC or in band)
     after        designators of stages whose output reaches this one's inputs
     generic      True for an amplifier without a type: OPAMP

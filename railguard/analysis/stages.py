@@ -26,7 +26,7 @@ from railguard.analysis.stage import (
 )
 from railguard.analysis.supplies import Feed
 from railguard.analysis.surroundings import feedback_of, output_load
-from railguard.analysis.thermal import dissipation, junction
+from railguard.analysis.thermal import dissipation, junction, package_heat
 from railguard.analysis.topology import topology_of
 from railguard.analysis.unseen import Spoiled
 from railguard.analysis.view import View
@@ -50,8 +50,15 @@ def stages_of(
     after = [_after(view) for view in views]
     drafts = [_stage(view, feeds, settings, rails, after) for view in views]
     allowed = allowed_inputs(solution, drafts)
+    heat = package_heat(drafts)
     return tuple(
-        msgspec.structs.replace(stage, allowed=allowed.get(stage.designator)) for stage in drafts
+        msgspec.structs.replace(
+            stage,
+            allowed=allowed.get(stage.designator),
+            dissipation=heat[stage.package],
+            junction=junction(stage.family, heat[stage.package], settings),
+        )
+        for stage in drafts
     )
 
 
@@ -115,7 +122,6 @@ def _stage(
         loop=loop,
         feedback=feedback,
         dissipation=heat,
-        junction=junction(device, heat, settings),
         gain=gains,
         after=after[view.k],
         generic=amplifier.match.sort == "generic",

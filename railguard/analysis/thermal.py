@@ -1,8 +1,10 @@
 """Heat: quiescent power, the output stage at its worst, and the junction."""
 
+from collections.abc import Iterable
+
 import numpy as np
 
-from railguard.analysis.stage import Current, Output, Supply
+from railguard.analysis.stage import Current, Output, Stage, Supply
 from railguard.devices.model import Device
 from railguard.settings.model import Settings
 
@@ -36,6 +38,19 @@ def dissipation(
     line = amps + slope * (volts - level)
     stage = np.where(line > 0, (supply.positive - volts) * line, (supply.negative - volts) * line)
     return supply.total * iq + float(np.max(stage))
+
+
+def package_heat(stages: Iterable[Stage]) -> dict[str, float | None]:
+    """Return the power of each package, W: all its channels at their worst together.
+
+    None where one of them is not known. A channel that is not in the netlist counts as idle.
+    """
+    heat: dict[str, float | None] = {}
+    for stage in stages:
+        before = heat.get(stage.package, 0.0)
+        own = stage.dissipation
+        heat[stage.package] = None if before is None or own is None else before + own
+    return heat
 
 
 def junction(device: Device | None, watts: float | None, settings: Settings) -> float | None:
