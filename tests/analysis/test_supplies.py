@@ -1,0 +1,100 @@
+"""Rails: level, basis and capacitors."""
+
+import pytest
+
+from railguard.analysis.supplies import level_from_name
+
+FOLLOWER = "VIN in 0 SIN(2 1 1k)\nXU1 in out vcc 0 out MCP6002\n"
+
+
+@pytest.mark.parametrize(
+    ("name", "volts"),
+    [
+        ("+12V", 12.0),
+        ("-5VA", -5.0),
+        ("12V0", 12.0),
+        ("3V3", 3.3),
+        ("+3.3V", 3.3),
+        ("VCC_3V3", 3.3),
+        ("15+", 15.0),
+        ("15-", -15.0),
+        ("/power/+5V", 5.0),
+        ("N12V", -12.0),
+        ("+5", 5.0),
+        ("5V", 5.0),
+        ("1V8D", 1.8),
+    ],
+)
+def test_a_name_with_a_volt_or_a_sign_states_a_level(name, volts):
+    """Rails as boards call them."""
+    assert level_from_name(name) == pytest.approx(volts)
+
+
+@pytest.mark.parametrize(
+    "name",
+    [
+        "N015",
+        "12",
+        "N001",
+        "VCC",
+        "V+",
+        "Net-_U1A--_",
+        "$N_0003",
+        "in-2",
+        "OUT5",
+        "A1",
+        "V5",
+        "in+",
+    ],
+)
+def test_an_automatic_name_states_nothing(name):
+    """A letter and digits alone are no voltage."""
+    assert level_from_name(name) is None
+
+
+def test_level_comes_through_a_ferrite(design):
+    """The rail at the pin is the source behind the ferrite, less its drop."""
+    supply = "V1 bat 0 5\nR9 bat vcc 10\nC1 vcc 0 100n"
+    rail = design(FOLLOWER, supply=supply).rails[0]
+    assert rail.level == pytest.approx(5.0, abs=0.02)
+    assert rail.level < 5.0
+    assert rail.series == ("R9",)
+    assert [c.designator for c in rail.decoupling] == ["C1"]
+
+
+def test_stacked_and_reversed_sources_are_solved(design):
+    """A negative rail drawn with its plus pin to ground."""
+    cards = "VIN in 0 0\nXU1 in out vp vn out TL072"
+    supply = "V1 vp mid 6\nV2 mid 0 6\nV3 0 vn 12"
+    levels = {r.net: r.level for r in design(cards, supply=supply).rails}
+    assert levels["vp"] == pytest.approx(12.0)
+    assert levels["vn"] == pytest.approx(-12.0)
+
+
+def test_user_statement_outranks_the_source(design):
+    """What the user's file says of a net wins over the deck."""
+    found = design(FOLLOWER, '[nets]\n"vcc" = { volts = 3.3 }', "V1 vcc 0 5\nC1 vcc 0 100n")
+    assert found.rails[0].level == pytest.approx(3.3)
+    assert found.rails[0].basis == "user"
+
+
+def test_name_counts_where_no_source_is(design):
+    """A board's rail without a source takes the level of its name."""
+    cards = "VIN in 0 SIN(2 1 1k)\nXU1 in out +5V 0 out MCP6002"
+    rail = design(cards, supply="C1 +5V 0 100n").rails[0]
+    assert rail.level == pytest.approx(5.0)
+    assert rail.origin == "its name"
+
+
+def test_a_supply_nobody_states_is_unknown(design):
+    """No level is made up for a net called VCC."""
+    found = design(FOLLOWER, supply="C1 vcc 0 100n\nJ1 vcc 0 CONN_2")
+    assert found.rails[0].level is None
+    assert "supply" in found.stages[0].unknown
+
+
+def test_capacitor_behind_a_ferrite_is_upstream(design):
+    """A capacitor on the far side of a ferrite does not count at the pins."""
+    rail = design(FOLLOWER, supply="V1 bat 0 5\nL1 bat vcc 1u\nC1 bat 0 100n").rails[0]
+    assert rail.decoupling == ()
+    assert [(c.designator, c.behind) for c in rail.upstream] == [("C1", "L1")]

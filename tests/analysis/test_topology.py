@@ -1,0 +1,44 @@
+"""Names of stages, and the filters among them."""
+
+import pytest
+
+STAGES = {
+    "follower": "VIN in 0 SIN(0 1 1k)\nXU1 in out vp vn out TL072",
+    "inverting": "VIN in 0 SIN(0 1 1k)\nR1 in n 10k\nR2 n out 10k\nXU1 0 n vp vn out TL072",
+    "non-inverting": "VIN in 0 SIN(0 1 1k)\nR1 0 n 10k\nR2 n out 10k\nXU1 in n vp vn out TL072",
+    "difference": (
+        "VA a 0 SIN(0 1 1k)\nVB b 0 SIN(0 1 2k)\nR1 a n 10k\nR2 n out 10k\nR3 b p 10k\n"
+        "R4 p 0 10k\nXU1 p n vp vn out TL072"
+    ),
+    "summing": (
+        "VA a 0 SIN(0 1 1k)\nVB b 0 SIN(0 1 2k)\nR1 a n 10k\nR2 b n 10k\nR3 n out 10k\n"
+        "XU1 0 n vp vn out TL072"
+    ),
+    "transimpedance": "I1 0 n SIN(0 1u 1k)\nR2 n out 100k\nXU1 0 n vp vn out TL072",
+    "integrator": "VIN in 0 SIN(0 1 1k)\nR1 in n 10k\nC2 n out 10n\nXU1 0 n vp vn out TL072",
+    "Sallen-Key low-pass": (
+        "VIN in 0 SIN(0 1 1k)\nR1 in a 10k\nR2 a p 10k\nC1 a out 2n\nC2 p 0 1n\n"
+        "XU1 p out vp vn out TL072"
+    ),
+    "Sallen-Key high-pass": (
+        "VIN in 0 SIN(0 1 1k)\nC1 in a 100n\nC2 a p 100n\nR1 a out 2.7k\nR2 p 0 24k\n"
+        "XU1 p out vp vn out TL072"
+    ),
+    "comparator with hysteresis": (
+        "VIN in 0 SIN(0 1 1k)\nR1 p 0 1k\nR2 p out 10k\nXU1 p in vp vn out TL072"
+    ),
+}
+
+
+@pytest.mark.parametrize("name", STAGES)
+def test_stage_is_named_as_people_name_it(stage, name):
+    """Each textbook stage by its usual name."""
+    assert stage(STAGES[name]).topology == name
+
+
+def test_shared_amplifier_card_with_two_channels(design):
+    """A dual package as one card of eight nets gives two stages in one package."""
+    cards = "VIN in 0 SIN(0 1 1k)\nU1 a a in vn b b out2 vp TL072\nR1 a b 10k"
+    found = design(cards)
+    assert [s.designator for s in found.stages] == ["U1A", "U1B"]
+    assert [p.designator for p in found.packages] == ["U1"]
