@@ -104,6 +104,9 @@ def parse(text: str, name: str) -> Settings:
         where = places(text, name)
     except tomllib.TOMLDecodeError as error:
         raise _syntax(error, text, name) from error
+    except ValueError as error:
+        # an integer with more digits than Python converts
+        raise SettingsError(f"The settings file {name} holds a number without end.") from error
     except RecursionError as error:
         raise SettingsError(f"The settings file {name} is nested too deeply.") from error
     return read_sections(tables, where, name)

@@ -78,9 +78,13 @@ def _number(raw: object, unit: str | None) -> tuple[float, str]:
         raise QuantityError("it is no number.")
     if isinstance(raw, str):
         return split_quantity(raw) if unit is None else (parse_quantity(raw, unit), unit)
-    if not math.isfinite(raw):
-        raise QuantityError(f'"{raw}" is no number that can be used here.')
-    return float(raw), ""
+    try:
+        value = float(raw)
+    except OverflowError:
+        value = math.inf
+    if not math.isfinite(value):
+        raise QuantityError(f'"{value}" is no number that can be used here.')
+    return value, ""
 
 
 class _Reader:

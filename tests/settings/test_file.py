@@ -259,6 +259,12 @@ class TestStatements:
             "",
         ),
         (
+            f"[nets]\nVBAT = {{ volts = 1{'0' * 400} }}",
+            2,
+            'The net "VBAT" cannot use its volts: "inf" is no number that can be used here.',
+            "",
+        ),
+        (
             "[nets]\nVBAT = { volts = true }",
             2,
             'The net "VBAT" cannot use its volts: it is no number.',
@@ -484,6 +490,13 @@ def test_what_cannot_be_obeyed_is_told_with_its_line(text, line, what, remedy):
 def test_nesting_without_end_is_refused():
     """A file is text from outside; it must not bring the program down."""
     assert "nested too deeply" in fault("a = " + "[" * 5000 + "]" * 5000).what
+
+
+def test_a_number_without_end_is_refused():
+    """Python converts no integer of more than some thousand digits."""
+    assert fault("a = " + "9" * 5000).what == (
+        "The settings file railguard.toml holds a number without end."
+    )
 
 
 class TestLoading:
