@@ -8,14 +8,16 @@ import msgspec
 from railguard.analysis.stage import Design
 from railguard.errors import PluginError, UsageError
 from railguard.notices import NotChecked
-from railguard.rules.bias import path
+from railguard.rules import dynamics, stability
+from railguard.rules.bias import errors, path, unused
 from railguard.rules.causes import merge
 from railguard.rules.decoupling import presence, quality
-from railguard.rules.drive import current
-from railguard.rules.feedback import sign, size
+from railguard.rules.drive import current, outputs, power
+from railguard.rules.feedback import sign, size, special
 from railguard.rules.finding import Finding
+from railguard.rules.headroom import limits as beyond
 from railguard.rules.headroom import ranges
-from railguard.rules.netlist import reading
+from railguard.rules.netlist import circuit, reading
 from railguard.rules.protocol import Limits, Outcome, Rule
 from railguard.rules.supply import levels
 from railguard.rules.supply import presence as supplies
@@ -28,11 +30,20 @@ RULES: tuple[Rule, ...] = (
     *presence.RULES,
     *quality.RULES,
     *ranges.RULES,
+    *beyond.RULES,
     *current.RULES,
+    *outputs.RULES,
+    *power.RULES,
     *path.RULES,
+    *errors.RULES,
+    *unused.RULES,
     *sign.RULES,
     *size.RULES,
+    *special.RULES,
+    *dynamics.RULES,
+    *stability.RULES,
     *reading.RULES,
+    *circuit.RULES,
 )
 
 

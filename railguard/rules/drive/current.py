@@ -9,22 +9,18 @@ from railguard.rules.compose import (
     missing_figure,
     open_point,
 )
-from railguard.rules.headroom.ranges import NO_LINEAR_RANGE, corner_words
+from railguard.rules.headroom.ranges import NO_LINEAR_RANGE, cap_of, corner_words
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.remedies import fit, sentence
 from railguard.rules.severity import Breach, breach
 from railguard.rules.wording import NO_SOURCE, device, limit_note, sheet
 from railguard.units import si
-from railguard.words import SEVERITIES, Severity
+from railguard.words import SEVERITIES
 
 NO_CURRENT = Unknown(
     "its output current is not known",
     "state the signal that reaches it under [signals], and its load under [loads]",
 )
-
-
-def _cap(stage: Stage) -> Severity:
-    return "minor" if stage.family is None else "critical"
 
 
 # --- drive-current
@@ -42,8 +38,8 @@ def judge_current(stage: Stage, limits: Limits, design: Design) -> Iterator[Outc
         return
     sides = []
     for verb, bound in bounds.items():
-        broken = breach(bound, limits["reserve-share"] * (bound.guaranteed or bound.typical or 0.0),
-                        cap=_cap(stage))  # fmt: skip
+        reserve = limits["reserve-share"] * (bound.guaranteed or bound.typical or 0.0)
+        broken = breach(bound, reserve, cap=cap_of(stage))
         if broken is not None:
             sides.append((verb, bound, broken))
     if not sides:
@@ -82,20 +78,19 @@ def _current_message(stage: Stage, verb: str, bound: Bound, broken: Breach) -> s
     into = f" into {stage.current.into}" if stage.current.into else ""
     asked = f"{lead}{stage.schematic} must {verb} {si(broken.demand, 'A')}{into}"
     limit = si(broken.limit, "A")
-    if broken.broken == "absolute":
-        note = limit_note("short-circuit current", broken.limit_basis, bound.condition)
-        return (
-            f"{asked}; even shorted, {device(stage)} gives {limit} {note}, so "
-            f"{si(-broken.margin, 'A')} is missing."
-        )
     kind = "typical" if broken.broken == "typical" or bound.guaranteed is None else "guaranteed"
     note = limit_note(kind, broken.limit_basis, bound.condition)
     gives = "gives" if kind == "typical" else "is known to give"
     if broken.broken == "reserve":
         return f"{asked}; {device(stage)} {gives} {limit} {note}: {si(broken.margin, 'A')} is left."
     end = "missing" if broken.broken == "typical" else "not covered"
+    short = stage.current.short_circuit
+    shorted = ""
+    if short is not None and short < broken.demand:
+        shorted = f" Even shorted it gives no more than {si(short, 'A')}."
     return (
-        f"{asked}; {device(stage)} {gives} {limit} {note}, so {si(-broken.margin, 'A')} is {end}."
+        f"{asked}; {device(stage)} {gives} {limit} {note}, so {si(-broken.margin, 'A')} is "
+        f"{end}.{shorted}"
     )
 
 

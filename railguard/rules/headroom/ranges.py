@@ -41,7 +41,7 @@ _RESERVE = Limit(
 )
 
 
-def _cap(stage: Stage) -> Severity:
+def cap_of(stage: Stage) -> Severity:
     """Return the worst severity for a stage: nobody knows what an unknown device reaches."""
     return "minor" if stage.family is None else "critical"
 
@@ -51,7 +51,7 @@ def _sides(stage: Stage, bounds: tuple[Bound, Bound], share: float) -> list[Side
     scale = None if stage.ac_coupled else stage.supply.total
     sides = []
     for bound in bounds:
-        broken = breach(bound, share * (bound.span or 0.0), scale=scale, cap=_cap(stage))
+        broken = breach(bound, share * (bound.span or 0.0), scale=scale, cap=cap_of(stage))
         if broken is not None:
             sides.append((bound, broken))
     return sorted(sides, key=lambda s: (SEVERITIES.index(s[1].severity), s[1].margin))

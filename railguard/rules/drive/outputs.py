@@ -1,0 +1,243 @@
+"""What an output or an input is joined to: other outputs, rails, sources, a capacitor."""
+
+import math
+from collections.abc import Iterator
+
+from railguard.analysis.stage import Design, Stage
+from railguard.circuit.model import GROUND, Element
+from railguard.rules.compose import finding, stage_finding
+from railguard.rules.protocol import Limit, Limits, Outcome, Rule
+from railguard.rules.remedies import fit
+from railguard.rules.severity import TABLE, evidence
+from railguard.rules.wording import NO_SOURCE, listed, origin
+from railguard.units import si
+from railguard.words import Basis, Severity
+
+# --- drive-joined
+
+
+def judge_joined(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome]:
+    """Judge whether two outputs stand on one net."""
+    same = [s for s in design.stages if s.output.net == stage.output.net]
+    if len(same) < 2 or same[0].designator != stage.designator:
+        return
+    # Outputs with open collectors may be joined, and an unknown device used as a comparator may
+    # have one.
+    open_collectors = all(s.use == "comparator" and s.family is None for s in same)
+    severity: Severity = "minor" if open_collectors else "critical"
+    yield finding(
+        "drive-joined",
+        severity,
+        f"The outputs of {listed(s.schematic for s in same)} are joined on net "
+        f"{stage.output.net} without a resistor between them: each drives into the other.",
+        designators=tuple(s.designator for s in same),
+        nets=(stage.output.net,),
+        demand=float(len(same)),
+        limit=1.0,
+        margin=1.0 - len(same),
+        remedy="Part the outputs; where two are to share a load, give each a series resistor of "
+        "10 Ω to 47 Ω.",
+        source=NO_SOURCE,
+        location=stage.location,
+    )
+
+
+JOINED = Rule(
+    name="drive-joined",
+    family="drive",
+    looks_at="stage",
+    judges="Whether two outputs stand on one net.",
+    reason="Two outputs differ by their offsets at least, and nothing but their short-circuit "
+    "current limits what flows.",
+    source=NO_SOURCE,
+    silent="Outputs joined through resistors.",
+    judge=judge_joined,
+)
+
+
+# --- drive-tied
+
+
+def judge_tied(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome]:
+    """Judge whether an output is tied to ground, a rail or an ideal source."""
+    net = stage.output.net
+    holder = "ground" if net == GROUND else _holder(net, design)
+    if not holder:
+        return
+    yield stage_finding(
+        "drive-tied",
+        stage,
+        "critical",
+        f"The output of {stage.schematic} (net {net}) is held by {holder}: it drives into a short.",
+        nets=(net,),
+        remedy=f"Take {holder if holder != 'ground' else 'ground'} off net {net}.",
+        source=NO_SOURCE,
+    )
+
+
+def _holder(net: str, design: Design) -> str:
+    """Return the source that holds a net against ground or a rail, or ""."""
+    rails = {rail.net for rail in design.rails} | {GROUND}
+    for element in design.circuit.elements:
+        if element.kind in ("V", "battery") and _against(element, net, rails):
+            return element.designator
+    return ""
+
+
+def _against(element: Element, net: str, rails: set[str]) -> bool:
+    ends = element.nets[:2]
+    if net not in ends or len(ends) < 2 or not element.fitted:
+        return False
+    other = ends[1] if ends[0] == net else ends[0]
+    return other in rails and other != net
+
+
+TIED = Rule(
+    name="drive-tied",
+    family="drive",
+    looks_at="stage",
+    judges="Whether an output is tied to ground, or through an ideal source to ground or a rail.",
+    reason="An output against a stiff net delivers its short-circuit current and heat.",
+    source=NO_SOURCE,
+    silent="A source of zero volts in series with a load: it measures current.",
+    judge=judge_tied,
+)
+
+
+# --- drive-capacitive
+
+
+def judge_capacitive(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome]:
+    """Judge the current a capacitor at the output takes while the output slews."""
+    farads, family = stage.current.load_capacitance, stage.family
+    slew = stage.output.slew
+    if not farads or not slew or stage.use == "unused":
+        return
+    wanted = farads * slew
+    counted = max(stage.current.demand_source or 0.0, stage.current.demand_sink or 0.0)
+    if counted >= limits["counted-share"] * wanted:
+        return  # the solved current has the capacitor's in it, and drive-current judges that
+    given = stage.current.available_source
+    if given is None or wanted <= given:
+        return
+    basis: Basis = "practice" if family is None else stage.current.source.guaranteed_basis
+    yield stage_finding(
+        "drive-capacitive",
+        stage,
+        TABLE["guaranteed"][evidence(basis)],
+        f"{stage.schematic} must charge {si(farads, 'F')} at {si(slew, 'V/s')}, which takes "
+        f"{si(wanted, 'A')}; it gives {si(given, 'A')} ({origin(basis)}), so it slews at "
+        f"{si(given / farads, 'V/s')}.",
+        nets=(stage.output.net,),
+        demand=wanted,
+        limit=given,
+        margin=given - wanted,
+        unit="A",
+        basis=("netlist", basis),
+        remedy=f"Fit {si(fit(max(1.0, _series(stage, given)), 'up'), 'Ω')} between the output and "
+        "the capacitor, or lower the capacitance.",
+        source="i = C dv/dt",
+    )
+
+
+def _series(stage: Stage, given: float) -> float:
+    """Return the resistance that holds the charging current at the full swing, ohm."""
+    span = stage.output.demand.span or 1.0
+    return span / given if given else math.inf
+
+
+CAPACITIVE = Rule(
+    name="drive-capacitive",
+    family="drive",
+    looks_at="stage",
+    judges="The current a capacitor at the output takes at the demanded slope, where the solved "
+    "current does not hold it.",
+    reason="i = C dv/dt: 1 nF at 13 V/µs asks for 13 mA.",
+    source="derived",
+    silent="Where the solved output current has the capacitor's in it: drive-current judges that.",
+    limits=(
+        Limit(
+            name="counted-share",
+            default=0.9,
+            unit="",
+            meaning="share of the capacitor's current from which the solved one holds it",
+            source=NO_SOURCE,
+        ),
+    ),
+    judge=judge_capacitive,
+)
+
+
+# --- drive-input-above-rail
+
+
+def judge_above_rail(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome]:
+    """Judge the current that flows into an input driven beyond its device's rails."""
+    supply, pins = stage.supply, (stage.inputs.plus, stage.inputs.minus)
+    if supply.positive is None or supply.negative is None or supply.total is None:
+        return
+    for pin in pins:
+        over = max(
+            (pin.demand.high or 0.0) - supply.positive if pin.demand.high is not None else 0.0,
+            supply.negative - pin.demand.low if pin.demand.low is not None else 0.0,
+        )
+        if over <= limits["diode"] or pin.series is None:
+            continue
+        if stage.inputs.minus is pin and stage.use == "linear":
+            continue  # its loop holds it at the other input, which is judged
+        current = (over - limits["diode"]) / pin.series if pin.series > 0 else math.inf
+        if current <= limits["current"]:
+            continue
+        level = si(over, "V")
+        through = f"through {si(pin.series, 'Ω')}" if pin.series > 0 else "without a resistor"
+        flows = f", so {si(current, 'A')} flows" if math.isfinite(current) else ""
+        needed = fit((over - limits["diode"]) / limits["current"], "up")
+        yield stage_finding(
+            "drive-input-above-rail",
+            stage,
+            "major"
+            if evidence(stage.inputs.high.demand_basis, supply.basis) == "stated"
+            else "minor",
+            f"{stage.schematic}'s input on net {pin.net} is driven {level} beyond its rail "
+            f"{through}{flows}; its protection diode takes {si(limits['current'], 'A')}.",
+            nets=(pin.net,),
+            demand=current if math.isfinite(current) else None,
+            limit=limits["current"],
+            margin=limits["current"] - current if math.isfinite(current) else None,
+            unit="A",
+            basis=(stage.inputs.high.demand_basis, supply.basis, "memory"),
+            remedy=f"Fit at least {si(needed, 'Ω')} in series with the input.",
+            source="from memory: 5 to 10 mA through a protection diode; Analog Devices MT-036",
+        )
+        return
+
+
+ABOVE_RAIL = Rule(
+    name="drive-input-above-rail",
+    family="drive",
+    looks_at="stage",
+    judges="The current into an input that another supply drives beyond the device's own rails.",
+    reason="The protection diodes of an input conduct 0.3 V beyond a rail; without a resistor the "
+    "driver feeds the lower rail through them.",
+    source="Analog Devices MT-036; the current from memory",
+    silent="Inputs whose level or series resistance is not known.",
+    limits=(
+        Limit(
+            name="diode",
+            default=0.3,
+            unit="V",
+            meaning="how far beyond a rail an input may go before its diode conducts",
+            source="from memory: 0.3 V in most absolute maximum ratings",
+        ),
+        Limit(
+            name="current",
+            default=5e-3,
+            unit="A",
+            meaning="current a protection diode takes",
+            source="from memory: 5 to 10 mA",
+        ),
+    ),
+    judge=judge_above_rail,
+)
+
+RULES = (JOINED, TIED, CAPACITIVE, ABOVE_RAIL)

@@ -1,0 +1,313 @@
+"""Headroom beyond the two ranges: phase reversal, input clamps, offset, the load's own limit."""
+
+from collections.abc import Iterator
+
+import msgspec
+
+from railguard.analysis.stage import Bound, Design, Stage
+from railguard.notices import NotChecked
+from railguard.rules.compose import (
+    finding,
+    loop_is_broken,
+    missing_figure,
+    open_point,
+    stage_finding,
+)
+from railguard.rules.headroom.ranges import cap_of
+from railguard.rules.protocol import Limit, Limits, Outcome, Rule
+from railguard.rules.severity import ROUNDING, TABLE, breach, evidence
+from railguard.rules.wording import NO_SOURCE, capital, cited, device, origin
+from railguard.settings.model import Load
+from railguard.units import percent, si
+from railguard.words import Basis
+
+# --- headroom-phase-reversal
+
+
+def judge_reversal(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome]:
+    """Judge whether the inputs of a device that turns its output over leave their range."""
+    family = stage.family
+    if stage.use != "linear" or family is None or not family.phase_reversal:
+        return
+    if loop_is_broken(stage):
+        return
+    for bound in (stage.inputs.low, stage.inputs.high):
+        limit = bound.typical if bound.typical is not None else bound.guaranteed
+        basis = bound.typical_basis if bound.typical is not None else bound.guaranteed_basis
+        if bound.demand is None or limit is None:
+            continue
+        room = limit - bound.demand if bound.upper else bound.demand - limit
+        if room >= -ROUNDING * max(abs(limit), abs(bound.demand)):
+            continue
+        word = "up" if bound.upper else "down"
+        yield stage_finding(
+            "headroom-phase-reversal",
+            stage,
+            TABLE["guaranteed"][evidence(bound.demand_basis, basis)],
+            f"{stage.schematic}'s inputs go {word} to {si(bound.demand, 'V')}, past the "
+            f"{si(limit, 'V')} ({origin(basis)}) to which {device(stage)} keeps its sense: beyond "
+            "it the output turns over to the other rail.",
+            nets=(stage.inputs.plus.net,),
+            demand=bound.demand,
+            limit=limit,
+            margin=room,
+            unit="V",
+            basis=(bound.demand_basis, basis),
+            remedy="Keep the input inside its range with a series resistor and a Schottky diode to "
+            "the rail, or fit a device free of phase reversal.",
+            source=f"Analog Devices MT-036; {cited(stage, basis)}",
+        )
+        return
+
+
+REVERSAL = Rule(
+    name="headroom-phase-reversal",
+    family="headroom",
+    looks_at="stage",
+    judges="Whether the inputs of a device known for phase reversal leave its common-mode range.",
+    reason="Past its range, mostly near the negative rail, a JFET or ground-sensing bipolar input "
+    "stage inverts: a small overdrive becomes a full-scale error, and a loop may latch.",
+    source="Analog Devices MT-036",
+    silent="Devices that do not reverse, or of which it is not known.",
+    judge=judge_reversal,
+)
+
+
+# --- headroom-differential
+
+
+def judge_differential(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome]:
+    """Judge the voltage between the inputs against what the device stands."""
+    asked = stage.inputs.differential
+    if asked is None or stage.use == "unused":
+        return
+    figure = None if stage.family is None else stage.family.differential_input
+    limit = None if figure is None else figure.best
+    gap = None
+    if limit is None and stage.family is not None:
+        gap = missing_figure(stage, "differential input limit", "differential_input")
+    yield from open_point("headroom-differential", stage, ("device",), gap)
+    if limit is None or figure is None or asked <= limit * (1 + ROUNDING):
+        return
+    known = figure.guaranteed is not None
+    basis = figure.guaranteed_basis if known else figure.typical_basis
+    yield stage_finding(
+        "headroom-differential",
+        stage,
+        TABLE["guaranteed"][evidence(stage.inputs.high.demand_basis, basis)],
+        f"Between the inputs of {stage.schematic} stand up to {si(asked, 'V')}; {device(stage)} "
+        f"stands {si(limit, 'V')} ({origin(basis)}), beyond which its clamps conduct.",
+        nets=tuple(dict.fromkeys((stage.inputs.plus.net, stage.inputs.minus.net))),
+        demand=asked,
+        limit=limit,
+        margin=limit - asked,
+        unit="V",
+        basis=(stage.inputs.high.demand_basis, basis),
+        remedy="Fit a resistor of 10 kΩ in series with each input, or a device without clamps "
+        "between its inputs.",
+        source=cited(stage, basis),
+    )
+
+
+DIFFERENTIAL = Rule(
+    name="headroom-differential",
+    family="headroom",
+    looks_at="stage",
+    judges="The voltage between the inputs of a stage that is driven open-loop against the "
+    "device's differential limit.",
+    reason="Many input pairs have back-to-back diodes between them; they load the source and warm "
+    "the device where the inputs are driven apart.",
+    source="the device's data sheet",
+    silent="Stages whose loop holds the inputs together.",
+    judge=judge_differential,
+)
+
+
+# --- headroom-stuck
+
+
+def judge_stuck(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome]:
+    """Judge the output's DC level where no signal is known: whether it rests within its range."""
+    output = stage.output
+    unknown = output.high.demand is None and output.low.demand is None
+    if stage.use != "linear" or not unknown or output.level is None or loop_is_broken(stage):
+        return
+    for bound in (output.high, output.low):
+        resting: Bound = msgspec.structs.replace(
+            bound, demand=output.level, level=output.level, span=None, stated=None, default=None
+        )
+        broken = breach(resting, scale=stage.supply.total, cap=cap_of(stage))
+        if broken is None:
+            continue
+        end = "upper" if bound.upper else "lower"
+        yield stage_finding(
+            "headroom-stuck",
+            stage,
+            broken.severity,
+            f"{stage.schematic}'s output rests at {si(output.level, 'V')} without any signal, "
+            f"beyond the {si(broken.limit, 'V')} ({origin(broken.limit_basis)}) it reaches at its "
+            f"{end} end: it is stuck there.",
+            nets=(output.net,),
+            demand=broken.demand,
+            limit=broken.limit,
+            margin=broken.margin,
+            unit="V",
+            basis=broken.basis,
+            remedy=f"Bring the level to the middle of the rails, "
+            f"{si(_middle(stage), 'V')}, by the reference at its non-inverting input.",
+            source=cited(stage, broken.limit_basis),
+        )
+        return
+
+
+def _middle(stage: Stage) -> float | None:
+    supply = stage.supply
+    if supply.positive is None or supply.negative is None:
+        return None
+    return (supply.positive + supply.negative) / 2
+
+
+STUCK = Rule(
+    name="headroom-stuck",
+    family="headroom",
+    looks_at="stage",
+    judges="Whether an output rests within its range where no signal is known that moves it.",
+    reason="An output that stands at its limit at rest follows no signal at all.",
+    source="the device's data sheet",
+    silent="Where a signal is known: headroom-output judges the level with it.",
+    judge=judge_stuck,
+)
+
+
+# --- headroom-offset
+
+
+def judge_offset(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome]:
+    """Judge the share of the output's range that accumulated offset takes."""
+    reach, error = stage.output.available.span, stage.output.offset
+    if stage.use != "linear" or loop_is_broken(stage) or error is None or not reach:
+        return
+    share = 2 * abs(error) / reach
+    if share <= limits["share"]:
+        return
+    figure = None if stage.family is None else stage.family.offset_voltage
+    basis: Basis = "practice"
+    if figure is not None:
+        known = figure.guaranteed is not None
+        basis = figure.guaranteed_basis if known else figure.typical_basis
+    row = TABLE["guaranteed"] if share > limits["far-share"] else TABLE["reserve"]
+    gain = stage.loop.noise_gain_dc
+    words = f" at a noise gain of {si(gain, '')}" if gain else ""
+    yield stage_finding(
+        "headroom-offset",
+        stage,
+        row[evidence(basis)],
+        f"Offset and bias current of {stage.schematic} and the stages before it add up to "
+        f"±{si(abs(error), 'V')} at its output{words}, {percent(share)} of the {si(reach, 'V')} "
+        f"it reaches ({origin(basis)}).",
+        nets=(stage.output.net,),
+        demand=2 * abs(error),
+        limit=limits["share"] * reach,
+        margin=limits["share"] * reach - 2 * abs(error),
+        unit="V",
+        basis=("netlist", basis),
+        remedy="Couple the stages through a capacitor, give the gain a capacitor in its ground leg "
+        "so that it is one at DC, or fit a device of less offset.",
+        source=cited(stage, basis),
+    )
+
+
+OFFSET = Rule(
+    name="headroom-offset",
+    family="headroom",
+    looks_at="stage",
+    judges="The share of the output's range taken by offset and bias current, accumulated over the "
+    "stages before.",
+    reason="Offset is amplified like a signal, and what it takes of the range is lost to the "
+    "signal.",
+    source="the device's data sheet for offset; the share is common practice, no source",
+    silent="Devices whose offset is not listed.",
+    limits=(
+        Limit(
+            name="share",
+            default=0.10,
+            unit="",
+            meaning="share of the output's range offset may take, both signs counted",
+            source=NO_SOURCE,
+        ),
+        Limit(
+            name="far-share",
+            default=0.50,
+            unit="",
+            meaning="share beyond which it counts like a guaranteed limit",
+            source=NO_SOURCE,
+        ),
+    ),
+    judge=judge_offset,
+)
+
+
+# --- headroom-load
+
+
+def judge_load(subject: Design, limits: Limits, design: Design) -> Iterator[Outcome]:
+    """Judge the outputs that drive a load against the voltage the load stands."""
+    for load in subject.settings.loads:
+        if load.max_volts is None:
+            continue
+        stage = next((s for s in subject.stages if s.output.net == load.net), None)
+        if stage is None or stage.output.demand.high is None or stage.output.demand.low is None:
+            why = f"the voltage on net {load.net} was not worked out"
+            add = "put the load on the net of an op-amp's output, and state the signals"
+            yield NotChecked(load.net, "headroom-load", why, add)
+            continue
+        yield from _load(stage, load, load.max_volts)
+
+
+def _load(stage: Stage, load: Load, most: float) -> Iterator[Outcome]:
+    high, low = stage.output.demand.high or 0.0, stage.output.demand.low or 0.0
+    reach = stage.output.available
+    if reach.high is not None:
+        high = min(high, reach.high)
+    if reach.low is not None:
+        low = max(low, reach.low)
+    worst = max(high, -low if low < 0 else 0.0)
+    if worst <= most * (1 + ROUNDING):
+        return
+    basis = stage.output.high.demand_basis
+    message = (
+        f"the load on net {load.net} stands {si(most, 'V')} (as stated), and {stage.schematic} "
+        f"drives it to {si(high if worst == high else low, 'V')}, {si(worst - most, 'V')} beyond."
+    )
+    yield finding(
+        "headroom-load",
+        TABLE["absolute"][evidence(basis)],
+        capital(message),
+        designators=(stage.designator,),
+        nets=(load.net,),
+        demand=worst,
+        limit=most,
+        margin=most - worst,
+        unit="V",
+        basis=(basis, "user"),
+        remedy=f"Divide the output by {si(worst / most, '')} before the load, run "
+        f"{stage.schematic} on a rail of {si(most, 'V')}, or clamp the net through a series "
+        "resistor.",
+        source="the load's own limit, as stated",
+        location=stage.location,
+    )
+
+
+LOAD = Rule(
+    name="headroom-load",
+    family="headroom",
+    looks_at="design",
+    judges="The voltage an output drives a stated load to against the load's own max-volts.",
+    reason="An amplifier on ±12 V destroys a converter input that stands 3.3 V.",
+    source="the load's own limit, as stated",
+    silent="Loads without max-volts. A load that does not hang on an output is listed as not "
+    "checked.",
+    judge=judge_load,
+)
+
+RULES = (REVERSAL, DIFFERENTIAL, STUCK, OFFSET, LOAD)
