@@ -12,11 +12,12 @@ from railguard.circuit.flatten import flatten
 from railguard.circuit.model import Circuit
 from railguard.deck.files import Bounds, Deck, deck_from_text, read_deck
 from railguard.devices import catalogue
-from railguard.notices import NotChecked
+from railguard.devices.names import schematic_name
+from railguard.notices import NotChecked, Problem
 from railguard.rules import waivers
 from railguard.rules.finding import Finding
-from railguard.rules.registry import RULES, judge
-from railguard.settings import directives
+from railguard.rules.registry import judge, known_limits
+from railguard.settings import directives, spelling
 from railguard.settings import file as settings_file
 from railguard.settings.model import Settings
 from railguard.settings.names import check_names
@@ -76,11 +77,11 @@ def review(
 ) -> Review:
     """Review one or several netlists.
 
-    source    a path; several paths; the text of a netlist (a string with more than one line); or
-              a circuit object whose `str()` is its netlist, such as PySpice's Circuit
+    source    a path; several paths (list or tuple); the text of a netlist (a string with more
+              than one line); or a circuit object whose `str()` is its netlist, such as PySpice's
     settings  a Settings value, or the path of a railguard.toml; None: the nearest railguard.toml
               beside each netlist and upwards to its repository, or none for a text
-    as_of     the day waivers are judged on; None: the settings' own, or today
+    as_of     the day waivers are judged on; None: today
     root      the folder includes must stay in; None: each deck's own folder
 
     Raises:
@@ -88,70 +89,103 @@ def review(
         CatalogueError: a device table of the user's cannot be.
     """
     sources: list[object] = list(source) if isinstance(source, list | tuple) else [source]
-    day = as_of or dt.date.today()
-    stated = _load(settings)
-    designs: list[DesignReview] = []
-    matched: set[int] = set()
-    used = stated
+    stated = settings_file.load(Path(settings)) if isinstance(settings, str | Path) else settings
+    run = _Run(as_of or dt.date.today())
+    designs = []
     for one in sources:
-        own = stated if stated is not None else _found_beside(one)
-        own = own if own.as_of > dt.date(1970, 1, 1) and as_of is None else _on(own, day)
-        used = used if used is not None else own
+        own = run.prepared(stated if stated is not None else _found_beside(one))
         deck = _deck(one, root, bounds or Bounds())
-        found, hits = review_deck(deck, own)
+        found, matched = review_deck(deck, own)
+        run.took(own, matched, found.path)
         designs.append(found)
-        matched |= hits
-    used = used if used is not None else _on(Settings(), day)
     return Review(
-        designs=tuple(designs), settings=used, findings=waivers.stale(used, frozenset(matched))
+        designs=tuple(designs), settings=run.first or Settings(), findings=run.leftovers()
     )
 
 
-def _on(settings: Settings, day: dt.date) -> Settings:
-    return msgspec.structs.replace(settings, as_of=day)
+class _Run:
+    """What must be known over all decks of a run: which waivers were of use."""
+
+    def __init__(self, day: dt.date) -> None:
+        self.first: Settings | None = None
+        self._day = day
+        self._used: dict[str, tuple[Settings, set[int], list[str]]] = {}
+
+    def prepared(self, settings: Settings) -> Settings:
+        """Set the day waivers are judged on, and check the names once per settings file."""
+        settings = msgspec.structs.replace(settings, as_of=self._day)
+        if settings.file not in self._used:
+            check_names(settings, known_limits())
+            self._used[settings.file] = (settings, set(), [])
+        self.first = self.first or settings
+        return settings
+
+    def took(self, settings: Settings, matched: set[int], path: str) -> None:
+        """Note which waivers of a file matched in one deck."""
+        _, indexes, paths = self._used[settings.file]
+        indexes |= {index for index in matched if index < len(settings.waivers)}
+        paths.append(path)
+
+    def leftovers(self) -> tuple[Finding, ...]:
+        """Return a remark for each waiver of a file that matched nothing in the whole run."""
+        return tuple(
+            finding
+            for settings, matched, paths in self._used.values()
+            for finding in waivers.stale(settings, matched, paths)
+        )
 
 
-def _load(settings: Settings | Path | str | None) -> Settings | None:
-    if isinstance(settings, str | Path):
-        return settings_file.load(Path(settings))
-    return settings
+def _is_path(source: object) -> bool:
+    return isinstance(source, Path) or (isinstance(source, str) and "\n" not in source)
 
 
 def _found_beside(source: object) -> Settings:
-    if not isinstance(source, Path) and not (isinstance(source, str) and "\n" not in source):
+    if not _is_path(source):
         return Settings()
-    place = settings_file.find(Path(source))
+    place = settings_file.find(Path(str(source)))
     return settings_file.load(place) if place is not None else Settings()
 
 
 def _deck(source: object, root: Path | None, bounds: Bounds) -> Deck:
-    if isinstance(source, Path) or (isinstance(source, str) and "\n" not in source):
-        return read_deck(Path(source), bounds, root)
+    if _is_path(source):
+        return read_deck(Path(str(source)), bounds, root)
     return deck_from_text(str(source), bounds=bounds)
 
 
-def review_deck(deck: Deck, settings: Settings) -> tuple[DesignReview, set[int]]:
-    """Review one deck that has been read; also return the indexes of waivers that matched."""
-    check_names(settings, {rule.name: {limit.name for limit in rule.limits} for rule in RULES})
-    devices = catalogue.load(settings.devices)
+def review_deck(deck: Deck, stated: Settings) -> tuple[DesignReview, set[int]]:
+    """Review one deck that has been read; also return the indexes of waivers that matched.
+
+    stated  what the user's file says; the deck's own comment cards are laid under it
+    """
+    devices = catalogue.load(stated.devices)
     circuit = flatten(deck, keeps_closed(devices))
-    settings, complaints = directives.apply(settings, circuit.directives)
-    circuit = msgspec.structs.replace(circuit, problems=(*circuit.problems, *complaints))
+    settings, circuit = _with_directives(stated, circuit)
     design = analyse(circuit, settings, devices)
     judged = judge(design)
     findings, matched = waivers.apply(judged.findings, settings, circuit.path, settings.as_of)
-    not_checked = (*judged.not_checked, *_nothing_found(circuit, design))
+    # A waiver in a comment card speaks of this deck alone, so it is left over here or nowhere.
+    own = waivers.stale(settings, matched | frozenset(range(len(stated.waivers))))
     result = DesignReview(
         path=circuit.path,
         design=design,
         verdict="pass",
-        findings=tuple(findings),
-        not_checked=not_checked,
+        findings=(*findings, *own),
+        not_checked=(*judged.not_checked, *_nothing_found(circuit, design)),
         judged=judged.judged,
         open=judged.open,
         rules=judged.rules,
     )
     return msgspec.structs.replace(result, verdict=_verdict(result, settings)), set(matched)
+
+
+def _with_directives(stated: Settings, circuit: Circuit) -> tuple[Settings, Circuit]:
+    """Lay the deck's comment cards under the user's file, all in the netlist's own spelling."""
+    settings, complaints = directives.apply(stated, circuit.directives, known_limits())
+    nets = dict.fromkeys(net for element in circuit.elements for net in element.nets)
+    designators = [element.designator for element in circuit.elements]
+    settings, misspelt = spelling.respelt(settings, nets, designators, schematic_name)
+    problems: tuple[Problem, ...] = (*circuit.problems, *complaints, *misspelt)
+    return settings, msgspec.structs.replace(circuit, problems=problems)
 
 
 def _nothing_found(circuit: Circuit, design: Design) -> tuple[NotChecked, ...]:
