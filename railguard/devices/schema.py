@@ -144,12 +144,25 @@ def _swing_faults(device: Device) -> Iterator[str]:
     for side, points in (("positive", device.swing_high), ("negative", device.swing_low)):
         for point in points:
             yield from _point_faults(device, side, point)
+            if any(_better(point, other) for other in points):
+                yield (
+                    f"the drop to the {side} rail at {point.amps:g} A: the guaranteed value is "
+                    "better than the typical one"
+                )
     for high in device.swing_high:
         for low in device.swing_low:
             if high.supply and high.supply == low.supply:
                 left = high.supply - (high.guaranteed or 0.0) - (low.guaranteed or 0.0)
                 if left <= 0.0:
                     yield f"on {high.supply:g} V nothing is left between its output limits"
+
+
+def _better(guaranteed: SwingPoint, typical: SwingPoint) -> bool:
+    """Tell whether one test's guaranteed drop is below its typical one."""
+    same = (guaranteed.condition, guaranteed.supply) == (typical.condition, typical.supply)
+    if not same or guaranteed.guaranteed is None or typical.typical is None:
+        return False
+    return guaranteed.guaranteed < typical.typical
 
 
 def _point_faults(device: Device, side: str, point: SwingPoint) -> Iterator[str]:
@@ -160,8 +173,6 @@ def _point_faults(device: Device, side: str, point: SwingPoint) -> Iterator[str]
     for value in (point.typical, point.guaranteed):
         if value is not None and (value < 0.0 or (supply is not None and value >= supply)):
             yield f"{where} is {value:g} V, outside its supply"
-    if point.guaranteed is not None and point.guaranteed < (point.typical or 0.0):
-        yield f"{where}: the guaranteed value is better than the typical one"
     if not 0.0 <= point.amps <= SCALES["source_current"][1]:
         yield f"{where}: that current is outside what an op-amp gives"
     if point.supply and device.supply_absolute and point.supply > device.supply_absolute:

@@ -168,8 +168,8 @@ def device_of(
     """Turn a checked table into the value the analysis works with."""
     user: Basis | None = "user" if stated_by_user else None
     figures = {name: _figure(getattr(table, name), user) for name in FIGURES}
-    high = tuple(_swing(entry, table, True, user) for entry in table.swing_high)
-    low = tuple(_swing(entry, table, False, user) for entry in table.swing_low)
+    high = tuple(point for entry in table.swing_high for point in _swing(entry, table, True, user))
+    low = tuple(point for entry in table.swing_low for point in _swing(entry, table, False, user))
     if figures["source_current"].best is None:
         figures["source_current"] = _tested_current(high)
     if figures["sink_current"].best is None:
@@ -220,11 +220,18 @@ def _basis(seen: Seen, half: Seen) -> Basis:
     return "catalogue" if seen in ("all", half) else "memory"
 
 
-def _swing(entry: SwingTable, table: FamilyTable, upper: bool, user: Basis | None) -> SwingPoint:
+def _swing(
+    entry: SwingTable, table: FamilyTable, upper: bool, user: Basis | None
+) -> tuple[SwingPoint, ...]:
+    """Return one point, or two where a resistor draws less at the guaranteed than at the typical.
+
+    Each value then stands at the current it was tested at.
+    """
     supply = entry.supply if entry.supply is not None else table.sheet_supply
-    amps, assisted = _load_current(entry, supply, upper)
-    return SwingPoint(
-        amps=amps,
+    typical, assisted = _load_current(entry, supply, upper, entry.typical)
+    guaranteed, _assisted = _load_current(entry, supply, upper, entry.guaranteed)
+    point = SwingPoint(
+        amps=typical,
         typical=entry.typical,
         guaranteed=entry.guaranteed,
         supply=supply,
@@ -233,9 +240,19 @@ def _swing(entry: SwingTable, table: FamilyTable, upper: bool, user: Basis | Non
         light_sink=assisted or entry.light_sink,
         condition=entry.condition or _load_words(entry, supply),
     )
+    if entry.typical is None:
+        return (msgspec.structs.replace(point, amps=guaranteed),)
+    if entry.guaranteed is None or guaranteed == typical:
+        return (point,)
+    return (
+        msgspec.structs.replace(point, guaranteed=None),
+        msgspec.structs.replace(point, amps=guaranteed, typical=None),
+    )
 
 
-def _load_current(entry: SwingTable, supply: float | None, upper: bool) -> tuple[float, bool]:
+def _load_current(
+    entry: SwingTable, supply: float | None, upper: bool, drop: float | None
+) -> tuple[float, bool]:
     """Return the current into the load with the output at its limit, and whether the load helps.
 
     A load to the rail the output is near asks for no current from it: the figure then holds for
@@ -246,12 +263,12 @@ def _load_current(entry: SwingTable, supply: float | None, upper: bool) -> tuple
         return entry.amps, False
     if entry.ohms is None:
         return 0.0, True
-    volts = supply if supply is not None else 5.0
-    worst = max(filter(None, (entry.typical, entry.guaranteed)), default=0.0)
+    volts = (supply if supply is not None else 5.0) - (drop or 0.0)
     if entry.to == "middle":
-        return max((volts / 2 - worst) / entry.ohms, 0.0), False
+        half = (supply if supply is not None else 5.0) / 2
+        return max((volts - half) / entry.ohms, 0.0), False
     if (entry.to == "negative") == upper:
-        return max((volts - worst) / entry.ohms, 0.0), False
+        return max(volts / entry.ohms, 0.0), False
     return 0.0, True
 
 

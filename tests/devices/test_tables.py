@@ -41,15 +41,18 @@ def made(text=TABLE, **changes):
 
 def test_a_load_to_mid_supply_takes_half_the_supply_less_the_drop():
     """A load to mid supply takes half the supply less the drop."""
-    point = made().swing_high[0]
-    assert point.amps == pytest.approx((2.5 - 0.2) / 2000.0)
-    assert point.supply == 5.0
-    assert point.condition == "2 kΩ to mid-supply, 5 V supply"
+    typical, guaranteed = made().swing_high[:2]
+    assert (typical.typical, typical.guaranteed) == (0.1, None)
+    assert typical.amps == pytest.approx((2.5 - 0.1) / 2000.0)
+    assert (guaranteed.typical, guaranteed.guaranteed) == (None, 0.2)
+    assert guaranteed.amps == pytest.approx((2.5 - 0.2) / 2000.0)
+    assert typical.supply == guaranteed.supply == 5.0
+    assert typical.condition == guaranteed.condition == "2 kΩ to mid-supply, 5 V supply"
 
 
 def test_a_stated_current_stands_as_it_is():
     """A stated current stands as it is."""
-    point = made().swing_high[1]
+    point = made().swing_high[2]
     assert (point.amps, point.supply, point.guaranteed) == (0.02, 5.5, None)
     assert point.condition == "20 mA, 5.5 V supply"
 
@@ -72,8 +75,8 @@ def test_what_was_not_seen_is_from_memory():
     device = made()
     assert device.offset_voltage.typical_basis == "catalogue"
     assert device.offset_voltage.guaranteed_basis == "memory"
-    assert device.swing_high[0].guaranteed_basis == "catalogue"
-    assert device.swing_high[1].typical_basis == "memory"
+    assert device.swing_high[1].guaranteed_basis == "catalogue"
+    assert device.swing_high[2].typical_basis == "memory"
     assert device.supply_basis == {"low": "catalogue", "high": "memory", "absolute": "memory"}
 
 
