@@ -39,10 +39,17 @@ class Index(msgspec.Struct, frozen=True):
 class Catalogue:
     """Families of the shipped catalogue, with the user's own before them."""
 
-    def __init__(self, index: Index, user: Mapping[str, Device], names: matching.Names) -> None:
+    def __init__(
+        self,
+        index: Index,
+        names: matching.Names,
+        user: Mapping[str, Device],
+        listed: Mapping[str, Mapping[int, tuple[str, ...]]],
+    ) -> None:
         """Take what `load` made; tables are read when first asked for."""
         self._index = index
         self._user = user
+        self._listed = listed
         self._names = names
         self._read = lru_cache(maxsize=None)(_shipped_device)
 
@@ -61,6 +68,12 @@ class Catalogue:
     def families(self) -> tuple[str, ...]:
         """Return every family's name, sorted; the user's own among them."""
         return tuple(sorted({*self._index.families, *self._user}, key=str.lower))
+
+    def order_codes(self, family: str) -> tuple[str, ...]:
+        """Return what the order codes of a family begin with, as its table lists them."""
+        entry = self._index.families.get(family)
+        listed = self._listed.get(family) or (entry.names if entry else {})
+        return tuple(base for bases in listed.values() for base in bases) or (family,)
 
     def device(self, family: str) -> Device:
         """Return a family's figures.
@@ -93,6 +106,7 @@ def load(user: Sequence[tuple[Mapping[str, object], Location]] = ()) -> Catalogu
         for base in _spelled_out(bases):
             names.bases[base] = ("", channels)
     devices: dict[str, Device] = {}
+    listed: dict[str, Mapping[int, tuple[str, ...]]] = {}
     for data, location in user:
         table, device = _user_device(data, location, index)
         if table.family in devices:
@@ -100,8 +114,9 @@ def load(user: Sequence[tuple[Mapping[str, object], Location]] = ()) -> Catalogu
                 f"{table.family} is described twice.", location, "Keep one of the two tables."
             )
         devices[table.family] = device
+        listed[table.family] = table.names
         _register_user(names, table, table.family in index.families)
-    return Catalogue(index, devices, names)
+    return Catalogue(index, names, devices, listed)
 
 
 def _register(names: matching.Names, family: str, listed: Mapping[int, Sequence[str]]) -> None:
