@@ -133,7 +133,7 @@ def _show(console: Console, catalogue: Catalogue, family: str) -> None:
     seen = "" if device.source.seen else " (not seen: every figure is from memory)"
     console.print(escape(f"Source: {device.source}{seen}"), soft_wrap=False)
     if device.location is not None:
-        console.print(escape(f"Changed by {device.location}."))
+        console.print(escape(f"Stated in {device.location}."))
     if device.notes:
         console.print()
         console.print(escape(device.notes))
