@@ -13,8 +13,9 @@ from pathlib import Path
 import msgspec
 
 from railguard.devices import match as matching
+from railguard.devices.layout import FamilyTable, read_table
 from railguard.devices.model import Device, Match
-from railguard.devices.tables import FamilyTable, device_of, read_table
+from railguard.devices.tables import device_of
 from railguard.errors import CatalogueError
 from railguard.location import Location
 

@@ -7,8 +7,8 @@ from collections.abc import Iterator
 
 import msgspec
 
+from railguard.devices.layout import FIGURES
 from railguard.devices.model import Device, Figure, SwingPoint
-from railguard.devices.tables import FIGURES
 from railguard.units import si
 from railguard.words import Basis
 

@@ -8,9 +8,9 @@ from collections.abc import Iterable, Iterator
 from itertools import pairwise
 from math import isinf
 
+from railguard.devices.layout import FamilyTable
 from railguard.devices.match import spell_out
 from railguard.devices.model import Device, Figure, SwingPoint
-from railguard.devices.tables import FamilyTable
 
 _MAXIMA = ("bias_current", "offset_current", "offset_voltage", "supply_current", "input_low")
 """Figures whose guaranteed value is the larger one."""

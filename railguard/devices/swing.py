@@ -52,10 +52,10 @@ def drop(points: Iterable[SwingPoint], amps: float, supply: float | None = None)
     a figure taken from another supply than half to twice the actual one counts as from memory.
     """
     known = tuple(points)
-    typical = _read(known, amps, supply, lambda point: (point.typical, point.typical_basis))
-    guaranteed = _read(
-        known, amps, supply, lambda point: (point.guaranteed, point.guaranteed_basis)
-    )
+    typical = _read(known, amps, supply, _typical)
+    guaranteed = _read(known, amps, supply, _guaranteed)
+    if typical and guaranteed and guaranteed.drop < typical.drop:
+        guaranteed = guaranteed._replace(drop=typical.drop, basis="memory")
     said = guaranteed or typical
     return Drop(
         typical.drop if typical else None,
@@ -67,6 +67,14 @@ def drop(points: Iterable[SwingPoint], amps: float, supply: float | None = None)
 
 
 Side = Callable[[SwingPoint], tuple[float | None, Basis]]
+
+
+def _typical(point: SwingPoint) -> tuple[float | None, Basis]:
+    return point.typical, point.typical_basis
+
+
+def _guaranteed(point: SwingPoint) -> tuple[float | None, Basis]:
+    return point.guaranteed, point.guaranteed_basis
 
 
 def _read(
@@ -86,8 +94,12 @@ def _read(
             return _Known(amps, between, basis, right.condition)
     if curve[-1].amps <= LIGHT:
         return curve[-1] if amps <= LIGHT else None
-    slope = _last_slope(curve) or _listed_slope(listed, side) or _single_slope(curve[-1])
     last = curve[-1]
+    slope = _last_slope(curve)
+    if slope is None:
+        slope = _listed_slope(listed, side) or _scaled_slope(points, supply, last)
+    if slope is None:
+        slope = _single_slope(last)
     condition = f"carried on beyond {last.condition}" if last.condition else ""
     return _Known(amps, last.drop + slope * (amps - last.amps), "memory", condition)
 
@@ -134,6 +146,19 @@ def _listed_slope(points: tuple[SwingPoint, ...], side: Side) -> float | None:
         if (slope := _last_slope(_curve(tuple(p for p in points if p.supply == volts), None, side)))
     ]
     return max(slopes, default=None)
+
+
+def _scaled_slope(
+    points: tuple[SwingPoint, ...], supply: float | None, last: _Known
+) -> float | None:
+    """Return the typical slope at this supply, in the ratio of the drop to the typical one."""
+    listed = tuple(point for point in points if point.typical is not None)
+    curve = _curve(_at_supply(listed, supply), supply, _typical)
+    slope = _last_slope(curve)
+    if slope is None or curve[0].drop <= 0.0:
+        return None
+    nearest = min(curve, key=lambda known: abs(known.amps - last.amps))
+    return slope * max(last.drop / nearest.drop, 1.0)
 
 
 def _single_slope(last: _Known) -> float:

@@ -5,9 +5,9 @@ import pytest
 
 from railguard.devices.catalogue import load, read_family_file
 from railguard.devices.index import build, family_files
+from railguard.devices.layout import SourceTable, read_table
 from railguard.devices.model import Device, Figure, SwingPoint
 from railguard.devices.schema import faults, shared_names, table_faults
-from railguard.devices.tables import SourceTable, read_table
 
 SOUND = Device(
     family="GAUGE",

@@ -55,6 +55,27 @@ def test_a_single_large_drop_holds_a_junction():
     assert found.guaranteed is None
 
 
+def test_a_single_guaranteed_point_goes_on_with_the_typical_slope_in_proportion():
+    """Typical 0.5 V and 10 ohm: twice the drop, twice the slope."""
+    points = (
+        SwingPoint(1e-3, 0.5, 1.0, 30.0),
+        SwingPoint(5e-3, 0.54, None, 30.0),
+    )
+    assert drop(points, 3e-3).guaranteed == pytest.approx(1.0 + 2e-3 * 20.0)
+
+
+def test_what_is_carried_on_is_never_better_guaranteed_than_typical():
+    """A far typical point may lie above the guaranteed curve's continuation."""
+    points = (
+        SwingPoint(1e-3, 0.05, 0.10, 5.0, "catalogue", "catalogue"),
+        SwingPoint(2e-3, 0.06, 0.11, 5.0, "catalogue", "catalogue"),
+        SwingPoint(20e-3, 0.90, None, 5.0, "catalogue"),
+    )
+    found = drop(points, 20e-3)
+    assert (found.typical, found.guaranteed) == pytest.approx((0.9, 0.9))
+    assert found.guaranteed_basis == "memory"
+
+
 def test_a_heavier_load_never_drops_less():
     """A heavier load never drops less."""
     points = (SwingPoint(1e-3, 1.0, supply=30.0), SwingPoint(2e-3, 0.5, supply=30.0))

@@ -4,7 +4,8 @@ import tomllib
 
 import pytest
 
-from railguard.devices.tables import device_of, read_table
+from railguard.devices.layout import read_table
+from railguard.devices.tables import device_of
 from railguard.errors import CatalogueError
 from railguard.location import Location
 
