@@ -59,6 +59,11 @@ class Breach(msgspec.Struct, frozen=True):
     at_corner: bool
 
 
+def gravity(broken: Breach) -> tuple[int, int, float]:
+    """Sort key of breaches: the worst severity first, then the gravest limit, then the margin."""
+    return SEVERITIES.index(broken.severity), list(TABLE).index(broken.broken), broken.margin
+
+
 class _Check(msgspec.Struct, frozen=True):
     """One demand against one limit."""
 

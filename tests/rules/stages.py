@@ -285,6 +285,6 @@ def open_points(rule: Rule, subject: Any, whole: Design | None = None) -> list[N
     return [o for o in outcomes(rule, subject, whole) if isinstance(o, NotChecked)]
 
 
-def changed(value: Any, **fields: Any) -> Any:
+def changed(what: Any, /, **fields: Any) -> Any:
     """Return a frozen value with some fields changed."""
-    return msgspec.structs.replace(value, **fields)
+    return msgspec.structs.replace(what, **fields)

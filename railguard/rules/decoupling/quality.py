@@ -7,7 +7,6 @@ from railguard.rules.compose import channels_of, finding, stage_finding
 from railguard.rules.decoupling.capacitors import (
     BULK_SOURCE,
     at_pins,
-    decoupling_of,
     is_return,
     return_net,
 )
@@ -22,7 +21,7 @@ from railguard.units import percent, si
 
 def judge_bulk(rail: Rail, limits: Limits, design: Design) -> Iterator[Outcome]:
     """Judge whether a decoupled rail has a larger capacitor somewhere."""
-    if is_return(rail) or design.kind == "bench" or rail.ideal or not decoupling_of(rail, limits):
+    if is_return(rail) or design.kind == "bench" or rail.ideal or not at_pins(rail):
         return
     every = (*rail.decoupling, *rail.upstream, *rail.across)
     if any(c.farads is None or c.farads >= limits["least"] * (1 - ROUNDING) for c in every):

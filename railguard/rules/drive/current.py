@@ -12,10 +12,9 @@ from railguard.rules.compose import (
 from railguard.rules.headroom.ranges import NO_LINEAR_RANGE, cap_of, corner_words
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.remedies import fit, sentence
-from railguard.rules.severity import Breach, breach
+from railguard.rules.severity import Breach, breach, gravity
 from railguard.rules.wording import NO_SOURCE, device, limit_note, sheet
 from railguard.units import si
-from railguard.words import SEVERITIES
 
 NO_CURRENT = Unknown(
     "its output current is not known",
@@ -44,7 +43,7 @@ def judge_current(stage: Stage, limits: Limits, design: Design) -> Iterator[Outc
             sides.append((verb, bound, broken))
     if not sides:
         return
-    sides.sort(key=lambda s: (SEVERITIES.index(s[2].severity), s[2].margin))
+    sides.sort(key=lambda side: gravity(side[2]))
     verb, bound, broken = sides[0]
     message = _current_message(stage, verb, bound, broken)
     for other_verb, _, other in sides[1:]:

@@ -11,7 +11,7 @@ from railguard.rules.compose import (
 )
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.remedies import other_rail, sentence, smaller_gain
-from railguard.rules.severity import Breach, breach
+from railguard.rules.severity import Breach, breach, gravity
 from railguard.rules.wording import (
     device_on,
     limit_note,
@@ -19,7 +19,7 @@ from railguard.rules.wording import (
     sheet,
 )
 from railguard.units import si
-from railguard.words import SEVERITIES, Severity
+from railguard.words import Severity
 
 Side = tuple[Bound, Breach]
 
@@ -54,7 +54,7 @@ def _sides(stage: Stage, bounds: tuple[Bound, Bound], share: float) -> list[Side
         broken = breach(bound, share * (bound.span or 0.0), scale=scale, cap=cap_of(stage))
         if broken is not None:
             sides.append((bound, broken))
-    return sorted(sides, key=lambda s: (SEVERITIES.index(s[1].severity), s[1].margin))
+    return sorted(sides, key=lambda side: gravity(side[1]))
 
 
 def _gap(stage: Stage, bounds: tuple[Bound, Bound], figure: tuple[str, str]) -> Unknown | None:

@@ -8,7 +8,7 @@ from railguard.circuit.model import GROUND, Element
 from railguard.rules.compose import OWN_TABLE, finding
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.remedies import fit
-from railguard.rules.wording import NO_SOURCE, count, listed
+from railguard.rules.wording import NO_SOURCE, listed
 from railguard.units import series_of, si
 from railguard.words import Severity
 
@@ -158,7 +158,7 @@ def judge_series(subject: Design, limits: Limits, design: Design) -> Iterator[Ou
         return
     named = odd[: int(limits["named"])]
     texts = [_with_neighbour(e) for e in named]
-    more = f" and {count(len(odd) - len(named), 'more')}" if len(odd) > len(named) else ""
+    more = f" and {len(odd) - len(named)} more" if len(odd) > len(named) else ""
     yield finding(
         "netlist-value-series",
         "remark",

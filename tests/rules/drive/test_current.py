@@ -1,0 +1,99 @@
+"""The current an output must give."""
+
+import pytest
+
+from railguard.analysis.stage import Current, Loop, Pair, Unknown
+from railguard.rules.drive.current import CURRENT
+from tests.rules.stages import amps, findings, open_points, outcomes, stage, unknown_device
+
+
+def giving(source=1e-3, sink=1e-3, **fields):
+    """Make a stage with other output currents."""
+    current = Current(
+        source=amps(source), sink=amps(sink), load=1000.0, into="RL", short_circuit=40e-3
+    )
+    return stage(**{"current": current, **fields})
+
+
+def test_a_light_load_is_quiet():
+    """Up to what the device is known to give nothing is told."""
+    assert outcomes(CURRENT, stage()) == []
+    assert findings(CURRENT, giving(5e-3)) == []
+
+
+def test_beyond_what_is_known_to_be_given():
+    """Between the known and the typical current it is major."""
+    (found,) = findings(CURRENT, giving(6e-3))
+    assert found.severity == "major"
+    assert found.message == (
+        "U1 must source 6 mA into RL; a TL072 is known to give 5 mA (guaranteed, data sheet), "
+        "so 1 mA is not covered."
+    )
+    assert "from 1 kΩ to at least 1.2 kΩ" in found.remedy
+    assert (found.demand, found.limit, found.unit) == (6e-3, 5e-3, "A")
+
+
+def test_both_directions_make_one_finding():
+    """The worse one leads."""
+    (found,) = findings(CURRENT, giving(6e-3, 20e-3))
+    assert found.severity == "critical"
+    assert found.message.startswith("U1 must sink 20 mA")
+    assert "It must source 6 mA as well, against 5 mA." in found.message
+
+
+def test_more_than_the_short_circuit_current():
+    """Where even a short gives less, the sentence says so."""
+    (found,) = findings(CURRENT, giving(50e-3))
+    assert "Even shorted it gives no more than 40 mA." in found.message
+
+
+def test_a_corner_of_tolerances_is_told_as_such():
+    """A current that only a corner asks for is worst-case."""
+    current = Current(source=amps(4.9e-3, default=Pair(5.1e-3, 5e-3)), sink=amps())
+    (found,) = findings(CURRENT, stage(current=current))
+    assert (found.severity, found.corner) == ("minor", "worst-case")
+
+
+def test_a_reserve_can_be_asked_for():
+    """By default the known current may be used up; a share to be left is the user's to set."""
+    assert findings(CURRENT, giving(4.8e-3)) == []
+    (found,) = findings(CURRENT, giving(4.8e-3), reserve_share=0.1)
+    assert found.severity == "minor"
+
+
+def test_an_unknown_device_is_minor_and_not_checked():
+    """A few milliamperes by common practice, minor at most."""
+    practice = {"typical_basis": "practice", "guaranteed_basis": "practice"}
+    one = unknown_device(current=Current(source=amps(0.1, **practice), sink=amps(**practice)))
+    assert [f.severity for f in findings(CURRENT, one)] == ["minor"]
+    assert len(open_points(CURRENT, one)) == 1
+
+
+def test_an_unknown_current_is_not_checked():
+    """A stage whose load or signal is not known is listed."""
+    one = stage(current=Current(source=amps(None), sink=amps(None)))
+    (point,) = open_points(CURRENT, one)
+    assert "[loads]" in point.add
+    told = stage(unknown={"current": Unknown("a diode conducts", "run ngspice")})
+    assert [p.why for p in open_points(CURRENT, told)] == ["a diode conducts"]
+
+
+def test_unlisted_currents_are_named():
+    """A device without current figures says which to add."""
+    bare = amps(1e-3, typical=None, guaranteed=None)
+    (point,) = open_points(CURRENT, stage(current=Current(source=bare, sink=bare)))
+    assert "source_current" in point.add
+
+
+def test_a_comparator_is_judged_by_its_current_and_an_unused_channel_is_not():
+    """A comparator drives its load at its limits; an unused channel drives nothing."""
+    assert len(findings(CURRENT, giving(20e-3, use="comparator"))) == 1
+    assert outcomes(CURRENT, giving(20e-3, use="unused")) == []
+
+
+@pytest.mark.parametrize("dc", ["positive", "open"])
+def test_a_broken_loop_has_no_demand(dc):
+    """Where no feedback holds the output its current means nothing."""
+    one = giving(20e-3, loop=Loop(dc=dc))
+    assert findings(CURRENT, one) == []
+    assert len(open_points(CURRENT, one)) == 1

@@ -1,0 +1,95 @@
+"""Current feedback, and difference amplifiers."""
+
+import pytest
+
+from railguard.analysis.stage import Feedback, Output, Range
+from railguard.rules.feedback.special import CURRENT_TYPE, MATCHING
+from railguard.settings.model import Settings, Tolerances
+from tests.rules.stages import (
+    FAMILY,
+    changed,
+    design,
+    figure,
+    findings,
+    inputs,
+    open_points,
+    outcomes,
+    stage,
+)
+
+FAST = changed(FAMILY, feedback="current", feedback_resistor=figure(1000.0))
+
+
+def with_resistor(ohms, family=FAST, capacitance=0.0):
+    """Make a current-feedback stage with some feedback resistor."""
+    network = Feedback(elements=("R2",), resistance=ohms, capacitance=capacitance)
+    return stage(family=family, feedback=network)
+
+
+@pytest.mark.parametrize("ohms", [700.0, 1000.0, 2000.0])
+def test_the_stated_resistor_is_quiet(ohms):
+    """From 0.7 to twice what the sheet states nothing is told."""
+    assert outcomes(CURRENT_TYPE, with_resistor(ohms)) == []
+
+
+@pytest.mark.parametrize(
+    ("ohms", "severity"), [(690.0, "critical"), (0.0, "critical"), (2100.0, "remark")]
+)
+def test_another_resistor(ohms, severity):
+    """Too small oscillates, too large is slow."""
+    (found,) = findings(CURRENT_TYPE, with_resistor(ohms))
+    assert found.severity == severity
+    assert found.remedy == "Fit 1 kΩ from the output to the inverting input."
+
+
+def test_a_capacitor_across_the_feedback():
+    """With current feedback a capacitor there makes an oscillator."""
+    (found,) = findings(CURRENT_TYPE, with_resistor(1000.0, capacitance=10e-12))
+    assert found.severity == "critical"
+
+
+def test_an_unlisted_resistor_is_not_checked_and_voltage_feedback_not_judged():
+    """What the sheet states must be known; other devices have no such resistor."""
+    bare = changed(FAST, feedback_resistor=figure())
+    assert len(open_points(CURRENT_TYPE, with_resistor(10.0, bare))) == 1
+    assert outcomes(CURRENT_TYPE, with_resistor(10.0, FAMILY)) == []
+
+
+def difference(common=5.0, gains=(10.0, -10.0), span=4.0):
+    """Make a difference amplifier with a common-mode level at its inputs."""
+    return stage(
+        topology="difference",
+        gain=(("p", gains[0]), ("m", gains[1])),
+        inputs=inputs(demand=Range(common, common)),
+        output=Output(net="out", demand=Range(0.0, span)),
+    )
+
+
+def test_a_small_common_mode_is_quiet():
+    """Four times 1 % of 1 V is 40 mV, 1 % of 4 V."""
+    assert findings(MATCHING, difference(1.0)) == []
+    assert len(findings(MATCHING, difference(1.01))) == 1
+
+
+def test_a_common_mode_that_default_resistors_let_through_is_a_remark():
+    """The sentence gives the rejection in decibels and the error."""
+    (found,) = findings(MATCHING, difference())
+    assert found.severity == "remark"
+    assert "as low as 48.8 dB" in found.message
+    assert "by 200 mV, 5 % of its span" in found.message
+
+
+def test_stated_tolerances_weigh_more_or_clear_it():
+    """With stated resistors it is minor, or quiet where they are good enough."""
+    one = difference()
+    poor = design(one, settings=Settings(tolerances=Tolerances(resistor=0.01)))
+    good = design(one, settings=Settings(tolerances=Tolerances(resistor=0.001)))
+    assert [f.severity for f in findings(MATCHING, one, poor)] == ["minor"]
+    assert findings(MATCHING, one, good) == []
+
+
+def test_weights_that_differ_on_purpose_and_unknown_ranges_are_not_judged():
+    """A subtractor with two gains is no difference amplifier; without a range nothing is said."""
+    assert outcomes(MATCHING, difference(gains=(1.0, -3.0))) == []
+    assert outcomes(MATCHING, changed(difference(), output=Output(net="out"))) == []
+    assert outcomes(MATCHING, stage()) == []

@@ -1,0 +1,165 @@
+"""Phase reversal, input clamps, resting levels, offset, and the load's own limit."""
+
+import pytest
+
+from railguard.analysis.stage import Loop, Output, Range
+from railguard.rules.headroom.limits import DIFFERENTIAL, LOAD, OFFSET, REVERSAL, STUCK
+from railguard.settings.model import Load, Settings
+from tests.rules.stages import (
+    FAMILY,
+    bound,
+    changed,
+    design,
+    figure,
+    findings,
+    inputs,
+    open_points,
+    outcomes,
+    stage,
+    unknown_device,
+)
+
+
+def driven_to(volts, **fields):
+    """Make a stage whose inputs go down to some level; -10 V is the typical limit."""
+    low = bound(False, demand=volts, typical=-10.0, guaranteed=-9.0)
+    return stage(inputs=inputs(low=low), **fields)
+
+
+def test_inputs_inside_do_not_reverse():
+    """Up to the typical limit the output keeps its sense."""
+    assert outcomes(REVERSAL, driven_to(-9.9)) == []
+    assert outcomes(REVERSAL, driven_to(-10.0)) == []
+
+
+def test_a_reversing_device_beyond_its_range():
+    """Past the limit it is told, as grave as the evidence for the limit."""
+    (found,) = findings(REVERSAL, driven_to(-10.5))
+    assert found.severity == "major"
+    assert "turns over to the other rail" in found.message
+
+
+@pytest.mark.parametrize("reverses", [False, None])
+def test_devices_that_do_not_reverse_or_of_which_it_is_not_known(reverses):
+    """Nothing is claimed of what is not known."""
+    tame = changed(FAMILY, phase_reversal=reverses)
+    assert outcomes(REVERSAL, driven_to(-11.0, family=tame)) == []
+    assert outcomes(REVERSAL, unknown_device()) == []
+    assert outcomes(REVERSAL, stage(inputs=inputs(low=bound(False), high=bound()))) == []
+
+
+def apart(volts, limit=None, **fields):
+    """Make a comparator whose inputs stand apart, of a device that stands `limit`."""
+    family = changed(FAMILY, differential_input=figure(guaranteed=limit))
+    return stage(
+        inputs=inputs(differential=volts), use="comparator", **{"family": family, **fields}
+    )
+
+
+def test_inputs_within_their_differential_limit_are_quiet():
+    """At the limit itself nothing is told."""
+    assert outcomes(DIFFERENTIAL, apart(30.0, 30.0)) == []
+    assert outcomes(DIFFERENTIAL, stage()) == []
+
+
+def test_inputs_driven_apart_beyond_their_clamps():
+    """A comparator made of a clamped op-amp is told."""
+    (found,) = findings(DIFFERENTIAL, apart(5.0, 0.7))
+    assert (found.severity, found.limit) == ("major", 0.7)
+
+
+def test_an_unlisted_differential_limit_is_not_checked():
+    """A device without the figure, or without a catalogue entry, is listed."""
+    (point,) = open_points(DIFFERENTIAL, apart(5.0))
+    assert "differential_input" in point.add
+    assert len(open_points(DIFFERENTIAL, apart(5.0, family=None))) == 1
+
+
+def resting(level, **fields):
+    """Make a stage without a known signal that rests at some level."""
+    high = bound(True, level=level, typical=10.5, guaranteed=9.5, absolute=12.0)
+    low = bound(False, level=level, typical=-10.5, guaranteed=-9.5, absolute=-12.0)
+    return stage(output=Output(net="out", level=level, high=high, low=low), **fields)
+
+
+def test_a_level_inside_is_quiet():
+    """An output that rests where it is sure to reach draws nothing."""
+    assert outcomes(STUCK, resting(0.0)) == []
+    assert outcomes(STUCK, resting(9.5)) == []
+
+
+def test_an_output_stuck_at_its_end():
+    """An output that rests beyond its range follows nothing."""
+    (found,) = findings(STUCK, resting(11.0))
+    assert found.severity == "critical"
+    assert "rests at 11 V without any signal" in found.message
+    (lower,) = findings(STUCK, resting(-13.0))
+    assert "lower end" in lower.message
+
+
+def test_stuck_is_silent_where_the_signal_or_the_level_is_another_matter():
+    """With a known signal, without a level, or in a broken loop it says nothing."""
+    assert outcomes(STUCK, stage()) == []
+    assert outcomes(STUCK, resting(None)) == []
+    assert outcomes(STUCK, resting(11.0, loop=Loop(dc="positive"))) == []
+
+
+def drifting(volts, **fields):
+    """Make a stage with an accumulated offset; it reaches 21 V in all."""
+    output = changed(stage().output, offset=volts, available=Range(-10.5, 10.5))
+    return stage(output=output, **fields)
+
+
+@pytest.mark.parametrize(
+    ("volts", "severity"), [(1.0, None), (1.05, None), (1.1, "minor"), (6.0, "major")]
+)
+def test_offset_takes_its_share_of_the_range(volts, severity):
+    """A tenth of the range is allowed, half of it is major."""
+    assert [f.severity for f in findings(OFFSET, drifting(volts))] == (
+        [severity] if severity else []
+    )
+
+
+def test_an_unknown_offset_is_not_judged():
+    """Nothing is said of a device whose offset is not listed."""
+    assert outcomes(OFFSET, drifting(None)) == []
+
+
+def loaded(most, high=5.0, net="out", **fields):
+    """Make a design whose output drives a load with a limit of its own."""
+    one = stage(
+        output=changed(stage().output, demand=Range(0.0, high), available=Range(-10.5, 10.5)),
+        **fields,
+    )
+    return design(one, settings=Settings(loads=(Load(net=net, ohms=1e4, max_volts=most),)))
+
+
+def judged(whole):
+    """Return what headroom-load says of a design."""
+    return findings(LOAD, whole, whole)
+
+
+def test_a_load_that_stands_its_voltage_is_quiet():
+    """At its limit a load is not exceeded, and loads without one are not judged."""
+    assert judged(loaded(5.0)) == []
+    assert judged(loaded(None)) == []
+
+
+def test_a_load_driven_beyond_its_own_limit():
+    """A converter input that stands 3.3 V and gets 5 V is critical."""
+    (found,) = judged(loaded(3.3))
+    assert (found.severity, found.demand, found.limit) == ("critical", 5.0, 3.3)
+    assert "as stated" in found.message
+
+
+def test_a_load_gets_no_more_than_the_output_reaches():
+    """A demand beyond the output's range counts only as far as the output goes."""
+    (found,) = judged(loaded(3.3, high=20.0))
+    assert found.demand == 10.5
+
+
+def test_a_load_elsewhere_is_not_checked():
+    """A load that does not hang on an output is listed."""
+    whole = loaded(3.3, net="elsewhere")
+    assert judged(whole) == []
+    assert len(open_points(LOAD, whole, whole)) == 1

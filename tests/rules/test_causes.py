@@ -1,0 +1,298 @@
+"""One cause is one finding, with what follows from it hanging under it."""
+
+import pytest
+
+from railguard.analysis.stage import Feedback, Output
+from railguard.rules.causes import elements_of, merge, order, upstream
+from railguard.rules.compose import finding
+from tests.rules.stages import capacitor, changed, design, rail, resistor, stage
+
+
+def about(rule, *designators, severity="major", nets=(), demand=None, limit=None, margin=None):
+    """Make a finding with what merging looks at."""
+    return finding(
+        rule, severity, rule, designators=designators, nets=nets, demand=demand, limit=limit,
+        margin=margin,
+    )  # fmt: skip
+
+
+def tree(found):
+    """Return findings as (rule, designators) with the rules of what hangs under each."""
+    return [
+        (f.rule, f.designators, [(c.rule, c.designators, c.cause) for c in f.consequences])
+        for f in found
+    ]
+
+
+def rules(found):
+    """Return the rules of the findings on top, and of those that hang, sorted."""
+    return [f.rule for f in found], sorted(c.rule for f in found for c in f.consequences)
+
+
+ONE = design(stage())
+CHAIN = design(
+    stage("XU1"), stage("XU2", after=("XU1",)), stage("XU3", after=("XU2",)), stage("XU4")
+)
+
+
+def test_findings_without_a_common_cause_stay_apart():
+    """Two unrelated faults are two findings, worst first."""
+    found = merge([about("decoupling-few", severity="minor"), about("headroom-output", "XU1")], ONE)
+    assert rules(found) == (["headroom-output", "decoupling-few"], [])
+
+
+@pytest.mark.parametrize(
+    ("cause", "follows"),
+    [
+        ("supply-missing", "headroom-output"),
+        ("supply-missing", "drive-current"),
+        ("supply-missing", "supply-range"),
+        ("supply-reversed", "headroom-input"),
+        ("supply-reversed", "stability-phase-margin"),
+        ("feedback-reversed", "headroom-output"),
+        ("feedback-reversed", "bias-no-dc-path"),
+        ("feedback-open", "drive-current"),
+        ("feedback-open", "bias-no-dc-path"),
+        ("bias-no-dc-path", "headroom-input"),
+        ("drive-joined", "drive-current"),
+        ("drive-tied", "headroom-output"),
+        ("feedback-high", "stability-phase-margin"),
+        ("feedback-high", "bias-current-error"),
+        ("headroom-input", "headroom-phase-reversal"),
+        ("headroom-input", "drive-input-above-rail"),
+    ],
+)
+def test_what_follows_on_the_same_stage_hangs_under_its_cause(cause, follows):
+    """The consequence says what it has in common with its cause, and the cause alone stands."""
+    pair = [about(follows, "XU1"), about(cause, "XU1", severity="critical")]
+    assert tree(merge(pair, ONE)) == [(cause, ("XU1",), [(follows, ("XU1",), "XU1")])]
+
+
+@pytest.mark.parametrize(
+    ("cause", "other"),
+    [
+        ("supply-missing", "decoupling-absent"),
+        ("supply-missing", "feedback-open"),
+        ("supply-missing", "bias-no-dc-path"),
+        ("feedback-reversed", "supply-range"),
+        ("headroom-input", "decoupling-few"),
+    ],
+)
+def test_faults_that_would_remain_stay_on_top(cause, other):
+    """What would still be wrong once the cause is mended is a finding of its own."""
+    pair = [about(other, "XU1", nets=("+12V",)), about(cause, "XU1", nets=("+12V",))]
+    assert sorted(f.rule for f in merge(pair, ONE)) == sorted([cause, other])
+
+
+def test_other_stages_are_not_consequences():
+    """A broken stage says nothing of a stage it does not reach."""
+    found = merge(
+        [about("feedback-open", "XU1", severity="critical"), about("headroom-output", "XU4")],
+        CHAIN,
+    )
+    assert rules(found)[1] == []
+
+
+def test_everything_on_a_dead_rail_hangs_under_it():
+    """One dead rail, three stages, one finding."""
+    found = merge(
+        [
+            about("headroom-output", "XU1"),
+            about("headroom-output", "XU2"),
+            about("drive-current", "XU3"),
+            about("supply-name-disagrees", "U1", nets=("+12V",)),
+            about("supply-missing", "XU1", "XU2", "XU3", severity="critical", nets=("+12V",)),
+        ],
+        CHAIN,
+    )
+    assert [f.rule for f in found] == ["supply-missing"]
+    assert len(found[0].consequences) == 4
+
+
+def test_ground_relates_nothing():
+    """Two findings that share net 0 have nothing in common by that."""
+    found = merge(
+        [
+            about("supply-name-disagrees", "U9", nets=("0",)),
+            about("supply-missing", "XU1", nets=("0",)),
+        ],
+        ONE,
+    )
+    assert len(found) == 2
+
+
+def test_a_saturated_stage_takes_those_behind_it_along():
+    """Headroom of every later stage hangs under the first that clips, flat."""
+    found = merge(
+        [
+            about("headroom-output", "XU3", severity="critical"),
+            about("headroom-input", "XU2", severity="critical"),
+            about("headroom-output", "XU1", severity="critical"),
+        ],
+        CHAIN,
+    )
+    (cause,) = found
+    assert cause.designators == ("XU1",)
+    assert sorted(c.designators for c in cause.consequences) == [("XU2",), ("XU3",)]
+    assert {c.cause for c in cause.consequences} == {"XU1"}
+
+
+def test_a_stage_that_clips_a_little_explains_nothing():
+    """Under a minor finding nothing of a later stage hangs."""
+    found = merge(
+        [about("headroom-output", "XU1", severity="minor"), about("headroom-output", "XU2")],
+        CHAIN,
+    )
+    assert rules(found)[1] == []
+
+
+def test_a_stage_that_does_not_work_takes_later_headroom_along():
+    """Behind an open loop the levels mean nothing; other faults there stay."""
+    found = merge(
+        [
+            about("feedback-open", "XU1", severity="critical"),
+            about("headroom-output", "XU3"),
+            about("drive-power", "XU3"),
+        ],
+        CHAIN,
+    )
+    assert rules(found) == (["feedback-open", "drive-power"], ["headroom-output"])
+
+
+def test_in_a_ring_the_gravest_leads():
+    """In a state-variable loop each stage comes after each: one of them is the cause."""
+    ring = design(stage("XU1", after=("XU2",)), stage("XU2", after=("XU1",)))
+    found = merge(
+        [
+            about("headroom-output", "XU1", severity="major"),
+            about("headroom-output", "XU2", severity="critical"),
+        ],
+        ring,
+    )
+    assert tree(found) == [("headroom-output", ("XU2",), [("headroom-output", ("XU1",), "XU2")])]
+    equal = merge([about("headroom-output", n, severity="major") for n in ("XU2", "XU1")], ring)
+    assert [f.designators for f in equal] == [("XU1",)]
+
+
+def test_no_finding_is_ever_lost():
+    """However causes point at each other, every finding is told once."""
+    ring = design(*(stage(f"XU{i}", after=(f"XU{i % 3 + 1}",)) for i in (1, 2, 3)))
+    many = [
+        about(rule, f"XU{i}", severity="critical", nets=("n",), demand=2.0, limit=1.0, margin=-1.0)
+        for i in (1, 2, 3)
+        for rule in (
+            "supply-missing", "feedback-open", "bias-no-dc-path", "headroom-output",
+            "headroom-input", "drive-current", "feedback-low", "supply-range", "drive-tied",
+        )
+    ]  # fmt: skip
+    found = merge(many, ring)
+    told = [f for top in found for f in (top, *top.consequences)]
+    assert len(told) == len(many)
+    assert {(f.rule, f.designators) for f in told} == {(f.rule, f.designators) for f in many}
+    assert all(not c.consequences for top in found for c in top.consequences)
+
+
+def test_a_misread_value_takes_along_what_was_worked_out_with_it():
+    """Everything of the stage that R2 belongs to hangs under R2's own finding."""
+    trap = about("netlist-value-suffix", "R2", severity="minor")
+    found = merge([about("headroom-output", "XU1"), about("feedback-high", "XU1"), trap], ONE)
+    assert rules(found) == (["netlist-value-suffix"], ["feedback-high", "headroom-output"])
+    assert {c.cause for c in found[0].consequences} == {"R2"}
+
+
+def test_a_misread_value_elsewhere_explains_nothing():
+    """An element far from the stage has nothing to do with it."""
+    far = design(stage(), elements=(resistor("R99", 1.0, "x", "y"),))
+    found = merge([about("netlist-value-suffix", "R99"), about("headroom-output", "XU1")], far)
+    assert rules(found)[1] == []
+
+
+def test_a_misread_rail_or_capacitor_takes_its_rail_along():
+    """A rail's source and its capacitors belong to the rail's findings."""
+    whole = design(stage(), rails=(rail(origin="VP", decoupling=(capacitor("C9", 1e-15),)),))
+    for designator, rule in (("VP", "supply-name-disagrees"), ("C9", "decoupling-absent")):
+        found = merge(
+            [about("netlist-value-suffix", designator), about(rule, "U1", nets=("+12V",))], whole
+        )
+        assert rules(found) == (["netlist-value-suffix"], [rule])
+
+
+def test_a_cause_is_never_milder_than_what_follows():
+    """A minor misreading with a critical consequence is critical: it must not hide it."""
+    found = merge(
+        [
+            about("netlist-value-suffix", "R2", severity="minor"),
+            about("headroom-output", "XU1", severity="critical"),
+        ],
+        ONE,
+    )
+    assert [f.severity for f in found] == ["critical"]
+
+
+def test_a_low_supply_explains_headroom_and_a_high_one_does_not():
+    """Too few volts cost range; too many do not."""
+    pair = [about("headroom-output", "XU1")]
+    low = merge([*pair, about("supply-range", "XU1", demand=5.0, limit=7.0)], ONE)
+    high = merge([*pair, about("supply-range", "XU1", demand=45.0, limit=42.0)], ONE)
+    assert rules(low)[1] == ["headroom-output"]
+    assert rules(high)[1] == []
+
+
+def test_a_corner_of_the_supply_explains_nothing_at_nominal():
+    """A supply that is too low only at a corner is no cause of clipping at nominal."""
+    corner = changed(about("supply-range", "XU1", demand=6.9, limit=7.0), corner="worst-case")
+    assert rules(merge([corner, about("headroom-output", "XU1")], ONE))[1] == []
+
+
+def test_a_current_asked_only_because_the_range_is_too_wide():
+    """Clipped to what it reaches, the output asks for less than its limit: a consequence."""
+    clip = about("headroom-output", "XU1", demand=20.0, limit=10.0)
+    fits = about("drive-current", "XU1", demand=8e-3, limit=5e-3)
+    heavy = about("drive-current", "XU1", demand=12e-3, limit=5e-3)
+    assert rules(merge([clip, fits], ONE))[1] == ["drive-current"]
+    assert rules(merge([clip, heavy], ONE))[1] == []
+
+
+def test_a_network_that_alone_is_too_heavy_is_the_cause():
+    """Where feedback alone takes too much, the output's current follows from it."""
+    alone = about("feedback-low", "XU1", margin=-1e-3)
+    share = about("feedback-low", "XU1", margin=1e-3)
+    load = about("drive-current", "XU1")
+    assert rules(merge([alone, load], ONE))[1] == ["drive-current"]
+    assert rules(merge([share, load], ONE))[1] == []
+
+
+def test_a_followers_input_follows_its_output():
+    """The same volts at both ends of a follower are one fault where the side is the same."""
+    whole = design(stage(topology="follower"))
+    out = about("headroom-output", "XU1", demand=12.0, limit=10.0)
+    same = about("headroom-input", "XU1", demand=12.0, limit=9.0)
+    other = about("headroom-input", "XU1", demand=-12.0, limit=-9.0)
+    assert rules(merge([out, same], whole))[1] == ["headroom-input"]
+    assert rules(merge([out, other], whole))[1] == []
+    assert rules(merge([out, same], ONE))[1] == []
+
+
+def test_upstream_goes_through_other_stages_and_never_names_itself():
+    """All stages before, through a ring as well."""
+    assert upstream(CHAIN.stages[2], CHAIN) == {"XU1", "XU2"}
+    ring = design(stage("XU1", after=("XU2",)), stage("XU2", after=("XU1",)))
+    assert upstream(ring.stages[0], ring) == {"XU2"}
+
+
+def test_elements_of_a_stage():
+    """The feedback, the way of the inputs, what moves a corner, and what stands at its pins."""
+    one = stage(
+        feedback=Feedback(elements=("R2",)),
+        output=Output(net="out", high=changed(stage().output.high, culprits=("R40",))),
+    )
+    assert {"R1", "R2", "R40"} <= elements_of(one, design(one))
+    assert "VP" not in elements_of(one, design(one))
+
+
+def test_worst_first_then_by_place():
+    """Severity, then file and line; what has no place comes last."""
+    here = changed(about("bias-level", severity="minor"), location=stage().location)
+    lost = about("bias-level", severity="minor")
+    grave = about("supply-missing", severity="critical")
+    assert sorted([lost, here, grave], key=order) == [grave, here, lost]

@@ -1,0 +1,107 @@
+"""Whether a stage is fast enough."""
+
+import pytest
+
+from railguard.analysis.stage import Loop, Range
+from railguard.rules.dynamics import COUPLING, LOOP_GAIN, SLEW
+from tests.rules.stages import (
+    FAMILY,
+    changed,
+    figure,
+    findings,
+    open_points,
+    outcomes,
+    stage,
+    unknown_device,
+)
+
+
+def with_loop_gain(left, **fields):
+    """Make a stage with some loop gain left at 20 kHz."""
+    loop = Loop(dc="negative", noise_gain=11.0, band=20e3, loop_gain=left)
+    return stage(**{"loop": loop, **fields})
+
+
+@pytest.mark.parametrize(
+    ("left", "severity"), [(100.0, None), (7.0, None), (6.9, "minor"), (0.5, "critical")]
+)
+def test_loop_gain_at_the_top_of_the_band(left, severity):
+    """Seven leave 1 % of error; below one the band lies beyond the bandwidth."""
+    assert [f.severity for f in findings(LOOP_GAIN, with_loop_gain(left))] == (
+        [severity] if severity else []
+    )
+
+
+def test_loop_gain_says_what_is_lost_and_what_would_do():
+    """The error in percent, and the gain-bandwidth product wanted."""
+    (found,) = findings(LOOP_GAIN, with_loop_gain(2.0))
+    assert "its gain falls short by 11 %" in found.message
+    assert "1.54 MHz gain-bandwidth" in found.remedy
+
+
+def test_loop_gain_without_a_band_a_speed_or_a_device():
+    """Without a band nothing is asked; an unlisted speed and an unknown device are listed."""
+    assert outcomes(LOOP_GAIN, stage(loop=Loop(dc="negative"))) == []
+    assert len(open_points(LOOP_GAIN, with_loop_gain(None))) == 1
+    assert len(open_points(LOOP_GAIN, with_loop_gain(None, family=None))) == 1
+    assert outcomes(LOOP_GAIN, with_loop_gain(0.5, use="comparator")) == []
+
+
+def slewing(slope, **fields):
+    """Make a stage whose output moves at some slope; the device does 13, 8 guaranteed V/µs."""
+    return stage(output=changed(stage().output, slew=slope, frequency=20e3), **fields)
+
+
+@pytest.mark.parametrize(
+    ("slope", "severity"),
+    [(5e6, None), (5.3e6, None), (5.4e6, "minor"), (9e6, "major"), (14e6, "critical")],
+)
+def test_the_steepest_slope(slope, severity):
+    """One and a half times the slope is wanted of the guaranteed slew rate."""
+    assert [f.severity for f in findings(SLEW, slewing(slope))] == ([severity] if severity else [])
+
+
+def test_slew_says_its_numbers():
+    """Slopes are written as data sheets write them."""
+    (found,) = findings(SLEW, slewing(14e6))
+    assert found.message.startswith(
+        "U1's output must move at 14 V/µs at 20 kHz; a TL072 slews at 13 V/µs (typical, data sheet)"
+    )
+
+
+def test_slew_of_unknown_devices_and_figures_is_listed():
+    """What is not listed is not judged; without a slope nothing is asked."""
+    bare = changed(FAMILY, slew_rate=figure())
+    assert len(open_points(SLEW, slewing(1e6, family=bare))) == 1
+    assert len(open_points(SLEW, slewing(1e6, family=None))) == 1
+    assert outcomes(SLEW, slewing(None)) == []
+    assert findings(SLEW, unknown_device()) == []
+
+
+def coupled(corner, bottom=20.0):
+    """Make a stage behind coupling capacitors."""
+    return stage(high_pass=corner, band=Range(bottom, 20e3))
+
+
+@pytest.mark.parametrize(
+    ("corner", "severity"), [(5.0, None), (10.0, None), (11.0, "remark"), (30.0, "minor")]
+)
+def test_the_corner_of_a_coupling(corner, severity):
+    """Half the lowest frequency costs 1 dB; beyond it a remark, inside the band minor."""
+    assert [f.severity for f in findings(COUPLING, coupled(corner))] == (
+        [severity] if severity else []
+    )
+
+
+def test_a_coupling_says_what_is_lost():
+    """The loss in decibels, and how much larger the capacitors must be."""
+    (found,) = findings(COUPLING, coupled(20.0))
+    assert "3.01 dB are lost" in found.message
+    assert "Fit coupling capacitors 2 times as large" in found.remedy
+
+
+def test_a_band_from_dc_or_unknown_is_not_judged():
+    """Without a lowest frequency nothing is asked."""
+    assert outcomes(COUPLING, coupled(30.0, None)) == []
+    assert outcomes(COUPLING, coupled(30.0, 0.0)) == []
+    assert outcomes(COUPLING, coupled(None)) == []

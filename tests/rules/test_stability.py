@@ -1,0 +1,155 @@
+"""Noise gain, phase margin, capacitive load, transimpedance stages."""
+
+import pytest
+
+from railguard.analysis.stage import Current, Feedback, Loop
+from railguard.rules.stability import LOAD_CAPACITANCE, NOISE_GAIN, PHASE_MARGIN, TRANSIMPEDANCE
+from tests.rules.stages import (
+    FAMILY,
+    changed,
+    figure,
+    findings,
+    open_points,
+    outcomes,
+    stage,
+)
+
+DECOMPENSATED = changed(FAMILY, stable_gain=figure(5.0))
+
+
+def closing_at(gain, family=DECOMPENSATED, **fields):
+    """Make a stage whose loop closes with some noise gain."""
+    loop = Loop(dc="negative", crossover=1e6, noise_gain_crossover=gain)
+    return stage(family=family, loop=loop, **fields)
+
+
+@pytest.mark.parametrize(
+    ("gain", "severity"), [(11.0, None), (4.8, None), (4.7, "critical"), (1.0, "critical")]
+)
+def test_noise_gain_where_the_loop_closes(gain, severity):
+    """Five are needed, with a twentieth for the coarseness of the figure."""
+    assert [f.severity for f in findings(NOISE_GAIN, closing_at(gain))] == (
+        [severity] if severity else []
+    )
+
+
+def test_a_gain_from_memory_weighs_less():
+    """A figure from memory is major."""
+    vague = changed(FAMILY, stable_gain=figure(5.0, typical_basis="memory"))
+    assert [f.severity for f in findings(NOISE_GAIN, closing_at(1.0, vague))] == ["major"]
+
+
+def test_noise_gain_names_the_capacitor_and_a_cure():
+    """The capacitor across the feedback is what brings it down; a resistor brings it up."""
+    network = Feedback(elements=("R2",), resistance=10e3, capacitance=100e-12)
+    (found,) = findings(NOISE_GAIN, closing_at(1.0, feedback=network))
+    assert "The 100 pF across the feedback bring it down there." in found.message
+    assert "2.4 kΩ or less" in found.remedy
+
+
+def test_a_unity_gain_stable_device_is_quiet():
+    """One is enough for most."""
+    assert outcomes(NOISE_GAIN, closing_at(1.0, FAMILY)) == []
+
+
+def test_noise_gain_of_what_is_not_known_is_listed():
+    """An unlisted least gain, an unknown crossover or device are not checked."""
+    bare = changed(FAMILY, stable_gain=figure())
+    assert "stable_gain" in open_points(NOISE_GAIN, closing_at(1.0, bare))[0].add
+    assert "gain_bandwidth" in open_points(NOISE_GAIN, closing_at(None))[0].add
+    assert len(open_points(NOISE_GAIN, closing_at(1.0, None))) == 1
+    assert outcomes(NOISE_GAIN, closing_at(1.0, use="comparator")) == []
+
+
+def with_margin(degrees, **fields):
+    """Make a stage with some phase margin."""
+    loop = Loop(dc="negative", crossover=1e6, phase_margin=degrees)
+    return stage(**{"loop": loop, **fields})
+
+
+@pytest.mark.parametrize(
+    ("degrees", "severity"),
+    [(60.0, None), (45.0, None), (44.0, "minor"), (19.0, "major"), (-5.0, "critical")],
+)
+def test_phase_margin(degrees, severity):
+    """Forty-five degrees are wanted; below twenty it rings long, below none it oscillates."""
+    assert [f.severity for f in findings(PHASE_MARGIN, with_margin(degrees))] == (
+        [severity] if severity else []
+    )
+
+
+def test_the_remedy_fits_the_cause():
+    """A capacitive load wants a resistor, a large feedback resistor a capacitor."""
+    load = Current(load_capacitance=10e-9)
+    (loaded,) = findings(PHASE_MARGIN, with_margin(10.0, current=load))
+    assert "Fit 47 Ω between the output of U1" in loaded.remedy
+    (plain,) = findings(PHASE_MARGIN, with_margin(10.0))
+    assert plain.remedy == "Fit 7.5 pF across R2."
+
+
+def test_an_unknown_margin_is_listed():
+    """Where something that matters is not listed the margin is not checked."""
+    (point,) = open_points(PHASE_MARGIN, with_margin(None))
+    assert "output_resistance" in point.add
+    assert outcomes(PHASE_MARGIN, with_margin(5.0, use="oscillator")) == []
+
+
+def charging(farads, family=FAMILY, gain=1.0, margin=None, **fields):
+    """Make a stage with a capacitor at its output, its phase margin not known."""
+    loop = Loop(dc="negative", noise_gain_crossover=gain, phase_margin=margin)
+    return stage(family=family, loop=loop, current=Current(load_capacitance=farads), **fields)
+
+
+@pytest.mark.parametrize(
+    ("farads", "gain", "severity"),
+    [(100e-12, 1.0, None), (101e-12, 1.0, "major"), (1e-9, 11.0, None), (0.0, 1.0, None)],
+)
+def test_capacitance_straight_at_the_output(farads, gain, severity):
+    """What the device stands counts times the noise gain."""
+    assert [f.severity for f in findings(LOAD_CAPACITANCE, charging(farads, gain=gain))] == (
+        [severity] if severity else []
+    )
+
+
+def test_an_unlisted_capacitance_is_common_practice():
+    """A hundred picofarads by common practice make a minor finding."""
+    bare = changed(FAMILY, load_capacitance=figure())
+    assert [f.severity for f in findings(LOAD_CAPACITANCE, charging(1e-9, bare))] == ["minor"]
+
+
+def test_a_known_phase_margin_is_judged_instead():
+    """The margin has the load in it already; an unknown device is listed."""
+    assert outcomes(LOAD_CAPACITANCE, charging(1e-6, margin=50.0)) == []
+    assert len(open_points(LOAD_CAPACITANCE, charging(1e-9, None))) == 1
+
+
+def converting(ohms, capacitance=0.0, margin=None, **fields):
+    """Make a transimpedance stage."""
+    return stage(
+        topology="transimpedance",
+        feedback=Feedback(elements=("RF",), resistance=ohms, capacitance=capacitance),
+        loop=Loop(dc="negative", phase_margin=margin),
+        **fields,
+    )
+
+
+def test_a_transimpedance_stage_wants_a_capacitor():
+    """Without one it is minor, and the capacitor's value is given."""
+    (found,) = findings(TRANSIMPEDANCE, converting(100e3))
+    assert found.severity == "minor"
+    assert found.remedy == "Fit 3.3 pF across RF."
+
+
+def test_compensated_small_or_known_to_be_stable_stages_are_quiet():
+    """With a capacitor, below 10 kΩ, or with a known margin nothing is said."""
+    assert outcomes(TRANSIMPEDANCE, converting(100e3, 1e-12)) == []
+    assert outcomes(TRANSIMPEDANCE, converting(9.9e3)) == []
+    assert len(findings(TRANSIMPEDANCE, converting(10e3))) == 1
+    assert outcomes(TRANSIMPEDANCE, converting(100e3, margin=50.0)) == []
+    assert outcomes(TRANSIMPEDANCE, stage()) == []
+
+
+def test_an_unknown_device_still_wants_a_capacitor():
+    """Without figures no value is named."""
+    (found,) = findings(TRANSIMPEDANCE, converting(100e3, family=None))
+    assert found.remedy == "Fit a few picofarads across RF."
