@@ -12,7 +12,7 @@ NO_SOURCE = "common practice, no source"
 _ORIGIN: dict[Basis, str] = {
     "netlist": "netlist",
     "catalogue": "data sheet",
-    "memory": "data sheet, from memory",
+    "memory": "data sheet from memory",
     "practice": "common practice",
     "assumed": "assumed",
     "user": "as stated",

@@ -93,8 +93,8 @@ def _side(demand: float | None, typical: float, guaranteed: float, rail: float) 
 
 
 def amps(demand: float | None = 1e-3, **fields: Any) -> Bound:
-    """Make one side of the usual output current: 10 mA typical, 5 mA known, 40 mA shorted."""
-    usual = {"demand": demand, "typical": 10e-3, "guaranteed": 5e-3, "absolute": 40e-3}
+    """Make one side of the usual output current: 10 mA typical, 5 mA known to be given."""
+    usual = {"demand": demand, "typical": 10e-3, "guaranteed": 5e-3}
     return bound(True, **{**usual, **fields})
 
 

@@ -3,9 +3,11 @@
 import pytest
 
 from railguard.analysis.stage import Feedback, Output
-from railguard.rules.causes import elements_of, merge, order, upstream
+from railguard.devices.model import SwingPoint
+from railguard.rules.causes import merge, order
 from railguard.rules.compose import finding
-from tests.rules.stages import capacitor, changed, design, rail, resistor, stage
+from railguard.rules.links import elements_of, upstream
+from tests.rules.stages import FAMILY, capacitor, changed, design, rail, resistor, stage
 
 
 def about(rule, *designators, severity="major", nets=(), demand=None, limit=None, margin=None):
@@ -251,6 +253,17 @@ def test_a_current_asked_only_because_the_range_is_too_wide():
     heavy = about("drive-current", "XU1", demand=12e-3, limit=5e-3)
     assert rules(merge([clip, fits], ONE))[1] == ["drive-current"]
     assert rules(merge([clip, heavy], ONE))[1] == []
+
+
+def test_a_load_that_takes_the_range_is_the_cause():
+    """Where the unloaded output would reach, clipping follows from the load and not the reverse."""
+    swing = (SwingPoint(amps=1e-3, typical=1.5), SwingPoint(amps=5e-3, typical=3.0))
+    whole = design(stage(family=changed(FAMILY, swing_high=swing)))
+    load = about("drive-current", "XU1", demand=50e-3, limit=40e-3)
+    clip = about("headroom-output", "XU1", demand=10.0, limit=3.0)
+    assert rules(merge([clip, load], whole)) == (["drive-current"], ["headroom-output"])
+    beyond = about("headroom-output", "XU1", demand=11.0, limit=3.0)
+    assert rules(merge([beyond, load], whole)) == (["headroom-output"], ["drive-current"])
 
 
 def test_a_network_that_alone_is_too_heavy_is_the_cause():

@@ -87,5 +87,9 @@ def return_net(rail: Rail) -> str:
 
 def fit_each(rail: Rail, packages: tuple[str, ...]) -> str:
     """Say what to fit at each of some packages."""
-    each = f"each of {listed(packages)}" if len(packages) > 1 else listed(packages)
-    return f"Fit {si(USUAL, 'F')} from {rail.net} to {return_net(rail)} at {each}."
+    return f"Fit {si(USUAL, 'F')} from {rail.net} to {return_net(rail)} at {each_of(packages)}."
+
+
+def each_of(packages: tuple[str, ...]) -> str:
+    """Name packages as in a remedy: `U1`, `each of U1 and U2`."""
+    return f"each of {listed(packages)}" if len(packages) > 1 else listed(packages)

@@ -13,6 +13,7 @@ from railguard.rules.decoupling.capacitors import (
     at_pins,
     behind_series,
     decoupling_of,
+    each_of,
     fit_each,
     is_bare,
     is_return,
@@ -79,8 +80,8 @@ def _bench(rail: Rail, limits: Limits, design: Design) -> Iterator[Finding]:
         designators=packages,
         nets=nets,
         basis=("netlist", "practice"),
-        remedy=f"On the board fit {si(USUAL, 'F')} from each rail to its return at each of "
-        f'{listed(packages)}; if this deck is a board, state kind = "board" under [review].',
+        remedy=f"On the board fit {si(USUAL, 'F')} from each rail to its return at "
+        f'{each_of(packages)}; if this deck is a board, state kind = "board" under [review].',
         source=PER_PIN_SOURCE,
         location=rail.location,
     )
@@ -227,7 +228,7 @@ def judge_across(rail: Rail, limits: Limits, design: Design) -> Iterator[Outcome
         nets=nets,
         basis=("netlist", "memory"),
         remedy=f"Fit {si(USUAL, 'F')} from {' and from '.join(nets)} to {return_net(rail)} at "
-        f"{'each of ' if len(packages) > 1 else ''}{listed(packages)}.",
+        f"{each_of(packages)}.",
         source="Analog Devices AN462: decouple each pin to the return of the load current; that a "
         "capacitor between the rails is no substitute is from memory",
         location=rail.location,

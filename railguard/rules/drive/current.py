@@ -3,6 +3,7 @@
 from collections.abc import Iterator
 
 from railguard.analysis.stage import Bound, Design, Stage, Unknown
+from railguard.devices.model import UNLISTED_CURRENT
 from railguard.rules.compose import (
     breach_finding,
     loop_is_broken,
@@ -77,20 +78,27 @@ def _current_message(stage: Stage, verb: str, bound: Bound, broken: Breach) -> s
     into = f" into {stage.current.into}" if stage.current.into else ""
     asked = f"{lead}{stage.schematic} must {verb} {si(broken.demand, 'A')}{into}"
     limit = si(broken.limit, "A")
-    kind = "typical" if broken.broken == "typical" or bound.guaranteed is None else "guaranteed"
-    note = limit_note(kind, broken.limit_basis, bound.condition)
-    gives = "gives" if kind == "typical" else "is known to give"
+    typical = broken.broken == "typical" or bound.guaranteed is None
+    note, gives = _note(bound, broken, typical), "gives" if typical else "is known to give"
     if broken.broken == "reserve":
         return f"{asked}; {device(stage)} {gives} {limit} {note}: {si(broken.margin, 'A')} is left."
     end = "missing" if broken.broken == "typical" else "not covered"
-    short = stage.current.short_circuit
-    shorted = ""
-    if short is not None and short < broken.demand:
-        shorted = f" Even shorted it gives no more than {si(short, 'A')}."
     return (
-        f"{asked}; {device(stage)} {gives} {limit} {note}, so {si(-broken.margin, 'A')} is "
-        f"{end}.{shorted}"
+        f"{asked}; {device(stage)} {gives} {limit} {note}, so {si(-broken.margin, 'A')} is {end}."
     )
+
+
+def _note(bound: Bound, broken: Breach, typical: bool) -> str:
+    """Say what sort of figure a current limit is, where the sheet lists no output current too."""
+    if not bound.condition.startswith(UNLISTED_CURRENT):
+        kind = "typical" if typical else "guaranteed"
+        return limit_note(kind, broken.limit_basis, bound.condition)
+    if typical:
+        return limit_note("typical short-circuit current", broken.limit_basis)
+    if broken.limit_basis == "practice":
+        return limit_note("half its short-circuit current", broken.limit_basis)
+    test = bound.condition.removeprefix(UNLISTED_CURRENT).lstrip(": ")
+    return limit_note(test or "swing test", broken.limit_basis)
 
 
 def _current_remedy(stage: Stage, broken: Breach) -> str:

@@ -3,6 +3,7 @@
 import pytest
 
 from railguard.analysis.stage import Current, Loop, Pair, Unknown
+from railguard.devices.model import UNLISTED_CURRENT
 from railguard.rules.drive.current import CURRENT
 from tests.rules.stages import amps, findings, open_points, outcomes, stage, unknown_device
 
@@ -41,10 +42,20 @@ def test_both_directions_make_one_finding():
     assert "It must source 6 mA as well, against 5 mA." in found.message
 
 
-def test_more_than_the_short_circuit_current():
-    """Where even a short gives less, the sentence says so."""
-    (found,) = findings(CURRENT, giving(50e-3))
-    assert "Even shorted it gives no more than 40 mA." in found.message
+@pytest.mark.parametrize(
+    ("demand", "basis", "note"),
+    [
+        (50e-3, "catalogue", "gives 10 mA (typical short-circuit current, data sheet)"),
+        (6e-3, "practice", "known to give 5 mA (half its short-circuit current, common practice)"),
+        (6e-3, "catalogue", "known to give 5 mA (swing is guaranteed at 2 kΩ, data sheet)"),
+    ],
+)
+def test_where_no_output_current_is_listed(demand, basis, note):
+    """The sentence says what stands in for it."""
+    listed = {"condition": f"{UNLISTED_CURRENT}: swing is guaranteed at 2 kΩ"}
+    source = amps(demand, guaranteed_basis=basis, **listed)
+    (found,) = findings(CURRENT, stage(current=Current(source=source, sink=amps())))
+    assert note in found.message
 
 
 def test_a_corner_of_tolerances_is_told_as_such():

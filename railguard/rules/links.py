@@ -1,0 +1,247 @@
+"""Which finding can be the cause of which, and by what two of them are seen to belong together."""
+
+from collections.abc import Callable
+
+import msgspec
+
+from railguard.analysis.stage import Design, Stage
+from railguard.circuit.model import GROUND
+from railguard.rules.compose import stage_named
+from railguard.rules.finding import Finding
+from railguard.words import SEVERITIES
+
+Related = Callable[[Finding, Finding, Design], str]
+"""related(cause, finding, design): the designator or net they have in common, or ""."""
+
+
+class Link(msgspec.Struct, frozen=True):
+    """Which rules' findings can follow from which, and how two findings are seen to belong.
+
+    follows  names of rules, or of whole families
+    """
+
+    causes: tuple[str, ...]
+    follows: tuple[str, ...]
+    related: Related
+
+
+def upstream(stage: Stage, design: Design) -> frozenset[str]:
+    """Return the designators of all stages whose output reaches a stage, through others too."""
+    found: set[str] = set()
+    waiting = list(stage.after)
+    while waiting:
+        name = waiting.pop()
+        if name in found:
+            continue
+        found.add(name)
+        before = stage_named(name, design)
+        waiting += before.after if before is not None else ()
+    return frozenset(found - {stage.designator})
+
+
+def _shared_designator(cause: Finding, finding: Finding, design: Design) -> str:
+    return next((d for d in cause.designators if d in finding.designators), "")
+
+
+def _shared_supply(cause: Finding, finding: Finding, design: Design) -> str:
+    """Relate by a common channel, or by the rail itself where the finding is about a rail."""
+    nets = [n for n in cause.nets if n in finding.nets and n != GROUND]
+    return _shared_designator(cause, finding, design) or next(iter(nets), "")
+
+
+def _too_low_a_supply(cause: Finding, finding: Finding, design: Design) -> str:
+    if cause.corner != "nominal" or cause.demand is None or cause.limit is None:
+        return ""
+    low = cause.demand < cause.limit
+    return _shared_designator(cause, finding, design) if low else ""
+
+
+def elements_of(stage: Stage, design: Design) -> frozenset[str]:
+    """Return the designators of the elements a stage's numbers are known to rest on."""
+    names = {
+        *stage.feedback.elements,
+        *stage.inputs.plus.path,
+        *stage.inputs.minus.path,
+        stage.current.into,
+    }
+    for bound in (
+        stage.output.high,
+        stage.output.low,
+        stage.inputs.high,
+        stage.inputs.low,
+        stage.current.source,
+        stage.current.sink,
+    ):
+        names.update(bound.culprits)
+    around = {stage.inputs.plus.net, stage.inputs.minus.net, stage.output.net} - {GROUND}
+    names.update(e.designator for e in design.circuit.elements if around & set(e.nets))
+    return frozenset(names - {""})
+
+
+def _rail_elements(finding: Finding, design: Design) -> frozenset[str]:
+    names: set[str] = set()
+    for rail in design.rails:
+        if rail.net in finding.nets:
+            names.update((rail.origin, *rail.series))
+            names.update(c.designator for c in (*rail.decoupling, *rail.upstream, *rail.across))
+    return frozenset(names)
+
+
+def _rests_on_value(cause: Finding, finding: Finding, design: Design) -> str:
+    """Relate a misread value to what was worked out with it."""
+    names = set(finding.designators) | _rail_elements(finding, design)
+    for designator in finding.designators:
+        stage = stage_named(designator, design)
+        if stage is not None:
+            names |= elements_of(stage, design)
+    return next((d for d in cause.designators if d in names), "")
+
+
+def _saturated_before(cause: Finding, finding: Finding, design: Design) -> str:
+    """Relate the clipped output of one stage to the ranges of the stages behind it."""
+    if cause.severity not in ("critical", "major"):
+        return ""
+    first = _stage_of(cause, design)
+    later = _stage_of(finding, design)
+    if first is None or later is None or first.designator not in upstream(later, design):
+        return ""
+    ring = later.designator in upstream(first, design)
+    return "" if ring and not _leads(cause, finding, design) else first.designator
+
+
+def _leads(cause: Finding, finding: Finding, design: Design) -> bool:
+    """In a ring of stages each comes after each: the gravest, then the first, leads."""
+    order = [s.designator for s in design.stages]
+
+    def rank(f: Finding) -> tuple[int, int, int]:
+        place = order.index(f.designators[0])
+        return SEVERITIES.index(f.severity), f.rule != "headroom-output", place
+
+    return rank(cause) < rank(finding)
+
+
+def _dead_before(cause: Finding, finding: Finding, design: Design) -> str:
+    """Relate a stage that does not work to the ranges of itself and of the stages behind it."""
+    first, later = _stage_of(cause, design), _stage_of(finding, design)
+    if first is None or later is None or cause.severity not in ("critical", "major"):
+        return ""
+    behind = first.designator in upstream(later, design)
+    return first.designator if behind else ""
+
+
+def _stage_of(finding: Finding, design: Design) -> Stage | None:
+    return stage_named(finding.designators[0], design) if finding.designators else None
+
+
+def _heavy_load(cause: Finding, finding: Finding, design: Design) -> str:
+    """Relate an output that lacks range to a load that takes it: unloaded, it would reach."""
+    stage = _stage_of(finding, design)
+    same = _shared_designator(cause, finding, design)
+    return same if stage is not None and _reached_unloaded(stage, finding) else ""
+
+
+def _reached_unloaded(stage: Stage, finding: Finding) -> bool:
+    """Tell whether the demand lies within the swing at the lightest load the sheet lists."""
+    if finding.demand is None or finding.limit is None or stage.family is None:
+        return False
+    upper = finding.demand > finding.limit
+    rail = stage.supply.positive if upper else stage.supply.negative
+    points = stage.family.swing_high if upper else stage.family.swing_low
+    drops = [p.typical if p.typical is not None else p.guaranteed for p in points]
+    known = [drop for drop in drops if drop is not None]
+    if rail is None or not known:
+        return False
+    return finding.demand <= rail - min(known) if upper else finding.demand >= rail + min(known)
+
+
+def _only_unclipped(cause: Finding, finding: Finding, design: Design) -> str:
+    """Relate a demand that is too much only because the output's range is: clipped, it fits."""
+    same, stage = _shared_designator(cause, finding, design), _stage_of(cause, design)
+    if stage is not None and finding.rule == "drive-current" and _reached_unloaded(stage, cause):
+        return ""
+    numbers = (cause.demand, cause.limit, finding.demand, finding.limit)
+    if not same or any(n is None for n in numbers) or not cause.demand:
+        return ""
+    demand, limit, asked, allowed = (abs(n or 0.0) for n in numbers)
+    return same if limit < demand and asked * limit / demand <= allowed else ""
+
+
+def _network_alone(cause: Finding, finding: Finding, design: Design) -> str:
+    alone = cause.margin is not None and cause.margin < 0
+    return _shared_designator(cause, finding, design) if alone else ""
+
+
+def _same_side(cause: Finding, finding: Finding, design: Design) -> str:
+    """Relate output and input of a follower, which are one quantity."""
+    stage = _stage_of(cause, design)
+    if stage is None or stage.topology != "follower":
+        return ""
+    if None in (cause.demand, cause.limit, finding.demand, finding.limit):
+        return ""
+    upper = (cause.demand or 0.0) > (cause.limit or 0.0)
+    same = upper == ((finding.demand or 0.0) > (finding.limit or 0.0))
+    milder = SEVERITIES.index(cause.severity) <= SEVERITIES.index(finding.severity)
+    return _shared_designator(cause, finding, design) if same and milder else ""
+
+
+_RUNNING = (
+    "headroom",
+    "drive",
+    "dynamics",
+    "stability",
+    "bias-level",
+    "bias-current-error",
+    "feedback-low",
+    "feedback-high",
+)
+"""What has a meaning only for a stage that works."""
+
+_VALUES = tuple(
+    f"netlist-value-{kind}" for kind in ("suffix", "second-number", "form", "missing", "sign")
+)
+
+LINKS: tuple[Link, ...] = (
+    Link(
+        _VALUES,
+        ("supply", "decoupling", "headroom", "drive", "bias", "feedback", "dynamics", "stability"),
+        _rests_on_value,
+    ),
+    Link(
+        ("supply-missing", "supply-reversed"),
+        (*_RUNNING, "supply-range", "supply-drop", "supply-name-disagrees"),
+        _shared_supply,
+    ),
+    Link(
+        ("drive-joined", "drive-tied"),
+        ("headroom", "drive-current", "drive-power"),
+        _shared_designator,
+    ),
+    Link(
+        ("feedback-reversed", "feedback-open"),
+        (*_RUNNING, "bias-no-dc-path"),
+        _shared_designator,
+    ),
+    Link(("bias-no-dc-path",), _RUNNING, _shared_designator),
+    Link(
+        ("feedback-reversed", "feedback-open", "bias-no-dc-path", "drive-joined", "drive-tied"),
+        ("headroom",),
+        _dead_before,
+    ),
+    Link(("supply-range",), ("headroom", "drive", "dynamics"), _too_low_a_supply),
+    Link(("feedback-low",), ("drive-current",), _network_alone),
+    Link(("drive-current",), ("drive-power",), _shared_designator),
+    Link(("drive-current",), ("headroom-output",), _heavy_load),
+    Link(
+        ("feedback-high",),
+        ("stability-phase-margin", "stability-transimpedance", "bias-current-error"),
+        _shared_designator,
+    ),
+    Link(("headroom-output",), ("headroom",), _saturated_before),
+    Link(("headroom-output",), ("drive-current", "dynamics-slew", "feedback-low"), _only_unclipped),
+    Link(("headroom-output",), ("headroom-input",), _same_side),
+    Link(
+        ("headroom-input",),
+        ("headroom-phase-reversal", "drive-input-above-rail"),
+        _shared_designator,
+    ),
+)
