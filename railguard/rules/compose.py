@@ -122,14 +122,6 @@ def breach_finding(
     )
 
 
-def loop_is_broken(stage: Stage) -> bool:
-    """Tell whether a stage has no working feedback at DC, so that its output has no linear range.
-
-    A stage whose level another stage holds is not broken.
-    """
-    return stage.loop.dc == "positive" or (stage.loop.dc == "open" and not stage.loop.holds)
-
-
 def first_unknown(stage: Stage, parts: Iterable[Part]) -> Unknown | None:
     """Return why the first of some parts of a stage was not worked out, or None."""
     for part in parts:

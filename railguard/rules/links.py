@@ -8,6 +8,7 @@ from railguard.analysis.stage import Design, Stage
 from railguard.circuit.model import GROUND
 from railguard.rules.compose import stage_named
 from railguard.rules.finding import Finding
+from railguard.rules.remedies import reached_unloaded
 from railguard.words import SEVERITIES
 
 Related = Callable[[Finding, Finding, Design], str]
@@ -137,27 +138,26 @@ def _heavy_load(cause: Finding, finding: Finding, design: Design) -> str:
     """Relate an output that lacks range to a load that takes it: unloaded, it would reach."""
     stage = _stage_of(finding, design)
     same = _shared_designator(cause, finding, design)
-    return same if stage is not None and _reached_unloaded(stage, finding) else ""
+    return same if stage is not None and _unloaded(stage, finding) else ""
 
 
-def _reached_unloaded(stage: Stage, finding: Finding) -> bool:
-    """Tell whether the demand lies within the swing at the lightest load the sheet lists."""
-    if finding.demand is None or finding.limit is None or stage.family is None:
+def _heavy_network(cause: Finding, finding: Finding, design: Design) -> str:
+    """Relate an output that lacks range to a feedback network that alone takes it."""
+    alone = cause.margin is not None and cause.margin < 0
+    return _heavy_load(cause, finding, design) if alone else ""
+
+
+def _unloaded(stage: Stage, finding: Finding) -> bool:
+    if finding.demand is None or finding.limit is None:
         return False
-    upper = finding.demand > finding.limit
-    rail = stage.supply.positive if upper else stage.supply.negative
-    points = stage.family.swing_high if upper else stage.family.swing_low
-    drops = [p.typical if p.typical is not None else p.guaranteed for p in points]
-    known = [drop for drop in drops if drop is not None]
-    if rail is None or not known:
-        return False
-    return finding.demand <= rail - min(known) if upper else finding.demand >= rail + min(known)
+    return reached_unloaded(stage, finding.demand, finding.demand > finding.limit)
 
 
 def _only_unclipped(cause: Finding, finding: Finding, design: Design) -> str:
     """Relate a demand that is too much only because the output's range is: clipped, it fits."""
     same, stage = _shared_designator(cause, finding, design), _stage_of(cause, design)
-    if stage is not None and finding.rule == "drive-current" and _reached_unloaded(stage, cause):
+    load = finding.rule in ("drive-current", "feedback-low")
+    if stage is not None and load and _unloaded(stage, cause):
         return ""
     numbers = (cause.demand, cause.limit, finding.demand, finding.limit)
     if not same or any(n is None for n in numbers) or not cause.demand:
@@ -230,6 +230,7 @@ LINKS: tuple[Link, ...] = (
     Link(("supply-range",), ("headroom", "drive", "dynamics"), _too_low_a_supply),
     Link(("feedback-low",), ("drive-current",), _network_alone),
     Link(("drive-current",), ("drive-power",), _shared_designator),
+    Link(("feedback-low",), ("headroom-output",), _heavy_network),
     Link(("drive-current",), ("headroom-output",), _heavy_load),
     Link(
         ("feedback-high",),

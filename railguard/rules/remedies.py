@@ -28,6 +28,16 @@ def element_named(designator: str, design: Design) -> Element | None:
     return next((e for e in design.circuit.elements if e.designator == designator), None)
 
 
+def own_gain(stage: Stage) -> float | None:
+    """Return what one stage alone makes of its signal, V/V; None where it has several inputs."""
+    if len(stage.gain) == 1 and not stage.after:
+        return stage.gain[0][1] or None
+    noise_gain = stage.loop.noise_gain_dc
+    if noise_gain is None:
+        return None
+    return {"non-inverting": noise_gain, "inverting": 1 - noise_gain}.get(stage.topology)
+
+
 def smaller_gain(stage: Stage, factor: float, design: Design) -> str:
     """Say how to lower a stage's gain by a factor below one: `R2 = 82 kΩ instead of 100 kΩ`.
 
@@ -35,15 +45,15 @@ def smaller_gain(stage: Stage, factor: float, design: Design) -> str:
     """
     if not 0 < factor < 1:
         return ""
-    gains = [gain for _, gain in stage.gain]
-    if len(gains) != 1 or not gains[0]:
+    gain = own_gain(stage)
+    if gain is None:
         return f"lower the gain to {si(100 * factor, '%')} of what it is"
-    target = gains[0] * factor
-    words = f"lower the gain from {si(gains[0], '')} to at most {si(target, '')}"
+    target = gain * factor
+    words = f"lower the gain from {si(gain, '')} to at most {si(target, '')}"
     resistor = _single_feedback_resistor(stage, design)
     if resistor is None or resistor.value is None:
         return words
-    wanted = _feedback_for(stage.topology, resistor.value, gains[0], target)
+    wanted = _feedback_for(stage.topology, resistor.value, gain, target)
     if wanted is None or wanted <= 0:
         return words
     new = si(fit(wanted, "down"), "Ω")
@@ -66,22 +76,43 @@ def _feedback_for(topology: str, ohms: float, gain: float, target: float) -> flo
     return None
 
 
-def other_rail(stage: Stage, upper: bool, missing: float) -> str:
-    """Say which rail would make room, where the device may be run on it; "" where none would."""
+def other_rail(stage: Stage, upper: bool, missing: float, both: bool = False) -> str:
+    """Say which rail would make room, where the device may be run on it; "" where none would.
+
+    both  True where the other end lacks room as well: symmetrical rails then move together
+    """
     supply = stage.supply
     rail = supply.positive if upper else supply.negative
     total = supply.total
-    if rail is None or total is None or missing <= 0:
+    highest = stage.family.supply_high if stage.family is not None else None
+    if rail is None or total is None or missing <= 0 or highest is None:
         return ""
+    if not upper and rail == 0:
+        return ""  # a negative rail is no small change to a single supply
     steps = (rail + missing) / RAIL_STEP if upper else (rail - missing) / RAIL_STEP
     wanted = RAIL_STEP * (math.ceil(steps - 1e-9) if upper else math.floor(steps + 1e-9))
     added = abs(wanted - rail)
-    highest = stage.family.supply_high if stage.family is not None else None
-    if highest is None or total + added > highest:
+    together = both and supply.positive is not None and supply.positive == -(supply.negative or 0)
+    if total + added * (2 if together else 1) > highest:
         return ""
+    if together:
+        return f"move the rails out to at least ±{si(abs(wanted), 'V')}"
     if upper:
         return f"raise the positive rail to at least {si(wanted, 'V')}"
     return f"take the negative rail down to at least {si(wanted, 'V')}"
+
+
+def reached_unloaded(stage: Stage, demand: float, upper: bool) -> bool:
+    """Tell whether an output would reach a level at the lightest load the data sheet lists."""
+    if stage.family is None:
+        return False
+    rail = stage.supply.positive if upper else stage.supply.negative
+    points = stage.family.swing_high if upper else stage.family.swing_low
+    drops = [p.typical if p.typical is not None else p.guaranteed for p in points]
+    known = [drop for drop in drops if drop is not None]
+    if rail is None or not known:
+        return False
+    return demand <= rail - min(known) if upper else demand >= rail + min(known)
 
 
 def sentence(*choices: str) -> str:
@@ -125,8 +156,18 @@ def scaled_network(stage: Stage, design: Design, power: int) -> str:
     """
     resistors = network_resistors(stage, design)
     verb = f"{'multiply' if power > 0 else 'divide'} by {10 ** abs(power)}"
+    if stage.topology == "transimpedance":
+        return ""  # there the resistor is the gain
     if not resistors or len(resistors) > MOST_NAMED:
         return f"{verb} all resistors of the feedback network"
     values = [f"{e.designator} = {si((e.value or 0.0) * 10.0**power, 'Ω')}" for e in resistors]
     names = " and ".join([", ".join(values[:-1]), values[-1]] if len(values) > 1 else values)
-    return f"{verb} the feedback network, which keeps the gain: {names}"
+    other = "divide" if power > 0 else "multiply"
+    capacitors = f", and {other} its capacitors by as much" if _has_capacitor(stage, design) else ""
+    return f"{verb} the feedback network, which keeps the gain: {names}{capacitors}"
+
+
+def _has_capacitor(stage: Stage, design: Design) -> bool:
+    """Tell whether capacitors share in the network, so that its time constants must be kept."""
+    net = stage.inputs.minus.net
+    return any(e.kind == "C" and net in e.nets[:2] for e in design.circuit.elements)

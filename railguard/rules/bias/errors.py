@@ -3,12 +3,13 @@
 from collections.abc import Iterator
 
 from railguard.analysis.stage import Design, Stage
-from railguard.rules.compose import loop_is_broken, stage_finding
+from railguard.rules.compose import stage_finding
 from railguard.rules.inputs import bias_current, output_span
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.remedies import fit
 from railguard.rules.severity import TABLE, Broken, evidence
 from railguard.rules.wording import NO_SOURCE, cited, device, listed
+from railguard.rules.working import standstill
 from railguard.units import percent, si
 
 # --- bias-level
@@ -17,7 +18,7 @@ from railguard.units import percent, si
 def judge_level(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome]:
     """Judge whether a stage that only takes AC signals rests near the middle of its range."""
     reach, level = stage.output.available, stage.output.level
-    if stage.use != "linear" or not stage.ac_coupled or loop_is_broken(stage):
+    if stage.use != "linear" or not stage.ac_coupled or standstill(stage):
         return
     if level is None or reach.low is None or reach.high is None or not reach.span:
         return
@@ -74,7 +75,7 @@ LEVEL = Rule(
 def judge_current(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome]:
     """Judge the output error that bias current makes of the source's resistance."""
     gain = stage.loop.noise_gain_dc
-    if stage.use != "linear" or loop_is_broken(stage) or not gain:
+    if stage.use != "linear" or standstill(stage) or not gain:
         return
     current, (span, span_basis) = bias_current(stage, design), output_span(stage)
     ohms = stage.inputs.plus.resistance

@@ -6,15 +6,15 @@ from railguard.analysis.stage import Bound, Design, Stage, Unknown
 from railguard.devices.model import UNLISTED_CURRENT
 from railguard.rules.compose import (
     breach_finding,
-    loop_is_broken,
     missing_figure,
     open_point,
 )
-from railguard.rules.headroom.ranges import NO_LINEAR_RANGE, cap_of, corner_words
+from railguard.rules.headroom.ranges import cap_of, corner_words
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.remedies import fit, sentence
 from railguard.rules.severity import Breach, breach, gravity
 from railguard.rules.wording import NO_SOURCE, device, limit_note, sheet
+from railguard.rules.working import stands_still, standstill
 from railguard.units import si
 
 NO_CURRENT = Unknown(
@@ -30,12 +30,11 @@ def judge_current(stage: Stage, limits: Limits, design: Design) -> Iterator[Outc
     """Judge the peak current an output must source and sink."""
     if stage.use == "unused":
         return
-    bounds = {"source": stage.current.source, "sink": stage.current.sink}
-    broken_loop = stage.use == "linear" and loop_is_broken(stage)
-    gap = NO_LINEAR_RANGE if broken_loop else _gap(stage)
-    yield from open_point("drive-current", stage, ("supply", "current", "device"), gap)
-    if broken_loop:
+    if standstill(stage) is not None:
+        yield from stands_still("drive-current", stage)
         return
+    bounds = {"source": stage.current.source, "sink": stage.current.sink}
+    yield from open_point("drive-current", stage, ("supply", "current", "device"), _gap(stage))
     sides = []
     for verb, bound in bounds.items():
         reserve = limits["reserve-share"] * (bound.guaranteed or bound.typical or 0.0)

@@ -10,6 +10,7 @@ from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.remedies import fit
 from railguard.rules.severity import TABLE, evidence
 from railguard.rules.wording import NO_SOURCE, listed, origin
+from railguard.rules.working import NO_SUPPLY, standstill
 from railguard.units import si
 from railguard.words import Basis, Severity
 
@@ -174,7 +175,7 @@ CAPACITIVE = Rule(
 def judge_above_rail(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome]:
     """Judge the current that flows into an input driven beyond its device's rails."""
     supply, pins = stage.supply, (stage.inputs.plus, stage.inputs.minus)
-    if supply.positive is None or supply.negative is None or supply.total is None:
+    if supply.positive is None or supply.negative is None or standstill(stage) == NO_SUPPLY:
         return
     for pin in pins:
         over = max(

@@ -186,9 +186,14 @@ def judge_high(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome
         unit="Ω",
         basis=worst.basis,
         remedy=sentence(scaled_network(stage, design, -decades(seen / worst.fitting)), *cures),
-        source="Microchip MCP6271 data sheet on leakage; Texas Instruments SLOA013A on input "
-        f"capacitance; {cited(stage, worst.basis[-1])}",
+        source=_high_source(stage, worst),
     )
+
+
+def _high_source(stage: Stage, worst: _Trouble) -> str:
+    reasons = "Texas Instruments SLOA013A; S. Franco, Design with Operational Amplifiers, 3rd ed."
+    sheet = cited(stage, worst.basis[-1])
+    return reasons if sheet == NO_SOURCE else f"{reasons}; {sheet}"
 
 
 def _bias(stage: Stage, limits: Limits, design: Design) -> _Trouble | None:

@@ -8,7 +8,6 @@ from railguard.analysis.stage import Bound, Design, Stage
 from railguard.notices import NotChecked
 from railguard.rules.compose import (
     finding,
-    loop_is_broken,
     missing_figure,
     open_point,
     stage_finding,
@@ -17,6 +16,7 @@ from railguard.rules.headroom.ranges import cap_of
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.severity import ROUNDING, TABLE, breach, evidence
 from railguard.rules.wording import NO_SOURCE, capital, cited, device, origin
+from railguard.rules.working import standstill
 from railguard.settings.model import Load
 from railguard.units import percent, si
 from railguard.words import Basis
@@ -29,7 +29,7 @@ def judge_reversal(stage: Stage, limits: Limits, design: Design) -> Iterator[Out
     family = stage.family
     if stage.use != "linear" or family is None or not family.phase_reversal:
         return
-    if loop_is_broken(stage):
+    if standstill(stage) is not None:
         return
     for bound in (stage.inputs.low, stage.inputs.high):
         limit = bound.typical if bound.typical is not None else bound.guaranteed
@@ -79,7 +79,7 @@ REVERSAL = Rule(
 def judge_differential(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome]:
     """Judge the voltage between the inputs against what the device stands."""
     asked = stage.inputs.differential
-    if asked is None or stage.use == "unused":
+    if asked is None or stage.use == "unused" or standstill(stage):
         return
     figure = None if stage.family is None else stage.family.differential_input
     limit = None if figure is None else figure.best
@@ -130,7 +130,7 @@ def judge_stuck(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcom
     """Judge the output's DC level where no signal is known: whether it rests within its range."""
     output = stage.output
     unknown = output.high.demand is None and output.low.demand is None
-    if stage.use != "linear" or not unknown or output.level is None or loop_is_broken(stage):
+    if stage.use != "linear" or not unknown or output.level is None or standstill(stage):
         return
     for bound in (output.high, output.low):
         resting: Bound = msgspec.structs.replace(
@@ -185,7 +185,7 @@ STUCK = Rule(
 def judge_offset(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome]:
     """Judge the share of the output's range that accumulated offset takes."""
     reach, error = stage.output.available.span, stage.output.offset
-    if stage.use != "linear" or loop_is_broken(stage) or error is None or not reach:
+    if stage.use != "linear" or standstill(stage) or error is None or not reach:
         return
     share = 2 * abs(error) / reach
     if share <= limits["share"]:

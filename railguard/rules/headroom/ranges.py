@@ -5,12 +5,11 @@ from collections.abc import Iterator
 from railguard.analysis.stage import Bound, Design, Stage, Unknown
 from railguard.rules.compose import (
     breach_finding,
-    loop_is_broken,
     missing_figure,
     open_point,
 )
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
-from railguard.rules.remedies import other_rail, sentence, smaller_gain
+from railguard.rules.remedies import other_rail, reached_unloaded, sentence, smaller_gain
 from railguard.rules.severity import Breach, breach, gravity
 from railguard.rules.wording import (
     device_on,
@@ -18,15 +17,12 @@ from railguard.rules.wording import (
     listed,
     sheet,
 )
+from railguard.rules.working import stands_still, standstill
 from railguard.units import si
 from railguard.words import Severity
 
 Side = tuple[Bound, Breach]
 
-NO_LINEAR_RANGE = Unknown(
-    "its feedback does not hold the output, so it has no linear range",
-    "close the loop, or state what the stage is meant to be: use = comparator under [stages]",
-)
 NO_SIGNAL = Unknown(
     "its range is not known",
     "state the signal that reaches it under [signals]",
@@ -59,8 +55,6 @@ def _sides(stage: Stage, bounds: tuple[Bound, Bound], share: float) -> list[Side
 
 def _gap(stage: Stage, bounds: tuple[Bound, Bound], figure: tuple[str, str]) -> Unknown | None:
     """Say what is missing where nothing can be compared."""
-    if loop_is_broken(stage):
-        return NO_LINEAR_RANGE
     if all(b.demand is None for b in bounds):
         return NO_SIGNAL
     limits = (b.typical is not None or b.guaranteed is not None for b in bounds)
@@ -83,11 +77,12 @@ def judge_output(stage: Stage, limits: Limits, design: Design) -> Iterator[Outco
     """Judge the output's demanded range against what rails, device and load let it reach."""
     if stage.use != "linear":
         return
+    if standstill(stage) is not None:
+        yield from stands_still("headroom-output", stage)
+        return
     bounds = (stage.output.high, stage.output.low)
     gap = _gap(stage, bounds, ("output swing", "swing_high and swing_low"))
     yield from open_point("headroom-output", stage, ("supply", "output", "device"), gap)
-    if loop_is_broken(stage):
-        return
     sides = _sides(stage, bounds, limits["reserve-share"])
     if not sides:
         return
@@ -101,7 +96,7 @@ def judge_output(stage: Stage, limits: Limits, design: Design) -> Iterator[Outco
         "V",
         " ".join(messages),
         nets=(stage.output.net,),
-        remedy=_output_remedy(stage, bound, broken, design),
+        remedy=_output_remedy(stage, bound, broken, design, both=len(sides) == 2),
         source=sheet(stage, broken),
     )
 
@@ -146,7 +141,9 @@ def _other_end(bound: Bound, broken: Breach) -> str:
     return f"At the {end} end {asked} is asked for and {reached} reached."
 
 
-def _output_remedy(stage: Stage, bound: Bound, broken: Breach, design: Design) -> str:
+def _output_remedy(
+    stage: Stage, bound: Bound, broken: Breach, design: Design, *, both: bool
+) -> str:
     level = stage.output.level or 0.0
     outside = level > broken.limit if bound.upper else level < broken.limit
     gain = ""
@@ -162,7 +159,11 @@ def _output_remedy(stage: Stage, bound: Bound, broken: Breach, design: Design) -
     inside = rail is not None and (broken.demand < rail if bound.upper else broken.demand > rail)
     if inside and not (family is not None and family.rail_to_rail_output):
         device = "fit a device whose output comes closer to the rail"
-    return sentence(gain, shift, other_rail(stage, bound.upper, -broken.margin), device)
+    load = ""
+    if broken.margin < 0 and reached_unloaded(stage, broken.demand, bound.upper):
+        load = "lighten its load"
+    rail_words = other_rail(stage, bound.upper, -broken.margin, both)
+    return sentence(load, gain, shift, rail_words, device)
 
 
 OUTPUT = Rule(
@@ -189,11 +190,12 @@ def judge_input(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcom
     """Judge the range of the inputs against the device's common-mode range."""
     if stage.use != "linear":
         return
+    if standstill(stage) is not None:
+        yield from stands_still("headroom-input", stage)
+        return
     bounds = (stage.inputs.high, stage.inputs.low)
     gap = _gap(stage, bounds, ("input common-mode range", "input_low and input_high"))
     yield from open_point("headroom-input", stage, ("supply", "input", "device"), gap)
-    if loop_is_broken(stage):
-        return
     sides = _sides(stage, bounds, limits["reserve-share"])
     if not sides:
         return

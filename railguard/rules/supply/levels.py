@@ -14,12 +14,12 @@ from railguard.rules.finding import Finding
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.severity import TABLE, Breach, breach, capped, evidence
 from railguard.rules.supply.pins import (
-    NO_VOLTS,
     no_total,
     stage_of,
     supply_basis,
 )
 from railguard.rules.wording import NO_SOURCE, cited, listed, origin, rails
+from railguard.rules.working import NO_VOLTS
 from railguard.units import percent, si
 from railguard.words import Severity
 

@@ -6,9 +6,6 @@ from railguard.notices import NotChecked
 from railguard.rules.compose import channels_of, first_unknown
 from railguard.words import Basis
 
-NO_VOLTS = 0.1
-"""V between the supply pins below which there is no supply at all."""
-
 
 def how_to_state(net: str) -> str:
     """Say how a user states what a supply net is held at."""

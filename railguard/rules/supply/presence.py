@@ -11,7 +11,6 @@ from railguard.rules.finding import Finding
 from railguard.rules.protocol import Limits, Outcome, Rule
 from railguard.rules.severity import TABLE, evidence
 from railguard.rules.supply.pins import (
-    NO_VOLTS,
     how_to_state,
     no_total,
     packages_on,
@@ -21,6 +20,7 @@ from railguard.rules.supply.pins import (
     unstated,
 )
 from railguard.rules.wording import NO_SOURCE, cited, listed
+from railguard.rules.working import NO_VOLTS
 from railguard.units import si
 
 # --- supply-missing
