@@ -282,6 +282,7 @@ class Loop(msgspec.Struct, frozen=True, kw_only=True):
     loop_gain   |A beta| at the top of the band
     points      (hertz, |1/beta|, |A|, phase of A beta in degrees) for drawing
     holds       designators of other stages that hold the DC level where its own loop does not
+    margins     phase margin with the most and with nothing of what is not listed, degrees
     thresholds  input volts at which a stage with positive feedback switches
     drive       the stated signal at that input, in the terms of `thresholds`
     """
@@ -294,6 +295,7 @@ class Loop(msgspec.Struct, frozen=True, kw_only=True):
     noise_gain_crossover: float | None = None
     crossover: float | None = None
     phase_margin: float | None = None
+    margins: Range = Range()
     band: float | None = None
     loop_gain: float | None = None
     points: tuple[tuple[float, float, float, float], ...] = ()

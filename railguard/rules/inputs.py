@@ -42,7 +42,12 @@ def bias_current(stage: Stage, design: Design) -> BiasCurrent | None:
 
 
 def output_span(stage: Stage) -> tuple[float | None, Basis]:
-    """Return the span an error at the output is measured against: the demand, else the supply."""
+    """Return the span an error at the output is measured against: the demand, else the supply.
+
+    Where the signal comes through a capacitor a level that is off costs range only.
+    """
+    if stage.ac_coupled and stage.output.available.span:
+        return stage.output.available.span, stage.output.high.typical_basis
     span = stage.output.demand.span
     if span:
         return span, stage.output.high.demand_basis

@@ -12,6 +12,14 @@ from railguard.rules.wording import NO_SOURCE, cited, device, listed, origin, sh
 from railguard.units import si
 from railguard.words import Basis
 
+_WANTED = Limit(
+    name="wanted",
+    default=45.0,
+    unit="°",
+    meaning="phase margin wanted",
+    source="Texas Instruments TIDU535 designs for more than 45°",
+)
+
 # --- stability-noise-gain
 
 
@@ -103,16 +111,16 @@ def judge_phase_margin(stage: Stage, limits: Limits, design: Design) -> Iterator
     loop = stage.loop
     if stage.use != "linear" or loop.dc != "negative":
         return
+    margin, wanted = _margin(stage, limits["wanted"]), limits["wanted"]
     gap = None
-    if loop.phase_margin is None and stage.family is not None:
+    if margin is None and stage.family is not None:
         gap = Unknown(
             f"what {device(stage)} does to the phase here is not listed: gain-bandwidth product, "
             "output resistance or input capacitance",
             "add output_resistance and input_capacitance to a [[devices]] table",
         )
     yield from open_point("stability-phase-margin", stage, ("loop", "device"), gap)
-    margin = loop.phase_margin
-    if margin is None or margin >= limits["wanted"]:
+    if margin is None or margin >= wanted:
         return
     bases = _bases(stage)
     row: Broken = "reserve"
@@ -128,17 +136,32 @@ def judge_phase_margin(stage: Stage, limits: Limits, design: Design) -> Iterator
         stage,
         TABLE[row][evidence(*bases)],
         f"{stage.schematic}'s loop closes at {si(loop.crossover, 'Hz')} with a phase margin of "
-        f"{si(margin, '°')}{with_load}, so it {does}; {si(limits['wanted'], '°')} is wanted.",
+        f"{si(margin, '°')}{with_load}, so it {does}; {si(wanted, '°')} is wanted.",
         nets=(stage.output.net,),
-        demand=limits["wanted"],
+        demand=wanted,
         limit=margin,
-        margin=margin - limits["wanted"],
+        margin=margin - wanted,
         unit="°",
         basis=("netlist", *bases),
         remedy=_phase_remedy(stage),
         source="Texas Instruments TIDU535 designs for more than 45°; "
         f"{cited(stage, bases[0] if bases else 'practice')}",
     )
+
+
+def _margin(stage: Stage, wanted: float) -> float | None:
+    """Return the phase margin, or what bounds it where not all is listed; None: not decided.
+
+    Where even the most of what is not listed leaves enough, and where nothing of it leaves too
+    little, the question is settled.
+    """
+    loop = stage.loop
+    if loop.phase_margin is not None:
+        return loop.phase_margin
+    least, most = loop.margins.low, loop.margins.high
+    if least is not None and least >= wanted:
+        return least
+    return most if most is not None and most < wanted else None
 
 
 def _bases(stage: Stage) -> tuple[Basis, ...]:
@@ -199,13 +222,7 @@ PHASE_MARGIN = Rule(
     silent="Comparators, oscillators, unused channels. Where a figure that matters is not listed "
     "the margin is not known and listed as not checked.",
     limits=(
-        Limit(
-            name="wanted",
-            default=45.0,
-            unit="°",
-            meaning="phase margin wanted",
-            source="Texas Instruments TIDU535",
-        ),
+        _WANTED,
         Limit(
             name="least",
             default=20.0,
@@ -224,7 +241,11 @@ PHASE_MARGIN = Rule(
 def judge_load(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome]:
     """Judge the capacitance straight at an output where its phase margin is not known."""
     load, family = stage.current.load_capacitance, stage.family
-    if stage.use in ("unused", "comparator") or not load or stage.loop.phase_margin is not None:
+    if (
+        stage.use in ("unused", "comparator")
+        or not load
+        or _margin(stage, limits["wanted"]) is not None
+    ):
         return
     yield from open_point("stability-load-capacitance", stage, ("device",))
     figure = None if family is None else family.load_capacitance
@@ -267,6 +288,7 @@ LOAD_CAPACITANCE = Rule(
     silent="Where the phase margin is known: stability-phase-margin judges that. Capacitance "
     "behind a resistor.",
     limits=(
+        _WANTED,
         Limit(
             name="usual",
             default=100e-12,
@@ -288,7 +310,7 @@ def judge_transimpedance(stage: Stage, limits: Limits, design: Design) -> Iterat
         return
     if stage.feedback.capacitance or not stage.feedback.resistance:
         return
-    if stage.loop.phase_margin is not None:
+    if _margin(stage, limits["wanted"]) is not None:
         return
     if stage.feedback.resistance < limits["resistance"]:
         return
@@ -322,6 +344,7 @@ TRANSIMPEDANCE = Rule(
     "ed., ch. 8",
     silent="Where the phase margin is known: stability-phase-margin judges that.",
     limits=(
+        _WANTED,
         Limit(
             name="resistance",
             default=10e3,

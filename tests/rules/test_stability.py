@@ -2,7 +2,7 @@
 
 import pytest
 
-from railguard.analysis.stage import Current, Feedback, Loop
+from railguard.analysis.stage import Current, Feedback, Loop, Range
 from railguard.rules.stability import LOAD_CAPACITANCE, NOISE_GAIN, PHASE_MARGIN, TRANSIMPEDANCE
 from tests.rules.stages import (
     FAMILY,
@@ -85,6 +85,17 @@ def test_the_remedy_fits_the_cause():
     assert "Fit 47 Ω between the output of U1" in loaded.remedy
     (plain,) = findings(PHASE_MARGIN, with_margin(10.0))
     assert plain.remedy == "Fit 7.5 pF across R2."
+
+
+@pytest.mark.parametrize(
+    ("low", "high", "severities", "points"),
+    [(50.0, 80.0, [], 0), (10.0, 40.0, ["minor"], 0), (30.0, 60.0, [], 1)],
+)
+def test_bounds_may_settle_what_is_not_listed(low, high, severities, points):
+    """Enough at the worst is sound, too little at the best is not, between is not checked."""
+    one = stage(loop=Loop(dc="negative", crossover=1e6, margins=Range(low, high)))
+    assert [f.severity for f in findings(PHASE_MARGIN, one)] == severities
+    assert len(open_points(PHASE_MARGIN, one)) == points
 
 
 def test_an_unknown_margin_is_listed():

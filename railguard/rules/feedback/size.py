@@ -225,7 +225,8 @@ def _bias(stage: Stage, limits: Limits, design: Design) -> _Trouble | None:
 def _pole(stage: Stage, seen: float, limits: Limits) -> _Trouble | None:
     """The pole of the network's resistance with the input capacitance, against the crossover."""
     family, loop = stage.family, stage.loop
-    if family is None or not loop.crossover or (loop.phase_margin or 0.0) >= limits["phase-margin"]:
+    sure = loop.phase_margin if loop.phase_margin is not None else loop.margins.low
+    if family is None or not loop.crossover or (sure or 0.0) >= limits["phase-margin"]:
         return None
     listed_farads = family.input_capacitance.best
     farads = listed_farads or limits["input-capacitance"]

@@ -95,6 +95,14 @@ def test_the_remedy_is_a_resistance_that_would_do():
     assert "down to 8.2 kΩ" in found.remedy
 
 
+def test_an_ac_coupled_stage_is_measured_against_its_range():
+    """A level that is off costs an AC signal range only: 121 mV of 21 V are nothing."""
+    one = fed_through(11e3)
+    assert len(findings(CURRENT_ERROR, one)) == 1
+    output = changed(one.output, available=Range(-10.5, 10.5))
+    assert findings(CURRENT_ERROR, changed(one, ac_coupled=True, output=output)) == []
+
+
 def test_an_equal_resistance_at_the_other_input_undoes_it():
     """Matched resistances leave only the offset current."""
     assert outcomes(CURRENT_ERROR, fed_through(100e3, minus=100e3)) == []
