@@ -329,8 +329,9 @@ def open_loop_gain(amplifier: Amplifier) -> float:
     if amplifier.gain is not None:
         return amplifier.gain
     device = amplifier.match.device
-    listed = device.open_loop_gain.best if device is not None else None
-    return listed or OPEN_LOOP_GAIN
+    if device is None:
+        return OPEN_LOOP_GAIN
+    return device.open_loop_gain.typical or device.open_loop_gain.guaranteed or OPEN_LOOP_GAIN
 
 
 def gain_bandwidth(amplifier: Amplifier) -> float | None:

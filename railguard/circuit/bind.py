@@ -28,7 +28,7 @@ if TYPE_CHECKING:
     from railguard.circuit.flatten import Environment
 
 
-class Unbound(Exception):
+class UnboundError(Exception):
     """A card that could not be given its roles; `element` keeps its nets in the circuit."""
 
     def __init__(self, problem: Problem, element: Element | None) -> None:
@@ -112,7 +112,7 @@ class Binder:
     def bind(self, items: Items, line: Line) -> list[Element] | Instance:
         """Give a card its roles.
 
-        Raises  Unbound
+        Raises  UnboundError
         """
         head = items[0]
         if isinstance(head, Call | Group | Assignment):
@@ -134,7 +134,7 @@ class Binder:
             )
         try:
             return handler((name, *rest), line, letter)
-        except Unbound:
+        except UnboundError:
             if board is not None and board not in ("opaque",):
                 return self._board(name, rest, line, board)
             raise
@@ -169,7 +169,7 @@ class Binder:
             self._problems.append(
                 Problem(
                     rule=rule,
-                    message=f"The value {text} of {self._prefix}{name} cannot be worked out: {error}.",
+                    message=f"The value {text} of {self._prefix}{name} has no number: {error}.",
                     remedy="Give it a value.",
                     location=line.location,
                     designators=(self._prefix + name,),
@@ -177,7 +177,7 @@ class Binder:
             )
             return None, False
 
-    def _unbound(self, items: Items, line: Line, rule: str, why: str) -> Unbound:
+    def _unbound(self, items: Items, line: Line, rule: str, why: str) -> UnboundError:
         name = text_of(items[0])
         words = [i for i in items[1:] if isinstance(i, str)]
         nets = tuple(w for w in words if read_number(w) is None or w == "0")
@@ -189,7 +189,7 @@ class Binder:
             if nets
             else None
         )  # fmt: skip
-        return Unbound(
+        return UnboundError(
             Problem(
                 rule=rule,
                 message=f"The card {self._prefix}{name} cannot be read: {why}.",
@@ -290,8 +290,7 @@ class Binder:
         """Return value, left-over text, model name and whether the component is fitted."""
         keyed = keys.get(letter.lower()) or keys.get("value")
         if not words and keyed:
-            number = read_number(keyed, letter)
-            if number is None:
+            if read_number(keyed, letter) is None:
                 return self._evaluated(keyed, name, line)[0], "", "", True
             words = [keyed]
         first = words[0]
@@ -549,8 +548,8 @@ class Binder:
                 for i, pair in enumerate(ends)
             ]  # fmt: skip
         if kind == "battery":
-            number = read_number(value, "V")
-            source = Source(number.value if number else None, stated=number is not None)
+            volts = read_number(value, "V")
+            source = Source(volts.value if volts else None, stated=volts is not None)
             return [
                 Element(
                     kind="battery", designator=name, nets=nets[:2], source=source, model=value,

@@ -3,6 +3,7 @@
 What depends on a running simulation (a voltage, a current, time) has no value here.
 """
 
+import itertools
 import math
 import re
 from collections.abc import Callable, Mapping
@@ -19,8 +20,17 @@ Lookup = Callable[[str], float]
 
 _NAME = re.compile(r"^[A-Za-z_][A-Za-z0-9_]*$")
 _RUN_TIME = frozenset({"time", "freq", "hertz", "x", "s"})
-_CONSTANTS = {"pi": math.pi, "e": math.e, "temper": 27.0, "temp": 27.0, "vt": 0.02585,
-              "boltz": 1.380649e-23, "echarge": 1.602176634e-19, "true": 1.0, "false": 0.0}  # fmt: skip
+_CONSTANTS = {
+    "pi": math.pi,
+    "e": math.e,
+    "temper": 27.0,
+    "temp": 27.0,
+    "vt": 0.02585,
+    "boltz": 1.380649e-23,
+    "echarge": 1.602176634e-19,
+    "true": 1.0,
+    "false": 0.0,
+}
 LONGEST = 10_000
 """Characters of one expression."""
 DEEPEST = 64
@@ -125,7 +135,7 @@ def _depth(text: str) -> int:
 
 
 def _power(a: float, b: float) -> float:
-    return a**b if a >= 0 or b == int(b) else abs(a) ** b
+    return float(a**b if a >= 0 or b == int(b) else abs(a) ** b)
 
 
 def _nominal(*values: float) -> float:
@@ -136,7 +146,7 @@ def _table(x: float, *points: float) -> float:
     pairs = sorted(zip(points[::2], points[1::2], strict=False))
     if x <= pairs[0][0]:
         return pairs[0][1]
-    for (x0, y0), (x1, y1) in zip(pairs, pairs[1:], strict=False):
+    for (x0, y0), (x1, y1) in itertools.pairwise(pairs):
         if x <= x1:
             return y0 + (y1 - y0) * (x - x0) / (x1 - x0)
     return pairs[-1][1]

@@ -7,7 +7,7 @@ that this room needs no catalogue.
 import re
 from collections.abc import Callable, Mapping
 
-from railguard.circuit.bind import Binder, Instance, Unbound
+from railguard.circuit.bind import Binder, Instance, UnboundError
 from railguard.circuit.expressions import ExpressionError, Function, evaluate
 from railguard.circuit.model import GROUND, Circuit, Directive, Element, Model, Subcircuit
 from railguard.circuit.scopes import Scope, sort_deck, text_of, unquoted
@@ -200,7 +200,7 @@ class _Expander:
             except CardError as error:
                 self._card(line, error.reason)
                 continue
-            except Unbound as error:
+            except UnboundError as error:
                 self.problems.append(error.problem)
                 if error.element is not None:
                     self._add(error.element, nets, prefix)

@@ -1,5 +1,6 @@
 """The words of a V or I card to a Source."""
 
+import itertools
 from collections.abc import Callable
 
 from railguard.circuit.sources import (
@@ -91,7 +92,11 @@ def _is_number(item: object, number: Callable[[str], float | None]) -> bool:
     return isinstance(item, str) and number(item) is not None
 
 
-def _next(queue: list[object], number: Callable[[str], float | None], default: float) -> float:
+def _next(
+    queue: "list[str | Assignment | Call | Group]",
+    number: Callable[[str], float | None],
+    default: float,
+) -> float:
     if queue and _is_number(queue[0], number):
         return _need(number(str(queue.pop(0))), "")
     return default
@@ -112,9 +117,8 @@ def _numbers(items: Items, number: Callable[[str], float | None], name: str) -> 
 
 def _function(name: str, v: list[float], call: Call | None) -> tuple[Wave | None, str]:
     tail = {i.key: i.value for i in call.items if isinstance(i, Assignment)} if call else {}
-    if name == "pwl" and ("file" in tail or "r" in tail):
-        if "file" in tail:
-            raise SourceError("its points stand in a file, which is not read")
+    if name == "pwl" and "file" in tail:
+        raise SourceError("its points stand in a file, which is not read")
     try:
         match name:
             case "sin" | "sine":
@@ -139,6 +143,6 @@ def _piecewise(v: list[float], repeats: bool) -> Piecewise:
     if len(v) % 2:
         raise SourceError("PWL has a time without a value")
     points = tuple(zip(v[::2], v[1::2], strict=True))
-    if not points or any(b[0] < a[0] for a, b in zip(points, points[1:], strict=False)):
+    if not points or any(b[0] < a[0] for a, b in itertools.pairwise(points)):
         raise SourceError("the times of PWL do not rise")
     return Piecewise(points, 0.0 if repeats else None)

@@ -294,7 +294,7 @@ class _Reader:
             self._problems.append(
                 Problem(
                     rule="netlist-bound",
-                    message=f"Includes go deeper than {self._bounds.include_depth} files at {target}.",
+                    message=f"At {target} includes go deeper than {self._bounds.include_depth}.",
                     remedy="Raise the bound if this is meant.",
                     location=place,
                 )
@@ -347,12 +347,12 @@ class _Reader:
             self._lost(place, f"{target} has no section {section}.{told}", target)
 
     def _lost(self, place: Location, message: str, target: str) -> None:
+        name = PurePosixPath(target.replace("\\", "/")).name
         self._problems.append(
             Problem(
                 rule="netlist-include",
                 message=f"The included file {message}",
-                remedy=f"Put {PurePosixPath(target.replace(chr(92), '/')).name} beside the netlist, "
-                "or take the include out.",
+                remedy=f"Put {name} beside the netlist, or take the include out.",
                 location=place,
             )
         )
