@@ -20,7 +20,7 @@ from railguard.analysis.network import (
 )
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.solve import return_ratios
-from railguard.analysis.stage import Loop
+from railguard.analysis.stage import Loop, Range
 from railguard.circuit.model import Control, Element
 
 OPEN_BETA = 1e-6
@@ -47,6 +47,19 @@ class LoopSweep(msgspec.Struct, frozen=True):
     hertz: Real
     a_beta: Complex
     dc: Real
+
+
+class Margin(msgspec.Struct, frozen=True):
+    """A phase margin, degrees.
+
+    value  None where it hangs on a figure nobody lists
+    least  with the largest values common practice knows for what is not listed
+    most   with nothing of it
+    """
+
+    value: float | None = None
+    least: float | None = None
+    most: float | None = None
 
 
 def small_signal(elements: Iterable[Element]) -> tuple[tuple[Element, ...], bool]:
@@ -166,12 +179,11 @@ def crossover_margins(network: Network, crossovers: Mapping[str, float]) -> dict
 
 
 def loop_of(
-    amplifier: Amplifier, column: int, swept: LoopSweep, top: float | None, margin: float | None
+    amplifier: Amplifier, column: int, swept: LoopSweep, top: float | None, margin: Margin
 ) -> Loop:
     """Return one amplifier's loop.
 
     top     top of the band of the signals that reach it, hertz; None: nothing stated
-    margin  phase margin, degrees; None where something that matters is not listed
     """
     beta_dc = float(swept.dc[column]) / open_loop_gain(amplifier)
     if abs(beta_dc) < OPEN_BETA:
@@ -202,7 +214,8 @@ def loop_of(
         noise_gain_dc=1.0 / beta_dc,
         noise_gain_crossover=at_cross,
         crossover=f_cross,
-        phase_margin=margin,
+        phase_margin=margin.value,
+        margins=Range(margin.least, margin.most),
         band=top,
         loop_gain=_at(swept.hertz, magnitude, max(top, LOWEST_HERTZ)) if top and known else None,
         points=tuple(

@@ -13,6 +13,7 @@ from railguard.analysis.loops import (
     OPEN_BETA,
     SURE_DEGREES,
     LoopSweep,
+    Margin,
     bounding_parasitics,
     crossing,
     crossover_margins,
@@ -44,7 +45,7 @@ class Solution(msgspec.Struct, frozen=True, kw_only=True):
     """Everything the stages are read from.
 
     forced   amplifiers without a working loop: their output stands at either limit
-    margins  phase margin by amplifier, where what matters is listed
+    margins  phase margin by amplifier
     bent     amplifiers whose loop runs through a transistor
     """
 
@@ -56,7 +57,7 @@ class Solution(msgspec.Struct, frozen=True, kw_only=True):
     dc_map: DcMap
     swept: LoopSweep
     forced: frozenset[str]
-    margins: Mapping[str, float]
+    margins: Mapping[str, Margin]
     spread: Spread
     mid: Factor
     tops: tuple[float, ...]
@@ -180,8 +181,8 @@ def _margins(
     elements: tuple[Element, ...],
     amplifiers: tuple[Amplifier, ...],
     forced: frozenset[str],
-) -> dict[str, float]:
-    """Return phase margins that do not hang on a figure nobody lists."""
+) -> dict[str, Margin]:
+    """Return phase margins: with what is listed, and the least with the largest unlisted terms."""
     crossovers, listed = {}, {}
     for k, amplifier in enumerate(amplifiers):
         if amplifier.designator in forced or amplifier.match.device is None:
@@ -195,9 +196,12 @@ def _margins(
     bounding = Network(elements, amplifiers, forced, bounding_parasitics(amplifiers))
     bounds = crossover_margins(bounding, crossovers)
     return {
-        name: margin
+        name: Margin(
+            margin if name in bounds and abs(bounds[name] - margin) <= SURE_DEGREES else None,
+            min(margin, bounds[name]) if name in bounds else None,
+            margin,
+        )
         for name, margin in listed.items()
-        if name in bounds and abs(bounds[name] - margin) <= SURE_DEGREES
     }
 
 

@@ -278,6 +278,7 @@ class Loop(msgspec.Struct, frozen=True, kw_only=True):
     beta_dc     feedback factor at DC, output to (inverting minus non-inverting input)
     noise_gain  |1/beta| at the top of the stated band, or the largest in band
     crossover   hertz where |A beta| is one: the bandwidth
+    phase_margin  degrees; None where it hangs on a figure nobody lists
     band        top of the stated band, hertz
     loop_gain   |A beta| at the top of the band
     points      (hertz, |1/beta|, |A|, phase of A beta in degrees) for drawing

@@ -8,7 +8,7 @@ import numpy as np
 from railguard.analysis.allowed import allowed_inputs
 from railguard.analysis.filters import filter_of
 from railguard.analysis.inputs import inputs_of
-from railguard.analysis.loops import loop_of
+from railguard.analysis.loops import Margin, loop_of
 from railguard.analysis.outputs import output_side
 from railguard.analysis.positive import with_thresholds
 from railguard.analysis.reach import band_of, gains_of, high_pass_of, is_ac_coupled, top_of
@@ -29,10 +29,11 @@ from railguard.analysis.surroundings import feedback_of, output_load
 from railguard.analysis.thermal import dissipation, junction, package_heat
 from railguard.analysis.topology import topology_of
 from railguard.analysis.unseen import Spoiled
+from railguard.analysis.uses import worked_out_use
 from railguard.analysis.view import View
 from railguard.circuit.model import GROUND
 from railguard.settings.model import Settings
-from railguard.words import Basis, Use
+from railguard.words import Basis
 
 WEAK = 1e-6
 """A share of an output below this at an input is no connection."""
@@ -89,8 +90,9 @@ def _stage(
     unknown: dict[Part, Unknown] = {}
     supply = _supply(view, feeds, unknown)
     top = top_of(view)
-    loop = loop_of(amplifier, view.k, solution.swept, top, solution.margins.get(name))
-    use, use_stated = _use(amplifier, settings)
+    loop = loop_of(amplifier, view.k, solution.swept, top, solution.margins.get(name, Margin()))
+    stated = stated_use(amplifier, settings)
+    use = stated or worked_out_use(amplifier, solution.ways, loop, _other_inputs(view), rails)
     working = name not in solution.forced and name in solution.answers.network.outputs
     loop = with_thresholds(view, loop, after)
     feedback = feedback_of(amplifier, solution.passive, solution.ways, solution.answers)
@@ -114,7 +116,7 @@ def _stage(
         package=amplifier.package,
         topology=topology,
         use=use,
-        use_stated=use_stated,
+        use_stated=stated is not None,
         supply=supply,
         output=output,
         current=current,
@@ -196,9 +198,13 @@ def _supply(view: View, feeds: Mapping[str, Feed], unknown: dict[Part, Unknown])
     )
 
 
-def _use(amplifier: Amplifier, settings: Settings) -> tuple[Use, bool]:
-    stated = stated_use(amplifier, settings)
-    return (stated, True) if stated else ("linear", False)
+def _other_inputs(view: View) -> frozenset[str]:
+    return frozenset(
+        net
+        for other in view.solution.amplifiers
+        if other is not view.amplifier
+        for net in (other.plus, other.minus)
+    )
 
 
 def _device_unknown(view: View, unknown: dict[Part, Unknown]) -> None:
@@ -219,7 +225,7 @@ def unsolved(amplifiers: tuple[Amplifier, ...], why: str, settings: Settings) ->
     parts: tuple[Part, ...] = ("supply", "output", "current", "input", "bias", "loop")
     stages = []
     for amplifier in amplifiers:
-        use, stated = _use(amplifier, settings)
+        stated = stated_use(amplifier, settings)
         stages.append(
             Stage(
                 designator=amplifier.designator,
@@ -228,8 +234,8 @@ def unsolved(amplifiers: tuple[Amplifier, ...], why: str, settings: Settings) ->
                 family=amplifier.match.device,
                 package=amplifier.package,
                 topology="other",
-                use=use,
-                use_stated=stated,
+                use=stated or "linear",
+                use_stated=stated is not None,
                 output=Output(net=amplifier.output),
                 inputs=Inputs(plus=Pin(net=amplifier.plus), minus=Pin(net=amplifier.minus)),
                 generic=amplifier.match.sort == "generic",
