@@ -3,6 +3,7 @@
 import msgspec
 
 from railguard.analysis.stage import Design, Stage
+from railguard.rules.protocol import Limit
 from railguard.units import si
 from railguard.words import Basis
 
@@ -10,6 +11,15 @@ DOUBLING_KELVIN = 10.0
 """K; the bias current of a FET input doubles every ten. S. Franco, 3rd ed., ch. 5; ST TL072."""
 ROOM = 25.0
 """Degrees Celsius at which data sheets list their figures."""
+
+
+LEAST_UNEQUAL = Limit(
+    name="least",
+    default=10e3,
+    unit="Ω",
+    meaning="difference of the resistances at both inputs below which only a far error counts",
+    source="Analog Devices AD8223 data sheet: more than 10 kΩ between the inputs makes offset",
+)
 
 
 class BiasCurrent(msgspec.Struct, frozen=True):

@@ -63,7 +63,6 @@ def elements_of(stage: Stage, design: Design) -> frozenset[str]:
         *stage.feedback.elements,
         *stage.inputs.plus.path,
         *stage.inputs.minus.path,
-        stage.current.into,
     }
     for bound in (
         stage.output.high,
@@ -74,7 +73,7 @@ def elements_of(stage: Stage, design: Design) -> frozenset[str]:
         stage.current.sink,
     ):
         names.update(bound.culprits)
-    around = {stage.inputs.plus.net, stage.inputs.minus.net, stage.output.net} - {GROUND}
+    around = {stage.inputs.plus.net, stage.inputs.minus.net} - {GROUND}
     names.update(e.designator for e in design.circuit.elements if around & set(e.nets))
     return frozenset(names - {""})
 
@@ -95,6 +94,8 @@ def _rests_on_value(cause: Finding, finding: Finding, design: Design) -> str:
         stage = stage_named(designator, design)
         if stage is not None:
             names |= elements_of(stage, design)
+            if finding.family == "drive":
+                names.add(stage.current.into)
     return next((d for d in cause.designators if d in names), "")
 
 
@@ -166,6 +167,12 @@ def _only_unclipped(cause: Finding, finding: Finding, design: Design) -> str:
     return same if limit < demand and asked * limit / demand <= allowed else ""
 
 
+def _only_at_a_corner(cause: Finding, finding: Finding, design: Design) -> str:
+    """Relate a range that is too wide only with offset and bias current to what amplifies them."""
+    nominal = finding.rule == "headroom-output" and finding.corner == "nominal"
+    return "" if nominal else _shared_designator(cause, finding, design)
+
+
 def _network_alone(cause: Finding, finding: Finding, design: Design) -> str:
     alone = cause.margin is not None and cause.margin < 0
     return _shared_designator(cause, finding, design) if alone else ""
@@ -211,6 +218,9 @@ LINKS: tuple[Link, ...] = (
         (*_RUNNING, "supply-range", "supply-drop", "supply-name-disagrees"),
         _shared_supply,
     ),
+    # A net that nothing feeds is most often a misspelt one, and its capacitors are on the right one.
+    Link(("supply-missing",), ("decoupling-absent", "decoupling-few"), _shared_supply),
+    Link(("supply-reversed",), ("supply-package-split",), _shared_designator),
     Link(
         ("drive-joined", "drive-tied"),
         ("headroom", "drive-current", "drive-power"),
@@ -237,6 +247,7 @@ LINKS: tuple[Link, ...] = (
         ("stability-phase-margin", "stability-transimpedance", "bias-current-error"),
         _shared_designator,
     ),
+    Link(("feedback-high",), ("headroom-offset", "headroom-output"), _only_at_a_corner),
     Link(("headroom-output",), ("headroom",), _saturated_before),
     Link(("headroom-output",), ("drive-current", "dynamics-slew", "feedback-low"), _only_unclipped),
     Link(("headroom-output",), ("headroom-input",), _same_side),

@@ -49,6 +49,9 @@ def test_findings_without_a_common_cause_stay_apart():
         ("supply-missing", "headroom-output"),
         ("supply-missing", "drive-current"),
         ("supply-missing", "supply-range"),
+        ("supply-missing", "decoupling-absent"),
+        ("supply-reversed", "supply-package-split"),
+        ("feedback-high", "headroom-offset"),
         ("supply-reversed", "headroom-input"),
         ("supply-reversed", "stability-phase-margin"),
         ("feedback-reversed", "headroom-output"),
@@ -73,7 +76,6 @@ def test_what_follows_on_the_same_stage_hangs_under_its_cause(cause, follows):
 @pytest.mark.parametrize(
     ("cause", "other"),
     [
-        ("supply-missing", "decoupling-absent"),
         ("supply-missing", "feedback-open"),
         ("supply-missing", "bias-no-dc-path"),
         ("feedback-reversed", "supply-range"),
@@ -229,6 +231,22 @@ def test_a_cause_is_never_milder_than_what_follows():
         ONE,
     )
     assert [f.severity for f in found] == ["critical"]
+
+
+def test_a_load_is_no_reason_for_a_range():
+    """A misread resistor at the output explains what the output must drive, and nothing else."""
+    loaded = design(stage(), elements=(resistor("RL", 1e4, "out", "0"),))
+    trap = about("netlist-value-suffix", "RL", severity="minor")
+    assert rules(merge([about("headroom-output", "XU1"), trap], loaded))[1] == []
+    assert rules(merge([about("drive-current", "XU1"), trap], loaded))[1] == ["drive-current"]
+
+
+def test_a_high_network_explains_a_range_only_at_the_corner():
+    """Bias current moves the corner, not the nominal range."""
+    high, clip = about("feedback-high", "XU1"), about("headroom-output", "XU1")
+    assert rules(merge([high, clip], ONE))[1] == []
+    corner = changed(clip, corner="worst-case")
+    assert rules(merge([high, corner], ONE))[1] == ["headroom-output"]
 
 
 def test_a_low_supply_explains_headroom_and_a_high_one_does_not():

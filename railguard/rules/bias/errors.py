@@ -4,7 +4,7 @@ from collections.abc import Iterator
 
 from railguard.analysis.stage import Design, Stage
 from railguard.rules.compose import stage_finding
-from railguard.rules.inputs import bias_current, output_span
+from railguard.rules.inputs import LEAST_UNEQUAL, bias_current, output_span
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.remedies import fit
 from railguard.rules.severity import TABLE, Broken, evidence
@@ -85,9 +85,10 @@ def judge_current(stage: Stage, limits: Limits, design: Design) -> Iterator[Outc
     error = current.amps * unequal * gain
     offset = (stage.family.offset_voltage.best if stage.family else None) or 0.0
     allowed = max(limits["share"] * span, offset * gain)
-    if error <= allowed:
+    far = error > limits["far-share"] * span
+    if error <= allowed or (unequal <= limits["least"] and not far):
         return
-    row: Broken = "typical" if error > limits["far-share"] * span else "reserve"
+    row: Broken = "typical" if far else "reserve"
     bases = (span_basis, current.basis)
     of = "what it is asked for" if span_basis != "assumed" else "its supply"
     through = f" ({listed(stage.inputs.plus.path[:3])})" if stage.inputs.plus.path else ""
@@ -123,6 +124,7 @@ CURRENT_ERROR = Rule(
     silent="Devices whose bias current is not listed; errors below the device's own offset. "
     "Resistance at the inverting input is feedback-high's.",
     limits=(
+        LEAST_UNEQUAL,
         Limit(
             name="share",
             default=0.01,

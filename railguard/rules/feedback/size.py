@@ -11,7 +11,7 @@ import msgspec
 
 from railguard.analysis.stage import Bound, Design, Stage, Unknown
 from railguard.rules.compose import first_unknown, open_point, stage_finding
-from railguard.rules.inputs import bias_current, output_span
+from railguard.rules.inputs import LEAST_UNEQUAL, bias_current, output_span
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.remedies import decades, fit, scaled_network, sentence
 from railguard.rules.severity import TABLE, Breach, Broken, breach, capped, evidence
@@ -208,9 +208,10 @@ def _bias(stage: Stage, limits: Limits, design: Design) -> _Trouble | None:
     error = current.amps * unequal * gain
     offset = (stage.family.offset_voltage.best if stage.family else None) or 0.0
     allowed = max(limits["error-share"] * span, offset * gain)
-    if error <= allowed:
+    far = error > limits["far-error-share"] * span
+    if error <= allowed or (unequal <= limits["least"] and not far):
         return None
-    row: Broken = "typical" if error > limits["far-error-share"] * span else "reserve"
+    row: Broken = "typical" if far else "reserve"
     bases: tuple[Basis, ...] = tuple(dict.fromkeys((span_basis, current.basis)))
     return _Trouble(
         severity=TABLE[row][evidence(*bases)],
@@ -327,6 +328,7 @@ HIGH = Rule(
             meaning="share beyond which it counts like a typical limit",
             source=NO_SOURCE,
         ),
+        LEAST_UNEQUAL,
         Limit(
             name="pole-ratio",
             default=1.0,

@@ -151,6 +151,8 @@ def _output_remedy(
         gain = smaller_gain(stage, (broken.limit - level) / (broken.demand - level), design)
     shift = ""
     if outside:
+        if len(stage.gain) == 1 and broken.demand:
+            gain = smaller_gain(stage, broken.limit / broken.demand, design)
         side = "below" if bound.upper else "above"
         shift = f"move the output's level ({si(level, 'V')}) {side} {si(broken.limit, 'V')}"
     device = ""

@@ -1,5 +1,6 @@
 """What the netlist says otherwise than its author most likely meant."""
 
+import math
 from collections.abc import Callable, Iterator
 
 import msgspec
@@ -208,10 +209,34 @@ def finding_of(problem: Problem, severity: Severity, source: str = NO_SOURCE) ->
         unit=problem.unit,
         basis=("netlist",),
         message=message,
-        remedy=problem.remedy,
+        remedy=problem.remedy or _spelling(problem),
         source=source,
         location=problem.location,
     )
+
+
+_SUFFIXES = (
+    (12, "T"),
+    (9, "G"),
+    (6, "MEG"),
+    (3, "k"),
+    (0, ""),
+    (-3, "m"),
+    (-6, "u"),
+    (-9, "n"),
+    (-12, "p"),
+    (-15, "f"),
+)
+
+
+def _spelling(problem: Problem) -> str:
+    """Say how the likely value is written so that every SPICE reads it so, or ""."""
+    value = problem.likely_value
+    if value is None or value == 0 or not math.isfinite(value):
+        return ""
+    powers = [(10.0**power, suffix) for power, suffix in _SUFFIXES]
+    factor, suffix = next((p for p in powers if abs(value) >= p[0] * (1 - 1e-9)), powers[-1])
+    return f"Write {value / factor:.6g}{suffix}."
 
 
 def _both_shown(problem: Problem) -> bool:

@@ -13,26 +13,33 @@ from railguard.rules.compose import (
 from railguard.rules.finding import Finding
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.severity import TABLE, Breach, breach, capped, evidence
-from railguard.rules.supply.pins import (
-    no_total,
-    stage_of,
-    supply_basis,
-)
+from railguard.rules.supply.pins import no_channel, supplies_of, supply_basis, unstated
 from railguard.rules.wording import NO_SOURCE, cited, listed, origin, rails
 from railguard.rules.working import NO_VOLTS
 from railguard.units import percent, si
 from railguard.words import Severity
+
+CLOSE = 1e-3
+"""Share of a limit within which a supply counts as on it: 4.7498 V of 4.75 V is no shortfall."""
 
 # --- supply-range
 
 
 def judge_range(package: Package, limits: Limits, design: Design) -> Iterator[Outcome]:
     """Judge a package's total supply against its recommended range and its absolute maximum."""
-    stage = stage_of(package, design)
-    if stage is None or stage.supply.total is None:
-        yield no_total(package, stage, "supply-range")
-        return
+    supplies = supplies_of(package, design)
+    if not supplies:
+        yield no_channel(package, "supply-range")
+    for stages in supplies:
+        yield from _range(package, stages, limits)
+
+
+def _range(package: Package, stages: tuple[Stage, ...], limits: Limits) -> Iterator[Outcome]:
+    stage = stages[0]
     device, total = stage.family, stage.supply.total
+    if total is None:
+        yield unstated(package, stage, "supply-range")
+        return
     if device is None:
         reason = first_unknown(stage, ("device",))
         why = reason.why if reason else "its device is not known"
@@ -46,8 +53,8 @@ def judge_range(package: Package, limits: Limits, design: Design) -> Iterator[Ou
         return  # told by supply-missing or supply-reversed
     for bound in _range_bounds(stage, device, total):
         broken = breach(bound)
-        if broken is not None:
-            yield _out_of_range(package, stage, bound, broken, limits["far-share"])
+        if broken is not None and -broken.margin > CLOSE * abs(broken.limit):
+            yield _out_of_range(package, stages, bound, broken, limits["far-share"])
 
 
 def _range_bounds(stage: Stage, device: Device, total: float) -> tuple[Bound, Bound]:
@@ -89,10 +96,10 @@ def _pair(demand: float | None, limit: float | None, wanted: bool) -> Pair | Non
 
 
 def _out_of_range(
-    package: Package, stage: Stage, bound: Bound, broken: Breach, far_share: float
+    package: Package, stages: tuple[Stage, ...], bound: Bound, broken: Breach, far_share: float
 ) -> Finding:
     """Make the finding; far outside the recommended range counts like a typical limit."""
-    severity = broken.severity
+    stage, severity = stages[0], broken.severity
     if not broken.at_corner and -broken.margin > far_share * broken.limit:
         worse = TABLE["typical"][evidence(*broken.basis)]
         severity = severity if broken.broken == "absolute" else worse
@@ -117,7 +124,7 @@ def _out_of_range(
         rule="supply-range",
         family="supply",
         severity=severity,
-        designators=package.channels or (package.designator,),
+        designators=tuple(s.designator for s in stages),
         nets=tuple(filter(None, (stage.supply.positive_net, stage.supply.negative_net))),
         demand=broken.demand,
         limit=broken.limit,

@@ -1,9 +1,12 @@
 """The supply pins of a package: their nets, their levels, and what to say where one is open."""
 
+from collections.abc import Iterable
+
 from railguard.analysis.stage import Design, Package, Stage
 from railguard.devices.model import Device
 from railguard.notices import NotChecked
 from railguard.rules.compose import channels_of, first_unknown
+from railguard.rules.wording import listed
 from railguard.words import Basis
 
 
@@ -12,16 +15,20 @@ def how_to_state(net: str) -> str:
     return f'state it: [nets] "{net}" = {{ volts = ... }}'
 
 
-def packages_on(net: str, design: Design) -> tuple[Package, ...]:
-    """Return the packages that have a supply pin on a net, in the order of the design."""
-    return tuple(p for p in design.packages if net in p.positive or net in p.negative)
+def supplies_of(package: Package, design: Design) -> tuple[tuple[Stage, ...], ...]:
+    """Return a package's channels, those on one pair of supply nets together.
+
+    A sound package has one pair; a channel wired to other rails is judged by its own.
+    """
+    pairs: dict[tuple[tuple[str, str], ...], list[Stage]] = {}
+    for stage in channels_of(package, design):
+        pairs.setdefault(pin_nets(stage), []).append(stage)
+    return tuple(tuple(stages) for stages in pairs.values())
 
 
-def stage_of(package: Package, design: Design) -> Stage | None:
-    """Return the channel to judge a package's supply by: the first with both levels known."""
-    stages = channels_of(package, design)
-    known = [s for s in stages if s.supply.total is not None]
-    return next(iter(known or stages), None)
+def names_of(stages: Iterable[Stage]) -> str:
+    """Name the packages some stages are in: `U1 and U2`."""
+    return listed(dict.fromkeys(s.package or s.schematic for s in stages))
 
 
 def pin_nets(stage: Stage) -> tuple[tuple[str, str], ...]:
@@ -51,9 +58,7 @@ def supply_basis(device: Device | None, name: str) -> Basis:
     return "practice" if device is None else device.supply_basis.get(name, "memory")
 
 
-def no_total(package: Package, stage: Stage | None, rule: str) -> NotChecked:
-    """Say why a package's total supply is not known."""
-    if stage is None:
-        why = "none of its channels could be read as an amplifier"
-        return NotChecked(package.designator, rule, why, "give its pin order")
-    return unstated(package, stage, rule)
+def no_channel(package: Package, rule: str) -> NotChecked:
+    """Say that a package has no channel to judge it by."""
+    why = "none of its channels could be read as an amplifier"
+    return NotChecked(package.designator, rule, why, "give its pin order")

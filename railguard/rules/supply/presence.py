@@ -12,10 +12,10 @@ from railguard.rules.protocol import Limits, Outcome, Rule
 from railguard.rules.severity import TABLE, evidence
 from railguard.rules.supply.pins import (
     how_to_state,
-    no_total,
-    packages_on,
+    names_of,
+    no_channel,
     pin_nets,
-    stage_of,
+    supplies_of,
     supply_basis,
     unstated,
 )
@@ -28,51 +28,51 @@ from railguard.units import si
 
 def judge_missing(package: Package, limits: Limits, design: Design) -> Iterator[Outcome]:
     """Judge whether something feeds both supply pins of a package."""
-    stage = stage_of(package, design)
-    if stage is None:
-        yield no_total(package, stage, "supply-missing")
-        return
-    net = stage.supply.positive_net
+    supplies = supplies_of(package, design)
+    if not supplies:
+        yield no_channel(package, "supply-missing")
+    for stages in supplies:
+        yield from _missing(package, stages, design)
+
+
+def _missing(package: Package, stages: tuple[Stage, ...], design: Design) -> Iterator[Outcome]:
+    stage = stages[0]
+    net, total = stage.supply.positive_net, stage.supply.total
+    levels = (stage.supply.positive, stage.supply.negative)
     if net and net == stage.supply.negative_net:
         yield _dead_pins(
             package,
-            stage,
+            stages,
             f"Both supply pins of {package.designator} are on net {net}, so it has no supply.",
             "Connect the positive pin to the positive rail and the negative pin to the lower one.",
         )
-        return
-    dead = _dead_pin(stage, design)
-    if dead is not None:
+    elif (dead := _dead_pin(stage, design)) is not None:
         word, rail = dead
-        packages = packages_on(rail.net, design) or (package,)
-        if packages[0].designator == package.designator:
-            yield _dead_net(word, rail, packages)
-        return
-    total = stage.supply.total
-    if total is None:
+        fed = [s for s in design.stages if rail.net in dict(pin_nets(s)).values()]
+        if fed[0] in stages:
+            yield _dead_net(word, rail, fed)
+    elif total is None:
         yield unstated(package, stage, "supply-missing")
-        return
-    levels = (stage.supply.positive, stage.supply.negative)
-    if abs(total) <= NO_VOLTS and all(abs(level or 0.0) <= NO_VOLTS for level in levels):
+    elif abs(total) <= NO_VOLTS and all(abs(level or 0.0) <= NO_VOLTS for level in levels):
         yield _dead_pins(
             package,
-            stage,
+            stages,
             f"Between the supply pins of {package.designator} stand only {si(total, 'V')}.",
             "Connect both supply pins to their rails.",
         )
 
 
-def _dead_pins(package: Package, stage: Stage, message: str, remedy: str) -> Finding:
-    nets = tuple(dict.fromkeys(net for _, net in pin_nets(stage) if net))
+def _dead_pins(package: Package, stages: tuple[Stage, ...], message: str, remedy: str) -> Finding:
+    nets = tuple(dict.fromkeys(net for _, net in pin_nets(stages[0]) if net))
     return finding(
         "supply-missing",
         "critical",
         message,
-        designators=package.channels or (package.designator,),
+        designators=tuple(s.designator for s in stages),
         nets=nets,
-        demand=stage.supply.total,
+        demand=stages[0].supply.total,
         unit="V",
-        basis=(stage.supply.basis,),
+        basis=(stages[0].supply.basis,),
         remedy=remedy,
         source=NO_SOURCE,
         location=package.location,
@@ -90,20 +90,19 @@ def _dead_pin(stage: Stage, design: Design) -> tuple[str, Rail] | None:
     return None
 
 
-def _dead_net(word: str, rail: Rail, packages: tuple[Package, ...]) -> Finding:
-    names = listed(p.designator for p in packages)
-    pins = "pin" if len(packages) == 1 else "pins"
+def _dead_net(word: str, rail: Rail, stages: list[Stage]) -> Finding:
+    pins = "pin" if len({s.package for s in stages}) == 1 else "pins"
     return finding(
         "supply-missing",
         "critical",
-        f"Nothing feeds net {rail.net}: it is the {word} supply {pins} of {names}, and no source, "
-        "regulator or connector stands on it.",
-        designators=tuple(d for p in packages for d in p.channels or (p.designator,)),
+        f"Nothing feeds net {rail.net}: it is the {word} supply {pins} of {names_of(stages)}, and "
+        "no source, regulator or connector stands on it.",
+        designators=tuple(s.designator for s in stages),
         nets=(rail.net,),
         remedy=f"Connect {rail.net} to its supply; where it comes from outside the netlist, "
         f"{how_to_state(rail.net)}.",
         source=NO_SOURCE,
-        location=rail.location or packages[0].location,
+        location=rail.location or stages[0].location,
     )
 
 
@@ -131,29 +130,26 @@ MISSING = Rule(
 
 def judge_reversed(package: Package, limits: Limits, design: Design) -> Iterator[Outcome]:
     """Judge whether a package's positive pin stands above its negative pin."""
-    stage = stage_of(package, design)
-    if stage is None or stage.supply.total is None:
-        yield no_total(package, stage, "supply-reversed")
-        return
-    supply = stage.supply
-    positive, negative = supply.positive or 0.0, supply.negative or 0.0
-    off = abs(positive) <= NO_VOLTS and abs(negative) <= NO_VOLTS
-    if positive - negative > NO_VOLTS or off or supply.positive_net == supply.negative_net:
-        return
-    same = [p for p in design.packages if _same_rails(p, stage, design)] or [package]
-    if same[0].designator != package.designator:
-        return
-    yield _reversed(same, stage, positive, negative)
+    supplies = supplies_of(package, design)
+    if not supplies:
+        yield no_channel(package, "supply-reversed")
+    for stages in supplies:
+        supply = stages[0].supply
+        if supply.positive is None or supply.negative is None:
+            yield unstated(package, stages[0], "supply-reversed")
+            continue
+        off = abs(supply.positive) <= NO_VOLTS and abs(supply.negative) <= NO_VOLTS
+        right = supply.positive - supply.negative > NO_VOLTS
+        if right or off or supply.positive_net == supply.negative_net:
+            continue
+        same = [s for s in design.stages if pin_nets(s) == pin_nets(stages[0])]
+        if same[0] in stages:
+            yield _reversed(same, supply.positive, supply.negative)
 
 
-def _same_rails(package: Package, stage: Stage, design: Design) -> bool:
-    other = stage_of(package, design)
-    return other is not None and pin_nets(other) == pin_nets(stage)
-
-
-def _reversed(packages: list[Package], stage: Stage, positive: float, negative: float) -> Finding:
+def _reversed(stages: list[Stage], positive: float, negative: float) -> Finding:
     """Say which pin is wrong: swapped pins, or one rail of the wrong sign."""
-    names = listed(p.designator for p in packages)
+    names, stage = names_of(stages), stages[0]
     high, low = stage.supply.positive_net, stage.supply.negative_net
     if positive < negative:
         message = (
@@ -171,7 +167,7 @@ def _reversed(packages: list[Package], stage: Stage, positive: float, negative: 
         "supply-reversed",
         TABLE["absolute"][evidence(stage.supply.basis)],
         message,
-        designators=tuple(d for p in packages for d in p.channels or (p.designator,)),
+        designators=tuple(s.designator for s in stages),
         nets=tuple(filter(None, (high, low))),
         demand=positive - negative,
         limit=0.0,
@@ -180,7 +176,7 @@ def _reversed(packages: list[Package], stage: Stage, positive: float, negative: 
         basis=(stage.supply.basis,),
         remedy=remedy,
         source=cited(stage, supply_basis(stage.family, "absolute")) if stage.family else NO_SOURCE,
-        location=packages[0].location,
+        location=stage.location,
     )
 
 
@@ -202,25 +198,26 @@ REVERSED = Rule(
 
 def judge_split(package: Package, limits: Limits, design: Design) -> Iterator[Outcome]:
     """Judge whether all channels of a package stand on the same rails."""
+    split = {}
     for word, nets in (("positive", package.positive), ("negative", package.negative)):
         different = tuple(dict.fromkeys(net for net in nets if net))
-        if len(different) < 2:
-            continue
-        yield finding(
-            "supply-package-split",
-            "major",
-            f"{package.designator} has one {word} supply pin, and its channels "
-            f"{listed(package.channels)} put it on nets {listed(different)}.",
-            designators=package.channels or (package.designator,),
-            nets=different,
-            demand=float(len(different)),
-            limit=1.0,
-            margin=1.0 - len(different),
-            remedy=f"Put all channels of {package.designator} on one rail, or give the channel "
-            "that needs another rail a package of its own.",
-            source=NO_SOURCE,
-            location=package.location,
-        )
+        if len(different) > 1:
+            split[word] = different
+    if not split:
+        return
+    pins = listed(f"its {word} supply pin on nets {listed(nets)}" for word, nets in split.items())
+    yield finding(
+        "supply-package-split",
+        "major",
+        f"The channels of {package.designator} ({listed(package.channels)}) put {pins}; the "
+        "package has one such pin.",
+        designators=package.channels or (package.designator,),
+        nets=tuple(dict.fromkeys(net for nets in split.values() for net in nets)),
+        remedy=f"Put all channels of {package.designator} on one pair of rails, or give the "
+        "channel that needs another a package of its own.",
+        source=NO_SOURCE,
+        location=package.location,
+    )
 
 
 SPLIT = Rule(

@@ -49,6 +49,23 @@ def test_readings_the_message_shows_are_not_told_twice():
     assert judged(told)[0].message == told.message
 
 
+@pytest.mark.parametrize(
+    ("likely", "written"),
+    [
+        (1e6, "1MEG"),
+        (4020.0, "4.02k"),
+        (1e-6, "1u"),
+        (4.7e-12, "4.7p"),
+        (0.1, "100m"),
+        (10.0, "10"),
+    ],
+)
+def test_a_remedy_spells_the_likely_value(likely, written):
+    """Where the reader names no remedy the value is written as SPICE reads it."""
+    bare = Problem(rule="netlist-value-suffix", message="x", spice_value=1.0, likely_value=likely)
+    assert judged(bare)[0].remedy == f"Write {written}."
+
+
 def test_the_readers_own_severity_counts():
     """Where the reader knows better than the rule its word stands."""
     alias = Problem(rule="netlist-ground", message="GND is taken as 0.", severity="remark")

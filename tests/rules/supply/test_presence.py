@@ -146,6 +146,19 @@ def test_channels_on_two_rails():
     assert found.nets == ("+12V", "+5V")
 
 
+def test_a_channel_with_swapped_pins_in_a_sound_package():
+    """Each pair of nets is judged: the second channel's fault is not hidden by the first."""
+    flipped = changed(SUPPLY, positive=-12.0, negative=12.0, positive_net="-12V",
+                      negative_net="+12V")  # fmt: skip
+    pair = (stage("XU1A", package="U1"), stage("XU1B", package="U1", supply=flipped))
+    twin = package(channels=("XU1A", "XU1B"), positive=("+12V", "-12V"), negative=("-12V", "+12V"))
+    whole = design(*pair, packages=(twin,))
+    (found,) = findings(REVERSED, twin, whole)
+    assert found.designators == ("XU1B",)
+    (split,) = findings(SPLIT, twin, whole)
+    assert "its positive supply pin on nets +12V and -12V" in split.message
+
+
 def test_channels_on_one_rail_are_quiet():
     """The same net twice is one rail, and an unknown one is no second."""
     assert findings(SPLIT, package(positive=("+12V", "+12V"))) == []
