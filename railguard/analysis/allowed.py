@@ -22,18 +22,16 @@ def allowed_inputs(solution: Solution, stages: Sequence[Stage]) -> dict[str, All
     result: dict[str, Allowed] = {}
     answers, network = solution.answers, solution.answers.network
     rows = [int(r) for r in answers.rows]
-    levels = {d.injection: d.value for d in solution.prepared.levels}
     dc = answers.dc.adjoint(rows)
     mid = solution.mid.adjoint(rows)
-    for net, name in dict.fromkeys(solution.prepared.entries):
-        if name not in network.injections or network.injections[name].row < 0:
+    for entry in sorted(solution.prepared.entries, key=lambda e: e.rank):
+        if any(name not in network.injections for name, _ in entry.drives):
             continue
-        b = network.right_hand_side([(name, 1.0)])
+        b = network.right_hand_side(entry.drives)
         at_dc, at_mid = (dc @ b).real, np.abs(mid @ b)
-        start = levels.get(name, 0.0)
-        low, high, limited, reached = _span(stages, solution, at_dc, at_mid, start)
+        low, high, limited, reached = _span(stages, solution, at_dc, at_mid, entry.level)
         if limited:
-            allowed = Allowed(net, low, high, limited)
+            allowed = Allowed(entry.label, low, high, limited, entry.unit)
             for designator in reached:
                 result.setdefault(designator, allowed)
     return result

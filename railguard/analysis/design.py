@@ -16,7 +16,7 @@ from railguard.analysis.unseen import spoiled, unseen_things
 from railguard.circuit.model import Circuit
 from railguard.devices.catalogue import Catalogue
 from railguard.errors import SolveError
-from railguard.notices import Problem
+from railguard.notices import Problem, Remark
 from railguard.settings.model import Settings
 
 
@@ -57,7 +57,7 @@ def analyse(circuit: Circuit, settings: Settings, catalogue: Catalogue) -> Desig
         packages=packages_of(found.amplifiers),
         stages=stages,
         problems=tuple(problems),
-        remarks=(*circuit.remarks, *found.remarks),
+        remarks=(*circuit.remarks, *found.remarks, *_missing(prepared, settings)),
     )  # fmt: skip
 
 
@@ -77,6 +77,15 @@ def _stages(
     mid = solution.mid if hertz == MID_HERTZ else factor(solution.answers.network, hertz)
     flags = spoiled(solution.answers, things, mid)
     return stages_of(solution, fed, settings, flags, frozenset(fed))
+
+
+def _missing(prepared: Prepared, settings: Settings) -> list[Remark]:
+    """Say once what the user's file states of nets this deck does not have."""
+    if not prepared.missing:
+        return []
+    where = settings.file or "A directive"
+    names = ", ".join(prepared.missing)
+    return [Remark(message=f"{where} states what this deck does not have: {names}.")]
 
 
 def _conflicts(solution: Solution) -> list[Problem]:

@@ -32,6 +32,8 @@ SURE_DEGREES = 5.0
 LARGEST_INPUT_FARADS = 20e-12
 LARGEST_OUTPUT_OHMS = 200.0
 """What an unlisted input capacitance and output resistance may be at most: common practice."""
+SHIFT_LOW, SHIFT_HIGH = 0.05, 4.0
+"""How far what is not listed may move a crossover."""
 BASE_OHMS = 1e3
 CURRENT_GAIN = 100.0
 
@@ -160,7 +162,7 @@ def phase_margin(hertz: Real, a_beta: Complex, f: float) -> float:
 
 def crossover_margins(network: Network, crossovers: Mapping[str, float]) -> dict[str, float]:
     """Return the phase margin of each amplifier in `network`, its crossover found anew near by."""
-    steps = np.geomspace(0.1, 1.6, 9)
+    steps = np.geomspace(SHIFT_LOW, SHIFT_HIGH, 15)
     hertz = np.unique(np.concatenate([steps * f for f in crossovers.values()]))
     if not len(hertz):
         return {}
@@ -170,7 +172,7 @@ def crossover_margins(network: Network, crossovers: Mapping[str, float]) -> dict
         near = crossovers.get(amplifier.designator)
         if near is None:
             continue
-        own = (hertz >= near * 0.099) & (hertz <= near * 1.61)
+        own = (hertz >= near * SHIFT_LOW * 0.999) & (hertz <= near * SHIFT_HIGH * 1.001)
         f, t = hertz[own], ratios[own, column]
         at = crossing(f, np.abs(t))
         if at is not None:

@@ -50,14 +50,14 @@ def gains_of(view: View) -> tuple[tuple[str, float], ...]:
     dc = answers.dc.adjoint([row])[0]
     mid = view.solution.mid.adjoint([row])[0]
     gains = []
-    for net, name in dict.fromkeys(view.solution.prepared.entries):
-        if name not in network.injections or network.injections[name].row < 0:
+    for entry in view.solution.prepared.entries:
+        if entry.unit != "V" or any(name not in network.injections for name, _ in entry.drives):
             continue
-        b = network.right_hand_side([(name, 1.0)])
+        b = network.right_hand_side(entry.drives)
         at_dc, at_mid = float((dc @ b).real), complex(mid @ b)
         gain = at_dc if abs(at_dc) > 1e-3 * abs(at_mid) else abs(at_mid)
         if abs(gain) > 1e-6:
-            gains.append((net, gain))
+            gains.append((entry.label, gain))
     return tuple(gains)
 
 

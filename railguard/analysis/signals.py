@@ -75,17 +75,33 @@ class Unstated(msgspec.Struct, frozen=True):
     injection: str = ""
 
 
+class Entry(msgspec.Struct, frozen=True):
+    """Where a signal enters: what a unit of it does to each injection, and its DC level.
+
+    rank   0 stated by the user, 1 a wave of the deck, 2 a small-signal probe, 3 a DC source
+    label  the net, or the signal's own name where it stands between two nets
+    unit   "V" or "A"
+    """
+
+    rank: int
+    label: str
+    drives: tuple[tuple[str, float], ...]
+    level: float
+    unit: str
+
+
 class Prepared(msgspec.Struct, frozen=True, kw_only=True):
     """The elements to solve, loads and stated signals included, and what drives them.
 
-    entries  (net, injection) of signals that have a source: for the largest input allowed
+    entries  signals that have a source: for gains and the largest input allowed
+    missing  what the user's file states of nets this deck does not have
     """
 
     elements: tuple[Element, ...]
     levels: tuple[Drive, ...]
     tones: tuple[Tone, ...]
     unstated: tuple[Unstated, ...]
-    entries: tuple[tuple[str, str], ...]
+    entries: tuple[Entry, ...]
     missing: tuple[str, ...] = ()
 
 
@@ -98,7 +114,7 @@ class _Builder:
         self.levels: dict[str, Drive] = {}
         self.tones: list[Tone] = []
         self.unstated: list[Unstated] = []
-        self.entries: list[tuple[str, str]] = []
+        self.entries: list[Entry] = []
         self.coherent: dict[float, list[tuple[str, complex, str]]] = defaultdict(list)
         self.missing: list[str] = []
 
@@ -163,9 +179,19 @@ def prepare(elements: tuple[Element, ...], settings: Settings, feeds: dict[str, 
         levels=tuple(build.levels.values()),
         tones=tuple(build.tones),
         unstated=tuple(build.unstated),
-        entries=tuple(build.entries),
+        entries=_inputs(build.entries),
         missing=tuple(build.missing),
     )
+
+
+_UNITS = {"V": "V", "battery": "V", "I": "A"}
+_SIGNAL_RANKS = 3
+
+
+def _inputs(entries: list[Entry]) -> tuple[Entry, ...]:
+    """Keep the signals; DC sources are references where anything else is a signal."""
+    signals = [entry for entry in entries if entry.rank < _SIGNAL_RANKS]
+    return tuple(dict.fromkeys(signals or entries))
 
 
 def _hold_rails(build: _Builder, settings: Settings, feeds: dict[str, Feed]) -> set[str]:
@@ -210,7 +236,7 @@ def _add_signals(build: _Builder, settings: Settings) -> set[str]:
             build.missing.append(f"signal {signal.name}")
             continue
         half, mid = (signal.high - signal.low) / 2, (signal.high + signal.low) / 2
-        drives, levels = _inject(build, signal, half, mid)
+        drives, levels = _inject(build, signal, mid)
         taken.update(name for name, _ in drives)
         for name, level in levels:
             before = build.levels.get(name)
@@ -218,47 +244,48 @@ def _add_signals(build: _Builder, settings: Settings) -> set[str]:
             build.levels[name] = Drive(name, total, "user")
         tone = Tone(
             name=f"signal {signal.name}",
-            drives=tuple(drives),
+            drives=tuple((name, factor * half) for name, factor in drives),
             frequencies=band(signal.start, signal.stop),
             net=nets[0],
             basis="user",
         )
         groups[signal.group or f"#{number}"].append(tone)
-        if not signal.between and not signal.current and drives:
-            build.entries.append((nets[0], drives[0][0]))
+        unit = "A" if signal.current else "V"
+        build.entries.append(Entry(0, signal.name, tuple(drives), mid, unit))
     for tones in groups.values():
         build.tones.append(_together(tones))
     return taken
 
 
 def _inject(
-    build: _Builder, signal: Signal, half: float, mid: float
-) -> tuple[list[tuple[str, complex]], list[tuple[str, float]]]:
+    build: _Builder, signal: Signal, mid: float
+) -> tuple[list[tuple[str, float]], list[tuple[str, float]]]:
+    """Return what each injection does per unit of a signal, and the level each one holds."""
     label = f"signal {signal.name}"
     if signal.current:
         net, back = signal.between or (signal.name, GROUND)
         build.add("I", label, (back, net), None)
-        return [(label, half)], [(label, mid)]
+        return [(label, 1.0)], [(label, mid)]
     if not signal.between:
         name, sign = build.source_for(signal.name, signal.ohms, label)
-        return [(name, sign * half)], [(name, sign * mid)]
+        return [(name, sign)], [(name, sign * mid)]
     plus, minus = signal.between
     between = build.holder(plus, minus)
     if between is not None:
         name, sign = between
-        return [(name, sign * half)], [(name, sign * mid)]
+        return [(name, sign)], [(name, sign * mid)]
     if signal.common is None:
         # Nothing says where both nets sit, so only their difference is driven.
         inner = f"{label} behind its resistance"
         build.add("R", f"{label} resistance", (inner, plus), max(signal.ohms, 1e-3))
         build.add("V", label, (inner, minus), None)
-        return [(label, half)], [(label, mid)]
+        return [(label, 1.0)], [(label, mid)]
     ends = []
     for net, sign in ((plus, 0.5), (minus, -0.5)):
         name, way = build.source_for(net, signal.ohms / 2, f"{label} at {net}")
         ends.append((name, way, sign))
     return (
-        [(name, way * sign * half) for name, way, sign in ends],
+        [(name, way * sign) for name, way, sign in ends],
         [(name, way * (signal.common + sign * mid)) for name, way, sign in ends],
     )
 
@@ -288,7 +315,8 @@ def _deck_source(build: _Builder, element: Element, source: Source) -> None:
     level, tones = levels_and_tones(source)
     build.levels.setdefault(name, Drive(name, level))
     if source.wave is not None or level:
-        build.entries.append((net, name))
+        rank = 1 if source.wave is not None else _SIGNAL_RANKS
+        build.entries.append(Entry(rank, net, ((name, 1.0),), level, _UNITS[element.kind]))
     timed = source.wave is not None and not isinstance(source.wave, Sine)
     for frequency, amplitude in tones:
         if timed:
@@ -306,7 +334,7 @@ def _deck_source(build: _Builder, element: Element, source: Source) -> None:
             build.coherent[frequency].append((name, amplitude, net))
     probes = source.ac is not None and source.ac[0] != 0
     if probes and not tones and not level:
-        build.entries.append((net, name))
+        build.entries.append(Entry(2, net, ((name, 1.0),), level, _UNITS[element.kind]))
         build.unstated.append(
             Unstated(
                 net,

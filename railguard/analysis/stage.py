@@ -308,12 +308,17 @@ class Loop(msgspec.Struct, frozen=True, kw_only=True):
 
 
 class Allowed(msgspec.Struct, frozen=True):
-    """The largest input that keeps every stage inside its ranges, and what limits it."""
+    """The largest input that keeps every stage inside its ranges, and what limits it.
+
+    net   the net it enters at, or the name of a signal between two nets
+    unit  of low and high: "V" or "A"
+    """
 
     net: str
     low: float
     high: float
     limited_by: str
+    unit: str = "V"
 
 
 class Unknown(msgspec.Struct, frozen=True):
