@@ -218,7 +218,7 @@ LINKS: tuple[Link, ...] = (
         (*_RUNNING, "supply-range", "supply-drop", "supply-name-disagrees"),
         _shared_supply,
     ),
-    # A net that nothing feeds is most often a misspelt one, and its capacitors are on the right one.
+    # A net that nothing feeds is most often a misspelt one; its capacitors are on the right one.
     Link(("supply-missing",), ("decoupling-absent", "decoupling-few"), _shared_supply),
     Link(("supply-reversed",), ("supply-package-split",), _shared_designator),
     Link(

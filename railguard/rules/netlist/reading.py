@@ -227,6 +227,7 @@ _SUFFIXES = (
     (-12, "p"),
     (-15, "f"),
 )
+"""SPICE scale factors by power of ten, the largest first."""
 
 
 def _spelling(problem: Problem) -> str:
