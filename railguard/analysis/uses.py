@@ -55,6 +55,8 @@ def _is_driven(amplifier: Amplifier, ways: Ways, rails: frozenset[str]) -> bool:
 
 
 def _charges_itself(amplifier: Amplifier, ways: Ways) -> bool:
+    if amplifier.minus in ways.held:
+        return False  # every capacitor to ground stands on a grounded input's net
     on_minus = [e for e in ways.around.get(amplifier.minus, ()) if len(e.nets) >= 2]
     charged = any(e.kind == "C" and GROUND in e.nets for e in on_minus)
     return charged and any(e.kind == "R" and amplifier.output in e.nets for e in on_minus)
