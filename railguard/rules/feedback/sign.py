@@ -70,7 +70,11 @@ def _thresholds(loop: Loop) -> str:
 def _evidence(stage: Stage, whole: float) -> tuple[Severity, str]:
     """Return how bad, and the sentence that says by what evidence."""
     loop = stage.loop
-    if stage.use in ("comparator", "oscillator"):
+    never = _smaller_than_hysteresis(loop)
+    meant = stage.use in ("comparator", "oscillator")
+    # What is worked out from the output's load alone does not make up for a signal that never
+    # switches the stage; what the user states does.
+    if meant and (stage.use_stated or stage.use == "oscillator" or not never):
         basis = "as stated" if stage.use_stated else "as what it drives shows"
         return "remark", f"{_thresholds(loop)}. It is {_a_use(stage)}, {basis}."
     if loop.capacitor_across_plus:
@@ -85,7 +89,7 @@ def _evidence(stage: Stage, whole: float) -> tuple[Severity, str]:
             f"{_thresholds(loop)}, and its output feeds a linear stage, which a switching one "
             "has no use for."
         )
-    if _smaller_than_hysteresis(loop):
+    if never:
         return "critical", (
             f"{_thresholds(loop)}, and the signal ({si(loop.drive.low, 'V')} to "
             f"{si(loop.drive.high, 'V')}) never crosses both, so it stays at a rail."

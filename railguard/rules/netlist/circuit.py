@@ -13,6 +13,10 @@ from railguard.units import series_of, si
 from railguard.words import Severity
 
 TWO_ENDED = frozenset({"R", "C", "L", "D", "V", "I"})
+E24 = frozenset(
+    (10, 11, 12, 13, 15, 16, 18, 20, 22, 24, 27, 30, 33, 36, 39, 43, 47, 51, 56, 62, 68, 75, 82, 91)
+)
+E96 = frozenset(round(100 * 10 ** (i / 96)) for i in range(96))
 UNITS = {"R": "Ω", "C": "F", "L": "H"}
 
 # --- netlist-dangling
@@ -181,7 +185,13 @@ def _with_neighbour(element: Element) -> str:
 def _is_odd(element: Element) -> bool:
     if element.kind not in UNITS or not element.fitted or not element.value:
         return False
-    return element.value > 0 and series_of(element.value) is None
+    return element.value > 0 and not _common(element.value) and series_of(element.value) is None
+
+
+def _common(value: float) -> bool:
+    """Tell at once whether a value is of E24 or E96, which spares loading the other series."""
+    digits = round(float(f"{value:.5e}".split("e")[0]) * 100, 3)
+    return digits in E96 or digits / 10 in E24
 
 
 VALUE_SERIES = Rule(

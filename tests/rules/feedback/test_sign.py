@@ -64,6 +64,14 @@ def test_a_meant_comparator_is_a_remark(use, stated):
     assert "switches at -1 V and 1 V" in found.message
 
 
+def test_a_comparator_by_its_load_that_never_switches_is_a_mistake():
+    """What an output drives shows a comparator only where its signal does switch it."""
+    small = {"drive": Range(-0.5, 0.5), "use": "comparator"}
+    assert [f.severity for f in findings(REVERSED, looped(**small))] == ["critical"]
+    stated = findings(REVERSED, looped(use_stated=True, **small))
+    assert [f.severity for f in stated] == ["remark"]
+
+
 def test_unknown_thresholds_are_said_to_be():
     """What was not worked out is not made up."""
     (found,) = findings(REVERSED, looped(thresholds=Range()))

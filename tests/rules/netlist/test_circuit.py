@@ -1,8 +1,9 @@
 """Loose nets, shorted elements, unknown devices, odd values."""
 
 from railguard.circuit.model import Element
-from railguard.rules.netlist.circuit import DANGLING, DEVICE_UNKNOWN, SHORTED, VALUE_SERIES
+from railguard.rules.netlist.circuit import DANGLING, DEVICE_UNKNOWN, SHORTED, VALUE_SERIES, _common
 from railguard.settings.model import Load, NetLevel, Settings, Signal
+from railguard.units import series_of
 from tests.rules.stages import (
     ELEMENTS,
     changed,
@@ -87,6 +88,15 @@ def test_values_of_a_series_are_quiet():
     values = (4700.0, 4990.0, 9.2e3, 0.1)
     parts = [resistor(f"R{i}", v, "a", "b") for i, v in enumerate(values, 10)]
     assert judged(VALUE_SERIES, *parts) == []
+
+
+def test_the_quick_look_agrees_with_the_standard():
+    """Every value the quick look takes is of a series, and it takes all of E24 and E96."""
+    for digits in range(100, 1000):
+        if _common(digits * 1e-9):
+            assert series_of(digits * 1e-9) is not None
+        if series_of(float(digits)) in ("E3", "E6", "E12", "E24", "E48", "E96"):
+            assert _common(float(digits))
 
 
 def test_values_of_no_series_are_one_remark():
