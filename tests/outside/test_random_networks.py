@@ -1,0 +1,119 @@
+"""The linear solver against ngspice on random networks.
+
+Ladders, bridges and chains of op-amp stages with random values. The amplifiers are the same in
+both: for ngspice a voltage-controlled source with one pole behind it, for railguard a device of
+that open-loop gain and gain-bandwidth product. Every amplifier's output voltage and current must
+agree within 0.1 %, at DC and at a signal frequency.
+"""
+
+import shutil
+
+import numpy as np
+import pytest
+
+from railguard.analysis.network import Network
+from railguard.analysis.ranges import answer
+from railguard.analysis.recognise import keeps_closed, recognise
+from railguard.analysis.signals import prepare
+from railguard.circuit.flatten import flatten
+from railguard.deck.files import deck_from_text
+from railguard.devices import catalogue
+from railguard.engine.guard import TITLE
+from railguard.engine.ngspice import find
+from railguard.engine.requests import OperatingPoint, SmallSignal
+from railguard.settings.file import parse
+
+pytestmark = pytest.mark.skipif(shutil.which("ngspice") is None, reason="ngspice is not installed")
+
+GAIN, GBW = 1e5, 2e6
+DEVICE = f"""
+[[devices]]
+family = "POLE1"
+technology = "cmos"
+open_loop_gain = {{ typical = {GAIN} }}
+gain_bandwidth = {{ typical = {GBW} }}
+names = {{ 1 = ["POLE1"] }}
+source = {{ title = "made for this test" }}
+"""
+# A pole of one ohm and C farads; the output source follows it.
+POLE = GAIN / (2 * np.pi * GBW)
+STAGES = 3
+HERTZ = 3e3
+
+
+def _value(random, low, high):
+    return float(f"{10 ** random.uniform(np.log10(low), np.log10(high)):.3g}")
+
+
+def network(seed):
+    """Return (cards with X devices, cards for ngspice, number of amplifiers)."""
+    random = np.random.default_rng(seed)
+    shared = [f"V1 s0 0 {random.uniform(-1, 1):.4g} AC 1", f"V2 t0 0 {random.uniform(-1, 1):.4g}"]
+    at, other = "s0", "t0"
+    for rung in range(random.integers(1, 4)):
+        shared.append(f"RL{rung} {at} s{rung + 1} {_value(random, 100, 1e4)}")
+        shared.append(f"RP{rung} s{rung + 1} 0 {_value(random, 1e3, 1e5)}")
+        shared.append(f"CP{rung} s{rung + 1} 0 {_value(random, 1e-11, 1e-8)}")
+        at = f"s{rung + 1}"
+    shared.append(f"RB1 {at} b1 {_value(random, 1e3, 1e4)}")
+    shared.append(f"RB2 b1 0 {_value(random, 1e3, 1e4)}")
+    shared.append(f"RB3 {other} b2 {_value(random, 1e3, 1e4)}")
+    shared.append(f"RB4 b2 0 {_value(random, 1e3, 1e4)}")
+    shared.append(f"RB5 b1 b2 {_value(random, 1e3, 1e5)}")
+    amplifiers = []
+    source, second = "b1", "b2"
+    for k in range(STAGES):
+        out, n, p = f"o{k}", f"n{k}", f"p{k}"
+        shared.append(f"RF{k} {n} {out} {_value(random, 2e3, 1e5)}")
+        shared.append(f"RG{k} {source} {n} {_value(random, 2e3, 2e4)}")
+        shared.append(f"RI{k} {second} {p} {_value(random, 1e3, 2e4)}")
+        shared.append(f"RJ{k} {p} 0 {_value(random, 1e3, 2e4)}")
+        shared.append(f"RO{k} {out} 0 {_value(random, 500, 1e4)}")
+        if random.random() < 0.6:
+            shared.append(f"CF{k} {n} {out} {_value(random, 1e-11, 1e-8)}")
+        amplifiers.append((p, n, out))
+        second, source = source, out
+    xs = [f"XU{k} {p} {n} vp vn {o} POLE1" for k, (p, n, o) in enumerate(amplifiers)]
+    models = []
+    for k, (p, n, o) in enumerate(amplifiers):
+        models += [
+            f"G{k} 0 g{k} {p} {n} {GAIN}",
+            f"RA{k} g{k} 0 1",
+            f"CA{k} g{k} 0 {POLE:.9g}",
+            f"E{k} {o}x 0 g{k} 0 1",
+            f"VS{k} {o}x {o} 0",
+        ]
+    return [*shared, *xs], [*shared, *models]
+
+
+def solved(cards):
+    """Return railguard's (DC, complex AC) of output voltage and current, shape (amplifiers, 2)."""
+    settings = parse(DEVICE, "railguard.toml")
+    devices = catalogue.load(settings.devices)
+    text = "title\n" + "\n".join(cards) + "\nVP vp 0 15\nVN vn 0 -15\n"
+    circuit = flatten(deck_from_text(text), keeps_closed(devices))
+    found = recognise(circuit, devices, settings).amplifiers
+    built = Network(circuit.elements, found)
+    prepared = prepare(circuit.elements, settings, {})
+    answers = answer(built, found, prepared, {}, {})
+    s = 2j * np.pi * HERTZ
+    b = built.right_hand_side([("V1", 1.0)])
+    x = np.linalg.solve(built.g + s * built.c, b)
+    rows = answers.rows.reshape(len(found), -1)[:, :2]
+    return answers.level.reshape(len(found), -1)[:, :2], x[rows]
+
+
+@pytest.mark.parametrize("seed", range(25))
+def test_random_network_agrees_with_ngspice(seed):
+    """Output voltage and current at DC and at 3 kHz, within 0.1 %."""
+    ours, theirs = network(seed)
+    dc, ac = solved(ours)
+    deck = "\n".join([TITLE, *theirs])
+    run = find().run(deck, OperatingPoint(), SmallSignal(1, HERTZ, HERTZ * 10.1))
+    for k in range(STAGES):
+        point, sweep = run.plots
+        expected = [point.voltage(f"o{k}")[0], point.current(f"vs{k}")[0]]
+        assert dc[k] == pytest.approx(expected, rel=1e-3, abs=1e-9)
+        wave = [sweep.vectors[f"v(o{k})"][0], sweep.vectors[f"i(vs{k})"][0]]
+        assert np.abs(ac[k]) == pytest.approx(np.abs(wave), rel=1e-3, abs=1e-12)
+        assert np.angle(ac[k] / np.array(wave)) == pytest.approx([0, 0], abs=2e-3)
