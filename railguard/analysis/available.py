@@ -42,8 +42,11 @@ def output_reach(
     negative: float,
     upper: bool,
     current_at: Callable[[float], float],
+    rail_ohms: float = 0.0,
 ) -> Reach:
     """Return how far the output goes towards one rail.
+
+    rail_ohms   resistance between the rail's source and the pin: the load current drops on it
 
     current_at  amperes the output must source (upper) or sink at a given output voltage; below
                 zero counts as no load
@@ -74,6 +77,7 @@ def output_reach(
             if volts is None:
                 return None, "memory", dropped.condition
             met = rail + sign * min(volts, total)
+            met += sign * rail_ohms * max(current_at(level), 0.0)
             found = met, basis, dropped.condition
             gap = met - level
             if abs(gap) < 1e-6 * total:

@@ -63,6 +63,7 @@ def output_side(
                 supply.negative,
                 upper,
                 line if upper else lambda volts: -line(volts),
+                _rail_ohms(view, upper),
             )
     q = view.at("output")
     spread = view.solution.spread
@@ -93,6 +94,7 @@ def output_side(
         level=level if known else None,
         demand=Range(low, high) if known else Range(),
         worst=view.worst("output") if known else Range(),
+        rss=view.rss("output") if known else Range(),
         available=Range(down.typical if down else None, up.typical if up else None),
         guaranteed=Range(down.guaranteed if down else None, up.guaranteed if up else None),
         high=bounds[True],
@@ -102,6 +104,12 @@ def output_side(
         offset=error if known and device is not None else None,
     )
     return _current(view, current_known, load), output
+
+
+def _rail_ohms(view: View, upper: bool) -> float:
+    """Return the resistance at a supply pin, ohm."""
+    row = int(view.answers.rows[view.at("positive" if upper else "negative")])
+    return 0.0 if row < 0 else max(float(view.answers.dc.adjoint([row])[0, row].real), 0.0)
 
 
 def _worst_frequency(view: View) -> float | None:

@@ -36,6 +36,7 @@ from railguard.analysis.surroundings import (
     bridge_resistors,
     passive_view,
 )
+from railguard.analysis.thermal import bias_current
 from railguard.circuit.model import GROUND, Element
 from railguard.settings.model import Settings
 from railguard.words import Use
@@ -237,7 +238,7 @@ def _spread(
         device = amplifier.match.device
         if device is not None:
             nuisances[amplifier.designator] = Nuisance(
-                device.offset_voltage.best or 0.0, device.bias_current.best or 0.0
+                device.offset_voltage.best or 0.0, bias_current(device, settings)
             )
     return spread(answers, prepared.elements, exempt, settings.tolerances, rails, nuisances)
 

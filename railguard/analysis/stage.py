@@ -172,6 +172,7 @@ class Supply(msgspec.Struct, frozen=True, kw_only=True):
 class Output(msgspec.Struct, frozen=True, kw_only=True):
     """The output's range. `level` is its DC level; `slew` the steepest demanded dv/dt, V/s.
 
+    rss     the worst range where all tolerances add as roots of squares
     offset  worst DC error at the output from offset and bias of this and all stages before, V
     """
 
@@ -179,6 +180,7 @@ class Output(msgspec.Struct, frozen=True, kw_only=True):
     level: float | None = None
     demand: Range = Range()
     worst: Range = Range()
+    rss: Range = Range()
     available: Range = Range()
     guaranteed: Range = Range()
     high: Bound = Bound(upper=True)

@@ -8,7 +8,7 @@ import numpy as np
 from railguard.analysis.allowed import allowed_inputs
 from railguard.analysis.filters import filter_of
 from railguard.analysis.inputs import inputs_of
-from railguard.analysis.loops import Margin, loop_of
+from railguard.analysis.loops import OPEN_BETA, Margin, loop_of
 from railguard.analysis.outputs import output_side
 from railguard.analysis.positive import with_thresholds
 from railguard.analysis.reach import band_of, gains_of, high_pass_of, is_ac_coupled, top_of
@@ -16,6 +16,7 @@ from railguard.analysis.recognise import Amplifier
 from railguard.analysis.solution import Solution, stated_use
 from railguard.analysis.stage import (
     Inputs,
+    Loop,
     Output,
     Part,
     Pin,
@@ -90,7 +91,11 @@ def _stage(
     unknown: dict[Part, Unknown] = {}
     supply = _supply(view, feeds, unknown)
     top = top_of(view)
-    loop = loop_of(amplifier, view.k, solution.swept, top, solution.margins.get(name, Margin()))
+    loop = Loop(band=top)
+    if name in solution.answers.network.outputs:
+        margin = solution.margins.get(name, Margin())
+        loop = loop_of(amplifier, view.k, solution.swept, top, margin)
+        loop = msgspec.structs.replace(loop, holds=_holds(view, loop, after))
     stated = stated_use(amplifier, settings)
     use = stated or worked_out_use(amplifier, solution.ways, loop, _other_inputs(view), rails)
     working = name not in solution.forced and name in solution.answers.network.outputs
@@ -140,6 +145,26 @@ def _stage(
         unknown=unknown,
         location=amplifier.element.location,
     )
+
+
+def _holds(view: View, loop: Loop, after: list[tuple[str, ...]]) -> tuple[str, ...]:
+    """Return the stages that hold this one's level where its own network does not."""
+    passive, amplifier = view.solution.passive, view.amplifier
+    branch = passive.network.outputs.get(amplifier.designator, -1)
+    if loop.dc != "negative" or branch < 0:
+        return ()
+    rows = [passive.network.row(amplifier.minus), passive.network.row(amplifier.plus)]
+    minus, plus = passive.dc.adjoint(rows)[:, branch].real
+    if minus - plus > OPEN_BETA:
+        return ()
+    names = [a.designator for a in view.solution.amplifiers]
+    reached, queue = set(), [view.k]
+    while queue:
+        for name in after[queue.pop()]:
+            if name not in reached:
+                reached.add(name)
+                queue.append(names.index(name))
+    return tuple(n for n in names if n in reached and n != amplifier.designator)
 
 
 def _share_at_minus(view: View) -> float | None:

@@ -40,6 +40,27 @@ def dissipation(
     return supply.total * iq + float(np.max(stage))
 
 
+DOUBLING = 10.0
+"""Kelvin in which the bias current of a field-effect input doubles: S. Franco, 3rd ed., ex. 5.3."""
+
+
+def bias_current(device: Device, settings: Settings) -> float:
+    """Return the worst bias current over the stated ambient range, A; 0 where none is listed.
+
+    The sheet's own value over temperature counts where it is listed; else that of a field-effect
+    input doubles every 10 K above 25 degrees Celsius.
+    """
+    hottest = settings.ambient[1] if settings.ambient is not None else ROOM
+    at_room = device.bias_current.best or 0.0
+    if hottest <= ROOM:
+        return at_room
+    if device.bias_current.hot is not None:
+        return max(device.bias_current.hot, at_room)
+    if device.technology not in ("jfet", "cmos"):
+        return at_room
+    return float(at_room * 2 ** ((hottest - ROOM) / DOUBLING))
+
+
 def package_heat(stages: Iterable[Stage]) -> dict[str, float | None]:
     """Return the power of each package, W: all its channels at their worst together.
 

@@ -59,6 +59,14 @@ class View:
         down = float(np.abs(spread.low[q]) @ spread.delta)
         return Range(low - down, high + up)
 
+    def rss(self, quantity: str) -> Range:
+        """Return its range with all of them adding as roots of squares."""
+        q, spread = self.at(quantity), self.solution.spread
+        low, high = self.range(quantity)
+        up = float(np.linalg.norm(spread.high[q] * spread.delta))
+        down = float(np.linalg.norm(spread.low[q] * spread.delta))
+        return Range(low - down, high + up)
+
     def why(self, quantity: str) -> Unknown | None:
         """Return why it is not fully known, or None."""
         things = [*self.spoil(quantity).dc, *self.spoil(quantity).ac]

@@ -46,6 +46,17 @@ _TOPICS = (
         "minor",
     ),
     _Topic(
+        "sources-fight",
+        "Two sources, or a source and an amplifier's output, that set one net to different levels.",
+        "Ideal sources in parallel have no common answer, and real ones burn.",
+        "critical",
+    ),
+    _Topic(
+        "no-solution",
+        "A circuit whose equations have no single answer.",
+        "What cannot be solved cannot be judged, so its stages are listed as not checked.",
+    ),
+    _Topic(
         "value-missing",
         "An element without a value, or with one that cannot be worked out.",
         "What has no value cannot be solved, and what hangs on it is not checked.",
