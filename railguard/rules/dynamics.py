@@ -5,6 +5,7 @@ from collections.abc import Iterator
 
 from railguard.analysis.stage import Bound, Design, Stage
 from railguard.rules.compose import breach_finding, missing_figure, open_point, stage_finding
+from railguard.rules.links import in_ring
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.severity import TABLE, Broken, breach, evidence
 from railguard.rules.wording import NO_SOURCE, device, limit_note, origin, sheet
@@ -154,6 +155,8 @@ def judge_coupling(stage: Stage, limits: Limits, design: Design) -> Iterator[Out
     corner, bottom = stage.high_pass, stage.band.low
     if stage.use != "linear" or not corner or not bottom:
         return
+    if stage.filter is not None or in_ring(stage, design):
+        return  # a filter's own corner is meant
     allowed = limits["share"] * bottom
     if corner <= allowed:
         return
@@ -185,7 +188,8 @@ COUPLING = Rule(
     judges="The corner coupling capacitors give against the bottom of the stated band.",
     reason="At its corner a coupling takes 3 dB, and the corners of several stages add up.",
     source=NO_SOURCE,
-    silent="Signals whose band begins at DC or is not stated.",
+    silent="Signals whose band begins at DC or is not stated; filter stages and stages in a ring, "
+    "whose corner is meant.",
     limits=(
         Limit(
             name="share",
@@ -198,4 +202,77 @@ COUPLING = Rule(
     judge=judge_coupling,
 )
 
-RULES = (LOOP_GAIN, SLEW, COUPLING)
+# --- dynamics-filter
+
+
+def judge_filter(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome]:
+    """Judge the gain-bandwidth product against what a filter stage needs."""
+    filtered, family = stage.filter, stage.family
+    if filtered is None or stage.use != "linear":
+        return
+    gap = None
+    if family is not None and family.gain_bandwidth.best is None:
+        gap = missing_figure(stage, "gain-bandwidth product", "gain_bandwidth")
+    yield from open_point("dynamics-filter", stage, ("device",), gap)
+    if family is None or family.gain_bandwidth.best is None:
+        return
+    figure, product = family.gain_bandwidth, family.gain_bandwidth.best
+    needed = limits["factor"] * max(abs(filtered.gain), 1.0) * max(filtered.q, 1.0)
+    needed *= filtered.frequency
+    if product >= needed:
+        return
+    basis = figure.guaranteed_basis if figure.guaranteed is not None else figure.typical_basis
+    row: Broken = "guaranteed" if product < limits["far-share"] * needed else "reserve"
+    yield stage_finding(
+        "dynamics-filter",
+        stage,
+        TABLE[row][evidence(basis)],
+        f"{stage.schematic} is a {filtered.kind} at {si(filtered.frequency, 'Hz')} with a Q of "
+        f"{si(filtered.q, '')} and a gain of {si(filtered.gain, '')}, which wants a gain-bandwidth "
+        f"product of {si(needed, 'Hz')}; {device(stage)} has {si(product, 'Hz')} "
+        f"({origin(basis)}), so frequency and Q come out lower than drawn.",
+        nets=(stage.output.net,),
+        demand=needed,
+        limit=product,
+        margin=product - needed,
+        unit="Hz",
+        basis=("netlist", basis),
+        remedy=f"Fit a device of {si(needed, 'Hz')}, or share Q and gain among more stages.",
+        source="S. Franco, Design with Operational Amplifiers, 3rd ed., ex. 6.12 for the "
+        "band-pass; Op Amps for Everyone, ch. 16, from memory",
+    )
+
+
+FILTER = Rule(
+    name="dynamics-filter",
+    family="dynamics",
+    looks_at="stage",
+    judges="The gain-bandwidth product of a second-order filter stage against its frequency, Q and "
+    "gain.",
+    reason="A filter's poles are where the drawing says only with loop gain to spare at its "
+    "frequency, and the more the higher its Q.",
+    source="S. Franco, Design with Operational Amplifiers, 3rd ed., ch. 6; Op Amps for Everyone, "
+    "ch. 16, from memory",
+    silent="Stages that are no Sallen-Key or multiple-feedback filter. Devices whose "
+    "gain-bandwidth product is not listed are listed as not checked.",
+    limits=(
+        Limit(
+            name="factor",
+            default=100.0,
+            unit="",
+            meaning="gain-bandwidth product wanted, as a multiple of frequency times Q times gain",
+            source="Op Amps for Everyone, ch. 16, from memory; 200 for a band-pass within 1 %: "
+            "S. Franco, ex. 6.12",
+        ),
+        Limit(
+            name="far-share",
+            default=0.1,
+            unit="",
+            meaning="share of that below which it counts like a guaranteed limit",
+            source=NO_SOURCE,
+        ),
+    ),
+    judge=judge_filter,
+)
+
+RULES = (LOOP_GAIN, SLEW, COUPLING, FILTER)

@@ -40,6 +40,19 @@ def upstream(stage: Stage, design: Design) -> frozenset[str]:
     return frozenset(found - {stage.designator})
 
 
+def in_ring(stage: Stage, design: Design) -> bool:
+    """Tell whether a stage's output comes back to its own inputs through other stages."""
+    waiting, seen = list(stage.after), set()
+    while waiting:
+        name = waiting.pop()
+        if name == stage.designator:
+            return True
+        before = None if name in seen else stage_named(name, design)
+        seen.add(name)
+        waiting += before.after if before is not None else ()
+    return False
+
+
 def _shared_designator(cause: Finding, finding: Finding, design: Design) -> str:
     return next((d for d in cause.designators if d in finding.designators), "")
 
@@ -193,7 +206,10 @@ def _same_side(cause: Finding, finding: Finding, design: Design) -> str:
 
 _RUNNING = (
     "headroom",
-    "drive",
+    "drive-current",
+    "drive-power",
+    "drive-capacitive",
+    "drive-input-above-rail",
     "dynamics",
     "stability",
     "bias-level",
@@ -223,7 +239,7 @@ LINKS: tuple[Link, ...] = (
     Link(("supply-reversed",), ("supply-package-split",), _shared_designator),
     Link(
         ("drive-joined", "drive-tied"),
-        ("headroom", "drive-current", "drive-power"),
+        (*_RUNNING, "feedback-open", "feedback-reversed"),
         _shared_designator,
     ),
     Link(

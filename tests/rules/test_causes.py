@@ -61,6 +61,8 @@ def test_findings_without_a_common_cause_stay_apart():
         ("bias-no-dc-path", "headroom-input"),
         ("drive-joined", "drive-current"),
         ("drive-tied", "headroom-output"),
+        ("drive-tied", "stability-load-capacitance"),
+        ("drive-joined", "feedback-open"),
         ("feedback-high", "stability-phase-margin"),
         ("feedback-high", "bias-current-error"),
         ("headroom-input", "headroom-phase-reversal"),

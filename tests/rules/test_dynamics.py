@@ -2,11 +2,12 @@
 
 import pytest
 
-from railguard.analysis.stage import Loop, Range
-from railguard.rules.dynamics import COUPLING, LOOP_GAIN, SLEW
+from railguard.analysis.stage import Filter, Loop, Range
+from railguard.rules.dynamics import COUPLING, FILTER, LOOP_GAIN, SLEW
 from tests.rules.stages import (
     FAMILY,
     changed,
+    design,
     figure,
     findings,
     open_points,
@@ -105,3 +106,54 @@ def test_a_band_from_dc_or_unknown_is_not_judged():
     assert outcomes(COUPLING, coupled(30.0, None)) == []
     assert outcomes(COUPLING, coupled(30.0, 0.0)) == []
     assert outcomes(COUPLING, coupled(None)) == []
+
+
+def test_a_filters_own_corner_is_meant():
+    """A filter stage, or one in a ring of stages, is not called a coupling."""
+    one = changed(coupled(30.0), filter=Filter("high-pass", 100.0, 0.7))
+    assert outcomes(COUPLING, one) == []
+    ring = design(
+        changed(coupled(30.0), after=("XU2",)), stage("XU2", after=("XU3",)),
+        stage("XU3", after=("XU1",)),
+    )  # fmt: skip
+    assert outcomes(COUPLING, ring.stages[0], ring) == []
+    chain = design(changed(coupled(30.0), after=("XU2",)), stage("XU2"))
+    assert len(findings(COUPLING, chain.stages[0], chain)) == 1
+
+
+def filtering(hertz, q=0.707, gain=1.0, **fields):
+    """Make a filter stage of a device of 3 MHz."""
+    return stage(filter=Filter("low-pass", hertz, q, gain), **fields)
+
+
+@pytest.mark.parametrize(
+    ("hertz", "q", "gain", "severity"),
+    [
+        (1e3, 0.707, 1.0, None),
+        (30e3, 0.707, 1.0, None),
+        (31e3, 0.707, 1.0, "minor"),
+        (10e3, 4.0, 1.0, "minor"),
+        (10e3, 0.707, 4.0, "minor"),
+        (1e5, 4.0, 1.0, "major"),
+    ],
+)
+def test_a_filter_wants_bandwidth(hertz, q, gain, severity):
+    """A hundred times frequency, Q and gain are wanted; a tenth of that is far too little."""
+    assert [f.severity for f in findings(FILTER, filtering(hertz, q, gain))] == (
+        [severity] if severity else []
+    )
+
+
+def test_a_filter_says_what_it_is_and_wants():
+    """Frequency, Q, gain and the product wanted stand in the sentence."""
+    (found,) = findings(FILTER, filtering(10e3, 4.0))
+    assert found.message.startswith("U1 is a low-pass at 10 kHz with a Q of 4 and a gain of 1, ")
+    assert "wants a gain-bandwidth product of 4 MHz; a TL072 has 3 MHz" in found.message
+
+
+def test_a_filter_of_unknown_speed_is_listed():
+    """An unlisted product and an unknown device are not checked; other stages are not judged."""
+    bare = changed(FAMILY, gain_bandwidth=figure())
+    assert len(open_points(FILTER, filtering(1e3, family=bare))) == 1
+    assert len(open_points(FILTER, filtering(1e3, family=None))) == 1
+    assert outcomes(FILTER, stage()) == []

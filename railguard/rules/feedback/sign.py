@@ -30,7 +30,7 @@ def judge_reversed(stage: Stage, limits: Limits, design: Design) -> Iterator[Out
     loop = stage.loop
     gap = NO_LOOP if loop.dc is None else None
     yield from open_point("feedback-reversed", stage, ("loop",), gap)
-    if loop.dc != "positive":
+    if "loop" in stage.unknown or loop.dc != "positive":
         return
     severity, why = _evidence(stage, limits["whole-beta"])
     if severity == "critical":
@@ -142,7 +142,7 @@ def judge_open(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome
         return
     gap = NO_LOOP if stage.loop.dc is None else None
     yield from open_point("feedback-open", stage, ("loop",), gap)
-    if stage.loop.dc != "open" or stage.loop.holds:
+    if "loop" in stage.unknown or stage.loop.dc != "open" or stage.loop.holds:
         return
     if stage.use != "linear":
         if not stage.use_stated and stage.use == "comparator":
@@ -156,8 +156,8 @@ def _bare_comparator(stage: Stage) -> Outcome:
         "feedback-open",
         stage,
         "remark",
-        f"{stage.schematic} works without feedback, as a comparator by what it drives; without "
-        "hysteresis it chatters on a slow or noisy input.",
+        f"{stage.schematic} has no feedback at rest; by what it drives it is taken for a "
+        "comparator. Without hysteresis one chatters on a slow or noisy input.",
         nets=(stage.output.net,),
         remedy=f"If that is meant, {_use_hint(stage)}.",
         source=SIGN_SOURCE,

@@ -165,7 +165,12 @@ def _output_remedy(
     if broken.margin < 0 and reached_unloaded(stage, broken.demand, bound.upper):
         load = "lighten its load"
     rail_words = other_rail(stage, bound.upper, -broken.margin, both)
-    return sentence(load, gain, shift, rail_words, device)
+    other = ""
+    if not (load or gain or shift or rail_words or device):
+        side = "below" if bound.upper else "above"
+        other = f"attenuate or shift its signal so that the output stays {side} "
+        other += si(broken.limit, "V")
+    return sentence(load, gain, shift, rail_words, device, other)
 
 
 OUTPUT = Rule(

@@ -86,6 +86,14 @@ def test_a_loop_that_could_not_be_solved_is_not_checked(rule):
     assert [p.why for p in open_points(rule, told)] == ["a thyristor"]
 
 
+@pytest.mark.parametrize("rule", [REVERSED, OPEN])
+def test_what_could_not_be_solved_is_not_judged_as_well(rule):
+    """A loop the analysis calls unknown draws an open point and no finding."""
+    for dc in ("open", "positive"):
+        one = stage(loop=Loop(dc=dc), unknown={"loop": Unknown("tied to a rail", "see it")})
+        assert findings(rule, one) == []
+
+
 def test_no_feedback_at_all_is_critical():
     """Nothing leads back: the output stands at a rail."""
     (found,) = findings(OPEN, stage(loop=Loop(dc="open"), feedback=Feedback()))

@@ -145,6 +145,18 @@ def test_a_level_outside_is_moved_not_scaled():
     assert "ove the output's level (11 V) below 10.5 V" in found.remedy
 
 
+def test_there_is_always_a_remedy():
+    """Where no gain, rail or device would do, the signal has to be moved."""
+    output = Output(
+        net="out",
+        level=0.0,
+        high=bound(True, demand=4.0, level=0.0, span=12.0, typical=4.9, absolute=5.0),
+        low=bound(False, demand=-8.0, level=0.0, span=12.0, typical=0.02, absolute=0.0),
+    )
+    (found,) = findings(OUTPUT, stage(output=output, supply=single()))
+    assert found.remedy == ("Attenuate or shift its signal so that the output stays above 0 V.")
+
+
 def test_an_unknown_device_is_minor_and_not_checked():
     """Common practice judges what nobody knows, minor at most, and the stage stays open."""
     one = unknown_device(
