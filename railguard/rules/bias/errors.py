@@ -91,6 +91,7 @@ def judge_current(stage: Stage, limits: Limits, design: Design) -> Iterator[Outc
     row: Broken = "typical" if far else "reserve"
     bases = (span_basis, current.basis)
     of = "what it is asked for" if span_basis != "assumed" else "its supply"
+    of = "what it reaches" if stage.ac_coupled and stage.output.available.span else of
     through = f" ({listed(stage.inputs.plus.path[:3])})" if stage.inputs.plus.path else ""
     yield stage_finding(
         "bias-current-error",
