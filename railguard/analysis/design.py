@@ -13,7 +13,7 @@ from railguard.analysis.stages import stages_of, unsolved
 from railguard.analysis.supplies import Feed, feeds, supply_nets
 from railguard.analysis.surroundings import MID_HERTZ
 from railguard.analysis.unseen import spoiled, unseen_things
-from railguard.circuit.model import Circuit
+from railguard.circuit.model import GROUND, Circuit
 from railguard.devices.catalogue import Catalogue
 from railguard.errors import SolveError
 from railguard.notices import Problem, Remark
@@ -57,7 +57,12 @@ def analyse(circuit: Circuit, settings: Settings, catalogue: Catalogue) -> Desig
         packages=packages_of(found.amplifiers),
         stages=stages,
         problems=tuple(problems),
-        remarks=(*circuit.remarks, *found.remarks, *_missing(prepared, settings)),
+        remarks=(
+            *circuit.remarks,
+            *found.remarks,
+            *_missing(prepared, settings),
+            *(_islands(solution) if solution is not None else ()),
+        ),
     )  # fmt: skip
 
 
@@ -79,6 +84,20 @@ def _stages(
     return stages_of(solution, fed, settings, flags, frozenset(fed))
 
 
+def _islands(solution: Solution) -> list[Remark]:
+    """Name the nets between capacitors: they have no DC level, whatever was solved round them."""
+    found = []
+    inputs = {net for a in solution.amplifiers for net in (a.plus, a.minus)}
+    for net in sorted(solution.answers.network.floating - inputs):
+        on_net = [e for e in solution.ways.around.get(net, ()) if e.kind != "K"]
+        if len(on_net) > 1 and all(e.kind == "C" for e in on_net):
+            names = " and ".join(e.designator for e in on_net[:3])
+            found.append(
+                Remark(f"Capacitors in series ({names}) leave net {net} without DC level.")
+            )
+    return found
+
+
 def _missing(prepared: Prepared, settings: Settings) -> list[Remark]:
     """Say once what the user's file states of nets this deck does not have."""
     if not prepared.missing:
@@ -91,8 +110,11 @@ def _missing(prepared: Prepared, settings: Settings) -> list[Remark]:
 def _conflicts(solution: Solution) -> list[Problem]:
     """Turn voltages that contradict each other into problems, named by net and element."""
     problems = []
+    amplifiers = {a.designator for a in solution.amplifiers}
     for designator, *nets in solution.answers.network.conflicts:
-        where = " and ".join(dict.fromkeys(nets))
+        if designator in amplifiers:
+            continue  # two outputs on one net are a matter of drive
+        where = " and ".join(n for n in dict.fromkeys(nets) if n != GROUND)
         problems.append(
             Problem(
                 rule="netlist-sources-fight",

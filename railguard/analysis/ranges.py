@@ -19,6 +19,10 @@ from railguard.analysis.transient import excursion
 QUANTITIES = ("output", "current", "plus", "minus", "positive", "negative")
 """Per amplifier: output volts, output amperes (out of the pin), both inputs, both supply pins."""
 
+LONGEST_PERIOD = 16
+"""Periods of the slowest sine within which the others must come round again."""
+SAMPLES_A_TURN = 64
+
 Index = npt.NDArray[np.int64]
 
 
@@ -129,6 +133,9 @@ def answer(
     answers = tuple(_tone(network, tone, rows, factors) for tone in tones)
     up = sum((a.up for a in answers), np.zeros(len(rows)))
     down = sum((a.down for a in answers), np.zeros(len(rows)))
+    together = _common_period(answers, rows)
+    if together is not None:
+        up, down = np.minimum(up, together[0]), np.minimum(down, together[1])
     slew = sum((a.slew for a in answers), np.zeros(len(rows)))
     return Answers(
         network=network,
@@ -149,6 +156,36 @@ def picked(x: Real, rows: Index) -> Real:
     values = np.array(x[rows])
     values[rows < 0] = 0.0
     return values
+
+
+def _common_period(answers: tuple[ToneAnswer, ...], rows: Index) -> tuple[Real, Real] | None:
+    """Return how far the sines of the deck really go within their common period, or None.
+
+    Only where every tone is one sine of one frequency and the period is short enough to follow:
+    elsewhere their peaks may meet, and the sum of the peaks stands.
+    """
+    hertz = [a.tone.frequencies[0] for a in answers]
+    lone = all(
+        len(a.tone.frequencies) == 1 and a.tone.wave is None and a.tone.basis == "netlist"
+        for a in answers
+    )
+    if len(answers) < 2 or not lone or min(hertz) <= 0:
+        return None
+    base = min(hertz)
+    for divisor in range(1, LONGEST_PERIOD + 1):
+        turns = [f * divisor / base for f in hertz]
+        if all(abs(t - round(t)) < 1e-6 * t for t in turns):
+            break
+    else:
+        return None
+    if max(turns) > LONGEST_PERIOD**2:
+        return None
+    time = np.arange(0.0, 1.0, 1.0 / (SAMPLES_A_TURN * round(max(turns))))
+    total = np.zeros((len(time), len(rows)))
+    for turn, a in zip(turns, answers, strict=True):
+        phasor = np.where(rows >= 0, a.worst[0].x[rows], 0)
+        total += np.real(np.exp(2j * np.pi * round(turn) * time)[:, None] * phasor[None, :])
+    return np.maximum(total.max(axis=0), 0.0), np.maximum(-total.min(axis=0), 0.0)
 
 
 def _tone(network: Network, tone: Tone, rows: Index, factors: dict[float, Factor]) -> ToneAnswer:

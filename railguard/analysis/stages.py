@@ -28,7 +28,7 @@ from railguard.analysis.stage import (
 from railguard.analysis.supplies import Feed
 from railguard.analysis.surroundings import feedback_of, output_load
 from railguard.analysis.thermal import dissipation, junction, package_heat
-from railguard.analysis.topology import topology_of
+from railguard.analysis.topology import instrumentation, topology_of
 from railguard.analysis.unseen import Spoiled
 from railguard.analysis.uses import worked_out_use
 from railguard.analysis.view import View
@@ -53,9 +53,14 @@ def stages_of(
     drafts = [_stage(view, feeds, settings, rails, after) for view in views]
     allowed = allowed_inputs(solution, drafts)
     heat = package_heat(drafts)
+    names = instrumentation(
+        {stage.designator: stage.topology for stage in drafts},
+        {stage.designator: stage.after for stage in drafts},
+    )
     return tuple(
         msgspec.structs.replace(
             stage,
+            topology=names[stage.designator],
             allowed=allowed.get(stage.designator),
             dissipation=heat[stage.package],
             junction=junction(stage.family, heat[stage.package], settings),

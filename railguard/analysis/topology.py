@@ -97,6 +97,23 @@ def topology_of(amplifier: Amplifier, ways: Ways, loop: Loop, rails: frozenset[s
     return "non-inverting" if amplifier.plus != GROUND else "other"
 
 
+def instrumentation(names: dict[str, str], after: dict[str, tuple[str, ...]]) -> dict[str, str]:
+    """Rename the three amplifiers of an instrumentation amplifier.
+
+    names  topology by designator; two stages that reach each other's inputs and a difference
+           stage behind both are one instrumentation amplifier
+    """
+    renamed = {}
+    for name, before in after.items():
+        pairs = [
+            p for p in before if any(p in after[q] and q in after[p] for q in before if q != p)
+        ]
+        if names[name] == "difference" and len(pairs) == 2 and name not in after[pairs[0]]:
+            renamed[name] = "instrumentation amplifier, output"
+            renamed.update(dict.fromkeys(pairs, "instrumentation amplifier, input"))
+    return {**names, **renamed}
+
+
 def _direct(amplifier: Amplifier, ways: Ways) -> set[str]:
     between = {amplifier.output, amplifier.minus}
     return {

@@ -128,3 +128,16 @@ def test_unknown_load_leaves_the_current_open(design):
     assert found.output.demand.high == pytest.approx(1.0, rel=1e-3)
     assert "J1" in found.unknown["current"].why
     assert "output" not in found.unknown
+
+
+def test_sines_with_a_common_period_keep_their_real_peak(stage):
+    """sin(t) + sin(2t) never reaches two: its largest value is 1.7602."""
+    cards = """
+V1 a 0 SIN(0 1 1k)
+V2 b 0 SIN(0 1 2k)
+R1 a n 10k
+R2 b n 10k
+R3 n out 10k
+XU1 0 n vp vn out TL072
+"""
+    assert stage(cards).output.demand.high == pytest.approx(1.7602, rel=1e-3)
