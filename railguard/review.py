@@ -14,8 +14,9 @@ from railguard.deck.files import Bounds, Deck, deck_from_text, read_deck
 from railguard.devices import catalogue
 from railguard.devices.names import schematic_name
 from railguard.notices import NotChecked, Problem
-from railguard.rules import waivers
+from railguard.rules import third_party, waivers
 from railguard.rules.finding import Finding
+from railguard.rules.protocol import Rule
 from railguard.rules.registry import judge, known_limits
 from railguard.settings import directives, spelling
 from railguard.settings import file as settings_file
@@ -74,6 +75,7 @@ def review(
     as_of: dt.date | None = None,
     root: Path | None = None,
     bounds: Bounds | None = None,
+    plugins: bool = True,
 ) -> Review:
     """Review one or several netlists.
 
@@ -83,6 +85,7 @@ def review(
               beside each netlist and upwards to its repository, or none for a text
     as_of     the day waivers are judged on; None: today
     root      the folder includes must stay in; None: each deck's own folder
+    plugins   False leaves out the rules that other packages bring
 
     Raises:
         SettingsError: the settings file cannot be obeyed.
@@ -90,12 +93,13 @@ def review(
     """
     sources: list[object] = list(source) if isinstance(source, list | tuple) else [source]
     stated = settings_file.load(Path(settings)) if isinstance(settings, str | Path) else settings
-    run = _Run(as_of or dt.date.today())
+    extra = third_party.installed() if plugins else third_party.Installed()
+    run = _Run(as_of or dt.date.today(), extra.rules)
     designs = []
     for one in sources:
         own = run.prepared(stated if stated is not None else _found_beside(one))
         deck = _deck(one, root, bounds or Bounds())
-        found, matched = review_deck(deck, own)
+        found, matched = review_deck(deck, own, extra)
         run.took(own, matched, found.path)
         designs.append(found)
     return Review(
@@ -106,16 +110,17 @@ def review(
 class _Run:
     """What must be known over all decks of a run: which waivers were of use."""
 
-    def __init__(self, day: dt.date) -> None:
+    def __init__(self, day: dt.date, extra: tuple[Rule, ...]) -> None:
         self.first: Settings | None = None
         self._day = day
+        self._limits = known_limits(extra)
         self._used: dict[str, tuple[Settings, set[int], list[str]]] = {}
 
     def prepared(self, settings: Settings) -> Settings:
         """Set the day waivers are judged on, and check the names once per settings file."""
         settings = msgspec.structs.replace(settings, as_of=self._day)
         if settings.file not in self._used:
-            check_names(settings, known_limits())
+            check_names(settings, self._limits)
             self._used[settings.file] = (settings, set(), [])
         self.first = self.first or settings
         return settings
@@ -152,16 +157,22 @@ def _deck(source: object, root: Path | None, bounds: Bounds) -> Deck:
     return deck_from_text(str(source), bounds=bounds)
 
 
-def review_deck(deck: Deck, stated: Settings) -> tuple[DesignReview, set[int]]:
+def review_deck(
+    deck: Deck, stated: Settings, extra: third_party.Installed | None = None
+) -> tuple[DesignReview, set[int]]:
     """Review one deck that has been read; also return the indexes of waivers that matched.
 
     stated  what the user's file says; the deck's own comment cards are laid under it
+    extra   rules of other packages
     """
+    extra = extra or third_party.Installed()
     devices = catalogue.load(stated.devices)
     circuit = flatten(deck, keeps_closed(devices))
-    settings, circuit = _with_directives(stated, circuit)
+    settings, circuit = _with_directives(stated, circuit, extra.rules)
     design = analyse(circuit, settings, devices)
-    judged = judge(design)
+    if extra.remarks:
+        design = msgspec.structs.replace(design, remarks=(*design.remarks, *extra.remarks))
+    judged = judge(design, extra.rules)
     findings, matched = waivers.apply(judged.findings, settings, circuit.path, settings.as_of)
     # A waiver in a comment card speaks of this deck alone, so it is left over here or nowhere.
     own = waivers.stale(settings, matched | frozenset(range(len(stated.waivers))))
@@ -178,9 +189,11 @@ def review_deck(deck: Deck, stated: Settings) -> tuple[DesignReview, set[int]]:
     return msgspec.structs.replace(result, verdict=_verdict(result, settings)), set(matched)
 
 
-def _with_directives(stated: Settings, circuit: Circuit) -> tuple[Settings, Circuit]:
+def _with_directives(
+    stated: Settings, circuit: Circuit, extra: tuple[Rule, ...]
+) -> tuple[Settings, Circuit]:
     """Lay the deck's comment cards under the user's file, all in the netlist's own spelling."""
-    settings, complaints = directives.apply(stated, circuit.directives, known_limits())
+    settings, complaints = directives.apply(stated, circuit.directives, known_limits(extra))
     nets = dict.fromkeys(net for element in circuit.elements for net in element.nets)
     designators = [element.designator for element in circuit.elements]
     settings, misspelt = spelling.respelt(settings, nets, designators, schematic_name)

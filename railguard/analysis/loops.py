@@ -64,6 +64,16 @@ class Margin(msgspec.Struct, frozen=True):
     most: float | None = None
 
 
+def conducting(elements: Iterable[Element]) -> tuple[Element, ...]:
+    """Replace diodes by resistances, so that feedback that runs through them shows its sign."""
+    return tuple(
+        Element(kind="R", designator=e.designator, nets=e.nets[:2], value=BASE_OHMS)
+        if e.kind == "D" and e.fitted and len(e.nets) >= 2
+        else e
+        for e in elements
+    )
+
+
 def small_signal(elements: Iterable[Element]) -> tuple[tuple[Element, ...], bool]:
     """Replace transistors by what gives a loop its sign; tell whether there were any."""
     result: list[Element] = []

@@ -15,6 +15,7 @@ from railguard.analysis.loops import (
     LoopSweep,
     Margin,
     bounding_parasitics,
+    conducting,
     crossing,
     crossover_margins,
     known_parasitics,
@@ -37,6 +38,7 @@ from railguard.analysis.surroundings import (
     passive_view,
 )
 from railguard.analysis.thermal import bias_current
+from railguard.analysis.uses import charges_itself
 from railguard.circuit.model import GROUND, Element
 from railguard.settings.model import Settings
 from railguard.words import Use
@@ -47,7 +49,7 @@ class Solution(msgspec.Struct, frozen=True, kw_only=True):
 
     forced   amplifiers without a working loop: their output stands at either limit
     margins  phase margin by amplifier
-    bent     amplifiers whose loop runs through a transistor
+    through  amplifiers whose feedback runs through diodes: its sign is known, their range is not
     """
 
     prepared: Prepared
@@ -58,6 +60,7 @@ class Solution(msgspec.Struct, frozen=True, kw_only=True):
     dc_map: DcMap
     swept: LoopSweep
     forced: frozenset[str]
+    through: frozenset[str]
     margins: Mapping[str, Margin]
     spread: Spread
     mid: Factor
@@ -82,7 +85,9 @@ def solve(
     network = Network(prepared.elements, amplifiers, extra=known)
     loop_network = Network(elements, amplifiers, extra=known) if bent else network
     signs = return_ratios(loop_network, np.zeros(1))[0].real
-    forced = _without_loop(amplifiers, signs, settings) | frozenset(clamps)
+    ways = Ways(prepared.elements, amplifiers)
+    relaxing = {a.designator for a in amplifiers if charges_itself(a, ways)}
+    forced = _without_loop(amplifiers, signs, settings) | frozenset(clamps) | relaxing
     if forced:
         network = Network(prepared.elements, amplifiers, forced, known)
         loop_network = Network(elements, amplifiers, forced, known) if bent else network
@@ -93,21 +98,38 @@ def solve(
         answers = answer(network, amplifiers, prepared, draws, held)
     tops = tuple(sorted({t.top for t in prepared.tones if t.top > 0}))
     swept = sweep(loop_network, tops)
+    signs, through = _through_diodes(elements, amplifiers, signs)
     swept = msgspec.structs.replace(swept, dc=signs)
     return Solution(
         prepared=prepared,
         amplifiers=amplifiers,
         answers=answers,
         passive=passive_view(prepared.elements, amplifiers),
-        ways=Ways(prepared.elements, amplifiers),
+        ways=ways,
         dc_map=DcMap(prepared.elements, amplifiers, _stated(prepared, feeds, settings)),
         swept=swept,
         forced=forced,
+        through=through,
         margins=_margins(swept, elements, amplifiers, forced),
         spread=_spread(answers, prepared, amplifiers, feeds, settings),
         mid=factor(network, MID_HERTZ),
         tops=tops,
     )
+
+
+def _through_diodes(
+    elements: tuple[Element, ...], amplifiers: tuple[Amplifier, ...], signs: Real
+) -> tuple[Real, frozenset[str]]:
+    """Give open loops the sign their diodes give them once they conduct (rectifiers, limiters)."""
+    gains = np.array([open_loop_gain(a) for a in amplifiers])
+    is_open = np.abs(signs) / gains < OPEN_BETA
+    if not is_open.any() or not any(e.kind == "D" for e in elements):
+        return signs, frozenset()
+    network = Network(conducting(elements), amplifiers)
+    conducted = return_ratios(network, np.zeros(1))[0].real
+    closed = is_open & (np.abs(conducted) / gains >= OPEN_BETA)
+    names = frozenset(a.designator for a, c in zip(amplifiers, closed, strict=True) if c)
+    return np.where(closed, conducted, signs), names
 
 
 def _without_loop(

@@ -97,7 +97,11 @@ def _stage(
     supply = _supply(view, feeds, unknown)
     top = top_of(view)
     loop = Loop(band=top)
-    if name in solution.answers.network.outputs:
+    if name in solution.through:
+        sign = solution.swept.dc[view.k]
+        loop = Loop(dc="negative" if sign > 0 else "positive", band=top)
+        unknown["output"] = unknown["current"] = unknown["loop"] = _THROUGH_DIODES
+    elif name in solution.answers.network.outputs:
         margin = solution.margins.get(name, Margin())
         loop = loop_of(amplifier, view.k, solution.swept, top, margin)
         loop = msgspec.structs.replace(loop, holds=_holds(view, loop, after))
@@ -150,6 +154,12 @@ def _stage(
         unknown=unknown,
         location=amplifier.element.location,
     )
+
+
+_THROUGH_DIODES = Unknown(
+    "its feedback runs through diodes, which the built-in solver does not follow",
+    "--engine ngspice",
+)
 
 
 def _holds(view: View, loop: Loop, after: list[tuple[str, ...]]) -> tuple[str, ...]:

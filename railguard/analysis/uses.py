@@ -26,10 +26,10 @@ def worked_out_use(
     """
     if _goes_nowhere(amplifier, ways, inputs) and not _is_driven(amplifier, ways, rails):
         return "unused"
+    if loop.dc in ("positive", "negative") and charges_itself(amplifier, ways):
+        return "oscillator"
     if loop.dc == "negative":
         return "linear"
-    if loop.dc == "positive" and _charges_itself(amplifier, ways):
-        return "oscillator"
     return "comparator" if _only_switches(amplifier, ways, inputs) else "linear"
 
 
@@ -54,12 +54,16 @@ def _is_driven(amplifier: Amplifier, ways: Ways, rails: frozenset[str]) -> bool:
     return False
 
 
-def _charges_itself(amplifier: Amplifier, ways: Ways) -> bool:
+def charges_itself(amplifier: Amplifier, ways: Ways) -> bool:
+    """Tell whether an output charges a capacitor at the inverting input and sets the other one."""
     if amplifier.minus in ways.held:
         return False  # every capacitor to ground stands on a grounded input's net
     on_minus = [e for e in ways.around.get(amplifier.minus, ()) if len(e.nets) >= 2]
     charged = any(e.kind == "C" and GROUND in e.nets for e in on_minus)
-    return charged and any(e.kind == "R" and amplifier.output in e.nets for e in on_minus)
+    by_output = any(e.kind == "R" and amplifier.output in e.nets for e in on_minus)
+    on_plus = ways.around.get(amplifier.plus, ())
+    turned = any(e.kind == "R" and amplifier.output in e.nets for e in on_plus)
+    return charged and by_output and turned
 
 
 def _only_switches(amplifier: Amplifier, ways: Ways, inputs: frozenset[str]) -> bool:
