@@ -7,6 +7,7 @@ import msgspec
 
 from railguard.analysis.design import analyse
 from railguard.analysis.recognise import keeps_closed
+from railguard.analysis.solution import Options
 from railguard.analysis.stage import Design
 from railguard.circuit.flatten import flatten
 from railguard.circuit.model import Circuit
@@ -76,6 +77,7 @@ def review(
     root: Path | None = None,
     bounds: Bounds | None = None,
     plugins: bool = True,
+    options: Options | None = None,
 ) -> Review:
     """Review one or several netlists.
 
@@ -86,6 +88,7 @@ def review(
     as_of     the day waivers are judged on; None: today
     root      the folder includes must stay in; None: each deck's own folder
     plugins   False leaves out the rules that other packages bring
+    options   how the corners of tolerance are worked out; None: by sensitivities
 
     Raises:
         SettingsError: the settings file cannot be obeyed.
@@ -99,7 +102,7 @@ def review(
     for one in sources:
         own = run.prepared(stated if stated is not None else _found_beside(one))
         deck = _deck(one, root, bounds or Bounds())
-        found, matched = review_deck(deck, own, extra)
+        found, matched = review_deck(deck, own, extra, options)
         run.took(own, matched, found.path)
         designs.append(found)
     return Review(
@@ -158,7 +161,10 @@ def _deck(source: object, root: Path | None, bounds: Bounds) -> Deck:
 
 
 def review_deck(
-    deck: Deck, stated: Settings, extra: third_party.Installed | None = None
+    deck: Deck,
+    stated: Settings,
+    extra: third_party.Installed | None = None,
+    options: Options | None = None,
 ) -> tuple[DesignReview, set[int]]:
     """Review one deck that has been read; also return the indexes of waivers that matched.
 
@@ -169,7 +175,7 @@ def review_deck(
     devices = catalogue.load(stated.devices)
     circuit = flatten(deck, keeps_closed(devices))
     settings, circuit = _with_directives(stated, circuit, extra.rules)
-    design = analyse(circuit, settings, devices)
+    design = analyse(circuit, settings, devices, options)
     if extra.remarks:
         design = msgspec.structs.replace(design, remarks=(*design.remarks, *extra.remarks))
     judged = judge(design, extra.rules)

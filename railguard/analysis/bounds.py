@@ -1,5 +1,7 @@
 """Demand against limit on one side of one quantity, nominal and at the corners."""
 
+from collections.abc import Callable
+
 import numpy as np
 
 from railguard.analysis.available import Reach
@@ -9,6 +11,9 @@ from railguard.analysis.stage import Bound, Pair
 from railguard.words import Basis
 
 CULPRITS = 3
+
+Exact = Callable[[Real], tuple[float, float]]
+"""Solves at given shares of all tolerances: (demand, how far the limit has moved)."""
 
 
 def bound(
@@ -24,8 +29,11 @@ def bound(
     spread: Spread,
     moves: Real,
     limit_moves: Real,
+    exact: Exact | None = None,
 ) -> Bound:
     """Build a bound.
+
+    exact        solves a corner anew instead of following the derivatives to it
 
     moves        derivative of the demand's end to every parameter, shape (parameters,)
     limit_moves  the same of the limit: what moves both together leaves the margin alone
@@ -35,9 +43,9 @@ def bound(
     culprits: tuple[str, ...] = ()
     if limit is not None and len(spread.delta):
         if spread.stated.any():
-            stated = _corner(upper, demand, limit, moves, limit_moves, spread, spread.stated)
+            stated = _corner(upper, demand, limit, moves, limit_moves, spread, spread.stated, exact)
         everything = np.ones(len(spread.delta), dtype=bool)
-        default = _corner(upper, demand, limit, moves, limit_moves, spread, everything)
+        default = _corner(upper, demand, limit, moves, limit_moves, spread, everything, exact)
         weight = np.abs(limit_moves - moves) * spread.delta
         order = np.argsort(-weight)[:CULPRITS]
         culprits = tuple(dict.fromkeys(spread.parameters[i].name for i in order if weight[i] > 0))
@@ -68,8 +76,12 @@ def _corner(
     limit_moves: Real,
     spread: Spread,
     mask: Flags,
+    exact: Exact | None,
 ) -> Pair:
     """Return demand and limit where tolerances leave the least room between them."""
     room = (limit_moves - moves) if upper else (moves - limit_moves)
+    if exact is not None:
+        reached, moved = exact(-np.sign(room) * mask)
+        return Pair(reached, limit + moved)
     shift = -np.sign(room) * spread.delta * mask
     return Pair(float(demand + moves @ shift), float(limit + limit_moves @ shift))

@@ -6,7 +6,7 @@ from railguard.analysis.rails import packages_of, rails_of
 from railguard.analysis.ranges import Clamp
 from railguard.analysis.recognise import Recognised, recognise
 from railguard.analysis.signals import Prepared, prepare
-from railguard.analysis.solution import Solution, solve
+from railguard.analysis.solution import Options, Solution, solve
 from railguard.analysis.solve import factor
 from railguard.analysis.stage import Design, Stage
 from railguard.analysis.stages import stages_of, unsolved
@@ -20,7 +20,9 @@ from railguard.notices import Problem, Remark
 from railguard.settings.model import Settings
 
 
-def analyse(circuit: Circuit, settings: Settings, catalogue: Catalogue) -> Design:
+def analyse(
+    circuit: Circuit, settings: Settings, catalogue: Catalogue, options: Options | None = None
+) -> Design:
     """Work a circuit out: who is an op-amp, what feeds it, what is asked of it, what it can do."""
     found = recognise(circuit, catalogue, settings)
     signs = supply_nets(found.amplifiers)
@@ -32,7 +34,7 @@ def analyse(circuit: Circuit, settings: Settings, catalogue: Catalogue) -> Desig
     stages: tuple[Stage, ...] = ()
     if found.amplifiers:
         try:
-            solution = solve(prepared, found.amplifiers, fed, settings)
+            solution = solve(prepared, found.amplifiers, fed, settings, options=options)
         except SolveError as error:
             problems.append(Problem(rule="netlist-no-solution", message=error.what))
             stages = unsolved(found.amplifiers, error.what, settings)
@@ -41,7 +43,7 @@ def analyse(circuit: Circuit, settings: Settings, catalogue: Catalogue) -> Desig
         clamps: dict[str, Clamp] = {}
         while len(found_clamps := clamps_of(stages, clamps)) > len(clamps):
             clamps = found_clamps
-            clamped = solve(prepared, found.amplifiers, fed, settings, clamps)
+            clamped = solve(prepared, found.amplifiers, fed, settings, clamps, options)
             real = _stages(circuit, settings, found, prepared, clamped, fed)
             stages = followers_replaced(stages, real, frozenset(clamps))
         problems += _conflicts(solution)

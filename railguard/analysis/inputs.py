@@ -60,6 +60,7 @@ def inputs_of(
             spread=spread,
             moves=spread.high[q] if upper else spread.low[q],
             limit_moves=spread.high[pin_q],
+            exact=view.exact("plus", upper, "positive" if upper else "negative"),
         )
     return Inputs(
         plus=plus,

@@ -86,6 +86,7 @@ def output_side(
             spread=spread,
             moves=spread.high[q] if upper else spread.low[q],
             limit_moves=spread.high[pin],
+            exact=view.exact("output", upper, "positive" if upper else "negative"),
         )
     error = float((np.abs(spread.high[q]) * spread.delta * spread.error).sum())
     up, down = reaches[True], reaches[False]
@@ -95,6 +96,7 @@ def output_side(
         demand=Range(low, high) if known else Range(),
         worst=view.worst("output") if known else Range(),
         rss=view.rss("output") if known else Range(),
+        sampled=view.sampled("output") if known else Range(),
         available=Range(down.typical if down else None, up.typical if up else None),
         guaranteed=Range(down.guaranteed if down else None, up.guaranteed if up else None),
         high=bounds[True],
@@ -143,6 +145,7 @@ def _current(view: View, known: bool, load: float | None) -> Current:
                 spread=spread,
                 moves=moves,
                 limit_moves=np.zeros_like(moves),
+                exact=view.exact("current", source, sign=1.0 if source else -1.0),
             )
             if known
             else Bound(upper=True, typical=reach.typical, guaranteed=reach.guaranteed)
@@ -153,6 +156,7 @@ def _current(view: View, known: bool, load: float | None) -> Current:
         demand_sink=max(-low, 0.0) if known else None,
         worst_source=max(worst.high or 0.0, 0.0) if known else None,
         worst_sink=max(-(worst.low or 0.0), 0.0) if known else None,
+        sampled=view.sampled("current") if known else Range(),
         available_source=available[True],
         available_sink=available[False],
         source=bounds[True],

@@ -27,6 +27,7 @@ from railguard.analysis.network import Network, Real, open_loop_gain
 from railguard.analysis.rails import rail_tolerance
 from railguard.analysis.ranges import Answers, Clamp, answer
 from railguard.analysis.recognise import Amplifier
+from railguard.analysis.sampling import Sampled, monte_carlo
 from railguard.analysis.signals import Prepared
 from railguard.analysis.solve import Factor, factor, return_ratios
 from railguard.analysis.supplies import Feed
@@ -42,6 +43,19 @@ from railguard.analysis.uses import charges_itself
 from railguard.circuit.model import GROUND, Element
 from railguard.settings.model import Settings
 from railguard.words import Use
+
+
+class Options(msgspec.Struct, frozen=True):
+    """How the corners of tolerance are worked out.
+
+    exact    solve each corner anew instead of following the sensitivities to it
+    samples  Monte Carlo samples to draw beside it; 0: none
+    seed     same seed, same samples
+    """
+
+    exact: bool = False
+    samples: int = 0
+    seed: int = 1
 
 
 class Solution(msgspec.Struct, frozen=True, kw_only=True):
@@ -65,6 +79,8 @@ class Solution(msgspec.Struct, frozen=True, kw_only=True):
     spread: Spread
     mid: Factor
     tops: tuple[float, ...]
+    exact: bool = False
+    sampled: Sampled | None = None
 
 
 def solve(
@@ -73,9 +89,11 @@ def solve(
     feeds: Mapping[str, Feed],
     settings: Settings,
     clamps: Mapping[str, Clamp] = MappingProxyType({}),
+    options: Options | None = None,
 ) -> Solution:
     """Solve a circuit.
 
+    options  how the corners are worked out
     clamps  outputs that cannot follow: each is held to what it reaches, at its own frequency
 
     Raises  SolveError
@@ -100,7 +118,13 @@ def solve(
     swept = sweep(loop_network, tops)
     signs, through = _through_diodes(elements, amplifiers, signs)
     swept = msgspec.structs.replace(swept, dc=signs)
+    options = options or Options()
+    off = _spread(answers, prepared, amplifiers, feeds, settings)
     return Solution(
+        exact=options.exact,
+        sampled=monte_carlo(answers, off, options.samples, options.seed)
+        if options.samples
+        else None,
         prepared=prepared,
         amplifiers=amplifiers,
         answers=answers,
@@ -111,7 +135,7 @@ def solve(
         forced=forced,
         through=through,
         margins=_margins(swept, elements, amplifiers, forced),
-        spread=_spread(answers, prepared, amplifiers, feeds, settings),
+        spread=off,
         mid=factor(network, MID_HERTZ),
         tops=tops,
     )

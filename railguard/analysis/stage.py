@@ -173,6 +173,7 @@ class Output(msgspec.Struct, frozen=True, kw_only=True):
     """The output's range. `level` is its DC level; `slew` the steepest demanded dv/dt, V/s.
 
     rss     the worst range where all tolerances add as roots of squares
+    sampled what Monte Carlo samples covered, where some were drawn
     offset  worst DC error at the output from offset and bias of this and all stages before, V
     """
 
@@ -181,6 +182,7 @@ class Output(msgspec.Struct, frozen=True, kw_only=True):
     demand: Range = Range()
     worst: Range = Range()
     rss: Range = Range()
+    sampled: Range = Range()
     available: Range = Range()
     guaranteed: Range = Range()
     high: Bound = Bound(upper=True)
@@ -197,6 +199,7 @@ class Current(msgspec.Struct, frozen=True, kw_only=True):
     demand_sink: float | None = None
     worst_source: float | None = None
     worst_sink: float | None = None
+    sampled: Range = Range()
     available_source: float | None = None
     available_sink: float | None = None
     source: Bound = Bound(upper=True)

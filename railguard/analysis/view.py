@@ -2,8 +2,11 @@
 
 import numpy as np
 
+from railguard.analysis.bounds import Exact
+from railguard.analysis.network import Real
 from railguard.analysis.ranges import Answers
 from railguard.analysis.recognise import Amplifier
+from railguard.analysis.sampling import evaluate, exact_corners
 from railguard.analysis.solution import Solution
 from railguard.analysis.stage import Range, Unknown
 from railguard.analysis.unseen import Spoiled
@@ -51,8 +54,38 @@ class View:
         moved = any(t.tone.basis == "user" and t.peaks[q] > 0 for t in self.answers.tones)
         return "user" if moved else "netlist"
 
+    def exact(self, quantity: str, upper: bool, pin: str = "", sign: float = 1.0) -> Exact | None:
+        """Return what solves a corner of a quantity anew, where the run asks for it.
+
+        pin   quantity its limit follows, or ""
+        sign  -1 for a demand that counts the quantity the other way round
+        """
+        solution = self.solution
+        if not solution.exact:
+            return None
+        q, rail = self.at(quantity), self.at(pin) if pin else -1
+
+        def solved(shares: Real) -> tuple[float, float]:
+            at = evaluate(self.answers, solution.spread, shares[None, :])
+            value = float((at.high if upper else at.low)[0, q])
+            moved = float(at.high[0, rail] - self.answers.high[rail]) if pin else 0.0
+            return sign * value, moved
+
+        return solved
+
+    def sampled(self, quantity: str) -> Range:
+        """Return the range all Monte Carlo samples cover; unknown where none were drawn."""
+        samples = self.solution.sampled
+        if samples is None:
+            return Range()
+        q = self.at(quantity)
+        return Range(float(samples.low[:, q].min()), float(samples.high[:, q].max()))
+
     def worst(self, quantity: str) -> Range:
         """Return its range with all tolerances, offset and bias at their extremes."""
+        if self.solution.exact:
+            at = exact_corners(self.answers, self.solution.spread, [self.at(quantity)])
+            return Range(float(at.low[0, 0]), float(at.high[0, 0]))
         q, spread = self.at(quantity), self.solution.spread
         low, high = self.range(quantity)
         up = float(np.abs(spread.high[q]) @ spread.delta)
