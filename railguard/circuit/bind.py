@@ -403,8 +403,11 @@ class Binder:
         nets, rest = self._nodes(items, 2, line, f"controlled source {name}")
         words = _flat(rest)
         text = " ".join(text_of(i) for i in rest)
-        gain = self.number(words[1]) if len(words) > 1 else None
-        control = Control(gain, (), words[0] if words else "", text if gain is None else "")
+        if words and words[0].lower().startswith("poly"):
+            control = Control(None, (), "", text)
+        else:
+            gain = self.number(words[1]) if len(words) > 1 else None
+            control = Control(gain, (), words[0] if words else "", text if gain is None else "")
         return [
             Element(
                 kind=letter, designator=name, nets=nets, control=control, location=line.location
