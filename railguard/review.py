@@ -1,7 +1,9 @@
 """Path, text or circuit to Review: the library's entry."""
 
 import datetime as dt
+from collections.abc import Mapping
 from pathlib import Path
+from types import MappingProxyType
 
 import msgspec
 
@@ -78,6 +80,7 @@ def review(
     bounds: Bounds | None = None,
     plugins: bool = True,
     options: Options | None = None,
+    changes: Mapping[str, object] = MappingProxyType({}),
 ) -> Review:
     """Review one or several netlists.
 
@@ -89,6 +92,7 @@ def review(
     root      the folder includes must stay in; None: each deck's own folder
     plugins   False leaves out the rules that other packages bring
     options   how the corners of tolerance are worked out; None: by sensitivities
+    changes   fields of Settings that stand over any file found: `hold_at`, `kind`, `require`
 
     Raises:
         SettingsError: the settings file cannot be obeyed.
@@ -100,7 +104,8 @@ def review(
     run = _Run(as_of or dt.date.today(), extra.rules)
     designs = []
     for one in sources:
-        own = run.prepared(stated if stated is not None else _found_beside(one))
+        found_settings = stated if stated is not None else _found_beside(one)
+        own = run.prepared(msgspec.structs.replace(found_settings, **changes))
         deck = _deck(one, root, bounds or Bounds())
         found, matched = review_deck(deck, own, extra, options)
         run.took(own, matched, found.path)

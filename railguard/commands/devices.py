@@ -8,8 +8,10 @@ from rich.console import Console
 from rich.markup import escape
 from rich.table import Table
 
+from railguard.commands.device_sheet import figures
+from railguard.commands.measure import measure
 from railguard.devices.catalogue import Catalogue, load
-from railguard.devices.describe import facts, legend, rows
+from railguard.devices.describe import facts, legend
 from railguard.devices.match import spell_out
 from railguard.devices.model import Device
 from railguard.errors import UsageError
@@ -52,6 +54,9 @@ def show(pattern: str, own: Path | None) -> None:
         _show(console, catalogue, found[0])
     else:
         _list(console, catalogue, found)
+
+
+devices.add_command(measure)
 
 
 def _matching(catalogue: Catalogue, pattern: str) -> tuple[str, ...]:
@@ -126,7 +131,7 @@ def _show(console: Console, catalogue: Catalogue, family: str) -> None:
     if device.conditions:
         console.print(escape(f"Figures hold at {device.conditions}, unless a row says otherwise."))
     console.print()
-    console.print(_figures(device))
+    console.print(figures(device))
     console.print()
     for mark, meaning in legend(device):
         console.print(f"{mark} {meaning}")
@@ -137,14 +142,3 @@ def _show(console: Console, catalogue: Catalogue, family: str) -> None:
     if device.notes:
         console.print()
         console.print(escape(device.notes))
-
-
-def _figures(device: Device) -> Table:
-    table = Table(box=None, pad_edge=False, header_style="bold")
-    table.add_column("", overflow="fold")
-    for heading in ("typical", "guaranteed", "hot"):
-        table.add_column(heading, justify="right", no_wrap=True)
-    table.add_column("at", overflow="fold")
-    for row in rows(device):
-        table.add_row(row.label, row.typical, row.guaranteed, row.hot, escape(row.condition))
-    return table

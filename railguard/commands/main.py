@@ -1,0 +1,77 @@
+"""The command line: which commands there are, and how a request that fails is told.
+
+Commands are imported when they are called, so that `--version` and `--help` cost nothing.
+"""
+
+import importlib
+import sys
+
+import click
+
+from railguard import __version__
+from railguard.errors import RailguardError
+
+CANNOT = 2
+"""Exit status of a request that could not be carried out."""
+
+_COMMANDS = {
+    "review": ("railguard.commands.review", "review", "Review netlists and report what fails."),
+    "rules": ("railguard.commands.rules", "rules", "List the rules, or explain one."),
+    "devices": (
+        "railguard.commands.devices",
+        "devices",
+        "List the op-amps the catalogue knows, show or measure one.",
+    ),
+}
+
+
+class _Lazy(click.Group):
+    """A group that imports a command's module only when the command is called."""
+
+    def list_commands(self, ctx: click.Context) -> list[str]:
+        del ctx
+        return list(_COMMANDS)
+
+    def get_command(self, ctx: click.Context, cmd_name: str) -> click.Command | None:
+        del ctx
+        if cmd_name not in _COMMANDS:
+            return None
+        module, name, _ = _COMMANDS[cmd_name]
+        command = getattr(importlib.import_module(module), name)
+        return command if isinstance(command, click.Command) else None
+
+    def format_commands(self, ctx: click.Context, formatter: click.HelpFormatter) -> None:
+        del ctx
+        with formatter.section("Commands"):
+            formatter.write_dl([(name, words) for name, (_, _, words) in _COMMANDS.items()])
+
+
+@click.group(cls=_Lazy, context_settings={"help_option_names": ["-h", "--help"]})
+@click.version_option(__version__, prog_name="railguard", message="%(prog)s %(version)s")
+def railguard() -> None:
+    r"""Check the op-amp stages of SPICE netlists against their devices' limits.
+
+    \b
+    railguard review station.cir           one netlist, before its review
+    railguard review boards/*.net          many; a table first
+    railguard rules headroom-output        what a rule judges, and its limits
+    railguard devices TL072CP              what is known of a device
+    """
+
+
+def main() -> None:
+    """Run the command line; a request that cannot be carried out is one sentence and status 2."""
+    try:
+        railguard(standalone_mode=False)
+    except click.exceptions.Abort:
+        sys.exit(130)
+    except click.ClickException as error:
+        error.show()
+        sys.exit(CANNOT)
+    except RailguardError as error:
+        click.echo(f"railguard: {error}", err=True)
+        sys.exit(CANNOT)
+    except BrokenPipeError:
+        # The reader of a pipe has gone; nothing is wrong with the review.
+        sys.stderr.close()
+        sys.exit(0)

@@ -1,0 +1,145 @@
+"""`railguard review`: netlists in, reports out, and the status that stops a commit or a build."""
+
+import datetime as dt
+import os
+import sys
+import tempfile
+from pathlib import Path
+
+import click
+
+from railguard.analysis.solution import Options
+from railguard.errors import UsageError
+from railguard.report.formats import FORMATS, render
+from railguard.review import Review
+from railguard.review import review as run
+from railguard.settings import file as settings_file
+from railguard.settings.model import Settings
+from railguard.words import SEVERITIES, Severity
+
+HOLD = 1
+"""Exit status where something stands at or above the hold level."""
+
+
+@click.command()
+@click.argument("files", nargs=-1, required=True, metavar="FILE...")
+@click.option(
+    "--report",
+    "reports",
+    multiple=True,
+    metavar="FORMAT[=FILE]",
+    help=f"Format ({', '.join(FORMATS)}); with =FILE into a file. Repeatable.",
+)
+@click.option("--hold-at", type=click.Choice(SEVERITIES), help="What gives status 1 [major].")
+@click.option("--require", metavar="FAMILIES", help="Families that must not stay open.")
+@click.option(
+    "--settings",
+    "stated",
+    type=click.Path(path_type=Path),
+    metavar="FILE",
+    help="This file instead of the railguard.toml beside each netlist.",
+)
+@click.option("--no-settings", is_flag=True, help="Obey no railguard.toml.")
+@click.option("--kind", type=click.Choice(["board", "bench"]), help="Judge it as this.")
+@click.option("--as-of", metavar="DATE", help="Judge waivers on this day [today].")
+@click.option(
+    "--root",
+    type=click.Path(path_type=Path),
+    metavar="DIR",
+    help="Includes may lie anywhere below it [each netlist's folder].",
+)
+@click.option(
+    "--corners",
+    type=click.Choice(["extreme", "exact"]),
+    default="extreme",
+    help="Follow sensitivities to the corners, or solve each corner anew.",
+)
+@click.option(
+    "--monte-carlo",
+    type=click.IntRange(0, 1_000_000),
+    default=0,
+    metavar="N",
+    help="Draw N samples beside the corners.",
+)
+@click.option("--no-plugins", is_flag=True, help="Leave out the rules other packages bring.")
+def review(  # one parameter an option: click hands them over by name
+    files: tuple[str, ...],
+    reports: tuple[str, ...],
+    hold_at: Severity | None,
+    require: str | None,
+    stated: Path | None,
+    no_settings: bool,
+    kind: str | None,
+    as_of: str | None,
+    root: Path | None,
+    corners: str,
+    monte_carlo: int,
+    no_plugins: bool,
+) -> None:
+    """Review netlists and report what fails, by what margin, and what to fit instead.
+
+    Status 0: nothing at or above the hold level; 1: something is; 2: not carried out.
+    """
+    wanted = [_wanted(text) for text in reports] or [("terminal", None)]
+    changes: dict[str, object] = {}
+    if hold_at is not None:
+        changes["hold_at"] = hold_at
+    if kind is not None:
+        changes["kind"] = kind
+    if require:
+        changes["require"] = tuple(word.strip() for word in require.split(",") if word.strip())
+    result = run(
+        [Path(name) for name in files],
+        _settings(stated, no_settings),
+        as_of=_day(as_of),
+        root=root,
+        plugins=not no_plugins,
+        options=Options(exact=corners == "exact", samples=monte_carlo),
+        changes=changes,
+    )
+    for name, place in wanted:
+        _deliver(result, name, place)
+    sys.exit(HOLD if result.held else 0)
+
+
+def _settings(stated: Path | None, none: bool) -> Settings | None:
+    if none:
+        return Settings()
+    return settings_file.load(stated) if stated is not None else None
+
+
+def _day(text: str | None) -> dt.date | None:
+    if text is None:
+        return None
+    try:
+        return dt.date.fromisoformat(text)
+    except ValueError:
+        raise UsageError(f'"{text}" is no date.', remedy="Write it as 2027-01-31.") from None
+
+
+def _wanted(text: str) -> tuple[str, Path | None]:
+    name, _, place = text.partition("=")
+    if name not in FORMATS:
+        raise UsageError(
+            f'There is no report format "{name}".', remedy=f"Choose one of {', '.join(FORMATS)}."
+        )
+    return name, Path(place) if place else None
+
+
+def _deliver(result: Review, name: str, place: Path | None) -> None:
+    """Write one report: to the terminal, or into a file whole or not at all."""
+    if place is None:
+        if name == "terminal":
+            render(name, result, sys.stdout)
+        else:
+            sys.stdout.buffer.write(render(name, result, None))
+            sys.stdout.buffer.flush()
+        return
+    data = render(name, result, None)
+    try:
+        handle, temporary = tempfile.mkstemp(dir=place.parent, prefix=f".{place.name}.")
+        with os.fdopen(handle, "wb") as out:
+            out.write(data)
+        Path(temporary).replace(place)
+    except OSError as error:
+        raise UsageError(f"The report {place} cannot be written: {error.strerror}.") from error

@@ -1,0 +1,334 @@
+"""The JSON report: its own wire types, and the one conversion into them.
+
+Names here are a contract (`report.schema.json` ships with the package); inner names stay free to
+change. Volts relative to ground, amperes positive, watts, hertz, ohms, farads, degrees. A number
+that was not worked out is null.
+"""
+
+import math
+from pathlib import PurePath
+from typing import Literal
+
+import msgspec
+
+from railguard import __version__
+from railguard.analysis.stage import Stage
+from railguard.location import Location
+from railguard.review import DesignReview, Review
+from railguard.rules.finding import Finding
+from railguard.words import Basis, Family, Kind, Severity, Verdict
+
+SCHEMA = "railguard-report/1"
+
+
+class Tool(msgspec.Struct):
+    """Who wrote the report."""
+
+    name: str
+    version: str
+
+
+class SettingsUsed(msgspec.Struct):
+    """What was stated about the run."""
+
+    file: str | None
+    hold_at: Severity
+    rules_off: list[str]
+    as_of: str
+
+
+class Coverage(msgspec.Struct):
+    """How many pairs of rule and subject were judged, and how many stayed open."""
+
+    judged: int
+    open: int
+
+
+class WaiverUsed(msgspec.Struct):
+    """The waiver a finding was accepted under."""
+
+    reason: str
+    by: str | None
+    until: str | None
+    file: str | None
+    line: int | None
+
+
+class FindingOut(msgspec.Struct):
+    """One fault."""
+
+    rule: str
+    family: Family
+    severity: Severity
+    designators: list[str]
+    nets: list[str]
+    demand: float | None
+    limit: float | None
+    margin: float | None
+    margin_share: float | None
+    unit: str | None
+    basis: list[Basis]
+    corner: Literal["nominal", "worst-case"]
+    message: str
+    remedy: str
+    source: str
+    file: str | None
+    line: int | None
+    column: int | None
+    fingerprint: str
+    waiver: WaiverUsed | None
+    consequences: list["FindingOut"]
+
+
+class SupplyOut(msgspec.Struct):
+    """Rails at a stage's pins."""
+
+    positive: float | None
+    negative: float | None
+    basis: Basis
+
+
+class RangeOut(msgspec.Struct):
+    """What is asked of a range, and what the device reaches."""
+
+    demand_low: float | None
+    demand_high: float | None
+    worst_low: float | None
+    worst_high: float | None
+    available_low: float | None
+    available_high: float | None
+    guaranteed_low: float | None
+    guaranteed_high: float | None
+
+
+class CurrentOut(msgspec.Struct):
+    """Output current: asked for, at the worst corner, known to be given."""
+
+    demand_source: float | None
+    demand_sink: float | None
+    worst_source: float | None
+    worst_sink: float | None
+    available_source: float | None
+    available_sink: float | None
+
+
+class AllowedOut(msgspec.Struct):
+    """The largest input, and the rule and stage that limit it."""
+
+    net: str
+    low: float
+    high: float
+    limited_by: str
+
+
+class StageOut(msgspec.Struct):
+    """One op-amp channel."""
+
+    designator: str
+    device: str
+    catalogue: str | None
+    package: str
+    topology: str
+    supply: SupplyOut
+    output: RangeOut
+    current: CurrentOut
+    input: RangeOut
+    input_allowed: AllowedOut | None
+    dc_loop: Literal["negative", "positive", "open"] | None
+    noise_gain: float | None
+    noise_gain_dc: float | None
+    noise_gain_crossover: float | None
+    bandwidth: float | None
+    phase_margin: float | None
+    dissipation: float | None
+    file: str | None
+    line: int | None
+
+
+class NotCheckedOut(msgspec.Struct):
+    """A judgement that stayed open, and what to state to get it."""
+
+    subject: str
+    rule: str
+    why: str
+    add: str
+
+
+class ReadingOut(msgspec.Struct):
+    """How something was read."""
+
+    message: str
+    file: str | None
+    line: int | None
+    column: int | None
+
+
+class DesignOut(msgspec.Struct):
+    """One deck."""
+
+    path: str
+    sha256: str
+    kind: Kind
+    verdict: Verdict
+    coverage: Coverage
+    findings: list[FindingOut]
+    stages: list[StageOut]
+    not_checked: list[NotCheckedOut]
+    reading: list[ReadingOut]
+
+
+class Document(msgspec.Struct):
+    """The whole report."""
+
+    schema: str
+    tool: Tool
+    settings: SettingsUsed
+    designs: list[DesignOut]
+
+
+def document(review: Review) -> bytes:
+    """Return the JSON report, indented, ending in a newline."""
+    settings = review.settings
+    out = Document(
+        schema=SCHEMA,
+        tool=Tool("railguard", __version__),
+        settings=SettingsUsed(
+            file=settings.file or None,
+            hold_at=settings.hold_at,
+            rules_off=list(settings.rules_off),
+            as_of=settings.as_of.isoformat(),
+        ),
+        designs=[_design(design, review) for design in review.designs],
+    )
+    return msgspec.json.format(msgspec.json.encode(out), indent=1) + b"\n"
+
+
+def schema() -> bytes:
+    """Return the JSON Schema of the report; `report.schema.json` holds the same text."""
+    made = msgspec.json.schema(Document)
+    made["$schema"] = "https://json-schema.org/draft/2020-12/schema"
+    made["title"] = "railguard report"
+    return msgspec.json.format(msgspec.json.encode(made, order="sorted"), indent=1) + b"\n"
+
+
+def posix(path: str) -> str:
+    """Return a path with forward slashes, as a fingerprint and a report name it."""
+    return PurePath(path).as_posix()
+
+
+def _finite(value: float | None) -> float | None:
+    return value if value is not None and math.isfinite(value) else None
+
+
+def _place(place: Location | None) -> tuple[str | None, int | None, int | None]:
+    return (posix(place.file), place.line, place.column) if place is not None else (None,) * 3
+
+
+def _design(review: DesignReview, run: Review) -> DesignOut:
+    circuit = review.design.circuit
+    findings = review.findings
+    if review is run.designs[0]:
+        findings = (*findings, *run.findings)
+    reading = []
+    for remark in review.design.remarks:
+        file, line, column = _place(remark.location)
+        reading.append(ReadingOut(remark.message, file, line, column))
+    return DesignOut(
+        path=posix(review.path),
+        sha256=circuit.sha256,
+        kind=review.design.kind,
+        verdict=review.verdict,
+        coverage=Coverage(review.judged, review.open),
+        findings=[_finding(finding, review.path) for finding in findings],
+        stages=[_stage(stage) for stage in review.design.stages],
+        not_checked=[NotCheckedOut(n.subject, n.rule, n.why, n.add) for n in review.not_checked],
+        reading=reading,
+    )
+
+
+def _finding(finding: Finding, deck: str) -> FindingOut:
+    file, line, column = _place(finding.location)
+    note = finding.waiver
+    waiver = None
+    if note is not None:
+        told, at, _ = _place(note.location)
+        waiver = WaiverUsed(note.reason, note.by or None, note.until or None, told, at)
+    return FindingOut(
+        rule=finding.rule,
+        family=finding.family,
+        severity=finding.severity,
+        designators=list(finding.designators),
+        nets=list(finding.nets),
+        demand=_finite(finding.demand),
+        limit=_finite(finding.limit),
+        margin=_finite(finding.margin),
+        margin_share=_finite(finding.margin_share),
+        unit=finding.unit or None,
+        basis=list(finding.basis),
+        corner=finding.corner,
+        message=finding.message,
+        remedy=finding.remedy,
+        source=finding.source,
+        file=file,
+        line=line,
+        column=column,
+        fingerprint=finding.fingerprint(posix(deck)),
+        waiver=waiver,
+        consequences=[_finding(inner, deck) for inner in finding.consequences],
+    )
+
+
+def _stage(stage: Stage) -> StageOut:
+    output, inputs, current, loop = stage.output, stage.inputs, stage.current, stage.loop
+    file, line, _ = _place(stage.location)
+    allowed = stage.allowed
+    return StageOut(
+        designator=stage.designator,
+        device=stage.device,
+        catalogue=stage.family.family if stage.family is not None else None,
+        package=stage.package,
+        topology=stage.topology,
+        supply=SupplyOut(
+            _finite(stage.supply.positive), _finite(stage.supply.negative), stage.supply.basis
+        ),
+        output=RangeOut(
+            _finite(output.demand.low),
+            _finite(output.demand.high),
+            _finite(output.worst.low),
+            _finite(output.worst.high),
+            _finite(output.available.low),
+            _finite(output.available.high),
+            _finite(output.guaranteed.low),
+            _finite(output.guaranteed.high),
+        ),
+        current=CurrentOut(
+            _finite(current.demand_source),
+            _finite(current.demand_sink),
+            _finite(current.worst_source),
+            _finite(current.worst_sink),
+            _finite(current.available_source),
+            _finite(current.available_sink),
+        ),
+        input=RangeOut(
+            _finite(inputs.demand.low),
+            _finite(inputs.demand.high),
+            _finite(inputs.worst.low),
+            _finite(inputs.worst.high),
+            _finite(inputs.available.low),
+            _finite(inputs.available.high),
+            _finite(inputs.guaranteed.low),
+            _finite(inputs.guaranteed.high),
+        ),
+        input_allowed=AllowedOut(allowed.net, allowed.low, allowed.high, allowed.limited_by)
+        if allowed is not None
+        else None,
+        dc_loop=loop.dc,
+        noise_gain=_finite(loop.noise_gain),
+        noise_gain_dc=_finite(loop.noise_gain_dc),
+        noise_gain_crossover=_finite(loop.noise_gain_crossover),
+        bandwidth=_finite(loop.crossover),
+        phase_margin=_finite(loop.phase_margin),
+        dissipation=_finite(stage.dissipation),
+        file=file,
+        line=line,
+    )
