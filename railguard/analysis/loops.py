@@ -115,7 +115,7 @@ def sweep(network: Network, tops: Sequence[float]) -> LoopSweep:
     """
     fastest = max((gain_bandwidth(a) or 0.0 for a in network.amplifiers), default=0.0) or 1e6
     grid = np.geomspace(LOWEST_HERTZ, 10 * fastest, POINTS)
-    hertz = np.unique(np.concatenate([grid, [t for t in tops if t > 0]]))
+    hertz = np.array(sorted({*grid.tolist(), *(t for t in tops if t > 0)}))
     dc = return_ratios(network, np.zeros(1))[0].real
     return LoopSweep(hertz=hertz, a_beta=return_ratios(network, hertz), dc=dc)
 
@@ -173,7 +173,7 @@ def phase_margin(hertz: Real, a_beta: Complex, f: float) -> float:
 def crossover_margins(network: Network, crossovers: Mapping[str, float]) -> dict[str, float]:
     """Return the phase margin of each amplifier in `network`, its crossover found anew near by."""
     steps = np.geomspace(SHIFT_LOW, SHIFT_HIGH, 15)
-    hertz = np.unique(np.concatenate([steps * f for f in crossovers.values()]))
+    hertz = np.array(sorted({step * f for f in crossovers.values() for step in steps.tolist()}))
     if not len(hertz):
         return {}
     ratios = return_ratios(network, hertz)

@@ -210,7 +210,7 @@ def _tone(network: Network, tone: Tone, rows: Index, factors: dict[float, Factor
             x=x[f],
             picks=np.flatnonzero(best == f),
         )
-        for f in np.unique(best)
+        for f in sorted(set(best.tolist()))
     )
     up = down = peaks
     if tone.wave is not None:

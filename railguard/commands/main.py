@@ -46,17 +46,20 @@ class _Lazy(click.Group):
             formatter.write_dl([(name, words) for name, (_, _, words) in _COMMANDS.items()])
 
 
-@click.group(cls=_Lazy, context_settings={"help_option_names": ["-h", "--help"]})
+_HELP = """Check the op-amp stages of SPICE netlists against their devices' limits.
+
+\b
+railguard review station.cir         one netlist, before its review
+railguard review boards/*.net        many; a table first
+railguard rules headroom-output      what a rule judges, and its limits
+railguard devices TL072CP            what is known of a device
+"""
+
+
+@click.group(cls=_Lazy, help=_HELP, context_settings={"help_option_names": ["-h", "--help"]})
 @click.version_option(__version__, prog_name="railguard", message="%(prog)s %(version)s")
 def railguard() -> None:
-    r"""Check the op-amp stages of SPICE netlists against their devices' limits.
-
-    \b
-    railguard review station.cir           one netlist, before its review
-    railguard review boards/*.net          many; a table first
-    railguard rules headroom-output        what a rule judges, and its limits
-    railguard devices TL072CP              what is known of a device
-    """
+    """Take the options that stand before a command; there are none but help and version."""
 
 
 def main() -> None:
