@@ -8,6 +8,7 @@ wired as an amplifier. What is an IC but no op-amp stays opaque.
 import re
 from collections import defaultdict
 from collections.abc import Callable
+from functools import cache
 
 import msgspec
 
@@ -63,6 +64,7 @@ class Recognised(msgspec.Struct, frozen=True):
 def keeps_closed(catalogue: Catalogue) -> Callable[[str, tuple[str, ...]], bool]:
     """Return the predicate flattening asks: is this subcircuit a device, not a sheet?"""
 
+    @cache
     def closed(name: str, ports: tuple[str, ...]) -> bool:
         match = catalogue.match(name)
         if match.sort == "generic":

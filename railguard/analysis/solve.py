@@ -147,5 +147,7 @@ def return_ratios(network: Network, hertz: np.ndarray[tuple[int], np.dtype[np.fl
             z += solved[:, plus, column]
         if minus >= 0:
             z -= solved[:, minus, column]
-        result[:, column] = -z / (1.0 + z)
+        # A loop whose break leaves nothing to solve has no transmission of its own.
+        rest = 1.0 + z
+        result[:, column] = np.where(rest == 0, 0.0, -z / np.where(rest == 0, 1.0, rest))
     return result

@@ -24,6 +24,8 @@ from railguard.circuit.sources import (
 
 STEPS = 2000
 MOST_STEPS = 20_000
+MOST_WORK = 2_000_000
+"""Steps times unknowns: a large circuit is followed in coarser steps."""
 EDGE_STEPS = 4
 """Steps an edge is resolved with, as far as MOST_STEPS allows."""
 PERIODS = 2
@@ -132,7 +134,8 @@ def excursion(network: Network, injection: str, wave: Wave, mean: float) -> Excu
     Raises  SolveError
     """
     length, finest = _window(wave)
-    count = int(min(max(STEPS, EDGE_STEPS * length / finest), MOST_STEPS))
+    most = max(STEPS, min(MOST_STEPS, MOST_WORK // max(network.size, 1)))
+    count = int(min(max(STEPS, EDGE_STEPS * length / finest), most))
     step = length / count
     times = np.linspace(0.0, length, count + 1)
     drive = value_at(wave, times) - mean
