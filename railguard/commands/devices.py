@@ -23,7 +23,7 @@ class _ByPattern(click.Group):
 
     def parse_args(self, ctx: click.Context, args: list[str]) -> list[str]:
         """Send everything that names no command to `show`."""
-        if not args or args[0] not in (*self.commands, "--help"):
+        if not args or args[0] not in (*self.commands, "--help", "-h"):
             args = ["show", *args]
         return super().parse_args(ctx, args)
 
