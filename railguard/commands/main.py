@@ -16,6 +16,11 @@ CANNOT = 2
 
 _COMMANDS = {
     "review": ("railguard.commands.review", "review", "Review netlists and report what fails."),
+    "sheet": (
+        "railguard.commands.sheet",
+        "sheet",
+        "Print every op-amp with its numbers, as evidence.",
+    ),
     "rules": ("railguard.commands.rules", "rules", "List the rules, or explain one."),
     "devices": (
         "railguard.commands.devices",

@@ -1,0 +1,65 @@
+"""`railguard sheet`: every op-amp with its numbers, fit to be filed as review evidence."""
+
+import sys
+from pathlib import Path
+
+import click
+
+from railguard.analysis.solution import Options
+from railguard.errors import UsageError
+from railguard.report import sheet as sheets
+from railguard.report.visible import visible
+from railguard.review import review as run
+from railguard.settings import file as settings_file
+
+_BYTES = {"csv": sheets.as_csv, "json": sheets.as_json, "markdown": sheets.as_markdown}
+
+
+@click.command()
+@click.argument("files", nargs=-1, required=True, metavar="FILE...")
+@click.option("--of", "only", default="", metavar="XU3", help="This stage alone.")
+@click.option("--as", "how", type=click.Choice(["screen", *_BYTES]), default="screen")
+@click.option("--settings", "stated", type=click.Path(path_type=Path), metavar="FILE")
+@click.option("--monte-carlo", type=click.IntRange(0, 1_000_000), default=0, metavar="N")
+def sheet(
+    files: tuple[str, ...], only: str, how: str, stated: Path | None, monte_carlo: int
+) -> None:
+    """Print the stage sheet: for every op-amp what is asked for and what it can do."""
+    result = run(
+        [Path(name) for name in files],
+        settings_file.load(stated) if stated is not None else None,
+        options=Options(samples=monte_carlo),
+    )
+    found = sheets.rows(result, only)
+    if only and not found:
+        names = [s.designator for d in result.designs for s in d.design.stages]
+        known = f"There are {', '.join(names[:12])}." if names else "No op-amp was recognised."
+        raise UsageError(f'There is no stage "{only}".', remedy=known)
+    if how != "screen":
+        sys.stdout.buffer.write(_BYTES[how](found))
+        return
+    _screen(found)
+
+
+def _screen(found: tuple[sheets.Row, ...]) -> None:
+    from rich.console import Console
+    from rich.table import Table
+    from rich.text import Text
+
+    console = Console(highlight=False)
+    before = ""
+    table = Table(box=None)
+    for row in found:
+        name = f"{row.designator}  ({row.file})"
+        if name != before:
+            if before:
+                console.print(table)
+                console.print()
+            console.print(Text(visible(name), style="bold"))
+            table = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0))
+            for heading in sheets.HEADINGS:
+                table.add_column(heading, overflow="fold", no_wrap=heading == "quantity")
+            before = name
+        table.add_row(*(Text(visible(cell)) for cell in sheets.cells(row)))
+    if before:
+        console.print(table)
