@@ -15,8 +15,12 @@ from railguard.units import si
 
 @click.command()
 @click.argument("name", required=False)
-def rules(name: str | None) -> None:
-    """List the rules, or explain the one called NAME."""
+@click.option("--markdown", is_flag=True, help="List them as the table of a README.")
+def rules(name: str | None, markdown: bool) -> None:
+    """List the rules, or explain the one called NAME (or a family)."""
+    if markdown:
+        click.echo(as_markdown(), nl=False)
+        return
     console = Console(highlight=False)
     if name is None:
         _list(console)
@@ -46,6 +50,16 @@ def _list(console: Console) -> None:
         limits = ", ".join(f"{limit.name} {value_of(limit)}" for limit in rule.limits)
         table.add_row(f"  {rule.name}", Text(rule.judges), Text(limits))
     console.print(table)
+
+
+def as_markdown() -> str:
+    """Return the rules with their limits as a Markdown table, one block a family."""
+    lines = ["| rule | speaks when | limits, with their defaults |", "| --- | --- | --- |"]
+    for rule in RULES:
+        limits = ", ".join(f"`{limit.name}` {value_of(limit)}" for limit in rule.limits)
+        judges = rule.judges.replace("|", "\\|")
+        lines.append(f"| `{rule.name}` | {judges} | {limits} |")
+    return "\n".join(lines) + "\n"
 
 
 def _explain(console: Console, rule: Rule) -> None:

@@ -1,0 +1,61 @@
+"""What the README says is what the project does."""
+
+import shlex
+import tomllib
+from pathlib import Path
+
+from railguard.commands.rules import as_markdown
+from railguard.report.terminal import terminal
+from railguard.review import review
+from railguard.settings.file import parse
+
+ROOT = Path(__file__).parents[1]
+README = (ROOT / "README.md").read_text(encoding="utf-8")
+
+
+def _blocks(language):
+    return [part.split("```")[0] for part in README.split(f"```{language}\n")[1:]]
+
+
+def test_rules_table_is_the_registry():
+    """The table of rules comes from the rules themselves."""
+    table = README.split("<!-- rules -->\n")[1].split("<!-- /rules -->")[0]
+    assert table == as_markdown()
+
+
+def test_shown_report_is_a_real_one(monkeypatch):
+    """The pasted report is what the command prints today."""
+    monkeypatch.chdir(ROOT)
+    name = "fixtures/faults/headroom-output.cir"
+    shown = README.split(f"$ railguard review {name}\n")[1].split("```")[0]
+    assert shown.rstrip() == terminal(review(Path(name)), None).decode().rstrip()
+
+
+def test_settings_example_is_valid():
+    """The example of railguard.toml is read without complaint."""
+    example = _blocks("toml")[0]
+    assert tomllib.loads(example)
+    assert parse(example, "railguard.toml").hold_at == "major"
+
+
+def test_python_example_runs(monkeypatch, capsys):
+    """The Python example runs as it stands."""
+    monkeypatch.chdir(ROOT)
+    exec(compile(_blocks("python")[0], "README.md", "exec"), {})
+    assert capsys.readouterr().out.startswith("pass")
+
+
+def test_first_two_commands_install_and_run():
+    """The first block sets up and reviews a shipped netlist, the second runs the tests."""
+    first, second = (README.split("```")[at] for at in (1, 3))
+    assert "railguard review" in first
+    shipped = shlex.split(first)[-1]
+    assert (ROOT / shipped).is_file()
+    assert second.strip().endswith("pytest -q -n 2")
+
+
+def test_ci_runs_the_test_command_of_the_readme():
+    """`.ci/run` takes its command from the README."""
+    script = (ROOT / ".ci" / "run").read_text(encoding="utf-8")
+    assert "README.md" in script
+    assert "pip install -q -e '.[test]'" in README
