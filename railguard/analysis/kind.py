@@ -19,9 +19,9 @@ def kind_of(circuit: Circuit, settings: Settings, feeds: dict[str, Feed]) -> tup
     mark of a board. A missing capacitor is evidence of nothing: it may be the very fault.
     """
     if settings.kind == "board":
-        return "board", "stated"
+        return "board", "as stated"
     if settings.kind == "bench":
-        return "bench", "stated"
+        return "bench", "as stated"
     marks = _board_marks(circuit, feeds)
     if marks:
         return "board", marks

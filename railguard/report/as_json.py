@@ -14,6 +14,7 @@ import msgspec
 from railguard import __version__
 from railguard.analysis.stage import Stage
 from railguard.location import Location
+from railguard.report.words import near
 from railguard.review import DesignReview, Review
 from railguard.rules.finding import Finding
 from railguard.words import Basis, Family, Kind, Severity, Verdict
@@ -193,7 +194,7 @@ def document(review: Review) -> bytes:
         schema=SCHEMA,
         tool=Tool("railguard", __version__),
         settings=SettingsUsed(
-            file=settings.file or None,
+            file=near(settings.file) or None,
             hold_at=settings.hold_at,
             rules_off=list(settings.rules_off),
             as_of=settings.as_of.isoformat(),

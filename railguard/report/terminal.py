@@ -131,7 +131,7 @@ class _Printer:
     def design(self, review: DesignReview) -> None:
         self.line(self.clean(review.path), "bold underline")
         self.paragraph(
-            f"{words.count_words(review.findings)}; {review.judged} judged, {review.open} not "
+            f"{words.count_words(review.findings).capitalize()}; {review.judged} judged, {review.open} not "
             f"checked; {words.kind(review)}.",
             0,
         )
@@ -255,7 +255,7 @@ class _Printer:
         if not used.file and not used.rules_off:
             return
         off = f" It switches off {', '.join(used.rules_off)}." if used.rules_off else ""
-        self.paragraph(f"Settings: {used.file or 'from the command line'}.{off}", 0)
+        self.paragraph(f"Settings: {words.near(used.file) or 'from the command line'}.{off}", 0)
 
     def legend(self) -> None:
         marks = ASCII_MARKS if self.ascii else UNICODE_MARKS

@@ -2,6 +2,7 @@
 
 from collections import Counter
 from collections.abc import Iterable
+from pathlib import Path
 
 from railguard.analysis.stage import Stage, Supply
 from railguard.circuit.model import GROUND
@@ -67,10 +68,18 @@ def heading(stage: Stage) -> str:
     return ", ".join(part for part in parts if part)
 
 
+def near(path: str) -> str:
+    """Return a path as seen from the folder the command runs in, where it lies below it."""
+    try:
+        return Path(path).relative_to(Path.cwd()).as_posix()
+    except ValueError:
+        return path
+
+
 def verdict(review: DesignReview) -> str:
     """Return the one line a review comes to."""
     settings = review.design.settings
-    found = count_words(review.findings)
+    found = count_words(review.findings).capitalize()
     covered = f"{review.judged} judged, {review.open} not checked"
     match review.verdict:
         case "hold":
