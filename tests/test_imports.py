@@ -55,11 +55,12 @@ def module_of(path):
 
 
 def imports(tree):
-    """Yield (module, line, at module level) of every import, those in functions included."""
+    """Yield (module, line, runs at start-up) of every import, those in functions included."""
     inner = {
         id(node)
         for function in ast.walk(tree)
         if isinstance(function, ast.FunctionDef | ast.AsyncFunctionDef | ast.Lambda)
+        or _is_for_types(function)
         for node in ast.walk(function)
     }
     for node in ast.walk(tree):
@@ -76,6 +77,11 @@ def imports(tree):
                     yield f"railguard.{name}", node.lineno, id(node) not in inner
             else:
                 yield base, node.lineno, id(node) not in inner
+
+
+def _is_for_types(node):
+    """Tell whether a block is read by type checkers only: it costs nothing at start-up."""
+    return isinstance(node, ast.If) and getattr(node.test, "id", "") == "TYPE_CHECKING"
 
 
 def faults_of(module, text):

@@ -130,11 +130,9 @@ class _Printer:
 
     def design(self, review: DesignReview) -> None:
         self.line(self.clean(review.path), "bold underline")
-        self.paragraph(
-            f"{words.count_words(review.findings).capitalize()}; {review.judged} judged, {review.open} not "
-            f"checked; {words.kind(review)}.",
-            0,
-        )
+        found = words.count_words(review.findings).capitalize()
+        covered = f"{review.judged} judged, {review.open} not checked"
+        self.paragraph(f"{found}; {covered}; {words.kind(review)}.", 0)
         self.line("")
         stages = {s.designator: s for s in review.design.stages}
         for subject, findings in _blocks(review, stages):

@@ -92,7 +92,7 @@ def test_the_users_own_tables_stand_on_top(tmp_path):
     assert text.startswith("GAUGE9")
     assert "2 V/µs" in text
     assert "†" not in text
-    assert "house.toml, line 1." in " ".join(text.split())
+    assert "house.toml,line1." in "".join(text.split())
 
 
 def test_an_impossible_table_of_the_users_own_is_an_error_with_its_line(tmp_path):
