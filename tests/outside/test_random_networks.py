@@ -21,6 +21,7 @@ from railguard.devices import catalogue
 from railguard.engine.guard import TITLE
 from railguard.engine.ngspice import find
 from railguard.engine.requests import OperatingPoint, SmallSignal
+from railguard.review import review
 from railguard.settings.file import parse
 
 pytestmark = pytest.mark.skipif(shutil.which("ngspice") is None, reason="ngspice is not installed")
@@ -117,3 +118,26 @@ def test_random_network_agrees_with_ngspice(seed):
         wave = [sweep.vectors[f"v(o{k})"][0], sweep.vectors[f"i(vs{k})"][0]]
         assert np.abs(ac[k]) == pytest.approx(np.abs(wave), rel=1e-3, abs=1e-12)
         assert np.angle(ac[k] / np.array(wave)) == pytest.approx([0, 0], abs=2e-3)
+
+
+@pytest.mark.parametrize("seed", range(100, 120))
+def test_reviewed_deck_agrees_with_ngspice(seed):
+    """Output range and current of a reviewed deck, within 1 % of ngspice's level and amplitude."""
+    ours, theirs = network(seed)
+    level = ours[0].split()[3]
+    peak = 0.3
+    deck = [f"V1 s0 0 SIN({level} {peak} {HERTZ})", *ours[1:], "VP vp 0 100", "VN vn 0 -100"]
+    text = "\n".join(["random network", *deck, ".end", ""])
+    stages = review(text, parse(DEVICE, "railguard.toml")).designs[0].design.stages
+    simulated = "\n".join([TITLE, f"V1 s0 0 {level} AC {peak}", *theirs[1:]])
+    point, sweep = (
+        find().run(simulated, OperatingPoint(), SmallSignal(1, HERTZ, HERTZ * 10.1)).plots
+    )
+    for k, stage in enumerate(stages):
+        volts, amps = point.voltage(f"o{k}")[0], point.current(f"vs{k}")[0]
+        wave, current = np.abs([sweep.vectors[f"v(o{k})"][0], sweep.vectors[f"i(vs{k})"][0]])
+        assert stage.output.demand.high == pytest.approx(volts + wave, rel=0.01, abs=1e-6)
+        assert stage.output.demand.low == pytest.approx(volts - wave, rel=0.01, abs=1e-6)
+        source, sink = max(amps + current, 0.0), max(current - amps, 0.0)
+        assert stage.current.demand_source == pytest.approx(source, rel=0.01, abs=1e-9)
+        assert stage.current.demand_sink == pytest.approx(sink, rel=0.01, abs=1e-9)
