@@ -56,8 +56,8 @@ def _is_driven(amplifier: Amplifier, ways: Ways, rails: frozenset[str]) -> bool:
 
 def charges_itself(amplifier: Amplifier, ways: Ways) -> bool:
     """Tell whether an output charges a capacitor at the inverting input and sets the other one."""
-    if amplifier.minus in ways.held:
-        return False  # every capacitor to ground stands on a grounded input's net
+    if amplifier.minus in ways.held or amplifier.plus in ways.held:
+        return False  # whatever is grounded somewhere stands on a grounded input's net
     on_minus = [e for e in ways.around.get(amplifier.minus, ()) if len(e.nets) >= 2]
     charged = any(e.kind == "C" and GROUND in e.nets for e in on_minus)
     by_output = any(e.kind == "R" and amplifier.output in e.nets for e in on_minus)
