@@ -8,7 +8,7 @@ from railguard.analysis.recognise import Recognised, recognise
 from railguard.analysis.signals import Prepared, prepare
 from railguard.analysis.solution import Options, Solution, solve
 from railguard.analysis.solve import factor
-from railguard.analysis.stage import Design, Stage
+from railguard.analysis.stage import Design, Stage, Unrecognised
 from railguard.analysis.stages import stages_of, unsolved
 from railguard.analysis.supplies import Feed, feeds, supply_nets
 from railguard.analysis.surroundings import MID_HERTZ
@@ -58,6 +58,17 @@ def analyse(
         ),
         packages=packages_of(found.amplifiers),
         stages=stages,
+        unrecognised=tuple(
+            Unrecognised(
+                designator=element.designator,
+                name=match.name,
+                sort=match.sort,
+                pins=len(element.nets),
+                nearest=match.nearest,
+                location=element.location,
+            )
+            for element, match in (*found.unknown, *found.others)
+        ),
         problems=tuple(problems),
         remarks=(
             *circuit.remarks,

@@ -13,8 +13,9 @@ from railguard.analysis.dcpaths import leaves_sheet
 from railguard.analysis.ranges import Answers
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.stage import Capacitor, Package, Rail, Range
-from railguard.analysis.supplies import DEFAULT_RAIL_TOLERANCE, Feed, level_from_name
+from railguard.analysis.supplies import DEFAULT_RAIL_TOLERANCE, Feed
 from railguard.circuit.model import GROUND, Element
+from railguard.circuit.rails import level_from_name
 from railguard.location import Location
 from railguard.settings.model import Settings
 

@@ -13,6 +13,7 @@ from functools import cache
 import msgspec
 
 from railguard.circuit.model import GROUND, Circuit, Element
+from railguard.circuit.rails import level_from_name
 from railguard.devices.catalogue import Catalogue
 from railguard.devices.model import Match
 from railguard.devices.names import package_of, schematic_name
@@ -61,15 +62,21 @@ class Recognised(msgspec.Struct, frozen=True):
     remarks: tuple[Remark, ...]
 
 
-def keeps_closed(catalogue: Catalogue) -> Callable[[str, tuple[str, ...]], bool]:
-    """Return the predicate flattening asks: is this subcircuit a device, not a sheet?"""
+def keeps_closed(catalogue: Catalogue) -> Callable[[str, tuple[str, ...], bool], bool]:
+    """Return the predicate flattening asks: is this subcircuit a device, not a sheet?
+
+    A name nobody knows is one where its header names an op-amp's five pins and its body calls no
+    other subcircuit: a macromodel, whose inside is no part of the design.
+    """
 
     @cache
-    def closed(name: str, ports: tuple[str, ...]) -> bool:
+    def closed(name: str, ports: tuple[str, ...], calls: bool) -> bool:
         match = catalogue.match(name)
+        if match.sort == "unknown":
+            return not calls and _named_pins(match, ports)
         if match.sort == "generic":
             return 3 <= len(ports) <= 8
-        return match.sort != "unknown" and len(ports) >= 3
+        return len(ports) >= 3
 
     return closed
 
@@ -83,13 +90,18 @@ def recognise(circuit: Circuit, catalogue: Catalogue, settings: Settings) -> Rec
     others: list[tuple[Element, Match]] = []
     unknown: list[tuple[Element, Match]] = []
     assumed: dict[str, list[str]] = defaultdict(list)
+    rails = _levels(circuit)
     for element in circuit.elements:
         if not element.fitted:
             continue
         if element.kind in ("X", "ic"):
             match = catalogue.match(element.model)
-            if match.sort not in ("op-amp", "generic"):
-                (unknown if match.sort == "unknown" else others).append((element, match))
+            wired = _named_pins(match, element.ports) or _wired_as_one(element, rails)
+            if match.sort == "unknown" and not wired:
+                unknown.append((element, match))
+                continue
+            if match.sort not in ("op-amp", "generic", "unknown"):
+                others.append((element, match))
                 continue
             found, remark = _channels(element, match, settings)
             if not found:
@@ -103,6 +115,44 @@ def recognise(circuit: Circuit, catalogue: Catalogue, settings: Settings) -> Rec
         Remark(message=f"{_names(subjects)}: {text}") for text, subjects in assumed.items()
     )
     return Recognised(_grouped(amplifiers), tuple(others), tuple(unknown), remarks)
+
+
+def _levels(circuit: Circuit) -> frozenset[str]:
+    """Return the nets that a standing source holds or whose name states a level."""
+    held = {
+        net
+        for e in circuit.elements
+        if e.kind == "V"
+        and e.source is not None
+        and e.source.dc
+        and e.source.wave is None
+        and e.source.ac is None
+        for net in e.nets[:2]
+        if net != GROUND
+    }
+    named = {net for e in circuit.elements for net in e.nets if level_from_name(net) is not None}
+    return frozenset(held | named)
+
+
+def _wired_as_one(element: Element, rails: frozenset[str]) -> bool:
+    """Tell whether a card nobody knows is wired as an op-amp in the usual order is.
+
+    Five nets, the third a rail, the fourth another rail or ground, the fifth neither.
+    """
+    if len(element.nets) != 5 or element.ports:
+        return False
+    positive, negative, output = element.nets[2:]
+    ends = positive in rails and negative in rails | {GROUND} and positive != negative
+    return ends and output not in rails and output != GROUND
+
+
+def _named_pins(match: Match, ports: tuple[str, ...]) -> bool:
+    """Tell whether a header's names say which pin is which on an op-amp with its supply."""
+    order = pin_order(match, len(ports), ports) if len(ports) >= 5 else None
+    if order is None or order.basis != "netlist" or len(order.channels) != 1:
+        return False
+    channel = order.channels[0]
+    return channel.positive is not None and channel.negative is not None
 
 
 def _names(subjects: list[str]) -> str:

@@ -392,6 +392,22 @@ class Stage(msgspec.Struct, frozen=True, kw_only=True):
     location: Location | None = None
 
 
+class Unrecognised(msgspec.Struct, frozen=True):
+    """A device on the netlist that was not taken for an op-amp.
+
+    sort     "unknown" where nobody knows the name, else what it is: comparator, reference, ...
+    pins     how many nets its card has
+    nearest  the nearest name of the catalogue, or ""
+    """
+
+    designator: str
+    name: str
+    sort: str
+    pins: int
+    nearest: str = ""
+    location: Location | None = None
+
+
 class Design(msgspec.Struct, frozen=True, kw_only=True):
     """Everything the rules may look at."""
 
@@ -402,5 +418,6 @@ class Design(msgspec.Struct, frozen=True, kw_only=True):
     rails: tuple[Rail, ...]
     packages: tuple[Package, ...]
     stages: tuple[Stage, ...]
+    unrecognised: tuple[Unrecognised, ...] = ()
     problems: tuple[Problem, ...] = ()
     remarks: tuple[Remark, ...] = ()

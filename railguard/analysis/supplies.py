@@ -4,7 +4,6 @@ The user's file (or a directive in the netlist), then the sources in the deck as
 sees them, then the net's name. A supply that nothing states stays unknown.
 """
 
-import re
 from collections import defaultdict, deque
 from collections.abc import Iterable, Mapping
 
@@ -12,6 +11,7 @@ import msgspec
 
 from railguard.analysis.recognise import Amplifier
 from railguard.circuit.model import GROUND, Element
+from railguard.circuit.rails import level_from_name
 from railguard.settings.model import Settings
 from railguard.words import Basis
 
@@ -144,34 +144,3 @@ def _delivers(element: Element) -> bool:
         # A source of exactly zero is an ammeter: the search goes on through it.
         return element.source is not None and element.source.stated and element.source.level != 0
     return True
-
-
-_LEVELS = (
-    re.compile(r"(?i)^(?P<sign>[+-]?)(?P<whole>\d{1,3})V(?P<part>\d{0,3})(?P<tail>[A-Z]{0,6})$"),
-    re.compile(r"(?i)^(?P<sign>[+-])(?P<whole>\d{1,3})(?:[.P](?P<part>\d{1,3}))?V?[A-Z]{0,6}$"),
-    re.compile(r"(?i)^(?P<sign>)(?P<whole>\d{1,3})\.(?P<part>\d{1,3})V[A-Z]{0,6}$"),
-    re.compile(r"^(?P<whole>\d{1,3})(?:\.(?P<part>\d{1,3}))?V?(?P<sign>[+-])$"),
-    re.compile(r"(?i)^(?P<sign>[PN])(?P<whole>\d{1,3})V(?P<part>\d{0,3})$"),
-)
-HIGHEST_NAMED = 100.0
-
-
-def level_from_name(net: str) -> float | None:
-    """Read the level a net's name states, V: `+12V`, `-5VA`, `12V0`, `3V3`, `VCC_3V3`, `15-`.
-
-    A name counts only with a V or a sign; `N015` and `12` are names a program made.
-    """
-    leaf = net.rsplit("/", 1)[-1]
-    leaf = leaf.rsplit(".", 1)[-1] if leaf.count(".") and not re.search(r"\d\.\d", leaf) else leaf
-    words = [leaf, *re.split(r"[_:]", leaf)]
-    for word in words:
-        for pattern in _LEVELS:
-            found = pattern.match(word)
-            if found is None:
-                continue
-            value = float(f"{found['whole']}.{found['part'] or 0}")
-            if value > HIGHEST_NAMED:
-                return None
-            negative = found["sign"] in ("-", "N", "n")
-            return -value if negative and value else value
-    return None

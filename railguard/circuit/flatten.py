@@ -17,22 +17,24 @@ from railguard.deck.lines import Line
 from railguard.deck.numbers import read_number
 from railguard.notices import Problem
 
-Closed = Callable[[str, tuple[str, ...]], bool]
+Closed = Callable[[str, tuple[str, ...], bool], bool]
+"""closed(name, ports, calls) is true for a device; `calls`: it calls other subcircuits."""
 
 _GROUNDS = frozenset({"0", "gnd"})
 _NO_CONNECT = re.compile(r"(?i)^(\?.*|nc_\d+|unconnected-.*|no_connect.*)$")
 
 
-def nothing_closed(name: str, ports: tuple[str, ...]) -> bool:
+def nothing_closed(name: str, ports: tuple[str, ...], calls: bool) -> bool:
     """Expand everything."""
-    del name, ports
+    del name, ports, calls
     return False
 
 
 def flatten(deck: Deck, closed: Closed = nothing_closed) -> Circuit:
     """Expand a deck into one flat circuit.
 
-    closed  told a subcircuit's name and ports; true keeps its instances as one element
+    closed  told a subcircuit's name, its ports and whether it calls others; true keeps its
+            instances as one element
     """
     if not deck.readable:
         return Circuit(
@@ -314,7 +316,7 @@ class _Expander:
     ) -> None:
         definition = scope.subcircuit(instance.model.casefold())
         ports = definition.ports if definition is not None else ()
-        if definition is None or self.closed(instance.model, ports):
+        if definition is None or self.closed(instance.model, ports, definition.calls):
             notes = instance.notes or (definition.notes if definition is not None else ())
             self._add(instance.element(ports, notes), nets, prefix)
             return

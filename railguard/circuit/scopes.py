@@ -42,6 +42,11 @@ class Scope:
         self.subcircuits: dict[str, Scope] = {}
         self.notes: tuple[str, ...] = ()
 
+    @property
+    def calls(self) -> bool:
+        """Tell whether a card of this scope calls a subcircuit."""
+        return any(line.text[:1] in "xX" for line in self.cards)
+
     def subcircuit(self, name: str) -> "Scope | None":
         """Find a definition from here outwards."""
         scope: Scope | None = self

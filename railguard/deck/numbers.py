@@ -32,7 +32,7 @@ _CODED = re.compile(
     r"^(?P<whole>\d*)(?P<mark>[RrKkMmGgLTtpPnNuUµμfF])(?P<part>\d+)(?P<unit>[A-Za-zΩΩ]*)$"
 )
 _D_EXPONENT = re.compile(r"^([+-]?\d+\.?\d*|\.\d+)[dD]([+-]?\d+)(.*)$")
-_TAIL = re.compile(r"^[A-Za-zµμΩΩ%°/²]*$")
+_TAIL = re.compile(r"^[A-Za-zµμΩΩ°]*$")
 _CODES = {
     "R": 1.0, "r": 1.0, "K": 1e3, "k": 1e3, "G": 1e9, "g": 1e9, "T": 1e12, "t": 1e12,
     "p": 1e-12, "P": 1e-12, "n": 1e-9, "N": 1e-9, "u": 1e-6, "U": 1e-6, "µ": 1e-6, "μ": 1e-6,

@@ -17,7 +17,7 @@ CAUTION = (
     "review decide."
 )
 
-FIT = "Fit"
+FIT = "Remedy"
 WHY = "Why"
 SOURCE = "Source"
 FOLLOWS = "It follows:"

@@ -3,12 +3,12 @@
 from collections.abc import Callable
 
 import pytest
-from railguard.circuit.flatten import flatten
-from railguard.deck.files import deck_from_text
 
 from railguard.analysis.design import analyse
 from railguard.analysis.recognise import keeps_closed
 from railguard.analysis.stage import Design, Stage
+from railguard.circuit.flatten import flatten
+from railguard.deck.files import deck_from_text
 from railguard.devices import catalogue
 from railguard.settings.directives import apply
 from railguard.settings.file import parse

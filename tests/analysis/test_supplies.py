@@ -2,7 +2,7 @@
 
 import pytest
 
-from railguard.analysis.supplies import level_from_name
+from railguard.circuit.rails import level_from_name
 
 FOLLOWER = "VIN in 0 SIN(2 1 1k)\nXU1 in out vcc 0 out MCP6002\n"
 

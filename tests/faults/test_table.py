@@ -238,27 +238,30 @@ FAULTS = [
     swapped_supply,
 ]  # fmt: skip
 
-AMPS = pytest.mark.parametrize("amp", AMPLIFIERS.values(), ids=list(AMPLIFIERS))
-CIRCUITS = pytest.mark.parametrize("stage", STAGES, ids=lambda s: s.__name__)
+SOUND = [
+    pytest.param(stage, amp, id=f"{stage.__name__}, {name}")
+    for stage in STAGES
+    for name, amp in AMPLIFIERS.items()
+]
+FAULTY = [
+    pytest.param(*made, id=f"{stage.__name__}, {name}, {fault.__name__}")
+    for stage in STAGES
+    for name, amp in AMPLIFIERS.items()
+    for fault in FAULTS
+    if (made := fault(amp, stage(amp) | supply(amp))) is not None
+]
 
 
-@AMPS
-@CIRCUITS
+@pytest.mark.parametrize(("stage", "amp"), SOUND)
 def test_sound_stage_is_quiet(stage, amp):
     """Sound values on a sound supply draw no critical and no major."""
     found = findings(stage(amp) | supply(amp))
     assert [f"{f.rule}: {f.message}" for f in found if f.severity in BAD] == []
 
 
-@AMPS
-@CIRCUITS
-@pytest.mark.parametrize("fault", FAULTS, ids=lambda f: f.__name__)
-def test_fault_is_found_and_named(stage, amp, fault):
+@pytest.mark.parametrize(("cards", "family", "subject"), FAULTY)
+def test_fault_is_found_and_named(cards, family, subject):
     """The fault's family speaks, and names the designator or its rail."""
-    made = fault(amp, stage(amp) | supply(amp))
-    if made is None:
-        pytest.skip("this stage cannot have this fault")
-    cards, family, subject = made
     found = findings(cards)
     named = [f for f in found if f.family == family and subject in (*f.designators, *f.nets)]
     assert named, [f"{f.rule} {f.designators} {f.nets}" for f in found]

@@ -5,6 +5,7 @@ from collections.abc import Iterator
 
 from railguard.analysis.stage import Design
 from railguard.circuit.model import GROUND, Element
+from railguard.notices import NotChecked
 from railguard.rules.compose import OWN_TABLE, finding
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.remedies import fit
@@ -17,6 +18,8 @@ E24 = frozenset(
     (10, 11, 12, 13, 15, 16, 18, 20, 22, 24, 27, 30, 33, 36, 39, 43, 47, 51, 56, 62, 68, 75, 82, 91)
 )
 E96 = frozenset(round(100 * 10 ** (i / 96)) for i in range(96))
+OP_AMP_PINS = (5, 8, 14)
+"""Nets of a card that may be a single, a dual or a quad op-amp with its supply pins."""
 UNITS = {"R": "Ω", "C": "F", "L": "H"}
 
 # --- netlist-dangling
@@ -135,6 +138,16 @@ def judge_device(subject: Design, limits: Limits, design: Design) -> Iterator[Ou
             remedy=f"{OWN_TABLE[:1].upper()}{OWN_TABLE[1:]}.",
             source=NO_SOURCE,
             location=stages[0].location,
+        )
+    for device in subject.unrecognised:
+        if device.sort != "unknown" or device.pins not in OP_AMP_PINS or not device.name:
+            continue
+        near = f"; the nearest name is {device.nearest}" if device.nearest else ""
+        yield NotChecked(
+            subject=device.designator,
+            rule="netlist-device-unknown",
+            why=f"nobody knows {device.name}, so it was not taken for an op-amp{near}",
+            add=f'if it is one: [[devices]] with names = {{ 1 = ["{device.name}"] }}',
         )
 
 
