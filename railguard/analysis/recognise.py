@@ -7,11 +7,11 @@ wired as an amplifier. What is an IC but no op-amp stays opaque.
 
 import re
 from collections import defaultdict
-from collections.abc import Callable
 from functools import cache
 
 import msgspec
 
+from railguard.circuit.flatten import Closed
 from railguard.circuit.model import GROUND, Circuit, Element
 from railguard.circuit.rails import level_from_name
 from railguard.devices.catalogue import Catalogue
@@ -62,18 +62,18 @@ class Recognised(msgspec.Struct, frozen=True):
     remarks: tuple[Remark, ...]
 
 
-def keeps_closed(catalogue: Catalogue) -> Callable[[str, tuple[str, ...], bool], bool]:
+def keeps_closed(catalogue: Catalogue) -> Closed:
     """Return the predicate flattening asks: is this subcircuit a device, not a sheet?
 
-    A name nobody knows is one where its header names an op-amp's five pins and its body calls no
-    other subcircuit: a macromodel, whose inside is no part of the design.
+    A name nobody knows is one where its header or the comment beside it names an op-amp's pins and
+    its body calls no other subcircuit: a macromodel, whose inside is no part of the design.
     """
 
     @cache
-    def closed(name: str, ports: tuple[str, ...], calls: bool) -> bool:
+    def closed(name: str, ports: tuple[str, ...], notes: tuple[str, ...], calls: bool) -> bool:
         match = catalogue.match(name)
         if match.sort == "unknown":
-            return not calls and _named_pins(match, ports)
+            return not calls and _named_pins(match, ports, notes)
         if match.sort == "generic":
             return 3 <= len(ports) <= 8
         return len(ports) >= 3
@@ -96,7 +96,9 @@ def recognise(circuit: Circuit, catalogue: Catalogue, settings: Settings) -> Rec
             continue
         if element.kind in ("X", "ic"):
             match = catalogue.match(element.model)
-            wired = _named_pins(match, element.ports) or _wired_as_one(element, rails)
+            wired = _named_pins(match, element.ports, element.pin_notes) or _wired_as_one(
+                element, rails
+            )
             if match.sort == "unknown" and not wired:
                 unknown.append((element, match))
                 continue
@@ -109,8 +111,12 @@ def recognise(circuit: Circuit, catalogue: Catalogue, settings: Settings) -> Rec
             amplifiers += found
             if remark:
                 assumed[remark].append(element.designator)
-        elif element.kind == "E" and _is_amplifier(element, circuit):
-            amplifiers.append(_controlled(element))
+            if match.also and match.device is not None:
+                names = " or ".join((match.device.family, *match.also))
+                text = f"{match.name} may be {names}; taken for the first"
+                assumed[text].append(element.designator)
+        elif element.kind in ("E", "G") and (gain := _gain_of(element, circuit)) is not None:
+            amplifiers.append(_controlled(element, gain))
     remarks = tuple(
         Remark(message=f"{_names(subjects)}: {text}") for text, subjects in assumed.items()
     )
@@ -146,9 +152,9 @@ def _wired_as_one(element: Element, rails: frozenset[str]) -> bool:
     return ends and output not in rails and output != GROUND
 
 
-def _named_pins(match: Match, ports: tuple[str, ...]) -> bool:
-    """Tell whether a header's names say which pin is which on an op-amp with its supply."""
-    order = pin_order(match, len(ports), ports) if len(ports) >= 5 else None
+def _named_pins(match: Match, ports: tuple[str, ...], notes: tuple[str, ...]) -> bool:
+    """Tell whether header or comment say which pin is which on an op-amp with its supply."""
+    order = pin_order(match, len(ports), ports, notes) if len(ports) >= 5 else None
     if order is None or order.basis != "netlist" or len(order.channels) != 1:
         return False
     channel = order.channels[0]
@@ -223,21 +229,39 @@ def _grouped(amplifiers: list[Amplifier]) -> tuple[Amplifier, ...]:
     return tuple(result)
 
 
-def _is_amplifier(element: Element, circuit: Circuit) -> bool:
+def _gain_of(element: Element, circuit: Circuit) -> float | None:
+    """Return the open-loop gain of a controlled source wired as an amplifier, V/V; else None.
+
+    An E source with its own gain, a G source with the one it makes of the resistor at its output.
+    A supply or a test source with a high gain has both ends of its control on one net or its
+    output on ground.
+    """
     control = element.control
-    if control is None or control.gain is None or len(control.nets) != 2:
-        return False
-    if abs(control.gain) < CONTROLLED_GAIN or element.nets[1] != GROUND:
-        return False
-    # A supply or a test source that happens to have a high gain drives nothing back.
-    return element.nets[0] != GROUND and len(set(control.nets)) == 2 and bool(circuit.elements)
+    if control is None or control.gain is None or len(set(control.nets)) != 2:
+        return None
+    out, back = element.nets[:2]
+    gain = control.gain
+    if element.kind == "G":
+        # Current leaves the first net through the source, so driven nets fall with a positive gain.
+        if back != GROUND and out == GROUND:
+            out, back = back, out
+        else:
+            gain = -gain
+        siemens = sum(
+            1.0 / e.value
+            for e in circuit.elements
+            if e.kind == "R" and e.value and set(e.nets[:2]) == {out, GROUND}
+        )
+        gain = gain / siemens if siemens else 0.0
+    if out == GROUND or back != GROUND or abs(gain) < CONTROLLED_GAIN:
+        return None
+    return gain
 
 
-def _controlled(element: Element) -> Amplifier:
-    control = element.control
-    if control is None or control.gain is None:  # _is_amplifier has looked
-        raise ValueError(element.designator)
-    plus, minus = control.nets if control.gain > 0 else control.nets[::-1]
+def _controlled(element: Element, gain: float) -> Amplifier:
+    nets = element.control.nets if element.control is not None else ("", "")
+    plus, minus = nets if gain > 0 else nets[::-1]
+    output = next(net for net in element.nets[:2] if net != GROUND)
     return Amplifier(
         designator=element.designator,
         schematic=element.designator,
@@ -248,8 +272,8 @@ def _controlled(element: Element) -> Amplifier:
         minus=minus,
         positive="",
         negative="",
-        output=element.nets[0],
-        gain=abs(control.gain),
+        output=output,
+        gain=abs(gain),
     )
 
 

@@ -7,7 +7,7 @@ that this room needs no catalogue.
 import re
 from collections.abc import Callable, Mapping
 
-from railguard.circuit.bind import Binder, Instance, UnboundError
+from railguard.circuit.bind import Binder, Instance, UnboundError, pin_names
 from railguard.circuit.expressions import ExpressionError, Function, evaluate
 from railguard.circuit.model import GROUND, Circuit, Directive, Element, Model, Subcircuit
 from railguard.circuit.scopes import Scope, sort_deck, text_of, unquoted
@@ -17,24 +17,26 @@ from railguard.deck.lines import Line
 from railguard.deck.numbers import read_number
 from railguard.notices import Problem
 
-Closed = Callable[[str, tuple[str, ...], bool], bool]
-"""closed(name, ports, calls) is true for a device; `calls`: it calls other subcircuits."""
+Closed = Callable[[str, tuple[str, ...], tuple[str, ...], bool], bool]
+"""closed(name, ports, notes, calls) is true for a device.
+
+notes  pin names of a connection comment beside the header; calls: it calls other subcircuits
+"""
 
 _GROUNDS = frozenset({"0", "gnd"})
 _NO_CONNECT = re.compile(r"(?i)^(\?.*|nc_\d+|unconnected-.*|no_connect.*)$")
 
 
-def nothing_closed(name: str, ports: tuple[str, ...], calls: bool) -> bool:
+def nothing_closed(name: str, ports: tuple[str, ...], notes: tuple[str, ...], calls: bool) -> bool:
     """Expand everything."""
-    del name, ports, calls
+    del name, ports, notes, calls
     return False
 
 
 def flatten(deck: Deck, closed: Closed = nothing_closed) -> Circuit:
     """Expand a deck into one flat circuit.
 
-    closed  told a subcircuit's name, its ports and whether it calls others; true keeps its
-            instances as one element
+    closed  asked for every subcircuit that is called; true keeps its instances as one element
     """
     if not deck.readable:
         return Circuit(
@@ -316,7 +318,9 @@ class _Expander:
     ) -> None:
         definition = scope.subcircuit(instance.model.casefold())
         ports = definition.ports if definition is not None else ()
-        if definition is None or self.closed(instance.model, ports, definition.calls):
+        if definition is None or self.closed(
+            instance.model, ports, pin_names(definition.notes, len(ports)), definition.calls
+        ):
             notes = instance.notes or (definition.notes if definition is not None else ())
             self._add(instance.element(ports, notes), nets, prefix)
             return

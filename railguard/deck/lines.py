@@ -20,14 +20,18 @@ _COMMENT = re.compile(r";|(?:(?<=[\s,])|^)\$(?=\s|$)|(?:(?<=\s)|^)//")
 _FILE_CARD = re.compile(r"^\s*\.(?:inc|include|lib)\b", re.IGNORECASE)
 
 
+LADDER = 16
+"""Comment lines kept on either side of a card: no connection ladder is longer."""
+
+
 class Line(msgspec.Struct, frozen=True):
     """One logical line.
 
-    text    the joined pieces, comments removed
-    starts  offsets in `text` at which each piece begins
-    places  (line, column) of each piece's first character
-    note    pin names written behind the card (`;§pnba`), or ""
-    before  the comment line directly above, for connection ladders
+    text      the joined pieces, comments removed
+    starts    offsets in `text` at which each piece begins
+    places    (line, column) of each piece's first character
+    note      pin names written behind the card (`;§pnba`), or ""
+    comments  lines above and below the card, for connection ladders
     """
 
     file: str
@@ -93,6 +97,7 @@ class _Assembler:
         self._pieces: list[str] = []
         self._places: list[tuple[int, int]] = []
         self._note = ""
+        self._above: list[str] = []
         self._comments: list[str] = []
         self._open = False
 
@@ -104,6 +109,9 @@ class _Assembler:
 
     def card(self, text: str, number: int, column: int, note: str) -> None:
         self.flush()
+        # Comments between two cards may speak of either: a connection ladder stands above its
+        # header as often as below.
+        self._above, self._comments = self._comments, []
         self._pieces, self._places, self._note, self._open = [text], [(number, column)], note, True
 
     def more(self, text: str, number: int, column: int) -> None:
@@ -150,11 +158,10 @@ class _Assembler:
                 tuple(starts),
                 tuple(self._places),
                 self._note,
-                tuple(self._comments[-12:]),
+                (*self._above[-LADDER:], *self._comments[:LADDER]),
             )
         )
         self._pieces, self._places, self._note = [], [], ""
-        self._comments = []
 
 
 def scan(text: str, file: str, titled: bool) -> Scanned:
