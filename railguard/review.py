@@ -4,6 +4,7 @@ import datetime as dt
 from collections.abc import Mapping
 from pathlib import Path
 from types import MappingProxyType
+from typing import Protocol
 
 import msgspec
 
@@ -26,6 +27,18 @@ from railguard.settings import file as settings_file
 from railguard.settings.model import Settings
 from railguard.settings.names import check_names
 from railguard.words import SEVERITIES, Severity, Verdict, at_or_above
+
+
+class Simulator(Protocol):
+    """What a review asks of a simulator; `railguard.simulated.Ngspiced` is the one there is."""
+
+    def filled(self, design: Design, devices: catalogue.Catalogue) -> Design:
+        """Give stages the numbers that the built-in solver could not work out."""
+        ...
+
+    def confirmed(self, findings: tuple[Finding, ...], design: Design) -> tuple[Finding, ...]:
+        """Say of each finding on range and current what the simulation says."""
+        ...
 
 
 class DesignReview(msgspec.Struct, frozen=True, kw_only=True):
@@ -80,6 +93,7 @@ def review(
     bounds: Bounds | None = None,
     plugins: bool = True,
     options: Options | None = None,
+    engine: Simulator | None = None,
     changes: Mapping[str, object] = MappingProxyType({}),
 ) -> Review:
     """Review one or several netlists.
@@ -92,6 +106,7 @@ def review(
     root      the folder includes must stay in; None: each deck's own folder
     plugins   False leaves out the rules that other packages bring
     options   how the corners of tolerance are worked out; None: by sensitivities
+    engine    runs ngspice beside the built-in solver; None: never
     changes   fields of Settings that stand over any file found: `hold_at`, `kind`, `require`
 
     Raises:
@@ -107,7 +122,7 @@ def review(
         found_settings = stated if stated is not None else _found_beside(one)
         own = run.prepared(msgspec.structs.replace(found_settings, **changes))
         deck = _deck(one, root, bounds or Bounds())
-        found, matched = review_deck(deck, own, extra, options)
+        found, matched = review_deck(deck, own, extra, options, engine)
         run.took(own, matched, found.path)
         designs.append(found)
     return Review(
@@ -170,11 +185,13 @@ def review_deck(
     stated: Settings,
     extra: third_party.Installed | None = None,
     options: Options | None = None,
+    engine: Simulator | None = None,
 ) -> tuple[DesignReview, set[int]]:
     """Review one deck that has been read; also return the indexes of waivers that matched.
 
     stated  what the user's file says; the deck's own comment cards are laid under it
     extra   rules of other packages
+    engine  fills in what the built-in solver cannot follow, and confirms findings
     """
     extra = extra or third_party.Installed()
     devices = catalogue.load(stated.devices)
@@ -183,8 +200,11 @@ def review_deck(
     design = analyse(circuit, settings, devices, options)
     if extra.remarks:
         design = msgspec.structs.replace(design, remarks=(*design.remarks, *extra.remarks))
+    if engine is not None:
+        design = engine.filled(design, devices)
     judged = judge(design, extra.rules)
-    findings, matched = waivers.apply(judged.findings, settings, circuit.path, settings.as_of)
+    found = judged.findings if engine is None else engine.confirmed(judged.findings, design)
+    findings, matched = waivers.apply(found, settings, circuit.path, settings.as_of)
     # A waiver in a comment card speaks of this deck alone, so it is left over here or nowhere.
     own = waivers.stale(settings, matched | frozenset(range(len(stated.waivers))))
     result = DesignReview(

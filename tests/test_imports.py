@@ -21,6 +21,7 @@ ORDER = (
     ("engine",),
     ("rules",),
     ("review",),
+    ("simulated",),
     ("report",),
     ("commands", "plugins"),
 )
@@ -31,8 +32,8 @@ RANK = {room: step for step, rooms in enumerate(ORDER) for room in rooms}
 SHARED = ORDER[0]
 """Single modules of the first step, each of which may use those before it."""
 
-ENGINE_USERS = ("engine", "review", "commands")
-"""`review` confirms with it, and one command measures a device."""
+ENGINE_USERS = ("engine", "simulated", "commands")
+"""`simulated` confirms with it, and one command measures a device."""
 
 HEAVY = ("scipy", "PySpice", "jinja2", "schemdraw", "distributed", "dask", "fsspec", "eseries")
 """Import time: scipy's sparse solver 330 ms, PySpice 125, jinja2 60, eseries 45 ms."""
@@ -168,7 +169,7 @@ def test_a_wrong_import_is_found(module, text, fault):
         ("railguard.plugins.pyspice_front", "import PySpice"),
         ("railguard.plugins.pytest_plugin", "import pytest"),
         ("railguard.report.json", "from railguard import __version__"),
-        ("railguard.review", "from railguard.engine.ngspice import run"),
+        ("railguard.simulated", "from railguard.engine.ngspice import run"),
     ],
 )
 def test_a_right_import_is_not(module, text):

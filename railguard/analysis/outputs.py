@@ -70,8 +70,20 @@ def output_side(
     bounds = {}
     for upper in (True, False):
         reach = reaches[upper]
-        if not known or reach is None:
+        if reach is None:
             bounds[upper] = Bound(upper=upper, demand=(high if upper else low) if known else None)
+            continue
+        if not known:
+            bounds[upper] = Bound(
+                upper=upper,
+                typical=reach.typical,
+                guaranteed=reach.guaranteed,
+                absolute=supply.positive if upper else supply.negative,
+                typical_basis=reach.typical_basis,
+                guaranteed_basis=reach.guaranteed_basis,
+                absolute_basis=supply.basis,
+                condition=reach.condition,
+            )
             continue
         pin = view.at("positive" if upper else "negative")
         bounds[upper] = bound(

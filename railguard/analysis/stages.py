@@ -122,6 +122,8 @@ def _stage(
     topology = topology_of(amplifier, solution.ways, loop, rails)
     gains = gains_of(view)
     heat = dissipation(device, supply, output, current, load)
+    if heat is None and "output" in unknown:
+        unknown["dissipation"] = unknown["output"]
     return Stage(
         designator=name,
         schematic=amplifier.schematic,

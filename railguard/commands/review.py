@@ -11,7 +11,7 @@ import click
 from railguard.analysis.solution import Options
 from railguard.errors import UsageError
 from railguard.report.formats import FORMATS, render
-from railguard.review import Review
+from railguard.review import Review, Simulator
 from railguard.review import review as run
 from railguard.settings import file as settings_file
 from railguard.settings.model import Settings
@@ -61,6 +61,12 @@ HOLD = 1
     metavar="N",
     help="Draw N samples beside the corners.",
 )
+@click.option(
+    "--engine",
+    type=click.Choice(["ngspice"]),
+    help="Let it work out what rests on diodes and transistors.",
+)
+@click.option("--confirm", is_flag=True, help="Hold range and current findings against ngspice.")
 @click.option("--no-plugins", is_flag=True, help="Leave out the rules other packages bring.")
 def review(  # one parameter an option: click hands them over by name
     files: tuple[str, ...],
@@ -75,6 +81,8 @@ def review(  # one parameter an option: click hands them over by name
     corners: str,
     monte_carlo: int,
     no_plugins: bool,
+    engine: str | None,
+    confirm: bool,
 ) -> None:
     """Review netlists and report what fails, by what margin, and what to fit instead.
 
@@ -96,10 +104,21 @@ def review(  # one parameter an option: click hands them over by name
         plugins=not no_plugins,
         options=Options(exact=corners == "exact", samples=monte_carlo),
         changes=changes,
+        engine=_engine(engine is not None, confirm),
     )
     for name, place in wanted:
         _deliver(result, name, place)
     sys.exit(HOLD if result.held else 0)
+
+
+def _engine(fill: bool, confirm: bool) -> Simulator | None:
+    if not fill and not confirm:
+        return None
+    # The engine's modules are of use to this request only.
+    from railguard.engine.ngspice import find
+    from railguard.simulated import Ngspiced
+
+    return Ngspiced(find(), fill=fill, confirm=confirm)
 
 
 def _settings(stated: Path | None, none: bool) -> Settings | None:

@@ -1,0 +1,89 @@
+"""Findings on range and current held against ngspice: confirmed, refuted, or left open."""
+
+import msgspec
+
+from railguard.analysis.stage import Bound, Design, Stage, Unknown
+from railguard.engine.operating import Simulated, Simulation
+
+MET = 0.02
+"""A demand counts as met when the simulation comes within this share of its span."""
+SMALLEST = 0.02
+"""V within which an output voltage counts as reached whatever its span."""
+
+
+class Outcome(msgspec.Struct, frozen=True):
+    """What the simulation says of one demand: "confirmed", "refuted" or "open", and why."""
+
+    word: str
+    why: str
+
+
+def outcome(
+    rule: str, demand: float | None, limit: float | None, corner: str, stage: Stage, done: Simulated
+) -> Outcome:
+    """Hold one finding against what its stage did.
+
+    The macromodel is typical, at nominal values: what breaks only a guaranteed limit or a corner
+    is left open.
+    """
+    if demand is None or limit is None:
+        return Outcome("open", "it states no number that can be simulated")
+    if corner == "worst-case":
+        return Outcome("open", "it is a corner; the simulation runs at nominal values")
+    if rule == "headroom-output":
+        upper = demand > limit
+        reached = done.output.high if upper else done.output.low
+        span = max(stage.output.demand.span or 0.0, 1.0)
+        slack = max(MET * span, SMALLEST)
+        figure = "V"
+    else:
+        reached = max(done.current.high or 0.0, -(done.current.low or 0.0))
+        slack, upper, figure = MET * abs(demand), True, "A"
+    if reached is None:
+        return Outcome("open", "it did not settle")
+    short = demand - reached if upper else reached - demand
+    told = f"{reached:.4g} {figure} of {demand:.4g} {figure}"
+    if short > slack:
+        return Outcome("confirmed", f"ngspice reaches {told}")
+    return Outcome("refuted", f"ngspice reaches {told} with typical figures")
+
+
+def filled(design: Design, simulation: Simulation) -> Design:
+    """Give the stages that the built-in solver could not follow their numbers from ngspice."""
+    return msgspec.structs.replace(
+        design, stages=tuple(_filled(stage, simulation) for stage in design.stages)
+    )
+
+
+def _filled(stage: Stage, simulation: Simulation) -> Stage:
+    done = simulation.stages.get(stage.designator)
+    bent = [p for p, u in stage.unknown.items() if u.add == "--engine ngspice"]
+    if done is None or not bent:
+        return stage
+    unknown = {part: reason for part, reason in stage.unknown.items() if part not in bent}
+    for part in ("loop", "dissipation"):
+        if part in bent:
+            unknown[part] = Unknown(stage.unknown[part].why, "nothing: it changes with the signal")
+    output, current = stage.output, stage.current
+    if "output" in bent:
+        output = msgspec.structs.replace(
+            output,
+            level=done.level,
+            demand=done.output,
+            high=_at(output.high, done.output.high, done),
+            low=_at(output.low, done.output.low, done),
+        )
+    if "current" in bent:
+        source, sink = max(done.current.high or 0.0, 0.0), max(-(done.current.low or 0.0), 0.0)
+        current = msgspec.structs.replace(
+            current,
+            demand_source=source,
+            demand_sink=sink,
+            source=msgspec.structs.replace(current.source, demand=source),
+            sink=msgspec.structs.replace(current.sink, demand=sink),
+        )
+    return msgspec.structs.replace(stage, output=output, current=current, unknown=unknown)
+
+
+def _at(bound: Bound, value: float | None, done: Simulated) -> Bound:
+    return msgspec.structs.replace(bound, demand=value, level=done.level, span=done.output.span)

@@ -1,0 +1,79 @@
+"""Findings and open stages held against ngspice."""
+
+import shutil
+
+import pytest
+
+from railguard.engine.ngspice import find
+from railguard.review import review
+from railguard.simulated import Ngspiced
+
+pytestmark = pytest.mark.skipif(shutil.which("ngspice") is None, reason="ngspice is not installed")
+
+RAILS = "VP vp 0 12\nVN vn 0 -12\nCP vp 0 100n\nCN vn 0 100n\n.end\n"
+
+
+def simulated(cards, *, fill=False, confirm=True):
+    """Review cards on +-12 V with ngspice beside."""
+    engine = Ngspiced(find(), fill=fill, confirm=confirm)
+    return review(f"station\n{cards}\n{RAILS}", engine=engine).designs[0]
+
+
+def messages(design, rule):
+    """Return the messages of one rule, consequences too."""
+    found, queue = [], list(design.findings)
+    while queue:
+        finding = queue.pop()
+        queue += finding.consequences
+        if finding.rule == rule:
+            found.append(finding.message)
+    return found
+
+
+@pytest.mark.parametrize("device", ["TL072", "LM358", "OPA2134", "NE5532"])
+@pytest.mark.parametrize("gain", [20, 50])
+def test_clipping_is_confirmed(device, gain):
+    """An output asked far beyond its rail clips in ngspice as well."""
+    cards = f"VIN in 0 SIN(0 1 100)\nR1 in n 1k\nR2 n out {gain}k\nXU1 0 n vp vn out {device}"
+    (message,) = messages(simulated(cards), "headroom-output")
+    assert "Confirmed: ngspice reaches" in message
+
+
+@pytest.mark.parametrize("device", ["TL072", "LM358", "NE5532"])
+def test_overload_is_confirmed(device):
+    """A load of 30 ohms takes more than the device's short-circuit current."""
+    cards = f"VIN in 0 SIN(0 5 100)\nXU1 in out vp vn out {device}\nRL out 0 30"
+    (message,) = messages(simulated(cards), "drive-current")
+    assert "Confirmed: ngspice reaches" in message
+
+
+def test_corner_is_left_open():
+    """What fails only at a corner of tolerance is not told from a nominal run."""
+    cards = "VIN in 0 SIN(0 0.92 100)\nR1 in n 1k\nR2 n out 10k\nXU1 0 n vp vn out TL072"
+    for message in messages(simulated(cards), "headroom-output"):
+        assert "Confirmed" not in message
+
+
+def test_stage_behind_diodes_gets_its_range():
+    """A half-wave rectifier: the built-in solver leaves it open, ngspice fills it in."""
+    cards = (
+        "VIN in 0 SIN(0 1 100)\nR1 in n 10k\nR2 n r 10k\nD1 n o DX\nD2 o r DX\nRL r 0 100k\n"
+        "XU1 0 n vp vn o TL072\n.model DX D"
+    )
+    assert simulated(cards, fill=False).design.stages[0].output.demand.high is None
+    found = simulated(cards, fill=True).design.stages[0].output.demand
+    assert found.high == pytest.approx(1.6, abs=0.15)
+    assert found.low == pytest.approx(-0.6, abs=0.15)
+
+
+def test_a_circuit_ngspice_refuses_costs_only_itself():
+    """An engine error is a remark, and the next circuit runs as if nothing had been."""
+    engine = Ngspiced(find(), fill=False, confirm=True)
+    bad = "station\nV1 a 0 1\nV2 a 0 2\nXU1 a out vp vn out TL072\n" + RAILS
+    good = (
+        "station\nVIN in 0 SIN(0 1 100)\nR1 in n 1k\nR2 n out 50k\nXU1 0 n vp vn out TL072\n"
+        + RAILS
+    )
+    first, second = review([bad, good], engine=engine).designs
+    assert any("ngspice" in remark.message for remark in first.design.remarks)
+    assert "Confirmed" in messages(second, "headroom-output")[0]
