@@ -82,6 +82,14 @@ def pin_names(comments: tuple[str, ...], count: int) -> tuple[str, ...]:
     return tuple(found) if len(found) == count else ()
 
 
+def _nothing(line: Line) -> Problem:
+    return Problem(
+        rule="netlist-card",
+        message=f"The card {line.text[:20]} cannot be read: it holds no word.",
+        location=line.location,
+    )
+
+
 class Binder:
     """Gives the cards of one instance of a scope their roles."""
 
@@ -114,6 +122,8 @@ class Binder:
 
         Raises  UnboundError
         """
+        if not items:
+            raise UnboundError(_nothing(line), None)
         head = items[0]
         if isinstance(head, Call | Group | Assignment):
             raise self._unbound(items, line, "netlist-card", f"{text_of(head)} is no designator")
@@ -302,7 +312,7 @@ class Binder:
             if len(words) > 1 and (number := self.number(words[1], letter)) is not None:
                 return number, " ".join(words[2:]), first, True
             return self._model_value(model[2], letter), " ".join(words[1:]), first, True
-        reading = read_value(words, letter)
+        reading = read_value(words, letter, line.text)
         if not reading.fitted:
             return None, reading.text, "", False
         if reading.value is None and first.isidentifier():
@@ -436,6 +446,12 @@ class Binder:
             raise self._unbound(
                 items, line, "netlist-node-count",
                 f"{kind} {name} has {least} nodes and a model; found {max(at, 0)} nodes",
+            )  # fmt: skip
+        known = self._scope.model(words[at].casefold())
+        if letter == "M" and at == 3 and known is not None and known[1].lower() != "vdmos":
+            raise self._unbound(
+                items, line, "netlist-node-count",
+                f"MOSFET {name} has a bulk node; only a VDMOS model takes three",
             )  # fmt: skip
         nets = tuple(w.strip("[]") for w in words[:at])
         return [

@@ -41,14 +41,33 @@ def not_fitted(word: str) -> bool:
     return bool(_NOT_FITTED.match(word))
 
 
-def read_value(words: list[str], letter: str) -> Reading:
-    """Read the value of a passive from the words behind its nodes."""
+def _decimal_comma(words: list[str], letter: str, card: str) -> Reading | None:
+    """Read a value whose decimal comma split it into two words."""
+    if len(words) < 2 or not words[0].lstrip("+-").isdigit() or not words[1][:1].isdigit():
+        return None
+    if f"{words[0]},{words[1]}" not in card:
+        return None
+    meant, taken = read_number(f"{words[0]}.{words[1]}", letter), read_number(words[1], letter)
+    return Reading(
+        meant.value if meant else None,
+        taken.spice if taken else None,
+        "netlist-value-form",
+        "a decimal comma separates words",
+        " ".join(words[2:]),
+    )
+
+
+def read_value(words: list[str], letter: str, card: str = "") -> Reading:
+    """Read the value of a passive from the words behind its nodes.
+
+    card  the whole card as written: a decimal comma shows there only
+    """
+    comma = _decimal_comma(words, letter, card)
+    if comma is not None:
+        return comma
     first = words[0]
     if not_fitted(first):
         return Reading(text=" ".join(words[1:]), fitted=False)
-    if len(words) > 1 and words[1].startswith(","):
-        words = [first + words[1], *words[2:]]
-        first = words[0]
     number = read_number(first, letter)
     rest = words[1:]
     if number is None:

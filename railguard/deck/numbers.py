@@ -29,7 +29,7 @@ _NUMBER = re.compile(
     r"^(?P<sign>[+-]?)(?P<digits>\d+\.?\d*|\.\d+)(?:[eE](?P<exponent>[+-]?\d+))?(?P<tail>[^\d\s].*)?$"
 )
 _CODED = re.compile(
-    r"^(?P<whole>\d*)(?P<mark>[RrKkMmGgLTtpPnNuUµμfF])(?P<part>\d+)(?P<unit>[A-Za-zΩΩ]*)$"
+    r"^(?P<whole>\d*)(?P<mark>[RrKkMmGgLTtpPnNuUµμfF])(?P<part>\d{1,3})(?P<unit>[A-Za-zΩΩ]*)$"
 )
 _D_EXPONENT = re.compile(r"^([+-]?\d+\.?\d*|\.\d+)[dD]([+-]?\d+)(.*)$")
 _TAIL = re.compile(r"^[A-Za-zµμΩΩ°]*$")
@@ -108,6 +108,8 @@ def _coded(text: str, letter: str) -> Number | None:
     if found is None or (not found["whole"] and found["mark"] not in "Rr"):
         return None
     mark = found["mark"]
+    if letter not in ("C", "L") and mark in "pPnNuUµμ":
+        return None  # 1N914 is a diode
     factor = _CODES[mark]
     if letter == "C" and mark in "mM":
         factor = 1e-3
