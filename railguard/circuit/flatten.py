@@ -7,7 +7,8 @@ that this room needs no catalogue.
 import re
 from collections.abc import Callable, Mapping
 
-from railguard.circuit.bind import Binder, Instance, UnboundError, pin_names
+from railguard.circuit.bind import Instance, bind, pin_names
+from railguard.circuit.card import Names, UnboundError
 from railguard.circuit.expressions import ExpressionError, Function, evaluate
 from railguard.circuit.model import GROUND, Circuit, Directive, Element, Model, Subcircuit
 from railguard.circuit.scopes import Scope, sort_deck, text_of, unquoted
@@ -191,7 +192,7 @@ class _Expander:
         active: frozenset[str],
     ) -> None:
         nets = dict(ports)
-        binder = Binder(scope, environment, prefix, multiplier)
+        names = Names(scope, environment, prefix, multiplier)
         self._take_models(scope, environment, prefix)
         seen: dict[str, Line] = {}
         for line in scope.cards:
@@ -200,7 +201,7 @@ class _Expander:
                 return
             try:
                 items = items_of(line.text)
-                bound = binder.bind(items, line)
+                bound = bind(names, items, line)
             except CardError as error:
                 self._card(line, error.reason)
                 continue
@@ -209,7 +210,7 @@ class _Expander:
                 if error.element is not None:
                     self._add(error.element, nets, prefix)
                 continue
-            self.problems += binder.taken()
+            self.problems += names.taken()
             name = bound[0].designator if isinstance(bound, list) else bound.designator
             key = name.casefold()
             if key in seen:

@@ -10,10 +10,7 @@ Where a figure is not listed a stand-in is used and named.
 
 import math
 
-import msgspec
-
-from railguard.devices.model import Device
-from railguard.engine.figures import Figures, figures_of
+from railguard.engine.figures import Figures
 from railguard.engine.waves import number
 
 PINS = ("inp", "inn", "vcc", "vee", "out")
@@ -30,23 +27,6 @@ _DEAD_BAND = 0.02
 """Volts the inner node may run ahead of what the output stage takes before it is held."""
 _HOLD_VOLTS = 2e-3
 """Volts beyond the dead band that take up the whole slewing current."""
-
-
-class Macromodel(msgspec.Struct, frozen=True):
-    """A subcircuit for ngspice, pins in the order of `PINS`.
-
-    missing  figures that the data sheet does not state, each as a phrase
-    """
-
-    name: str
-    text: str
-    missing: tuple[str, ...]
-
-
-def macromodel(device: Device | None, name: str, positive: float, negative: float) -> Macromodel:
-    """Make the macromodel of a device on its rails, V; None: a device that nobody lists."""
-    figures, missing = figures_of(device, positive, negative)
-    return Macromodel(name, limited(name, figures), missing)
 
 
 def limited(name: str, figures: Figures, straight: bool = False) -> str:
@@ -82,20 +62,6 @@ def limited(name: str, figures: Figures, straight: bool = False) -> str:
         f"Bcl g 0 i={number(slewing / _HOLD_VOLTS)}*("
         f"max(v(g)-v(out)-{ahead}*v(ih)-{number(_DEAD_BAND)},0)"
         f"-max(v(out)-v(g)-{ahead}*v(il)-{number(_DEAD_BAND)},0))",
-        f".ends {name}",
-    ]
-    return "\n".join(lines) + "\n"
-
-
-def unlimited(name: str, figures: Figures) -> str:
-    """Return a macromodel of the same small-signal behaviour that never comes to a limit."""
-    f = figures
-    farads = _TRANSCONDUCTANCE / (2 * math.pi * f.bandwidth)
-    lines = [
-        *_front(name, f, farads),
-        f"Bgm 0 g i={number(_TRANSCONDUCTANCE)}*(v(inp)-v(inn){f.offset:+.9g})",
-        "Eout io 0 g 0 1",
-        f"Rout io out {number(max(f.output_ohms, 1e-3))}",
         f".ends {name}",
     ]
     return "\n".join(lines) + "\n"
