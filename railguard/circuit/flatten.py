@@ -7,12 +7,14 @@ that this room needs no catalogue.
 import re
 from collections.abc import Callable, Mapping
 
+import msgspec
+
 from railguard.circuit.bind import Instance, bind, pin_names
 from railguard.circuit.card import Names, UnboundError
 from railguard.circuit.expressions import ExpressionError, Function, evaluate
 from railguard.circuit.model import GROUND, Circuit, Directive, Element, Model, Subcircuit
 from railguard.circuit.scopes import Scope, sort_deck, text_of, unquoted
-from railguard.deck.cards import Assignment, CardError, Items, items_of
+from railguard.deck.cards import Assignment, CardError, Items
 from railguard.deck.files import Deck
 from railguard.deck.lines import Line
 from railguard.deck.numbers import read_number
@@ -126,6 +128,13 @@ class Environment:
         self._caller = caller
         self._busy: set[str] = set()
 
+    def of(self, scope: Scope | None) -> "Environment | None":
+        """Return the environment of the scope a definition stands in: the nearest one outwards."""
+        at: Environment | None = self
+        while at is not None and at._scope is not scope:
+            at = at._outer or at._caller
+        return at
+
     @property
     def functions(self) -> Mapping[str, Function]:
         """Functions defined here and outside."""
@@ -195,13 +204,12 @@ class _Expander:
         names = Names(scope, environment, prefix, multiplier)
         self._take_models(scope, environment, prefix)
         seen: dict[str, Line] = {}
-        for line in scope.cards:
+        for number, line in enumerate(scope.cards):
             if len(self.elements) >= self.deck.bounds.elements:
                 self._bound(f"more than {self.deck.bounds.elements:,} elements", line)
                 return
             try:
-                items = items_of(line.text)
-                bound = bind(names, items, line)
+                bound = bind(names, scope.items(number), line)
             except CardError as error:
                 self._card(line, error.reason)
                 continue
@@ -279,23 +287,22 @@ class _Expander:
         return made
 
     def _add(self, element: Element, nets: dict[str, str], prefix: str) -> None:
-        import msgspec
-
-        resolved = tuple(self.net(n, nets, prefix) for n in element.nets)
-        control = element.control
-        if control is not None and control.nets:
-            steer = tuple(self.net(n, nets, prefix) for n in control.nets)
-            control = msgspec.structs.replace(control, nets=steer)
-        if control is not None and control.element:
-            control = msgspec.structs.replace(control, element=prefix + control.element)
+        resolved = tuple([self.net(n, nets, prefix) for n in element.nets])
         if GROUND in resolved:
             self.grounded = True
+        control = element.control
+        if control is not None and (control.nets or control.element):
+            control = msgspec.structs.replace(
+                control,
+                nets=tuple([self.net(n, nets, prefix) for n in control.nets]),
+                element=prefix + control.element if control.element else "",
+            )
+        if not prefix and control is element.control and resolved == element.nets:
+            self.elements.append(element)
+            return
         self.elements.append(
             msgspec.structs.replace(
-                element,
-                designator=prefix + element.designator,
-                nets=resolved,
-                control=control,
+                element, designator=prefix + element.designator, nets=resolved, control=control
             )
         )
 
@@ -360,7 +367,7 @@ class _Expander:
             for port, net in zip(ports, given, strict=True)
         }
         values = dict(instance.parameters)
-        outer = environment if definition.parent is scope else _outer_of(environment, definition)
+        outer = environment.of(definition.parent)
         self.scope(
             definition,
             f"{prefix}{instance.designator}.",
@@ -370,16 +377,6 @@ class _Expander:
             multiplier * instance.multiplier,
             active | {key},
         )
-
-
-def _outer_of(environment: Environment, definition: Scope) -> Environment | None:
-    """Return the environment of the scope a definition stands in: the nearest one outwards."""
-    at: Environment | None = environment
-    while at is not None:
-        if at._scope is definition.parent:
-            return at
-        at = at._outer or at._caller
-    return None
 
 
 def _numbers(items: Items, environment: Environment) -> dict[str, float]:

@@ -41,6 +41,17 @@ class Scope:
         self.models: dict[str, tuple[str, str, Items, Line]] = {}
         self.subcircuits: dict[str, Scope] = {}
         self.notes: tuple[str, ...] = ()
+        self._items: dict[int, Items] = {}
+
+    def items(self, number: int) -> Items:
+        """Return the items of card `number`, split once however often the scope is expanded.
+
+        Raises  CardError
+        """
+        found = self._items.get(number)
+        if found is None:
+            found = self._items[number] = items_of(self.cards[number].text)
+        return found
 
     @property
     def calls(self) -> bool:
