@@ -1,21 +1,21 @@
 """`railguard review`: netlists in, reports out, and the status that stops a commit or a build."""
 
 import datetime as dt
-import os
 import sys
-import tempfile
 from pathlib import Path
+from typing import get_args
 
 import click
 
 from railguard.analysis.solution import Options
+from railguard.commands.deliver import write_whole
 from railguard.errors import UsageError
 from railguard.report.formats import FORMATS, render
 from railguard.review import Review, Simulator
 from railguard.review import review as run
 from railguard.settings import file as settings_file
 from railguard.settings.model import Settings
-from railguard.words import SEVERITIES, Severity
+from railguard.words import SEVERITIES, Family, Severity
 
 HOLD = 1
 """Exit status where something stands at or above the hold level."""
@@ -31,7 +31,7 @@ HOLD = 1
     help=f"Format ({', '.join(FORMATS)}); with =FILE into a file. Repeatable.",
 )
 @click.option("--hold-at", type=click.Choice(SEVERITIES), help="What gives status 1 [major].")
-@click.option("--require", metavar="FAMILIES", help="Families that must not stay open.")
+@click.option("--require", metavar="FAMILIES", help="What must not stay open: headroom,drive.")
 @click.option(
     "--settings",
     "stated",
@@ -89,13 +89,16 @@ def review(  # one parameter an option: click hands them over by name
     Status 0: nothing at or above the hold level; 1: something is; 2: not carried out.
     """
     wanted = [_wanted(text) for text in reports] or [("terminal", None)]
+    _refuse_two_in_one(wanted)
+    if root is not None and not root.is_dir():
+        raise UsageError(f"{root} is no folder.", remedy="--root names one that holds the decks.")
     changes: dict[str, object] = {}
     if hold_at is not None:
         changes["hold_at"] = hold_at
     if kind is not None:
         changes["kind"] = kind
     if require:
-        changes["require"] = tuple(word.strip() for word in require.split(",") if word.strip())
+        changes["require"] = _families(require)
     result = run(
         [Path(name) for name in files],
         _settings(stated, no_settings),
@@ -107,7 +110,7 @@ def review(  # one parameter an option: click hands them over by name
         engine=_engine(engine is not None, confirm),
     )
     for name, place in wanted:
-        _deliver(result, name, place)
+        _deliver(result, name, place, root)
     sys.exit(HOLD if result.held else 0)
 
 
@@ -145,20 +148,34 @@ def _wanted(text: str) -> tuple[str, Path | None]:
     return name, Path(place) if place else None
 
 
-def _deliver(result: Review, name: str, place: Path | None) -> None:
-    """Write one report: to the terminal, or into a file whole or not at all."""
-    if place is None:
-        if name == "terminal":
-            render(name, result, sys.stdout)
-        else:
-            sys.stdout.buffer.write(render(name, result, None))
-            sys.stdout.buffer.flush()
-        return
-    data = render(name, result, None)
-    try:
-        handle, temporary = tempfile.mkstemp(dir=place.parent, prefix=f".{place.name}.")
-        with os.fdopen(handle, "wb") as out:
-            out.write(data)
-        Path(temporary).replace(place)
-    except OSError as error:
-        raise UsageError(f"The report {place} cannot be written: {error.strerror}.") from error
+def _refuse_two_in_one(wanted: list[tuple[str, Path | None]]) -> None:
+    """Refuse two reports in one place: neither could be read."""
+    places = [place.absolute() if place is not None else None for _, place in wanted]
+    for place in places:
+        if places.count(place) > 1:
+            where = f"go to {place}" if place is not None else "go to the screen"
+            raise UsageError(
+                f"Two reports {where}.", remedy="Give each a file of its own: --report FORMAT=FILE."
+            )
+
+
+def _families(text: str) -> tuple[Family, ...]:
+    known: tuple[Family, ...] = get_args(Family)
+    words = [word.strip() for word in text.split(",") if word.strip()]
+    for word in words:
+        if word not in known:
+            raise UsageError(
+                f'There is no family "{word}".', remedy=f"The families are {', '.join(known)}."
+            )
+    return tuple(family for family in known if family in words)
+
+
+def _deliver(result: Review, name: str, place: Path | None, root: Path | None) -> None:
+    """Write one report: to the screen, or into a file whole or not at all."""
+    if place is not None:
+        write_whole(place, render(name, result, root=root))
+    elif name == "terminal":
+        render(name, result, sys.stdout)
+    else:
+        sys.stdout.buffer.write(render(name, result, root=root))
+        sys.stdout.buffer.flush()

@@ -6,13 +6,13 @@ that was not worked out is null.
 """
 
 import math
-from pathlib import PurePath
+from pathlib import Path, PurePath
 from typing import Literal
 
 import msgspec
 
 from railguard import __version__
-from railguard.analysis.stage import Stage
+from railguard.analysis.stage import Allowed, Range, Stage
 from railguard.location import Location
 from railguard.report.words import near
 from railguard.review import DesignReview, Review
@@ -187,9 +187,13 @@ class Document(msgspec.Struct):
     designs: list[DesignOut]
 
 
-def document(review: Review) -> bytes:
-    """Return the JSON report, indented, ending in a newline."""
+def document(review: Review, root: Path | None = None) -> bytes:
+    """Return the JSON report, indented, ending in a newline.
+
+    root  the run's root, from which fingerprints name a deck; None: the current folder
+    """
     settings = review.settings
+    base = root or Path.cwd()
     out = Document(
         schema=SCHEMA,
         tool=Tool("railguard", __version__),
@@ -199,9 +203,28 @@ def document(review: Review) -> bytes:
             rules_off=list(settings.rules_off),
             as_of=settings.as_of.isoformat(),
         ),
-        designs=[_design(design, review) for design in review.designs],
+        designs=[_design(design, review, base) for design in review.designs],
     )
-    return msgspec.json.format(msgspec.json.encode(out), indent=1) + b"\n"
+    return msgspec.json.format(_encoded(out), indent=1) + b"\n"
+
+
+def _encoded(out: Document) -> bytes:
+    try:
+        return msgspec.json.encode(out)
+    except UnicodeEncodeError:
+        # A file name that is no UTF-8 reaches Python as lone surrogates, which JSON cannot hold.
+        return msgspec.json.encode(_mended(msgspec.to_builtins(out)))
+
+
+def _mended(value: object) -> object:
+    """Return the value with U+FFFD for what is no character, in every text it holds."""
+    if isinstance(value, str):
+        return value.encode("utf-8", "replace").decode("utf-8")
+    if isinstance(value, list):
+        return [_mended(inner) for inner in value]
+    if isinstance(value, dict):
+        return {key: _mended(inner) for key, inner in value.items()}
+    return value
 
 
 def schema() -> bytes:
@@ -213,8 +236,22 @@ def schema() -> bytes:
 
 
 def posix(path: str) -> str:
-    """Return a path with forward slashes, as a fingerprint and a report name it."""
+    """Return a path with forward slashes."""
     return PurePath(path).as_posix()
+
+
+def from_root(path: str, root: Path) -> str:
+    """Return a path as a fingerprint names it: from the run's root, where it lies below it.
+
+    Whatever folder the command is given in, and however the path is spelled, the same deck has
+    the same name.
+    """
+    whole = Path(path).absolute()
+    below = whole.resolve() if ".." in whole.parts else whole
+    for base in (root.absolute(), root.resolve()):
+        if below.is_relative_to(base):
+            return posix(str(below.relative_to(base)))
+    return posix(path)
 
 
 def _finite(value: float | None) -> float | None:
@@ -225,8 +262,9 @@ def _place(place: Location | None) -> tuple[str | None, int | None, int | None]:
     return (posix(place.file), place.line, place.column) if place is not None else (None,) * 3
 
 
-def _design(review: DesignReview, run: Review) -> DesignOut:
+def _design(review: DesignReview, run: Review, root: Path) -> DesignOut:
     circuit = review.design.circuit
+    deck = from_root(review.path, root).encode("utf-8", "replace").decode("utf-8")
     findings = review.findings
     if review is run.designs[0]:
         findings = (*findings, *run.findings)
@@ -240,7 +278,7 @@ def _design(review: DesignReview, run: Review) -> DesignOut:
         kind=review.design.kind,
         verdict=review.verdict,
         coverage=Coverage(review.judged, review.open),
-        findings=[_finding(finding, review.path) for finding in findings],
+        findings=[_finding(finding, deck) for finding in findings],
         stages=[_stage(stage) for stage in review.design.stages],
         not_checked=[NotCheckedOut(n.subject, n.rule, n.why, n.add) for n in review.not_checked],
         reading=reading,
@@ -248,6 +286,7 @@ def _design(review: DesignReview, run: Review) -> DesignOut:
 
 
 def _finding(finding: Finding, deck: str) -> FindingOut:
+    """Convert one finding with its consequences; `deck` as its fingerprint names it."""
     file, line, column = _place(finding.location)
     note = finding.waiver
     waiver = None
@@ -273,16 +312,26 @@ def _finding(finding: Finding, deck: str) -> FindingOut:
         file=file,
         line=line,
         column=column,
-        fingerprint=finding.fingerprint(posix(deck)),
+        fingerprint=finding.fingerprint(deck),
         waiver=waiver,
         consequences=[_finding(inner, deck) for inner in finding.consequences],
     )
 
 
+def _range(*ranges: Range) -> RangeOut:
+    """Convert demand, worst, available and guaranteed, in this order."""
+    return RangeOut(*(_finite(end) for one in ranges for end in (one.low, one.high)))
+
+
+def _allowed(allowed: Allowed | None) -> AllowedOut | None:
+    if allowed is None or not (math.isfinite(allowed.low) and math.isfinite(allowed.high)):
+        return None
+    return AllowedOut(allowed.net, allowed.low, allowed.high, allowed.limited_by)
+
+
 def _stage(stage: Stage) -> StageOut:
     output, inputs, current, loop = stage.output, stage.inputs, stage.current, stage.loop
     file, line, _ = _place(stage.location)
-    allowed = stage.allowed
     return StageOut(
         designator=stage.designator,
         device=stage.device,
@@ -292,16 +341,7 @@ def _stage(stage: Stage) -> StageOut:
         supply=SupplyOut(
             _finite(stage.supply.positive), _finite(stage.supply.negative), stage.supply.basis
         ),
-        output=RangeOut(
-            _finite(output.demand.low),
-            _finite(output.demand.high),
-            _finite(output.worst.low),
-            _finite(output.worst.high),
-            _finite(output.available.low),
-            _finite(output.available.high),
-            _finite(output.guaranteed.low),
-            _finite(output.guaranteed.high),
-        ),
+        output=_range(output.demand, output.worst, output.available, output.guaranteed),
         current=CurrentOut(
             _finite(current.demand_source),
             _finite(current.demand_sink),
@@ -310,19 +350,8 @@ def _stage(stage: Stage) -> StageOut:
             _finite(current.available_source),
             _finite(current.available_sink),
         ),
-        input=RangeOut(
-            _finite(inputs.demand.low),
-            _finite(inputs.demand.high),
-            _finite(inputs.worst.low),
-            _finite(inputs.worst.high),
-            _finite(inputs.available.low),
-            _finite(inputs.available.high),
-            _finite(inputs.guaranteed.low),
-            _finite(inputs.guaranteed.high),
-        ),
-        input_allowed=AllowedOut(allowed.net, allowed.low, allowed.high, allowed.limited_by)
-        if allowed is not None
-        else None,
+        input=_range(inputs.demand, inputs.worst, inputs.available, inputs.guaranteed),
+        input_allowed=_allowed(stage.allowed),
         dc_loop=loop.dc,
         noise_gain=_finite(loop.noise_gain),
         noise_gain_dc=_finite(loop.noise_gain_dc),

@@ -1,6 +1,7 @@
 """Which report formats there are. One function a format, imported when it is asked for."""
 
 import importlib
+from pathlib import Path
 from typing import IO
 
 from railguard.review import Review
@@ -12,13 +13,16 @@ _MODULES = {
 FORMATS = tuple(_MODULES)
 
 
-def render(name: str, review: Review, stream: IO[str] | None) -> bytes:
+def render(
+    name: str, review: Review, stream: IO[str] | None = None, root: Path | None = None
+) -> bytes:
     """Return a report's bytes.
 
     stream  for "terminal": where it is printed, in that stream's width and colours; None: as plain
             text of 80 columns
+    root    the run's root, from which fingerprints name a deck; None: the current folder
     """
     module = importlib.import_module(_MODULES[name])
     if name == "terminal":
         return bytes(module.terminal(review, stream))
-    return bytes(module.document(review))
+    return bytes(module.document(review, root))

@@ -4,10 +4,12 @@ import json
 import math
 from pathlib import Path
 
+import jsonschema
 import msgspec
 import pytest
 
-from railguard.report.as_json import Document, document, schema
+from railguard.analysis.stage import Allowed, Range
+from railguard.report.as_json import Document, document, from_root, schema
 from railguard.review import review
 
 ROOT = Path(__file__).parents[2]
@@ -112,3 +114,80 @@ def test_unreadable_file_still_gives_a_whole_document(tmp_path):
     found = json.loads(document(review(tmp_path / "nowhere.cir")))
     assert found["designs"][0]["verdict"] == "hold"
     assert found["designs"][0]["stages"] == []
+
+
+@pytest.mark.parametrize(
+    "source",
+    [
+        DECK,
+        ROOT / "fixtures" / "station" / "station.cir",
+        ROOT / "fixtures" / "board" / "gauge_board.cir",
+        ROOT / "fixtures" / "faults" / "supply-reversed.cir",
+        ROOT / "nowhere.cir",
+    ],
+    ids=["text", "sound", "board", "fault", "missing"],
+)
+def test_documents_obey_the_shipped_schema(source):
+    """A reader that holds the report to its schema is never surprised."""
+    shipped = json.loads(SCHEMA.read_bytes())
+    jsonschema.Draft202012Validator.check_schema(shipped)
+    jsonschema.validate(json.loads(document(review(source))), shipped)
+
+
+def test_schema_refuses_what_is_no_report(report):
+    """A wrong severity or a missing key does not pass for a report."""
+    shipped = json.loads(SCHEMA.read_bytes())
+    wrong = json.loads(json.dumps(report))
+    wrong["designs"][0]["findings"][0]["severity"] = "fatal"
+    with pytest.raises(jsonschema.ValidationError):
+        jsonschema.validate(wrong, shipped)
+    short = json.loads(json.dumps(report))
+    del short["designs"][0]["stages"][0]["output"]["worst_low"]
+    with pytest.raises(jsonschema.ValidationError):
+        jsonschema.validate(short, shipped)
+
+
+def test_infinite_and_undefined_numbers_are_null():
+    """JSON has neither; a value that is no number was not worked out."""
+    found = review(DECK)
+    stage = found.designs[0].design.stages[0]
+    odd = msgspec.structs.replace(
+        stage,
+        dissipation=math.nan,
+        output=msgspec.structs.replace(stage.output, worst=Range(-math.inf, math.inf)),
+        allowed=Allowed("in", -math.inf, 1.0, "headroom-output XU1"),
+    )
+    design = msgspec.structs.replace(found.designs[0].design, stages=(odd,))
+    changed = msgspec.structs.replace(
+        found, designs=(msgspec.structs.replace(found.designs[0], design=design),)
+    )
+    shown = json.loads(document(changed))["designs"][0]["stages"][0]
+    assert shown["dissipation"] is None
+    assert shown["output"]["worst_low"] is None
+    assert shown["output"]["worst_high"] is None
+    assert shown["input_allowed"] is None
+
+
+def test_fingerprint_names_the_deck_from_the_runs_root(tmp_path, monkeypatch):
+    """The same deck has the same fingerprints from wherever and however it is named."""
+    (tmp_path / "boards").mkdir()
+    deck = tmp_path / "boards" / "gauge.cir"
+    deck.write_text(DECK)
+
+    def prints(name, root=None):
+        found = json.loads(document(review(Path(name)), root))["designs"][0]["findings"]
+        return [finding["fingerprint"] for finding in found]
+
+    monkeypatch.chdir(tmp_path)
+    plain = prints("boards/gauge.cir")
+    assert plain
+    assert plain == prints(deck)
+    assert plain == prints("boards/../boards/gauge.cir")
+    monkeypatch.chdir(tmp_path / "boards")
+    assert plain == prints("gauge.cir", tmp_path)
+    assert plain != prints("gauge.cir")
+
+
+def test_a_deck_outside_the_root_keeps_its_name(tmp_path):
+    """A path that does not lie below the run's root stands as it was given."""
+    assert from_root("/elsewhere/gauge.cir", tmp_path) == "/elsewhere/gauge.cir"
