@@ -12,7 +12,7 @@ from railguard.analysis.stage import Design, Stage, Unrecognised
 from railguard.analysis.stages import stages_of, unsolved
 from railguard.analysis.supplies import Feed, feeds, supply_nets
 from railguard.analysis.surroundings import MID_HERTZ
-from railguard.analysis.unseen import spoiled, unseen_things
+from railguard.analysis.unseen import spoiled, swinging, unseen_things
 from railguard.circuit.model import GROUND, Circuit
 from railguard.devices.catalogue import Catalogue
 from railguard.errors import SolveError
@@ -91,6 +91,7 @@ def _stages(
     things = unseen_things(
         circuit, prepared.elements, own, prepared.unstated, settings, solution.answers
     )
+    things += swinging(solution.turning.unfollowed, found.amplifiers, solution.answers)
     hertz = solution.tops[0] if solution.tops else MID_HERTZ
     mid = solution.mid if hertz == MID_HERTZ else factor(solution.answers.network, hertz)
     flags = spoiled(solution.answers, things, mid)

@@ -24,6 +24,7 @@ from railguard.analysis.loops import (
     sweep,
 )
 from railguard.analysis.network import Network, Real, open_loop_gain
+from railguard.analysis.oscillators import Oscillators, oscillators
 from railguard.analysis.rails import rail_tolerance
 from railguard.analysis.ranges import Answers, Clamp, answer
 from railguard.analysis.recognise import Amplifier
@@ -64,6 +65,7 @@ class Solution(msgspec.Struct, frozen=True, kw_only=True):
     forced   amplifiers without a working loop: their output stands at either limit
     margins  phase margin by amplifier
     through  amplifiers whose feedback runs through diodes: its sign is known, their range is not
+    turning  amplifiers of circuits that move by themselves
     """
 
     prepared: Prepared
@@ -75,6 +77,7 @@ class Solution(msgspec.Struct, frozen=True, kw_only=True):
     swept: LoopSweep
     forced: frozenset[str]
     through: frozenset[str]
+    turning: Oscillators
     margins: Mapping[str, Margin]
     spread: Spread
     mid: Factor
@@ -104,8 +107,10 @@ def solve(
     loop_network = Network(elements, amplifiers, extra=known) if bent else network
     signs = return_ratios(loop_network, np.zeros(1))[0].real
     ways = Ways(prepared.elements, amplifiers)
+    uses = {a.designator: use for a in amplifiers if (use := stated_use(a, settings)) is not None}
+    turning = oscillators(elements, amplifiers, ways, prepared, uses)
     relaxing = {a.designator for a in amplifiers if charges_itself(a, ways)}
-    forced = _without_loop(amplifiers, signs, settings) | frozenset(clamps) | relaxing
+    forced = _without_loop(amplifiers, signs, settings) | frozenset(clamps) | relaxing | turning.all
     if forced:
         network = Network(prepared.elements, amplifiers, forced, known)
         loop_network = Network(elements, amplifiers, forced, known) if bent else network
@@ -134,6 +139,7 @@ def solve(
         swept=swept,
         forced=forced,
         through=through,
+        turning=turning,
         margins=_margins(swept, elements, amplifiers, forced),
         spread=off,
         mid=factor(network, MID_HERTZ),

@@ -288,6 +288,7 @@ class Loop(msgspec.Struct, frozen=True, kw_only=True):
     loop_gain   |A beta| at the top of the band
     points      (hertz, |1/beta|, |A|, phase of A beta in degrees) for drawing
     holds       designators of other stages that hold the DC level where its own loop does not
+    bridges     switches and unseen devices that may lead the output back where the loop is open
     margins     phase margin with the most and with nothing of what is not listed, degrees
     thresholds  input volts at which a stage with positive feedback switches
     drive       the stated signal at that input, in the terms of `thresholds`
@@ -306,6 +307,7 @@ class Loop(msgspec.Struct, frozen=True, kw_only=True):
     loop_gain: float | None = None
     points: tuple[tuple[float, float, float, float], ...] = ()
     holds: tuple[str, ...] = ()
+    bridges: tuple[str, ...] = ()
     capacitor_across_plus: str = ""
     thresholds: Range = Range()
     drive: Range = Range()

@@ -30,7 +30,7 @@ from railguard.analysis.surroundings import feedback_of, output_load
 from railguard.analysis.thermal import dissipation, junction, package_heat
 from railguard.analysis.topology import instrumentation, topology_of
 from railguard.analysis.unseen import Spoiled
-from railguard.analysis.uses import worked_out_use
+from railguard.analysis.uses import bridges, worked_out_use
 from railguard.analysis.view import View
 from railguard.circuit.model import GROUND
 from railguard.settings.model import Settings
@@ -101,12 +101,22 @@ def _stage(
         sign = solution.swept.dc[view.k]
         loop = Loop(dc="negative" if sign > 0 else "positive", band=top)
         unknown["output"] = unknown["current"] = unknown["loop"] = _THROUGH_DIODES
+    elif name in solution.turning.ramps:
+        loop = Loop(dc="negative", band=top, holds=tuple(sorted(solution.turning.switching)))
     elif name in solution.answers.network.outputs:
         margin = solution.margins.get(name, Margin())
         loop = loop_of(amplifier, view.k, solution.swept, top, margin)
-        loop = msgspec.structs.replace(loop, holds=_holds(view, loop, after))
+        loop = msgspec.structs.replace(
+            loop,
+            holds=_holds(view, loop, after),
+            bridges=bridges(amplifier, solution.ways) if loop.dc == "open" else (),
+        )
     stated = stated_use(amplifier, settings)
-    use = stated or worked_out_use(amplifier, solution.ways, loop, _other_inputs(view), rails)
+    use = stated or (
+        "oscillator"
+        if name in solution.turning.all
+        else worked_out_use(amplifier, solution.ways, loop, _other_inputs(view), rails)
+    )
     working = name not in solution.forced and name in solution.answers.network.outputs
     loop = with_thresholds(view, loop, after)
     feedback = feedback_of(amplifier, solution.passive, solution.ways, solution.answers)
@@ -114,6 +124,8 @@ def _stage(
     current, output = output_side(view, supply, load, working, unknown)
     inputs = inputs_of(view, supply, rails, working, unknown)
     _device_unknown(view, unknown)
+    if name in solution.turning.unfollowed:
+        unknown["output"] = unknown["current"] = _UNFOLLOWED
     if loop.dc is None or name not in solution.answers.network.outputs:
         unknown["loop"] = Unknown(
             f"the output of {name} is tied to {amplifier.output}, which something else holds",
@@ -160,6 +172,11 @@ def _stage(
 
 _THROUGH_DIODES = Unknown(
     "its feedback runs through diodes, which the built-in solver does not follow",
+    "--engine ngspice",
+)
+
+_UNFOLLOWED = Unknown(
+    "it oscillates, and its amplitude is set by something the built-in solver does not follow",
     "--engine ngspice",
 )
 

@@ -15,6 +15,7 @@ import numpy as np
 from railguard.analysis.dcpaths import leaves_sheet
 from railguard.analysis.network import Complex, Network, Real
 from railguard.analysis.ranges import QUANTITIES, Answers
+from railguard.analysis.recognise import Amplifier
 from railguard.analysis.signals import Unstated
 from railguard.analysis.solve import Factor
 from railguard.circuit.model import Circuit, Element
@@ -93,6 +94,24 @@ def unseen_things(
         elif leaves_sheet(element):
             found += _leaving(element, network, told)
     return tuple(found)
+
+
+def swinging(
+    names: frozenset[str], amplifiers: Iterable[Amplifier], answers: Answers
+) -> tuple[Unseen, ...]:
+    """Return the outputs of oscillators whose amplitude is not known."""
+    return tuple(
+        Unseen(
+            sort="bend",
+            why=f"the amplitude of the oscillator {a.schematic} is not followed",
+            add="--engine ngspice",
+            rows=((answers.network.injections[a.designator].row, 1.0),),
+            volts=True,
+            net=a.output,
+        )
+        for a in amplifiers
+        if a.designator in names and a.designator in answers.network.injections
+    )
 
 
 def _leaving(element: Element, network: Network, told: set[str]) -> list[Unseen]:

@@ -13,6 +13,8 @@ from railguard.circuit.model import GROUND
 from railguard.words import Use
 
 _SWITCHES = frozenset({"D", "Q", "M", "J", "S"})
+_SHUTS = frozenset({"S", "W"})
+_OPAQUE = frozenset({"ic", "opaque", "X"})
 _LEAVES = frozenset({"open", "ic", "opaque", "X", "B", "E", "G"})
 
 
@@ -29,6 +31,8 @@ def worked_out_use(
     if loop.dc in ("positive", "negative") and charges_itself(amplifier, ways):
         return "oscillator"
     if loop.dc == "negative":
+        return "linear"
+    if loop.bridges:
         return "linear"
     return "comparator" if _only_switches(amplifier, ways, inputs) else "linear"
 
@@ -64,6 +68,29 @@ def charges_itself(amplifier: Amplifier, ways: Ways) -> bool:
     on_plus = ways.around.get(amplifier.plus, ())
     turned = any(e.kind == "R" and amplifier.output in e.nets for e in on_plus)
     return charged and by_output and turned
+
+
+def bridges(amplifier: Amplifier, ways: Ways) -> tuple[str, ...]:
+    """Return what may lead an output back to the inverting input, though not for all to see.
+
+    A switch that resets an integrator, an analogue switch or a digital potentiometer: an element
+    on the inverting input's own net whose other pins reach the output through resistors.
+    """
+    if amplifier.minus in ways.held:
+        return ()
+    found = []
+    for element in ways.around.get(amplifier.minus, ()):
+        if element.kind not in _SHUTS | _OPAQUE:
+            continue
+        pins = element.nets[:2] if element.kind in _SHUTS else element.nets
+        if any(
+            pin != amplifier.minus
+            and pin not in ways.held
+            and ways.shortest(amplifier.output, pin, "RL") is not None
+            for pin in pins
+        ):
+            found.append(element.designator)
+    return tuple(found)
 
 
 def _only_switches(amplifier: Amplifier, ways: Ways, inputs: frozenset[str]) -> bool:

@@ -140,15 +140,26 @@ def judge_open(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome
     """Judge whether anything holds the stage's output at DC."""
     if stage.use == "unused":
         return
-    gap = NO_LOOP if stage.loop.dc is None else None
+    gap = NO_LOOP if stage.loop.dc is None else _bridged(stage)
     yield from open_point("feedback-open", stage, ("loop",), gap)
-    if "loop" in stage.unknown or stage.loop.dc != "open" or stage.loop.holds:
+    if "loop" in stage.unknown or stage.loop.dc != "open" or stage.loop.holds or gap is not None:
         return
     if stage.use != "linear":
         if not stage.use_stated and stage.use == "comparator":
             yield _bare_comparator(stage)
         return
     yield from _open(stage)
+
+
+def _bridged(stage: Stage) -> Unknown | None:
+    """Return why an open loop may be closed all the same, or None."""
+    if stage.loop.dc != "open" or not stage.loop.bridges:
+        return None
+    return Unknown(
+        f"{listed(stage.loop.bridges)} may lead its output back to its inverting input, which the "
+        "netlist does not tell",
+        "--engine ngspice, or a resistor where none is drawn",
+    )
 
 
 def _bare_comparator(stage: Stage) -> Outcome:
@@ -208,8 +219,10 @@ OPEN = Rule(
     reason="Open-loop gain turns a millivolt of offset into a saturated output.",
     source=SIGN_SOURCE,
     silent="A stage whose level another stage holds (integrator in a servo or state-variable "
-    "loop), stated comparators and oscillators, unused channels. A loop through elements that "
-    "could not be solved is listed as not checked.",
+    "loop), comparators, oscillators (a circuit that is unstable with ideal amplifiers and that no "
+    "signal reaches), unused channels. A precision rectifier or limiter counts as closed through "
+    "its diodes. A loop through elements that could not be solved, and an integrator that a switch "
+    "or a device nobody knows may reset, are listed as not checked.",
     judge=judge_open,
 )
 
