@@ -95,10 +95,10 @@ ASCII = Marks(
 
 MEANINGS: tuple[tuple[Role, str], ...] = (
     ("asked-sure", "asked for"),
-    ("asked-typical", "asked for, reached typically only"),
-    ("asked-beyond", "asked for, out of reach"),
+    ("asked-typical", "asked for and reached only typically"),
+    ("asked-beyond", "asked for but out of reach"),
     ("sure", "free"),
-    ("typical", "free, typically"),
+    ("typical", "free only typically"),
     ("out", "out of reach"),
     ("rail", "rail"),
 )
@@ -150,6 +150,8 @@ def _scale(
     worst: bool,
 ) -> Scale | None:
     supply = stage.supply
+    if "floating" in (stage.inputs.plus.state, stage.inputs.minus.state):
+        return None  # no level anywhere in the stage is defined
     if supply.positive is None or supply.negative is None or supply.total is None:
         return None
     if supply.total <= 0:
@@ -360,13 +362,21 @@ def _between(asked: float | None, sure: float, typical: float, *, upper: bool) -
     return _above(sure, asked) and not _above(typical, asked)
 
 
+def _volts(value: float, scale: Scale) -> str:
+    """Write a demand; what is nothing beside the supply is the solver's rounding, and is zero."""
+    return si(0.0 if abs(value) < _NOTHING * (scale.positive - scale.negative) else value, "V")
+
+
+_NOTHING = 1e-9
+
+
 def _asked_line(ruler: _Ruler) -> Line:
     """Write the demand's values under its marks."""
     labels, asked = _Labels(ruler.width), ruler.scale.asked
     if ruler.asked is None or asked.low is None or asked.high is None:
         return ()
     first, last = ruler.asked
-    low, high = si(asked.low, "V"), si(asked.high, "V")
+    low, high = _volts(asked.low, ruler.scale), _volts(asked.high, ruler.scale)
     kind = " at worst" if ruler.scale.worst else ""
     if low == high:
         labels.put(low + kind, first - len(low) // 2)

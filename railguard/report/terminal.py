@@ -5,19 +5,20 @@ Text from a netlist is shown as it is, never interpreted.
 """
 
 import io
-import textwrap
-from collections.abc import Iterable
 from typing import IO
 
+from rich.cells import cell_len
 from rich.console import Console
 from rich.text import Text
 
 from railguard.analysis.stage import Stage
 from railguard.report import words
+from railguard.report.grouping import blocks, common_folder, open_groups, with_consequences
 from railguard.report.scale import ASCII as ASCII_MARKS
 from railguard.report.scale import MEANINGS, Line, Role, Scale, draw, input_scale, output_scale
 from railguard.report.scale import UNICODE as UNICODE_MARKS
 from railguard.report.visible import encodable, shortened, visible
+from railguard.report.wrapping import wrapped
 from railguard.review import DesignReview, Review
 from railguard.rules.finding import Finding
 from railguard.rules.registry import RULES
@@ -26,6 +27,9 @@ from railguard.words import SEVERITIES
 NARROWEST, WIDEST = 60, 160
 DETAILED_FILES = 12
 """With more files than this, only those that are held are shown in full."""
+
+DEEPEST = 24
+"""Columns of a designator beside which its heading stands; behind a longer one it stands below."""
 
 _STYLES = {"critical": "bold magenta", "major": "bold yellow", "minor": "cyan", "remark": "dim"}
 _MARKS: dict[Role, str] = {
@@ -63,19 +67,20 @@ class _Printer:
         self.width = min(max(console.width, NARROWEST), WIDEST)
         self.encoding = encoding
         self.ascii = encodable("━┃◆Ω", encoding) != "━┃◆Ω"
-        self.explained: set[str] = set()
+        self.explained: dict[str, set[str]] = {}
+        self.deck = ""
         self.roles: set[Role] = set()
 
     def run(self, review: Review) -> None:
         if len(review.designs) > 1:
             self.table(review)
-        shown = review.designs
-        if len(shown) > DETAILED_FILES:
-            shown = tuple(d for d in shown if d.verdict == "hold")
-        for design in shown:
+        for design in self.in_full(review.designs):
             self.design(design)
-        for finding in review.findings:
-            self.finding(finding, 0)
+        if review.findings:
+            self.line(words.RUN, "bold")
+            for finding in review.findings:
+                self.finding(finding, 2)
+            self.line("")
         if len(review.designs) > 1:
             held = sum(d.verdict == "hold" for d in review.designs)
             self.line(f"{words.plural(len(review.designs), 'netlist')}, {held} on hold.", "bold")
@@ -92,50 +97,51 @@ class _Printer:
 
     def paragraph(self, text: str, indent: int, label: str = "", style: str = "") -> None:
         """Print wrapped text, its label hanging before it."""
-        lead = " " * indent + (f"{label:<8}" if label else "")
-        wrapped = textwrap.wrap(
-            self.clean(text),
-            self.width,
-            initial_indent=lead,
-            subsequent_indent=" " * len(lead),
-            break_on_hyphens=False,
-        )
-        for number, row in enumerate(wrapped):
-            made = Text(row, style=style)
-            if label and number == 0:
-                made.stylize("dim", indent, indent + len(label))
-            self.console.print(made, soft_wrap=True)
+        lead = " " * indent + (f"{label:<{max(8, len(label) + 2)}}" if label else "")
+        mark = "dim" if label else ""
+        for row in wrapped(self.clean(text), self.width - len(lead)):
+            self.console.print(Text.assemble((lead, mark), (row, style)), soft_wrap=True)
+            lead, mark = " " * len(lead), ""
 
     # ------------------------------------------------------------------ parts
 
     def table(self, review: Review) -> None:
         """Print one row a netlist, worst first."""
-        order = {"hold": 0, "incomplete": 1, "pass": 2}
-        rows = sorted(
-            review.designs,
-            key=lambda d: (order[d.verdict], *(-words.counts(d.findings)[s] for s in SEVERITIES)),
-        )
-        widest = min(max(len(self.clean(d.path)) for d in rows), self.width - 50)
-        head = f"{'netlist':<{widest}}  verdict     critical  major  minor  remark  open"
-        self.line(head, "bold")
-        for design in rows:
-            name = self.clean(design.path)
-            name = name if len(name) <= widest else "..." + name[-(widest - 3) :]
+        rows = sorted(review.designs, key=words.rank)
+        folder, names = common_folder([design.path for design in rows])
+        if folder:
+            self.paragraph(f"{words.plural(len(rows), 'netlist')} in {folder}", 0)
+        self.line("verdict     critical  major  minor  remark  open  netlist", "bold")
+        for design, name in zip(rows, names, strict=True):
             found = words.counts(design.findings)
             numbers = "  ".join(
                 f"{found[s] or '':>{w}}" for s, w in zip(SEVERITIES, (8, 5, 5, 6), strict=True)
             )
-            self.line(f"{name:<{widest}}  {design.verdict:<10}  {numbers}  {design.open or '':>4}")
+            self.line(
+                f"{design.verdict:<10}  {numbers}  {design.open or '':>4}  {self.clean(name)}"
+            )
         self.line("")
 
+    def in_full(self, designs: tuple[DesignReview, ...]) -> list[DesignReview]:
+        """Return the designs to show with their findings, and say which are left to the table."""
+        rows = sorted(designs, key=words.rank)
+        if len(rows) <= DETAILED_FILES:
+            return rows
+        held = [design for design in rows if design.verdict == "hold"]
+        shown = held[:DETAILED_FILES]
+        self.paragraph(words.left_to_the_table(len(rows), len(held), len(shown)), 0)
+        self.line("")
+        return shown
+
     def design(self, review: DesignReview) -> None:
+        self.deck = review.path
         self.line(self.clean(review.path), "bold underline")
         found = words.count_words(review.findings).capitalize()
         covered = f"{review.judged} judged, {review.open} not checked"
         self.paragraph(f"{found}; {covered}; {words.kind(review)}.", 0)
         self.line("")
         stages = {s.designator: s for s in review.design.stages}
-        for subject, findings in _blocks(review, stages):
+        for subject, findings in blocks(review):
             self.block(subject, findings, stages)
         self.not_checked(review)
         self.waived(review)
@@ -150,17 +156,24 @@ class _Printer:
         if stage is None:
             self.line(self.clean(subject), "bold")
         else:
-            title = Text(self.clean(f"{stage.schematic}  "), style="bold")
-            title.append(self.clean(words.heading(stage)), style="not bold")
-            for row in title.wrap(self.console, self.width):
-                self.console.print(row)
+            self.heading(stage)
             self.scales(stage, findings)
         for finding in findings:
             self.finding(finding, 2)
         self.line("")
 
+    def heading(self, stage: Stage) -> None:
+        name, about = self.clean(words.name(stage)), self.clean(words.heading(stage))
+        lead = f"{name}  "
+        if cell_len(lead) > DEEPEST:
+            self.line(name, "bold")
+            lead = "    "
+        for row in wrapped(about, self.width - cell_len(lead)):
+            self.console.print(Text.assemble((lead, "bold"), row), soft_wrap=True)
+            lead = " " * cell_len(lead)
+
     def scales(self, stage: Stage, findings: list[Finding]) -> None:
-        everything = [inner for finding in findings for inner in _all(finding)]
+        everything = list(with_consequences(findings))
         worst = all(f.corner == "worst-case" for f in everything)
         rules = {f.rule for f in everything}
         if rules & _OUTPUT_FAMILIES or not any(r.startswith("headroom-input") for r in rules):
@@ -175,7 +188,7 @@ class _Printer:
         for number, line in enumerate(lines):
             if not line:
                 continue
-            row = Text(f"  {scale.name if number == 1 else '':<8}", style="dim")
+            row = Text().append(f"  {scale.name if number == 1 else '':<8}", style="dim")
             row.append_text(self.spans(line))
             self.console.print(row, soft_wrap=True)
 
@@ -187,43 +200,43 @@ class _Printer:
         return row
 
     def finding(self, finding: Finding, indent: int) -> None:
-        place = f", line {finding.location.line}" if finding.location is not None else ""
         head = Text(" " * indent)
         head.append(finding.severity, style=_STYLES[finding.severity])
+        place = self.clean(words.place(finding.location, self.deck))
         head.append(f"  {finding.rule}{place}", style="dim")
         self.console.print(head, soft_wrap=True)
         self.paragraph(finding.message, indent + 2)
         if finding.remedy:
             self.paragraph(finding.remedy, indent + 2, words.FIT)
-        reason = _REASONS.get(finding.rule, "")
-        if reason and finding.rule not in self.explained:
-            self.explained.add(finding.rule)
-            self.paragraph(f"{reason} ({finding.source})", indent + 2, words.WHY)
-        elif finding.source:
-            self.paragraph(finding.source, indent + 2, words.SOURCE)
-        if finding.consequences:
-            self.paragraph(words.FOLLOWS, indent + 2)
-            for inner in finding.consequences:
-                self.paragraph(f"{inner.message} ({inner.severity}, {inner.rule})", indent + 4)
+        self.reason(finding, indent + 2)
+        self.consequences(finding, indent + 2)
+
+    def reason(self, finding: Finding, indent: int) -> None:
+        """Print why a rule speaks once a report, and each source of it once."""
+        if finding.rule not in self.explained:
+            self.explained[finding.rule] = set()
+            why = f"{_REASONS.get(finding.rule, '')} {words.in_brackets(finding.source)}".strip()
+            if why:
+                self.paragraph(why, indent, words.WHY)
+        elif finding.source and finding.source not in self.explained[finding.rule]:
+            self.paragraph(finding.source, indent, words.SOURCE)
+        self.explained[finding.rule].add(finding.source)
+
+    def consequences(self, finding: Finding, indent: int) -> None:
+        if not finding.consequences:
+            return
+        self.paragraph(words.FOLLOWS, indent)
+        for inner in finding.consequences:
+            self.paragraph(f"{inner.message} ({inner.severity}, {inner.rule})", indent + 2)
+            self.consequences(inner, indent + 2)
 
     def not_checked(self, review: DesignReview) -> None:
         if not review.not_checked:
             return
-        grouped: dict[tuple[str, str], dict[str, list[str]]] = {}
-        for note in review.not_checked:
-            subjects = grouped.setdefault((note.why, note.add), {})
-            subjects.setdefault(note.subject, []).append(note.rule)
         self.line(f"{words.NOT_CHECKED} ({len(review.not_checked)})", "bold")
-        for (why, add), subjects in grouped.items():
-            by_rules: dict[tuple[str, ...], list[str]] = {}
-            for subject, rules in subjects.items():
-                by_rules.setdefault(tuple(rules), []).append(subject)
-            about = "; ".join(
-                f"{', '.join(names)}: {', '.join(rules)}" for rules, names in by_rules.items()
-            )
-            self.paragraph(f"{why}.", 2)
-            self.paragraph(about, 4, style="dim")
-            self.paragraph(f"{words.ADD}: {add}", 4)
+        for group in open_groups(review.not_checked, review.design.stages):
+            self.paragraph(words.open_point(group), 2)
+            self.paragraph(group.add, 4, words.ADD)
         self.line("")
 
     def waived(self, review: DesignReview) -> None:
@@ -257,42 +270,6 @@ class _Printer:
 
     def legend(self) -> None:
         marks = ASCII_MARKS if self.ascii else UNICODE_MARKS
-        shown = [f"{marks.glyphs[r] * 2} {text}" for r, text in MEANINGS if r in self.roles]
+        shown = [f"{marks.glyphs[r]} {text}" for r, text in MEANINGS if r in self.roles]
         if shown:
-            self.paragraph("Scale: " + ", ".join(shown) + ".", 0, style="dim")
-
-
-def _all(finding: Finding) -> Iterable[Finding]:
-    yield finding
-    for inner in finding.consequences:
-        yield from _all(inner)
-
-
-def _blocks(review: DesignReview, stages: dict[str, Stage]) -> list[tuple[str, list[Finding]]]:
-    """Group what is not waived by stage, rail and netlist, the worst block first."""
-    rails = {rail.net for rail in review.design.rails}
-    blocks: dict[str, list[Finding]] = {}
-    for finding in review.findings:
-        if finding.waiver is not None:
-            continue
-        blocks.setdefault(_subject(finding, stages, rails), []).append(finding)
-
-    def weight(item: tuple[str, list[Finding]]) -> int:
-        return min(SEVERITIES.index(f.severity) for f in item[1])
-
-    return sorted(blocks.items(), key=weight)
-
-
-def _subject(finding: Finding, stages: dict[str, Stage], rails: set[str]) -> str:
-    if finding.family == "netlist":
-        return "Netlist"
-    if finding.family in ("supply", "decoupling") and finding.nets:
-        on_rails = [net for net in finding.nets if net in rails]
-        if len(on_rails) == 1 and len(finding.designators) != 1:
-            return f"Rail {on_rails[0]}"
-    known = [name for name in finding.designators if name in stages]
-    if known:
-        return known[0]
-    if finding.designators:
-        return finding.designators[0]
-    return f"Rail {finding.nets[0]}" if finding.nets else "Netlist"
+            self.paragraph(f"Scale: {'; '.join(shown)}.", 0, style="dim")

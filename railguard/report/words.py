@@ -1,11 +1,13 @@
 """Labels and short sentences of the reports, in one place."""
 
 from collections import Counter
-from collections.abc import Iterable
+from collections.abc import Iterable, Sequence
 from pathlib import Path
 
 from railguard.analysis.stage import Stage, Supply
 from railguard.circuit.model import GROUND
+from railguard.location import Location
+from railguard.report.grouping import OpenGroup
 from railguard.review import DesignReview
 from railguard.rules.finding import Finding
 from railguard.units import si
@@ -22,9 +24,10 @@ WHY = "Why"
 SOURCE = "Source"
 FOLLOWS = "It follows:"
 NOT_CHECKED = "Not checked"
-ADD = "To get it checked"
+ADD = "To check"
 READING = "How it was read"
 WAIVED = "Waived"
+RUN = "The run as a whole"
 
 
 def plural(count: int, word: str) -> str:
@@ -58,14 +61,87 @@ def rails(supply: Supply) -> str:
             (supply.negative_net, supply.negative),
         )
     ]
-    return " and ".join(ends)
+    return f"on {' and '.join(ends)}"
 
 
 def heading(stage: Stage) -> str:
     """Return what a stage is: device, topology, gain and rails."""
     gains = ", ".join(f"{gain:.4g} from {net}" for net, gain in stage.gain[:2])
-    parts = [stage.device, stage.topology, f"gain {gains}" if gains else "", rails(stage.supply)]
+    parts = [
+        stage.device,
+        stage.topology,
+        f"gain {gains}" if gains else "",
+        _noise_gain(stage),
+        rails(stage.supply),
+    ]
     return ", ".join(part for part in parts if part)
+
+
+def name(stage: Stage) -> str:
+    """Return a stage's designator as on the schematic, and as in the netlist where they differ."""
+    if stage.schematic == stage.designator:
+        return stage.schematic
+    return f"{stage.schematic} ({stage.designator})"
+
+
+def _noise_gain(stage: Stage) -> str:
+    """Return the noise gain at DC where the gains listed do not tell it anyway."""
+    gain = stage.loop.noise_gain_dc
+    if gain is None or gain < 1 + _SAME:
+        return ""
+    if any(abs(abs(listed) - gain) < _SAME * gain for _, listed in stage.gain):
+        return ""
+    return f"noise gain {gain:.3g}"
+
+
+_SAME = 0.01
+"""Share below which two gains are the same to a reader."""
+
+
+def place(location: Location | None, deck: str) -> str:
+    """Return where a finding stands, as said behind its rule: `, line 12 of filters.inc`."""
+    if location is None:
+        return ""
+    inside = "" if location.file == deck else f" of {near(location.file)}"
+    return f", line {location.line}{inside}"
+
+
+def in_brackets(source: str) -> str:
+    """Return a source set in brackets, those inside it made square."""
+    return f"({source.translate(_SQUARE)})" if source else ""
+
+
+_SQUARE = str.maketrans("()", "[]")
+
+
+def open_point(group: OpenGroup) -> str:
+    """Return what stays open, and why, as one sentence."""
+    about = "; ".join(
+        f"{_listed(subjects)} ({', '.join(rules)})" for subjects, rules in group.about
+    )
+    return f"{about}: {group.why}."
+
+
+def _listed(names: Sequence[str]) -> str:
+    return ", ".join(names)
+
+
+def rank(design: DesignReview) -> tuple[int, ...]:
+    """Return a key that puts the worst design first."""
+    found = counts(design.findings)
+    order = {"hold": 0, "incomplete": 1, "pass": 2}
+    return (order[design.verdict], *(-found[s] for s in SEVERITIES), -design.open)
+
+
+def left_to_the_table(total: int, held: int, shown: int) -> str:
+    """Return what a report on many netlists leaves out."""
+    if held == shown:
+        what = "those on hold" if held else "none"
+        return f"Of {total} netlists {what} are shown in full; review one alone for the rest of it."
+    return (
+        f"Of {held} netlists on hold the worst {shown} are shown in full; review one alone for its "
+        "findings."
+    )
 
 
 def near(path: str) -> str:

@@ -63,9 +63,11 @@ def test_several_files_begin_with_a_table():
     """One row a file, the held ones first."""
     names = [ROOT / "fixtures" / "station" / "station.cir", FAULTS[0]]
     lines = terminal(review(names), None).decode().splitlines()
-    assert lines[0].split()[:2] == ["netlist", "verdict"]
-    assert "hold" in lines[1]
-    assert "pass" in lines[2]
+    assert lines[0].split()[:2] == ["2", "netlists"]
+    assert lines[1].split()[0] == "verdict"
+    assert lines[2].split()[0] == "hold"
+    assert lines[2].endswith(f"faults/{FAULTS[0].name}")
+    assert lines[3].split()[0] == "pass"
 
 
 def test_ascii_terminal_gets_ascii():
