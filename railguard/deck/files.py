@@ -6,16 +6,14 @@ opens another root. A file that is missing costs only what stands in it.
 
 import hashlib
 import re
-from collections.abc import Callable
 from pathlib import Path, PurePosixPath
 
 import msgspec
 
 from railguard.deck.lines import Line, scan
+from railguard.deck.source import DISK, Files
 from railguard.location import Location
 from railguard.notices import Problem, Remark
-
-Read = Callable[[Path], bytes]
 
 
 class Bounds(msgspec.Struct, frozen=True, kw_only=True):
@@ -52,27 +50,22 @@ class Deck(msgspec.Struct, frozen=True, kw_only=True):
     bounds: Bounds = Bounds()
 
 
-def read_bytes(path: Path) -> bytes:
-    """Read a file from the disk."""
-    return path.read_bytes()
-
-
 def read_deck(
-    path: Path, bounds: Bounds | None = None, root: Path | None = None, read: Read = read_bytes
+    path: Path, bounds: Bounds | None = None, root: Path | None = None, files: Files = DISK
 ) -> Deck:
     """Read a netlist and everything it includes.
 
     root  the folder that includes must stay below; None: the netlist's own folder
-    read  how a file's bytes are got
+    files the tree that the netlist and its includes are read from
 
     A file that cannot be read at all gives a deck that says so: nothing is raised.
     """
-    return _Reader(bounds or Bounds(), (root or path.parent).resolve(), read).main(path)
+    return _Reader(bounds or Bounds(), files.real(root or path.parent), files).main(path)
 
 
 def deck_from_text(text: str, name: str = "<text>", bounds: Bounds | None = None) -> Deck:
     """Take a netlist's text; includes are refused, because a text has no folder."""
-    reader = _Reader(bounds or Bounds(), None, read_bytes)
+    reader = _Reader(bounds or Bounds(), None, DISK)
     return reader.deck(name, text, hashlib.sha256(text.encode()).hexdigest())
 
 
@@ -130,10 +123,10 @@ def _looks_binary(text: str) -> bool:
 
 
 class _Reader:
-    def __init__(self, bounds: Bounds, root: Path | None, read: Read) -> None:
+    def __init__(self, bounds: Bounds, root: Path | None, files: Files) -> None:
         self._bounds = bounds
         self._root = root
-        self._read = read
+        self._from = files
         self._lines: list[Line] = []
         self._directives: list[tuple[str, Location]] = []
         self._problems: list[Problem] = []
@@ -146,8 +139,8 @@ class _Reader:
         name = str(path)
         self._top = path.parent
         try:
-            if self._read is read_bytes and not path.is_file():
-                what = "is a folder" if path.is_dir() else "does not exist"
+            if not self._from.is_file(path):
+                what = self._missing(path)
                 return self._refuse(name, f"{name} {what}.", "Check the path.")
             data = self._bounded(path)
         except OSError as error:
@@ -199,8 +192,15 @@ class _Reader:
         )
         return Deck(path=name, problems=(problem,), readable=False, files=(name,))
 
+    def _missing(self, path: Path) -> str:
+        if self._from.is_dir(path):
+            return "is a folder"
+        folder = path.parent
+        there = self._from.is_dir(folder) and path.name in self._from.names(folder)
+        return "is no ordinary file" if there else "does not exist"
+
     def _bounded(self, path: Path) -> bytes | None:
-        data = self._read(path)
+        data = self._from.read(path, self._bounds.file_bytes)
         return data if len(data) <= self._bounds.file_bytes else None
 
     def _take(
@@ -300,17 +300,17 @@ class _Reader:
                 )
             )
             return
-        found = _find(chain[-1].parent, target)
+        found = _find(self._from, chain[-1].parent, target)
         if found is None:
             self._lost(place, f"{target} is not there.{told}", target)
             return
-        real = found.resolve()
+        real = self._from.real(found)
         if not real.is_relative_to(self._root):
             self._lost(
                 place, f"{target} lies outside the deck's folder and is not read.{told}", target
             )
             return
-        if any(step is not None and step.resolve() == real for step in chain):
+        if any(step is not None and self._from.real(step) == real for step in chain):
             self._lost(place, f"{target} includes itself.{told}", target)
             return
         self._open(found, place, target, chain, section, told)
@@ -394,13 +394,13 @@ def _is_library(name: str, text: str) -> bool:
     return first.startswith((".subckt", ".model", ".param", ".lib"))
 
 
-def _find(folder: Path, target: str) -> Path | None:
+def _find(files: Files, folder: Path, target: str) -> Path | None:
     """Find an included file: as written, with Windows separators, in another case."""
     plain = target.replace("\\", "/")
     if re.match(r"^[A-Za-z]:", plain) or plain.startswith("//"):
         return None
     direct = folder / plain
-    if direct.is_file():
+    if files.is_file(direct):
         return direct
     at = folder if not plain.startswith("/") else Path("/")
     for part in PurePosixPath(plain).parts:
@@ -409,13 +409,13 @@ def _find(folder: Path, target: str) -> Path | None:
         if part == "..":
             at = at.parent
             continue
-        if not at.is_dir():
+        if not files.is_dir(at):
             return None
-        hit = next((p for p in sorted(at.iterdir()) if p.name.lower() == part.lower()), None)
+        hit = next((name for name in files.names(at) if name.lower() == part.lower()), None)
         if hit is None:
             return None
-        at = hit
-    return at if at.is_file() else None
+        at = at / hit
+    return at if files.is_file(at) else None
 
 
 def _chain(chain: tuple[Path | None, ...], file: str) -> str:
