@@ -70,6 +70,18 @@ class DesignReview(msgspec.Struct, frozen=True, kw_only=True):
         worst = self.worst()
         return worst is not None and at_or_above(worst, level)
 
+    def holding(self) -> tuple[Finding, ...]:
+        """Return the findings, not waived, that stand at its own hold level or above."""
+        level = self.design.settings.hold_at
+        return tuple(
+            f for f in self.findings if f.waiver is None and at_or_above(f.severity, level)
+        )
+
+    def open_though_required(self) -> tuple[NotChecked, ...]:
+        """Return what stayed open of the families that its settings require."""
+        required = self.design.settings.require
+        return tuple(n for n in self.not_checked if n.rule.split("-", 1)[0] in required)
+
 
 class Review(msgspec.Struct, frozen=True, kw_only=True):
     """What was found in all decks of one run. `findings` are those about the run itself."""
@@ -217,7 +229,7 @@ def review_deck(
         open=judged.open,
         rules=judged.rules,
     )
-    return msgspec.structs.replace(result, verdict=_verdict(result, settings)), set(matched)
+    return msgspec.structs.replace(result, verdict=verdict(result)), set(matched)
 
 
 def _with_directives(
@@ -246,10 +258,8 @@ def _nothing_found(circuit: Circuit, design: Design) -> tuple[NotChecked, ...]:
     )
 
 
-def _verdict(result: DesignReview, settings: Settings) -> Verdict:
-    if result.holds(settings.hold_at):
-        return "hold"
-    families = {note.rule.split("-", 1)[0] for note in result.not_checked}
-    if families.intersection(settings.require):
+def verdict(result: DesignReview) -> Verdict:
+    """Return what a design's findings and open points come to, at its own hold level."""
+    if result.holding() or result.open_though_required():
         return "hold"
     return "incomplete" if result.not_checked or not result.judged else "pass"

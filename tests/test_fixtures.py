@@ -9,7 +9,7 @@ from pathlib import Path
 
 import pytest
 
-from railguard.review import review
+from railguard.reviewing import review
 from railguard.words import at_or_above
 
 FIXTURES = Path(__file__).resolve().parent.parent / "fixtures"

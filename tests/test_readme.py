@@ -6,7 +6,7 @@ from pathlib import Path
 
 from railguard.commands.rules import as_markdown
 from railguard.report.terminal import terminal
-from railguard.review import review
+from railguard.reviewing import review
 from railguard.settings.file import parse
 
 ROOT = Path(__file__).parents[1]

@@ -11,8 +11,8 @@ from railguard.analysis.solution import Options
 from railguard.commands.deliver import write_whole
 from railguard.errors import UsageError
 from railguard.report.formats import FORMATS, render
-from railguard.review import Review, Simulator
-from railguard.review import review as run
+from railguard.reviewing import Review, Simulator
+from railguard.reviewing import review as run
 from railguard.settings import file as settings_file
 from railguard.settings.model import Settings
 from railguard.words import SEVERITIES, Family, Severity

@@ -9,7 +9,7 @@ from railguard.analysis.solution import Options
 from railguard.errors import UsageError
 from railguard.report import sheet as sheets
 from railguard.report.visible import visible
-from railguard.review import review as run
+from railguard.reviewing import review as run
 from railguard.settings import file as settings_file
 
 _BYTES = {"csv": sheets.as_csv, "json": sheets.as_json, "markdown": sheets.as_markdown}

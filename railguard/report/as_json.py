@@ -15,7 +15,7 @@ from railguard import __version__
 from railguard.analysis.stage import Allowed, Range, Stage
 from railguard.location import Location
 from railguard.report.words import near
-from railguard.review import DesignReview, Review
+from railguard.reviewing import DesignReview, Review
 from railguard.rules.finding import Finding
 from railguard.words import Basis, Family, Kind, Severity, Verdict
 

@@ -4,7 +4,7 @@ import importlib
 from pathlib import Path
 from typing import IO
 
-from railguard.review import Review
+from railguard.reviewing import Review
 
 _MODULES = {
     "terminal": "railguard.report.terminal",

@@ -8,7 +8,7 @@ import msgspec
 
 from railguard.analysis.stage import Stage
 from railguard.notices import NotChecked
-from railguard.review import DesignReview
+from railguard.reviewing import DesignReview
 from railguard.rules.finding import Finding
 from railguard.words import SEVERITIES
 

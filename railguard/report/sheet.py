@@ -11,7 +11,7 @@ import math
 import msgspec
 
 from railguard.analysis.stage import Rail, Range, Stage
-from railguard.review import DesignReview, Review
+from railguard.reviewing import DesignReview, Review
 from railguard.units import si
 
 

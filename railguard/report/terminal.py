@@ -5,8 +5,10 @@ Text from a netlist is shown as it is, never interpreted.
 """
 
 import io
+from collections.abc import Callable
 from typing import IO
 
+import msgspec
 from rich.cells import cell_len
 from rich.console import Console
 from rich.text import Text
@@ -19,7 +21,7 @@ from railguard.report.scale import MEANINGS, Line, Role, Scale, draw, input_scal
 from railguard.report.scale import UNICODE as UNICODE_MARKS
 from railguard.report.visible import encodable, shortened, visible
 from railguard.report.wrapping import wrapped
-from railguard.review import DesignReview, Review
+from railguard.reviewing import DesignReview, Review
 from railguard.rules.finding import Finding
 from railguard.rules.registry import RULES
 from railguard.words import SEVERITIES
@@ -49,6 +51,18 @@ def terminal(review: Review, stream: IO[str] | None) -> bytes:
 
     stream   where to; None: nothing is printed and the plain text of 80 columns is returned
     """
+    return _printed(stream, lambda printer: printer.run(review))
+
+
+def held(review: Review, stream: IO[str] | None = None) -> bytes:
+    """Print only what puts designs on hold; nothing where nothing does.
+
+    stream   as for `terminal`
+    """
+    return _printed(stream, lambda printer: printer.held(review))
+
+
+def _printed(stream: IO[str] | None, run: Callable[["_Printer"], None]) -> bytes:
     out = io.StringIO() if stream is None else stream
     console = Console(
         file=out,
@@ -57,7 +71,7 @@ def terminal(review: Review, stream: IO[str] | None) -> bytes:
         emoji=False,
         width=80 if stream is None or not out.isatty() else None,
     )
-    _Printer(console, getattr(out, "encoding", None) or "utf-8").run(review)
+    run(_Printer(console, getattr(out, "encoding", None) or "utf-8"))
     return out.getvalue().encode() if isinstance(out, io.StringIO) else b""
 
 
@@ -86,6 +100,21 @@ class _Printer:
             self.line(f"{words.plural(len(review.designs), 'netlist')}, {held} on hold.", "bold")
         self.legend()
         self.paragraph(words.CAUTION, 0, style="dim")
+
+    def held(self, review: Review) -> None:
+        for design in review.designs:
+            if design.verdict != "hold":
+                continue
+            self.deck = design.path
+            self.line(self.clean(design.path), "bold underline")
+            stages = {s.designator: s for s in design.design.stages}
+            holding = msgspec.structs.replace(
+                design, findings=design.holding(), not_checked=design.open_though_required()
+            )
+            for subject, findings in blocks(holding):
+                self.block(subject, findings, stages)
+            self.not_checked(holding)
+        self.legend()
 
     # ------------------------------------------------------------------ text
 

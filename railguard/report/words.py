@@ -8,7 +8,7 @@ from railguard.analysis.stage import Stage, Supply
 from railguard.circuit.model import GROUND
 from railguard.location import Location
 from railguard.report.grouping import OpenGroup
-from railguard.review import DesignReview
+from railguard.reviewing import DesignReview
 from railguard.rules.finding import Finding
 from railguard.units import si
 from railguard.words import SEVERITIES

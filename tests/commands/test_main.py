@@ -7,7 +7,7 @@ import pytest
 
 import railguard
 
-HEAVY = ("numpy", "lark", "rich.console", "scipy", "railguard.review")
+HEAVY = ("numpy", "lark", "rich.console", "scipy", "railguard.reviewing")
 
 
 def run(*arguments):

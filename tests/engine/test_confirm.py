@@ -5,7 +5,7 @@ import shutil
 import pytest
 
 from railguard.engine.ngspice import find
-from railguard.review import review
+from railguard.reviewing import review
 from railguard.simulated import Ngspiced
 
 pytestmark = pytest.mark.skipif(shutil.which("ngspice") is None, reason="ngspice is not installed")

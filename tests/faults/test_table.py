@@ -9,7 +9,7 @@ from typing import NamedTuple
 
 import pytest
 
-from railguard.review import review
+from railguard.reviewing import review
 
 BAD = ("critical", "major")
 

@@ -21,7 +21,7 @@ from railguard.devices import catalogue
 from railguard.engine.guard import TITLE
 from railguard.engine.ngspice import find
 from railguard.engine.requests import OperatingPoint, SmallSignal
-from railguard.review import review
+from railguard.reviewing import review
 from railguard.settings.file import parse
 
 pytestmark = pytest.mark.skipif(shutil.which("ngspice") is None, reason="ngspice is not installed")

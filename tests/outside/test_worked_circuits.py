@@ -11,7 +11,7 @@ from typing import NamedTuple
 
 import pytest
 
-from railguard.review import review
+from railguard.reviewing import review
 from railguard.settings.file import parse
 
 RAILS = "VP vp 0 15\nVN vn 0 -15\n"

@@ -10,7 +10,7 @@ import pytest
 
 from railguard.analysis.stage import Allowed, Range
 from railguard.report.as_json import Document, document, from_root, schema
-from railguard.review import review
+from railguard.reviewing import review
 
 ROOT = Path(__file__).parents[2]
 SCHEMA = ROOT / "railguard" / "report" / "report.schema.json"

@@ -7,7 +7,7 @@ from pathlib import Path
 import pytest
 
 from railguard.report.terminal import terminal
-from railguard.review import review
+from railguard.reviewing import review
 
 ROOT = Path(__file__).parents[2]
 FAULTS = sorted((ROOT / "fixtures" / "faults").glob("*.cir"))
