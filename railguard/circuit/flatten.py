@@ -73,6 +73,7 @@ def flatten(deck: Deck, closed: Closed = nothing_closed) -> Circuit:
         remarks=deck.remarks,
         sha256=deck.sha256,
         files=deck.files,
+        texts=deck.texts,
     )
 
 

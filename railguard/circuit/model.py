@@ -112,6 +112,7 @@ class Circuit(msgspec.Struct, frozen=True, kw_only=True):
     top_nets     nets of the top level that could leave the sheet (hierarchical labels, ports)
     sha256       of the main deck and everything it includes, hex
     files        every file read: the main deck first
+    texts        their texts as decoded, by the same names; a report shows them
     """
 
     path: str
@@ -126,4 +127,5 @@ class Circuit(msgspec.Struct, frozen=True, kw_only=True):
     remarks: tuple[Remark, ...] = ()
     sha256: str = ""
     files: tuple[str, ...] = ()
+    texts: Mapping[str, str] = {}
     readable: bool = True

@@ -6,7 +6,9 @@ opens another root. A file that is missing costs only what stands in it.
 
 import hashlib
 import re
+from collections.abc import Mapping
 from pathlib import Path, PurePosixPath
+from types import MappingProxyType
 
 import msgspec
 
@@ -36,7 +38,10 @@ class Bounds(msgspec.Struct, frozen=True, kw_only=True):
 
 
 class Deck(msgspec.Struct, frozen=True, kw_only=True):
-    """A deck: its logical lines with everything it includes, in reading order."""
+    """A deck: its logical lines with everything it includes, in reading order.
+
+    texts  every file's text as it was decoded, by the name its locations carry
+    """
 
     path: str
     title: str = ""
@@ -45,6 +50,7 @@ class Deck(msgspec.Struct, frozen=True, kw_only=True):
     problems: tuple[Problem, ...] = ()
     remarks: tuple[Remark, ...] = ()
     files: tuple[str, ...] = ()
+    texts: Mapping[str, str] = MappingProxyType({})
     sha256: str = ""
     readable: bool = True
     bounds: Bounds = Bounds()
@@ -132,6 +138,7 @@ class _Reader:
         self._problems: list[Problem] = []
         self._remarks: list[Remark] = []
         self._files: list[str] = []
+        self._texts: dict[str, str] = {}
         self._hash = hashlib.sha256()
         self._top = Path()
 
@@ -182,6 +189,7 @@ class _Reader:
             problems=tuple(self._problems),
             remarks=tuple(self._remarks),
             files=tuple(self._files),
+            texts=self._texts,
             sha256=self._hash.hexdigest(),
             bounds=self._bounds,
         )
@@ -209,7 +217,9 @@ class _Reader:
         if "\x00" in text:
             text = text.replace("\x00", "")
             self._problem("netlist-encoding", f"{name} holds NUL bytes; they are left out.", name)
-        scanned = scan(text.rstrip("\x1a"), name, titled)
+        text = text.rstrip("\x1a")
+        self._texts[name] = text
+        scanned = scan(text, name, titled)
         self._directives += scanned.directives
         self._problems += scanned.problems
         self._remarks += scanned.remarks

@@ -3,6 +3,7 @@
 import pytest
 
 from railguard.deck.files import Bounds, deck_from_text, decode, read_deck
+from railguard.deck.lines import physical_lines
 
 TEXT = "station\nC1 a 0 1µ\nR1 a 0 1k\n.end\n"
 
@@ -139,3 +140,14 @@ def test_size_bound_is_a_problem(tmp_path):
     deck = read_deck(path, Bounds(file_bytes=100))
     assert not deck.readable
     assert "100" in deck.problems[0].message
+
+
+def test_texts_are_kept_as_they_were_read(tmp_path):
+    """A report shows the lines that locations speak of, of the deck and of what it includes."""
+    (tmp_path / "low.inc").write_bytes(b"C1 out 0 100n ; \xb5\r\n")
+    (tmp_path / "gauge.cir").write_text("gauge\nR1 in out 1k\n.include low.inc\n.end\n")
+    deck = read_deck(tmp_path / "gauge.cir")
+    assert tuple(deck.texts) == deck.files
+    for line in deck.lines:
+        shown = physical_lines(deck.texts[line.file])
+        assert shown[line.location.line - 1].startswith(line.text.split()[0])
