@@ -18,6 +18,9 @@ from railguard.words import Basis
 SERIES_OHMS = 1000.0
 """Up to this resistance a resistor between a source and a supply pin counts as a series element."""
 
+LONE_OHMS = 100e3
+"""Up to this resistance a single resistor from a source feeds a pin that nothing else feeds."""
+
 DEFAULT_RAIL_TOLERANCE = 0.05
 """Rails that feed a supply pin: 5 %, common practice, no source (regulators 2 to 5 %)."""
 
@@ -64,21 +67,56 @@ def feeds(
 
     A search from the pin through series elements (inductors, links, resistors up to 1 kilohm)
     meets, in order: a net the user states, a source, an amplifier's output, a net whose name
-    carries a level.
+    carries a level. Where it meets none, one larger resistor straight from a source counts: a
+    micropower stage may be fed so, and one that is not must be told what the resistor takes.
     """
-    around = _neighbours(elements)
+    elements, amplifiers = tuple(elements), tuple(amplifiers)
+    around = _neighbours(elements, SERIES_OHMS)
     outputs = {a.output: a.designator for a in amplifiers}
-    return {net: _feed(net, around, settings, outputs) for net in nets}
+    found = {net: _feed(net, around, settings, outputs) for net in nets}
+    if all(feed.held for feed in found.values()):
+        return found
+    wider = _neighbours(elements, LONE_OHMS)
+    return {
+        net: feed if feed.held else _through_one(net, wider, settings) or feed
+        for net, feed in found.items()
+    }
 
 
-def _neighbours(elements: Iterable[Element]) -> Mapping[str, list[tuple[Element, str]]]:
+def _through_one(
+    net: str, around: Mapping[str, list[tuple[Element, str]]], settings: Settings
+) -> Feed | None:
+    """Return the feed of a net over one resistor from a source or a net whose level is stated."""
+    for element, other in around.get(net, ()):
+        if element.kind != "R" or other == GROUND:
+            continue
+        stated = settings.nets.get(other)
+        if stated is not None:
+            where = settings.file or "a directive"
+            return Feed(
+                net=net, level=None, basis="user", origin=where, series=(element.designator,),
+                at=other, tolerance=stated.tolerance,
+            )  # fmt: skip
+        for source, _ in around.get(other, ()):
+            if source.kind in ("V", "battery") and _delivers(source) and GROUND in source.nets:
+                return Feed(
+                    net=net, level=None, basis="netlist", origin=source.designator,
+                    source=source.designator, series=(element.designator,), at=other,
+                )  # fmt: skip
+    return None
+
+
+def _neighbours(
+    elements: Iterable[Element], most: float
+) -> Mapping[str, list[tuple[Element, str]]]:
+    """Return the series elements on each net with the net behind; resistors up to `most` ohm."""
     around: dict[str, list[tuple[Element, str]]] = defaultdict(list)
     for element in elements:
         if not element.fitted or len(element.nets) < 2:
             continue
         series = (
             element.kind in ("L", "link")
-            or (element.kind == "R" and element.value is not None and element.value <= SERIES_OHMS)
+            or (element.kind == "R" and element.value is not None and element.value <= most)
             or element.kind in ("V", "E", "H", "battery", "B")
         )
         if series:
