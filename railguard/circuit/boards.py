@@ -9,6 +9,9 @@ from railguard.deck.cards import Assignment, Items
 from railguard.deck.lines import Line
 from railguard.deck.numbers import read_number
 
+BOARD_LETTERS = frozenset("FHUBJTSKMPNOWAR")
+"""Letters SPICE knows that board designators begin with as well."""
+
 
 def is_board(names: Names, letter: str, rest: Items, board: str) -> bool:
     """Tell whether a card whose letter SPICE knows is a board component all the same."""

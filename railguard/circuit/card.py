@@ -1,6 +1,6 @@
 """What binding a card needs at hand: its scope, its parameters, and where problems go."""
 
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, cast
 
 from railguard.circuit.expressions import ExpressionError
 from railguard.circuit.model import Element
@@ -27,25 +27,18 @@ class UnboundError(Exception):
 class Names:
     """One instance of a scope while its cards are bound.
 
-    prefix      of hierarchical designators: "" or `X1.X2.`
-    multiplier  how many of it stand in parallel
-    problems    what was met so far
+    prefix    of hierarchical designators: "" or `X1.X2.`
+    problems  what was met so far
+    asked     True once anything was looked up that another instance may see otherwise
     """
 
-    def __init__(
-        self, scope: Scope, environment: "Environment", prefix: str, multiplier: float
-    ) -> None:
+    def __init__(self, scope: Scope, environment: "Environment", prefix: str) -> None:
         """Take what one instance of a scope sees."""
         self.scope = scope
         self.environment = environment
         self.prefix = prefix
-        self.multiplier = multiplier
         self.problems: list[Problem] = []
-
-    def taken(self) -> list[Problem]:
-        """Hand over what was met since the last call."""
-        problems, self.problems = self.problems, []
-        return problems
+        self.asked = False
 
     def names_model(self, words: list[str], start: int) -> bool:
         """Tell whether one of the words from `start` on is a visible model."""
@@ -53,25 +46,36 @@ class Names:
 
     def number(self, text: str, letter: str = "") -> float | None:
         """Return the value of a word: a number, an expression in braces, a parameter's name."""
-        if text[:1] in "{'\"":
+        if text[:1] in ("{", "'", '"'):
             try:
-                return self.environment.evaluate(text)
+                return self.evaluate(text)
             except ExpressionError:
                 return None
         found = read_number(text, letter)
         if found is not None:
             return found.value
-        if text.isidentifier():
-            try:
-                return self.environment.look(text.lower())
-            except ExpressionError:
-                return None
-        return None
+        return self.parameter(text) if text.isidentifier() else None
+
+    def parameter(self, name: str) -> float | None:
+        """Return a parameter's value; None where there is none of that name."""
+        self.asked = True
+        try:
+            return self.environment.look(name.lower())
+        except ExpressionError:
+            return None
+
+    def evaluate(self, text: str) -> float:
+        """Return an expression's value as this instance sees it.
+
+        Raises  ExpressionError
+        """
+        self.asked = True
+        return self.environment.evaluate(text)
 
     def evaluated(self, text: str, name: str, line: Line) -> tuple[float | None, bool]:
         """Return an expression's value and whether only a simulation gives it one."""
         try:
-            return self.environment.evaluate(text), False
+            return self.evaluate(text), False
         except ExpressionError as error:
             if error.behavioural:
                 return None, True
@@ -115,6 +119,9 @@ class Names:
         self, items: Items, count: int, line: Line, words: str
     ) -> tuple[tuple[str, ...], Items]:
         """Take a card's nodes off; a group in parentheses counts as its members."""
+        plain = items[1 : count + 1]
+        if len(plain) == count and all(type(item) is str for item in plain):
+            return cast("tuple[str, ...]", plain), items[count + 1 :]
         nets: list[str] = []
         rest = list(items[1:])
         while rest and len(nets) < count:

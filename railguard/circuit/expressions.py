@@ -20,7 +20,7 @@ Lookup = Callable[[str], float]
 
 _NAME = re.compile(r"^[A-Za-z_][A-Za-z0-9_]*$")
 _RUN_TIME = frozenset({"time", "freq", "hertz", "x", "s"})
-_CONSTANTS = {
+_CONSTANTS: dict[str, float] = {
     "pi": math.pi,
     "e": math.e,
     "temper": 27.0,
@@ -31,6 +31,7 @@ _CONSTANTS = {
     "true": 1.0,
     "false": 0.0,
 }
+_RESERVED = _RUN_TIME | _CONSTANTS.keys()
 LONGEST = 10_000
 """Characters of one expression."""
 DEEPEST = 64
@@ -76,7 +77,7 @@ def evaluate(
     number = read_number(plain)
     if number is not None and not number.trap:
         return number.value
-    if _NAME.match(plain) and plain.lower() not in _CONSTANTS | dict.fromkeys(_RUN_TIME, 0.0):
+    if _NAME.match(plain) and plain.lower() not in _RESERVED:
         return lookup(plain.lower())
     return _Evaluator(lookup, functions).value(parse(plain), 0)
 

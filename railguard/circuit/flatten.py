@@ -5,14 +5,25 @@ that this room needs no catalogue.
 """
 
 import re
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Iterable, Mapping
+from typing import cast
 
-import msgspec
-
-from railguard.circuit.bind import Instance, bind, pin_names
+from railguard.circuit.bind import bind
+from railguard.circuit.calls import closed as closed_call
+from railguard.circuit.calls import pin_names
 from railguard.circuit.card import Names, UnboundError
 from railguard.circuit.expressions import ExpressionError, Function, evaluate
-from railguard.circuit.model import GROUND, Circuit, Directive, Element, Model, Subcircuit
+from railguard.circuit.model import (
+    GROUND,
+    Circuit,
+    Control,
+    Directive,
+    Element,
+    Instance,
+    Model,
+    Subcircuit,
+)
+from railguard.circuit.plain import plain_element
 from railguard.circuit.scopes import Scope, sort_deck, text_of, unquoted
 from railguard.deck.cards import Assignment, CardError, Items
 from railguard.deck.files import Deck
@@ -48,7 +59,7 @@ def flatten(deck: Deck, closed: Closed = nothing_closed) -> Circuit:
         )  # fmt: skip
     found = sort_deck(deck)
     expander = _Expander(deck, closed, found.globals)
-    expander.scope(found.top, "", {}, Environment(found.top, None, {}), 0, 1.0, frozenset())
+    expander.scope(Environment(found.top, None, {}), "", (), 0, frozenset())
     problems = [*deck.problems, *found.problems, *expander.problems]
     if not expander.elements and not problems:
         problems.append(
@@ -113,34 +124,62 @@ def _subcircuits(top: Scope) -> dict[str, Subcircuit]:
     return kept
 
 
-class Environment:
-    """Parameters visible in one instance: given by the instance, its own, its definition's outer.
+Bound = tuple[Element, ...] | Instance
+"""What a card was bound to: elements, or a subcircuit call; nothing where it cannot be read."""
 
-    Where that fails, the caller's are looked through: some SPICE programs do, so decks rely on it.
+
+class Environment:
+    """What an instance sees: parameters it is given, its own, those outside its definition.
+
+    Instances that are called alike share one, and with it what their cards were bound to.
+
+    multiplier  how many of the instance stand in parallel
+    bound       cards by number, as every instance of this environment reads them
+
+    Where a name is found nowhere outside, the caller's are looked through: some SPICE programs do,
+    so decks rely on it.
     """
 
     def __init__(
         self, scope: Scope, outer: "Environment | None", given: Mapping[str, float],
-        caller: "Environment | None" = None,
+        caller: "Environment | None" = None, multiplier: float = 1.0,
     ) -> None:  # fmt: skip
-        self._scope = scope
+        self.scope = scope
+        self.multiplier = multiplier
+        self.bound: dict[int, Bound] = {}
+        self._inner: dict[object, Environment] = {}
+        self._known: dict[str, float] = {}
         self._outer = outer
         self._values = dict(given)
         self._caller = caller
-        self._busy: set[str] = set()
+        self._busy: list[str] = []
 
     def of(self, scope: Scope | None) -> "Environment | None":
         """Return the environment of the scope a definition stands in: the nearest one outwards."""
         at: Environment | None = self
-        while at is not None and at._scope is not scope:
+        while at is not None and at.scope is not scope:
             at = at._outer or at._caller
         return at
+
+    def of_call(self, definition: Scope, call: Instance) -> "Environment":
+        """Return the environment of a call from here; calls with the same parameters share one."""
+        key = (definition.key, call.multiplier, *call.parameters.items())
+        found = self._inner.get(key)
+        if found is None:
+            found = self._inner[key] = Environment(
+                definition,
+                self.of(definition.parent),
+                call.parameters,
+                self,
+                self.multiplier * call.multiplier,
+            )
+        return found
 
     @property
     def functions(self) -> Mapping[str, Function]:
         """Functions defined here and outside."""
         outer = self._outer.functions if self._outer is not None else {}
-        return {**outer, **self._scope.functions} if self._scope.functions else outer
+        return {**outer, **self.scope.functions} if self.scope.functions else outer
 
     def look(self, name: str) -> float:
         """Return a parameter's value.
@@ -149,17 +188,17 @@ class Environment:
         """
         if name in self._values:
             return self._values[name]
-        own = self._scope.parameters.get(name)
-        text = own[0] if own is not None else self._scope.defaults.get(name)
+        own = self.scope.parameters.get(name)
+        text = own[0] if own is not None else self.scope.defaults.get(name)
         if text is not None:
             if name in self._busy:
-                chain = " -> ".join([*sorted(self._busy), name])
+                chain = " -> ".join([*self._busy[self._busy.index(name) :], name])
                 raise ExpressionError(f"the parameter {name} rests on itself ({chain})")
-            self._busy.add(name)
+            self._busy.append(name)
             try:
                 value = self.evaluate(text)
             finally:
-                self._busy.discard(name)
+                self._busy.pop()
             self._values[name] = value
             return value
         for other in (self._outer, self._caller):
@@ -176,83 +215,136 @@ class Environment:
 
         Raises  ExpressionError
         """
-        return evaluate(unquoted(text), self.look, self.functions)
+        found = self._known.get(text)
+        if found is None:
+            found = self._known[text] = evaluate(unquoted(text), self.look, self.functions)
+        return found
+
+
+class _Nets(dict[str, str]):
+    """How the nets of one instance are spelled: as written inside to as named in the circuit.
+
+    What is not there yet is worked out once; pins that are not connected are a new net each time.
+    """
+
+    def __init__(
+        self, known: Iterable[tuple[str, str]], expander: "_Expander", prefix: str
+    ) -> None:
+        super().__init__(known)
+        self._expander = expander
+        self._prefix = prefix
+
+    def __missing__(self, name: str) -> str:
+        key = name.casefold()
+        made = self.get(key)
+        if made is None:
+            made = self._expander.net(name, key, self._prefix)
+            if name[0] == "?":
+                return made
+            self[key] = made
+        self[name] = made
+        return made
 
 
 class _Expander:
     def __init__(self, deck: Deck, closed: Closed, globals_: tuple[str, ...]) -> None:
         self.deck = deck
-        self.closed = closed
         self.elements: list[Element] = []
         self.models: dict[str, Model] = {}
         self.problems: list[Problem] = []
         self.grounded = False
+        self._closed = closed
+        self._devices: dict[tuple[int, str], bool] = {}
         self._globals = {name.casefold(): name for name in globals_}
         self._unconnected = 0
         self._over = False
 
     def scope(
         self,
-        scope: Scope,
-        prefix: str,
-        ports: dict[str, str],
         environment: Environment,
+        prefix: str,
+        ports: Iterable[tuple[str, str]],
         depth: int,
-        multiplier: float,
-        active: frozenset[str],
+        active: frozenset[int],
     ) -> None:
-        nets = dict(ports)
-        names = Names(scope, environment, prefix, multiplier)
-        self._take_models(scope, environment, prefix)
-        seen: dict[str, Line] = {}
+        """Expand one instance of an environment's scope."""
+        scope = environment.scope
+        nets = _Nets(ports, self, prefix)
+        names = Names(scope, environment, prefix)
+        if scope.models:
+            self._take_models(scope, environment, prefix)
+        most = self.deck.bounds.elements
+        elements, kept, fixed, first = self.elements, environment.bound, scope.bound, scope.first
+        alone = environment.multiplier == 1.0
         for number, line in enumerate(scope.cards):
-            if len(self.elements) >= self.deck.bounds.elements:
-                self._bound(f"more than {self.deck.bounds.elements:,} elements", line)
+            if len(elements) >= most:
+                self._bound(f"more than {most:,} elements", line)
                 return
-            try:
-                bound = bind(names, scope.items(number), line)
-            except CardError as error:
-                self._card(line, error.reason)
-                continue
-            except UnboundError as error:
-                self.problems.append(error.problem)
-                if error.element is not None:
-                    self._add(error.element, nets, prefix)
-                continue
-            self.problems += names.taken()
-            name = bound[0].designator if isinstance(bound, list) else bound.designator
-            key = name.casefold()
-            if key in seen:
-                self._double(name, line, seen[key])
-                continue
-            seen[key] = line
-            if isinstance(bound, Instance):
-                self._instance(bound, scope, prefix, nets, environment, depth, multiplier, active)
+            bound = kept.get(number) or (fixed.get(number) if alone else None)
+            if bound is None:
+                element = plain_element(line) if alone else None
+                if (
+                    element is None
+                    or first.setdefault(element.designator.casefold(), line) is not line
+                ):
+                    bound = self._bind(names, number, line)
+                else:
+                    bound = fixed[number] = (element,)
+            if type(bound) is Instance:
+                self._instance(bound, environment, prefix, nets, depth, active)
             else:
-                for element in bound:
+                for element in cast("tuple[Element, ...]", bound):
                     self._add(element, nets, prefix)
 
-    def _card(self, line: Line, reason: str) -> None:
+    def _bind(self, names: Names, number: int, line: Line) -> Bound:
+        """Give a card its roles, and keep them where every instance that shares them finds them.
+
+        What is wrong with a card is told once, for the first instance it is met in.
+        """
+        scope = names.scope
+        names.asked = False
+        try:
+            bound = bind(names, scope.items(number, line), line)
+        except CardError as error:
+            names.problems.append(self._card(line, error.reason))
+            bound = ()
+        except UnboundError as error:
+            names.problems.append(error.problem)
+            bound = (error.element,) if error.element is not None else ()
+        if bound:
+            name = bound.designator if isinstance(bound, Instance) else bound[0].designator
+            first = scope.first.setdefault(name.casefold(), line)
+            if first is not line:
+                names.problems[:] = [self._double(name, line, first)]
+                bound, names.asked = (), False
+        if names.problems:
+            if number not in scope.told:
+                scope.told.add(number)
+                self.problems += names.problems
+            names.problems.clear()
+        if names.asked or names.environment.multiplier != 1.0:
+            names.environment.bound[number] = bound
+        else:
+            scope.bound[number] = bound
+        return bound
+
+    def _card(self, line: Line, reason: str) -> Problem:
         name = line.text.split(None, 1)[0]
-        self.problems.append(
-            Problem(
-                rule="netlist-card",
-                message=f"The card {name} cannot be read: {reason}.",
-                location=line.location,
-                designators=(name,),
-            )
+        return Problem(
+            rule="netlist-card",
+            message=f"The card {name} cannot be read: {reason}.",
+            location=line.location,
+            designators=(name,),
         )
 
-    def _double(self, name: str, line: Line, first: Line) -> None:
-        self.problems.append(
-            Problem(
-                rule="netlist-duplicate",
-                message=f"{name} stands twice: on line {first.location.line} and on line "
-                f"{line.location.line}. The first one counts.",
-                remedy="Give one of them another designator.",
-                location=line.location,
-                designators=(name,),
-            )
+    def _double(self, name: str, line: Line, first: Line) -> Problem:
+        return Problem(
+            rule="netlist-duplicate",
+            message=f"{name} stands twice: on line {first.number} and on line {line.number}. "
+            "The first one counts.",
+            remedy="Give one of them another designator.",
+            location=line.location,
+            designators=(name,),
         )
 
     def _bound(self, what: str, line: Line) -> None:
@@ -267,43 +359,50 @@ class _Expander:
                 )
             )
 
-    def net(self, name: str, nets: dict[str, str], prefix: str) -> str:
-        """Return the one spelling of a net as seen from an instance."""
-        key = name.casefold()
-        found = nets.get(key)
-        if found is not None:
-            return found
+    def net(self, name: str, key: str, prefix: str) -> str:
+        """Return the name in the circuit of a net that an instance meets first.
+
+        key  the name as nets are compared
+        """
         if key in _GROUNDS:
             self.grounded = True
-            made = GROUND
-        elif _NO_CONNECT.match(name):
+            return GROUND
+        if _NO_CONNECT.match(name):
             self._unconnected += 1
             # Every such pin is its own net, even where the export spells them alike.
-            return f"{name} ({self._unconnected})" if name.startswith("?") else prefix + name
-        elif key in self._globals or key.startswith("$g_"):
-            made = self._globals.setdefault(key, name)
-        else:
-            made = prefix + name
-        nets[key] = made
-        return made
+            return f"{name} ({self._unconnected})" if name[0] == "?" else prefix + name
+        if key in self._globals or key.startswith("$g_"):
+            return self._globals.setdefault(key, name)
+        return prefix + name
 
-    def _add(self, element: Element, nets: dict[str, str], prefix: str) -> None:
-        resolved = tuple([self.net(n, nets, prefix) for n in element.nets])
-        if GROUND in resolved:
-            self.grounded = True
+    def _add(self, element: Element, nets: _Nets, prefix: str) -> None:
+        resolved = tuple(map(nets.__getitem__, element.nets))
         control = element.control
         if control is not None and (control.nets or control.element):
-            control = msgspec.structs.replace(
-                control,
-                nets=tuple([self.net(n, nets, prefix) for n in control.nets]),
-                element=prefix + control.element if control.element else "",
+            control = Control(
+                control.gain,
+                tuple(map(nets.__getitem__, control.nets)),
+                prefix + control.element if control.element else "",
+                control.text,
             )
-        if not prefix and control is element.control and resolved == element.nets:
+        elif not prefix and resolved == element.nets:
             self.elements.append(element)
             return
         self.elements.append(
-            msgspec.structs.replace(
-                element, designator=prefix + element.designator, nets=resolved, control=control
+            Element(
+                kind=element.kind,
+                designator=prefix + element.designator,
+                nets=resolved,
+                value=element.value,
+                model=element.model,
+                control=control,
+                source=element.source,
+                parameters=element.parameters,
+                text=element.text,
+                ports=element.ports,
+                pin_notes=element.pin_notes,
+                fitted=element.fitted,
+                location=element.location,
             )
         )
 
@@ -314,69 +413,74 @@ class _Expander:
                 prefix.casefold() + key, Model(name, word, values, line.location)
             )
 
+    def _is_device(self, name: str, definition: Scope) -> bool:
+        """Tell whether calls of a subcircuit stay closed; asked once for each."""
+        key = definition.key, name
+        found = self._devices.get(key)
+        if found is None:
+            notes = pin_names(definition.notes, len(definition.ports))
+            found = self._closed(name, definition.ports, notes, definition.calls)
+            self._devices[key] = found
+        return found
+
     def _instance(
         self,
         instance: Instance,
-        scope: Scope,
-        prefix: str,
-        nets: dict[str, str],
         environment: Environment,
+        prefix: str,
+        nets: _Nets,
         depth: int,
-        multiplier: float,
-        active: frozenset[str],
+        active: frozenset[int],
     ) -> None:
-        definition = scope.subcircuit(instance.model.casefold())
-        ports = definition.ports if definition is not None else ()
-        if definition is None or self.closed(
-            instance.model, ports, pin_names(definition.notes, len(ports)), definition.calls
-        ):
-            notes = instance.notes or (definition.notes if definition is not None else ())
-            self._add(instance.element(ports, notes), nets, prefix)
+        definition = environment.scope.subcircuit(instance.model.casefold())
+        if definition is None:
+            self._add(closed_call(instance, (), ()), nets, prefix)
             return
-        given = list(instance.nets)
-        needed = len(ports) - len(definition.optional)
-        if not needed <= len(given) <= len(ports):
-            self._add(instance.element(ports, ()), nets, prefix)
-            self.problems.append(
-                Problem(
-                    rule="netlist-node-count",
-                    message=f"{instance.designator} gives {len(given)} nets to the subcircuit "
-                    f"{definition.name}, which has {len(ports)} ports.",
-                    remedy="Compare the card with the .subckt line.",
-                    location=instance.location,
-                    designators=(prefix + instance.designator,),
-                )
-            )
+        ports = definition.ports
+        if self._is_device(instance.model, definition):
+            self._add(closed_call(instance, ports, definition.notes), nets, prefix)
             return
-        key = f"{id(definition)}"
+        given = instance.nets
+        if len(given) != len(ports):
+            if not len(ports) - len(definition.optional) <= len(given) <= len(ports):
+                self._add(closed_call(instance, ports, ()), nets, prefix)
+                self._misfit(instance, definition, prefix)
+                return
+            given += tuple([definition.optional[p] for p in ports[len(given) :]])
+        key = definition.key
         if key in active or depth >= self.deck.bounds.subcircuit_depth:
-            rule = "netlist-bound" if key not in active else "netlist-card"
-            why = "calls itself" if key in active else "is nested deeper than the bound allows"
-            self.problems.append(
-                Problem(
-                    rule=rule,
-                    message=f"The subcircuit {definition.name} {why} (at {prefix}"
-                    f"{instance.designator}); it is left out.",
-                    location=instance.location,
-                    designators=(prefix + instance.designator,),
-                )
-            )
+            self._too_deep(instance, definition, prefix, key in active)
             return
-        given += [definition.optional[p] for p in ports[len(given) :]]
-        inner = {
-            port.casefold(): self.net(net, nets, prefix)
-            for port, net in zip(ports, given, strict=True)
-        }
-        values = dict(instance.parameters)
-        outer = environment.of(definition.parent)
         self.scope(
-            definition,
+            environment.of_call(definition, instance),
             f"{prefix}{instance.designator}.",
-            inner,
-            Environment(definition, outer, values, environment),
+            zip(definition.keys, map(nets.__getitem__, given), strict=True),
             depth + 1,
-            multiplier * instance.multiplier,
             active | {key},
+        )
+
+    def _misfit(self, instance: Instance, definition: Scope, prefix: str) -> None:
+        self.problems.append(
+            Problem(
+                rule="netlist-node-count",
+                message=f"{instance.designator} gives {len(instance.nets)} nets to the subcircuit "
+                f"{definition.name}, which has {len(definition.ports)} ports.",
+                remedy="Compare the card with the .subckt line.",
+                location=instance.location,
+                designators=(prefix + instance.designator,),
+            )
+        )
+
+    def _too_deep(self, instance: Instance, definition: Scope, prefix: str, itself: bool) -> None:
+        why = "calls itself" if itself else "is nested deeper than the bound allows"
+        self.problems.append(
+            Problem(
+                rule="netlist-card" if itself else "netlist-bound",
+                message=f"The subcircuit {definition.name} {why} (at {prefix}"
+                f"{instance.designator}); it is left out.",
+                location=instance.location,
+                designators=(prefix + instance.designator,),
+            )
         )
 
 

@@ -16,7 +16,7 @@ from railguard.notices import Problem, Remark
 GROUND = "0"
 
 
-class Control(msgspec.Struct, frozen=True):
+class Control(msgspec.Struct, frozen=True, gc=False):
     """What steers a controlled source.
 
     gain     V/V, A/V, A/A or V/A; None where the relation is not a plain factor
@@ -31,7 +31,7 @@ class Control(msgspec.Struct, frozen=True):
     text: str = ""
 
 
-class Element(msgspec.Struct, frozen=True, kw_only=True):
+class Element(msgspec.Struct, frozen=True, kw_only=True, gc=False):
     """One element after flattening.
 
     kind         the letter that says how it behaves: R C L V I E G F H D Q J M K S W T B X,
@@ -61,6 +61,22 @@ class Element(msgspec.Struct, frozen=True, kw_only=True):
     ports: tuple[str, ...] = ()
     pin_notes: tuple[str, ...] = ()
     fitted: bool = True
+    location: Location | None = None
+
+
+class Instance(msgspec.Struct, frozen=True, kw_only=True, gc=False):
+    """A subcircuit call that has not been expanded.
+
+    multiplier  how many of it stand in parallel
+    notes       pin names written behind the card
+    """
+
+    designator: str
+    nets: tuple[str, ...]
+    model: str
+    parameters: Mapping[str, float]
+    multiplier: float = 1.0
+    notes: tuple[str, ...] = ()
     location: Location | None = None
 
 

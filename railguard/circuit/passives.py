@@ -1,7 +1,6 @@
 """Cards of resistors, capacitors and inductors."""
 
 from railguard.circuit.card import Names, flat
-from railguard.circuit.expressions import ExpressionError
 from railguard.circuit.model import Element
 from railguard.circuit.scopes import text_of
 from railguard.circuit.values import WORDS, read_value
@@ -16,7 +15,7 @@ def passive(names: Names, items: Items, line: Line, letter: str) -> list[Element
     kind, unit = WORDS[letter]
     nets, rest = names.nodes(items, 2, line, f"{kind} {name}")
     words = flat(rest)
-    keys = {i.key: text_of(i.value) for i in rest if isinstance(i, Assignment)}
+    keys = {i.key: text_of(i.value) for i in rest if type(i) is Assignment}
     if not words and letter.lower() not in keys and not keys.get("value"):
         if read_number(nets[1]) is not None and nets[1] != "0":
             raise names.unbound(
@@ -26,7 +25,7 @@ def passive(names: Names, items: Items, line: Line, letter: str) -> list[Element
         raise names.unbound(items, line, "netlist-value-missing", f"{kind} {name} has no value")
     value, text, model, fitted = _passive_value(names, name, letter, words, keys, line, unit)
     multiple = keys.get("m")
-    factor = (names.number(multiple) or 1.0 if multiple else 1.0) * names.multiplier
+    factor = (names.number(multiple) or 1.0 if multiple else 1.0) * names.environment.multiplier
     if value is not None and factor != 1.0:
         value = value * factor if letter == "C" else value / factor
     parameters = {k: v for k, t in keys.items() if (v := _share(names, k, t)) is not None}
@@ -75,10 +74,9 @@ def _passive_value(
     if not reading.fitted:
         return None, reading.text, "", False
     if reading.value is None and first.isidentifier():
-        try:
-            return names.environment.look(first.lower()), reading.text, "", True
-        except ExpressionError:
-            pass
+        value = names.parameter(first)
+        if value is not None:
+            return value, reading.text, "", True
     if reading.rule:
         names.trap(name, reading.rule, first, reading.why, reading.value, reading.spice, unit, line)
     return reading.value, reading.text, "", True

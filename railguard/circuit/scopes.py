@@ -3,10 +3,12 @@
 One pass over the logical lines sorts them into scopes; nothing is expanded yet.
 """
 
+from functools import cached_property
+
 import msgspec
 
 from railguard.circuit.expressions import ExpressionError, Function, evaluate
-from railguard.circuit.model import Analysis
+from railguard.circuit.model import Analysis, Element, Instance
 from railguard.deck.cards import Assignment, Call, CardError, Group, Items, items_of
 from railguard.deck.files import Deck
 from railguard.deck.lines import Line
@@ -26,7 +28,13 @@ _PARAMETERS = frozenset({"param", "params", "parameter", "parameters", "global_p
 
 
 class Scope:
-    """What one subcircuit (or the top level) defines."""
+    """What one subcircuit (or the top level) defines.
+
+    cards  its element cards; `bound` by number, what those are that every instance reads alike
+    first  by case-folded designator, the first card of that name
+    told   numbers of cards whose problems have been told
+    key    a number no other scope has
+    """
 
     def __init__(self, name: str, header: Line | None, parent: "Scope | None") -> None:
         self.name = name
@@ -41,22 +49,31 @@ class Scope:
         self.models: dict[str, tuple[str, str, Items, Line]] = {}
         self.subcircuits: dict[str, Scope] = {}
         self.notes: tuple[str, ...] = ()
+        self.bound: dict[int, tuple[Element, ...] | Instance] = {}
+        self.first: dict[str, Line] = {}
+        self.told: set[int] = set()
+        self.key = id(self)
         self._items: dict[int, Items] = {}
 
-    def items(self, number: int) -> Items:
+    def items(self, number: int, line: Line) -> Items:
         """Return the items of card `number`, split once however often the scope is expanded.
 
         Raises  CardError
         """
         found = self._items.get(number)
         if found is None:
-            found = self._items[number] = items_of(self.cards[number].text)
+            found = self._items[number] = items_of(line.text)
         return found
 
-    @property
+    @cached_property
+    def keys(self) -> tuple[str, ...]:
+        """The ports as nets are compared."""
+        return tuple(port.casefold() for port in self.ports)
+
+    @cached_property
     def calls(self) -> bool:
         """Tell whether a card of this scope calls a subcircuit."""
-        return any(line.text[:1] in "xX" for line in self.cards)
+        return any(line.text[0] in "xX" for line in self.cards)
 
     def subcircuit(self, name: str) -> "Scope | None":
         """Find a definition from here outwards."""
@@ -103,8 +120,8 @@ class _Sorter:
 
     def take(self, line: Line) -> None:
         text = line.text
-        if not text.startswith("."):
-            if all(self.live):
+        if text[0] != ".":
+            if not self.live or all(self.live):
                 self.stack[-1].cards.append(line)
             return
         word = text[1:].split(None, 1)[0].split("(")[0].lower() if len(text) > 1 else ""
@@ -257,8 +274,9 @@ class _Sorter:
 def sort_deck(deck: Deck) -> Sorted:
     """Sort a deck's lines into scopes."""
     sorter = _Sorter()
+    longest = deck.bounds.line_characters
     for line in deck.lines:
-        if len(line.text) > deck.bounds.line_characters:
+        if len(line.text) > longest:
             sorter.problem(
                 "netlist-bound",
                 f"A card is longer than {deck.bounds.line_characters:,} characters.",

@@ -3,7 +3,7 @@
 import msgspec
 
 
-class Sine(msgspec.Struct, frozen=True, tag=True):
+class Sine(msgspec.Struct, frozen=True, tag=True, gc=False):
     """SIN(offset amplitude frequency delay damping phase): V or A, hertz, seconds, 1/s, degrees."""
 
     offset: float
@@ -14,7 +14,7 @@ class Sine(msgspec.Struct, frozen=True, tag=True):
     phase: float = 0.0
 
 
-class Pulse(msgspec.Struct, frozen=True, tag=True):
+class Pulse(msgspec.Struct, frozen=True, tag=True, gc=False):
     """PULSE(first second delay rise fall width period): V or A, seconds; None where left out."""
 
     first: float
@@ -26,7 +26,7 @@ class Pulse(msgspec.Struct, frozen=True, tag=True):
     period: float | None = None
 
 
-class Exponential(msgspec.Struct, frozen=True, tag=True):
+class Exponential(msgspec.Struct, frozen=True, tag=True, gc=False):
     """EXP(first second rise_delay rise_tau fall_delay fall_tau): V or A, seconds."""
 
     first: float
@@ -37,7 +37,7 @@ class Exponential(msgspec.Struct, frozen=True, tag=True):
     fall_tau: float | None = None
 
 
-class Piecewise(msgspec.Struct, frozen=True, tag=True):
+class Piecewise(msgspec.Struct, frozen=True, tag=True, gc=False):
     """PWL: (seconds, V or A) points in order; `repeat` the time it starts over from, or None."""
 
     points: tuple[tuple[float, float], ...]
@@ -45,7 +45,7 @@ class Piecewise(msgspec.Struct, frozen=True, tag=True):
     delay: float = 0.0
 
 
-class FrequencyModulated(msgspec.Struct, frozen=True, tag=True):
+class FrequencyModulated(msgspec.Struct, frozen=True, tag=True, gc=False):
     """SFFM(offset amplitude carrier index signal): V or A, hertz."""
 
     offset: float
@@ -55,7 +55,7 @@ class FrequencyModulated(msgspec.Struct, frozen=True, tag=True):
     signal: float | None = None
 
 
-class AmplitudeModulated(msgspec.Struct, frozen=True, tag=True):
+class AmplitudeModulated(msgspec.Struct, frozen=True, tag=True, gc=False):
     """AM(amplitude offset modulation carrier delay): the product of two sines, V or A, hertz."""
 
     amplitude: float
@@ -68,7 +68,7 @@ class AmplitudeModulated(msgspec.Struct, frozen=True, tag=True):
 Wave = Sine | Pulse | Exponential | Piecewise | FrequencyModulated | AmplitudeModulated
 
 
-class Source(msgspec.Struct, frozen=True):
+class Source(msgspec.Struct, frozen=True, gc=False):
     """A V or I source.
 
     dc       level for the operating point; None where the card states none (then the wave's

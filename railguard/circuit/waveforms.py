@@ -40,7 +40,29 @@ def read_source(items: Items, number: Callable[[str], float | None]) -> tuple[So
     queue = list(items)
     while queue:
         item = queue.pop(0)
-        if isinstance(item, Assignment):
+        if isinstance(item, str):
+            word = item.lower()
+            if word == "dc":
+                if queue and isinstance(queue[0], str):
+                    text = str(queue.pop(0))
+                    dc = _need(number(text), text)
+            elif word == "ac":
+                ac = (_next(queue, number, 1.0), _next(queue, number, 0.0))
+            elif word in FUNCTIONS:
+                arguments = []
+                while queue and (isinstance(queue[0], Group) or _is_number(queue[0], number)):
+                    arguments.append(queue.pop(0))
+                wave, note = _function(word, _numbers(tuple(arguments), number, word), None)
+                remark = note or remark
+            elif word in ("distof1", "distof2"):
+                _next(queue, number, 0.0)
+                _next(queue, number, 0.0)
+            else:
+                value = number(item)
+                if value is None:
+                    raise SourceError(f'"{item}" is no value of a source')
+                dc = value if dc is None else dc
+        elif isinstance(item, Assignment):
             if item.key == "dc" and isinstance(item.value, str):
                 dc = _need(number(item.value), item.value)
             elif item.key == "ac" and isinstance(item.value, str):
@@ -50,35 +72,11 @@ def read_source(items: Items, number: Callable[[str], float | None]) -> tuple[So
                 stated = dc is not None
             elif item.key not in _IGNORED:
                 remark = f"{item.key}= is passed over"
-            continue
-        if isinstance(item, Call):
+        elif isinstance(item, Call):
             wave, note = _function(item.name, _numbers(item.items, number, item.name), item)
             remark = note or remark
-            continue
-        if isinstance(item, Group):
-            queue[:0] = list(item.items)
-            continue
-        word = item.lower()
-        if word == "dc":
-            if queue and isinstance(queue[0], str):
-                text = str(queue.pop(0))
-                dc = _need(number(text), text)
-        elif word == "ac":
-            ac = (_next(queue, number, 1.0), _next(queue, number, 0.0))
-        elif word in FUNCTIONS:
-            arguments = []
-            while queue and (isinstance(queue[0], Group) or _is_number(queue[0], number)):
-                arguments.append(queue.pop(0))
-            wave, note = _function(word, _numbers(tuple(arguments), number, word), None)
-            remark = note or remark
-        elif word in ("distof1", "distof2"):
-            _next(queue, number, 0.0)
-            _next(queue, number, 0.0)
         else:
-            value = number(item)
-            if value is None:
-                raise SourceError(f'"{item}" is no value of a source')
-            dc = value if dc is None else dc
+            queue[:0] = list(item.items)
     return Source(dc, ac, wave, stated), remark
 
 
@@ -97,9 +95,12 @@ def _next(
     number: Callable[[str], float | None],
     default: float,
 ) -> float:
-    if queue and _is_number(queue[0], number):
-        return _need(number(str(queue.pop(0))), "")
-    return default
+    item = queue[0] if queue else None
+    value = number(item) if isinstance(item, str) else None
+    if value is None:
+        return default
+    del queue[0]
+    return value
 
 
 def _numbers(items: Items, number: Callable[[str], float | None], name: str) -> list[float]:

@@ -12,6 +12,8 @@ from types import MappingProxyType
 
 import msgspec
 
+from railguard.deck.encoding import decode, mend, no_netlist, no_netlist_text
+from railguard.deck.includes import bare, chain_of, find, library_card, section_opened
 from railguard.deck.lines import Line, scan
 from railguard.deck.source import DISK, Files
 from railguard.location import Location
@@ -75,59 +77,6 @@ def deck_from_text(text: str, name: str = "<text>", bounds: Bounds | None = None
     return reader.deck(name, text, hashlib.sha256(text.encode()).hexdigest())
 
 
-_UNREADABLE = (
-    (b"PK\x03\x04", "a zip archive"),
-    (b"\x1f\x8b", "a gzip archive"),
-    (b"%PDF", "a PDF document"),
-    (b"<?xml", "an XML file"),
-    (b"<Binary", "a binary library"),
-    (b"\x7fELF", "a program"),
-    (b"(export", "a board netlist in another format"),
-    (b"(kicad", "a schematic or symbol file"),
-    (b"EESchema", "a schematic or symbol library"),
-    (b"Version 4\r\nSHEET", "a schematic"),
-    (b"Version 4\nSHEET", "a schematic"),
-)
-
-
-def decode(data: bytes) -> tuple[str, str]:
-    """Return a netlist's text and how it was decoded, in words; "" for plain UTF-8 or ASCII."""
-    for mark, codec, words in (
-        (b"\xef\xbb\xbf", "utf-8", ""),
-        (b"\xff\xfe", "utf-16-le", "UTF-16"),
-        (b"\xfe\xff", "utf-16-be", "UTF-16"),
-    ):
-        if data.startswith(mark):
-            return data[len(mark) :].decode(codec, "replace"), words
-    sample = data[:4096]
-    if len(sample) >= 8:
-        odd = sample[1::2].count(0) / max(len(sample[1::2]), 1)
-        even = sample[0::2].count(0) / max(len(sample[0::2]), 1)
-        if odd >= 0.3 and even < 0.05:
-            return data.decode("utf-16-le", "replace"), "UTF-16 without a byte order mark"
-        if even >= 0.3 and odd < 0.05:
-            return data.decode("utf-16-be", "replace"), "UTF-16 without a byte order mark"
-    try:
-        return data.decode("utf-8"), ""
-    except UnicodeDecodeError:
-        # Five bytes are undefined in cp1252; Latin-1 gives them a character all the same.
-        text = "".join(_cp1252(byte) for byte in data)
-        return text, "Windows-1252"
-
-
-def _cp1252(byte: int) -> str:
-    try:
-        return bytes((byte,)).decode("cp1252")
-    except UnicodeDecodeError:
-        return chr(byte)
-
-
-def _looks_binary(text: str) -> bool:
-    head = text[:4096]
-    odd = sum(1 for c in head if ord(c) < 32 and c not in "\t\r\n\f\x0b\x1a")
-    return bool(head) and odd > 0.1 * len(head)
-
-
 class _Reader:
     def __init__(self, bounds: Bounds, root: Path | None, files: Files) -> None:
         self._bounds = bounds
@@ -140,11 +89,10 @@ class _Reader:
         self._files: list[str] = []
         self._texts: dict[str, str] = {}
         self._hash = hashlib.sha256()
-        self._top = Path()
+        self._title = ""
 
     def main(self, path: Path) -> Deck:
         name = str(path)
-        self._top = path.parent
         try:
             if not self._from.is_file(path):
                 what = self._missing(path)
@@ -159,15 +107,11 @@ class _Reader:
                 f"{name} is larger than the {limit:,} bytes a netlist may have.",
                 "Raise the bound if this really is a netlist.",
             )
-        for start, words in _UNREADABLE:
-            if data.lstrip()[:32].startswith(start):
-                return self._refuse(
-                    name, f"{name} is {words}, not a SPICE netlist.", "Export a SPICE netlist."
-                )
         text, how = decode(data)
-        if _looks_binary(text):
+        what = no_netlist(data) or no_netlist_text(text)
+        if what:
             return self._refuse(
-                name, f"{name} is a binary file, not a SPICE netlist.", "Export a SPICE netlist."
+                name, f"{name} is {what}, not a SPICE netlist.", "Export a SPICE netlist."
             )
         if how:
             self._remarks.append(Remark(f"{name} was read as {how}.", Location(name, 1)))
@@ -178,12 +122,14 @@ class _Reader:
         self._files.append(name)
         if not text.strip("\x1a\x00 \t\r\n"):
             return self._refuse(name, f"{name} is empty.", "Export the netlist again.")
-        title = self._take(
-            text, name, titled=not _is_library(name, text), chain=(path,), section=""
-        )
+        titled = not _is_library(name, text)
+        if not titled:
+            told = f"{name} was read as a library: its first line is a card and no title."
+            self._remarks.append(Remark(told, Location(name, 1)))
+        self._take(text, name, titled, chain=(path,), section="")
         return Deck(
             path=name,
-            title=title,
+            title=self._title,
             lines=tuple(self._lines),
             directives=tuple(self._directives),
             problems=tuple(self._problems),
@@ -213,11 +159,11 @@ class _Reader:
 
     def _take(
         self, text: str, name: str, titled: bool, chain: tuple[Path | None, ...], section: str
-    ) -> str:
-        if "\x00" in text:
-            text = text.replace("\x00", "")
-            self._problem("netlist-encoding", f"{name} holds NUL bytes; they are left out.", name)
-        text = text.rstrip("\x1a")
+    ) -> None:
+        mended = mend(text)
+        for what, at in mended.found:
+            self._problem("netlist-encoding", f"{name} holds {what}.", name, line=at)
+        text = mended.text.rstrip("\x1a")
         self._texts[name] = text
         scanned = scan(text, name, titled)
         self._directives += scanned.directives
@@ -230,8 +176,9 @@ class _Reader:
                 name,
                 "Put a title line before it.",
             )
+        if titled:
+            self._title = scanned.title
         self._follow(scanned.lines, chain, section)
-        return scanned.title
 
     def _problem(self, rule: str, message: str, name: str, remedy: str = "", line: int = 1) -> None:
         self._problems.append(
@@ -241,60 +188,91 @@ class _Reader:
     def _follow(
         self, lines: tuple[Line, ...], chain: tuple[Path | None, ...], section: str
     ) -> None:
-        block = ""
+        keep = self._lines.append
         wanted = not section
+        block: Line | None = None
+        closing = ""
         for index, line in enumerate(lines):
-            word = _word(line.text)
-            if block:
-                block = "" if word in _BLOCKS[block] else block
+            if line.text[0] != ".":
+                if wanted and block is None:
+                    keep(line)
                 continue
-            if section:
-                if word == ".lib" and len(line.text.split()) == 2:
-                    wanted = _bare(line.text.split()[1]).lower() == section
-                    continue
-                if word == ".endl":
-                    wanted = False
-                    continue
-            if not wanted:
+            word = line.text.split(None, 1)[0].lower()
+            if block is not None:
+                block = None if word == closing else block
+            elif word == ".lib" and (opened := self._section(lines, index, section)):
+                wanted = opened == section
+                if not section:
+                    self._remarks.append(
+                        Remark(f"No card asks for the section {opened} of {line.file}; "
+                               "it is left out.", line.location)
+                    )  # fmt: skip
+            elif word == ".endl":
+                wanted = not section
+            elif not wanted:
                 continue
-            if word in _BLOCKS:
-                block = word
+            elif word in _BLOCKS:
+                block, closing = line, _BLOCKS[word]
             elif word == ".end":
-                rest = len(lines) - index - 1
-                if rest and len(chain) == 1:
-                    self._problem(
-                        "netlist-end",
-                        f"{rest} card{'s' if rest > 1 else ''} behind .end are not read.",
-                        line.file,
-                        "Move them before .end.",
-                        lines[index + 1].location.line,
-                    )
+                self._ended(lines, index, chain)
                 return
-            elif word in (".include", ".inc", ".incl"):
-                self._include(line, line.text.split(None, 1)[1:], chain, "")
+            elif word in _INCLUDES:
+                self._include(line, bare(line.text[len(word) :]), chain, "")
             elif word == ".lib":
-                self._library(line, chain)
-            elif word != ".endl":
-                self._lines.append(line)
+                target, named = library_card(line.text)
+                self._include(line, target, chain, named)
+            elif word == ".title":
+                self._title = line.text[len(word) :].strip()
+            else:
+                keep(line)
+        if block is not None and closing != ".end":
+            self._problem(
+                "netlist-end",
+                f"{block.text.split()[0]} is not closed by {closing}; nothing behind it is read.",
+                block.file,
+                f"Put {closing} behind its last line.",
+                block.number,
+            )
 
-    def _library(self, line: Line, chain: tuple[Path | None, ...]) -> None:
-        parts = re.findall(r"\"[^\"]*\"|'[^']*'|\S+", line.text)[1:]
-        if not parts:
-            return
-        if len(parts) == 1:
-            self._include(line, parts, chain, "")
-        else:
-            self._include(line, [" ".join(parts[:-1])], chain, _bare(parts[-1]).lower())
+    @staticmethod
+    def _section(lines: tuple[Line, ...], index: int, asked: str) -> str:
+        """Return the section a `.lib name` card opens; "" where it names a file to be read.
+
+        In a file that is read for one section every such card opens one; elsewhere it does where
+        `.endl` closes it before the next.
+        """
+        name = section_opened(lines[index].text)
+        if not name or asked:
+            return name
+        for line in lines[index + 1 :]:
+            word = line.text[:5].lower()
+            if word == ".endl":
+                return name
+            if word[:4] == ".lib" and section_opened(line.text):
+                return ""
+        return ""
+
+    def _ended(self, lines: tuple[Line, ...], index: int, chain: tuple[Path | None, ...]) -> None:
+        rest = len(lines) - index - 1
+        if rest and len(chain) == 1:
+            self._problem(
+                "netlist-end",
+                f"{rest} card{'s' if rest > 1 else ''} behind .end are not read.",
+                lines[index].file,
+                "Move them before .end.",
+                lines[index + 1].number,
+            )
 
     def _include(
-        self, line: Line, named: list[str], chain: tuple[Path | None, ...], section: str
+        self, line: Line, target: str, chain: tuple[Path | None, ...], section: str
     ) -> None:
-        target = _bare(named[0]) if named else ""
         place = line.location
         if not target:
-            self._problem("netlist-include", "An include names no file.", line.file, "", place.line)
+            self._problem(
+                "netlist-include", "An include names no file.", line.file, "", line.number
+            )
             return
-        told = _chain(chain, line.file)
+        told = chain_of(chain, line.file)
         if self._root is None or chain[-1] is None:
             self._lost(
                 place, f"{target} is not read: a text has no folder to look in.{told}", target
@@ -304,23 +282,20 @@ class _Reader:
             self._problems.append(
                 Problem(
                     rule="netlist-bound",
-                    message=f"At {target} includes go deeper than {self._bounds.include_depth}.",
+                    message=f"At {target} includes go deeper than {self._bounds.include_depth}."
+                    f"{told}",
                     remedy="Raise the bound if this is meant.",
                     location=place,
                 )
             )
             return
-        found = _find(self._from, chain[-1].parent, target)
-        if found is None:
-            self._lost(place, f"{target} is not there.{told}", target)
+        found = find(self._from, chain[-1].parent, target, self._root)
+        if isinstance(found, str):
+            self._lost(place, f"{target} {found}.{told}", target)
             return
-        real = self._from.real(found)
-        if not real.is_relative_to(self._root):
-            self._lost(
-                place, f"{target} lies outside the deck's folder and is not read.{told}", target
-            )
-            return
-        if any(step is not None and self._from.real(step) == real for step in chain):
+        if any(
+            step is not None and self._from.real(step) == self._from.real(found) for step in chain
+        ):
             self._lost(place, f"{target} includes itself.{told}", target)
             return
         self._open(found, place, target, chain, section, told)
@@ -344,8 +319,9 @@ class _Reader:
             return
         text, how = decode(data)
         name = str(found)
-        if _looks_binary(text) or any(data.lstrip()[:32].startswith(s) for s, _ in _UNREADABLE):
-            self._lost(place, f"{target} is no readable netlist.{told}", target)
+        what = no_netlist(data) or no_netlist_text(text)
+        if what:
+            self._lost(place, f"{target} is {what}, no netlist.{told}", target)
             return
         if how:
             self._remarks.append(Remark(f"{name} was read as {how}.", Location(name, 1)))
@@ -368,15 +344,17 @@ class _Reader:
         )
 
 
+_INCLUDES = frozenset({".include", ".inc", ".incl"})
 _BLOCKS = {
-    ".control": (".endc",),
-    ".data": (".enddata",),
-    ".machine": (".endmachine",),
-    ".aliases": (".endaliases",),
-    ".exec": (".endc",),
-    ".verilog": (".endv",),
-    ".alter": (".end",),
+    ".control": ".endc",
+    ".data": ".enddata",
+    ".machine": ".endmachine",
+    ".aliases": ".endaliases",
+    ".exec": ".endc",
+    ".verilog": ".endv",
+    ".alter": ".end",
 }
+"""Blocks that hold no cards, and what closes them."""
 _CARD = re.compile(r"(?i)^[RCLVIEGFHDQJMX]\S*\s+\S+\s+\S+\s+[\d.+-]")
 
 
@@ -385,49 +363,9 @@ def _is_card(title: str) -> bool:
     return bool(_CARD.match(title)) and len(title.split()) <= 6
 
 
-def _word(text: str) -> str:
-    return text.split(None, 1)[0].lower() if text.startswith(".") else ""
-
-
-def _bare(word: str) -> str:
-    word = word.strip()
-    if len(word) >= 2 and word[0] == word[-1] and word[0] in "\"'":
-        return word[1:-1].strip()
-    return word
-
-
 def _is_library(name: str, text: str) -> bool:
     suffix = PurePosixPath(name.replace("\\", "/")).suffix.lower()
     if suffix in (".lib", ".mod", ".sub", ".subckt", ".inc", ".model", ".mdl"):
         return True
     first = text.lstrip("\ufeff").split("\n", 1)[0].strip().lower()
     return first.startswith((".subckt", ".model", ".param", ".lib"))
-
-
-def _find(files: Files, folder: Path, target: str) -> Path | None:
-    """Find an included file: as written, with Windows separators, in another case."""
-    plain = target.replace("\\", "/")
-    if re.match(r"^[A-Za-z]:", plain) or plain.startswith("//"):
-        return None
-    direct = folder / plain
-    if files.is_file(direct):
-        return direct
-    at = folder if not plain.startswith("/") else Path("/")
-    for part in PurePosixPath(plain).parts:
-        if part in ("/", "."):
-            continue
-        if part == "..":
-            at = at.parent
-            continue
-        if not files.is_dir(at):
-            return None
-        hit = next((name for name in files.names(at) if name.lower() == part.lower()), None)
-        if hit is None:
-            return None
-        at = at / hit
-    return at if files.is_file(at) else None
-
-
-def _chain(chain: tuple[Path | None, ...], file: str) -> str:
-    names = [step.name for step in chain if step is not None]
-    return f" It is included by {' which is included by '.join(reversed(names)) or file}."

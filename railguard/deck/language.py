@@ -6,6 +6,7 @@ folder; never in a shared one, because it is unpickled when read.
 
 import hashlib
 import os
+import re
 import sys
 from functools import lru_cache
 from importlib.resources import files
@@ -22,6 +23,30 @@ def grammar_text(name: str) -> str:
     if not place.is_file():
         return (Path(__file__).resolve().parents[2] / "grammar" / name).read_text(encoding="utf-8")
     return place.read_text(encoding="utf-8")
+
+
+_TERMINAL = re.compile(r"^([A-Z]+)(?:\.\d+)?: (.+)$", re.MULTILINE)
+_PART = re.compile(r"/((?:\\.|[^/\\])+)/(i?)|\"((?:\\.|[^\"\\])+)\"|([A-Z]+)")
+
+
+@lru_cache(maxsize=4)
+def terminals(name: str) -> dict[str, str]:
+    """Return the patterns of a grammar file's terminals, so that faster paths are made of them.
+
+    A terminal may be patterns, quoted words and other terminals, one of which has to fit.
+    """
+    written = dict(_TERMINAL.findall(grammar_text(name)))
+
+    def pattern(terminal: str) -> str:
+        parts = []
+        for regular, flag, word, other in _PART.findall(written[terminal]):
+            if regular:
+                parts.append(f"(?i:{regular})" if flag else regular)
+            else:
+                parts.append(re.escape(word.replace("\\\\", "\\")) if word else pattern(other))
+        return f"(?:{'|'.join(parts)})"
+
+    return {terminal: pattern(terminal) for terminal in written}
 
 
 @lru_cache(maxsize=4)

@@ -6,52 +6,56 @@ blank, so no word runs over two lines.
 
 import bisect
 import re
-from collections.abc import Iterator
+import sys
 
 import msgspec
 
 from railguard.location import Location
 from railguard.notices import Problem, Remark
 
-_LINE_END = re.compile(r"\r\n|\n|\r")
 _DIRECTIVE = re.compile(r"^\*\s*railguard\s*:\s*(.*)$", re.IGNORECASE)
 _PIN_NAMES = re.compile(r";\s*§pnba\s+(.*)$")
 _COMMENT = re.compile(r";|(?:(?<=[\s,])|^)\$(?=\s|$)|(?:(?<=\s)|^)//")
-_FILE_CARD = re.compile(r"^\s*\.(?:inc|include|lib)\b", re.IGNORECASE)
-
+_FILE_CARD = re.compile(r"^\s*\.(?:incl?|include|lib)\b", re.IGNORECASE)
+_HEADER = (".s", ".S", ".m", ".M")
+_MARKS = (";", "$", "//", "\\\\")
+_LETTERS = frozenset("ABCDEFGHIJKLMNOPQRSTUVWXYZabcdefghijklmnopqrstuvwxyz")
 
 LADDER = 16
-"""Comment lines kept on either side of a card: no connection ladder is longer."""
+"""Comment lines kept on either side of a header: no connection ladder is longer."""
 
 
-class Line(msgspec.Struct, frozen=True):
+class Line(msgspec.Struct, frozen=True, gc=False):
     """One logical line.
 
     text      the joined pieces, comments removed
-    starts    offsets in `text` at which each piece begins
-    places    (line, column) of each piece's first character
+    number    physical line of its first character, from 1
+    column    column of its first character, from 1
+    pieces    of a continued card: (offset in `text`, line, column) of every piece behind the first
     note      pin names written behind the card (`;§pnba`), or ""
-    comments  lines above and below the card, for connection ladders
+    comments  of a subcircuit's header: the lines above and below it, for connection ladders
     """
 
     file: str
     text: str
-    starts: tuple[int, ...]
-    places: tuple[tuple[int, int], ...]
+    number: int
+    column: int = 1
+    pieces: tuple[tuple[int, int, int], ...] = ()
     note: str = ""
     comments: tuple[str, ...] = ()
 
     def at(self, offset: int = 0, length: int = 0) -> Location:
         """Return the place of a character of `text`."""
-        piece = bisect.bisect_right(self.starts, offset) - 1
-        line, column = self.places[piece]
-        return Location(self.file, line, column + offset - self.starts[piece], length)
+        start, number, column = 0, self.number, self.column
+        piece = bisect.bisect_right(self.pieces, (offset, sys.maxsize, 0))
+        if piece:
+            start, number, column = self.pieces[piece - 1]
+        return Location(self.file, number, column + offset - start, length)
 
     @property
     def location(self) -> Location:
         """The place of the whole card."""
-        line, column = self.places[0]
-        return Location(self.file, line, column, len(self.text))
+        return Location(self.file, self.number, self.column, len(self.text))
 
 
 class Scanned(msgspec.Struct, frozen=True):
@@ -66,7 +70,9 @@ class Scanned(msgspec.Struct, frozen=True):
 
 def physical_lines(text: str) -> list[str]:
     """Split at CRLF, LF and lone CR only; other separators belong to names and comments."""
-    return _LINE_END.split(text)
+    if "\r" in text:
+        text = text.replace("\r\n", "\n").replace("\r", "\n")
+    return text.split("\n")
 
 
 def strip_comment(text: str) -> str:
@@ -94,74 +100,73 @@ class _Assembler:
         self.directives: list[tuple[str, Location]] = []
         self.problems: list[Problem] = []
         self.remarks: list[Remark] = []
-        self._pieces: list[str] = []
-        self._places: list[tuple[int, int]] = []
-        self._note = ""
-        self._above: list[str] = []
-        self._comments: list[str] = []
-        self._open = False
+        self.comments: dict[int, list[str]] = {}
+        self._more: list[tuple[str, int, int]] = []
+        self.open = False
 
     def comment(self, text: str, number: int) -> None:
         found = _DIRECTIVE.match(text.strip())
         if found is not None:
             self.directives.append((found[1], Location(self.file, number, 1, len(text))))
-        self._comments.append(text.strip().lstrip("*").strip())
+        before = self.comments.setdefault(len(self.done), [])
+        before.append(text.strip().lstrip("*").strip())
 
     def card(self, text: str, number: int, column: int, note: str) -> None:
-        self.flush()
-        # Comments between two cards may speak of either: a connection ladder stands above its
-        # header as often as below.
-        self._above, self._comments = self._comments, []
-        self._pieces, self._places, self._note, self._open = [text], [(number, column)], note, True
+        if self._more:
+            self.join()
+        self.done.append(Line(self.file, text, number, column, (), note))
+        self.open = _FILE_CARD.match(text) is None
 
     def more(self, text: str, number: int, column: int) -> None:
-        if not self._open:
-            self.problems.append(
-                Problem(
-                    rule="netlist-continuation",
-                    message=f"A continuation (+) on line {number} has no card before it.",
-                    remedy="Put the + behind the card it continues.",
-                    location=Location(self.file, number, column, len(text)),
-                )
+        if not self.open:
+            self._problem(
+                f"A continuation (+) on line {number} has no card before it.",
+                "Put the + behind the card it continues.",
+                Location(self.file, number, column, len(text)),
             )
-            return
-        if text.lstrip().startswith("*"):
-            self.problems.append(
-                Problem(
-                    rule="netlist-continuation",
-                    message=f"Line {number} continues a card with a comment (+*); it is left out.",
-                    remedy="Start a comment line with * alone.",
-                    location=Location(self.file, number, column, len(text)),
-                )
+        elif text.startswith("*"):
+            self._problem(
+                f"Line {number} continues a card with a comment (+*); it is left out.",
+                "Start a comment line with * alone.",
+                Location(self.file, number, column, len(text)),
             )
-            return
-        if text:
-            self._pieces.append(text)
-            self._places.append((number, column))
+        elif text:
+            self._more.append((text, number, column))
 
-    def close(self) -> None:
-        """End the current card so that nothing can continue it."""
-        self.flush()
-        self._open = False
-
-    def flush(self) -> None:
-        if not self._pieces:
-            return
-        starts, at = [], 0
-        for piece in self._pieces:
-            starts.append(at)
-            at += len(piece) + 1
-        self.done.append(
-            Line(
-                self.file,
-                " ".join(self._pieces),
-                tuple(starts),
-                tuple(self._places),
-                self._note,
-                (*self._above[-LADDER:], *self._comments[:LADDER]),
-            )
+    def _problem(self, message: str, remedy: str, place: Location) -> None:
+        self.problems.append(
+            Problem(rule="netlist-continuation", message=message, remedy=remedy, location=place)
         )
-        self._pieces, self._places, self._note = [], [], ""
+
+    def join(self) -> None:
+        """Put the continuations that were met behind their card."""
+        if not self._more:
+            return
+        last = self.done[-1]
+        texts, pieces, at = [last.text], [], len(last.text) + 1
+        for text, number, column in self._more:
+            texts.append(text)
+            pieces.append((at, number, column))
+            at += len(text) + 1
+        self.done[-1] = Line(
+            self.file, " ".join(texts), last.number, last.column, tuple(pieces), last.note
+        )
+        self._more = []
+
+    def finish(self) -> tuple[Line, ...]:
+        """Return the logical lines; headers of subcircuits get the comments round them.
+
+        Comments between two cards may speak of either: a connection ladder stands above its header
+        as often as below.
+        """
+        self.join()
+        for at in range(len(self.done)) if self.comments else ():
+            line = self.done[at]
+            if line.text.startswith(_HEADER):
+                above, below = self.comments.get(at, []), self.comments.get(at + 1, [])
+                round_it = (*above[-LADDER:], *below[:LADDER])
+                self.done[at] = msgspec.structs.replace(line, comments=round_it)
+        return tuple(self.done)
 
 
 def scan(text: str, file: str, titled: bool) -> Scanned:
@@ -171,50 +176,53 @@ def scan(text: str, file: str, titled: bool) -> Scanned:
     """
     build = _Assembler(file)
     raw = physical_lines(text)
-    title, first = "", 0
-    if titled and raw:
-        title, first = raw[0].strip(), 1
-        word = title.split(None, 1)[0].lower() if title else ""
-        if word.startswith(".") and word != ".title":
-            title, first = "", 0
-        elif word.startswith("*"):
-            build.comment(title, 1)
-            title = title.lstrip("*").strip()
-        elif word == ".title":
-            title = title[len(".title") :].strip()
-    joined = ""
-    for number, line in _numbered(raw, first):
-        stripped = line.lstrip()
-        if joined and stripped:
-            build.more(strip_comment(line).strip(), number, len(line) - len(stripped) + 1)
-            joined = ""
+    title, first = _title(raw[0], build) if titled else ("", 0)
+    marked = any(mark in text for mark in _MARKS)
+    joined = False
+    for number, line in enumerate(raw[first:], first + 1):
+        # Most lines are whole cards without any comment: nothing to look at but the letter.
+        if (
+            line[:1] in _LETTERS
+            and not joined
+            and not (marked and any(mark in line for mark in _MARKS))
+        ):
+            build.card(line.rstrip(), number, 1, "")
             continue
+        stripped = line.lstrip()
         if not stripped:
             continue
-        head = stripped[0]
-        if head in "*#":
+        column = len(line) - len(stripped) + 1
+        if joined:
+            joined = False
+            stripped = f"+{stripped}"
+            column -= 1
+        if stripped[0] in "*#":
             build.comment(stripped, number)
             continue
-        note = _PIN_NAMES.search(stripped)
-        body = strip_comment(stripped)
-        column = len(line) - len(stripped) + 1
-        if body.rstrip().endswith("\\\\"):
-            body, joined = body.rstrip()[:-2], "more"
-        if head == "+":
+        note = _PIN_NAMES.search(stripped) if marked else None
+        body = (strip_comment(stripped) if marked else stripped).rstrip()
+        if marked and body.endswith("\\\\"):
+            body, joined = body[:-2].rstrip(), True
+        if body[:1] == "+":
             rest = body[1:]
-            indent = len(rest) - len(rest.lstrip())
-            build.more(rest.strip(), number, column + 1 + indent)
-        elif body.strip():
-            build.card(body.rstrip(), number, column, note[1] if note else "")
-            if _FILE_CARD.match(body):
-                build.close()
-    build.flush()
+            build.more(rest.strip(), number, column + 1 + len(rest) - len(rest.lstrip()))
+        elif body:
+            build.card(body, number, column, note[1] if note else "")
     return Scanned(
-        title, tuple(build.done), tuple(build.directives), tuple(build.problems),
+        title, build.finish(), tuple(build.directives), tuple(build.problems),
         tuple(build.remarks),
     )  # fmt: skip
 
 
-def _numbered(raw: list[str], first: int) -> Iterator[tuple[int, str]]:
-    for index in range(first, len(raw)):
-        yield index + 1, raw[index]
+def _title(line: str, build: _Assembler) -> tuple[str, int]:
+    """Return a main deck's title and how many lines it takes: none where it is a dot card."""
+    title = line.strip()
+    word = title.split(None, 1)[0].lower() if title else ""
+    if word == ".title":
+        return title[len(".title") :].strip(), 1
+    if word.startswith("."):
+        return "", 0
+    if word.startswith("*"):
+        build.comment(title, 1)
+        return title.lstrip("*").strip(), 1
+    return title, 1

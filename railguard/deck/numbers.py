@@ -6,6 +6,7 @@ Source  Berkeley SPICE3 user's manual, circuit description; IEC 60062:2016 for v
 """
 
 import re
+from functools import lru_cache
 
 import msgspec
 
@@ -40,7 +41,7 @@ _CODES = {
 }  # fmt: skip
 
 
-class Number(msgspec.Struct, frozen=True):
+class Number(msgspec.Struct, frozen=True, gc=False):
     """A number as read.
 
     value   what its author most likely meant, SI
@@ -53,6 +54,7 @@ class Number(msgspec.Struct, frozen=True):
     trap: str = ""
 
 
+@lru_cache(maxsize=16384)
 def read_number(text: str, letter: str = "") -> Number | None:
     """Read one number; None where the text is none.
 
@@ -72,6 +74,13 @@ def read_number(text: str, letter: str = "") -> Number | None:
     base = float(f"{found['sign']}{found['digits']}e{found['exponent'] or 0}")
     factor, rest = _scale(tail)
     return _trapped(base, factor, tail, rest, letter)
+
+
+@lru_cache(maxsize=16384)
+def plain_number(text: str, letter: str) -> float | None:
+    """Return the value of a number that has one reading; None of any other."""
+    number = read_number(text, letter)
+    return number.value if number is not None and not number.trap else None
 
 
 def _scale(tail: str) -> tuple[float, str]:

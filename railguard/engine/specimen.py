@@ -57,7 +57,7 @@ def specimen(deck: Deck, name: str, pins: tuple[str, ...] = ()) -> Specimen:
     for place, pin in zip(places, PINS, strict=True):
         nets[place] = pin
     card = f"{_INSTANCE} {' '.join(nets)} {found.name}"
-    line = Line(deck.path, card, (0,), ((1, 1),))
+    line = Line(deck.path, card, 1)
     circuit = flatten(msgspec.structs.replace(deck, lines=(*deck.lines, line)))
     inside = [e for e in circuit.elements if e.designator.startswith(f"{_INSTANCE}.")]
     if not inside:

@@ -3,7 +3,7 @@
 import re
 
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from railguard.deck.cards import (
@@ -13,8 +13,8 @@ from railguard.deck.cards import (
     Group,
     items_of,
     parse_items,
-    word_terminal,
 )
+from railguard.deck.language import terminals
 
 WORDS = st.from_regex(r"[A-Za-z0-9_.+\-/#:$<>~!*&@%^]{1,12}", fullmatch=True)
 
@@ -26,10 +26,34 @@ def test_fast_path_equals_the_grammar(words):
     assert items_of(text) == parse_items(text)
 
 
+CARDS = st.text(alphabet="RXab1k.-_/ \t,=(){}[]'\"*+$:;é", max_size=40)
+SPLIT = (
+    "R1 a 0 1k Net-(U1-Pad3) net_(a) sin( ( ) {a*b} {x{y} {{a}} [0] a[1] r=1k tc=1m,2u , == a=b=c "
+    "table=(0,0,10,20) § /s/(a)b -( x(y=1) % é"
+)
+WHOLE = ("SIN (", "'v(a) * 2'", '"a b"', "[a b]", "r =", "= 2k", "ic = {1}")
+PIECES = st.lists(st.sampled_from([*SPLIT.split(), *WHOLE]), max_size=10)
+
+
+def outcome(read, text):
+    """Return the items of a card, or that the card is refused, and where."""
+    try:
+        return read(text)
+    except CardError as error:
+        return error.reason, error.at
+
+
+@settings(max_examples=500, deadline=None)
+@given(CARDS | st.builds(" ".join, PIECES) | st.builds("".join, PIECES))
+def test_tokens_equal_the_grammar(text):
+    """Any card, sound or broken, is the same by tokens and by the grammar."""
+    assert outcome(items_of, text) == outcome(parse_items, text)
+
+
 @given(WORDS)
 def test_fast_path_words_are_the_grammars_words(word):
     """Every word the fast path takes is one word of the grammar's terminal."""
-    assert re.fullmatch(word_terminal(), word)
+    assert re.fullmatch(terminals("spice.lark")["WORD"], word)
 
 
 @pytest.mark.parametrize(
