@@ -141,7 +141,9 @@ class Network:
             )
         for element in later:
             self._stamp_current_controlled(element)
-        self.size = self._next
+        if not self._next:  # everything is tied to ground: one unknown, zero, keeps the algebra
+            self._g.append((0, 0, 1.0))
+        self.size = max(self._next, 1)
         self.floating = self._find_floating()
         self.g = _dense(self._g, self.size)
         self.c = _dense(self._c, self.size)

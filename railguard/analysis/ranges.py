@@ -215,8 +215,9 @@ def _tone(network: Network, tone: Tone, rows: Index, factors: dict[float, Factor
     up = down = peaks
     if tone.wave is not None:
         followed = excursion(network, tone.drives[0][0], tone.wave, tone.mean)
-        up, down = picked(followed.up, rows), picked(followed.down, rows)
-        peaks, slew = np.maximum(up, down), picked(followed.slew, rows)
+        if followed is not None:  # else its phasor stands, as for a sine in such a circuit
+            up, down = picked(followed.up, rows), picked(followed.down, rows)
+            peaks, slew = np.maximum(up, down), picked(followed.slew, rows)
     return ToneAnswer(
         tone=tone, up=up, down=down, peaks=peaks, hertz=frequencies[best], slew=slew, worst=worst
     )

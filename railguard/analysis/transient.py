@@ -126,10 +126,13 @@ def _window(wave: Wave) -> tuple[float, float]:
             return PERIODS / (wave.frequency or 1.0), 1 / (32 * (wave.frequency or 1.0))
 
 
-def excursion(network: Network, injection: str, wave: Wave, mean: float) -> Excursion:
+def excursion(network: Network, injection: str, wave: Wave, mean: float) -> Excursion | None:
     """Follow one source's wave through the network.
 
     mean  the level the wave is superposed on, V or A
+
+    Returns None where the answer grows without end: a circuit held by positive feedback has no
+    linear response in time.
 
     Raises  SolveError
     """
@@ -143,10 +146,13 @@ def excursion(network: Network, injection: str, wave: Wave, mean: float) -> Excu
     solve, history = transient_factor(network, step)
     x = solve.steady(b * drive[0])
     highest, lowest, steepest = x.copy(), x.copy(), np.zeros(network.size)
-    for n in range(1, count + 1):
-        new = solve.step(history @ x + b * drive[n])
-        np.maximum(steepest, np.abs(new - x), out=steepest)
-        np.maximum(highest, new, out=highest)
-        np.minimum(lowest, new, out=lowest)
-        x = new
+    with np.errstate(over="ignore", invalid="ignore"):
+        for n in range(1, count + 1):
+            new = solve.step(history @ x + b * drive[n])
+            np.maximum(steepest, np.abs(new - x), out=steepest)
+            np.maximum(highest, new, out=highest)
+            np.minimum(lowest, new, out=lowest)
+            x = new
+    if not np.all(np.isfinite(steepest)) or not np.all(np.isfinite(highest - lowest)):
+        return None
     return Excursion(np.maximum(highest, 0.0), np.maximum(-lowest, 0.0), steepest / step)

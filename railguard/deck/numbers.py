@@ -5,6 +5,7 @@ Where SPICE reads a number otherwise than its author most likely meant, both rea
 Source  Berkeley SPICE3 user's manual, circuit description; IEC 60062:2016 for values such as 4k7
 """
 
+import math
 import re
 from functools import lru_cache
 
@@ -56,10 +57,15 @@ class Number(msgspec.Struct, frozen=True, gc=False):
 
 @lru_cache(maxsize=16384)
 def read_number(text: str, letter: str = "") -> Number | None:
-    """Read one number; None where the text is none.
+    """Read one number; None where the text is none, or is beyond what a computer holds.
 
     letter  the element it is the value of: R, C, L, V or I; decides what `1M` or `1F` means
     """
+    number = _read(text, letter)
+    return number if number is not None and math.isfinite(number.value) else None
+
+
+def _read(text: str, letter: str) -> Number | None:
     found = _NUMBER.match(text)
     if found is None:
         return _coded(text, letter)

@@ -6,6 +6,7 @@ that was not worked out is null.
 """
 
 import math
+import re
 from pathlib import Path, PurePath
 from typing import Literal
 
@@ -205,7 +206,18 @@ def document(review: Review, root: Path | None = None) -> bytes:
         ),
         designs=[_design(design, review, base) for design in review.designs],
     )
-    return msgspec.json.format(_encoded(out), indent=1) + b"\n"
+    return _escaped(msgspec.json.format(_encoded(out), indent=1)) + b"\n"
+
+
+_STEERING = re.compile("[\x7f-\x9f\u200b-\u200f\u2028-\u202e\u2060-\u206f\ufeff]")
+"""Beyond JSON's own escapes: what would steer a terminal the report is printed on."""
+
+
+def _escaped(data: bytes) -> bytes:
+    """Write steering characters as JSON escapes; outside strings JSON has none of them."""
+    if data.isascii() and b"\x7f" not in data:
+        return data
+    return _STEERING.sub(lambda found: f"\\u{ord(found[0]):04x}", data.decode()).encode()
 
 
 def _encoded(out: Document) -> bytes:
