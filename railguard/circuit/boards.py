@@ -42,6 +42,13 @@ def component(names: Names, name: str, rest: Items, line: Line, kind: str) -> li
         raise names.unbound((name, *rest), line, "netlist-card", f"{name} has no nodes")
     value = words[-1]
     nets = tuple(words[:-1]) if len(words) > 1 else tuple(words)
+    if kind in ("battery", "diode"):
+        if len(words) < 2:
+            raise names.unbound(
+                (name, *rest), line, "netlist-node-count", f"{name} has two nodes; found one"
+            )
+        if len(words) == 2:
+            nets, value = tuple(words), ""
     fitted = not not_fitted(value)
     if kind == "pot" and len(words) >= 4:
         ohms = names.number(words[3], "R")

@@ -25,7 +25,9 @@ ROUND = 200
 """Examples between two looks at the clock."""
 
 
-def tried(strategy: SearchStrategy[bytes], seconds: float, first: int, keep: Path) -> tuple[int, int]:
+def tried(
+    strategy: SearchStrategy[bytes], seconds: float, first: int, keep: Path
+) -> tuple[int, int]:
     """Return how many decks were tried and how many rounds failed."""
     count, failed, number = 0, 0, first
     end = time.monotonic() + seconds
@@ -71,7 +73,9 @@ def main() -> None:
     asked = parser.parse_args()
     for name, strategy in KINDS.items():
         begun = time.process_time()
-        count, failed = tried(strategy, asked.seconds / len(KINDS), asked.seed * 1_000_000, asked.keep)
+        count, failed = tried(
+            strategy, asked.seconds / len(KINDS), asked.seed * 1_000_000, asked.keep
+        )
         spent = time.process_time() - begun
         print(f"{name:14} {count:8} tried  {failed:3} rounds failed  {spent:7.0f} s of CPU")
 

@@ -1,0 +1,22 @@
+"""Decks that once broke a review, each kept as it was found."""
+
+import pytest
+
+from tests.fuzz.hold import hold
+
+FOUND = {
+    "everything on ground": "gauge\nX1 0 0 0 0 0 TL072\n",
+    "a value beyond what a computer holds": "gauge\nR1 0 0 10k\nR2 0 n1 1e400\nL1 n1 0\n" * 3,
+    "an answer in time without end": (
+        "stage\nVIN in 0 PULSE(0 5 0 1n 1n 1m 2m)\nR1 in m 1\nR2 m out 1\nC2 m out 0.0001\n"
+        "R3 p 0 1e+05\nXU1 m p vp vn out TL072\nRL out 0 1\nVP vp 0 12\nVN vn 0 -12\nR9 out p 10k\n"
+    ),
+    "a battery of one node": "gauge\nb x.lib\nb2 x.lib tt\nX1 0 0 0 0 0 TL072\n",
+    "characters that steer a terminal": "gauge\nR1\x9b31m a \u202eb 1k\nX1 a b c d \u2066e NO_SUCH\n",
+}
+
+
+@pytest.mark.parametrize("deck", FOUND.values(), ids=FOUND)
+def test_found(deck, tmp_path):
+    """It is reviewed like any other."""
+    assert hold(deck.encode(), tmp_path).designs
