@@ -12,7 +12,7 @@ FOUND = {
         "R3 p 0 1e+05\nXU1 m p vp vn out TL072\nRL out 0 1\nVP vp 0 12\nVN vn 0 -12\nR9 out p 10k\n"
     ),
     "a battery of one node": "gauge\nb x.lib\nb2 x.lib tt\nX1 0 0 0 0 0 TL072\n",
-    "characters that steer a terminal": "gauge\nR1\x9b31m a \u202eb 1k\nX1 a b c d \u2066e NO_SUCH\n",
+    "steering characters": "gauge\nR1\x9b31m a \u202eb 1k\nX1 a b c d \u2066e ODD\n",
 }
 
 

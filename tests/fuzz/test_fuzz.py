@@ -1,4 +1,4 @@
-"""A few hundred netlists of each kind through the whole review; `run.py` tries many more."""
+"""A few netlists of each kind through the whole review; tests/bench/fuzzing.py tries many."""
 
 import pytest
 from hypothesis import HealthCheck, given, settings
@@ -7,7 +7,7 @@ from tests.fuzz.hold import hold
 from tests.fuzz.netlists import hostile, nearly_valid, stage
 
 FEW = settings(
-    max_examples=120,
+    max_examples=50,
     deadline=None,
     suppress_health_check=list(HealthCheck),
     derandomize=True,

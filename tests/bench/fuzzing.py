@@ -1,6 +1,6 @@
 """Try netlists for so many seconds and print how many were tried and what broke.
 
-    python -m tests.fuzz.run --seconds 600 [--seed 1]
+    python -m tests.bench.fuzzing --seconds 600 [--seed 1]
 
 Each kind gets an equal share. A failing deck is shrunk and written to the folder `--keep`.
 """
