@@ -5,7 +5,7 @@ import time
 from pathlib import Path
 
 from railguard.report.formats import FORMATS, render
-from railguard.review import Review, review
+from railguard.reviewing import Review, review
 from railguard.words import SEVERITIES
 
 SECONDS = 10.0
