@@ -1,6 +1,29 @@
-"""`python -m railguard`."""
+"""`python -m railguard`, which is what the hook of a git repository runs."""
 
-from railguard.commands.main import main
+import sys
+
+
+def main() -> None:
+    """Run the command line; a commit that concerns no netlist pays for no import."""
+    if sys.argv[1:3] == ["hook", "run"] and not _concerned():
+        return
+    from railguard.commands.main import main as command_line
+
+    command_line()
+
+
+def _concerned() -> bool:
+    """Tell whether the command has to be run at all, to say what went wrong if nothing else."""
+    from railguard.commands.hook.git import GitError, top_folder
+    from railguard.commands.hook.staged import concerned
+
+    if any(not word.startswith("-") for word in sys.argv[3:]):
+        return True
+    try:
+        return concerned(top_folder())
+    except GitError:
+        return True
+
 
 if __name__ == "__main__":
     main()

@@ -1,6 +1,9 @@
 """What railguard raises: one base class, and the three questions each error answers."""
 
-from railguard.location import Location
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    from railguard.location import Location
 
 
 class RailguardError(Exception):
@@ -13,7 +16,7 @@ class RailguardError(Exception):
     A fault of the *design* is never raised: it is a finding.
     """
 
-    def __init__(self, what: str, where: Location | None = None, remedy: str = "") -> None:
+    def __init__(self, what: str, where: "Location | None" = None, remedy: str = "") -> None:
         self.what = what
         self.where = where
         self.remedy = remedy

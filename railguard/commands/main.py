@@ -21,6 +21,7 @@ _COMMANDS = {
         "sheet",
         "Print every op-amp with its numbers, as evidence.",
     ),
+    "hook": ("railguard.commands.hook.command", "hook", "Review what is about to be committed."),
     "rules": ("railguard.commands.rules", "rules", "List the rules, or explain one."),
     "devices": (
         "railguard.commands.devices",

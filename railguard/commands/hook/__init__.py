@@ -1,0 +1,1 @@
+"""`railguard hook`: netlists reviewed as they are about to be committed."""
