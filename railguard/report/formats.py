@@ -9,6 +9,7 @@ from railguard.reviewing import Review
 _MODULES = {
     "terminal": "railguard.report.terminal",
     "json": "railguard.report.as_json",
+    "html": "railguard.report.html.document",
 }
 FORMATS = tuple(_MODULES)
 

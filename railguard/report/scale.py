@@ -321,7 +321,7 @@ def _limits_line(ruler: _Ruler) -> Line:
     negative, positive = si(scale.negative, "V"), si(scale.positive, "V")
     labels.put(negative, ruler.left - len(negative) + 1)
     labels.put(positive, ruler.right)
-    low, high = _limit_words(scale, upper=False), _limit_words(scale, upper=True)
+    low, high = limit_words(scale, upper=False), limit_words(scale, upper=True)
     if not low and not high:
         words = "reach not known"
         labels.put(words, (ruler.left + ruler.right - len(words)) // 2)
@@ -340,7 +340,7 @@ def _limits_line(ruler: _Ruler) -> Line:
     return labels.line()
 
 
-def _limit_words(scale: Scale, *, upper: bool) -> tuple[str, ...]:
+def limit_words(scale: Scale, *, upper: bool) -> tuple[str, ...]:
     """Return the limit of one side that matters, with its kind and, for narrow lines, without."""
     typical = scale.typical.high if upper else scale.typical.low
     sure = scale.sure.high if upper else scale.sure.low
@@ -362,7 +362,7 @@ def _between(asked: float | None, sure: float, typical: float, *, upper: bool) -
     return _above(sure, asked) and not _above(typical, asked)
 
 
-def _volts(value: float, scale: Scale) -> str:
+def asked_volts(value: float, scale: Scale) -> str:
     """Write a demand; what is nothing beside the supply is the solver's rounding, and is zero."""
     return si(0.0 if abs(value) < _NOTHING * (scale.positive - scale.negative) else value, "V")
 
@@ -376,7 +376,7 @@ def _asked_line(ruler: _Ruler) -> Line:
     if ruler.asked is None or asked.low is None or asked.high is None:
         return ()
     first, last = ruler.asked
-    low, high = _volts(asked.low, ruler.scale), _volts(asked.high, ruler.scale)
+    low, high = asked_volts(asked.low, ruler.scale), asked_volts(asked.high, ruler.scale)
     kind = " at worst" if ruler.scale.worst else ""
     if low == high:
         labels.put(low + kind, first - len(low) // 2)

@@ -12,6 +12,11 @@ _GLUE = "\ue000"
 """Stands for the blank before a unit; a private character, which `visible` never leaves."""
 
 
+def with_unit(text: str) -> str:
+    """Return the text with the blank between a number and its unit made unbreakable."""
+    return _UNIT.sub("\u00a0", text)
+
+
 def wrapped(text: str, width: int) -> list[str]:
     """Break a text at its blanks into lines of so many columns; longer words are cut."""
     lines: list[str] = []

@@ -1,0 +1,1 @@
+"""The HTML page: one self-contained file with drawings, rail scales, loops and the netlist."""
