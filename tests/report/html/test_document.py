@@ -58,6 +58,7 @@ class Tree(HTMLParser):
         self.tags, self.texts, self.attributes = [], [], []
 
     def handle_starttag(self, tag, attrs):
+        """Note a tag, its attributes, and that it is open."""
         self.tags.append(tag)
         self.attributes += [(tag, name, value or "") for name, value in attrs]
         named = dict(attrs)
@@ -69,17 +70,18 @@ class Tree(HTMLParser):
             self.stack.append(tag)
 
     def handle_startendtag(self, tag, attrs):
+        """Note a tag that closes itself."""
         self.handle_starttag(tag, attrs)
         if tag not in VOID:
             self.stack.pop()
 
     def handle_endtag(self, tag):
-        if tag in ("p", "li", "td", "th", "tr") and tag not in self.stack:
-            self.faults.append(f"</{tag}> closes nothing")
-        elif not self.stack or self.stack.pop() != tag:
+        """Close the innermost tag, or note a fault."""
+        if not self.stack or self.stack.pop() != tag:
             self.faults.append(f"</{tag}> at {self.getpos()}")
 
     def handle_data(self, data):
+        """Note a text."""
         self.texts.append(data)
 
 
