@@ -32,8 +32,8 @@ SURE_DEGREES = 5.0
 LARGEST_INPUT_FARADS = 20e-12
 LARGEST_OUTPUT_OHMS = 200.0
 """What an unlisted input capacitance and output resistance may be at most: common practice."""
-SHIFT_LOW, SHIFT_HIGH = 0.05, 4.0
-"""How far what is not listed may move a crossover."""
+SHIFT_LOW, SHIFT_HIGH = 1e-3, 4.0
+"""How far what is not listed may move a crossover: microfarads at an output take it far down."""
 BASE_OHMS = 1e3
 CURRENT_GAIN = 100.0
 
@@ -172,7 +172,7 @@ def phase_margin(hertz: Real, a_beta: Complex, f: float) -> float:
 
 def crossover_margins(network: Network, crossovers: Mapping[str, float]) -> dict[str, float]:
     """Return the phase margin of each amplifier in `network`, its crossover found anew near by."""
-    steps = np.geomspace(SHIFT_LOW, SHIFT_HIGH, 15)
+    steps = np.geomspace(SHIFT_LOW, SHIFT_HIGH, 30)
     hertz = np.array(sorted({step * f for f in crossovers.values() for step in steps.tolist()}))
     if not len(hertz):
         return {}

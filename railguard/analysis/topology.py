@@ -85,7 +85,8 @@ def topology_of(amplifier: Amplifier, ways: Ways, loop: Loop, rails: frozenset[s
     resistors = [e for e in minus.first if e.kind in ("R", "link")]
     feedback = _direct(amplifier, ways)
     if feedback == {"C"}:
-        return "integrator"
+        low_pass = minus_driven and _capacitor_within(minus.own_output, amplifier, ways)
+        return "multiple-feedback filter" if low_pass else "integrator"
     if minus_driven and len(minus.own_output) > 1 and feedback != {"R", "C"} and len(kinds) > 1:
         return "multiple-feedback filter"
     if len(set(minus_driven)) > 1 and len(resistors) > 1:
@@ -95,6 +96,17 @@ def topology_of(amplifier: Amplifier, ways: Ways, loop: Loop, rails: frozenset[s
             return "inverting low-pass"
         return "inverting"
     return "non-inverting" if amplifier.plus != GROUND else "other"
+
+
+def _capacitor_within(own_output: list[Element], amplifier: Amplifier, ways: Ways) -> bool:
+    """Tell whether a resistor leads the output back to a net that a capacitor hangs on.
+
+    With a capacitor straight across the stage that makes a multiple-feedback low-pass of what would
+    be an integrator held by a T of resistors.
+    """
+    ends = {amplifier.output, amplifier.minus}
+    inner = {n for e in own_output if e.kind == "R" for n in e.nets[:2]} - ends
+    return any(e.kind == "C" for net in inner for e in ways.around.get(net, ()))
 
 
 def instrumentation(names: dict[str, str], after: dict[str, tuple[str, ...]]) -> dict[str, str]:

@@ -49,6 +49,9 @@ def _goes_nowhere(amplifier: Amplifier, ways: Ways, inputs: frozenset[str]) -> b
 
 
 def _is_driven(amplifier: Amplifier, ways: Ways, rails: frozenset[str]) -> bool:
+    """Tell whether anything but ground and a rail sets one input against the other."""
+    if amplifier.plus == amplifier.minus:
+        return False
     for net, other in ((amplifier.plus, amplifier.minus), (amplifier.minus, amplifier.plus)):
         around = Around(net, amplifier, ways, skip=other)
         if around.currents or any(n not in rails for n in around.driven):

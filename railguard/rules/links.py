@@ -9,6 +9,7 @@ from railguard.circuit.model import GROUND
 from railguard.rules.compose import stage_named
 from railguard.rules.finding import Finding
 from railguard.rules.remedies import reached_unloaded
+from railguard.rules.severity import breach
 from railguard.words import SEVERITIES
 
 Related = Callable[[Finding, Finding, Design], str]
@@ -105,10 +106,16 @@ def _rests_on_value(cause: Finding, finding: Finding, design: Design) -> str:
     names = set(finding.designators) | _rail_elements(finding, design)
     for designator in finding.designators:
         stage = stage_named(designator, design)
-        if stage is not None:
-            names |= elements_of(stage, design)
-            if finding.family == "drive":
-                names.add(stage.current.into)
+        if stage is None:
+            continue
+        for name in (designator, *upstream(stage, design)):
+            before = stage_named(name, design)
+            names |= elements_of(before, design) if before is not None else set()
+        if finding.family == "drive":
+            names.add(stage.current.into)
+        elif finding.family == "feedback":
+            at = stage.output.net
+            names.update(e.designator for e in design.circuit.elements if at in e.nets)
     return next((d for d in cause.designators if d in names), "")
 
 
@@ -183,7 +190,47 @@ def _only_unclipped(cause: Finding, finding: Finding, design: Design) -> str:
 def _only_at_a_corner(cause: Finding, finding: Finding, design: Design) -> str:
     """Relate a range that is too wide only with offset and bias current to what amplifies them."""
     nominal = finding.rule == "headroom-output" and finding.corner == "nominal"
-    return "" if nominal else _shared_designator(cause, finding, design)
+    return "" if nominal else _same_or_before(cause, finding, design)
+
+
+def _same_or_before(cause: Finding, finding: Finding, design: Design) -> str:
+    """Relate what is about one stage to what is about it or a stage behind it."""
+    return _shared_designator(cause, finding, design) or _dead_before(cause, finding, design)
+
+
+def _graver(cause: Finding, finding: Finding, design: Design) -> str:
+    """Relate two findings about one stage, the graver as the cause."""
+    rank = SEVERITIES.index(cause.severity) - SEVERITIES.index(finding.severity)
+    leads = rank < 0 or (rank == 0 and cause.rule < finding.rule)
+    return _shared_designator(cause, finding, design) if leads else ""
+
+
+def _one_rail(cause: Finding, finding: Finding, design: Design) -> str:
+    """Relate packages of different devices that one rail is wrong for, the graver as the cause."""
+    rank = SEVERITIES.index(cause.severity) - SEVERITIES.index(finding.severity)
+    same = cause.nets == finding.nets and cause.designators != finding.designators
+    if not same or None in (cause.margin, cause.demand, cause.limit, finding.demand, finding.limit):
+        return ""
+    above = (cause.demand or 0.0) > (cause.limit or 0.0)
+    if above != ((finding.demand or 0.0) > (finding.limit or 0.0)):
+        return ""
+    leads = rank < 0 or (rank == 0 and cause.designators < finding.designators)
+    return next((n for n in cause.nets if n != GROUND), "") if leads else ""
+
+
+def _one_load(cause: Finding, finding: Finding, design: Design) -> str:
+    """Relate two outputs that one element between them loads; the first is the cause."""
+    first, second = _stage_of(cause, design), _stage_of(finding, design)
+    if first is None or second is None or not first.current.into:
+        return ""
+    same = first.current.into == second.current.into
+    before = cause.designators < finding.designators
+    return first.current.into if same and before else ""
+
+
+def _on_the_tied_net(cause: Finding, finding: Finding, design: Design) -> str:
+    """Relate a rail that an output is tied to to what is said of the rail."""
+    return next((n for n in cause.nets if n in finding.nets and n != GROUND), "")
 
 
 def _network_alone(cause: Finding, finding: Finding, design: Design) -> str:
@@ -192,14 +239,20 @@ def _network_alone(cause: Finding, finding: Finding, design: Design) -> str:
 
 
 def _same_side(cause: Finding, finding: Finding, design: Design) -> str:
-    """Relate output and input of a follower, which are one quantity."""
+    """Relate output and input of a stage at the same end, where one quantity sets both.
+
+    The output of a stage that does not turn its signal over goes where its inputs go; that of one
+    that does rests where its reference is. A difference amplifier's common level is another thing.
+    """
     stage = _stage_of(cause, design)
-    if stage is None or stage.topology != "follower":
+    if stage is None or stage.topology == "difference":
         return ""
     if None in (cause.demand, cause.limit, finding.demand, finding.limit):
         return ""
-    upper = (cause.demand or 0.0) > (cause.limit or 0.0)
-    same = upper == ((finding.demand or 0.0) > (finding.limit or 0.0))
+    upper = (finding.demand or 0.0) > (finding.limit or 0.0)
+    same = upper == ((cause.demand or 0.0) > (cause.limit or 0.0))
+    # A finding names the worse end alone; a stage without gain may be beyond at both.
+    same = same or breach(stage.output.high if upper else stage.output.low) is not None
     milder = SEVERITIES.index(cause.severity) <= SEVERITIES.index(finding.severity)
     return _shared_designator(cause, finding, design) if same and milder else ""
 
@@ -236,7 +289,9 @@ LINKS: tuple[Link, ...] = (
     ),
     # A net that nothing feeds is most often a misspelt one; its capacitors are on the right one.
     Link(("supply-missing",), ("decoupling-absent", "decoupling-few"), _shared_supply),
-    Link(("supply-reversed",), ("supply-package-split",), _shared_designator),
+    Link(("supply-missing", "supply-reversed"), ("supply-package-split",), _shared_designator),
+    Link(("drive-tied",), ("supply", "decoupling", "netlist-sources-fight"), _on_the_tied_net),
+    Link(("supply-range",), ("supply-range",), _one_rail),
     Link(
         ("drive-joined", "drive-tied"),
         (*_RUNNING, "feedback-open", "feedback-reversed"),
@@ -253,11 +308,27 @@ LINKS: tuple[Link, ...] = (
         ("headroom",),
         _dead_before,
     ),
-    Link(("supply-range",), ("headroom", "drive", "dynamics"), _too_low_a_supply),
+    Link(
+        ("supply-range",),
+        ("headroom", "drive", "dynamics", "bias-current-error", "bias-level", "feedback-high"),
+        _too_low_a_supply,
+    ),
     Link(("feedback-low",), ("drive-current",), _network_alone),
     Link(("drive-current",), ("drive-power",), _shared_designator),
     Link(("feedback-low",), ("headroom-output",), _heavy_network),
     Link(("drive-current",), ("headroom-output",), _heavy_load),
+    Link(("drive-current",), ("drive-current",), _one_load),
+    # What is left of a loaded output's reach makes errors look large.
+    Link(
+        ("drive-current", "feedback-low"),
+        ("bias-current-error", "bias-level", "headroom-offset"),
+        _shared_designator,
+    ),
+    Link(
+        ("dynamics-slew", "dynamics-loop-gain", "dynamics-filter"),
+        ("dynamics-slew", "dynamics-loop-gain", "dynamics-filter"),
+        _graver,
+    ),
     Link(
         ("feedback-high",),
         ("stability-phase-margin", "stability-transimpedance", "bias-current-error"),
@@ -265,6 +336,7 @@ LINKS: tuple[Link, ...] = (
     ),
     Link(("feedback-high",), ("headroom-offset", "headroom-output"), _only_at_a_corner),
     Link(("headroom-output",), ("headroom",), _saturated_before),
+    Link(("headroom-output",), ("headroom-offset",), _shared_designator),
     Link(("headroom-output",), ("drive-current", "dynamics-slew", "feedback-low"), _only_unclipped),
     Link(("headroom-output",), ("headroom-input",), _same_side),
     Link(

@@ -117,6 +117,18 @@ def breach(
     return min(found, key=lambda b: SEVERITIES.index(b.severity), default=None)
 
 
+def far_beyond(bound: Bound, broken: Breach, factor: float) -> Breach:
+    """Return a breach as one of a typical limit where none is listed and the excess is great.
+
+    factor  multiple of a guaranteed limit beyond which no device of the kind is expected to go
+    """
+    only_guaranteed = bound.typical is None and broken.broken == "guaranteed"
+    if not only_guaranteed or broken.at_corner or broken.demand <= factor * broken.limit:
+        return broken
+    severity = TABLE["typical"][evidence(*broken.basis)]
+    return msgspec.structs.replace(broken, severity=severity)
+
+
 def _checks(bound: Bound, reserve: float) -> Iterator[_Check]:
     """Yield what is to be compared, the gravest limit first: it leads among equals."""
     if bound.demand is None:

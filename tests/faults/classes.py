@@ -235,7 +235,10 @@ def gain_too_high(base: Base) -> Fault | None:
     a = base.amplifier
     room = max(a.positive - a.middle, a.middle - a.negative) / a.peak
     times = 3.0 * room / float(base.roles.get("swing", "0.9"))
-    cards = base.revalued(**{feedback: base.value(feedback) * times})
+    if base.roles["gain"] == "RG":
+        cards = base.revalued(RG=base.value("RG") / times)
+    else:
+        cards = base.revalued(**{feedback: base.value(feedback) * times})
     return Fault(cards, ("headroom-output",), (base.main, base.roles["last"]), True)
 
 
@@ -308,10 +311,10 @@ def load_too_heavy(base: Base) -> Fault | None:
     if not has(base, "load") or not linear(base) or base.name in ("thermistor", "reference_buffer"):
         return None
     a = base.amplifier
-    ohms = (abs(a.middle) + a.peak * 0.5) / (1.5 * a.amperes)
+    swing = a.peak * 0.55 * float(base.roles.get("swing", "0.9"))
+    level = 0.0 if base.name == "stated_bridge" else abs(a.middle)
+    ohms = (level + swing) / (1.5 * a.amperes)
     load = base.roles["load"]
-    if base.name == "stated_bridge":
-        ohms = a.peak * 0.6 / (1.5 * a.amperes)
     who = {"line_pair": base.main}.get(base.name, base.roles["last"])
     return Fault(base.revalued(**{load: ohms}), ("drive-current",), (who, base.main), True)
 

@@ -295,15 +295,19 @@ def test_a_network_that_alone_is_too_heavy_is_the_cause():
     assert rules(merge([share, load], ONE))[1] == []
 
 
-def test_a_followers_input_follows_its_output():
-    """The same volts at both ends of a follower are one fault where the side is the same."""
+def test_an_input_follows_its_output():
+    """One signal at both ends of a stage is one fault where the side is the same.
+
+    The common level of a difference amplifier is another thing than what its output is asked for.
+    """
     whole = design(stage(topology="follower"))
     out = about("headroom-output", "XU1", demand=12.0, limit=10.0)
     same = about("headroom-input", "XU1", demand=12.0, limit=9.0)
     other = about("headroom-input", "XU1", demand=-12.0, limit=-9.0)
     assert rules(merge([out, same], whole))[1] == ["headroom-input"]
     assert rules(merge([out, other], whole))[1] == []
-    assert rules(merge([out, same], ONE))[1] == []
+    assert rules(merge([out, same], ONE))[1] == ["headroom-input"]
+    assert rules(merge([out, same], design(stage(topology="difference"))))[1] == []
 
 
 def test_upstream_goes_through_other_stages_and_never_names_itself():

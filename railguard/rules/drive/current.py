@@ -2,6 +2,8 @@
 
 from collections.abc import Iterator
 
+from msgspec.structs import replace
+
 from railguard.analysis.stage import Bound, Design, Stage, Unknown
 from railguard.devices.model import UNLISTED_CURRENT
 from railguard.rules.compose import (
@@ -12,7 +14,7 @@ from railguard.rules.compose import (
 from railguard.rules.headroom.ranges import cap_of, corner_words
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.remedies import fit, sentence
-from railguard.rules.severity import Breach, breach, gravity
+from railguard.rules.severity import Breach, breach, capped, far_beyond, gravity
 from railguard.rules.wording import NO_SOURCE, device, limit_note, sheet
 from railguard.rules.working import stands_still, standstill
 from railguard.units import si
@@ -22,6 +24,15 @@ NO_CURRENT = Unknown(
     "state the signal that reaches it under [signals], and its load under [loads]",
 )
 
+FAR_FACTOR = Limit(
+    name="far-factor",
+    default=3.0,
+    unit="",
+    meaning="multiple of the current a device is known to give beyond which, where no typical one "
+    "is listed, it counts like a typical limit",
+    source="common practice, no source: short-circuit currents are two to five times what swing "
+    "is guaranteed at",
+)
 
 # --- drive-current
 
@@ -40,6 +51,8 @@ def judge_current(stage: Stage, limits: Limits, design: Design) -> Iterator[Outc
         reserve = limits["reserve-share"] * (bound.guaranteed or bound.typical or 0.0)
         broken = breach(bound, reserve, cap=cap_of(stage))
         if broken is not None:
+            broken = far_beyond(bound, broken, limits["far-factor"])
+            broken = replace(broken, severity=capped(broken.severity, cap_of(stage)))
             sides.append((verb, bound, broken))
     if not sides:
         return
@@ -133,6 +146,7 @@ CURRENT = Rule(
             meaning="share of the guaranteed (else typical) current to be left",
             source=NO_SOURCE,
         ),
+        FAR_FACTOR,
     ),
     judge=judge_current,
 )

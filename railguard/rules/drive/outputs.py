@@ -63,6 +63,8 @@ def judge_tied(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome
     """Judge whether an output is tied to ground, a rail or an ideal source."""
     net = stage.output.net
     holder = "ground" if net == GROUND else _holder(net, design)
+    if not holder and _is_foreign_rail(stage, design):
+        holder = f"rail {net}"
     if not holder:
         return
     yield stage_finding(
@@ -71,7 +73,9 @@ def judge_tied(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome
         "critical",
         f"The output of {stage.schematic} (net {net}) is held by {holder}: it drives into a short.",
         nets=(net,),
-        remedy=f"Take {holder if holder != 'ground' else 'ground'} off net {net}.",
+        remedy=f"Lead the output of {stage.schematic} to a net of its own."
+        if holder.startswith(("rail ", "ground"))
+        else f"Take {holder} off net {net}.",
         source=NO_SOURCE,
     )
 
@@ -83,6 +87,15 @@ def _holder(net: str, design: Design) -> str:
         if element.kind in ("V", "battery") and _against(element, net, rails):
             return element.designator
     return ""
+
+
+def _is_foreign_rail(stage: Stage, design: Design) -> bool:
+    """Tell whether an output stands on its own supply net, or on a rail that is fed elsewhere."""
+    net = stage.output.net
+    if net in (stage.supply.positive_net, stage.supply.negative_net):
+        return True
+    rail = next((r for r in design.rails if r.net == net), None)
+    return rail is not None and rail.feed == "stated" and stage.designator not in rail.origin
 
 
 def _against(element: Element, net: str, rails: set[str]) -> bool:

@@ -11,10 +11,11 @@ import msgspec
 
 from railguard.analysis.stage import Bound, Design, Stage, Unknown
 from railguard.rules.compose import first_unknown, open_point, stage_finding
+from railguard.rules.drive.current import FAR_FACTOR
 from railguard.rules.inputs import LEAST_UNEQUAL, bias_current, output_span
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.remedies import decades, fit, scaled_network, sentence
-from railguard.rules.severity import TABLE, Breach, Broken, breach, capped, evidence
+from railguard.rules.severity import TABLE, Breach, Broken, breach, capped, evidence, far_beyond
 from railguard.rules.wording import NO_SOURCE, cited, device, listed, origin
 from railguard.units import percent, si
 from railguard.words import SEVERITIES, Basis, Severity
@@ -89,6 +90,7 @@ def _low(bound: Bound, limits: Limits) -> tuple[Breach, Severity] | None:
     """Find a limit the network alone breaks, else whether it takes more than its share."""
     broken = breach(bound)
     if broken is not None:
+        broken = far_beyond(bound, broken, limits["far-factor"])
         return broken, broken.severity
     best = bound.guaranteed if bound.guaranteed is not None else bound.typical
     if bound.demand is None or best is None or bound.demand <= limits["share"] * best:
@@ -136,6 +138,7 @@ LOW = Rule(
             meaning="share of the output current its own feedback may take",
             source=NO_SOURCE,
         ),
+        FAR_FACTOR,
     ),
     judge=judge_low,
 )

@@ -14,6 +14,7 @@ from railguard.rules.compose import (
 )
 from railguard.rules.headroom.ranges import cap_of
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
+from railguard.rules.remedies import fit
 from railguard.rules.severity import ROUNDING, TABLE, breach, evidence
 from railguard.rules.wording import NO_SOURCE, capital, cited, device, origin
 from railguard.rules.working import standstill
@@ -89,6 +90,9 @@ def judge_differential(stage: Stage, limits: Limits, design: Design) -> Iterator
     yield from open_point("headroom-differential", stage, ("device",), gap)
     if limit is None or figure is None or asked <= limit * (1 + ROUNDING):
         return
+    series = sum(pin.series or 0.0 for pin in (stage.inputs.plus, stage.inputs.minus))
+    if series > 0 and (asked - limit) / series <= limits["current"]:
+        return
     known = figure.guaranteed is not None
     basis = figure.guaranteed_basis if known else figure.typical_basis
     yield stage_finding(
@@ -103,8 +107,8 @@ def judge_differential(stage: Stage, limits: Limits, design: Design) -> Iterator
         margin=limit - asked,
         unit="V",
         basis=(stage.inputs.high.demand_basis, basis),
-        remedy="Fit a resistor of 10 kΩ in series with each input, or a device without clamps "
-        "between its inputs.",
+        remedy=f"Fit {si(fit((asked - limit) / limits['current'], 'up'), 'Ω')} or more in series "
+        "with an input, or a device without clamps between its inputs.",
         source=cited(stage, basis),
     )
 
@@ -118,7 +122,17 @@ DIFFERENTIAL = Rule(
     reason="Many input pairs have back-to-back diodes between them; they load the source and warm "
     "the device where the inputs are driven apart.",
     source="the device's data sheet",
-    silent="Stages whose loop holds the inputs together.",
+    silent="Stages whose loop holds the inputs together; clamps that resistors before the inputs "
+    "leave little current.",
+    limits=(
+        Limit(
+            name="current",
+            default=5e-3,
+            unit="A",
+            meaning="current the clamps between the inputs may carry",
+            source="from memory: 10 mA in the NE5532 data sheet, 25 mA in the OP27's",
+        ),
+    ),
     judge=judge_differential,
 )
 

@@ -13,7 +13,13 @@ from railguard.rules.compose import (
 from railguard.rules.finding import Finding
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.severity import TABLE, Breach, breach, capped, evidence
-from railguard.rules.supply.pins import no_channel, supplies_of, supply_basis, unstated
+from railguard.rules.supply.pins import (
+    no_channel,
+    pin_nets,
+    supplies_of,
+    supply_basis,
+    unstated,
+)
 from railguard.rules.wording import NO_SOURCE, cited, listed, origin, rails
 from railguard.rules.working import NO_VOLTS
 from railguard.units import percent, si
@@ -31,10 +37,12 @@ def judge_range(package: Package, limits: Limits, design: Design) -> Iterator[Ou
     if not supplies:
         yield no_channel(package, "supply-range")
     for stages in supplies:
-        yield from _range(package, stages, limits)
+        yield from _range(package, stages, limits, design)
 
 
-def _range(package: Package, stages: tuple[Stage, ...], limits: Limits) -> Iterator[Outcome]:
+def _range(
+    package: Package, stages: tuple[Stage, ...], limits: Limits, design: Design
+) -> Iterator[Outcome]:
     stage = stages[0]
     device, total = stage.family, stage.supply.total
     if total is None:
@@ -51,10 +59,14 @@ def _range(package: Package, stages: tuple[Stage, ...], limits: Limits) -> Itera
         return
     if total <= NO_VOLTS:
         return  # told by supply-missing or supply-reversed
+    same = [s for s in design.stages if s.family == device and pin_nets(s) == pin_nets(stage)]
+    if same and same[0] not in stages:
+        return  # told with the first package of its kind on this pair of rails
     for bound in _range_bounds(stage, device, total):
         broken = breach(bound)
         if broken is not None and -broken.margin > CLOSE * abs(broken.limit):
-            yield _out_of_range(package, stages, bound, broken, limits["far-share"])
+            together = tuple(same) or stages
+            yield _out_of_range(package, together, bound, broken, limits["far-share"])
 
 
 def _range_bounds(stage: Stage, device: Device, total: float) -> tuple[Bound, Bound]:
@@ -103,15 +115,17 @@ def _out_of_range(
     if not broken.at_corner and -broken.margin > far_share * broken.limit:
         worse = TABLE["typical"][evidence(*broken.basis)]
         severity = severity if broken.broken == "absolute" else worse
-    subject = f"{package.designator} ({stage.device})"
+    packages = list(dict.fromkeys(s.package or s.schematic for s in stages))
+    subject = f"{listed(packages)} ({stage.device})"
+    gets, needs = ("gets", "it needs") if len(packages) == 1 else ("get", "they need")
     what = {
         "absolute": "the absolute maximum is",
-        "guaranteed": "the recommended range goes to" if bound.upper else "it needs at least",
-    }.get(broken.broken, "the range goes to" if bound.upper else "it needs at least")
+        "guaranteed": "the recommended range goes to" if bound.upper else f"{needs} at least",
+    }.get(broken.broken, "the range goes to" if bound.upper else f"{needs} at least")
     corner = " at the worst corner of the rails' tolerance" if broken.at_corner else ""
     side = "above" if bound.upper else "short of it"
     message = (
-        f"{subject} gets {si(broken.demand, 'V')} in all ({rails(stage.supply)}){corner}; {what} "
+        f"{subject} {gets} {si(broken.demand, 'V')} in all ({rails(stage.supply)}){corner}; {what} "
         f"{si(broken.limit, 'V')} ({origin(broken.limit_basis)}), so it is "
         f"{si(-broken.margin, 'V')} {side}."
     )
