@@ -151,6 +151,19 @@ def _dead_before(cause: Finding, finding: Finding, design: Design) -> str:
     return first.designator if behind else ""
 
 
+def _switching(cause: Finding, finding: Finding, design: Design) -> str:
+    """Relate two findings about a stage that is meant to switch."""
+    stage = _stage_of(finding, design)
+    meant = stage is not None and stage.use in ("comparator", "oscillator")
+    return _shared_designator(cause, finding, design) if meant else ""
+
+
+def _no_linear_loop(cause: Finding, finding: Finding, design: Design) -> str:
+    """Relate a loop that does not hold its stage; one that is meant to switch is no cause."""
+    grave = cause.severity in ("critical", "major")
+    return _shared_designator(cause, finding, design) if grave else ""
+
+
 def _stage_of(finding: Finding, design: Design) -> Stage | None:
     return stage_named(finding.designators[0], design) if finding.designators else None
 
@@ -297,10 +310,12 @@ LINKS: tuple[Link, ...] = (
         (*_RUNNING, "feedback-open", "feedback-reversed"),
         _shared_designator,
     ),
+    # The thresholds of a comparator move with its rails.
+    Link(("supply-range",), ("feedback-reversed",), _switching),
     Link(
         ("feedback-reversed", "feedback-open"),
         (*_RUNNING, "bias-no-dc-path"),
-        _shared_designator,
+        _no_linear_loop,
     ),
     Link(("bias-no-dc-path",), _RUNNING, _shared_designator),
     Link(

@@ -7,7 +7,7 @@ from railguard.devices.model import SwingPoint
 from railguard.rules.causes import merge, order
 from railguard.rules.compose import finding
 from railguard.rules.links import elements_of, upstream
-from tests.rules.stages import FAMILY, capacitor, changed, design, rail, resistor, stage
+from tests.rules.stages import FAMILY, capacitor, changed, design, pin, rail, resistor, stage
 
 
 def about(rule, *designators, severity="major", nets=(), demand=None, limit=None, margin=None):
@@ -67,6 +67,11 @@ def test_findings_without_a_common_cause_stay_apart():
         ("feedback-high", "bias-current-error"),
         ("headroom-input", "headroom-phase-reversal"),
         ("headroom-input", "drive-input-above-rail"),
+        ("headroom-output", "headroom-offset"),
+        ("drive-current", "bias-current-error"),
+        ("feedback-low", "headroom-offset"),
+        ("dynamics-loop-gain", "dynamics-slew"),
+        ("supply-missing", "supply-package-split"),
     ],
 )
 def test_what_follows_on_the_same_stage_hangs_under_its_cause(cause, follows):
@@ -333,3 +338,60 @@ def test_worst_first_then_by_place():
     lost = about("bias-level", severity="minor")
     grave = about("supply-missing", severity="critical")
     assert sorted([lost, here, grave], key=order) == [grave, here, lost]
+
+
+def test_one_rail_that_is_wrong_for_several_devices_is_one_finding():
+    """A rail too high for two kinds of package; too high for one and too low for another is two."""
+    high = [
+        about("supply-range", f"XU{n}", nets=("+12V", "-12V"), demand=44.0, limit=36.0, margin=-8.0)
+        for n in (1, 2)
+    ]
+    assert rules(merge(high, CHAIN)) == (["supply-range"], ["supply-range"])
+    low = changed(high[1], demand=44.0, limit=50.0)
+    assert len(merge([high[0], low], CHAIN)) == 2
+
+
+def test_an_output_tied_to_a_rail_explains_the_rail():
+    """The rail's level is what the output makes of it."""
+    tied = about("drive-tied", "XU1", nets=("+12V",))
+    rail_too = about("supply-range", "XU4", nets=("+12V", "-12V"), demand=44.0, limit=36.0)
+    assert rules(merge([rail_too, tied], CHAIN)) == (["drive-tied"], ["supply-range"])
+    elsewhere = about("supply-range", "XU4", nets=("+5V", "0"), demand=44.0, limit=36.0)
+    assert rules(merge([elsewhere, tied], CHAIN))[1] == []
+
+
+def test_a_load_between_two_outputs_is_one_finding():
+    """Both ends of one resistor ask for the same current."""
+    into = changed(stage().current, into="RL")
+    pair = design(stage("XU1", current=into), stage("XU2", current=into))
+    both = [about("drive-current", "XU2"), about("drive-current", "XU1")]
+    assert tree(merge(both, pair)) == [
+        ("drive-current", ("XU1",), [("drive-current", ("XU2",), "RL")])
+    ]
+    apart = design(stage("XU1", current=into), stage("XU2", current=changed(into, into="RM")))
+    assert len(merge(both, apart)) == 2
+
+
+def test_a_comparator_is_no_cause():
+    """A stage that is meant to switch explains nothing; its thresholds follow its rails."""
+    switching = design(stage(use="comparator"))
+    meant = about("feedback-reversed", "XU1", severity="remark")
+    above = about("drive-input-above-rail", "XU1")
+    assert len(merge([meant, above], switching)) == 2
+    never = about("feedback-reversed", "XU1", severity="critical")
+    supply = about("supply-range", "XU1", demand=44.0, limit=36.0)
+    assert rules(merge([never, supply], switching)) == (["supply-range"], ["feedback-reversed"])
+    assert len(merge([never, supply], ONE)) == 2
+
+
+def test_a_missing_value_explains_the_feedback_it_was_to_be():
+    """An element at the output, or before the stages in front, whose value nobody knows."""
+    missing = about("netlist-value-missing", "R9")
+    elements = (resistor("R9", 1e4, "out", "b"), resistor("R8", 1e4, "b", "n"))
+    whole = design(stage(), elements=elements)
+    assert rules(merge([about("feedback-open", "XU1"), missing], whole))[1] == ["feedback-open"]
+    pins = changed(stage().inputs, plus=pin("p2"), minus=pin("n2"))
+    second = stage("XU2", after=("XU1",), inputs=pins)
+    chain = design(stage(feedback=Feedback(elements=("R9",))), second, elements=elements)
+    later = about("headroom-output", "XU2")
+    assert rules(merge([later, missing], chain))[1] == ["headroom-output"]
