@@ -2,9 +2,10 @@
 
 from collections.abc import Sequence
 
+import msgspec
 import numpy as np
 
-from railguard.analysis.network import Real
+from railguard.analysis.network import Complex, Real
 from railguard.analysis.solution import Solution
 from railguard.analysis.stage import Allowed, Stage
 
@@ -12,39 +13,68 @@ WEAK = 1e-6
 """A gain below this is no connection."""
 
 
-def allowed_inputs(solution: Solution, stages: Sequence[Stage]) -> dict[str, Allowed]:
+class _Room(msgspec.Struct):
+    """How far an input may move, and what stops it first."""
+
+    low: float = -np.inf
+    high: float = np.inf
+    limited: str = ""
+    closest: float = np.inf
+
+    def tighten(self, step: float, start: float, by: str) -> None:
+        """Take one more limit in: `step` is how far the input may move towards it."""
+        if step >= 0:
+            self.high = min(self.high, start + step)
+        else:
+            self.low = max(self.low, start + step)
+        if abs(step) < self.closest:
+            self.limited, self.closest = by, abs(step)
+
+
+def allowed_inputs(solved: Sequence[tuple[Solution, Sequence[Stage]]]) -> dict[str, Allowed]:
     """Return, by designator, the largest input that keeps every stage inside its ranges.
 
     The input is moved alone, all other signals at their DC level. Guaranteed limits count, typical
     ones where nothing is guaranteed. Where the input is cut off at DC, its excursion in mid-band
     counts.
+
+    solved  the parts of the circuit with their stages: one input may reach several
     """
     result: dict[str, Allowed] = {}
-    answers, network = solution.answers, solution.answers.network
-    rows = [int(r) for r in answers.rows]
-    dc = answers.dc.adjoint(rows)
-    mid = solution.mid.adjoint(rows)
-    for entry in sorted(solution.prepared.entries, key=lambda e: e.rank):
-        if any(name not in network.injections for name, _ in entry.drives):
-            continue
-        b = network.right_hand_side(entry.drives)
-        at_dc, at_mid = (dc @ b).real, np.abs(mid @ b)
-        low, high, limited, reached = _span(stages, solution, at_dc, at_mid, entry.level)
-        if limited:
-            allowed = Allowed(entry.label, low, high, limited, entry.unit)
+    if not solved:
+        return result
+    factors = [_factors(solution) for solution, _ in solved]
+    for entry in sorted(solved[0][0].prepared.entries, key=lambda e: e.rank):
+        room, reached = _Room(), []
+        for (solution, stages), (dc, mid) in zip(solved, factors, strict=True):
+            network = solution.answers.network
+            if not any(name in network.injections for name, _ in entry.drives):
+                continue
+            b = network.right_hand_side(entry.drives)
+            at_dc, at_mid = (dc @ b).real, np.abs(mid @ b)
+            reached += _tightened(room, stages, solution, at_dc, at_mid, entry.level)
+        if room.limited and np.isfinite(room.low) and np.isfinite(room.high):
+            low, high = float(room.low), float(room.high)
+            allowed = Allowed(entry.label, low, high, room.limited, entry.unit)
             for designator in reached:
                 result.setdefault(designator, allowed)
     return result
 
 
-def _span(
+def _factors(solution: Solution) -> tuple[Complex, Complex]:
+    rows = [int(r) for r in solution.answers.rows]
+    return solution.answers.dc.adjoint(rows), solution.mid.adjoint(rows)
+
+
+def _tightened(
+    room: _Room,
     stages: Sequence[Stage],
     solution: Solution,
     at_dc: Real,
     at_mid: Real,
     start: float,
-) -> tuple[float, float, str, list[str]]:
-    low, high, limited, closest = -np.inf, np.inf, "", np.inf
+) -> list[str]:
+    """Take in the limits of one part's stages; return the stages the input reaches."""
     reached = []
     for k, stage in enumerate(stages):
         q = solution.answers.at(k, "output")
@@ -65,26 +95,7 @@ def _span(
                 limit = bound.guaranteed if bound.guaranteed is not None else bound.typical
                 if limit is None:
                     continue
-                steps = [(limit - level) / gain]
-                if cut:
-                    steps.append(-steps[0])
-                for step in steps:
-                    low, high, limited, closest = _tighten(
-                        low, high, limited, closest, step, start, f"{rule} {stage.designator}"
-                    )
-    if not np.isfinite(low) or not np.isfinite(high):
-        return 0.0, 0.0, "", reached
-    return float(low), float(high), limited, reached
-
-
-def _tighten(
-    low: float, high: float, limited: str, closest: float, step: float, start: float, by: str
-) -> tuple[float, float, str, float]:
-    """Take one more limit in: `step` is how far the input may move towards it."""
-    if step >= 0:
-        high = min(high, start + step)
-    else:
-        low = max(low, start + step)
-    if abs(step) < closest:
-        return low, high, by, abs(step)
-    return low, high, limited, closest
+                step = (limit - level) / gain
+                for way in (step, -step) if cut else (step,):
+                    room.tighten(way, start, f"{rule} {stage.designator}")
+    return reached

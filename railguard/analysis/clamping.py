@@ -57,7 +57,6 @@ def followers_replaced(
             current=other.current,
             inputs=other.inputs,
             dissipation=other.dissipation,
-            junction=other.junction,
         )
         if stage.designator in behind and stage.designator not in clamped
         else stage

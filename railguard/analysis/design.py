@@ -1,17 +1,24 @@
 """A flat circuit to a design: the analysis from beginning to end."""
 
+from collections.abc import Iterable, Mapping
+
+import msgspec
+
+from railguard.analysis.allowed import allowed_inputs
 from railguard.analysis.clamping import clamps_of, followers_replaced
 from railguard.analysis.kind import kind_of
+from railguard.analysis.network import Network
+from railguard.analysis.parts import Part, independent
 from railguard.analysis.rails import packages_of, rails_of
 from railguard.analysis.ranges import Clamp
-from railguard.analysis.recognise import Recognised, recognise
+from railguard.analysis.recognise import recognise
 from railguard.analysis.signals import Prepared, prepare
 from railguard.analysis.solution import Options, Solution, solve
 from railguard.analysis.solve import factor
 from railguard.analysis.stage import Design, Stage, Unrecognised
-from railguard.analysis.stages import stages_of, unsolved
+from railguard.analysis.stages import drafts_of, finished, unsolved
 from railguard.analysis.supplies import Feed, feeds, supply_nets
-from railguard.analysis.surroundings import MID_HERTZ
+from railguard.analysis.surroundings import MID_HERTZ, bridge_resistors
 from railguard.analysis.unseen import spoiled, swinging, unseen_things
 from railguard.circuit.model import GROUND, Circuit
 from railguard.devices.catalogue import Catalogue
@@ -29,35 +36,35 @@ def analyse(
     fed = feeds(signs, circuit.elements, settings, found.amplifiers)
     kind, reason = kind_of(circuit, settings, fed)
     prepared = prepare(circuit.elements, settings, fed)
-    problems = list(circuit.problems)
-    solution: Solution | None = None
-    stages: tuple[Stage, ...] = ()
-    if found.amplifiers:
-        try:
-            solution = solve(prepared, found.amplifiers, fed, settings, options=options)
-        except SolveError as error:
-            problems.append(Problem(rule="netlist-no-solution", message=error.what))
-            stages = unsolved(found.amplifiers, error.what, settings)
-    if solution is not None:
-        stages = _stages(circuit, settings, found, prepared, solution, fed)
-        clamps: dict[str, Clamp] = {}
-        while len(found_clamps := clamps_of(stages, clamps)) > len(clamps):
-            clamps = found_clamps
-            clamped = solve(prepared, found.amplifiers, fed, settings, clamps, options)
-            real = _stages(circuit, settings, found, prepared, clamped, fed)
-            stages = followers_replaced(stages, real, frozenset(clamps))
-        problems += _conflicts(solution)
+    exempt = bridge_resistors(prepared.elements, found.amplifiers)
+    worker = _Worker(circuit, settings, fed, exempt, options)
+    parts = independent(prepared, found.amplifiers) if found.amplifiers else ()
+    done = [worker.worked_out(part) for part in parts]
+    solved = [(one.solution, one.first) for one in done if one.solution is not None]
+    by_name = {stage.designator: stage for one in done for stage in one.stages}
+    problems = [*circuit.problems, *(p for one in done for p in one.problems)]
+    remarks = [*circuit.remarks, *found.remarks, *_missing(prepared, settings)]
+    if solved:
+        whole = Network(prepared.elements, found.amplifiers)
+        problems += _conflicts(whole)
+        remarks += _islands(whole, prepared)
     return Design(
         circuit=circuit,
         settings=settings,
         kind=kind,
         kind_reason=reason,
         rails=rails_of(
-            signs, fed, prepared.elements, found.amplifiers,
-            solution.answers if solution is not None else None, settings,
+            signs,
+            fed,
+            prepared.elements,
+            found.amplifiers,
+            _levels(solution for solution, _ in solved),
+            settings,
         ),
         packages=packages_of(found.amplifiers),
-        stages=stages,
+        stages=finished(
+            [by_name[a.designator] for a in found.amplifiers], allowed_inputs(solved), settings
+        ),
         unrecognised=tuple(
             Unrecognised(
                 designator=element.designator,
@@ -70,46 +77,123 @@ def analyse(
             for element, match in (*found.unknown, *found.others)
         ),
         problems=tuple(problems),
-        remarks=(
-            *circuit.remarks,
-            *found.remarks,
-            *_missing(prepared, settings),
-            *(_islands(solution) if solution is not None else ()),
-        ),
-    )  # fmt: skip
-
-
-def _stages(
-    circuit: Circuit,
-    settings: Settings,
-    found: Recognised,
-    prepared: Prepared,
-    solution: Solution,
-    fed: dict[str, Feed],
-) -> tuple[Stage, ...]:
-    own = frozenset(a.element.designator for a in found.amplifiers)
-    things = unseen_things(
-        circuit, prepared.elements, own, prepared.unstated, settings, solution.answers
+        remarks=tuple(remarks),
     )
-    things += swinging(solution.turning.unfollowed, found.amplifiers, solution.answers)
-    hertz = solution.tops[0] if solution.tops else MID_HERTZ
-    mid = solution.mid if hertz == MID_HERTZ else factor(solution.answers.network, hertz)
-    flags = spoiled(solution.answers, things, mid)
-    return stages_of(solution, fed, settings, flags, frozenset(fed))
 
 
-def _islands(solution: Solution) -> list[Remark]:
-    """Name the nets between capacitors: they have no DC level, whatever was solved round them."""
-    found = []
-    inputs = {net for a in solution.amplifiers for net in (a.plus, a.minus)}
-    for net in sorted(solution.answers.network.floating - inputs):
-        on_net = [e for e in solution.ways.around.get(net, ()) if e.kind != "K"]
-        if len(on_net) > 1 and all(e.kind == "C" for e in on_net):
-            names = " and ".join(e.designator for e in on_net[:3])
-            found.append(
-                Remark(f"Capacitors in series ({names}) leave net {net} without DC level.")
+class _Done(msgspec.Struct, frozen=True):
+    """One part worked out.
+
+    first     its stages before any output was held to what it reaches
+    solution  None where it has none
+    """
+
+    stages: tuple[Stage, ...]
+    first: tuple[Stage, ...] = ()
+    solution: Solution | None = None
+    problems: tuple[Problem, ...] = ()
+
+
+class _Worker:
+    """Works out one part of a circuit after the other."""
+
+    def __init__(
+        self,
+        circuit: Circuit,
+        settings: Settings,
+        fed: dict[str, Feed],
+        exempt: frozenset[str],
+        options: Options | None,
+    ) -> None:
+        self._circuit = circuit
+        self._settings = settings
+        self._fed = fed
+        self._exempt = exempt
+        self._options = options
+
+    def worked_out(self, part: Part) -> _Done:
+        """Return a part's stages; what stands behind a saturated output takes its real level."""
+        try:
+            solution = self._solved(part, {})
+        except SolveError as error:
+            return _Done(
+                unsolved(part.amplifiers, error.what, self._settings),
+                problems=(_unsolvable(error, part),),
             )
-    return found
+        first = stages = self._drafts(part, solution)
+        clamps: dict[str, Clamp] = {}
+        while len(found := clamps_of(stages, clamps)) > len(clamps):
+            clamps = found
+            real = self._drafts(part, self._solved(part, clamps))
+            stages = followers_replaced(stages, real, frozenset(clamps))
+        return _Done(stages, first, solution)
+
+    def _solved(self, part: Part, clamps: dict[str, Clamp]) -> Solution:
+        return solve(
+            part.prepared,
+            part.amplifiers,
+            self._fed,
+            self._settings,
+            self._exempt,
+            clamps,
+            self._options,
+        )
+
+    def _drafts(self, part: Part, solution: Solution) -> tuple[Stage, ...]:
+        own = frozenset(a.element.designator for a in part.amplifiers)
+        things = unseen_things(
+            self._circuit,
+            part.prepared.elements,
+            own,
+            part.prepared.unstated,
+            self._settings,
+            solution.answers,
+        )
+        things += swinging(solution.turning.unfollowed, part.amplifiers, solution.answers)
+        hertz = solution.tops[0] if solution.tops else MID_HERTZ
+        mid = solution.mid if hertz == MID_HERTZ else factor(solution.answers.network, hertz)
+        flags = spoiled(solution.answers, things, mid)
+        return drafts_of(solution, self._fed, self._settings, flags, frozenset(self._fed))
+
+
+def _unsolvable(error: SolveError, part: Part) -> Problem:
+    return Problem(
+        rule="netlist-no-solution",
+        message=error.what,
+        designators=tuple(a.designator for a in part.amplifiers),
+    )
+
+
+def _levels(solutions: Iterable[Solution]) -> Mapping[str, float]:
+    """Return the DC level of every net of the solved parts."""
+    levels = {}
+    for solution in solutions:
+        network, x = solution.answers.network, solution.answers.x
+        levels.update({net: float(x[row]) for net, row in network.rows.items()})
+    return levels
+
+
+def _islands(network: Network, prepared: Prepared) -> list[Remark]:
+    """Name the nets between capacitors: they have no DC level, whatever was solved round them."""
+    inputs = {net for a in network.amplifiers for net in (a.plus, a.minus)}
+    lost = network.floating - inputs
+    if not lost:
+        return []
+    on_net: dict[str, list[str]] = {net: [] for net in sorted(lost)}
+    others = set()
+    for element in prepared.elements:
+        if not element.fitted or element.kind == "K":
+            continue
+        for net in dict.fromkeys(element.nets):
+            if element.kind == "C" and net in lost:
+                on_net[net].append(element.designator)
+            else:
+                others.add(net)
+    return [
+        Remark(f"Capacitors in series ({' and '.join(names[:3])}) leave net {net} without DC level.")
+        for net, names in on_net.items()
+        if len(names) > 1 and net not in others
+    ]
 
 
 def _missing(prepared: Prepared, settings: Settings) -> list[Remark]:
@@ -121,11 +205,11 @@ def _missing(prepared: Prepared, settings: Settings) -> list[Remark]:
     return [Remark(message=f"{where} states what this deck does not have: {names}.")]
 
 
-def _conflicts(solution: Solution) -> list[Problem]:
+def _conflicts(network: Network) -> list[Problem]:
     """Turn voltages that contradict each other into problems, named by net and element."""
     problems = []
-    amplifiers = {a.designator for a in solution.amplifiers}
-    for designator, *nets in solution.answers.network.conflicts:
+    amplifiers = {a.designator for a in network.amplifiers}
+    for designator, *nets in network.conflicts:
         if designator in amplifiers:
             continue  # two outputs on one net are a matter of drive
         where = " and ".join(n for n in dict.fromkeys(nets) if n != GROUND)

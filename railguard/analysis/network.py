@@ -11,6 +11,7 @@ second; an amplifier's current counts as flowing out of it into its net.
 """
 
 from collections.abc import Iterable, Mapping, Sequence
+from functools import cached_property
 from types import MappingProxyType
 
 import msgspec
@@ -18,11 +19,15 @@ import numpy as np
 import numpy.typing as npt
 
 from railguard.analysis.recognise import Amplifier
+from railguard.analysis.sets import Sets
 from railguard.circuit.model import GROUND, Element
 
 Real = npt.NDArray[np.float64]
 Complex = npt.NDArray[np.complex128]
+Entries = list[tuple[int, int, float]]
 
+UNSTAMPED = frozenset({"open", "ic", "opaque", "X", "K"})
+"""Kinds that stand in no equation: two nets do not meet in them."""
 OPEN_LOOP_GAIN = 2e5
 """DC open-loop gain of an amplifier whose data sheet's is not in the catalogue: common practice."""
 WINDING_OHMS = 1e-3
@@ -112,19 +117,24 @@ class Network:
         self.injections: dict[str, Injection] = {}
         self.outputs: dict[str, int] = {}
         self.conflicts: list[tuple[str, ...]] = []
-        self._g: list[tuple[int, int, float]] = []
-        self._c: list[tuple[int, int, float]] = []
+        self._g: Entries = []
+        self._c: Entries = []
         self.amplifiers = tuple(amplifiers)
         self.forced = forced
         kept = [e for e in elements if e.fitted]
-        self._held = _Sets()
+        self._held = Sets()
         amplifier_elements = {id(a.element) for a in amplifiers}
         for element in kept:
-            for net in element.nets:
+            if element.kind in UNSTAMPED or id(element) in amplifier_elements:
+                continue
+            steering = element.control.nets if element.control is not None else ()
+            for net in (*element.nets, *steering):
                 self._row(net)
         for amplifier in amplifiers:
-            for net in (amplifier.plus, amplifier.minus, amplifier.output):
-                self._row(net)
+            pins = (amplifier.plus, amplifier.minus, amplifier.output)
+            for net in (*pins, amplifier.positive, amplifier.negative):
+                if net:
+                    self._row(net)
         self.net_count = len(self.rows)
         self._next = self.net_count
         later = []
@@ -145,8 +155,20 @@ class Network:
             self._g.append((0, 0, 1.0))
         self.size = max(self._next, 1)
         self.floating = self._find_floating()
-        self.g = _dense(self._g, self.size)
-        self.c = _dense(self._c, self.size)
+
+    @cached_property
+    def g(self) -> Real:
+        """The conductances, dense."""
+        return _dense(self._g, self.size)
+
+    @cached_property
+    def c(self) -> Real:
+        """The capacitances and inductances, dense."""
+        return _dense(self._c, self.size)
+
+    def entries(self) -> tuple[Entries, Entries]:
+        """Return G and C as (row, column, value) entries, those of one place to be added up."""
+        return self._g, self._c
 
     def row(self, net: str) -> int:
         """Return the row of a net's voltage; -1 for ground or a net nobody is on."""
@@ -307,7 +329,7 @@ class Network:
 
     def _find_floating(self) -> frozenset[str]:
         """Tie nets without a DC way to ground down, and return them."""
-        sets = _Sets()
+        sets = Sets()
         for branch in self.branches:
             sets.join(*branch.nets)
         names = {row: net for net, row in self.rows.items()} | {-1: GROUND}
@@ -345,31 +367,7 @@ def gain_bandwidth(amplifier: Amplifier) -> float | None:
     return listed.typical if listed.typical is not None else listed.guaranteed
 
 
-class _Sets:
-    """Nets joined into groups."""
-
-    def __init__(self) -> None:
-        self._parent: dict[str, str] = {}
-
-    def find(self, net: str) -> str:
-        parent = self._parent
-        root = net
-        while parent.get(root, root) != root:
-            root = parent[root]
-        while parent.get(net, net) != root:
-            parent[net], net = root, parent[net]
-        return root
-
-    def join(self, a: str, b: str) -> bool:
-        """Join two groups; False where they already were one."""
-        ra, rb = self.find(a), self.find(b)
-        if ra == rb:
-            return False
-        self._parent[ra] = rb
-        return True
-
-
-def _dense(entries: list[tuple[int, int, float]], size: int) -> Real:
+def _dense(entries: Entries, size: int) -> Real:
     matrix = np.zeros((size, size))
     if entries:
         i, j, v = zip(*entries, strict=True)

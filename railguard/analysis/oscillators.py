@@ -35,6 +35,7 @@ LARGEST_STACK = 500_000
 LADDER = 3
 """Capacitors it takes to turn a signal round by half a turn."""
 _BENDS = frozenset({"D", "Q", "J", "M"})
+_STEERED = frozenset({"E", "F", "G", "H", "B"})
 
 
 class Oscillators(msgspec.Struct, frozen=True):
@@ -80,6 +81,7 @@ def oscillators(
     alone = {name: found for name, found in around.items() if found is not None}
     if not alone:
         return Oscillators()
+    elements, amplifiers = _concerned(alone, elements, amplifiers, ways)
     ideal = [_ideal(a) for a in amplifiers]
     decades = np.log10(HIGHEST_HERTZ / LOWEST_HERTZ)
     swept = np.geomspace(LOWEST_HERTZ, HIGHEST_HERTZ, int(decades * POINTS_A_DECADE))
@@ -103,8 +105,47 @@ def oscillators(
         for k, a in enumerate(amplifiers)
         if a.designator in alone and abs(ratios[0, k].real) > 1.0 > abs(still[k])
     ) - frozenset(switching)
-    bent = {n for n in sine if any(e.kind in _BENDS for e in alone[n])}
+    bent = {n for n in sine if any(e.kind in _BENDS for e in alone[n].met)}
     return Oscillators(frozenset(switching), frozenset(sine) - ramps, ramps, ramps | bent)
+
+
+class _Loop(msgspec.Struct, frozen=True):
+    """What an amplifier's inputs hang on: elements met, and the amplifiers whose outputs were."""
+
+    met: tuple[Element, ...]
+    through: frozenset[str]
+
+
+def _concerned(
+    alone: Mapping[str, _Loop],
+    elements: tuple[Element, ...],
+    amplifiers: Sequence[Amplifier],
+    ways: Ways,
+) -> tuple[tuple[Element, ...], Sequence[Amplifier]]:
+    """Return what the loops in question consist of: a large circuit is not swept for a small loop.
+
+    Where a controlled source is about, its control may lie anywhere, so everything counts.
+    """
+    cards = {id(a.element) for a in amplifiers}
+    if any(
+        e.kind in _STEERED and id(e) not in cards and not e.designator.endswith(" output")
+        for e in elements
+    ):
+        return elements, amplifiers
+    names = set(alone).union(*(loop.through for loop in alone.values()))
+    inner = [a for a in amplifiers if a.designator in names]
+    met = {id(e): e for loop in alone.values() for e in loop.met}
+    nets = {net for e in met.values() for net in e.nets}
+    nets |= {net for a in inner for net in (a.plus, a.minus)}
+    for net in nets & ways.held:
+        met |= {id(e): e for e in ways.around.get(net, ()) if e.kind in ("V", "battery")}
+    own = {id(a.element) for a in inner}
+    bent = {e.designator.partition(" ")[0] for e in met.values() if e.kind in _BENDS}
+    return tuple(
+        e
+        for e in elements
+        if id(e) in met or id(e) in own or e.designator.partition(" ")[0] in bent
+    ), inner
 
 
 def _ideal(amplifier: Amplifier) -> Amplifier:
@@ -130,7 +171,7 @@ def _turns_round(ratio: Complex) -> bool:
 
 def _surroundings(
     amplifier: Amplifier, amplifiers: Sequence[Amplifier], ways: Ways, moved: set[str]
-) -> tuple[Element, ...] | None:
+) -> _Loop | None:
     """Return what reaches an amplifier's inputs, through others too; None where it cannot turn.
 
     It cannot where a signal reaches it, without a capacitor, and where its output comes back only
@@ -166,4 +207,6 @@ def _surroundings(
     if amplifier.designator not in through or not capacitors:
         return None
     comes_back = len(through) > 1 or ways.shortest(amplifier.output, amplifier.plus) is not None
-    return tuple(met.values()) if comes_back or capacitors >= LADDER else None
+    if not comes_back and capacitors < LADDER:
+        return None
+    return _Loop(tuple(met.values()), frozenset(through))

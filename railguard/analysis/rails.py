@@ -10,7 +10,6 @@ from collections.abc import Iterable, Mapping
 from typing import Literal
 
 from railguard.analysis.dcpaths import leaves_sheet
-from railguard.analysis.ranges import Answers
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.stage import Capacitor, Package, Rail, Range
 from railguard.analysis.supplies import DEFAULT_RAIL_TOLERANCE, Feed
@@ -141,10 +140,13 @@ def rails_of(
     feeds: Mapping[str, Feed],
     elements: Iterable[Element],
     amplifiers: Iterable[Amplifier],
-    answers: Answers | None,
+    levels: Mapping[str, float],
     settings: Settings,
 ) -> tuple[Rail, ...]:
-    """Return every rail. `answers` None: the circuit could not be solved, levels stay as stated."""
+    """Return every rail.
+
+    levels  DC level of every net that was solved; a rail's own statement stands where it was not
+    """
     amplifiers = tuple(amplifiers)
     own = frozenset(a.element.designator for a in amplifiers)
     rail_map = RailMap(elements, signs)
@@ -157,7 +159,7 @@ def rails_of(
     for net, sign in signs.items():
         feed = feeds[net]
         share, stated = rail_tolerance(feed, settings)
-        level = _level(net, feed, answers)
+        level = _level(net, feed, levels)
         decoupling, across, upstream = rail_map.capacitors(net)
         span = abs(level) * share if level is not None else 0.0
         rails.append(
@@ -179,20 +181,15 @@ def rails_of(
                 ideal=bool(feed.source) and not feed.series,
                 series=feed.series,
                 feed=_feed_word(net, feed, rail_map, own),
-                drop=_drop(net, feed, answers),
+                drop=_drop(net, feed, levels),
                 location=_place(net, feed, rail_map),
             )
         )
     return tuple(rails)
 
 
-def _level(net: str, feed: Feed, answers: Answers | None) -> float | None:
-    if not feed.held:
-        return None
-    if answers is None:
-        return feed.level
-    row = answers.network.row(net)
-    return float(answers.x[row]) if row >= 0 else None
+def _level(net: str, feed: Feed, levels: Mapping[str, float]) -> float | None:
+    return levels.get(net, feed.level) if feed.held else None
 
 
 def _feed_word(
@@ -212,15 +209,13 @@ def _feed_word(
     return "nothing"
 
 
-def _drop(net: str, feed: Feed, answers: Answers | None) -> float | None:
-    if answers is None or not feed.held:
+def _drop(net: str, feed: Feed, levels: Mapping[str, float]) -> float | None:
+    if net not in levels or not feed.held:
         return None
     if not feed.series or not feed.at:
         return 0.0
-    here, there = answers.network.row(net), answers.network.row(feed.at)
-    if here < 0 or there < 0:
-        return None
-    return abs(float(answers.x[there] - answers.x[here]))
+    there = levels.get(feed.at)
+    return None if there is None else abs(there - levels[net])
 
 
 def _place(net: str, feed: Feed, rail_map: RailMap) -> Location | None:

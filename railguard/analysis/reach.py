@@ -51,7 +51,7 @@ def gains_of(view: View) -> tuple[tuple[str, float], ...]:
     mid = view.solution.mid.adjoint([row])[0]
     gains = []
     for entry in view.solution.prepared.entries:
-        if entry.unit != "V" or any(name not in network.injections for name, _ in entry.drives):
+        if entry.unit != "V" or not any(name in network.injections for name, _ in entry.drives):
             continue
         b = network.right_hand_side(entry.drives)
         at_dc, at_mid = float((dc @ b).real), complex(mid @ b)

@@ -36,7 +36,6 @@ from railguard.analysis.surroundings import (
     MID_HERTZ,
     Passive,
     Ways,
-    bridge_resistors,
     passive_view,
 )
 from railguard.analysis.thermal import bias_current
@@ -91,13 +90,15 @@ def solve(
     amplifiers: tuple[Amplifier, ...],
     feeds: Mapping[str, Feed],
     settings: Settings,
+    exempt: frozenset[str] = frozenset(),
     clamps: Mapping[str, Clamp] = MappingProxyType({}),
     options: Options | None = None,
 ) -> Solution:
-    """Solve a circuit.
+    """Solve a circuit, or a part of one.
 
+    exempt   designators that have no default tolerance
+    clamps   outputs that cannot follow: each is held to what it reaches, at its own frequency
     options  how the corners are worked out
-    clamps  outputs that cannot follow: each is held to what it reaches, at its own frequency
 
     Raises  SolveError
     """
@@ -124,7 +125,7 @@ def solve(
     signs, through = _through_diodes(elements, amplifiers, signs)
     swept = msgspec.structs.replace(swept, dc=signs)
     options = options or Options()
-    off = _spread(answers, prepared, amplifiers, feeds, settings)
+    off = _spread(answers, prepared, amplifiers, feeds, settings, exempt)
     return Solution(
         exact=options.exact,
         sampled=monte_carlo(answers, off, options.samples, options.seed)
@@ -264,8 +265,8 @@ def _spread(
     amplifiers: tuple[Amplifier, ...],
     feeds: Mapping[str, Feed],
     settings: Settings,
+    exempt: frozenset[str],
 ) -> Spread:
-    exempt = bridge_resistors(prepared.elements, amplifiers)
     rails: dict[str, tuple[float, float, bool]] = {}
     volts = {d.injection: d.value for d in prepared.levels}
     holders = {

@@ -49,10 +49,14 @@ class _Sparse:
         from scipy.sparse import csc_matrix
         from scipy.sparse.linalg import splu
 
-        matrix = csc_matrix(network.g + s * network.c)
+        g, c = network.entries()
+        rows, columns, values = (np.array(part) for part in zip(*g, *c, strict=True))
+        values = values.astype(np.complex128)
+        values[len(g) :] *= s
+        matrix = csc_matrix((values, (rows, columns)), shape=(network.size, network.size))
         self._size = network.size
         try:
-            self._factor = splu(matrix.astype(np.complex128))
+            self._factor = splu(matrix)
         except RuntimeError as error:
             raise SolveError("The circuit's equations have no single answer.") from error
 

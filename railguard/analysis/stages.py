@@ -1,11 +1,10 @@
 """Each amplifier's stage, read from the solved circuit."""
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 
 import msgspec
 import numpy as np
 
-from railguard.analysis.allowed import allowed_inputs
 from railguard.analysis.filters import filter_of
 from railguard.analysis.inputs import inputs_of
 from railguard.analysis.loops import OPEN_BETA, Margin, loop_of
@@ -15,6 +14,7 @@ from railguard.analysis.reach import band_of, gains_of, high_pass_of, is_ac_coup
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.solution import Solution, stated_use
 from railguard.analysis.stage import (
+    Allowed,
     Inputs,
     Loop,
     Output,
@@ -40,18 +40,26 @@ WEAK = 1e-6
 """A share of an output below this at an input is no connection."""
 
 
-def stages_of(
+def drafts_of(
     solution: Solution,
     feeds: Mapping[str, Feed],
     settings: Settings,
     spoiled: list[Spoiled],
     rails: frozenset[str],
 ) -> tuple[Stage, ...]:
-    """Build the stage of every amplifier of a solved circuit."""
+    """Build the stage of every amplifier of a solved part, without what other parts add to it."""
     views = [View(solution, k, spoiled) for k in range(len(solution.amplifiers))]
     after = [_after(view) for view in views]
-    drafts = [_stage(view, feeds, settings, rails, after) for view in views]
-    allowed = allowed_inputs(solution, drafts)
+    return tuple(_stage(view, feeds, settings, rails, after) for view in views)
+
+
+def finished(
+    drafts: Sequence[Stage], allowed: Mapping[str, Allowed], settings: Settings
+) -> tuple[Stage, ...]:
+    """Add what takes all stages of a circuit: the input allowed, a package's heat, names of three.
+
+    allowed  by designator
+    """
     heat = package_heat(drafts)
     names = instrumentation(
         {stage.designator: stage.topology for stage in drafts},
