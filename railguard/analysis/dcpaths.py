@@ -103,7 +103,17 @@ class DcMap:
 def _leaves(element: Element) -> bool:
     if element.designator.upper().lstrip("X").startswith("TP"):
         return False  # a test point is a place to put a probe, nothing comes from it
+    if element.kind in ("G", "F") and is_linear(element):
+        return False  # its current is a factor of another quantity: the equations hold it
     return element.kind in _UNSEEN
+
+
+def is_linear(element: Element) -> bool:
+    """Tell whether a controlled source (E, F, G, H) is a plain factor of what steers it."""
+    control = element.control
+    if control is None or control.gain is None:
+        return False
+    return bool(control.element) if element.kind in ("F", "H") else len(control.nets) == 2
 
 
 def leaves_sheet(element: Element) -> bool:

@@ -8,11 +8,12 @@ from railguard.analysis.allowed import allowed_inputs
 from railguard.analysis.clamping import clamps_of, followers_replaced
 from railguard.analysis.kind import kind_of
 from railguard.analysis.network import Network
-from railguard.analysis.parts import Part, independent
+from railguard.analysis.parts import Part, independent, source_levels
 from railguard.analysis.rails import packages_of, rails_of
 from railguard.analysis.ranges import Clamp
 from railguard.analysis.recognise import recognise
 from railguard.analysis.signals import Prepared, prepare
+from railguard.analysis.singular import explained
 from railguard.analysis.solution import Options, Solution, solve
 from railguard.analysis.solve import factor
 from railguard.analysis.stage import Design, Stage, Unrecognised
@@ -25,6 +26,11 @@ from railguard.devices.catalogue import Catalogue
 from railguard.errors import SolveError
 from railguard.notices import Problem, Remark
 from railguard.settings.model import Settings
+
+LARGEST_EXPLAINED = 1500
+"""Unknowns up to which a singular part is taken apart: beyond, that costs more than the review."""
+SHORTED_VOLTS = 1e-3
+"""V across an inductor at DC from which the sources at its ends are shorted by it."""
 
 
 def analyse(
@@ -46,7 +52,8 @@ def analyse(
     remarks = [*circuit.remarks, *found.remarks, *_missing(prepared, settings)]
     if solved:
         whole = Network(prepared.elements, found.amplifiers)
-        problems += _conflicts(whole)
+        problems += _conflicts(whole, prepared)
+        problems += _shorted(prepared)
         remarks += _islands(whole, prepared)
     return Design(
         circuit=circuit,
@@ -116,9 +123,9 @@ class _Worker:
         try:
             solution = self._solved(part, {})
         except SolveError as error:
+            problem = _unsolvable(error, part)
             return _Done(
-                unsolved(part.amplifiers, error.what, self._settings),
-                problems=(_unsolvable(error, part),),
+                unsolved(part.amplifiers, problem.message, self._settings), problems=(problem,)
             )
         first = stages = self._drafts(part, solution)
         clamps: dict[str, Clamp] = {}
@@ -157,10 +164,20 @@ class _Worker:
 
 
 def _unsolvable(error: SolveError, part: Part) -> Problem:
+    """Say which nets and elements leave a part without an answer; the other parts have theirs."""
+    network = Network(part.prepared.elements, part.amplifiers)
+    if network.size > LARGEST_EXPLAINED:
+        names = tuple(a.designator for a in part.amplifiers)
+        return Problem(rule="netlist-no-solution", message=error.what, designators=names)
+    why, elements, nets = explained(network, part.prepared.elements)
+    place = next((e.location for e in part.prepared.elements if e.designator in elements), None)
     return Problem(
         rule="netlist-no-solution",
-        message=error.what,
-        designators=tuple(a.designator for a in part.amplifiers),
+        message=why,
+        remedy="Give the net a resistance to a defined level, or take one of the sources out.",
+        location=place,
+        designators=tuple(elements),
+        nets=tuple(nets),
     )
 
 
@@ -189,11 +206,14 @@ def _islands(network: Network, prepared: Prepared) -> list[Remark]:
                 on_net[net].append(element.designator)
             else:
                 others.add(net)
-    return [
-        Remark(f"Capacitors in series ({' and '.join(names[:3])}) leave net {net} without DC level.")
-        for net, names in on_net.items()
-        if len(names) > 1 and net not in others
-    ]
+    remarks = []
+    for net, names in on_net.items():
+        if len(names) > 1 and net not in others:
+            shown = " and ".join(names[:3])
+            remarks.append(
+                Remark(f"Capacitors in series ({shown}) leave net {net} without DC level.")
+            )
+    return remarks
 
 
 def _missing(prepared: Prepared, settings: Settings) -> list[Remark]:
@@ -205,10 +225,11 @@ def _missing(prepared: Prepared, settings: Settings) -> list[Remark]:
     return [Remark(message=f"{where} states what this deck does not have: {names}.")]
 
 
-def _conflicts(network: Network) -> list[Problem]:
+def _conflicts(network: Network, prepared: Prepared) -> list[Problem]:
     """Turn voltages that contradict each other into problems, named by net and element."""
     problems = []
     amplifiers = {a.designator for a in network.amplifiers}
+    places = {e.designator: e.location for e in prepared.elements} if network.conflicts else {}
     for designator, *nets in network.conflicts:
         if designator in amplifiers:
             continue  # two outputs on one net are a matter of drive
@@ -218,8 +239,35 @@ def _conflicts(network: Network) -> list[Problem]:
                 rule="netlist-sources-fight",
                 message=f"{designator} sets a voltage at {where} that other sources already set.",
                 remedy="Put a resistance in series, or take one of them out.",
+                location=places.get(designator),
                 designators=(designator,),
                 nets=tuple(nets),
             )
         )
+    return problems
+
+
+def _shorted(prepared: Prepared) -> list[Problem]:
+    """Name the inductors that stand across ideal sources of different levels: a short at DC."""
+    coils = [e for e in prepared.elements if e.kind == "L" and e.fitted and len(e.nets) >= 2]
+    if not coils:
+        return []
+    levels = source_levels(prepared)
+    problems = []
+    for coil in coils:
+        a, b = coil.nets[:2]
+        if a in levels and b in levels and abs(levels[a] - levels[b]) > SHORTED_VOLTS:
+            where = " and ".join(net for net in (a, b) if net != GROUND)
+            volts = abs(levels[a] - levels[b])
+            problems.append(
+                Problem(
+                    rule="netlist-sources-fight",
+                    message=f"{coil.designator} shorts the {volts:.4g} V that sources set at "
+                    f"{where}: at DC an inductor is a wire.",
+                    remedy="Put a resistance in series with it.",
+                    location=coil.location,
+                    designators=(coil.designator,),
+                    nets=(a, b),
+                )
+            )
     return problems

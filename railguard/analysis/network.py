@@ -282,12 +282,15 @@ class Network:
         sensed = next(
             (b.row for b in self.branches if control and b.designator == control.element), None
         )
-        if control is None or control.gain is None or sensed is None:
-            return
         if element.kind == "H":
             row = self._branch(element.designator, "H", element.nets[0], element.nets[1])
-            if row is not None:
+            if row is None:
+                return
+            self.injections[element.designator] = Injection(element.designator, row, -1, -1)
+            if control is not None and control.gain is not None and sensed is not None:
                 self._g.append((row, sensed, -control.gain))
+            return
+        if control is None or control.gain is None or sensed is None:
             return
         for net, sign in zip(element.nets, (1.0, -1.0), strict=False):
             at = self.row(net)

@@ -119,9 +119,9 @@ class _Loop(msgspec.Struct, frozen=True):
 def _concerned(
     alone: Mapping[str, _Loop],
     elements: tuple[Element, ...],
-    amplifiers: Sequence[Amplifier],
+    amplifiers: tuple[Amplifier, ...],
     ways: Ways,
-) -> tuple[tuple[Element, ...], Sequence[Amplifier]]:
+) -> tuple[tuple[Element, ...], tuple[Amplifier, ...]]:
     """Return what the loops in question consist of: a large circuit is not swept for a small loop.
 
     Where a controlled source is about, its control may lie anywhere, so everything counts.
@@ -133,7 +133,7 @@ def _concerned(
     ):
         return elements, amplifiers
     names = set(alone).union(*(loop.through for loop in alone.values()))
-    inner = [a for a in amplifiers if a.designator in names]
+    inner = tuple(a for a in amplifiers if a.designator in names)
     met = {id(e): e for loop in alone.values() for e in loop.met}
     nets = {net for e in met.values() for net in e.nets}
     nets |= {net for a in inner for net in (a.plus, a.minus)}

@@ -22,7 +22,7 @@ _SOURCES = frozenset({"V", "battery"})
 class Part(msgspec.Struct, frozen=True):
     """Elements and amplifiers that can be solved without the rest.
 
-    prepared  with the part's elements only; what drives the others has no injection here
+    prepared  with the part's elements and tones only; other levels have no injection here
     """
 
     prepared: Prepared
@@ -92,6 +92,25 @@ def _stiff(elements: list[Element]) -> frozenset[str]:
     return frozenset(held)
 
 
+def source_levels(prepared: Prepared) -> dict[str, float]:
+    """Return the DC level of every net that ideal sources hold, V; ground is 0."""
+    volts = {drive.injection: drive.value for drive in prepared.levels}
+    sources = [e for e in prepared.elements if e.kind in _SOURCES and e.designator in volts]
+    levels = {GROUND: 0.0}
+    grown = True
+    while grown:
+        grown = False
+        for source in sources:
+            a, b = source.nets[:2]
+            if a not in levels and b in levels:
+                levels[a] = levels[b] + volts[source.designator]
+                grown = True
+            elif b not in levels and a in levels:
+                levels[b] = levels[a] - volts[source.designator]
+                grown = True
+    return levels
+
+
 def _parts(
     prepared: Prepared,
     elements: list[Element],
@@ -126,7 +145,10 @@ def _parts(
         places |= _holding(touched & stiff, holders, elements)
         places |= {places_of[id(a.element)] for a in mates if id(a.element) in places_of}
         chosen = tuple(elements[place] for place in sorted(places))
-        parts.append(Part(msgspec.structs.replace(prepared, elements=chosen), tuple(mates)))
+        names = {element.designator for element in chosen}
+        tones = tuple(t for t in prepared.tones if any(name in names for name, _ in t.drives))
+        own_prepared = msgspec.structs.replace(prepared, elements=chosen, tones=tones)
+        parts.append(Part(own_prepared, tuple(mates)))
     return tuple(parts)
 
 

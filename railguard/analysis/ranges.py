@@ -83,7 +83,12 @@ class Answers(msgspec.Struct, frozen=True, kw_only=True):
 
     def at(self, amplifier: int, quantity: str) -> int:
         """Return the index of one amplifier's quantity."""
-        return amplifier * len(QUANTITIES) + QUANTITIES.index(quantity)
+        return quantity_at(amplifier, quantity)
+
+
+def quantity_at(amplifier: int, quantity: str) -> int:
+    """Return the index of one amplifier's quantity."""
+    return amplifier * len(QUANTITIES) + QUANTITIES.index(quantity)
 
 
 def quantity_rows(network: Network, amplifiers: tuple[Amplifier, ...]) -> Index:
@@ -105,7 +110,7 @@ def answer(
     network: Network,
     amplifiers: tuple[Amplifier, ...],
     prepared: Prepared,
-    draws: dict[str, float],
+    draws: Mapping[str, float],
     held: Mapping[str, Clamp],
 ) -> Answers:
     """Solve the circuit for every level and tone.
@@ -116,15 +121,7 @@ def answer(
     Raises  SolveError
     """
     rows = quantity_rows(network, amplifiers)
-    levels = [(d.injection, complex(d.value)) for d in prepared.levels]
-    levels += [(name, complex(clamp.middle)) for name, clamp in held.items()]
-    b = network.right_hand_side(levels)
-    for net, amps in draws.items():
-        row = network.row(net)
-        if row >= 0:
-            b[row] -= amps
-    dc = factor(network, 0.0)
-    x = dc.forward(b).real
+    dc, x = _standing(network, prepared, draws, held)
     level = picked(x, rows)
     tones = [*prepared.tones]
     for name, clamp in held.items():
@@ -149,6 +146,34 @@ def answer(
         slew=slew,
         tones=answers,
     )
+
+
+def standing_levels(
+    network: Network,
+    amplifiers: tuple[Amplifier, ...],
+    prepared: Prepared,
+    draws: Mapping[str, float],
+) -> Real:
+    """Return the DC value of every quantity, shape (amplifiers * 6,); as `answer`, no tones."""
+    _, x = _standing(network, prepared, draws, {})
+    return picked(x, quantity_rows(network, amplifiers))
+
+
+def _standing(
+    network: Network,
+    prepared: Prepared,
+    draws: Mapping[str, float],
+    held: Mapping[str, Clamp],
+) -> tuple[Factor, Real]:
+    levels = [(d.injection, complex(d.value)) for d in prepared.levels]
+    levels += [(name, complex(clamp.middle)) for name, clamp in held.items()]
+    b = network.right_hand_side(levels)
+    for net, amps in draws.items():
+        row = network.row(net)
+        if row >= 0:
+            b[row] -= amps
+    dc = factor(network, 0.0)
+    return dc, dc.forward(b).real
 
 
 def picked(x: Real, rows: Index) -> Real:

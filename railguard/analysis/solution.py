@@ -26,7 +26,7 @@ from railguard.analysis.loops import (
 from railguard.analysis.network import Network, Real, open_loop_gain
 from railguard.analysis.oscillators import Oscillators, oscillators
 from railguard.analysis.rails import rail_tolerance
-from railguard.analysis.ranges import Answers, Clamp, answer
+from railguard.analysis.ranges import Answers, Clamp, answer, quantity_at, standing_levels
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.sampling import Sampled, monte_carlo
 from railguard.analysis.signals import Prepared
@@ -116,10 +116,11 @@ def solve(
         network = Network(prepared.elements, amplifiers, forced, known)
         loop_network = Network(elements, amplifiers, forced, known) if bent else network
     draws = _quiescent(amplifiers, feeds)
-    answers = answer(network, amplifiers, prepared, draws, {})
+    held: dict[str, Clamp] = {}
     if forced:
-        held = {**_limits(answers, forced), **clamps}
-        answers = answer(network, amplifiers, prepared, draws, held)
+        levels = standing_levels(network, amplifiers, prepared, draws)
+        held = {**_limits(amplifiers, levels, forced), **clamps}
+    answers = answer(network, amplifiers, prepared, draws, held)
     tops = tuple(sorted({t.top for t in prepared.tones if t.top > 0}))
     swept = sweep(loop_network, tops)
     signs, through = _through_diodes(elements, amplifiers, signs)
@@ -196,14 +197,19 @@ def _quiescent(amplifiers: tuple[Amplifier, ...], feeds: Mapping[str, Feed]) -> 
     return draws
 
 
-def _limits(answers: Answers, forced: frozenset[str]) -> dict[str, Clamp]:
-    """Return middle and half range of each forced output, V: its limits on its rails, unloaded."""
+def _limits(
+    amplifiers: tuple[Amplifier, ...], levels: Real, forced: frozenset[str]
+) -> dict[str, Clamp]:
+    """Return middle and half range of each forced output, V: its limits on its rails, unloaded.
+
+    levels  DC value of every quantity
+    """
     held: dict[str, Clamp] = {}
-    for k, amplifier in enumerate(answers.amplifiers):
+    for k, amplifier in enumerate(amplifiers):
         if amplifier.designator not in forced or not amplifier.has_supply:
             continue
-        positive = float(answers.level[answers.at(k, "positive")])
-        negative = float(answers.level[answers.at(k, "negative")])
+        positive = float(levels[quantity_at(k, "positive")])
+        negative = float(levels[quantity_at(k, "negative")])
         device = amplifier.match.device
         if positive <= negative:
             continue

@@ -4,9 +4,11 @@ Dense numpy up to a few hundred unknowns; above that scipy's sparse factorisatio
 then because the import alone costs as much as a whole review.
 """
 
+from collections.abc import Iterator
 from typing import Protocol
 
 import numpy as np
+from numpy.lib.stride_tricks import sliding_window_view
 
 from railguard.analysis.network import Complex, Network, Real
 from railguard.errors import SolveError
@@ -77,43 +79,72 @@ def factor(network: Network, hertz: float) -> Factor:
     Raises  SolveError: no single answer (the network ties floating nets down, so this means
             sources that contradict each other in a way a search through the nets does not see)
     """
-    s = 2j * np.pi * hertz
+    return factor_at(network, 2j * np.pi * hertz)
+
+
+def factor_at(network: Network, s: complex) -> Factor:
+    """Factor the network at one point of the complex frequency, 1/s. Raises as `factor`."""
     if network.size <= DENSE_LIMIT:
-        matrix = network.g if hertz == 0 else network.g + s * network.c
+        real = s.imag == 0
+        matrix = network.g + (s.real if real else s) * network.c if s else network.g
         return _Dense(np.asarray(matrix))
     return _Sparse(network, s)
 
 
-class TimeStep:
-    """One factorised step of a linear transient, and the state it starts from."""
+STRETCH_ENTRIES = 400_000
+"""Numbers held to take several steps at once: 3 MB."""
+LONGEST_STRETCH = 64
+
+
+class Stepper:
+    """A linear transient in equal steps, many of them at once.
+
+    A step is x' = A x + v d with A = M^-1 C/h and v = M^-1 b, so K steps from one state are K
+    powers of A, worked out once, and the steps' own drives folded with A^k v.
+    """
 
     def __init__(self, network: Network, seconds: float) -> None:
-        """Factor G + C/h (dense; sparse circuits use scipy's factors)."""
+        """Factor M = G + C/h."""
         self._steady = factor(network, 0.0)
-        self._inverse: Real | None = None
-        if network.size <= DENSE_LIMIT:
-            try:
-                self._inverse = np.asarray(np.linalg.inv(network.g + network.c / seconds))
-            except np.linalg.LinAlgError as error:
-                raise SolveError("The circuit's equations have no single answer.") from error
-        else:
-            # A step of h seconds is the matrix at s = 1/h.
-            self._sparse = _Sparse(network, 1.0 / seconds)
+        # A step of h seconds is the matrix at s = 1/h.
+        self._step = factor_at(network, 1.0 / seconds)
+        self._history = network.c / seconds
+        self._size = network.size
 
     def steady(self, b: Real) -> Real:
         """Return the state that a standing right-hand side leads to."""
         return self._steady.forward(b.astype(np.complex128)).real
 
-    def step(self, b: Real) -> Real:
-        """Return the next state."""
-        if self._inverse is not None:
-            return np.asarray(self._inverse @ b)
-        return self._sparse.forward(b.astype(np.complex128)).real
+    def along(self, x: Real, b: Real, drive: Real) -> Iterator[Real]:
+        """Yield the states one stretch of steps after the other, shape (steps, unknowns).
 
-
-def transient_factor(network: Network, seconds: float) -> tuple[TimeStep, Real]:
-    """Return the factorised step of a linear transient, and C/h for the history term."""
-    return TimeStep(network, seconds), network.c / seconds
+        x      state before the first step
+        b      right-hand side for a drive of one
+        drive  its value at each step
+        """
+        v = self._step.forward(b.astype(np.complex128)).real
+        advance = self._step.forward(self._history.astype(np.complex128)).real
+        # Only what stores energy remembers: the other columns of A are zero.
+        kept = np.flatnonzero(np.any(self._history != 0, axis=0))
+        advance = advance[:, kept]
+        room = STRETCH_ENTRIES // max(self._size * max(len(kept), 1), 1)
+        stretch = int(min(max(room, 1), LONGEST_STRETCH, len(drive)))
+        powers, answers = [advance], [v]
+        for _ in range(stretch - 1):
+            answers.append(advance @ answers[-1][kept])
+            powers.append(advance @ powers[-1][kept])
+        stacked = np.concatenate(powers)
+        response = np.array(answers)
+        for start in range(0, len(drive), stretch):
+            part = drive[start : start + stretch]
+            count = len(part)
+            own = (stacked[: count * self._size] @ x[kept]).reshape(count, self._size)
+            # Row n is the sum of d[k] A^(n-k) v over the steps k up to n.
+            padded = np.concatenate([np.zeros(count - 1), part])
+            folded = sliding_window_view(padded, count)[:, ::-1] @ response[:count]
+            states = own + folded
+            yield states
+            x = states[-1]
 
 
 def return_ratios(network: Network, hertz: np.ndarray[tuple[int], np.dtype[np.float64]]) -> Complex:

@@ -11,7 +11,7 @@ import msgspec
 import numpy as np
 
 from railguard.analysis.network import Network, Real
-from railguard.analysis.solve import transient_factor
+from railguard.analysis.solve import Stepper
 from railguard.circuit.sources import (
     AmplitudeModulated,
     Exponential,
@@ -143,16 +143,16 @@ def excursion(network: Network, injection: str, wave: Wave, mean: float) -> Excu
     times = np.linspace(0.0, length, count + 1)
     drive = value_at(wave, times) - mean
     b = network.right_hand_side([(injection, 1.0)]).real
-    solve, history = transient_factor(network, step)
-    x = solve.steady(b * drive[0])
+    march = Stepper(network, step)
+    x = march.steady(b * drive[0])
     highest, lowest, steepest = x.copy(), x.copy(), np.zeros(network.size)
     with np.errstate(over="ignore", invalid="ignore"):
-        for n in range(1, count + 1):
-            new = solve.step(history @ x + b * drive[n])
-            np.maximum(steepest, np.abs(new - x), out=steepest)
-            np.maximum(highest, new, out=highest)
-            np.minimum(lowest, new, out=lowest)
-            x = new
+        for states in march.along(x, b, drive[1:]):
+            slopes = np.abs(np.diff(states, axis=0, prepend=x[None, :]))
+            np.maximum(steepest, slopes.max(axis=0), out=steepest)
+            np.maximum(highest, states.max(axis=0), out=highest)
+            np.minimum(lowest, states.min(axis=0), out=lowest)
+            x = states[-1]
     if not np.all(np.isfinite(steepest)) or not np.all(np.isfinite(highest - lowest)):
         return None
     return Excursion(np.maximum(highest, 0.0), np.maximum(-lowest, 0.0), steepest / step)

@@ -12,7 +12,7 @@ from collections.abc import Iterable
 import msgspec
 import numpy as np
 
-from railguard.analysis.dcpaths import leaves_sheet
+from railguard.analysis.dcpaths import is_linear, leaves_sheet
 from railguard.analysis.network import Complex, Network, Real
 from railguard.analysis.ranges import QUANTITIES, Answers
 from railguard.analysis.recognise import Amplifier
@@ -37,8 +37,8 @@ _ZENER = re.compile(
 class Unseen(msgspec.Struct, frozen=True, kw_only=True):
     """One thing the netlist does not tell.
 
-    sort  "signal" (no amplitude stated), "load" (the net leaves the sheet) or "bend" (follows no
-          straight line)
+    sort  "signal" (no amplitude stated), "load" (the net leaves the sheet), "bend" (follows no
+          straight line) or "floating" (nothing sets its DC level)
     rows  (row, sign) entries of b for one unit of it
     volts True: the unit is a volt; False: an ampere
     net   where it acts
@@ -91,9 +91,11 @@ def unseen_things(
             found += _diode(element, circuit, answers)
         elif element.kind in ("Q", "J", "M"):
             found += _transistor(element, network)
+        elif element.kind in ("B", "E", "G", "F", "H") and not is_linear(element):
+            found += _expression(element, network, told)
         elif leaves_sheet(element):
             found += _leaving(element, network, told)
-    return tuple(found)
+    return (*found, *_floating(network))
 
 
 def swinging(
@@ -114,17 +116,48 @@ def swinging(
     )
 
 
+def _expression(element: Element, network: Network, told: set[str]) -> list[Unseen]:
+    """Return a source whose relation is more than a plain factor; what is stated needs none."""
+    nets = [net for net in dict.fromkeys(element.nets[:2]) if net not in told]
+    injection = network.injections.get(element.designator)
+    if injection is not None and injection.row >= 0:
+        rows: tuple[tuple[int, float], ...] = ((injection.row, 1.0),)
+    else:
+        rows = tuple((row, 1.0) for net in nets if (row := network.row(net)) >= 0)[:1]
+    if not rows or not nets:
+        return []
+    return [
+        Unseen(
+            sort="bend",
+            why=f"{element.designator} is an expression the built-in solver does not work out",
+            add=f'[nets] "{nets[0]}", or --engine ngspice',
+            rows=rows,
+            volts=injection is not None,
+            net=nets[0],
+        )
+    ]
+
+
+def _floating(network: Network) -> list[Unseen]:
+    """Return the inputs that nothing holds at DC: they have no level to be worked out."""
+    inputs = dict.fromkeys(
+        net for a in network.amplifiers for net in (a.plus, a.minus) if net in network.floating
+    )
+    return [
+        Unseen(
+            sort="floating",
+            why=f"net {net} has no DC path, so nothing sets its level",
+            add=f"a resistor from {net} to a defined level",
+            rows=((network.row(net), 1.0),),
+            volts=False,
+            net=net,
+        )
+        for net in inputs
+    ]
+
+
 def _leaving(element: Element, network: Network, told: set[str]) -> list[Unseen]:
     found = []
-    if element.kind == "B" and element.designator in network.injections:
-        row = network.injections[element.designator].row
-        why = f"{element.designator} is an expression the built-in solver does not work out"
-        add = f'[nets] "{element.nets[0]}", or --engine ngspice'
-        return [
-            Unseen(
-                sort="bend", why=why, add=add, rows=((row, 1.0),), volts=True, net=element.nets[0]
-            )
-        ]
     for net in dict.fromkeys(element.nets):
         row = network.row(net)
         if row < 0 or net in told:
@@ -218,7 +251,8 @@ def spoiled(answers: Answers, things: tuple[Unseen, ...], mid: Factor | None) ->
     dc = answers.dc.adjoint(rows)
     ac = dc if mid is None else mid.adjoint(rows)
     moved_dc = _moved(dc, things)
-    moved_ac = _moved(ac, things)
+    # What has no DC path moves freely at DC only; at signal frequencies its capacitors hold it.
+    moved_ac = _moved(ac, things) & np.array([t.sort != "floating" for t in things])
     return [
         Spoiled(
             tuple(t for k, t in enumerate(things) if moved_dc[q, k]),
