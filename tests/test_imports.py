@@ -24,6 +24,7 @@ ORDER = (
     ("review",),  # the shim, for a few hours
     ("simulated",),
     ("report",),
+    ("audit",),
     ("commands", "plugins"),
 )
 """Left to right; rooms of one step do not know each other."""

@@ -22,6 +22,11 @@ _COMMANDS = {
         "Print every op-amp with its numbers, as evidence.",
     ),
     "hook": ("railguard.commands.hook.command", "hook", "Review what is about to be committed."),
+    "audit": (
+        "railguard.commands.audit",
+        "audit",
+        "Review a whole archive of designs, and see what changed.",
+    ),
     "rules": ("railguard.commands.rules", "rules", "List the rules, or explain one."),
     "devices": (
         "railguard.commands.devices",

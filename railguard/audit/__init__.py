@@ -1,0 +1,1 @@
+"""An archive of old designs: found, reviewed in bounded workers, kept in one SQLite file."""

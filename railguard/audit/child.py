@@ -1,0 +1,97 @@
+"""A worker: a process of its own that reviews one file after another inside a budget.
+
+Run as `python -m railguard.audit.child FD`; FD is one end of a pipe. Messages in: the plan, then
+lists of tasks. Messages out: Ready, then for each file Began (where it is reviewed) and Outcome.
+"""
+
+import gc
+import os
+import resource
+import sys
+from multiprocessing.connection import Connection
+
+import msgspec
+
+from railguard.audit.build import identity
+from railguard.audit.examine import Examiner
+from railguard.audit.wire import Began, Message, Outcome, Plan, Ready, Task
+
+SPENT = 75
+"""Exit status of a worker that has used up its memory, has said so, and wants to be replaced."""
+
+_PAGE = resource.getpagesize()
+_UNLIMITED = resource.RLIM_INFINITY
+
+
+def main() -> None:
+    """Serve the pipe until it closes."""
+    pipe = Connection(int(sys.argv[1]))
+    try:
+        _serve(pipe)
+    except (EOFError, BrokenPipeError, ConnectionResetError):
+        # The parent has gone; what it has not got will be asked for again.
+        os._exit(0)
+
+
+def _serve(pipe: Connection) -> None:
+    plan = msgspec.msgpack.decode(pipe.recv_bytes(), type=Plan)
+    examiner = Examiner(plan)
+    encode = msgspec.msgpack.Encoder().encode
+    tasks = msgspec.msgpack.Decoder(list[Task])
+
+    def send(message: Message) -> None:
+        pipe.send_bytes(encode(message))
+
+    send(Ready(identity()))
+    _limit_memory(plan.budget.megabytes)
+    gc.freeze()  # what is loaded by now lives as long as the process
+    while True:
+        for task in tasks.decode(pipe.recv_bytes()):
+            _limit_time(plan.budget.seconds)
+            try:
+                outcome = examiner.examine(task, lambda key: send(Began(key)))
+            except MemoryError:
+                send(_out_of_memory(task, plan))
+                sys.exit(SPENT)
+            except Exception as error:  # noqa: BLE001 - one file's review may fail in any way
+                outcome = _failed(task, error)
+            send(outcome)
+
+
+def _limit_memory(megabytes: int) -> None:
+    """Bound the address space, beyond what is mapped already. Not every system can."""
+    try:
+        with open("/proc/self/statm", "rb") as file:  # noqa: PTH123 - no path of the user's
+            mapped = int(file.read().split()[0]) * _PAGE
+        resource.setrlimit(resource.RLIMIT_AS, (mapped + megabytes * 1_000_000,) * 2)
+    except (OSError, ValueError):
+        return
+
+
+def _limit_time(seconds: int) -> None:
+    """Let the system end this process when a file has taken its processor time."""
+    used = resource.getrusage(resource.RUSAGE_SELF)
+    soft = int(used.ru_utime + used.ru_stime) + 1 + seconds
+    resource.setrlimit(resource.RLIMIT_CPU, (soft, _UNLIMITED))
+
+
+def _out_of_memory(task: Task, plan: Plan) -> Outcome:
+    return Outcome(
+        root=task.root,
+        path=task.path,
+        state="stopped",
+        why=f"Its review needs more than the {plan.budget.megabytes} MB a file may take.",
+    )
+
+
+def _failed(task: Task, error: Exception) -> Outcome:
+    return Outcome(
+        root=task.root,
+        path=task.path,
+        state="stopped",
+        why=f"Its review ended with {type(error).__name__}: {error}",
+    )
+
+
+if __name__ == "__main__":
+    main()
