@@ -3,14 +3,13 @@
 from railguard.circuit.card import Names, flat
 from railguard.circuit.expressions import probes
 from railguard.circuit.model import Control, Element
-from railguard.circuit.scopes import text_of
-from railguard.circuit.sources import Source
+from railguard.circuit.sources import multiplied
 from railguard.circuit.values import not_fitted
-from railguard.circuit.waveforms import SourceError, read_source
+from railguard.circuit.waveforms import Found, SourceError, read_source
+from railguard.circuit.written import text_of
 from railguard.deck.cards import Assignment, Items
 from railguard.deck.lines import Line
 from railguard.deck.numbers import read_number
-from railguard.notices import Problem
 
 
 def independent(names: Names, items: Items, line: Line, letter: str) -> list[Element]:
@@ -19,23 +18,35 @@ def independent(names: Names, items: Items, line: Line, letter: str) -> list[Ele
     kind = "voltage source" if letter == "V" else "current source"
     nets, rest = names.nodes(items, 2, line, f"{kind} {name}")
     try:
-        source, remark = read_source(rest, lambda word: names.number(word, letter))
+        found = read_source(rest, lambda word: names.number(word, letter))
     except SourceError as error:
-        names.problems.append(
-            Problem(
-                rule="netlist-source",
-                message=f"The {kind} {names.prefix}{name}: {error}.",
-                location=line.location,
-                designators=(names.prefix + name,),
-            )
+        names.told("netlist-source", f"The {kind} {names.prefix}{name}: {error}.", line, name)
+        found = Found(stated=False)
+    if found.doubled:
+        names.told(
+            "netlist-source",
+            f"The {kind} {names.prefix}{name} states two values, {found.doubled}: the first "
+            "counts.",
+            line,
+            name,
+            "Leave one of them out.",
         )
-        source, remark = Source(stated=False), ""
+    source = found.source()
+    many = _times(names, rest)
+    if letter == "I" and many != 1.0:
+        source = multiplied(source, many)
     return [
         Element(
-            kind=letter, designator=name, nets=nets, source=source, text=remark,
+            kind=letter, designator=name, nets=nets, source=source, text=found.passed_over,
             location=line.location,
         )
     ]  # fmt: skip
+
+
+def _times(names: Names, items: Items) -> float:
+    """Return how many of a card stand in parallel: its own m= times its instance's."""
+    own = next((text_of(i.value) for i in items if isinstance(i, Assignment) and i.key == "m"), "")
+    return (names.number(own) or 1.0 if own else 1.0) * names.environment.multiplier
 
 
 def voltage_controlled(names: Names, items: Items, line: Line, letter: str) -> list[Element]:
@@ -50,29 +61,42 @@ def voltage_controlled(names: Names, items: Items, line: Line, letter: str) -> l
         control = _polynomial(names, words, text)
     elif words and words[0][:1] in "{'":
         control = Control(None, probes(text), "", text)
+    elif len(words) >= 2 and keys.keys() & {"table", "laplace", "freq"} and not probes(text):
+        control = Control(None, (words[0], words[1]), "", text)
     elif len(words) >= 3 and not keys.keys() & {"value", "vol", "cur", "table"}:
         gain = names.number(words[2])
         if gain is not None and words[0].lower() not in ("value", "table", "laplace", "freq"):
             control = Control(gain, (words[0], words[1]))
+    if letter == "G" and control.gain is not None:
+        control = Control(control.gain * _times(names, rest), control.nets)
     return [
         Element(kind=letter, designator=name, nets=nets, control=control, location=line.location)
     ]
 
 
 def _polynomial(names: Names, words: list[str], text: str) -> Control:
-    count = names.number(words[1]) if len(words) > 1 else None
-    if count is None:
-        digits = "".join(c for c in words[0] if c.isdigit())
-        count, start = float(digits or 1), 1
-    else:
-        start = 2
-    pairs = words[start : start + 2 * int(count)]
-    coefficients = [names.number(w) for w in words[start + 2 * int(count) :]]
-    plain = [c for c in coefficients if c is not None]
-    linear = int(count) == 1 and len(plain) >= 1 and all(c == 0 for c in plain[2:])
-    if linear and (len(plain) == 1 or plain[0] == 0):
-        return Control(plain[0] if len(plain) == 1 else plain[1], tuple(pairs))
-    return Control(None, tuple(pairs), "", text)
+    count, start = _dimensions(names, words)
+    pairs = words[start : start + 2 * count]
+    gain = _linear(names, words[start + 2 * count :]) if count == 1 else None
+    return Control(gain, tuple(pairs), "", "" if gain is not None else text)
+
+
+def _dimensions(names: Names, words: list[str]) -> tuple[int, int]:
+    """Return how many controls a POLY has, and where their words begin."""
+    count = names.number(words[1]) if words[0].lower() == "poly" and len(words) > 1 else None
+    if count is not None:
+        return int(count), 2
+    return int("".join(c for c in words[0] if c.isdigit()) or 1), 1
+
+
+def _linear(names: Names, coefficients: list[str]) -> float | None:
+    """Return the factor of POLY(1) coefficients that are one: SPICE 2 takes a lone one for it."""
+    found = [c for c in map(names.number, coefficients) if c is not None]
+    if not found or any(found[2:]):
+        return None
+    if len(found) == 1:
+        return found[0]
+    return found[1] if found[0] == 0 else None
 
 
 def current_controlled(names: Names, items: Items, line: Line, letter: str) -> list[Element]:
@@ -82,10 +106,15 @@ def current_controlled(names: Names, items: Items, line: Line, letter: str) -> l
     words = flat(rest)
     text = " ".join(text_of(i) for i in rest)
     if words and words[0].lower().startswith("poly"):
-        control = Control(None, (), "", text)
+        count, start = _dimensions(names, words)
+        gain = _linear(names, words[start + count :]) if count == 1 else None
+        steered = words[start] if len(words) > start else ""
+        control = Control(gain, (), steered, "" if gain is not None else text)
     else:
         gain = names.number(words[1]) if len(words) > 1 else None
         control = Control(gain, (), words[0] if words else "", text if gain is None else "")
+    if letter == "F" and control.gain is not None:
+        control = Control(control.gain * _times(names, rest), (), control.element)
     return [
         Element(kind=letter, designator=name, nets=nets, control=control, location=line.location)
     ]
@@ -125,10 +154,20 @@ def semiconductor(names: Names, items: Items, line: Line, letter: str) -> list[E
     return [
         Element(
             kind=letter, designator=name, nets=nets, model=words[at],
-            text=" ".join(words[at + 1 :]), fitted=not not_fitted(words[at]),
-            location=line.location,
+            parameters=_parameters(names, items), text=" ".join(words[at + 1 :]),
+            fitted=not not_fitted(words[at]), location=line.location,
         )
     ]  # fmt: skip
+
+
+def _parameters(names: Names, items: Items) -> dict[str, float]:
+    found = {}
+    for item in items:
+        if isinstance(item, Assignment):
+            value = names.number(text_of(item.value))
+            if value is not None:
+                found[item.key] = value
+    return found
 
 
 def coupling(names: Names, items: Items, line: Line, letter: str) -> list[Element]:
@@ -143,9 +182,10 @@ def coupling(names: Names, items: Items, line: Line, letter: str) -> list[Elemen
 
 
 def behavioural(names: Names, items: Items, line: Line, letter: str) -> list[Element]:
-    """Bind B: a source that follows an expression."""
-    del letter
+    """Bind B: a source that follows an expression, or PSpice's MESFET."""
     name = text_of(items[0])
+    if not any(isinstance(item, Assignment) for item in items):
+        return other(names, items, line, letter)
     nets, _ = names.nodes(items, 2, line, f"behavioural source {name}")
     text = line.text.split("=", 1)
     which = text[0].rstrip()[-1:].lower()
@@ -161,7 +201,7 @@ def behavioural(names: Names, items: Items, line: Line, letter: str) -> list[Ele
 def other(names: Names, items: Items, line: Line, letter: str) -> list[Element]:
     """Bind what the analysis does not work out, so that its nets count as seen by something."""
     name = text_of(items[0])
-    words = flat(items[1:])
+    words = _ports(flat(items[1:])) if letter == "A" else flat(items[1:])
     count = {"S": 4, "W": 2, "T": 4, "O": 4, "Y": 4}.get(letter, max(len(words) - 1, 0))
     if len(words) < count or not words:
         raise names.unbound(items, line, "netlist-node-count", f"{name} has {count} nodes")
@@ -172,3 +212,11 @@ def other(names: Names, items: Items, line: Line, letter: str) -> list[Element]:
             text=" ".join(words[count + 1 :]), location=line.location,
         )
     ]  # fmt: skip
+
+
+def _ports(words: list[str]) -> list[str]:
+    """Return the nets of a code model's card: vectors opened, types and inversions left out."""
+    found: list[str] = []
+    for word in words:
+        found += word.strip("[]").split()
+    return [w.lstrip("~") for w in found if w[0] != "%" and w.lower() != "null"]

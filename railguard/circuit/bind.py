@@ -15,7 +15,7 @@ from railguard.circuit.calls import instance
 from railguard.circuit.card import Names, UnboundError
 from railguard.circuit.model import Element, Instance
 from railguard.circuit.passives import passive
-from railguard.circuit.scopes import text_of
+from railguard.circuit.written import text_of
 from railguard.deck.cards import Assignment, Call, Group, Items
 from railguard.deck.lines import Line
 from railguard.notices import Problem

@@ -3,7 +3,7 @@
 from railguard.circuit.board import kind_of
 from railguard.circuit.card import Names
 from railguard.circuit.model import Element, Instance
-from railguard.circuit.scopes import text_of
+from railguard.circuit.written import text_of
 from railguard.deck.cards import Assignment, Group, Items
 from railguard.deck.lines import Line
 from railguard.deck.numbers import read_number

@@ -1,18 +1,24 @@
 """What binding a card needs at hand: its scope, its parameters, and where problems go."""
 
+import re
 from typing import TYPE_CHECKING, cast
 
 from railguard.circuit.expressions import ExpressionError
 from railguard.circuit.model import Element
-from railguard.circuit.scopes import Scope, text_of
+from railguard.circuit.scopes import Scope
 from railguard.circuit.waveforms import FUNCTIONS
-from railguard.deck.cards import Call, Group, Items
+from railguard.circuit.written import text_of
+from railguard.deck.cards import Assignment, Call, Group, Items
 from railguard.deck.lines import Line
 from railguard.deck.numbers import read_number
 from railguard.notices import Problem
 
 if TYPE_CHECKING:
-    from railguard.circuit.flatten import Environment
+    from railguard.circuit.environment import Environment
+
+
+COUNTS = ("no", "one", "two", "three", "four", "five", "six", "seven")
+"""Small numbers as they stand in a sentence."""
 
 
 class UnboundError(Exception):
@@ -22,6 +28,17 @@ class UnboundError(Exception):
         self.problem = problem
         self.element = element
         super().__init__(problem.message)
+
+
+_READINGS = (
+    ("chain", re.compile(r"(?:\^|\*\*)[^-+*/,()]*(?:\^|\*\*)"),
+     "a power of a power is worked out from the left, as ngspice does, elsewhere from the right."),
+    ("caret", re.compile(r"\^"),
+     "^ is a power here and in ngspice, an exclusive or in other programs; ** is a power in all."),
+    ("mil", re.compile(r"(?i)\d\s*mil\b"),
+     "mil is a thousandth of an inch here; ngspice reads it as milli inside braces."),
+)  # fmt: skip
+"""Expressions that other SPICE programs read otherwise: a key, how they are known, what differs."""
 
 
 class Names:
@@ -74,12 +91,14 @@ class Names:
 
     def evaluated(self, text: str, name: str, line: Line) -> tuple[float | None, bool]:
         """Return an expression's value and whether only a simulation gives it one."""
+        self._other_readings(text, name, line)
         try:
             return self.evaluate(text), False
         except ExpressionError as error:
             if error.behavioural:
                 return None, True
-            rule = "netlist-parameter" if "not defined" in error.reason else "netlist-expression"
+            named = "not defined" in error.reason or "rests on itself" in error.reason
+            rule = "netlist-parameter" if named else "netlist-expression"
             self.problems.append(
                 Problem(
                     rule=rule,
@@ -91,11 +110,24 @@ class Names:
             )
             return None, False
 
+    def _other_readings(self, text: str, name: str, line: Line) -> None:
+        """Say what other SPICE programs make of an expression, once for the deck."""
+        if "^" not in text and "**" not in text and "mil" not in text.lower():
+            return
+        for kind, pattern, words in _READINGS:
+            if pattern.search(text) and kind not in self.environment.deck_wide:
+                self.environment.deck_wide.add(kind)
+                self.told("netlist-other-dialect", f"{text} of {name}: {words}", line, name)
+
     def unbound(self, items: Items, line: Line, rule: str, why: str) -> UnboundError:
         """Make the error of a card that cannot be read; its nets stay in the circuit."""
         name = text_of(items[0])
         words = [i for i in items[1:] if isinstance(i, str)]
-        nets = tuple(w for w in words if read_number(w) is None or w == "0")
+        nets = tuple(
+            w
+            for w in words
+            if (read_number(w) is None or w == "0") and self.scope.model(w.casefold()) is None
+        )
         element = (
             Element(
                 kind="opaque", designator=name, nets=nets, text=" ".join(words),
@@ -116,9 +148,13 @@ class Names:
         )
 
     def nodes(
-        self, items: Items, count: int, line: Line, words: str
+        self, items: Items, count: int, line: Line, words: str, behind: str = ""
     ) -> tuple[tuple[str, ...], Items]:
-        """Take a card's nodes off; a group in parentheses counts as its members."""
+        """Take a card's nodes off; a group in parentheses counts as its members.
+
+        words   what the card is: "resistor R7"
+        behind  what stands behind its nodes, or ""
+        """
         plain = items[1 : count + 1]
         if len(plain) == count and all(type(item) is str for item in plain):
             return cast("tuple[str, ...]", plain), items[count + 1 :]
@@ -134,11 +170,24 @@ class Names:
             nets.append(item)
             rest.pop(0)
         if len(nets) < count:
+            found = f"found {COUNTS[len(nets)]} node{'s' if len(nets) != 1 else ''}"
+            if rest and isinstance(rest[0], Assignment):
+                found += f"; no net's name holds an equals sign ({text_of(rest[0])})"
+            more = f" and {behind}" if behind else ""
             raise self.unbound(
                 items, line, "netlist-node-count",
-                f"{words} has {count} nodes; found {len(nets)}",
+                f"{words} has {COUNTS[count]} nodes{more}; {found}",
             )  # fmt: skip
         return tuple(nets), tuple(rest)
+
+    def told(self, rule: str, message: str, line: Line, name: str, remedy: str = "") -> None:
+        """Note something about an element."""
+        self.problems.append(
+            Problem(
+                rule=rule, message=message, remedy=remedy, location=line.location,
+                designators=(self.prefix + name,),
+            )
+        )  # fmt: skip
 
     def trap(
         self, name: str, rule: str, text: str, why: str, likely: float | None,

@@ -6,13 +6,13 @@ What depends on a running simulation (a voltage, a current, time) has no value h
 import itertools
 import math
 import re
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Iterator, Mapping
 from functools import lru_cache
 from types import MappingProxyType
 
 import msgspec
 
-from railguard.deck.language import parser
+from railguard.deck.language import parser, terminals
 from railguard.deck.numbers import read_number
 
 Value = float
@@ -36,6 +36,15 @@ LONGEST = 10_000
 """Characters of one expression."""
 DEEPEST = 64
 """Nested parentheses and calls of one expression."""
+MOST_STEPS = 50_000
+"""Operations of one expression with all the functions it calls."""
+_TOO_DEEP = "the expression is longer or deeper than the bound allows"
+_T = terminals("expression.lark")
+_OPERAND = rf"(?:(?P<number{{0}}>{_T['NUMBER']})|(?P<name{{0}}>{_T['NAME']}))"
+_SHORT = re.compile(
+    rf"\s*(?P<sign>{_T['ADD']})?\s*{_OPERAND.format(1)}\s*"
+    rf"(?:(?P<operator>{_T['ADD']}|{_T['MULTIPLY']})\s*{_OPERAND.format(2)}\s*)?"
+)
 
 
 class ExpressionError(Exception):
@@ -66,10 +75,12 @@ def evaluate(
     text: str,
     lookup: Lookup,
     functions: Mapping[str, Function] = MappingProxyType({}),
+    deepest: int = DEEPEST,
 ) -> float:
     """Return an expression's value.
 
-    lookup  gives a parameter's value by its lower-cased name, or raises ExpressionError
+    lookup   gives a parameter's value by its lower-cased name, or raises ExpressionError
+    deepest  how deep its parentheses may be nested
 
     Raises  ExpressionError: bad syntax, an unknown name, a division by zero, a run-time value
     """
@@ -79,12 +90,38 @@ def evaluate(
         return number.value
     if _NAME.match(plain) and plain.lower() not in _RESERVED:
         return lookup(plain.lower())
-    return _Evaluator(lookup, functions).value(parse(plain), 0)
+    tree = parse(plain, deepest)
+    try:
+        return _Evaluator(lookup, functions, itertools.count()).value(tree, 0)
+    except RecursionError:
+        raise ExpressionError("it rests on too long a chain of parameters or functions") from None
 
 
 @lru_cache(maxsize=4096)
-def parse(text: str) -> Node:
-    """Parse an expression.
+def parse(text: str, deepest: int = DEEPEST) -> Node:
+    """Parse an expression; those of one or two operands by a path made of the same terminals.
+
+    Raises  ExpressionError
+    """
+    short = _SHORT.fullmatch(text)
+    return parse_whole(text, deepest) if short is None else _short(short)
+
+
+def _short(found: re.Match[str]) -> Node:
+    left = _operand(found["number1"], found["name1"])
+    if found["sign"]:
+        left = Node("sign", found["sign"], (left,))
+    if not found["operator"]:
+        return left
+    return Node("binary", found["operator"], (left, _operand(found["number2"], found["name2"])))
+
+
+def _operand(number: str | None, name: str | None) -> Node:
+    return Node("number", number) if number else Node("name", name or "")
+
+
+def parse_whole(text: str, deepest: int = DEEPEST) -> Node:
+    """Parse an expression through the grammar, whatever it looks like.
 
     Raises  ExpressionError
     """
@@ -92,8 +129,8 @@ def parse(text: str) -> Node:
 
     if not text:
         raise ExpressionError("the expression is empty")
-    if len(text) > LONGEST or _depth(text) > DEEPEST:
-        raise ExpressionError("the expression is longer or deeper than the bound allows")
+    if len(text) > LONGEST or _depth(text) > deepest:
+        raise ExpressionError(_TOO_DEEP)
     try:
         tree = parser("expression.lark").parse(text)
     except UnexpectedInput as error:
@@ -115,7 +152,10 @@ def parse(text: str) -> Node:
             return Node("binary", parts[1].text, (parts[0], parts[2]))
         return Node("choose", "", tuple(parts))
 
-    return convert(tree)
+    try:
+        return convert(tree)
+    except RecursionError:
+        raise ExpressionError(_TOO_DEEP) from None
 
 
 def probes(text: str) -> tuple[str, ...]:
@@ -176,11 +216,16 @@ _FUNCTIONS: dict[str, Callable[..., float]] = {
 
 
 class _Evaluator:
-    def __init__(self, lookup: Lookup, functions: Mapping[str, Function]) -> None:
+    def __init__(
+        self, lookup: Lookup, functions: Mapping[str, Function], steps: Iterator[int]
+    ) -> None:
         self._lookup = lookup
         self._functions = functions
+        self._steps = steps
 
     def value(self, node: Node, depth: int) -> float:
+        if next(self._steps) > MOST_STEPS:
+            raise ExpressionError(f"it takes more than {MOST_STEPS:,} steps")
         if depth > 4 * DEEPEST:
             raise ExpressionError("the expression is deeper than the bound allows")
         match node.kind:
@@ -229,7 +274,7 @@ class _Evaluator:
             def look(name: str) -> float:
                 return bound[name] if name in bound else self._lookup(name)
 
-            return _Evaluator(look, self._functions).value(parse(own.body), depth + 1)
+            return _Evaluator(look, self._functions, self._steps).value(parse(own.body), depth + 1)
         function = _FUNCTIONS.get(node.text)
         if function is None:
             raise ExpressionError(f"{node.text}() is no known function")

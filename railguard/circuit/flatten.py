@@ -5,14 +5,16 @@ that this room needs no catalogue.
 """
 
 import re
-from collections.abc import Callable, Iterable, Mapping
+from collections.abc import Callable, Iterable
 from typing import cast
 
 from railguard.circuit.bind import bind
 from railguard.circuit.calls import closed as closed_call
 from railguard.circuit.calls import pin_names
-from railguard.circuit.card import Names, UnboundError
-from railguard.circuit.expressions import ExpressionError, Function, evaluate
+from railguard.circuit.card import COUNTS, Names, UnboundError
+from railguard.circuit.environment import Bound, Environment
+from railguard.circuit.expressions import ExpressionError
+from railguard.circuit.ground import GROUNDS, likely_ground, no_ground, other_grounds
 from railguard.circuit.model import (
     GROUND,
     Circuit,
@@ -24,7 +26,9 @@ from railguard.circuit.model import (
     Subcircuit,
 )
 from railguard.circuit.plain import plain_element
-from railguard.circuit.scopes import Scope, sort_deck, text_of, unquoted
+from railguard.circuit.scopes import Scope
+from railguard.circuit.sorter import Sorted, sort_deck
+from railguard.circuit.written import parameter_cycle, text_of
 from railguard.deck.cards import Assignment, CardError, Items
 from railguard.deck.files import Deck
 from railguard.deck.lines import Line
@@ -37,7 +41,6 @@ Closed = Callable[[str, tuple[str, ...], tuple[str, ...], bool], bool]
 notes  pin names of a connection comment beside the header; calls: it calls other subcircuits
 """
 
-_GROUNDS = frozenset({"0", "gnd"})
 _NO_CONNECT = re.compile(r"(?i)^(\?.*|nc_\d+|unconnected-.*|no_connect.*)$")
 
 
@@ -57,11 +60,9 @@ def flatten(deck: Deck, closed: Closed = nothing_closed) -> Circuit:
             path=deck.path, problems=deck.problems, readable=False, files=deck.files,
             sha256=deck.sha256,
         )  # fmt: skip
-    found = sort_deck(deck)
-    expander = _Expander(deck, closed, found.globals)
-    expander.scope(Environment(found.top, None, {}), "", (), 0, frozenset())
-    problems = [*deck.problems, *found.problems, *expander.problems]
-    if not expander.elements and not problems:
+    found, expander = _expanded(deck, closed, GROUNDS)
+    problems = [*deck.problems]
+    if not expander.elements and not (deck.problems or found.problems or expander.problems):
         problems.append(
             Problem(
                 rule="netlist-unreadable",
@@ -70,7 +71,12 @@ def flatten(deck: Deck, closed: Closed = nothing_closed) -> Circuit:
             )
         )
     elif expander.elements and not expander.grounded:
-        problems.append(_no_ground(expander))
+        likely = likely_ground(expander.elements)
+        problems.append(no_ground(likely, expander.elements))
+        if likely:
+            # What is meant is plain enough to go on with, as with a value.
+            found, expander = _expanded(deck, closed, GROUNDS | {likely.casefold()})
+    problems += [*found.problems, *expander.problems, *expander.afterwards(found)]
     return Circuit(
         path=deck.path,
         title=deck.title,
@@ -88,20 +94,11 @@ def flatten(deck: Deck, closed: Closed = nothing_closed) -> Circuit:
     )
 
 
-def _no_ground(expander: "_Expander") -> Problem:
-    counts: dict[str, int] = {}
-    for element in expander.elements:
-        for net in element.nets:
-            if re.search(r"(?i)gnd|ground|vss|com|(^|[^a-z])0v", net):
-                counts[net] = counts.get(net, 0) + 1
-    best = max(counts, key=lambda net: counts[net], default="")
-    hint = f' The likely one is "{best}": rename it 0.' if best else " Name the return net 0."
-    return Problem(
-        rule="netlist-ground",
-        message="No card touches ground (net 0 or GND), so no level can be told.",
-        remedy=hint.strip(),
-        nets=(best,) if best else (),
-    )
+def _expanded(deck: Deck, closed: Closed, grounds: frozenset[str]) -> tuple[Sorted, "_Expander"]:
+    found = sort_deck(deck)
+    expander = _Expander(deck, closed, found, grounds)
+    expander.scope(expander.environment, "", (), 0, frozenset())
+    return found, expander
 
 
 def _subcircuits(top: Scope) -> dict[str, Subcircuit]:
@@ -122,103 +119,6 @@ def _subcircuits(top: Scope) -> dict[str, Subcircuit]:
             )
             queue.append(inner)
     return kept
-
-
-Bound = tuple[Element, ...] | Instance
-"""What a card was bound to: elements, or a subcircuit call; nothing where it cannot be read."""
-
-
-class Environment:
-    """What an instance sees: parameters it is given, its own, those outside its definition.
-
-    Instances that are called alike share one, and with it what their cards were bound to.
-
-    multiplier  how many of the instance stand in parallel
-    bound       cards by number, as every instance of this environment reads them
-
-    Where a name is found nowhere outside, the caller's are looked through: some SPICE programs do,
-    so decks rely on it.
-    """
-
-    def __init__(
-        self, scope: Scope, outer: "Environment | None", given: Mapping[str, float],
-        caller: "Environment | None" = None, multiplier: float = 1.0,
-    ) -> None:  # fmt: skip
-        self.scope = scope
-        self.multiplier = multiplier
-        self.bound: dict[int, Bound] = {}
-        self._inner: dict[object, Environment] = {}
-        self._known: dict[str, float] = {}
-        self._outer = outer
-        self._values = dict(given)
-        self._caller = caller
-        self._busy: list[str] = []
-
-    def of(self, scope: Scope | None) -> "Environment | None":
-        """Return the environment of the scope a definition stands in: the nearest one outwards."""
-        at: Environment | None = self
-        while at is not None and at.scope is not scope:
-            at = at._outer or at._caller
-        return at
-
-    def of_call(self, definition: Scope, call: Instance) -> "Environment":
-        """Return the environment of a call from here; calls with the same parameters share one."""
-        key = (definition.key, call.multiplier, *call.parameters.items())
-        found = self._inner.get(key)
-        if found is None:
-            found = self._inner[key] = Environment(
-                definition,
-                self.of(definition.parent),
-                call.parameters,
-                self,
-                self.multiplier * call.multiplier,
-            )
-        return found
-
-    @property
-    def functions(self) -> Mapping[str, Function]:
-        """Functions defined here and outside."""
-        outer = self._outer.functions if self._outer is not None else {}
-        return {**outer, **self.scope.functions} if self.scope.functions else outer
-
-    def look(self, name: str) -> float:
-        """Return a parameter's value.
-
-        Raises  ExpressionError
-        """
-        if name in self._values:
-            return self._values[name]
-        own = self.scope.parameters.get(name)
-        text = own[0] if own is not None else self.scope.defaults.get(name)
-        if text is not None:
-            if name in self._busy:
-                chain = " -> ".join([*self._busy[self._busy.index(name) :], name])
-                raise ExpressionError(f"the parameter {name} rests on itself ({chain})")
-            self._busy.append(name)
-            try:
-                value = self.evaluate(text)
-            finally:
-                self._busy.pop()
-            self._values[name] = value
-            return value
-        for other in (self._outer, self._caller):
-            if other is not None:
-                try:
-                    return other.look(name)
-                except ExpressionError as error:
-                    if "is not defined" not in error.reason:
-                        raise
-        raise ExpressionError(f"{name} is not defined")
-
-    def evaluate(self, text: str) -> float:
-        """Return an expression's value.
-
-        Raises  ExpressionError
-        """
-        found = self._known.get(text)
-        if found is None:
-            found = self._known[text] = evaluate(unquoted(text), self.look, self.functions)
-        return found
 
 
 class _Nets(dict[str, str]):
@@ -247,15 +147,19 @@ class _Nets(dict[str, str]):
 
 
 class _Expander:
-    def __init__(self, deck: Deck, closed: Closed, globals_: tuple[str, ...]) -> None:
+    def __init__(self, deck: Deck, closed: Closed, found: Sorted, grounds: frozenset[str]) -> None:
         self.deck = deck
+        self.environment = Environment(found.top, None, {})
+        self.environment.deepest = deck.bounds.expression
         self.elements: list[Element] = []
         self.models: dict[str, Model] = {}
         self.problems: list[Problem] = []
         self.grounded = False
         self._closed = closed
         self._devices: dict[tuple[int, str], bool] = {}
-        self._globals = {name.casefold(): name for name in globals_}
+        self._grounds = grounds
+        self._globals = {name.casefold(): name for name in found.globals}
+        self._joined = {a.casefold(): b for a, b in found.connected}
         self._unconnected = 0
         self._over = False
 
@@ -295,6 +199,30 @@ class _Expander:
             else:
                 for element in cast("tuple[Element, ...]", bound):
                     self._add(element, nets, prefix)
+
+    def afterwards(self, found: Sorted) -> list[Problem]:
+        """Return what can be said once everything is expanded."""
+        problems = other_grounds(self.elements) if self.grounded else []
+        for name, subcircuit in sorted(self.environment.borrowed):
+            problems.append(
+                Problem(
+                    rule="netlist-other-dialect",
+                    message=f"The subcircuit {subcircuit} takes the parameter {name} from whoever "
+                    "calls it, as in ngspice; other programs do not find it.",
+                    remedy=f"Hand {name} over on the call.",
+                )
+            )
+        chain = parameter_cycle({n: text for n, (text, _) in found.top.parameters.items()})
+        if chain:
+            problems.append(
+                Problem(
+                    rule="netlist-parameter",
+                    message=f"The parameter {chain[0]} rests on itself ({' -> '.join(chain)}).",
+                    remedy="Give one of them a number.",
+                    location=found.top.parameters[chain[0]][1].location,
+                )
+            )
+        return problems
 
     def _bind(self, names: Names, number: int, line: Line) -> Bound:
         """Give a card its roles, and keep them where every instance that shares them finds them.
@@ -364,9 +292,12 @@ class _Expander:
 
         key  the name as nets are compared
         """
-        if key in _GROUNDS:
+        if key in self._grounds:
             self.grounded = True
             return GROUND
+        if not prefix and key in self._joined and self._joined[key].casefold() != key:
+            other = self._joined.pop(key)
+            return self.net(other, other.casefold(), prefix)
         if _NO_CONNECT.match(name):
             self._unconnected += 1
             # Every such pin is its own net, even where the export spells them alike.
@@ -463,8 +394,9 @@ class _Expander:
         self.problems.append(
             Problem(
                 rule="netlist-node-count",
-                message=f"{instance.designator} gives {len(instance.nets)} nets to the subcircuit "
-                f"{definition.name}, which has {len(definition.ports)} ports.",
+                message=f"{instance.designator} gives {_counted(len(instance.nets), 'net')} to the "
+                f"subcircuit {definition.name}, which has {_counted(len(definition.ports), 'port')}"
+                ".",
                 remedy="Compare the card with the .subckt line.",
                 location=instance.location,
                 designators=(prefix + instance.designator,),
@@ -482,6 +414,10 @@ class _Expander:
                 designators=(prefix + instance.designator,),
             )
         )
+
+
+def _counted(count: int, noun: str) -> str:
+    return f"{COUNTS[count] if count < len(COUNTS) else count} {noun}{'s' if count != 1 else ''}"
 
 
 def _numbers(items: Items, environment: Environment) -> dict[str, float]:

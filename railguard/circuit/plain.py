@@ -1,8 +1,8 @@
 """The cards most netlists are made of, bound at once: R, C, L, V or I, two nets, a value.
 
 Only what has one reading is taken: plain words of the grammar, four of them, the last a number
-without a trap. `bind` reads the same cards and gives the same element; a property test holds the
-two equal.
+without a trap or a sign to be told. `bind` reads the same cards and gives the same element; a
+property test holds the two equal.
 """
 
 from railguard.circuit.model import Element
@@ -28,7 +28,7 @@ def plain_element(line: Line) -> Element | None:
         return None
     name, first, second, word = words
     value = plain_number(word, kind)
-    if value is None:
+    if value is None or (value < 0 and kind in "RCL"):
         return None
     source = Source(value) if kind in "VI" else None
     return Element(

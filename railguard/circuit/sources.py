@@ -97,3 +97,25 @@ class Source(msgspec.Struct, frozen=True, gc=False):
                 return self.wave.points[0][1]
             case _:
                 return 0.0
+
+
+def multiplied(source: Source, times: float) -> Source:
+    """Return what several equal current sources in parallel deliver."""
+    wave = source.wave
+    match wave:
+        case Sine() | FrequencyModulated():
+            wave = msgspec.structs.replace(
+                wave, offset=wave.offset * times, amplitude=wave.amplitude * times
+            )
+        case Pulse() | Exponential():
+            wave = msgspec.structs.replace(
+                wave, first=wave.first * times, second=wave.second * times
+            )
+        case Piecewise():
+            points = tuple((moment, value * times) for moment, value in wave.points)
+            wave = msgspec.structs.replace(wave, points=points)
+        case AmplitudeModulated():
+            wave = msgspec.structs.replace(wave, amplitude=wave.amplitude * times)
+    dc = None if source.dc is None else source.dc * times
+    ac = None if source.ac is None else (source.ac[0] * times, source.ac[1])
+    return Source(dc, ac, wave, source.stated)

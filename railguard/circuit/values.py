@@ -4,7 +4,7 @@ import re
 
 import msgspec
 
-from railguard.deck.numbers import read_number
+from railguard.deck.numbers import leading_number, read_number
 
 _TOLERANCE = re.compile(r"^[±+-]*\d+(\.\d+)?%$")
 _PACKAGE = re.compile(
@@ -23,9 +23,10 @@ class Reading(msgspec.Struct, frozen=True):
     value    what the author meant, SI; None where it cannot be told
     spice    what SPICE takes it for
     rule     the netlist rule a difference belongs to, or ""
-    why      the difference, in words that follow "reads ... as"
+    why      the difference, in words
     text     words behind the value: package, rating, tolerance
     fitted   False for DNP
+    written  the value as written, where it is more than the first word
     """
 
     value: float | None = None
@@ -34,6 +35,7 @@ class Reading(msgspec.Struct, frozen=True):
     why: str = ""
     text: str = ""
     fitted: bool = True
+    written: str = ""
 
 
 def not_fitted(word: str) -> bool:
@@ -52,8 +54,9 @@ def _decimal_comma(words: list[str], letter: str, card: str) -> Reading | None:
         meant.value if meant else None,
         taken.spice if taken else None,
         "netlist-value-form",
-        "a decimal comma separates words",
+        "to SPICE a comma separates two words",
         " ".join(words[2:]),
+        written=f"{words[0]},{words[1]}",
     )
 
 
@@ -74,20 +77,25 @@ def read_value(words: list[str], letter: str, card: str = "") -> Reading:
         slash = re.split(r"[/|]", first, maxsplit=1)
         if len(slash) == 2 and read_number(slash[0], letter) is not None:
             return read_value([slash[0], slash[1], *rest], letter)
-        return Reading(
-            rule="netlist-value-form", why=f'"{first}" is no number', text=" ".join(rest)
-        )
+        stops = leading_number(first)
+        why = f'"{first}" is no number'
+        if stops is not None:
+            why += f", and SPICE stops reading at {stops:g}"
+        return Reading(None, stops, "netlist-value-form", why, " ".join(rest))
     if rest and _UNIT.match(rest[0]):
         joined = read_number(first + rest[0], letter)
         if joined is not None:
             return Reading(
                 joined.value, number.spice, "netlist-value-form",
-                f'"{first} {rest[0]}" has a blank before its unit', " ".join(rest[1:]),
+                "a blank stands before its unit", " ".join(rest[1:]),
+                written=f"{first} {rest[0]}",
             )  # fmt: skip
     if number.trap:
-        return Reading(
-            number.value, number.spice, "netlist-value-suffix", number.trap, " ".join(rest)
-        )
+        rule = "netlist-value-suffix"
+        if number.value == number.spice:
+            form = number.trap.startswith("its exponent")
+            rule = "netlist-value-form" if form else "netlist-other-dialect"
+        return Reading(number.value, number.spice, rule, number.trap, " ".join(rest))
     second = next((w for w in rest if read_number(w.rstrip("%")) is not None), None)
     if second is not None:
         what = "a second number"
@@ -102,7 +110,8 @@ def read_value(words: list[str], letter: str, card: str = "") -> Reading:
             number.value,
             replaced.spice if replaced else None,
             "netlist-value-second-number",
-            f"{what} ({second}) behind the value replaces it",
+            f"{what} ({second}) behind the value replaces it"
+            + (", and * begins no comment there; ; does" if "*" in rest else ""),
             " ".join(rest),
         )
     return Reading(number.value, number.spice, text=" ".join(rest))

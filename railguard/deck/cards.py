@@ -49,9 +49,15 @@ bracketed group or a schematic's own designator."""
 # A plain word that no parenthesis follows is tried before WORD, which looks for one first.
 _TOKEN = re.compile(
     rf"\s*+(?:(?P<key>{_T['KEY']})\s*=\s*|(?P<call>{_T['FUNCTION']})\(|"
+    rf"(?P<labelled>{_T['BRACED']})\s*=|"
     rf"(?P<atom>{_T['BRACKETED']}|(?>{_T['PLAIN']})(?!\()|{_T['WORD']}|{_T['BRACED']}|"
     rf"{_T['SQUOTED']}|{_T['DQUOTED']})|"
     r"(?P<open>\()|(?P<close>\))|(?P<comma>,)|(?P<bad>\S))"
+)
+
+
+_BEHAVIOURAL = re.compile(
+    rf"([bB]{_T['PLAIN']}?)\s+({_T['PLAIN']})\s+({_T['PLAIN']})\s+([viVI])\s*=(?!=)\s*(.+)"
 )
 
 
@@ -83,8 +89,8 @@ def _tokenised(text: str) -> Items | None:
     for token in _TOKEN.finditer(text):
         kind = token.lastgroup
         made: str | Call | Group
-        if kind == "atom":
-            made = token["atom"]
+        if kind == "atom" or (kind == "labelled" and key is None):
+            made = token[kind]
         elif kind == "call" or kind == "open":
             if len(opened) >= DEEPEST:
                 return None
@@ -110,6 +116,15 @@ def _tokenised(text: str) -> Items | None:
     return None if opened or key is not None else tuple(level)
 
 
+def behavioural_items(text: str) -> Items | None:
+    """Split `B1 out 0 V=...`, whose relation is taken as it stands to the end of the card."""
+    found = _BEHAVIOURAL.match(text)
+    if found is None:
+        return None
+    name, plus, minus, key, body = found.groups()
+    return name, plus, minus, Assignment(key.lower(), body)
+
+
 def parse_items(text: str) -> Items:
     """Split a card into items through the grammar, whatever it looks like.
 
@@ -133,6 +148,8 @@ def parse_items(text: str) -> Items:
             if made is None or isinstance(made, Assignment):
                 return None
             return Assignment(str(key).lower(), made)
+        if node.data == "labelled":
+            return str(node.children[0])
         inner = [convert(c) for c in node.children if not _is_bracket(c)]
         kept = tuple(item for item in inner if item is not None)
         if node.data == "call":

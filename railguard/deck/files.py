@@ -253,14 +253,16 @@ class _Reader:
         return ""
 
     def _ended(self, lines: tuple[Line, ...], index: int, chain: tuple[Path | None, ...]) -> None:
-        rest = len(lines) - index - 1
+        rest = [line for line in lines[index + 1 :] if line.text.lower() != ".end"]
         if rest and len(chain) == 1:
             self._problem(
                 "netlist-end",
-                f"{rest} card{'s' if rest > 1 else ''} behind .end are not read.",
+                f"{len(rest)} cards behind .end are not read."
+                if len(rest) > 1
+                else "One card behind .end is not read.",
                 lines[index].file,
                 "Move them before .end.",
-                lines[index + 1].number,
+                rest[0].number,
             )
 
     def _include(

@@ -19,6 +19,14 @@ _COMMENT = re.compile(r";|(?:(?<=[\s,])|^)\$(?=\s|$)|(?:(?<=\s)|^)//")
 _FILE_CARD = re.compile(r"^\s*\.(?:incl?|include|lib)\b", re.IGNORECASE)
 _HEADER = (".s", ".S", ".m", ".M")
 _MARKS = (";", "$", "//", "\\\\")
+_MARKS_READ = {
+    "#": "A line that begins with # is a comment here; ngspice stops at it.",
+    "//": "// behind a blank begins a comment here and in ngspice, in no other program.",
+    "a//b": "// inside a name belongs to it here; ngspice cuts the line off there.",
+    "$a": "A $ before a name belongs to it here, as in PSpice; ngspice and HSPICE take the rest of "
+    "the line for a comment.",
+}
+"""What is said once of a file for marks that other programs read otherwise."""
 _LETTERS = frozenset("ABCDEFGHIJKLMNOPQRSTUVWXYZabcdefghijklmnopqrstuvwxyz")
 
 LADDER = 16
@@ -83,13 +91,13 @@ def strip_comment(text: str) -> str:
     if ";" not in text and "$" not in text and "//" not in text:
         return text
     named = _FILE_CARD.match(text) is not None
-    start = 0
-    while (found := _COMMENT.search(text, start)) is not None:
-        head = text[: found.start()]
-        quoted = head.count('"') % 2 or head.count("'") % 2
-        if not quoted and not (named and found[0] != ";"):
-            return head
-        start = found.end()
+    double = single = start = 0
+    for found in _COMMENT.finditer(text):
+        double += text.count('"', start, found.start())
+        single += text.count("'", start, found.start())
+        start = found.start()
+        if not (double % 2 or single % 2) and not (named and found[0] != ";"):
+            return text[:start]
     return text
 
 
@@ -101,6 +109,7 @@ class _Assembler:
         self.problems: list[Problem] = []
         self.remarks: list[Remark] = []
         self.comments: dict[int, list[str]] = {}
+        self.odd: dict[str, int] = {}
         self._more: list[tuple[str, int, int]] = []
         self.open = False
 
@@ -117,14 +126,14 @@ class _Assembler:
         self.done.append(Line(self.file, text, number, column, (), note))
         self.open = _FILE_CARD.match(text) is None
 
-    def more(self, text: str, number: int, column: int) -> None:
+    def more(self, text: str, number: int, column: int, starred: bool = False) -> None:
         if not self.open:
             self._problem(
                 f"A continuation (+) on line {number} has no card before it.",
                 "Put the + behind the card it continues.",
                 Location(self.file, number, column, len(text)),
             )
-        elif text.startswith("*"):
+        elif starred:
             self._problem(
                 f"Line {number} continues a card with a comment (+*); it is left out.",
                 "Start a comment line with * alone.",
@@ -137,6 +146,16 @@ class _Assembler:
         self.problems.append(
             Problem(rule="netlist-continuation", message=message, remedy=remedy, location=place)
         )
+
+    def note_marks(self, line: str, body: str, number: int) -> None:
+        """Note the first use of marks that are comments to some programs and names to others."""
+        if line[len(body) :].lstrip().startswith("//"):
+            self.odd.setdefault("//", number)
+        if _FILE_CARD.match(body) is None:
+            if "//" in body:
+                self.odd.setdefault("a//b", number)
+            if " $" in body:
+                self.odd.setdefault("$a", number)
 
     def join(self) -> None:
         """Put the continuations that were met behind their card."""
@@ -160,6 +179,14 @@ class _Assembler:
         as often as below.
         """
         self.join()
+        for mark, number in self.odd.items():
+            self.problems.append(
+                Problem(
+                    rule="netlist-other-dialect",
+                    message=_MARKS_READ[mark],
+                    location=Location(self.file, number),
+                )
+            )
         for at in range(len(self.done)) if self.comments else ():
             line = self.done[at]
             if line.text.startswith(_HEADER):
@@ -198,14 +225,20 @@ def scan(text: str, file: str, titled: bool) -> Scanned:
             column -= 1
         if stripped[0] in "*#":
             build.comment(stripped, number)
+            if stripped[0] == "#":
+                build.odd.setdefault("#", number)
             continue
         note = _PIN_NAMES.search(stripped) if marked else None
         body = (strip_comment(stripped) if marked else stripped).rstrip()
+        if marked and ("$" in stripped or "//" in stripped):
+            build.note_marks(stripped, body, number)
         if marked and body.endswith("\\\\"):
             body, joined = body[:-2].rstrip(), True
         if body[:1] == "+":
             rest = body[1:]
-            build.more(rest.strip(), number, column + 1 + len(rest) - len(rest.lstrip()))
+            at = column + 1 + len(rest) - len(rest.lstrip())
+            # `+* remark` was meant as a comment; `+ * 2` goes on with a product.
+            build.more(rest.strip(), number, at, starred=rest[:1] == "*")
         elif body:
             build.card(body, number, column, note[1] if note else "")
     return Scanned(

@@ -11,35 +11,30 @@ from functools import lru_cache
 
 import msgspec
 
-SCALES: dict[str, float] = {
-    "t": 1e12,
-    "g": 1e9,
-    "meg": 1e6,
-    "k": 1e3,
-    "mil": 25.4e-6,
-    "m": 1e-3,
-    "u": 1e-6,
-    "µ": 1e-6,
-    "n": 1e-9,
-    "p": 1e-12,
-    "f": 1e-15,
-}
-"""Scale suffixes every SPICE knows; the longest that fits is taken."""
+POWERS: dict[str, int] = {
+    "t": 12, "g": 9, "meg": 6, "k": 3, "m": -3, "u": -6, "µ": -6, "n": -9, "p": -12, "f": -15,
+}  # fmt: skip
+"""Powers of ten of the scale suffixes every SPICE knows; the longest that fits is taken."""
+MIL = 25.4e-6
+"""The suffix MIL: a thousandth of an inch, in metres."""
 
 GREEK_MU = "μ"
 _NUMBER = re.compile(
-    r"^(?P<sign>[+-]?)(?P<digits>\d+\.?\d*|\.\d+)(?:[eE](?P<exponent>[+-]?\d+))?(?P<tail>[^\d\s].*)?$"
+    r"^(?P<sign>[+-]?)(?P<digits>\d+\.?\d*|\.\d+)(?:[eE](?P<exponent>[+-]?\d{1,4}))?(?P<tail>[^\d\s].*)?$"
+)
+_LEADING = re.compile(
+    r"^(?P<digits>[+-]?(?:\d+\.?\d*|\.\d+))(?:[eE](?P<exponent>[+-]?\d{1,4}))?(?P<tail>[A-Za-zµ]*)"
 )
 _CODED = re.compile(
     r"^(?P<whole>\d*)(?P<mark>[RrKkMmGgLTtpPnNuUµμfF])(?P<part>\d{1,3})(?P<unit>[A-Za-zΩΩ]*)$"
 )
-_D_EXPONENT = re.compile(r"^([+-]?\d+\.?\d*|\.\d+)[dD]([+-]?\d+)(.*)$")
+_D_EXPONENT = re.compile(r"^([+-]?\d+\.?\d*|\.\d+)[dD]([+-]?\d{1,4})(.*)$")
 _TAIL = re.compile(r"^[A-Za-zµμΩΩ°]*$")
 _CODES = {
-    "R": 1.0, "r": 1.0, "K": 1e3, "k": 1e3, "G": 1e9, "g": 1e9, "T": 1e12, "t": 1e12,
-    "p": 1e-12, "P": 1e-12, "n": 1e-9, "N": 1e-9, "u": 1e-6, "U": 1e-6, "µ": 1e-6, "μ": 1e-6,
-    "L": 1e-3, "m": 1e-3, "M": 1e6, "f": 1e-15, "F": 1.0,
+    "R": 0, "r": 0, "K": 3, "k": 3, "G": 9, "g": 9, "T": 12, "t": 12, "p": -12, "P": -12, "n": -9,
+    "N": -9, "u": -6, "U": -6, "µ": -6, "μ": -6, "L": -3, "m": -3, "M": 6, "f": -15, "F": 0,
 }  # fmt: skip
+"""Powers of ten of the letters that stand for a decimal point, IEC 60062."""
 
 
 class Number(msgspec.Struct, frozen=True, gc=False):
@@ -70,16 +65,20 @@ def _read(text: str, letter: str) -> Number | None:
     if found is None:
         return _coded(text, letter)
     tail = found["tail"] or ""
+    digits, exponent = f"{found['sign']}{found['digits']}", int(found["exponent"] or 0)
+    if tail in ("e", "E"):
+        value = float(digits)
+        return Number(value, value, "its exponent has no digits")
     if tail and tail[0] in "dD":
         old = _D_EXPONENT.match(text)
         if old is not None and _TAIL.match(old[3]):
-            value = float(f"{old[1]}e{old[2]}") * _scale(old[3])[0]
-            return Number(value, value, "a D exponent")
+            value = _scaled(old[1], int(old[2]), old[3])[0]
+            # ngspice ends the number before a sign, and takes what follows for the value.
+            spice = float(old[2]) if old[2][0] in "+-" else value
+            return Number(value, spice, "a D exponent, which not every program knows")
     if tail and not _TAIL.match(tail):
         return _coded(text, letter)
-    base = float(f"{found['sign']}{found['digits']}e{found['exponent'] or 0}")
-    factor, rest = _scale(tail)
-    return _trapped(base, factor, tail, rest, letter)
+    return _trapped(digits, exponent, tail, letter)
 
 
 @lru_cache(maxsize=16384)
@@ -89,31 +88,34 @@ def plain_number(text: str, letter: str) -> float | None:
     return number.value if number is not None and not number.trap else None
 
 
-def _scale(tail: str) -> tuple[float, str]:
-    """Return the factor of a tail, and what is left of it."""
+def _scaled(digits: str, exponent: int, tail: str) -> tuple[float, str]:
+    """Return a number with its scale suffix, and what is left of the tail.
+
+    The suffix is taken into the exponent, so that 10u is the float nearest to 0.00001.
+    """
     low = tail.lower()
+    if low.startswith("mil"):
+        return float(f"{digits}e{exponent}") * MIL, tail[3:]
     for length in (3, 1):
-        factor = SCALES.get(low[:length])
-        if factor is not None and len(low) >= length:
-            return factor, tail[length:]
-    return 1.0, tail
+        power = POWERS.get(low[:length])
+        if power is not None and len(low) >= length:
+            return float(f"{digits}e{exponent + power}"), tail[length:]
+    return float(f"{digits}e{exponent}"), tail
 
 
-def _trapped(base: float, factor: float, tail: str, rest: str, letter: str) -> Number:
-    spice = base * factor
+def _trapped(digits: str, exponent: int, tail: str, letter: str) -> Number:
+    spice, rest = _scaled(digits, exponent, tail)
+    base = float(f"{digits}e{exponent}")
+    low = tail.lower()
     if tail[:1] == GREEK_MU:
-        return Number(base * 1e-6, base, "a Greek mu")
-    if letter == "R" and tail[:1] == "M" and tail[:3].lower() not in ("meg", "mil"):
-        return Number(base * 1e6, spice, "M is milli to SPICE")
-    if (
-        letter == "C"
-        and tail[:1] in "fF"
-        and (not rest or rest.lower().startswith("arad"))
-        and tail
-    ):
+        return Number(float(f"{digits}e{exponent - 6}"), base, "a Greek mu")
+    if letter == "R" and tail[:1] == "M" and not low.startswith(("meg", "mil")):
+        return Number(float(f"{digits}e{exponent + 6}"), spice, "M is milli to SPICE")
+    if letter == "C" and low[:1] == "f" and (not rest or rest.lower().startswith("arad")):
         return Number(base, spice, "F is femto to SPICE")
-    if tail.lower() == "x":
-        return Number(base * 1e6, base, "X is mega to some SPICE programs only")
+    if low == "x":
+        mega = float(f"{digits}e{exponent + 6}")
+        return Number(mega, base, "X is mega to some SPICE programs only")
     return Number(spice, spice)
 
 
@@ -125,10 +127,16 @@ def _coded(text: str, letter: str) -> Number | None:
     mark = found["mark"]
     if letter not in ("C", "L") and mark in "pPnNuUµμ":
         return None  # 1N914 is a diode
-    factor = _CODES[mark]
-    if letter == "C" and mark in "mM":
-        factor = 1e-3
-    value = float(f"{found['whole'] or 0}.{found['part']}") * factor
-    whole = float(found["whole"] or 0)
-    spice = whole * (1.0 if mark in "Rr" else _scale(mark)[0])
+    power = -3 if letter == "C" and mark in "mM" else _CODES[mark]
+    value = float(f"{found['whole'] or 0}.{found['part']}e{power}")
+    whole = found["whole"] or "0"
+    spice = float(whole) if mark in "Rr" else _scaled(whole, 0, mark)[0]
     return Number(value, spice, "the digits behind the letter are dropped by some SPICE programs")
+
+
+def leading_number(text: str) -> float | None:
+    """Return what a SPICE that stops at the first character it does not know makes of a text."""
+    found = _LEADING.match(text)
+    if found is None:
+        return None
+    return _scaled(found["digits"], int(found["exponent"] or 0), found["tail"])[0]

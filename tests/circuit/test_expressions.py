@@ -6,7 +6,14 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from railguard.circuit.expressions import ExpressionError, Function, evaluate, probes
+from railguard.circuit.expressions import (
+    ExpressionError,
+    Function,
+    evaluate,
+    parse,
+    parse_whole,
+    probes,
+)
 
 VALUES = {"a": 2.0, "b": 1000.0}
 
@@ -63,3 +70,35 @@ def test_any_text_has_a_value_or_a_reason(text):
     with contextlib.suppress(ExpressionError):
         outcome = evaluate(text, look)
     assert outcome is None or isinstance(outcome, float)
+
+
+def outcome(read, text):
+    """Return an expression's tree, or why it has none."""
+    try:
+        return read(text)
+    except ExpressionError as error:
+        return error.reason
+
+
+@given(
+    st.text(alphabet="12.eab_kM+-*/^ ()", max_size=10)
+    | st.builds(
+        " ".join, st.lists(st.sampled_from(("a", "1k", "-", "+", "*", "2k2", ".5", "v(a)", "!")))
+    )
+)
+def test_short_expressions_equal_the_grammar(text):
+    """One or two operands give the same tree by the short path and by the grammar."""
+    assert outcome(parse, text) == outcome(parse_whole, text)
+
+
+@pytest.mark.parametrize(
+    "text",
+    ["+".join(["1"] * 4000), "f0(1)", "g(1)", "(" * 60 + "1" + ")" * 60 + "^2" * 60],
+)
+def test_expression_that_goes_on_for_ever_ends(text):
+    """Long sums, functions that call each other twice at every step, and themselves."""
+    functions = {f"f{k}": Function(("x",), f"f{k + 1}(x)+f{k + 1}(x)") for k in range(60)}
+    functions["f60"] = Function(("x",), "x")
+    functions["g"] = Function(("x",), "g(x)+1")
+    with contextlib.suppress(ExpressionError):
+        assert isinstance(evaluate(text, look, functions), float)

@@ -51,8 +51,11 @@ def test_parameters_need_no_order():
 
 
 def test_parameter_cycle_is_told():
-    """A parameter that rests on itself has no value."""
-    assert "netlist-expression" in rules("V1 a 0 5\n.param b={c} c={b}\nR1 a 0 {b}")
+    """A parameter that rests on itself has no value, whether or not a card uses it."""
+    assert set(rules("V1 a 0 5\n.param b={c} c={b}\nR1 a 0 {b}")) == {"netlist-parameter"}
+    (problem,) = circuit("V1 a 0 5\nR1 a 0 1k\n.param b={c} c={b}").problems
+    assert problem.rule == "netlist-parameter"
+    assert "b -> c -> b" in problem.message
 
 
 def test_multiplier_counts():

@@ -5,7 +5,7 @@ from hypothesis import strategies as st
 
 from railguard.circuit.bind import bind
 from railguard.circuit.card import Names, UnboundError
-from railguard.circuit.flatten import Environment
+from railguard.circuit.environment import Environment
 from railguard.circuit.plain import plain_element
 from railguard.circuit.scopes import Scope
 from railguard.deck.cards import CardError, items_of

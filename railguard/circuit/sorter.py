@@ -1,0 +1,340 @@
+"""A deck's logical lines, sorted into scopes: what is defined where; nothing is expanded yet."""
+
+import re
+
+import msgspec
+
+from railguard.circuit.expressions import ExpressionError, Function, evaluate
+from railguard.circuit.model import Analysis
+from railguard.circuit.scopes import Scope
+from railguard.circuit.written import split_parameters, text_of, unquoted
+from railguard.deck.cards import Assignment, Call, CardError, Group, Items, items_of
+from railguard.deck.files import Deck
+from railguard.deck.lines import Line
+from railguard.notices import Problem
+
+_ANALYSES = frozenset(
+    {"tran", "ac", "dc", "op", "tf", "noise", "disto", "pz", "sens", "four", "fourier", "fft", "hb",
+     "sp", "lin", "net", "step", "meas", "measure", "temp"}
+)  # fmt: skip
+_KNOWN = frozenset(
+    {"options", "option", "opt", "save", "probe", "print", "plot", "width", "ic", "nodeset", "end",
+     "title", "backanno", "csparam", "endl", "lib", "include", "inc", "incl", "endc", "prot",
+     "unprot", "protect", "unprotect", "alias", "wave", "text", "load", "savebias",
+     "loadbias", "preprocess", "global_param", "machine", "endmachine", "watch", "list", "view"}
+)  # fmt: skip
+_GLUED_COMMA = re.compile(r"[^\s,],\s*[A-Za-z_]\w*\s*=(?!=)")
+_PARAMETERS = frozenset({"param", "params", "parameter", "parameters", "global_param"})
+
+
+class Sorted(msgspec.Struct, frozen=True):
+    """A deck's definitions and what could not be taken."""
+
+    top: Scope
+    globals: tuple[str, ...]
+    analyses: tuple[Analysis, ...]
+    problems: tuple[Problem, ...]
+    connected: tuple[tuple[str, str], ...] = ()
+
+
+class _Sorter:
+    def __init__(self) -> None:
+        self.top = Scope("", None, None)
+        self.stack = [self.top]
+        self.globals: list[str] = []
+        self.analyses: list[Analysis] = []
+        self.problems: list[Problem] = []
+        self.connected: list[tuple[str, str]] = []
+        self.commas = False
+        self.conditions: list[Line] = []
+        self.taken: list[bool] = []
+        self.live: list[bool] = []
+
+    def problem(self, rule: str, message: str, line: Line, remedy: str = "") -> None:
+        self.problems.append(
+            Problem(rule=rule, message=message, remedy=remedy, location=line.location)
+        )
+
+    def take(self, line: Line) -> None:
+        text = line.text
+        if text[0] != ".":
+            if not self.live or all(self.live):
+                self.stack[-1].cards.append(line)
+            return
+        word = text[1:].split(None, 1)[0].split("(")[0].lower() if len(text) > 1 else ""
+        if word in ("if", "elseif", "elif", "else", "endif"):
+            self.condition(word, line)
+            return
+        if not all(self.live):
+            return
+        try:
+            self.dot(word, line)
+        except CardError as error:
+            self.problem("netlist-card", f"The .{word} card cannot be read: {error.reason}.", line)
+
+    def dot(self, word: str, line: Line) -> None:
+        scope = self.stack[-1]
+        if word in ("subckt", "macro"):
+            self.open(line)
+        elif word in ("ends", "eom"):
+            if len(self.stack) > 1:
+                self.closed(self.stack.pop(), line)
+            else:
+                self.problem("netlist-end", ".ends closes no subcircuit.", line)
+        elif word == "model":
+            self.model(line)
+        elif word in _PARAMETERS:
+            for name, value in split_parameters(line.text.split(None, 1)[1:]):
+                self.parameter(scope, name, value, line)
+            if not self.commas and _GLUED_COMMA.search(line.text):
+                self.commas = True
+                self.problem(
+                    "netlist-other-dialect",
+                    "A comma glued to a parameter's value separates it from the next here; "
+                    "ngspice 39 never comes back from such a card.",
+                    line,
+                    "Write a blank instead.",
+                )
+        elif word == "func":
+            self.function(scope, line)
+        elif word == "connect":
+            first, *others = [i for i in items_of(line.text)[1:] if isinstance(i, str)] or [""]
+            self.connected += [(other, first) for other in others]
+        elif word == "global":
+            self.globals += [i for i in items_of(line.text)[1:] if isinstance(i, str)]
+        elif word in _ANALYSES:
+            fields = tuple(line.text.split()[1:])
+            self.analyses.append(Analysis(word, fields, line.location))
+        elif word not in _KNOWN:
+            self.problem(
+                "netlist-other-dialect",
+                f".{word} is not known here and is passed over.",
+                line,
+            )
+
+    def parameter(self, scope: Scope, name: str, value: str, line: Line) -> None:
+        if "(" in name and name.endswith(")"):
+            head, _, rest = name.partition("(")
+            arguments = tuple(a.strip().lower() for a in rest[:-1].split(",") if a.strip())
+            scope.functions[head.strip().lower()] = Function(arguments, unquoted(value))
+            return
+        before = scope.parameters.get(name.lower())
+        if before is not None and before[0] != value:
+            self.problems.append(
+                Problem(
+                    rule="netlist-parameter",
+                    message=f"The parameter {name} is defined twice, as {before[0]} on line "
+                    f"{before[1].number} and as {value}: the last one counts.",
+                    remedy="Leave one of them out.",
+                    location=line.location,
+                    severity="minor",
+                )
+            )
+        scope.parameters[name.lower()] = (value, line)
+
+    def function(self, scope: Scope, line: Line) -> None:
+        body = line.text.split(None, 1)[1] if len(line.text.split(None, 1)) > 1 else ""
+        head, _, rest = body.partition(")")
+        name, _, arguments = head.partition("(")
+        words = tuple(a.strip().lower() for a in arguments.split(",") if a.strip())
+        text = rest.strip().lstrip("=").strip()
+        scope.functions[name.strip().lower()] = Function(words, unquoted(text))
+
+    def open(self, line: Line) -> None:
+        items = items_of(line.text)[1:]
+        words: list[str] = []
+        defaults: dict[str, str] = {}
+        optional: dict[str, str] = {}
+        marker = ""
+        for item in items:
+            if isinstance(item, str):
+                if item.lower().rstrip(":") in ("params", "optional", "text") and ":" in item:
+                    marker = item.lower().rstrip(":")
+                elif item != ":" and not marker:
+                    words.append(item)
+            elif isinstance(item, Group):
+                words += [i for i in item.items if isinstance(i, str)]
+            elif isinstance(item, Assignment):
+                target = optional if marker == "optional" else defaults
+                target[item.key] = text_of(item.value)
+        name = words[0] if words else ""
+        scope = Scope(name, line, self.stack[-1])
+        scope.ports = (*words[1:], *optional)
+        scope.optional = optional
+        scope.defaults = defaults
+        scope.notes = line.comments
+        self.ports(scope, line)
+        if not name:
+            self.problem("netlist-card", "A .subckt card has no name.", line)
+        elif name.lower() in self.stack[-1].subcircuits:
+            self.problem(
+                "netlist-duplicate",
+                f"The subcircuit {name} is defined twice; the first one counts.",
+                line,
+            )
+        else:
+            self.stack[-1].subcircuits[name.lower()] = scope
+        self.stack.append(scope)
+
+    def ports(self, scope: Scope, line: Line) -> None:
+        """Say what is odd about a header's ports."""
+        for port, key in zip(scope.ports, scope.keys, strict=True):
+            if scope.keys.count(key) > 1 and port == scope.ports[scope.keys.index(key)]:
+                self.problem(
+                    "netlist-duplicate",
+                    f"The subcircuit {scope.name} has two ports of the name {port}.",
+                    line,
+                    "Give each port a name of its own.",
+                )
+            elif key == "0":
+                self.problem(
+                    "netlist-node-count",
+                    f"The subcircuit {scope.name} has a port 0, which is ground everywhere.",
+                    line,
+                    "Give the port a name.",
+                )
+            elif key == "gnd":
+                self.problem(
+                    "netlist-other-dialect",
+                    f"The port {port} of {scope.name} is the net the call gives it; to ngspice it "
+                    "is ground, whatever the call says.",
+                    line,
+                    "Give the port another name.",
+                )
+
+    def closed(self, scope: Scope, line: Line) -> None:
+        """Compare the name behind .ends with the subcircuit's."""
+        words = line.text.split()
+        if len(words) > 1 and words[1].casefold() != scope.name.casefold():
+            self.problems.append(
+                Problem(
+                    rule="netlist-end",
+                    message=f".ends {words[1]} closes the subcircuit {scope.name}.",
+                    remedy=f"Write .ends {scope.name}, or see which .ends is missing.",
+                    location=line.location,
+                    severity="minor",
+                )
+            )
+
+    def model(self, line: Line) -> None:
+        items = self.balanced(line)[1:]
+        if len(items) < 2 or not isinstance(items[0], str):
+            self.problem("netlist-model", "A .model card needs a name and a type.", line)
+            return
+        name, kind, rest = items[0], items[1], items[2:]
+        if isinstance(kind, Call):
+            word, rest = kind.name, (*kind.items, *rest)
+        else:
+            word = text_of(kind)
+        models = self.stack[-1].models
+        if name.lower() in models:
+            self.problem(
+                "netlist-duplicate",
+                f"The model {name} is defined twice; the first one counts.",
+                line,
+            )
+            return
+        models[name.lower()] = (name, word, rest, line)
+
+    def balanced(self, line: Line) -> Items:
+        """Split a .model card; parentheses that are not closed are closed at its end.
+
+        Raises  CardError
+        """
+        missing = line.text.count("(") - line.text.count(")")
+        if missing <= 0:
+            return items_of(line.text)
+        items = items_of(line.text + ")" * missing)
+        self.problem(
+            "netlist-card",
+            f"The .model card of {text_of(items[1]) if len(items) > 1 else 'no name'} is not "
+            "closed by ); it was read to its end.",
+            line,
+            "Put ) behind its last parameter.",
+        )
+        return items
+
+    def condition(self, word: str, line: Line) -> None:
+        if word == "endif":
+            if self.live:
+                self.live.pop()
+                self.taken.pop()
+                self.conditions.pop()
+            else:
+                self.problem("netlist-card", ".endif without .if.", line)
+            return
+        if word == "if":
+            self.live.append(False)
+            self.taken.append(False)
+            self.conditions.append(line)
+        if not self.live:
+            self.problem("netlist-card", f".{word} without .if.", line)
+            return
+        outer = all(self.live[:-1])
+        true = outer and not self.taken[-1] and (word == "else" or self.true(line))
+        self.live[-1] = true
+        self.taken[-1] = self.taken[-1] or true
+
+    def true(self, line: Line) -> bool:
+        """Work a condition out from the parameters met so far, of this scope and those outside."""
+        text = line.text.split(None, 1)[1] if len(line.text.split(None, 1)) > 1 else ""
+        if line.text.split("(")[0].strip().lower() in (".if", ".elseif", ".elif"):
+            text = line.text[line.text.index("(") :]
+        stack = list(reversed(self.stack))
+
+        def look(name: str) -> float:
+            for scope in stack:
+                found = scope.parameters.get(name)
+                written = found[0] if found is not None else scope.defaults.get(name)
+                if written is not None:
+                    return evaluate(unquoted(written), look, scope.functions)
+            raise ExpressionError(f"{name} is not defined")
+
+        try:
+            return bool(evaluate(text, look, self.top.functions))
+        except (ExpressionError, RecursionError) as error:
+            why = error if isinstance(error, ExpressionError) else "it rests on itself"
+            self.problem(
+                "netlist-expression",
+                f"The condition {text} cannot be worked out: {why}; its cards are left out.",
+                line,
+            )
+            return False
+
+
+def sort_deck(deck: Deck) -> Sorted:
+    """Sort a deck's lines into scopes."""
+    sorter = _Sorter()
+    longest = deck.bounds.line_characters
+    for line in deck.lines:
+        if len(line.text) > longest:
+            sorter.problem(
+                "netlist-bound",
+                f"A card is longer than {deck.bounds.line_characters:,} characters.",
+                line,
+            )
+            continue
+        sorter.take(line)
+    for scope in sorter.stack[1:]:
+        if scope.header is not None:
+            sorter.problem(
+                "netlist-end",
+                f"The subcircuit {scope.name} is not closed by .ends.",
+                scope.header,
+                "Put .ends behind its last card (.end ends the whole netlist).",
+            )
+    for line in sorter.conditions:
+        sorter.problem(
+            "netlist-end",
+            f"The {line.text.split()[0]} on line {line.number} is not closed by .endif; what its "
+            "condition leaves out is left out to the end.",
+            line,
+            "Put .endif behind its last card.",
+        )
+    return Sorted(
+        sorter.top,
+        tuple(sorter.globals),
+        tuple(sorter.analyses),
+        tuple(sorter.problems),
+        tuple(sorter.connected),
+    )
