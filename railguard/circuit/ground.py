@@ -48,7 +48,11 @@ def no_ground(likely: str, elements: Iterable[Element]) -> Problem:
         )
         remedy = f"Name {likely} 0 or GND."
     return Problem(
-        rule="netlist-ground", message=message, remedy=remedy, nets=(likely,) if likely else ()
+        rule="netlist-ground",
+        message=message,
+        remedy=remedy,
+        nets=(likely,) if likely else (),
+        severity="minor" if likely else None,
     )
 
 

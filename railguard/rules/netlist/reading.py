@@ -150,8 +150,6 @@ _TOPICS = (
         "ground",
         "A circuit without ground, or with a second name for it.",
         "Every voltage is counted from net 0.",
-        "major",
-        "minor",
     ),
     _Topic(
         "directive",
