@@ -9,7 +9,7 @@ nothing on those nets is taken for unconnected.
 from collections.abc import Callable
 
 from railguard.circuit import active
-from railguard.circuit.board import kind_of
+from railguard.circuit.board import behind_call, kind_of
 from railguard.circuit.boards import BOARD_LETTERS, component, is_board
 from railguard.circuit.calls import instance
 from railguard.circuit.card import Names, UnboundError
@@ -45,7 +45,11 @@ def bind(names: Names, items: Items, line: Line) -> tuple[Element, ...] | Instan
     name, letter = _designator(head)
     rest = items[1:]
     if letter == "X":
-        return instance(names, name, rest, line)
+        call = instance(names, name, rest, line)
+        own = behind_call(name) if names.scope.subcircuit(call.model.casefold()) is None else ""
+        if not own:
+            return call
+        return tuple(component(names, name, rest, line, kind_of(own) or "opaque"))
     handler = _LETTERS.get(letter)
     if handler is None or (letter in BOARD_LETTERS and (letter != "R" or len(rest) > 3)):
         board = kind_of(name)

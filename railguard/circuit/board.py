@@ -13,6 +13,8 @@ kind  link     conducts at DC: ferrite, fuse, jumper, net tie
       opaque   what it does to its nets cannot be seen
 """
 
+import re
+
 PREFIXES: dict[str, str] = {
     "U": "ic", "IC": "ic", "OP": "ic", "AR": "ic",
     "FB": "link", "F": "link", "FU": "link", "JP": "link", "NT": "link", "SJ": "link",
@@ -25,6 +27,22 @@ PREFIXES: dict[str, str] = {
     "T": "opaque", "Y": "opaque", "XTAL": "opaque", "M": "opaque", "LS": "opaque", "Q": "opaque",
     "A": "opaque", "W": "link", "R": "opaque", "C": "opaque", "L": "link",
 }  # fmt: skip
+
+
+_CALLED = re.compile(r"(?i)^X(?:[§_]|(?=[A-Z]{1,4}\d))(?P<own>[A-Z].*)$")
+_NOT_CALLED = frozenset({"link", "open", "battery", "pot", "diode"})
+
+
+def behind_call(designator: str) -> str:
+    """Return the schematic's designator of a board component exported as a call, or "".
+
+    `X§J1` and `XFB2` are a connector and a ferrite where the deck has no such subcircuit; an `XU1`
+    is whatever its name says and stays a call.
+    """
+    found = _CALLED.match(designator)
+    if found is None or kind_of(found["own"]) not in _NOT_CALLED:
+        return ""
+    return found["own"]
 
 
 def kind_of(designator: str) -> str | None:

@@ -5,11 +5,12 @@ from railguard.circuit.card import Names, flat
 from railguard.circuit.model import Element
 from railguard.circuit.sources import Source
 from railguard.circuit.values import not_fitted
+from railguard.circuit.waveforms import FUNCTIONS
 from railguard.deck.cards import Assignment, Items
 from railguard.deck.lines import Line
 from railguard.deck.numbers import read_number
 
-BOARD_LETTERS = frozenset("FHUBJTSKMPNOWAR")
+BOARD_LETTERS = frozenset("FHUBJTSKMPNOWARI")
 """Letters SPICE knows that board designators begin with as well."""
 
 
@@ -19,6 +20,8 @@ def is_board(names: Names, letter: str, rest: Items, board: str) -> bool:
     if letter in "FH":
         steered = len(words) >= 4 and words[2][:1].upper() == "V"
         return not steered and not any(w.lower().startswith("poly") for w in words)
+    if letter == "I":
+        return board == "ic" and len(words) >= 3 and not _drives(names, rest[2:])
     if letter == "U":
         return board == "ic" and bool(words)
     if letter == "B":
@@ -32,6 +35,15 @@ def is_board(names: Names, letter: str, rest: Items, board: str) -> bool:
     return (
         letter == "R" and board == "pot" and len(words) >= 4 and names.number(words[3]) is not None
     )
+
+
+def _drives(names: Names, rest: Items) -> bool:
+    """Tell whether what stands behind two nodes makes a source."""
+    first = rest[0]
+    if not isinstance(first, str):
+        return True
+    keyword = first.lower() in ("dc", "ac") or first.lower() in FUNCTIONS
+    return keyword or names.number(first) is not None
 
 
 def component(names: Names, name: str, rest: Items, line: Line, kind: str) -> list[Element]:

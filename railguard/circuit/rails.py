@@ -1,6 +1,7 @@
 """What the name of a net says of its level."""
 
 import re
+from functools import lru_cache
 
 _LEVELS = (
     re.compile(r"(?i)^(?P<sign>[+-]?)(?P<whole>\d{1,3})V(?P<part>\d{0,3})(?P<tail>[A-Z]{0,6})$"),
@@ -12,6 +13,7 @@ _LEVELS = (
 HIGHEST_NAMED = 100.0
 
 
+@lru_cache(maxsize=65536)
 def level_from_name(net: str) -> float | None:
     """Read the level a net's name states, V: `+12V`, `-5VA`, `12V0`, `3V3`, `VCC_3V3`, `15-`.
 

@@ -46,6 +46,7 @@ class _Sorter:
         self.problems: list[Problem] = []
         self.connected: list[tuple[str, str]] = []
         self.commas = False
+        self.gnd_ports: list[tuple[str, Line]] = []
         self.conditions: list[Line] = []
         self.taken: list[bool] = []
         self.live: list[bool] = []
@@ -194,13 +195,21 @@ class _Sorter:
                     "Give the port a name.",
                 )
             elif key == "gnd":
-                self.problem(
-                    "netlist-other-dialect",
-                    f"The port {port} of {scope.name} is the net the call gives it; to ngspice it "
-                    "is ground, whatever the call says.",
-                    line,
-                    "Give the port another name.",
-                )
+                self.gnd_ports.append((scope.name, line))
+
+    def tell_gnd_ports(self) -> None:
+        """Say once what ngspice makes of ports with the name of ground."""
+        if not self.gnd_ports:
+            return
+        names = [name for name, _ in self.gnd_ports]
+        more = f" and {len(names) - 3} more" if len(names) > 3 else ""
+        self.problem(
+            "netlist-other-dialect",
+            f"The port gnd of {', '.join(names[:3])}{more} is the net the call gives it; to "
+            "ngspice it is ground, whatever the call says.",
+            self.gnd_ports[0][1],
+            "Give the port another name.",
+        )
 
     def closed(self, scope: Scope, line: Line) -> None:
         """Compare the name behind .ends with the subcircuit's."""
@@ -323,6 +332,7 @@ def sort_deck(deck: Deck) -> Sorted:
                 scope.header,
                 "Put .ends behind its last card (.end ends the whole netlist).",
             )
+    sorter.tell_gnd_ports()
     for line in sorter.conditions:
         sorter.problem(
             "netlist-end",

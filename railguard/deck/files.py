@@ -13,7 +13,14 @@ from types import MappingProxyType
 import msgspec
 
 from railguard.deck.encoding import decode, mend, no_netlist, no_netlist_text
-from railguard.deck.includes import bare, chain_of, find, library_card, section_opened
+from railguard.deck.includes import (
+    bare,
+    chain_of,
+    find,
+    holds_models,
+    library_card,
+    section_opened,
+)
 from railguard.deck.lines import Line, scan
 from railguard.deck.source import DISK, Files
 from railguard.location import Location
@@ -342,6 +349,8 @@ class _Reader:
                 message=f"The included file {message}",
                 remedy=f"Put {name} beside the netlist, or take the include out.",
                 location=place,
+                # What is missing of a library of models costs their figures, not the circuit.
+                severity="minor" if holds_models(name) else None,
             )
         )
 
@@ -366,8 +375,7 @@ def _is_card(title: str) -> bool:
 
 
 def _is_library(name: str, text: str) -> bool:
-    suffix = PurePosixPath(name.replace("\\", "/")).suffix.lower()
-    if suffix in (".lib", ".mod", ".sub", ".subckt", ".inc", ".model", ".mdl"):
+    if holds_models(name) or name.lower().endswith(".inc"):
         return True
     first = text.lstrip("\ufeff").split("\n", 1)[0].strip().lower()
     return first.startswith((".subckt", ".model", ".param", ".lib"))

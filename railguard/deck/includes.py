@@ -10,6 +10,18 @@ _DRIVE = re.compile(r"^[A-Za-z]:")
 _SECTION = re.compile(r"(?i)^\.lib\s+([\w-]+)\s*$")
 
 
+_OF_MODELS = frozenset(
+    {".lib", ".mod", ".sub", ".subckt", ".model", ".models", ".mdl", ".pm", ".dio", ".bjt", ".mos",
+     ".jft", ".olb"}
+)  # fmt: skip
+"""Suffixes of files that hold definitions: common practice, no source."""
+
+
+def holds_models(name: str) -> bool:
+    """Tell by a file's name whether it holds models and subcircuits rather than a circuit."""
+    return PurePosixPath(name.replace("\\", "/")).suffix.lower() in _OF_MODELS
+
+
 def bare(word: str) -> str:
     """Take the quotes off a file's or section's name."""
     word = word.strip()

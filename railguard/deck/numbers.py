@@ -72,7 +72,7 @@ def _read(text: str, letter: str) -> Number | None:
     if tail and tail[0] in "dD":
         old = _D_EXPONENT.match(text)
         if old is not None and _TAIL.match(old[3]):
-            value = _scaled(old[1], int(old[2]), old[3])[0]
+            value = _scaled(old[1], int(old[2]), old[3])
             # ngspice ends the number before a sign, and takes what follows for the value.
             spice = float(old[2]) if old[2][0] in "+-" else value
             return Number(value, spice, "a D exponent, which not every program knows")
@@ -88,30 +88,31 @@ def plain_number(text: str, letter: str) -> float | None:
     return number.value if number is not None and not number.trap else None
 
 
-def _scaled(digits: str, exponent: int, tail: str) -> tuple[float, str]:
-    """Return a number with its scale suffix, and what is left of the tail.
+def _scaled(digits: str, exponent: int, tail: str) -> float:
+    """Return a number with its scale suffix; the letters behind it mean nothing.
 
     The suffix is taken into the exponent, so that 10u is the float nearest to 0.00001.
     """
     low = tail.lower()
     if low.startswith("mil"):
-        return float(f"{digits}e{exponent}") * MIL, tail[3:]
+        return float(f"{digits}e{exponent}") * MIL
     for length in (3, 1):
         power = POWERS.get(low[:length])
         if power is not None and len(low) >= length:
-            return float(f"{digits}e{exponent + power}"), tail[length:]
-    return float(f"{digits}e{exponent}"), tail
+            return float(f"{digits}e{exponent + power}")
+    return float(f"{digits}e{exponent}")
 
 
 def _trapped(digits: str, exponent: int, tail: str, letter: str) -> Number:
-    spice, rest = _scaled(digits, exponent, tail)
+    spice = _scaled(digits, exponent, tail)
     base = float(f"{digits}e{exponent}")
     low = tail.lower()
     if tail[:1] == GREEK_MU:
         return Number(float(f"{digits}e{exponent - 6}"), base, "a Greek mu")
     if letter == "R" and tail[:1] == "M" and not low.startswith(("meg", "mil")):
         return Number(float(f"{digits}e{exponent + 6}"), spice, "M is milli to SPICE")
-    if letter == "C" and low[:1] == "f" and (not rest or rest.lower().startswith("arad")):
+    # A small f alone was written by somebody who knows: the capacitances of a layout end in it.
+    if letter == "C" and (tail == "F" or low.startswith("farad")):
         return Number(base, spice, "F is femto to SPICE")
     if low == "x":
         mega = float(f"{digits}e{exponent + 6}")
@@ -130,7 +131,7 @@ def _coded(text: str, letter: str) -> Number | None:
     power = -3 if letter == "C" and mark in "mM" else _CODES[mark]
     value = float(f"{found['whole'] or 0}.{found['part']}e{power}")
     whole = found["whole"] or "0"
-    spice = float(whole) if mark in "Rr" else _scaled(whole, 0, mark)[0]
+    spice = float(whole) if mark in "Rr" else _scaled(whole, 0, mark)
     return Number(value, spice, "the digits behind the letter are dropped by some SPICE programs")
 
 
@@ -139,4 +140,4 @@ def leading_number(text: str) -> float | None:
     found = _LEADING.match(text)
     if found is None:
         return None
-    return _scaled(found["digits"], int(found["exponent"] or 0), found["tail"])[0]
+    return _scaled(found["digits"], int(found["exponent"] or 0), found["tail"])
