@@ -9,7 +9,10 @@ from railguard.analysis.surroundings import heaviest_load, load_capacitance
 from railguard.analysis.view import View
 
 _NO_SUPPLY = Unknown("its supply pins leave it no supply voltage", "see the finding on its supply")
-_NO_LOOP = Unknown("its output stands at one of its limits: no feedback holds it", "a use for it")
+_NO_LOOP = Unknown(
+    "its output stands at one of its limits and what it drives there is not followed",
+    "--engine ngspice",
+)
 
 
 def output_side(

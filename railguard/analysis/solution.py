@@ -107,8 +107,15 @@ def solve(
     network = Network(prepared.elements, amplifiers, extra=known)
     loop_network = Network(elements, amplifiers, extra=known) if bent else network
     signs = return_ratios(loop_network, np.zeros(1))[0].real
-    ways = Ways(prepared.elements, amplifiers)
+    passive = passive_view(prepared.elements, amplifiers)
     uses = {a.designator: use for a in amplifiers if (use := stated_use(a, settings)) is not None}
+    latched = _latched(amplifiers, uses, passive)
+    if latched and len(latched) < len(amplifiers) and (signs < 0).any():
+        without = Network(elements, amplifiers, frozenset(latched), known)
+        rest = return_ratios(without, np.zeros(1))[0].real
+        own = (latched.get(a.designator) for a in amplifiers)
+        signs = np.array([r if t is None else t for r, t in zip(rest, own, strict=True)])
+    ways = Ways(prepared.elements, amplifiers)
     turning = oscillators(elements, amplifiers, ways, prepared, uses)
     relaxing = {a.designator for a in amplifiers if charges_itself(a, ways)}
     forced = _without_loop(amplifiers, signs, settings) | frozenset(clamps) | relaxing | turning.all
@@ -135,7 +142,7 @@ def solve(
         prepared=prepared,
         amplifiers=amplifiers,
         answers=answers,
-        passive=passive_view(prepared.elements, amplifiers),
+        passive=passive,
         ways=ways,
         dc_map=DcMap(prepared.elements, amplifiers, _stated(prepared, feeds, settings)),
         swept=swept,
@@ -162,6 +169,29 @@ def _through_diodes(
     closed = is_open & (np.abs(conducted) / gains >= OPEN_BETA)
     names = frozenset(a.designator for a, c in zip(amplifiers, closed, strict=True) if c)
     return np.where(closed, conducted, signs), names
+
+
+def _latched(
+    amplifiers: tuple[Amplifier, ...], uses: Mapping[str, Use], passive: Passive
+) -> dict[str, float]:
+    """Return A*beta of the amplifiers that stand at a limit: their own network alone says so.
+
+    They amplify nothing there. The loops of all others, which their gain would turn round over the
+    resistance of a common rail, are to be looked at without them.
+    """
+    found = {}
+    for amplifier in amplifiers:
+        branch = passive.network.outputs.get(amplifier.designator, -1)
+        if branch < 0:
+            continue
+        rows = [passive.network.row(amplifier.minus), passive.network.row(amplifier.plus)]
+        minus, plus = (
+            float(passive.dc.adjoint([row])[0, branch].real) if row >= 0 else 0.0 for row in rows
+        )
+        meant = uses.get(amplifier.designator) in ("comparator", "oscillator")
+        if meant or plus - minus > OPEN_BETA:
+            found[amplifier.designator] = (minus - plus) * open_loop_gain(amplifier)
+    return found
 
 
 def _without_loop(

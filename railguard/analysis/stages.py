@@ -27,6 +27,7 @@ from railguard.analysis.stage import (
 )
 from railguard.analysis.supplies import Feed
 from railguard.analysis.surroundings import feedback_of, output_load
+from railguard.analysis.switching import is_given, most_current, most_heat
 from railguard.analysis.thermal import dissipation, junction, package_heat
 from railguard.analysis.topology import instrumentation, topology_of
 from railguard.analysis.unseen import Spoiled
@@ -142,6 +143,11 @@ def _stage(
     topology = topology_of(amplifier, solution.ways, loop, rails)
     gains = gains_of(view)
     heat = dissipation(device, supply, output, current, load)
+    if heat is None and use in ("comparator", "oscillator"):
+        most = most_current(amplifier, solution.ways, supply)
+        heat = most_heat(device, supply, most)
+        if is_given(most, current):
+            unknown.pop("current", None)
     if heat is None and "output" in unknown:
         unknown["dissipation"] = unknown["output"]
     return Stage(

@@ -3,6 +3,7 @@
 import pytest
 
 from railguard.circuit.rails import level_from_name
+from railguard.reviewing import review
 
 FOLLOWER = "VIN in 0 SIN(2 1 1k)\nXU1 in out vcc 0 out MCP6002\n"
 
@@ -98,3 +99,15 @@ def test_capacitor_behind_a_ferrite_is_upstream(design):
     rail = design(FOLLOWER, supply="V1 bat 0 5\nL1 bat vcc 1u\nC1 bat 0 100n").rails[0]
     assert rail.decoupling == ()
     assert [(c.designator, c.behind) for c in rail.upstream] == [("C1", "L1")]
+
+
+def test_one_large_resistor_from_a_source_feeds_a_pin():
+    """A micropower stage behind 10 kilohm is fed, and told what the resistor takes."""
+    text = "t\nVP raw 0 5\nRS raw vp 10k\nC1 vp 0 100n\nVIN in 0 1\nXU1 in o vp 0 o MCP6041\n.end\n"
+    (design,) = review(text, plugins=False).designs
+    (rail,) = design.design.rails
+    assert rail.series == ("RS",)
+    assert rail.level == pytest.approx(5.0, abs=0.1)
+    none = text.replace("RS raw vp 10k", "RS raw x 10k\nRT x vp 10k")
+    (design,) = review(none, plugins=False).designs
+    assert "supply-missing" in {f.rule for f in design.findings}

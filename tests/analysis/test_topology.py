@@ -16,6 +16,10 @@ STAGES = {
     ),
     "transimpedance": "I1 0 n SIN(0 1u 1k)\nR2 n out 100k\nXU1 0 n vp vn out TL072",
     "integrator": "VIN in 0 SIN(0 1 1k)\nR1 in n 10k\nC2 n out 10n\nXU1 0 n vp vn out TL072",
+    "multiple-feedback filter": (
+        "VIN in 0 SIN(0 1 1k)\nR1 in a 10k\nR2 a out 10k\nR3 a n 5k\nC1 a 0 10n\nC2 n out 2n\n"
+        "XU1 0 n vp vn out TL072"
+    ),
     "Sallen-Key low-pass": (
         "VIN in 0 SIN(0 1 1k)\nR1 in a 10k\nR2 a p 10k\nC1 a out 2n\nC2 p 0 1n\n"
         "XU1 p out vp vn out TL072"
@@ -28,6 +32,12 @@ STAGES = {
         "VIN in 0 SIN(0 1 1k)\nR1 p 0 1k\nR2 p out 10k\nXU1 p in vp vn out TL072"
     ),
 }
+
+
+def test_an_integrator_held_by_a_t_is_no_filter(stage):
+    """A T of resistors beside the capacitor holds the level; no capacitor stands in it."""
+    cards = "VIN in 0 SIN(0 1 1k)\nR1 in n 10k\nC2 n out 10n\nR2 n t 100k\nR3 t out 100k\n"
+    assert stage(cards + "R4 t 0 1k\nXU1 0 n vp vn out TL072").topology == "integrator"
 
 
 @pytest.mark.parametrize("name", STAGES)

@@ -138,7 +138,8 @@ FAST = Rule(
 def judge_reference(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome]:
     """Judge whether the divider that sets an input's level is bypassed."""
     divider = stage.inputs.plus.divider
-    if stage.use in ("unused", "comparator") or divider is None or design.kind == "bench":
+    switches = stage.use in ("comparator", "oscillator")
+    if stage.use == "unused" or switches or divider is None or design.kind == "bench":
         return
     if divider.bypass > 0:
         return
@@ -167,7 +168,7 @@ REFERENCE = Rule(
     judges="Whether a reference divided from a rail has a capacitor.",
     reason="A bare divider passes half of what the rail carries; no supply rejection helps there.",
     source="Analog Devices AN-581, opening section",
-    silent="Comparators, whose threshold may well follow the rail; bench decks.",
+    silent="Comparators and oscillators, whose thresholds may well follow the rail; bench decks.",
     judge=judge_reference,
 )
 

@@ -84,14 +84,18 @@ def judge_differential(stage: Stage, limits: Limits, design: Design) -> Iterator
         return
     figure = None if stage.family is None else stage.family.differential_input
     limit = None if figure is None else figure.best
+    series = sum(pin.series or 0.0 for pin in (stage.inputs.plus, stage.inputs.minus))
+    # Clamps begin at one diode; resistors before the inputs bound their current in any device.
+    conducts = limit if limit is not None else limits["diode"]
+    if asked <= conducts * (1 + ROUNDING):
+        return
+    if series > 0 and (asked - conducts) / series <= limits["current"]:
+        return
     gap = None
     if limit is None and stage.family is not None:
         gap = missing_figure(stage, "differential input limit", "differential_input")
     yield from open_point("headroom-differential", stage, ("device",), gap)
-    if limit is None or figure is None or asked <= limit * (1 + ROUNDING):
-        return
-    series = sum(pin.series or 0.0 for pin in (stage.inputs.plus, stage.inputs.minus))
-    if series > 0 and (asked - limit) / series <= limits["current"]:
+    if limit is None or figure is None:
         return
     known = figure.guaranteed is not None
     basis = figure.guaranteed_basis if known else figure.typical_basis
@@ -131,6 +135,13 @@ DIFFERENTIAL = Rule(
             unit="A",
             meaning="current the clamps between the inputs may carry",
             source="from memory: 10 mA in the NE5532 data sheet, 25 mA in the OP27's",
+        ),
+        Limit(
+            name="diode",
+            default=0.5,
+            unit="V",
+            meaning="where clamps begin to conduct in a device whose data sheet does not tell",
+            source="from memory: 0.5 to 0.7 V in data sheets of devices with clamps",
         ),
     ),
     judge=judge_differential,
