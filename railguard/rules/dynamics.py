@@ -5,8 +5,8 @@ from collections.abc import Iterator
 
 from railguard.analysis.stage import Bound, Design, Stage
 from railguard.rules.compose import breach_finding, missing_figure, open_point, stage_finding
-from railguard.rules.links import in_ring
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
+from railguard.rules.relations import in_ring
 from railguard.rules.severity import TABLE, Broken, breach, evidence
 from railguard.rules.wording import NO_SOURCE, device, limit_note, origin, sheet
 from railguard.units import percent, si

@@ -150,7 +150,9 @@ def flow_integrator(a: Amplifier) -> Made:
     return {
         "VIN": sine(a, a.peak / 4), "R1": "R1 in n 10k", "R2": "R2 n out 20k",
         "CF": "CF n out 100n", "XU1": amp(a, a.reference, "n", "out"), "RL": "RL out 0 20k",
-    }, {"feedback": "R2", "gain": "R1", "source": "VIN", "across": "CF"}  # fmt: skip
+    }, {
+        "feedback": "R2", "gain": "R1", "source": "VIN", "across": "CF", "swing": "0.44",
+    }  # fmt: skip
 
 
 def geophone(a: Amplifier) -> Made:

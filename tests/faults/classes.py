@@ -116,7 +116,7 @@ def rails_of_one_package_differ(base: Base) -> Fault | None:
     spare = base.roles.get("spare")
     if not spare:
         return None
-    level = base.amplifier.positive * 0.8
+    level = base.amplifier.positive * 0.9
     cards = base.rewired(spare, "vp", "vq")
     cards |= {"VQ": f"VQ vq 0 {level:.3g}", "CQ": "CQ vq 0 100n"}
     return Fault(cards, ("supply-package-split",), (spare, base.main), True)
@@ -562,7 +562,7 @@ def difference_unmatched(base: Base) -> Fault | None:
         return None
     level = a.peak
     cards = base.with_cards(
-        VA=f"VA a 0 SIN({level:g} 0.02 40)", VB=f"VB b 0 {level:g}",
+        VA=f"VA a 0 SIN({level:g} 0.02 40)", VB=f"VB b 0 SIN({level:g} 0.02 33)",
     ) | {"*9": "* railguard: tolerance resistor 1%"}  # fmt: skip
     return Fault(cards, ("feedback-matching",), (base.main,))
 

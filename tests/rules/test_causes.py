@@ -6,8 +6,18 @@ from railguard.analysis.stage import Feedback, Output
 from railguard.devices.model import SwingPoint
 from railguard.rules.causes import merge, order
 from railguard.rules.compose import finding
-from railguard.rules.links import elements_of, upstream
-from tests.rules.stages import FAMILY, capacitor, changed, design, pin, rail, resistor, stage
+from railguard.rules.relations import elements_of, upstream
+from tests.rules.stages import (
+    FAMILY,
+    capacitor,
+    changed,
+    design,
+    pin,
+    rail,
+    resistor,
+    stage,
+    voltage_source,
+)
 
 
 def about(rule, *designators, severity="major", nets=(), demand=None, limit=None, margin=None):
@@ -395,3 +405,36 @@ def test_a_missing_value_explains_the_feedback_it_was_to_be():
     chain = design(stage(feedback=Feedback(elements=("R9",))), second, elements=elements)
     later = about("headroom-output", "XU2")
     assert rules(merge([later, missing], chain))[1] == ["headroom-output"]
+
+
+def test_one_reference_that_takes_several_stages_out_is_one_finding():
+    """Two stages on one source's net that rest beyond their ranges, at either end."""
+    pins = changed(stage().inputs, plus=pin("ref", level=11.9))
+    high = changed(stage().output, level=11.9)
+    first = stage("XU1", inputs=pins, output=high)
+    second = stage("XU2", inputs=pins, output=high)
+    elements = (voltage_source("VREF", 11.9, "ref", "0"),)
+    found = [
+        about("headroom-output", name, severity=severity, demand=11.9, limit=10.5)
+        for name, severity in (("XU1", "major"), ("XU2", "critical"))
+    ]
+    whole = design(first, second, elements=elements)
+    assert tree(merge(found, whole)) == [
+        ("headroom-output", ("XU2",), [("headroom-output", ("XU1",), "ref")])
+    ]
+    assert len(merge(found, design(first, second, elements=()))) == 2
+    resting = changed(first, output=changed(high, level=5.0))
+    assert len(merge(found, design(resting, second, elements=elements))) == 2
+
+
+def test_a_stage_without_a_loop_explains_the_network_that_ends_at_it():
+    """The other half of an instrument amplifier hangs on a net that nothing holds."""
+    elements = (resistor("RG", 1e3, "n1", "n2"), resistor("R2", 1e4, "n2", "o2"))
+    pins = changed(stage().inputs, minus=pin("n2"))
+    half = stage("XU2", inputs=pins)
+    open_loop = about("feedback-open", "XU1", severity="critical", nets=("o1", "n1"))
+    high = about("feedback-high", "XU2")
+    assert rules(merge([high, open_loop], design(stage(), half, elements=elements)))[1] == [
+        "feedback-high"
+    ]
+    assert len(merge([high, open_loop], design(stage(), half, elements=elements[1:]))) == 2
