@@ -21,7 +21,6 @@ ORDER = (
     ("engine",),
     ("rules",),
     ("reviewing",),
-    ("review",),  # the shim, for a few hours
     ("simulated",),
     ("report",),
     ("audit",),
