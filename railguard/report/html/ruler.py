@@ -14,8 +14,8 @@ from railguard.report.html.svg import node, picture
 from railguard.report.scale import Role, Scale, asked_volts, limit_words
 from railguard.units import si
 
-WIDTH, HEIGHT = 680.0, 84.0
-LEFT, RIGHT = 110.0, 570.0
+WIDTH, HEIGHT = 600.0, 84.0
+LEFT, RIGHT = 92.0, 508.0
 """Where the rails stand; what is asked beyond one is drawn outside it."""
 
 EDGE = 24.0
@@ -25,7 +25,11 @@ AXIS = 42.0
 HEAVY, LIGHT = 9.0, 4.0
 """Half the height of the bars of what is asked for, and of what is free."""
 
-_LETTER = 6.6
+_GAP = 8.0
+"""Room between a limit and its label."""
+
+Words = tuple[str, ...]
+_LETTER = 6.8
 """Width of a letter of the labels, used to keep them apart."""
 
 
@@ -135,13 +139,31 @@ class _Ruler:
         low, high = limit_words(scale, upper=False), limit_words(scale, upper=True)
         if not low and not high:
             yield _label("reach not known", (LEFT + RIGHT) / 2, above, "middle", "limit")
-        if low:
-            x = max(self.at(self.limit(low[0], upper=False)), LEFT) + 8
-            yield _label(low[0], x, above, "start", "limit")
-        if high:
-            x = min(self.at(self.limit(high[0], upper=True)), RIGHT) - 8
-            yield _label(high[0], x, above, "end", "limit")
+        at = [
+            min(max(self.at(self.limit(words[0], upper=upper)), LEFT), RIGHT) if words else None
+            for words, upper in ((low, False), (high, True))
+        ]
+        yield from self.limit_labels(low, at[0], high, at[1], above)
         yield from self.asked_labels(below)
+
+    def limit_labels(
+        self, low: Words, start: float | None, high: Words, end: float | None, y: float
+    ) -> Iterator[ET.Element]:
+        """Write the limits inside the band they bound, or outside it where it is too narrow."""
+        inside = 0.0 if start is None or end is None else end - start - 2 * _GAP
+        narrow = bool(low and high) and inside < _LETTER * (len(low[0]) + len(high[0]) + 2)
+        if start is not None:
+            room = start - LEFT > _LETTER * len(low[0])
+            shown = low[0] if room or not narrow else low[-1]
+            yield _label(
+                shown, start + (-4 if narrow else _GAP), y, "end" if narrow else "start", "limit"
+            )
+        if end is not None:
+            room = RIGHT - end > _LETTER * len(high[0])
+            shown = high[0] if room or not narrow else high[-1]
+            yield _label(
+                shown, end + (4 if narrow else -_GAP), y, "start" if narrow else "end", "limit"
+            )
 
     def limit(self, words: str, *, upper: bool) -> float:
         """Return the limit that `words` speak of."""

@@ -213,7 +213,10 @@ class _Design:
 
     def device(self, finding: Finding) -> str:
         """Return the device a finding is about, as the catalogue names its family."""
-        packages = {package.designator: package.device for package in self.review.design.packages}
+        packages = {
+            package.designator: package.family or package.device
+            for package in self.review.design.packages
+        }
         for name in finding.designators:
             stage = self.stages.get(name)
             if stage is not None:
@@ -326,7 +329,7 @@ def _numbers_of(finding: Finding) -> Iterator[tuple[str, str]]:
         if value is not None:
             yield name, si(value, unit)
     if finding.margin_share is not None:
-        yield "Margin, of the demanded span", percent(finding.margin_share)
+        yield "Of the span", percent(finding.margin_share)
     if finding.demand is not None:
         yield "At", "the worst corner" if finding.corner == "worst-case" else "values as drawn"
     if finding.basis:

@@ -52,7 +52,7 @@
     });
     document.getElementById("shown").textContent = `${shown} of ${rows.length} findings shown`;
   };
-  form.addEventListener("input", filter);
+  form.addEventListener("change", filter);
   form.addEventListener("reset", () => setTimeout(filter));
   form.addEventListener("submit", (event) => event.preventDefault());
   form.addEventListener("keydown", (event) => { if (event.key === "Escape") form.reset(); });
