@@ -8,6 +8,7 @@ from railguard.commands.rules import as_markdown
 from railguard.report.terminal import terminal
 from railguard.reviewing import review
 from railguard.settings.file import parse
+from tests import write_readme
 
 ROOT = Path(__file__).parents[1]
 README = (ROOT / "README.md").read_text(encoding="utf-8")
@@ -29,6 +30,20 @@ def test_shown_report_is_a_real_one(monkeypatch):
     name = "fixtures/faults/headroom-output.cir"
     shown = README.split(f"$ railguard review {name}\n")[1].split("```")[0]
     assert shown.rstrip() == terminal(review(Path(name)), None).decode().rstrip()
+
+
+def test_pictures_are_there_and_the_terminals_is_a_real_one():
+    """`python tests/write_readme.py` makes them; the page's own is drawn by a browser."""
+    for name in ("terminal.svg", "page.png"):
+        assert f"(.pictures/{name})" in README
+        assert (ROOT / ".pictures" / name).is_file()
+    shown = (ROOT / ".pictures" / "terminal.svg").read_text(encoding="utf-8")
+    assert shown == write_readme.terminal_picture()
+
+
+def test_writing_the_readme_anew_changes_nothing():
+    """The script that makes its generated parts finds them as they are."""
+    assert write_readme.rewritten(README) == README
 
 
 def test_settings_example_is_valid():

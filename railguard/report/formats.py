@@ -10,6 +10,7 @@ _MODULES = {
     "terminal": "railguard.report.terminal",
     "json": "railguard.report.as_json",
     "html": "railguard.report.html.document",
+    "svg": "railguard.report.as_svg",
 }
 FORMATS = tuple(_MODULES)
 

@@ -54,6 +54,11 @@ def terminal(review: Review, stream: IO[str] | None) -> bytes:
     return _printed(stream, lambda printer: printer.run(review))
 
 
+def print_on(console: Console, review: Review) -> None:
+    """Print a review on a console of any kind, in its width."""
+    _Printer(console, "utf-8").run(review)
+
+
 def held(review: Review, stream: IO[str] | None = None) -> bytes:
     """Print only what puts designs on hold; nothing where nothing does.
 

@@ -6,8 +6,11 @@ from functools import cache
 from pathlib import Path
 from typing import TYPE_CHECKING
 
+from markupsafe import Markup
+
 from railguard import __version__
 from railguard.report import words
+from railguard.report.html.view import PageView, page
 from railguard.report.visible import visible
 from railguard.report.wrapping import with_unit
 from railguard.reviewing import Review
@@ -24,25 +27,36 @@ def document(review: Review, root: Path | None = None) -> bytes:
     root  the run's root; the page names no fingerprints, so it is not used
     """
     del root
-    from markupsafe import Markup
-
-    from railguard.report.html.view import page
-
     style, script = _text("page.css"), _text("page.js")
+    return _filled(
+        "page.html",
+        page(review),
+        script=Markup(script),
+        style_hash=_hash(style),
+        script_hash=_hash(script),
+    ).encode("utf-8", "replace")
+
+
+def fragment(review: Review, prefix: str) -> str:
+    """Return the part of a page that a notebook shows: no script, no netlist.
+
+    prefix  what every id begins with, so that several may stand on one page
+    """
+    return _filled("fragment.html", page(review, prefix, netlists=False))
+
+
+def _filled(template: str, view: PageView, **more: str) -> str:
     return (
         _environment()
-        .get_template("page.html")
+        .get_template(template)
         .render(
-            page=page(review),
-            style=Markup(style),
-            script=Markup(script),
-            style_hash=_hash(style),
-            script_hash=_hash(script),
+            page=view,
+            style=Markup(_text("page.css")),
             version=__version__,
             caution=words.CAUTION,
             labels=words,
+            **more,
         )
-        .encode("utf-8", "replace")
     )
 
 

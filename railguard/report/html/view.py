@@ -124,18 +124,26 @@ class PageView(msgspec.Struct, frozen=True, kw_only=True):
         return tuple(sorted(found))
 
 
-def page(review: Review) -> PageView:
-    """Return what the page shows of a review, the worst design first."""
+def page(review: Review, prefix: str = "", *, netlists: bool = True) -> PageView:
+    """Return what the page shows of a review, the worst design first.
+
+    prefix    what every id on the page begins with
+    netlists  False leaves their texts out
+    """
     ordered = sorted(review.designs, key=words.rank)
-    full = {id(design) for design in ordered[:DETAILED_FILES]}
-    left = len(ordered) - len(full)
+    left = max(len(ordered) - DETAILED_FILES, 0)
     return PageView(
         designs=tuple(
-            _Design(design, f"d{number}", in_full=id(design) in full).view()
+            _Design(
+                design,
+                f"{prefix}d{number}",
+                in_full=number <= DETAILED_FILES,
+                netlist=netlists and number <= DETAILED_FILES,
+            ).view()
             for number, design in enumerate(ordered, 1)
         ),
         run=tuple(
-            _finding(finding, f"run-f{number}", "the run", "", Places("", {}))
+            _finding(finding, f"{prefix}run-f{number}", "the run", "", Places("", {}))
             for number, finding in enumerate(review.findings, 1)
         ),
         left_out=_left_out(left),
@@ -154,17 +162,16 @@ def _left_out(count: int) -> str:
 class _Design:
     """One netlist on its way to the page."""
 
-    def __init__(self, review: DesignReview, name: str, *, in_full: bool) -> None:
+    def __init__(self, review: DesignReview, name: str, *, in_full: bool, netlist: bool) -> None:
         self.review = review
         self.id = name
         self.in_full = in_full
         self.stages = {stage.designator: stage for stage in review.design.stages}
         self.nets = Nets(review.design)
         self.numbers = _numbers(review) if in_full else {}
-        self.files = {file: index for index, file in enumerate(review.design.circuit.texts, 1)}
+        shown = review.design.circuit.texts if netlist else ()
         self.places = Places(
-            review.path,
-            {file: f"{name}-l{index}" for file, index in self.files.items()} if in_full else {},
+            review.path, {file: f"{name}-l{index}" for index, file in enumerate(shown, 1)}
         )
         self.made = 0
 
@@ -190,7 +197,7 @@ class _Design:
             not_checked=tuple(open_groups(review.not_checked, review.design.stages)),
             waived=tuple(_waived(review)),
             reading=tuple(remark.message for remark in review.design.remarks),
-            listings=listings(self.review, subjects, self.places) if self.in_full else (),
+            listings=listings(self.review, subjects, self.places),
             in_full=self.in_full,
         )
 
