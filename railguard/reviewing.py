@@ -2,7 +2,7 @@
 
 import datetime as dt
 import importlib
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from pathlib import Path
 from types import MappingProxyType
 from typing import Protocol
@@ -115,6 +115,7 @@ def review(
     options: Options | None = None,
     engine: Simulator | None = None,
     changes: Mapping[str, object] = MappingProxyType({}),
+    step: Callable[[], None] | None = None,
 ) -> Review:
     """Review one or several netlists.
 
@@ -128,6 +129,7 @@ def review(
     options   how the corners of tolerance are worked out; None: by sensitivities
     engine    runs ngspice beside the built-in solver; None: never
     changes   fields of Settings that stand over any file found: `hold_at`, `kind`, `require`
+    step      called after each netlist, for a progress bar
 
     Raises:
         SettingsError: the settings file cannot be obeyed.
@@ -145,6 +147,8 @@ def review(
         found, matched = review_deck(deck, own, extra, options, engine)
         run.took(own, matched, found.path)
         designs.append(found)
+        if step is not None:
+            step()
     return Review(
         designs=tuple(designs), settings=run.first or Settings(), findings=run.leftovers()
     )

@@ -9,6 +9,7 @@ import click
 
 from railguard.analysis.solution import Options
 from railguard.commands.deliver import write_whole
+from railguard.commands.progress import progress
 from railguard.errors import UsageError
 from railguard.report.formats import FORMATS, render
 from railguard.reviewing import Review, Simulator
@@ -99,16 +100,18 @@ def review(  # one parameter an option: click hands them over by name
         changes["kind"] = kind
     if require:
         changes["require"] = _families(require)
-    result = run(
-        [Path(name) for name in files],
-        _settings(stated, no_settings),
-        as_of=_day(as_of),
-        root=root,
-        plugins=not no_plugins,
-        options=Options(exact=corners == "exact", samples=monte_carlo),
-        changes=changes,
-        engine=_engine(engine is not None, confirm),
-    )
+    with progress(len(files), "netlists") as step:
+        result = run(
+            [Path(name) for name in files],
+            _settings(stated, no_settings),
+            as_of=_day(as_of),
+            root=root,
+            plugins=not no_plugins,
+            options=Options(exact=corners == "exact", samples=monte_carlo),
+            changes=changes,
+            engine=_engine(engine is not None, confirm),
+            step=step,
+        )
     for name, place in wanted:
         _deliver(result, name, place, root)
     sys.exit(HOLD if result.held else 0)

@@ -163,12 +163,19 @@ def _scale(
         name=name,
         negative=supply.negative,
         positive=supply.positive,
-        typical=typical,
-        sure=sure,
+        typical=_band(typical),
+        sure=_band(sure),
         asked=asked[1] if at_corner else asked[0],
         worst=at_corner,
         practice=stage.family is None,
     )
+
+
+def _band(reach: Range) -> Range:
+    """Return a reach, or none where its ends leave nothing between them: no level is reached."""
+    if reach.low is not None and reach.high is not None and reach.low > reach.high:
+        return Range()
+    return reach
 
 
 def _corner_limit(bound: Bound, otherwise: float | None) -> float | None:
@@ -317,27 +324,47 @@ class _Labels:
 
 def _limits_line(ruler: _Ruler) -> Line:
     """Write the rails' values at the ends, and inside them the limits that matter."""
+    scale = ruler.scale
+    low, high = limit_words(scale, upper=False), limit_words(scale, upper=True)
+    if not low and not high:
+        words = "reach not known"
+        labels = _rails(ruler)
+        labels.put(words, (ruler.left + ruler.right - len(words)) // 2)
+        return labels.line()
+    for shorter in (0, -1):  # with their kinds, and where both do not fit so, without
+        labels = _rails(ruler)
+        placed = [
+            not words or _put_limit(labels, ruler, words[shorter], upper=upper)
+            for words, upper in ((low, False), (high, True))
+        ]
+        if all(placed):
+            break
+    return labels.line()
+
+
+def _rails(ruler: _Ruler) -> _Labels:
     labels, scale = _Labels(ruler.width), ruler.scale
     negative, positive = si(scale.negative, "V"), si(scale.positive, "V")
     labels.put(negative, ruler.left - len(negative) + 1)
     labels.put(positive, ruler.right)
-    low, high = limit_words(scale, upper=False), limit_words(scale, upper=True)
-    if not low and not high:
-        words = "reach not known"
-        labels.put(words, (ruler.left + ruler.right - len(words)) // 2)
-        return labels.line()
-    for words in low:
-        edge = scale.sure.low if "guaranteed" in words else scale.typical.low
-        if edge is not None and labels.put(words, max(ruler.at(edge), ruler.left + 2)):
-            break
-    for words in high:
-        edge = scale.sure.high if "guaranteed" in words else scale.typical.high
-        if edge is None:
-            continue
-        end = min(ruler.at(edge), ruler.right - 2)
-        if labels.put(words, end - len(words) + 1):
-            break
-    return labels.line()
+    return labels
+
+
+def _put_limit(labels: _Labels, ruler: _Ruler, words: str, *, upper: bool) -> bool:
+    """Write a limit inside the rails, at its column; False where it does not fit."""
+    edge = shown_limit(ruler.scale, upper=upper)
+    if edge is None:
+        return False
+    if upper:
+        return labels.put(words, min(ruler.at(edge), ruler.right - 2) - len(words) + 1)
+    return labels.put(words, max(ruler.at(edge), ruler.left + 2))
+
+
+def shown_limit(scale: Scale, *, upper: bool) -> float | None:
+    """Return the limit of one side that `limit_words` writes, volts."""
+    words = limit_words(scale, upper=upper)
+    band = scale.sure if words and "guaranteed" in words[0] else scale.typical
+    return band.high if upper else band.low
 
 
 def limit_words(scale: Scale, *, upper: bool) -> tuple[str, ...]:

@@ -305,5 +305,15 @@ class _Printer:
     def legend(self) -> None:
         marks = ASCII_MARKS if self.ascii else UNICODE_MARKS
         shown = [f"{marks.glyphs[r]} {text}" for r, text in MEANINGS if r in self.roles]
+        line = "Scale:"
+        for text in shown[:-1]:
+            line = self.packed(line, f"{text};")
         if shown:
-            self.paragraph(f"Scale: {'; '.join(shown)}.", 0, style="dim")
+            self.line(self.packed(line, f"{shown[-1]}."), "dim")
+
+    def packed(self, line: str, item: str) -> str:
+        """Return a line with one more item, which is not broken; print what is full before it."""
+        if cell_len(line) + 1 + cell_len(item) <= self.width:
+            return f"{line} {item}"
+        self.line(line, "dim")
+        return item

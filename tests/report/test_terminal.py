@@ -5,8 +5,12 @@ import re
 from pathlib import Path
 
 import pytest
+from rich.cells import cell_len
+from rich.console import Console
 
-from railguard.report.terminal import terminal
+from railguard.analysis.stage import Range
+from railguard.report.scale import limit_words, output_scale
+from railguard.report.terminal import print_on, terminal
 from railguard.reviewing import review
 
 ROOT = Path(__file__).parents[2]
@@ -77,3 +81,92 @@ def test_ascii_terminal_gets_ascii():
     out.flush()
     out.buffer.seek(0)
     assert out.buffer.read().decode("ascii")
+
+
+def at_width(source, width, **more):
+    """Return the report in so many columns, as a terminal would get it."""
+    out = io.StringIO()
+    print_on(Console(file=out, width=width, highlight=False, markup=False, emoji=False, **more),
+             review(source))  # fmt: skip
+    return out.getvalue()
+
+
+WIDTHS = (60, 72, 80, 100, 120, 160)
+CASES = [
+    *FAULTS[::4],
+    ROOT / "fixtures" / "board" / "gauge_board.cir",
+    ROOT / "nowhere.cir",
+    "gauge\nXU1 " + "n" * 300 + " b vp 0 c TL072\nR1 c b 1k\nVP vp 0 5\n.end\n",
+]
+
+
+@pytest.mark.parametrize("source", CASES, ids=lambda p: getattr(p, "stem", "long names"))
+def test_every_width_is_kept_and_used(source):
+    """From 60 to 160 columns no line is wider than the screen; below 60 it is as at 60."""
+    lines = {width: at_width(source, width).splitlines() for width in (40, *WIDTHS)}
+    for width in WIDTHS:
+        assert max(map(cell_len, lines[width])) <= width
+    assert lines[40] == lines[60]
+    assert len(lines[160]) <= len(lines[60])
+
+
+@pytest.mark.parametrize("width", WIDTHS)
+def test_numbers_stay_beside_their_units_at_every_width(width):
+    """No line begins with a unit whose number ended the line before."""
+    for path in FAULTS[::3]:
+        for line in at_width(path, width).splitlines():
+            assert not re.match(r"\s*(?:V|mV|Ω|kΩ|A|mA|Hz|kHz|%|nF|µF)(?:[ ,.;)]|$)", line), line
+
+
+def test_limits_of_a_scale_are_written_without_their_kind_before_one_is_left_out():
+    """At 60 columns both limits of the inputs stand over the line."""
+    path = ROOT / "fixtures" / "faults" / "headroom-input.cir"
+    (above,) = [line for line in at_width(path, 60).splitlines() if line.strip().startswith("0 V")]
+    assert above.split() == ["0", "V", "-400", "mV", "3.1", "V", "5", "V"]
+
+
+def test_a_supply_too_low_for_any_guaranteed_swing_shows_none():
+    """Where the two guaranteed ends have passed each other, only the typical ones are limits."""
+    deck = "x\nXU1 in out vp 0 out TL072\nVIN in 0 SIN(2 0 1k)\nVP vp 0 5\n.end\n"
+    stage = review(deck).designs[0].design.stages[0]
+    assert stage.output.guaranteed.low > stage.output.guaranteed.high
+    scale = output_scale(stage, worst=False)
+    assert scale.sure == Range()
+    assert limit_words(scale, upper=False)[0].endswith("typical")
+    assert limit_words(scale, upper=True)[0].endswith("typical")
+
+
+def test_colour_is_a_second_cue(monkeypatch):
+    """Without colour the same text stands there; NO_COLOR is obeyed."""
+    colours = {"force_terminal": True, "color_system": "truecolor"}
+    monkeypatch.delenv("NO_COLOR", raising=False)
+    coloured = at_width(FAULTS[0], 80, **colours)
+    assert "\x1b[1;35m" in coloured
+    monkeypatch.setenv("NO_COLOR", "1")
+    plain = at_width(FAULTS[0], 80, **colours)
+    assert not re.search(r"\x1b\[[0-9;]*3[0-9]", plain)
+    bare = [re.sub(r"\x1b\[[0-9;]*m", "", text) for text in (coloured, plain)]
+    assert bare[0] == bare[1] == at_width(FAULTS[0], 80)
+
+
+def test_two_hundred_netlists_stay_readable(tmp_path):
+    """A row each, the worst first, and only the worst dozen in full."""
+    text = (ROOT / "fixtures" / "faults" / "headroom-output.cir").read_text(encoding="utf-8")
+    small = (
+        "x\n* railguard: kind bench\nXU1 in out vp 0 out TLV9002\n"
+        "VIN in 0 SIN(2 {} 1k)\nVP vp 0 5\n.end\n"
+    )
+    paths = []
+    for number in range(200):
+        path = tmp_path / f"gauge{number:03}.cir"
+        path.write_text(text if number == 7 else small.format(9 if number % 5 == 0 else 0))
+        paths.append(path)
+    lines = text_of(paths).splitlines()
+    rows = lines[1:].index("")
+    assert lines[0].startswith("200 netlists in")
+    assert rows == 201
+    order = [line.split()[0] for line in lines[2:202]]
+    assert order == sorted(order, key=["hold", "incomplete", "pass"].index)
+    assert order.count("hold") == 41
+    assert len(lines) < 700
+    assert "worst 12 are shown in full" in " ".join(lines)

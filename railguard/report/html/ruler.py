@@ -11,7 +11,7 @@ from xml.etree import ElementTree as ET
 
 from railguard.analysis.stage import Range
 from railguard.report.html.svg import node, picture
-from railguard.report.scale import Role, Scale, asked_volts, limit_words
+from railguard.report.scale import Role, Scale, asked_volts, limit_words, shown_limit
 from railguard.units import si
 
 WIDTH, HEIGHT = 600.0, 84.0
@@ -140,8 +140,8 @@ class _Ruler:
         if not low and not high:
             yield _label("reach not known", (LEFT + RIGHT) / 2, above, "middle", "limit")
         at = [
-            min(max(self.at(self.limit(words[0], upper=upper)), LEFT), RIGHT) if words else None
-            for words, upper in ((low, False), (high, True))
+            None if end is None else min(max(self.at(end), LEFT), RIGHT)
+            for end in (shown_limit(scale, upper=False), shown_limit(scale, upper=True))
         ]
         yield from self.limit_labels(low, at[0], high, at[1], above)
         yield from self.asked_labels(below)
@@ -164,12 +164,6 @@ class _Ruler:
             yield _label(
                 shown, end + (4 if narrow else -_GAP), y, "start" if narrow else "end", "limit"
             )
-
-    def limit(self, words: str, *, upper: bool) -> float:
-        """Return the limit that `words` speak of."""
-        band = self.scale.sure if "guaranteed" in words else self.scale.typical
-        end = band.high if upper else band.low
-        return 0.0 if end is None else end
 
     def asked_labels(self, y: float) -> Iterator[ET.Element]:
         asked = self.scale.asked
