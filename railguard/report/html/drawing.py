@@ -112,8 +112,9 @@ class _Drawing:
             self.text(name, (x, y + ABOVE), "middle")
             self.text(value, (x, y - ABOVE), "middle")
         else:
-            self.text(name, (x + 0.4, y + 0.2))
-            self.text(value, (x + 0.4, y - 0.2))
+            side = x + (0.55 if element.kind == "L" else 0.4)
+            self.text(name, (side, y + 0.2))
+            self.text(value, (side, y - 0.2))
 
     def symbol(self, element: Element) -> Any:  # noqa: ANN401 - schemdraw's own classes
         made = {
@@ -222,9 +223,9 @@ class _Drawing:
             self.branch(node.onward, (begin, y), (end, y))
             x = start = end
         last = nodes[-1]
-        if last.onward is not None:
-            self.end(source or last.onward.end, x, y)
-        elif not last.shunts or last.net in (self.stage.output.net,):
+        if last.onward is not None or source:
+            self.end(source or last.net, x, y)
+        elif not last.shunts:
             self.end(last.net, x, y)
         return starts
 

@@ -72,7 +72,8 @@ class Nets:
         self.on: dict[str, list[Element]] = defaultdict(list)
         self.names = {stage.designator: stage.schematic for stage in design.stages}
         self.rails = {rail.net for rail in design.rails}
-        self.driven = {stage.output.net for stage in design.stages}
+        self.outputs = {stage.output.net for stage in design.stages}
+        self.driven = set(self.outputs)
         for signal in design.settings.signals:
             self.driven.update(signal.between or (signal.name,))
         self.pins: dict[str, set[str]] = defaultdict(set)
@@ -168,8 +169,8 @@ class _Walk:
         """Follow an input pin outwards; return its nodes and the net that drives it, or ""."""
         nodes: list[Node] = []
         at = pin
-        if pin == self.out or pin in self.nets.held:
-            return (Node(pin),), ""
+        if pin == self.out or pin in self.nets.held or pin in self.nets.outputs:
+            return (Node(pin),), ""  # what else stands there is not this stage's
         while True:
             branches = self.free(at)
             if len(branches) > WIDEST_NODE:
@@ -184,10 +185,17 @@ class _Walk:
             self.take((*feedback, *shunts, *((onward,) if onward else ())))
             nodes.append(Node(at, feedback, shunts, onward))
             if onward is None:
-                return tuple(nodes), ""
+                return tuple(nodes), at if self.goes_further(at) else ""
             if len(nodes) == DEEPEST_CHAIN or not self.goes_on(onward.end):
                 return tuple(nodes), onward.end
             at = onward.end
+
+    def goes_further(self, net: str) -> bool:
+        """Tell whether a chain's last net has more to it than is drawn, so that it needs a name."""
+        drawn = self.used | {self.stage.designator}
+        return net in self.nets.driven or any(
+            element.designator not in drawn for element in self.nets.on.get(net, ())
+        )
 
     def goes_on(self, net: str) -> bool:
         """Tell whether a net behind a chain's element is a node of its own."""
@@ -226,7 +234,8 @@ class _Walk:
         """Name what stands on a shown net and is not drawn."""
         left: dict[str, None] = {}
         for net in dict.fromkeys(shown):
-            if net in self.nets.held or net in self.nets.rails:
+            ours = net == self.out or net not in self.nets.outputs
+            if net in self.nets.held or net in self.nets.rails or not ours:
                 continue
             for element in self.nets.on.get(net, ()):
                 if element.designator in self.used or element.designator == self.stage.designator:
