@@ -71,6 +71,7 @@ def test_every_kind_is_read(name, data):
         ("a.cir.bz2", bz2.compress(b"deck")),
         ("a.cir.xz", lzma.compress(b"deck")),
     ],
+    ids=["gz", "bz2", "xz"],  # the bytes hold the second they were made in
 )
 def test_a_file_compressed_alone(name, data):
     """It stands inside under its own name."""
