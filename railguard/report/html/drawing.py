@@ -55,12 +55,12 @@ def drawn(stage: Stage, wired: Wiring) -> ET.Element:
 
 
 def value_of(element: Element) -> str:
-    """Return an element's value as on a schematic: `10 kΩ`, `1N4148`, or "" where it has none."""
+    """Return an element's value as on a schematic: `10 kΩ`, `1N4148`, else what its card says."""
     if element.kind in _UNITS and element.value is not None:
         return si(element.value, _UNITS[element.kind])
     if element.source is not None and element.source.dc is not None:
         return si(element.source.dc, "A" if element.kind == "I" else "V")
-    return element.model
+    return element.model or element.text
 
 
 def short(text: str) -> str:

@@ -31,6 +31,13 @@
   });
   window.addEventListener("afterprint", () => folded.forEach((details) => { details.open = false; }));
 
+  // A table wider than its frame is scrolled with the arrow keys, so it has to take the focus.
+  const frames = new ResizeObserver((seen) => seen.forEach(({ target }) => {
+    if (target.scrollWidth > target.clientWidth) target.tabIndex = 0;
+    else target.removeAttribute("tabindex");
+  }));
+  all(".wide").forEach((frame) => frames.observe(frame));
+
   if (!form) return;
   form.hidden = false;
   all(".keys").forEach((hint) => { hint.hidden = false; });
