@@ -7,13 +7,14 @@ wired as an amplifier. What is an IC but no op-amp stays opaque.
 
 import re
 from collections import defaultdict
+from collections.abc import Mapping
 from functools import cache
 
 import msgspec
 
+from railguard.analysis.wiring import order_by_wiring, stiff_nets, wired_as_one
 from railguard.circuit.flatten import Closed
 from railguard.circuit.model import GROUND, Circuit, Element
-from railguard.circuit.rails import level_from_name
 from railguard.devices.catalogue import Catalogue
 from railguard.devices.model import Match
 from railguard.devices.names import package_of, schematic_name
@@ -90,13 +91,13 @@ def recognise(circuit: Circuit, catalogue: Catalogue, settings: Settings) -> Rec
     others: list[tuple[Element, Match]] = []
     unknown: list[tuple[Element, Match]] = []
     assumed: dict[str, list[str]] = defaultdict(list)
-    rails = _levels(circuit)
+    rails = stiff_nets(circuit)
     for element in circuit.elements:
         if not element.fitted:
             continue
         if element.kind in ("X", "ic"):
             match = catalogue.match(element.model)
-            wired = _named_pins(match, element.ports, element.pin_notes) or _wired_as_one(
+            wired = _named_pins(match, element.ports, element.pin_notes) or wired_as_one(
                 element, rails
             )
             if match.sort == "unknown" and not wired:
@@ -105,7 +106,7 @@ def recognise(circuit: Circuit, catalogue: Catalogue, settings: Settings) -> Rec
             if match.sort not in ("op-amp", "generic", "unknown"):
                 others.append((element, match))
                 continue
-            found, remark = _channels(element, match, settings)
+            found, remark = _channels(element, match, settings, rails)
             if not found:
                 unknown.append((element, match))
             amplifiers += found
@@ -121,35 +122,6 @@ def recognise(circuit: Circuit, catalogue: Catalogue, settings: Settings) -> Rec
         Remark(message=f"{_names(subjects)}: {text}") for text, subjects in assumed.items()
     )
     return Recognised(_grouped(amplifiers), tuple(others), tuple(unknown), remarks)
-
-
-def _levels(circuit: Circuit) -> frozenset[str]:
-    """Return the nets that a standing source holds or whose name states a level."""
-    held = {
-        net
-        for e in circuit.elements
-        if e.kind == "V"
-        and e.source is not None
-        and e.source.dc
-        and e.source.wave is None
-        and e.source.ac is None
-        for net in e.nets[:2]
-        if net != GROUND
-    }
-    named = {net for e in circuit.elements for net in e.nets if level_from_name(net) is not None}
-    return frozenset(held | named)
-
-
-def _wired_as_one(element: Element, rails: frozenset[str]) -> bool:
-    """Tell whether a card nobody knows is wired as an op-amp in the usual order is.
-
-    Five nets, the third a rail, the fourth another rail or ground, the fifth neither.
-    """
-    if len(element.nets) != 5 or element.ports:
-        return False
-    positive, negative, output = element.nets[2:]
-    ends = positive in rails and negative in rails | {GROUND} and positive != negative
-    return ends and output not in rails and output != GROUND
 
 
 def _named_pins(match: Match, ports: tuple[str, ...], notes: tuple[str, ...]) -> bool:
@@ -173,7 +145,9 @@ def _stated_pins(element: Element, settings: Settings) -> tuple[str, ...]:
     return ()
 
 
-def _channels(element: Element, match: Match, settings: Settings) -> tuple[list[Amplifier], str]:
+def _channels(
+    element: Element, match: Match, settings: Settings, rails: Mapping[str, float | None]
+) -> tuple[list[Amplifier], str]:
     order = pin_order(
         match,
         len(element.nets),
@@ -184,6 +158,8 @@ def _channels(element: Element, match: Match, settings: Settings) -> tuple[list[
     )
     if order is None:
         return [], ""
+    if element.kind == "X":
+        order = order_by_wiring(element, order, rails)
     found = []
     package, _unit = package_of(element.designator)
     for channel in order.channels:

@@ -203,6 +203,9 @@ class _Reader:
             if line.text[0] != ".":
                 if wanted and block is None:
                     keep(line)
+                elif wanted and closing == ".endc" and line.text.split(None, 1)[0] in _RUN:
+                    # Never run, but that it is asked for says what the deck was made for.
+                    keep(msgspec.structs.replace(line, text=f".{line.text}"))
                 continue
             word = line.text.split(None, 1)[0].lower()
             if block is not None:
@@ -366,6 +369,8 @@ _BLOCKS = {
     ".alter": ".end",
 }
 """Blocks that hold no cards, and what closes them."""
+_RUN = frozenset({"tran", "ac", "dc", "op", "noise", "tf", "pz", "sens", "disto"})
+"""Commands of a control block that are analyses, as their dot cards are."""
 _CARD = re.compile(r"(?i)^[RCLVIEGFHDQJMX]\S*\s+\S+\s+\S+\s+[\d.+-]")
 
 

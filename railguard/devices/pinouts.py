@@ -12,6 +12,8 @@ from railguard.words import Basis
 USUAL = ("in+", "in-", "v+", "v-", "out")
 """The order of nine out of ten published op-amp subcircuits."""
 
+USUAL_CHANNEL = (Channel(plus=0, minus=1, positive=2, negative=3, output=4),)
+
 _WORDS = "non-inverting, inverting, positive supply, negative supply, output"
 
 PACKAGES: dict[str, tuple[str, ...]] = {
@@ -127,7 +129,7 @@ def _usual(count: int) -> PinOrder:
     extra = count - len(USUAL)
     more = f"; the nets after the fifth ({extra}) are left aside" if extra else ""
     return PinOrder(
-        channels=(Channel(plus=0, minus=1, positive=2, negative=3, output=4),),
+        channels=USUAL_CHANNEL,
         basis="assumed",
         remark=f"the usual pin order is assumed ({_WORDS}){more}",
     )

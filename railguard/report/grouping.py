@@ -57,8 +57,8 @@ def _subject(finding: Finding, stages: set[str], rails: set[str]) -> str:
         return NETLIST
     if finding.family in ("supply", "decoupling") and finding.nets:
         on_rails = [net for net in finding.nets if net in rails]
-        if len(on_rails) == 1 and len(finding.designators) != 1:
-            return f"Rail {on_rails[0]}"
+        if on_rails and (len(on_rails) > 1 or len(finding.designators) != 1):
+            return f"Rail{'s' * (len(on_rails) > 1)} {' and '.join(on_rails)}"
     known = [name for name in finding.designators if name in stages]
     if known:
         return known[0]
