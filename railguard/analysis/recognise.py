@@ -12,7 +12,7 @@ from functools import cache
 
 import msgspec
 
-from railguard.analysis.wiring import order_by_wiring, stiff_nets, wired_as_one
+from railguard.analysis.wiring import joined_nets, order_by_wiring, stiff_nets, wired_as_one
 from railguard.circuit.flatten import Closed
 from railguard.circuit.model import GROUND, Circuit, Element
 from railguard.devices.catalogue import Catalogue
@@ -91,7 +91,7 @@ def recognise(circuit: Circuit, catalogue: Catalogue, settings: Settings) -> Rec
     others: list[tuple[Element, Match]] = []
     unknown: list[tuple[Element, Match]] = []
     assumed: dict[str, list[str]] = defaultdict(list)
-    rails = stiff_nets(circuit)
+    rails, joined = stiff_nets(circuit), joined_nets(circuit)
     for element in circuit.elements:
         if not element.fitted:
             continue
@@ -106,7 +106,7 @@ def recognise(circuit: Circuit, catalogue: Catalogue, settings: Settings) -> Rec
             if match.sort not in ("op-amp", "generic", "unknown"):
                 others.append((element, match))
                 continue
-            found, remark = _channels(element, match, settings, rails)
+            found, remark = _channels(element, match, settings, rails, joined)
             if not found:
                 unknown.append((element, match))
             amplifiers += found
@@ -146,7 +146,11 @@ def _stated_pins(element: Element, settings: Settings) -> tuple[str, ...]:
 
 
 def _channels(
-    element: Element, match: Match, settings: Settings, rails: Mapping[str, float | None]
+    element: Element,
+    match: Match,
+    settings: Settings,
+    rails: Mapping[str, float | None],
+    joined: frozenset[frozenset[str]],
 ) -> tuple[list[Amplifier], str]:
     order = pin_order(
         match,
@@ -159,7 +163,7 @@ def _channels(
     if order is None:
         return [], ""
     if element.kind == "X":
-        order = order_by_wiring(element, order, rails)
+        order = order_by_wiring(element, order, rails, joined)
     found = []
     package, _unit = package_of(element.designator)
     for channel in order.channels:

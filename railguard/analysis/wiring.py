@@ -44,13 +44,22 @@ def wired_as_one(element: Element, rails: Mapping[str, float | None]) -> bool:
     return ends and output not in rails and output != GROUND
 
 
+def joined_nets(circuit: Circuit) -> frozenset[frozenset[str]]:
+    """Return the pairs of nets that a resistor or a capacitor joins."""
+    return frozenset(frozenset(e.nets[:2]) for e in circuit.elements if e.kind in ("R", "C"))
+
+
 def order_by_wiring(
-    element: Element, order: PinOrder, rails: Mapping[str, float | None]
+    element: Element,
+    order: PinOrder,
+    rails: Mapping[str, float | None],
+    joined: frozenset[frozenset[str]],
 ) -> PinOrder:
     """Return the pin order that a card's wiring shows where the usual one contradicts it.
 
     Some libraries put the output before the supplies. Taken so only where the usual order would
-    drive a supply with the output and leave a supply pin without one.
+    drive a supply with the output and leave a supply pin without one, and the third net feeds the
+    inverting input back, which no supply does.
     """
     nets = element.nets
     if order.basis != "assumed" or order.channels != USUAL_CHANNEL or len(nets) != len(USUAL):
@@ -62,6 +71,8 @@ def order_by_wiring(
     if not feeds(4) or feeds(2, 3):
         return order
     if not feeds(3, 4) or feeds(2) or nets[3] == nets[4]:
+        return order
+    if nets[2] != nets[1] and frozenset(nets[1:3]) not in joined:
         return order
     first, second = (0.0 if nets[pin] == GROUND else rails[nets[pin]] for pin in (3, 4))
     turned = first is not None and second is not None and first < second
