@@ -162,8 +162,7 @@ def _channels(
     )
     if order is None:
         return [], ""
-    if element.kind == "X":
-        order = order_by_wiring(element, order, rails, joined)
+    order = order_by_wiring(element, order, rails, joined)
     found = []
     package, _unit = package_of(element.designator)
     for channel in order.channels:

@@ -55,33 +55,64 @@ def order_by_wiring(
     rails: Mapping[str, float | None],
     joined: frozenset[frozenset[str]],
 ) -> PinOrder:
-    """Return the pin order that a card's wiring shows where the usual one contradicts it.
+    """Return the pin order that a card's wiring shows where the assumed one contradicts it.
 
-    Some libraries put the output before the supplies. Taken so only where the usual order would
-    drive a supply with the output and leave a supply pin without one, and the third net feeds the
-    inverting input back, which no supply does.
+    An assumed order stands unless it drives a supply with the output, or ground, and leaves a
+    supply pin without one. Then the first of these stands that does not: on a board card the order
+    of the schematic symbol (the usual one); on both, the output before the supplies, where that net
+    feeds the inverting input back, which no supply does.
     """
     nets = element.nets
-    if order.basis != "assumed" or order.channels != USUAL_CHANNEL or len(nets) != len(USUAL):
+    if order.basis != "assumed" or len(order.channels) != 1 or len(nets) != len(USUAL):
         return order
 
-    def feeds(*pins: int) -> bool:
-        return all(nets[pin] in rails or nets[pin] == GROUND for pin in pins)
+    def stiff(pin: int | None) -> bool:
+        return pin is not None and (nets[pin] in rails or nets[pin] == GROUND)
 
-    if not feeds(4) or feeds(2, 3):
+    def contradicted(channel: Channel) -> bool:
+        supplied = stiff(channel.positive) and stiff(channel.negative)
+        return stiff(channel.output) and not supplied
+
+    def fits(channel: Channel) -> bool:
+        supplied = stiff(channel.positive) and stiff(channel.negative)
+        return (
+            supplied
+            and not stiff(channel.output)
+            and nets[channel.positive or 0] != nets[channel.negative or 0]
+        )
+
+    (assumed,) = order.channels
+    if element.kind == "ic":
+        (usual,) = USUAL_CHANNEL
+        if not fits(assumed) and fits(usual):
+            return _shown(usual)
         return order
-    if not feeds(3, 4) or feeds(2) or nets[3] == nets[4]:
-        return order
-    if nets[2] != nets[1] and frozenset(nets[1:3]) not in joined:
-        return order
-    first, second = (0.0 if nets[pin] == GROUND else rails[nets[pin]] for pin in (3, 4))
+    early = _output_third(nets, rails)
+    fed_back = nets[2] == nets[1] or frozenset(nets[1:3]) in joined
+    if contradicted(assumed) and fits(early) and fed_back:
+        return _shown(early)
+    return order
+
+
+def _output_third(nets: tuple[str, ...], rails: Mapping[str, float | None]) -> Channel:
+    """Return the order with the output before the supplies, the higher of them the positive one."""
+    first, second = (0.0 if net == GROUND else rails.get(net) for net in nets[3:5])
     turned = first is not None and second is not None and first < second
     positive, negative = (4, 3) if turned else (3, 4)
-    words = "non-inverting, inverting, output, " + (
-        "negative supply, positive supply" if turned else "positive supply, negative supply"
+    return Channel(plus=0, minus=1, positive=positive, negative=negative, output=2)
+
+
+def _shown(channel: Channel) -> PinOrder:
+    pins = (
+        (channel.plus, "non-inverting"),
+        (channel.minus, "inverting"),
+        (channel.positive, "positive supply"),
+        (channel.negative, "negative supply"),
+        (channel.output, "output"),
     )
+    words = ", ".join(word for _, word in sorted(pins, key=lambda pin: pin[0] or 0))
     return PinOrder(
-        channels=(Channel(plus=0, minus=1, positive=positive, negative=negative, output=2),),
+        channels=(channel,),
         basis="assumed",
         remark=f"the pin order is taken from what stands on the nets ({words})",
     )

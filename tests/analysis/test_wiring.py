@@ -39,6 +39,21 @@ def test_the_supplies_are_where_sources_stand(card):
     assert found.output.demand.high == pytest.approx(5.0, rel=0.01)
 
 
+@pytest.mark.parametrize("card", ["U1 p m vcc vee out OP27G", "U1 out vee p m vcc OP27G"])
+def test_a_board_card_in_the_order_of_its_symbol_or_its_package(card):
+    """Both are exported; the nets tell which."""
+    found, _ = stage(card)
+    assert (found.supply.positive, found.supply.negative) == (12.0, -12.0)
+    assert found.output.demand.high == pytest.approx(5.0, rel=0.01)
+
+
+def test_an_output_on_a_supply_is_no_other_order():
+    """Nothing feeds the third net back: the output is tied, which is a fault."""
+    found, remarks = stage("XU1 p m vcx 0 vcc TL072\nRX vcc vcx 10")
+    assert "usual pin order" in remarks
+    assert found.supply.positive == pytest.approx(12.0, abs=0.1)
+
+
 def test_the_report_says_where_the_order_comes_from():
     """An order taken from the wiring is an assumption, and named."""
     assert "output, positive supply, negative supply" in stage("XU1 p m out vcc vee TL072")[1]
