@@ -22,6 +22,9 @@ from railguard.words import SEVERITIES
 DETAILED_FILES = 12
 """With more files than this, drawings and netlists are shown of the worst ones only."""
 
+MOST_DRAWN = 100
+"""With more stages than this, only those with a finding are drawn and have their numbers listed."""
+
 PLAIN = "other"
 """The topology of a stage that was not recognised: a connection list stands for its drawing."""
 
@@ -92,6 +95,7 @@ class DesignView(msgspec.Struct, frozen=True, kw_only=True):
     rails: tuple[tuple[str, ...], ...]
     subjects: tuple[StageView, ...]
     quiet: tuple[StageView, ...]
+    quiet_words: str
     not_checked: tuple[OpenGroup, ...]
     waived: tuple[WaivedView, ...]
     reading: tuple[str, ...]
@@ -159,6 +163,13 @@ def _left_out(count: int) -> str:
     )
 
 
+def _undrawn() -> str:
+    return (
+        f"This netlist has more than {MOST_DRAWN} stages: those without a finding are shown "
+        "without their drawings and numbers; railguard sheet lists them."
+    )
+
+
 class _Design:
     """One netlist on its way to the page."""
 
@@ -167,6 +178,7 @@ class _Design:
         self.id = name
         self.in_full = in_full
         self.stages = {stage.designator: stage for stage in review.design.stages}
+        self.many = len(self.stages) > MOST_DRAWN
         self.nets = Nets(review.design)
         self.numbers = _numbers(review) if in_full else {}
         shown = review.design.circuit.texts if netlist else ()
@@ -194,6 +206,7 @@ class _Design:
             rails=tuple(_rail(rail) for rail in review.design.rails),
             subjects=subjects,
             quiet=tuple(self.stage(s, ()) for s in quiet) if self.in_full else (),
+            quiet_words=_undrawn() if quiet and self.many else "",
             not_checked=tuple(open_groups(review.not_checked, review.design.stages)),
             waived=tuple(_waived(review)),
             reading=tuple(remark.message for remark in review.design.remarks),
@@ -248,7 +261,7 @@ class _Design:
             scales=tuple(_scales(stage, worst=worst)),
             open=bool(views),
         )
-        if not self.in_full:
+        if not self.in_full or (self.many and not views):
             return plain
         wired = wiring(stage, self.nets)
         drawn = stage.topology != PLAIN

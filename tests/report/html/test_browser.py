@@ -266,7 +266,7 @@ def test_fits_narrow_windows(browser, opened, width):
 
 
 def test_prints_whole_on_a4(opened):
-    """Folded parts are printed unfolded, controls are not, on sheets of 210 by 297 mm."""
+    """Folded stages are printed unfolded, controls are not, on sheets of 210 by 297 mm."""
     browser = opened(STATION)
     printed = browser.execute_cdp_cmd("Page.printToPDF", {"preferCSSPageSize": True})
     data = base64.b64decode(printed["data"])
@@ -277,7 +277,7 @@ def test_prints_whole_on_a4(opened):
     assert (width, height, others) == (595, 842, [])
     assert data.count(b"/Type /Page\n") > 4
     media(browser, kind="print")
-    assert not visible(browser, "#filter, .appearance, .keys")
+    assert not visible(browser, "#filter, .appearance, .keys, .fold")
     inside = "return document.querySelector('details.quiet svg').getBoundingClientRect().height"
     assert browser.execute_script(inside) > 50
 

@@ -11,6 +11,7 @@ import pytest
 
 from railguard.report.formats import render
 from railguard.report.html.document import TEMPLATES
+from railguard.report.html.view import MOST_DRAWN
 from railguard.reviewing import review
 
 ROOT = Path(__file__).parents[3]
@@ -239,3 +240,17 @@ def test_many_netlists_are_a_table_first_and_drawings_only_of_the_worst(tmp_path
     assert found.count('<details class="listing"') == 12
     assert "of the other 28 the findings alone" in shown(found)
     assert tree.links.index("#d40") < tree.links.index("#d1-l1-75")
+
+
+def test_a_netlist_of_many_stages_draws_those_with_a_finding():
+    """A page of a thousand drawings would not open; what is left out is said."""
+    cells = "".join(
+        f"R{n}A i{n} n{n} 10k\nR{n}B n{n} o{n} 10k\nXU{n} 0 n{n} vp vn o{n} TL072\nV{n} i{n} 0 "
+        f"SIN(0 {20 if n == 5 else 1} 100)\n"
+        for n in range(1, MOST_DRAWN + 2)
+    )
+    supply = "VP vp 0 12\nVN vn 0 -12\n* railguard: kind bench\n.end\n"
+    text = page_of(f"many\n{cells}{supply}")
+    assert text.count('class="drawing"') == 1
+    assert "R5B" in text.split('class="drawing"')[1].split("</svg>")[0]
+    assert f"more than {MOST_DRAWN} stages" in shown(text)

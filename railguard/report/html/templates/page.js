@@ -26,7 +26,8 @@
 
   let folded = [];
   window.addEventListener("beforeprint", () => {
-    folded = all("details:not([open])");
+    // Tables that nobody unfolded stay folded: drawings, scales and the netlist are the evidence.
+    folded = all("details:not([open], .fold)");
     folded.forEach((details) => { details.open = true; });
   });
   window.addEventListener("afterprint", () => folded.forEach((details) => { details.open = false; }));
