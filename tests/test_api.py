@@ -83,7 +83,7 @@ def test_a_type_checker_knows_what_review_returns(tmp_path):
         "wrong: int = railguard.assert_sound('a.cir')\n"
     )
     done = subprocess.run(
-        [sys.executable, "-m", "mypy", "--strict", "--cache-dir", str(tmp_path / "c"), str(user)],
+        [sys.executable, "-m", "mypy", "--strict", str(user)],
         cwd=ROOT,
         capture_output=True,
         text=True,
