@@ -10,6 +10,7 @@ import click
 from railguard.commands.hook import script
 from railguard.commands.hook.git import top_folder
 from railguard.commands.hook.staged import concerned
+from railguard.errors import UsageError
 from railguard.words import SEVERITIES, Severity
 
 HOLD = 1
@@ -118,6 +119,14 @@ def _tell(top: str, hooks: tuple[script.Hook, ...]) -> None:
         )
 
 
+def _from_top(path: str, top: str) -> str:
+    whole = Path(path).absolute()
+    for way in (whole, whole.resolve()):
+        if way.is_relative_to(top):
+            return way.relative_to(top).as_posix()
+    raise UsageError(f"{path} is not in the repository at {top}.")
+
+
 @hook.command()
 @click.argument("paths", nargs=-1, metavar="[PATH]...")
 @_options
@@ -133,7 +142,7 @@ def run(
     Status 0: nothing at or above the hold level; 1: something is; 2: not carried out.
     """
     top = top_folder()
-    named = [Path(path).absolute().relative_to(top).as_posix() for path in paths]
+    named = [_from_top(path, top) for path in paths]
     if not concerned(top, named):
         return
     # only a commit that concerns a netlist pays for these

@@ -12,6 +12,7 @@ import msgspec
 from railguard.commands.hook.affected import Concerned, concerned_netlists, parents
 from railguard.commands.hook.compare import only_new
 from railguard.commands.hook.gather import Gathered, gather
+from railguard.commands.hook.git import GitError
 from railguard.commands.hook.staged import SETTINGS
 from railguard.commands.hook.tree import Tree
 from railguard.deck.encoding import no_netlist
@@ -57,7 +58,8 @@ def review_staged(top: str, wanted: Wanted, paths: Iterable[str] = ()) -> Outcom
     staged = gather(index, [one.path for one in netlists])
     commits = parents(top)
     if len(commits) > 1:
-        netlists = [n for n in netlists if n.path in named or _is_new(n, staged, top, commits)]
+        made = _made_by_the_merge(netlists, staged, top, commits)
+        netlists = [n for n in netlists if n.path in made or n.path in named]
     netlists, notes = _readable(netlists, staged)
     if not netlists:
         return Outcome(notes=notes)
@@ -68,10 +70,13 @@ def review_staged(top: str, wanted: Wanted, paths: Iterable[str] = ()) -> Outcom
     return _compared(found, netlists, top, commits, wanted, notes)
 
 
-def _is_new(one: Concerned, staged: Gathered, top: str, commits: Sequence[str]) -> bool:
-    """Tell whether a merge makes of a netlist what no side had."""
-    sides = (gather(Tree(top, commit), [one.path]) for commit in commits)
-    return not any(staged.alike(side, one.path) for side in sides)
+def _made_by_the_merge(
+    netlists: Sequence[Concerned], staged: Gathered, top: str, commits: Sequence[str]
+) -> set[str]:
+    """Return the netlists that rest on files no side of a merge had together."""
+    paths = [one.path for one in netlists]
+    sides = [gather(Tree(top, commit), paths) for commit in commits]
+    return {path for path in paths if not any(staged.alike(side, path) for side in sides)}
 
 
 def _readable(
@@ -94,7 +99,14 @@ def _readable(
 def _reviewed(files: Gathered, netlists: Sequence[str], wanted: Wanted) -> Review:
     """Review netlists in a folder of their own; paths in the report are the repository's."""
     with TemporaryDirectory(prefix="railguard-") as place:
-        files.write(Path(place))
+        try:
+            files.write(Path(place))
+        except OSError as error:
+            raise GitError(
+                f"The staged files cannot be laid out for the review: {error.strerror}.",
+                None,
+                f"{error.filename} is where it stopped.",
+            ) from error
         with _inside(place):
             return review(
                 [Path(name) for name in netlists],

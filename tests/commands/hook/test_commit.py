@@ -420,3 +420,33 @@ def test_hold_level_of_the_hook(repository):
     made, told = repository.commit()
     assert not made
     assert "netlist-dangling" in told
+
+
+def test_paths_that_are_named_are_taken_as_changed(repository):
+    """As the framework hands them over; one outside of the repository is refused."""
+    repository.add("boards/gauge.cir", INCLUDING.format("load.inc"))
+    repository.add("boards/load.inc", LOAD.format("20"))
+    repository.add("other.cir", SOUND)
+    repository.keep()
+    assert repository.check() == (True, "")
+    assert "drive-current" in repository.check("boards/load.inc")[1]
+    assert "1 netlist reviewed" in repository.check("other.cir")[1]
+    assert "is not in the repository" in repository.check("/elsewhere/gauge.cir")[1]
+
+
+def test_a_thousand_staged_files_are_one_question(repository):
+    """Command lines have their bounds; so many paths go through none."""
+    names = [f"models/part {number:04}.txt" for number in range(1200)]
+    for number, name in enumerate(names):
+        repository.write(name, f"RX{number} out 0 100meg\n")
+    includes = "".join(f'.include "{name}"\n' for name in names)
+    repository.add("gauge.cir", SOUND.replace(".end\n", f"{includes}.end\n"))
+    repository.git("add", "models")
+    passed, told = repository.check()
+    assert passed
+    assert "1 netlist reviewed" in told
+    repository.keep()
+    repository.git("rm", "-q", names[-1])
+    passed, told = repository.check()
+    assert not passed
+    assert "part 1199.txt is not there" in told
