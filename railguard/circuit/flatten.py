@@ -139,7 +139,7 @@ class _Nets(dict[str, str]):
         made = self.get(key)
         if made is None:
             made = self._expander.net(name, key, self._prefix)
-            if name[0] == "?":
+            if name[:1] == "?":
                 return made
             self[key] = made
         self[name] = made
