@@ -352,7 +352,7 @@ def _numbers_of(finding: Finding) -> Iterator[tuple[str, str]]:
         yield "Of the span", percent(finding.margin_share)
     if finding.demand is not None:
         yield "At", "the worst corner" if finding.corner == "worst-case" else "values as drawn"
-    if finding.basis:
+    if finding.basis and (finding.demand is not None or finding.limit is not None):
         yield "Numbers from", ", ".join(origin(basis) for basis in finding.basis)
 
 
