@@ -247,6 +247,10 @@ def series_resistance(net: str, dc: DcMap, limit: int = 200) -> float | None:
     return None
 
 
+MOST_AT_A_TAP = 12
+"""Resistors on the tap of a half-bridge: its own two, and what an amplifier adds."""
+
+
 def bridge_resistors(
     elements: Iterable[Element], amplifiers: Iterable[Amplifier]
 ) -> frozenset[str]:
@@ -255,6 +259,7 @@ def bridge_resistors(
     Their mismatch is the measured quantity, so no default tolerance applies to them.
     """
     resistors = [e for e in elements if e.kind == "R" and e.fitted and e.value]
+    ohms = {e.designator: e.value or 0.0 for e in resistors}
     around: dict[str, list[Element]] = defaultdict(list)
     for element in resistors:
         for net in element.nets[:2]:
@@ -262,6 +267,8 @@ def bridge_resistors(
     inputs = {net for a in amplifiers for net in (a.plus, a.minus)}
     halves: dict[frozenset[str], list[tuple[str, tuple[str, str]]]] = defaultdict(list)
     for net, found in around.items():
+        if len(found) > MOST_AT_A_TAP:
+            continue  # a rail or a return
         for i, first in enumerate(found):
             for second in found[i + 1 :]:
                 ends = frozenset({n for e in (first, second) for n in e.nets[:2] if n != net})
@@ -271,8 +278,8 @@ def bridge_resistors(
     for found_halves in halves.values():
         taps = {net for net, _ in found_halves}
         names = {name for _, pair in found_halves for name in pair}
-        values = [e.value or 0.0 for e in resistors if e.designator in names]
-        alike = max(values) <= BRIDGE_SPREAD * min(values)
-        if len(taps) == 2 and len(names) == 4 and taps & inputs and alike:
-            bridge.update(names)
+        if len(taps) == 2 and len(names) == 4 and taps & inputs:
+            values = [ohms[name] for name in names]
+            if max(values) <= BRIDGE_SPREAD * min(values):
+                bridge.update(names)
     return frozenset(bridge)

@@ -20,6 +20,7 @@ from railguard.deck.cards import Assignment, Call, Group, Items
 FUNCTIONS = frozenset(
     {"sin", "sine", "pulse", "exp", "pwl", "sffm", "am", "trnoise", "trrandom", "pat"}
 )
+_PORT = frozenset({"portnum", "z0", "pwr", "freq", "phase"})
 _IGNORED = frozenset({"rser", "cpar", "portnum", "z0", "tripdv", "tripdt", "m", "temp", "value"})
 
 
@@ -96,6 +97,8 @@ def _word(found: Found, item: str, queue: list[Item], number: Number) -> None:
         ):
             arguments.append(queue.pop(0))
         _function(found, word, tuple(arguments), number)
+    elif word in _PORT:
+        _next(queue, number, 0.0)  # what a network analysis wants of a source
     elif word in ("distof1", "distof2"):
         _next(queue, number, 0.0)
         _next(queue, number, 0.0)

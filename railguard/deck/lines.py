@@ -234,6 +234,8 @@ def scan(text: str, file: str, titled: bool) -> Scanned:
             build.note_marks(stripped, body, number)
         if marked and body.endswith("\\\\"):
             body, joined = body[:-2].rstrip(), True
+        if body == ")":
+            body = "+)"  # a .model closed on a line of its own
         if body[:1] == "+":
             rest = body[1:]
             at = column + 1 + len(rest) - len(rest.lstrip())
