@@ -1,6 +1,6 @@
 """Cards of sources, controlled sources, semiconductors and the letters nobody works out."""
 
-from railguard.circuit.card import Names, flat
+from railguard.circuit.card import COUNTS, Names, flat
 from railguard.circuit.expressions import probes
 from railguard.circuit.model import Control, Element
 from railguard.circuit.sources import multiplied
@@ -142,7 +142,8 @@ def semiconductor(names: Names, items: Items, line: Line, letter: str) -> list[E
     if at < least:
         raise names.unbound(
             items, line, "netlist-node-count",
-            f"{kind} {name} has {least} nodes and a model; found {max(at, 0)} nodes",
+            f"{kind} {name} has {COUNTS[least]} nodes and a model; found "
+            f"{COUNTS[max(at, 0)]} node{'s' if at != 1 else ''}",
         )  # fmt: skip
     known = names.scope.model(words[at].casefold())
     if letter == "M" and at == 3 and known is not None and known[1].lower() != "vdmos":
@@ -204,7 +205,12 @@ def other(names: Names, items: Items, line: Line, letter: str) -> list[Element]:
     words = _ports(flat(items[1:])) if letter == "A" else flat(items[1:])
     count = {"S": 4, "W": 2, "T": 4, "O": 4, "Y": 4}.get(letter, max(len(words) - 1, 0))
     if len(words) < count or not words:
-        raise names.unbound(items, line, "netlist-node-count", f"{name} has {count} nodes")
+        raise names.unbound(
+            items,
+            line,
+            "netlist-node-count",
+            f"{name} has {COUNTS[count]} nodes; found {COUNTS[len(words)]}",
+        )
     return [
         Element(
             kind=letter if letter in "SWT" else "opaque", designator=name,

@@ -12,7 +12,7 @@ from railguard.circuit import active
 from railguard.circuit.board import behind_call, kind_of
 from railguard.circuit.boards import BOARD_LETTERS, component, is_board
 from railguard.circuit.calls import instance
-from railguard.circuit.card import Names, UnboundError
+from railguard.circuit.card import Names, UnboundError, flat
 from railguard.circuit.model import Element, Instance
 from railguard.circuit.passives import passive
 from railguard.circuit.written import text_of
@@ -51,9 +51,9 @@ def bind(names: Names, items: Items, line: Line) -> tuple[Element, ...] | Instan
             return call
         return tuple(component(names, name, rest, line, kind_of(own) or "opaque"))
     handler = _LETTERS.get(letter)
-    if handler is None or (letter in BOARD_LETTERS and (letter != "R" or len(rest) > 3)):
+    if handler is None or (letter in BOARD_LETTERS and not _own_letter(name)):
         board = kind_of(name)
-        if board is not None and (handler is None or is_board(names, letter, rest, board)):
+        if board is not None and (handler is None or is_board(names, name, rest, board)):
             return tuple(component(names, name, rest, line, board))
     if handler is None:
         raise names.unbound(
@@ -66,9 +66,15 @@ def bind(names: Names, items: Items, line: Line) -> tuple[Element, ...] | Instan
         return tuple(handler(names, (name, *rest), line, letter))
     except UnboundError:
         board = kind_of(name)
-        if board is not None and board != "opaque":
-            return tuple(component(names, name, rest, line, board))
-        raise
+        modelled = letter == "D" and names.names_model(flat(rest), 0)
+        if board is None or board == "opaque" or modelled:
+            raise
+        return tuple(component(names, name, rest, line, board))
+
+
+def _own_letter(name: str) -> bool:
+    """Tell at a glance that R7, C12, V1 and the like are what their letter says."""
+    return name[0] in "RrCcLlVvIiEeGgDdZz" and name[1:2].isdigit()
 
 
 def _nothing(line: Line) -> Problem:

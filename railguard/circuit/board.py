@@ -16,17 +16,26 @@ kind  link     conducts at DC: ferrite, fuse, jumper, net tie
 import re
 
 PREFIXES: dict[str, str] = {
-    "U": "ic", "IC": "ic", "OP": "ic", "AR": "ic",
-    "FB": "link", "F": "link", "FU": "link", "JP": "link", "NT": "link", "SJ": "link",
+    "U": "ic", "IC": "ic", "OP": "ic", "AR": "ic", "DA": "ic", "DD": "ic", "N": "ic", "REG": "ic",
+    "OK": "ic", "OC": "ic", "ISO": "ic",
+    "FB": "link", "F": "link", "FU": "link", "FS": "link", "PTC": "link", "JP": "link",
+    "JMP": "link", "NT": "link", "SJ": "link", "SB": "link", "SH": "link", "W": "link",
+    "L": "link",
     "J": "open", "CN": "open", "P": "open", "CON": "open", "CONN": "open", "TP": "open",
-    "H": "open", "MH": "open", "FID": "open", "X": "open", "TB": "open", "MK": "open",
-    "BT": "battery", "BAT": "battery", "B": "battery",
-    "RV": "pot", "POT": "pot", "VR": "pot", "TRIM": "pot",
-    "LED": "diode", "D": "diode",
-    "SW": "opaque", "S": "opaque", "RN": "opaque", "K": "opaque", "RL": "opaque",
-    "T": "opaque", "Y": "opaque", "XTAL": "opaque", "M": "opaque", "LS": "opaque", "Q": "opaque",
-    "A": "opaque", "W": "link", "R": "opaque", "C": "opaque", "L": "link",
+    "PAD": "open", "H": "open", "MH": "open", "MP": "open", "FID": "open", "X": "open",
+    "TB": "open", "MK": "open", "ANT": "open", "AE": "open",
+    "BT": "battery", "BAT": "battery", "B": "battery", "GB": "battery",
+    "RV": "pot", "POT": "pot", "VR": "pot", "TRIM": "pot", "TM": "pot",
+    "LED": "diode", "D": "diode", "CR": "diode", "VD": "diode", "ZD": "diode", "DZ": "diode",
+    "HL": "diode", "TVS": "diode",
+    "SW": "opaque", "S": "opaque", "SA": "opaque", "RN": "opaque", "RP": "opaque", "K": "opaque",
+    "RL": "opaque", "RLY": "opaque", "RY": "opaque", "T": "opaque", "TR": "opaque", "Y": "opaque",
+    "XTAL": "opaque", "ZQ": "opaque", "M": "opaque", "LS": "opaque", "BZ": "opaque", "Q": "opaque",
+    "VT": "opaque", "A": "opaque", "R": "opaque", "C": "opaque", "RT": "opaque", "TH": "opaque",
+    "DS": "opaque", "DISP": "opaque", "LCD": "opaque", "PS": "opaque", "CMC": "opaque",
 }  # fmt: skip
+"""By the letters before the number. Source: IEEE 315, IEC 81346-2 and GOST 2.710, all from memory;
+what they do not name is common practice of schematic editors."""
 
 
 _CALLED = re.compile(r"(?i)^X(?:[§_]|(?=[A-Z]{1,4}\d))(?P<own>[A-Z].*)$")
@@ -47,6 +56,11 @@ def behind_call(designator: str) -> str:
 
 def kind_of(designator: str) -> str | None:
     """Return what a board's designator stands for; None where the table has no row for it."""
+    return PREFIXES.get(prefix_of(designator))
+
+
+def prefix_of(designator: str) -> str:
+    """Return the row of the table a designator belongs to, or ""."""
     leaf = designator.rsplit(".", 1)[-1]
     letters = leaf.rstrip("0123456789ABCDEFabcdef_.-/") if leaf[-1:].isdigit() else leaf
     head = ""
@@ -55,7 +69,7 @@ def kind_of(designator: str) -> str | None:
             break
         head += character
     for length in range(len(head), 0, -1):
-        kind = PREFIXES.get(head[:length].upper())
-        if kind is not None and (length == len(head) or len(letters) <= length):
-            return kind
-    return None
+        known = head[:length].upper() in PREFIXES
+        if known and (length == len(head) or len(letters) <= length):
+            return head[:length].upper()
+    return ""

@@ -1,49 +1,76 @@
 """Cards of board components, by the table of designators."""
 
-from railguard.circuit.board import kind_of
+from railguard.circuit.board import kind_of, prefix_of
 from railguard.circuit.card import Names, flat
 from railguard.circuit.model import Element
 from railguard.circuit.sources import Source
-from railguard.circuit.values import not_fitted
+from railguard.circuit.values import is_rating, not_fitted
 from railguard.circuit.waveforms import FUNCTIONS
 from railguard.deck.cards import Assignment, Items
 from railguard.deck.lines import Line
 from railguard.deck.numbers import read_number
 
-BOARD_LETTERS = frozenset("FHUBJTSKMPNOWARI")
+BOARD_LETTERS = frozenset("FHUBJTSKMPNOWARCLIVEGZD")
 """Letters SPICE knows that board designators begin with as well."""
 
+_POT_OR_REGULATOR = {"VR": "ic"}
+"""What a designator of the pots is where its value is no resistance."""
 
-def is_board(names: Names, letter: str, rest: Items, board: str) -> bool:
+_SOURCE_WORDS = FUNCTIONS | {"dc", "ac", "value", "table", "laplace", "freq", "vol", "cur"}
+
+
+def is_board(names: Names, name: str, rest: Items, board: str) -> bool:
     """Tell whether a card whose letter SPICE knows is a board component all the same."""
-    words = flat(rest)
-    if letter in "FH":
-        steered = len(words) >= 4 and words[2][:1].upper() == "V"
-        return not steered and not any(w.lower().startswith("poly") for w in words)
-    if letter == "I":
-        return board == "ic" and len(words) >= 3 and not _drives(names, rest[2:])
-    if letter == "U":
-        return board == "ic" and bool(words)
-    if letter == "B":
-        return not any(isinstance(i, Assignment) for i in rest)
-    if letter == "J":
-        return not names.names_model(words, 3)
-    if letter == "T":
-        return not any(isinstance(i, Assignment) for i in rest)
-    if letter in "SKMPNOWA":
-        return board in ("open", "link") and not any(isinstance(i, Assignment) for i in rest)
-    return (
-        letter == "R" and board == "pot" and len(words) >= 4 and names.number(words[3]) is not None
-    )
+    letter, words = name[0].upper(), flat(rest)
+    keyed = any(isinstance(item, Assignment) for item in rest)
+    longer = len(prefix_of(name)) > 1
+    match letter:
+        case "F" | "H":
+            steered = len(words) >= 4 and words[2][:1].upper() == "V"
+            return not steered and not any(w.lower().startswith("poly") for w in words)
+        case "U":
+            return board == "ic" and bool(words)
+        case "B" | "T":
+            return not keyed
+        case "J":
+            return not names.names_model(words, 3)
+        case "R" | "C" | "L":
+            if board == "pot":
+                return len(words) >= 4 and not _rated(words[3:])
+            return longer and len(words) >= 3 and not keyed and not _is_value(names, words, letter)
+        case "V" | "I":
+            return longer and len(words) >= 3 and not keyed and not _drives(names, rest)
+        case "E" | "G":
+            return longer and len(words) < 5 and not keyed
+        case "D" | "Z":
+            pins = board == "ic" or letter == "Z"
+            return longer and pins and not keyed and not names.names_model(words, 2)
+        case _:
+            pins = board in ("open", "link") or (board == "ic" and len(words) >= 5)
+            return pins and not keyed
+    return False
+
+
+def _is_value(names: Names, words: list[str], letter: str) -> bool:
+    """Tell whether the word behind two nodes is the value of a passive."""
+    if len(words) > 3 and names.number(words[-1]) is None and not _rated(words[3:]):
+        return False  # CN1 1 2 3 HEADER: with numbered nets the third looks like a value
+    word = words[2]
+    number = names.number(word, letter)
+    return number is not None or not_fitted(word) or names.names_model(words, 2)
+
+
+def _rated(words: list[str]) -> bool:
+    """Tell whether all words are tolerances, packages or ratings."""
+    return all(is_rating(word) for word in words)
 
 
 def _drives(names: Names, rest: Items) -> bool:
     """Tell whether what stands behind two nodes makes a source."""
-    first = rest[0]
+    first = rest[2]
     if not isinstance(first, str):
         return True
-    keyword = first.lower() in ("dc", "ac") or first.lower() in FUNCTIONS
-    return keyword or names.number(first) is not None
+    return first.lower() in _SOURCE_WORDS or names.number(first) is not None
 
 
 def component(names: Names, name: str, rest: Items, line: Line, kind: str) -> list[Element]:
@@ -62,9 +89,9 @@ def component(names: Names, name: str, rest: Items, line: Line, kind: str) -> li
         if len(words) == 2:
             nets, value = tuple(words), ""
     fitted = not not_fitted(value)
-    if kind == "pot" and len(words) >= 4:
-        ohms = names.number(words[3], "R")
-        half = None if ohms is None else ohms / 2
+    ohms = names.number(words[3], "R") if kind == "pot" and len(words) >= 4 else None
+    if ohms is not None:
+        half = ohms / 2
         ends = ((words[0], words[1]), (words[1], words[2]))
         return [
             Element(
@@ -96,7 +123,8 @@ def component(names: Names, name: str, rest: Items, line: Line, kind: str) -> li
         ohms = ohms if name.upper().startswith(("R", "W", "JP", "NT", "SJ")) else None
     return [
         Element(
-            kind="opaque" if kind == "pot" else kind, designator=name, nets=nets, value=ohms,
+            kind=_POT_OR_REGULATOR.get(prefix_of(name), "opaque") if kind == "pot" else kind,
+            designator=name, nets=nets, value=ohms,
             model=value, fitted=fitted, location=place,
         )
     ]  # fmt: skip

@@ -1,7 +1,6 @@
 """Subcircuit calls: nodes, a name, parameters; and the pin names that stand in comments."""
 
-from railguard.circuit.board import kind_of
-from railguard.circuit.card import Names
+from railguard.circuit.card import COUNTS, Names
 from railguard.circuit.model import Element, Instance
 from railguard.circuit.written import text_of
 from railguard.deck.cards import Assignment, Group, Items
@@ -29,10 +28,9 @@ def instance(names: Names, name: str, rest: Items, line: Line) -> Instance:
         elif isinstance(item, Group):
             words += [i for i in item.items if isinstance(i, str)]
     if len(words) < 2:
-        board = kind_of(name)
         raise names.unbound(
             (name, *rest), line, "netlist-node-count",
-            "a subcircuit call has nodes and a name" if board is None else "it has no nodes",
+            f"a subcircuit call has nodes and a name; found {COUNTS[len(words)]} of them",
         )  # fmt: skip
     at = len(words) - 1
     if read_number(words[at]) is not None and names.scope.subcircuit(words[at].casefold()) is None:

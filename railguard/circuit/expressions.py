@@ -88,10 +88,10 @@ def evaluate(
     number = read_number(plain)
     if number is not None and not number.trap:
         return number.value
-    if _NAME.match(plain) and plain.lower() not in _RESERVED:
-        return lookup(plain.lower())
-    tree = parse(plain, deepest)
     try:
+        if _NAME.match(plain) and plain.lower() not in _RESERVED:
+            return lookup(plain.lower())
+        tree = parse(plain, deepest)
         return _Evaluator(lookup, functions, itertools.count()).value(tree, 0)
     except RecursionError:
         raise ExpressionError("it rests on too long a chain of parameters or functions") from None

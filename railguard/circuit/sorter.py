@@ -1,6 +1,7 @@
 """A deck's logical lines, sorted into scopes: what is defined where; nothing is expanded yet."""
 
 import re
+from collections import Counter
 
 import msgspec
 
@@ -49,7 +50,7 @@ class _Sorter:
         self.gnd_ports: list[tuple[str, Line]] = []
         self.conditions: list[Line] = []
         self.taken: list[bool] = []
-        self.live: list[bool] = []
+        self.live: list[bool] = []  # of each open .if: are its cards taken, and those outside
 
     def problem(self, rule: str, message: str, line: Line, remedy: str = "") -> None:
         self.problems.append(
@@ -59,14 +60,14 @@ class _Sorter:
     def take(self, line: Line) -> None:
         text = line.text
         if text[0] != ".":
-            if not self.live or all(self.live):
+            if not self.live or self.live[-1]:
                 self.stack[-1].cards.append(line)
             return
         word = text[1:].split(None, 1)[0].split("(")[0].lower() if len(text) > 1 else ""
         if word in ("if", "elseif", "elif", "else", "endif"):
             self.condition(word, line)
             return
-        if not all(self.live):
+        if self.live and not self.live[-1]:
             return
         try:
             self.dot(word, line)
@@ -179,8 +180,10 @@ class _Sorter:
 
     def ports(self, scope: Scope, line: Line) -> None:
         """Say what is odd about a header's ports."""
-        for port, key in zip(scope.ports, scope.keys, strict=True):
-            if scope.keys.count(key) > 1 and port == scope.ports[scope.keys.index(key)]:
+        times = Counter(scope.keys)
+        for port, key in dict(zip(scope.ports, scope.keys, strict=True)).items():
+            if times[key] > 1:
+                times[key] = 0
                 self.problem(
                     "netlist-duplicate",
                     f"The subcircuit {scope.name} has two ports of the name {port}.",
@@ -279,7 +282,7 @@ class _Sorter:
         if not self.live:
             self.problem("netlist-card", f".{word} without .if.", line)
             return
-        outer = all(self.live[:-1])
+        outer = len(self.live) < 2 or self.live[-2]
         true = outer and not self.taken[-1] and (word == "else" or self.true(line))
         self.live[-1] = true
         self.taken[-1] = self.taken[-1] or true

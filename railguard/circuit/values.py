@@ -38,6 +38,11 @@ class Reading(msgspec.Struct, frozen=True):
     written: str = ""
 
 
+def is_rating(word: str) -> bool:
+    """Tell whether a word behind a value says how it is made: a tolerance, package, voltage."""
+    return any(p.match(word) for p in (_TOLERANCE, _PACKAGE, _RATING))
+
+
 def not_fitted(word: str) -> bool:
     """Tell whether a value says that the component is left out."""
     return bool(_NOT_FITTED.match(word))

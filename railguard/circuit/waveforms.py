@@ -1,6 +1,7 @@
 """The words of a V or I card to a Source."""
 
 import itertools
+from collections import deque
 from collections.abc import Callable, Mapping
 
 import msgspec
@@ -61,9 +62,9 @@ def read_source(items: Items, number: Number) -> Found:
     Raises  SourceError
     """
     found = Found()
-    queue = list(items)
+    queue = deque(items)
     while queue:
-        item = queue.pop(0)
+        item = queue.popleft()
         if isinstance(item, str):
             _word(found, item, queue, number)
         elif isinstance(item, Assignment):
@@ -71,13 +72,13 @@ def read_source(items: Items, number: Number) -> Found:
         elif isinstance(item, Call):
             _function(found, item.name, item.items, number)
         else:
-            queue[:0] = list(item.items)
+            queue.extendleft(reversed(item.items))
     if found.bare and found.keyed and found.bare.lower() != found.keyed.lower():
         found.doubled = f"{found.bare} and DC {found.keyed}"
     return found
 
 
-def _word(found: Found, item: str, queue: list[Item], number: Number) -> None:
+def _word(found: Found, item: str, queue: deque[Item], number: Number) -> None:
     word = item.lower()
     if word == "dc":
         if queue and isinstance(queue[0], str) and number(queue[0]) is None:
@@ -85,7 +86,7 @@ def _word(found: Found, item: str, queue: list[Item], number: Number) -> None:
                 return  # DC with its value left out
             raise SourceError(f'"{queue[0]}" is no number')
         if queue and isinstance(queue[0], str):
-            _dc(found, str(queue.pop(0)), number)
+            _dc(found, str(queue.popleft()), number)
     elif word == "ac":
         found.ac = (_next(queue, number, 1.0), _next(queue, number, 0.0))
     elif word in FUNCTIONS:
@@ -95,7 +96,7 @@ def _word(found: Found, item: str, queue: list[Item], number: Number) -> None:
             or _is_number(queue[0], number)
             or (word == "pwl" and _is_of_pwl(queue[0]))
         ):
-            arguments.append(queue.pop(0))
+            arguments.append(queue.popleft())
         _function(found, word, tuple(arguments), number)
     elif word in _PORT:
         _next(queue, number, 0.0)  # what a network analysis wants of a source
@@ -144,7 +145,7 @@ def _is_number(item: Item, number: Number) -> bool:
 
 
 def _next(
-    queue: list[Item],
+    queue: deque[Item],
     number: Number,
     default: float,
 ) -> float:
@@ -152,7 +153,7 @@ def _next(
     value = number(item) if isinstance(item, str) else None
     if value is None:
         return default
-    del queue[0]
+    queue.popleft()
     return value
 
 
@@ -231,14 +232,14 @@ def _piecewise(items: Items, number: Number) -> Piecewise:
     block: list[tuple[float, float]] | None = None
     repeat: float | None = None
     times, start = 1, 0.0
-    queue = list(words)
+    queue = deque(words)
     while queue:
-        word = queue.pop(0).lower()
+        word = queue.popleft().lower()
         if word == "repeat":
             block, start, times = [], points[-1][0] if points else 0.0, 1
-            head = queue.pop(0).lower() if queue else ""
+            head = queue.popleft().lower() if queue else ""
             if head == "for" and queue:
-                count = _need(number(queue.pop(0)), "FOR")
+                count = _need(number(queue.popleft()), "FOR")
                 times = max(int(count), 1)
             elif head != "forever":
                 raise SourceError("REPEAT is followed by FOR and a number, or by FOREVER")
@@ -253,7 +254,7 @@ def _piecewise(items: Items, number: Number) -> Piecewise:
             into = points if block is None else block
             if not queue:
                 raise SourceError("PWL has a time without a value")
-            moment, value = _need(number(word.lstrip("+")), word), queue.pop(0)
+            moment, value = _need(number(word.lstrip("+")), word), queue.popleft()
             if word.startswith("+") and into:
                 moment += into[-1][0]
             into.append((moment, _need(number(value), value)))

@@ -18,7 +18,8 @@ def elements(cards):
         ("U1", "ic"), ("IC12", "ic"), ("FB1", "link"), ("F1", "link"), ("J1", "open"),
         ("CN3", "open"), ("P1", "open"), ("BT1", "battery"), ("RV1", "pot"), ("JP2", "link"),
         ("NT1", "link"), ("TP4", "open"), ("LED1", "diode"), ("SW1", "opaque"), ("RN1", "opaque"),
-        ("K1", "opaque"), ("T1", "opaque"),
+        ("K1", "opaque"), ("T1", "opaque"), ("DA1", "ic"), ("VD3", "diode"), ("GB1", "battery"),
+        ("VR1", "pot"), ("REG2", "ic"), ("PTC1", "link"), ("MP1", "open"), ("XTAL1", "opaque"),
     ],
 )  # fmt: skip
 def test_designator_table(designator, kind):
@@ -58,3 +59,46 @@ def test_battery_states_its_level_or_not():
 def test_resistor_that_is_not_fitted():
     """DNP is kept, and conducts nothing."""
     assert not elements("V1 a 0 5\nR1 a 0 DNP")["R1"].fitted
+
+
+@pytest.mark.parametrize(
+    ("card", "kind", "nets"),
+    [
+        ("IC1 a b c 0 d e f +5V TL072", "ic", 8),
+        ("DA1 a b c 0 d e f +5V TL072", "ic", 8),
+        ("N1 a b c 0 d e f +5V TL072", "ic", 8),
+        ("VR1 +5V 0 a AMS1117-3.3", "ic", 3),
+        ("REG1 +5V 0 a LP2950", "ic", 3),
+        ("CN1 1 2 3 HEADER", "open", 3),
+        ("CON2 a b c d SOCKET_4", "open", 4),
+        ("CR1 a 0 1N4148", "D", 2),
+        ("LED1 a 0 GREEN", "D", 2),
+        ("VD1 a 0 BAT54", "D", 2),
+        ("HL1 a 0 RED", "D", 2),
+        ("RN1 a b c d 10k_NETWORK", "opaque", 4),
+        ("GB1 a 0 12V", "battery", 2),
+        ("XFB1 a b 600R", "link", 2),
+        ("X§J1 a b 0 SENSOR", "open", 3),
+        ("PTC1 a b 100mA", "link", 2),
+    ],
+)
+def test_designator_that_begins_with_a_letter_of_spice(card, kind, nets):
+    """It is what the table says where the card is not one of its letter."""
+    (found,) = [e for n, e in elements(f"V1 +5V 0 5\n{card}").items() if n != "V1"]
+    assert (found.kind, len(found.nets)) == (kind, nets)
+
+
+@pytest.mark.parametrize(
+    ("card", "kind"),
+    [
+        ("RT1 a b 10k", "R"), ("RN1 a b 4k7 5%", "R"), ("CX1 a b 100n", "C"), ("LF1 a b 10u", "L"),
+        ("VR1 a 0 5", "V"), ("VD1 a 0 DC 5 AC 1", "V"), ("IC1 a 0 1m", "I"), ("VR1 a 0", "V"),
+        ("DA1 a 0 dm", "D"), ("GB1 b 0 a 0 1m", "G"), ("LED1 a b 10u", "L"), ("CR1 a b {2*k}", "C"),
+        ("R1 a b rm", "R"),
+    ],
+)  # fmt: skip
+def test_card_that_fits_its_letter_stays_one(card, kind):
+    """However its designator begins."""
+    cards = f"V9 a 0 5\n.param k=1n\n.model dm d\n.model rm r(r=1k)\n{card}"
+    (found,) = [e for n, e in elements(cards).items() if n != "V9"]
+    assert found.kind == kind

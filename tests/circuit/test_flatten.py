@@ -171,3 +171,161 @@ def test_any_number_of_bad_cards_costs_only_those():
     cards = "V1 n0 0 5\n" + "\n".join(line for pair in zip(good, bad, strict=True) for line in pair)
     names = [e.designator for e in circuit(cards).elements if e.kind == "R"]
     assert names == [f"R{k}" for k in range(20)]
+
+
+@pytest.mark.parametrize(
+    ("cards", "points", "repeat", "delay"),
+    [
+        ("PWL(0 0 1m 1 2m 0) r=0 td=1u", ((0, 0), (1e-3, 1), (2e-3, 0)), 0.0, 1e-6),
+        ("PWL(0 0 1m 1) r=-1", ((0, 0), (1e-3, 1)), None, 0.0),
+        ("PWL(0 0 +1m 1 +1m 0)", ((0, 0), (1e-3, 1), (2e-3, 0)), None, 0.0),
+        ("PWL REPEAT FOREVER (0 0 1m 1 2m 0) ENDREPEAT", ((0, 0), (1e-3, 1), (2e-3, 0)), 0.0, 0.0),
+        (
+            "PWL REPEAT FOR 2 (0 0 1m 1 2m 0) ENDREPEAT",
+            ((0, 0), (1e-3, 1), (2e-3, 0), (3e-3, 1), (4e-3, 0)),
+            None,
+            0.0,
+        ),
+        (
+            "PWL TIME_SCALE_FACTOR=1m VALUE_SCALE_FACTOR=2 (0 0 1 1)",
+            ((0, 0), (1e-3, 2)),
+            None,
+            0.0,
+        ),
+    ],
+)
+def test_piecewise_forms(cards, points, repeat, delay):
+    """Repeats, delays, relative times, scale factors."""
+    wave = element(f"V1 a 0 5\nV2 b 0 {cards}", "V2").source.wave
+    assert wave.points == tuple(pytest.approx(point) for point in points)
+    assert (wave.repeat, wave.delay) == (repeat, delay)
+
+
+@pytest.mark.parametrize(
+    "cards",
+    ['PWL file="level.txt"', "PWL(FILE=level.txt)", 'PWL FILE "level.txt"', "wavefile=x.wav"],
+)
+def test_points_in_a_file_are_refused(cards):
+    """Nothing but netlists is read; the source is known to state something that is not known."""
+    found = circuit(f"V1 a 0 5\nV2 b 0 {cards}")
+    assert [p.rule for p in found.problems] == ["netlist-source"]
+    assert "in a file, which is not read" in found.problems[0].message
+    assert not found.elements[1].source.stated
+
+
+@pytest.mark.parametrize(
+    ("card", "gain", "nets"),
+    [
+        ("E2 b 0 a 0 10", 10.0, ("a", "0")),
+        ("E2 b 0 (a,0) 10", 10.0, ("a", "0")),
+        ("E2 b 0 a 0 {2*k}", 6.0, ("a", "0")),
+        ("E2 b 0 POLY(1) a 0 0 4", 4.0, ("a", "0")),
+        ("E2 b 0 POLY(1) (a,0) 4", 4.0, ("a", "0")),
+        ("E2 b 0 POLY(1) a 0 1 4", None, ("a", "0")),
+        ("E2 b 0 VALUE={V(a)*2}", None, ("a",)),
+        ("E2 b 0 VALUE {V(a,c)}", None, ("a", "c")),
+        ("E2 b 0 vol='V(a)'", None, ("a",)),
+        ("E2 b 0 TABLE {V(a)} = (0,0) (1,5)", None, ("a",)),
+        ("E2 b 0 LAPLACE {V(a)} = {1/(1+s)}", None, ("a",)),
+        ("E2 b 0 a 0 Laplace=1/(1+s)", None, ("a", "0")),
+        ("E2 b 0 FREQ {V(a)} = (0,0,0) (1k,-20,-90)", None, ("a",)),
+        ("G2 b 0 a 0 1m m=2", 2e-3, ("a", "0")),
+    ],
+)
+def test_controlled_sources(card, gain, nets):
+    """Every form keeps the nets that steer it; a plain factor is a gain."""
+    found = circuit(f"V1 a 0 5\n.param k=3\n{card}\nR1 b 0 1k\nR2 c 0 1k")
+    made = next(e for e in found.elements if e.designator == card[:2])
+    assert made.control.gain == (pytest.approx(gain) if gain is not None else None)
+    assert made.control.nets == nets
+    assert found.problems == ()
+
+
+@pytest.mark.parametrize(
+    ("card", "gain"), [("F2 b 0 V1 2", 2.0), ("F2 b 0 POLY(1) V1 0 3", 3.0), ("H2 b 0 V1 1k", 1e3)]
+)
+def test_current_controlled_sources(card, gain):
+    """The source whose current steers them, and their factor."""
+    made = element(f"V1 a 0 5\nR1 b 0 1k\n{card}", card[:2])
+    assert (made.control.element, made.control.gain) == ("V1", gain)
+
+
+def test_multiplied_current_source():
+    """Two in parallel deliver twice the current, waves included."""
+    cards = "X1 a s m=2\n.subckt s p\nI1 0 p 1m SIN(1m 2m 1k)\nR1 p 0 1k\n.ends\nV1 b 0 1"
+    source = element(cards, "X1.I1").source
+    assert source.dc == pytest.approx(2e-3)
+    assert (source.wave.offset, source.wave.amplitude) == (pytest.approx(2e-3), pytest.approx(4e-3))
+
+
+@pytest.mark.parametrize(
+    ("card", "words"),
+    [
+        ("R7 a", "resistor R7 has two nodes and a value; found one node"),
+        ("C7 a b", "capacitor C7 has no value"),
+        ("V7 a", "voltage source V7 has two nodes; found one node"),
+        ("E7 a", "controlled source E7 has two nodes; found one node"),
+        ("D7 a dm", "diode D7 has two nodes and a model; found one node"),
+        ("Q7 c b", "transistor Q7 has three nodes and a model; found one node"),
+        ("X7 a", "a subcircuit call has nodes and a name; found one of them"),
+        ("S7 a b", "S7 has four nodes; found two"),
+    ],
+)
+def test_messages_speak_the_trade(card, words):
+    """What the card should have, and what it has."""
+    (problem,) = circuit(f"V1 a 0 5\n.model dm d\n{card}").problems
+    assert words in problem.message
+
+
+@pytest.mark.parametrize(
+    ("cards", "rule", "words"),
+    [
+        (".if (1)\nR1 a 0 1k", "netlist-end", "not closed by .endif"),
+        (".else\nR1 a 0 1k", "netlist-card", ".else without .if"),
+        ("R1 a 0 1k\n.ends", "netlist-end", "closes no subcircuit"),
+        (".subckt s p q\nR1 p q 1\n.ends t\nX1 a 0 s", "netlist-end", "closes the subcircuit s"),
+        (".subckt s p p\nR1 p 0 1\n.ends\nX1 a a s", "netlist-duplicate", "two ports"),
+        (".param a=1\n.param a=2\nR1 a 0 {a}", "netlist-parameter", "defined twice"),
+        (".control\nrun", "netlist-end", ".control is not closed by .endc"),
+        ("R1 a 0 -5k", "netlist-value-sign", "negative"),
+        ("R1 a 0 {nope}", "netlist-parameter", "nope is not defined"),
+    ],
+)
+def test_what_is_odd_about_definitions(cards, rule, words):
+    """Blocks that are not closed, names that stand twice, values nobody knows."""
+    (problem,) = circuit(f"V1 a 0 5\n{cards}").problems
+    assert problem.rule == rule
+    assert words in problem.message
+
+
+def test_condition_without_parentheses_and_inside_a_subcircuit():
+    """The parameters of the scope count, blanks or brackets do not."""
+    body = ".subckt s p q n=2\n.if n==2\nR1 p q 1k\n.elseif(n=3)\nR1 p q 2k\n.endif\n.ends"
+    assert element(f"V1 a 0 5\nX1 a 0 s\n{body}", "X1.R1").value == 1000.0
+
+
+def test_connected_nets_are_one():
+    """.connect joins two names."""
+    found = circuit("V1 a 0 5\n.connect a b\nR1 b 0 1k").elements
+    assert {e.nets for e in found} == {("a", "0")} or {e.nets for e in found} == {("b", "0")}
+
+
+def test_problem_of_a_card_is_told_once_for_all_its_instances():
+    """Not a thousand times."""
+    calls = "\n".join(f"X{k} a 0 s" for k in range(50))
+    found = circuit(f"V1 a 0 5\n{calls}\n.subckt s p q\nR1 p q 1M\n.ends")
+    assert [p.rule for p in found.problems] == ["netlist-value-suffix"]
+    assert len(found.elements) == 51
+
+
+def test_instances_share_nothing_they_should_not():
+    """Values that rest on an instance's own parameters are its own."""
+    cards = (
+        "V1 a 0 5\nX1 a 0 s r=1k\nX2 a 0 s r=2k\nX3 a 0 s r=1k m=2\nX4 a 0 s r=1k\n"
+        ".subckt s p q r=9\nR1 p q {r}\nR2 p q 1k\nX9 p q t k={r*2}\n.ends\n"
+        ".subckt t p q k=1\nR3 p q {k}\n.ends"
+    )
+    values = {e.designator: e.value for e in circuit(cards).elements}
+    assert [values[f"X{k}.R1"] for k in (1, 2, 3, 4)] == [1000.0, 2000.0, 500.0, 1000.0]
+    assert [values[f"X{k}.R2"] for k in (1, 2, 3, 4)] == [1000.0, 1000.0, 500.0, 1000.0]
+    assert [values[f"X{k}.X9.R3"] for k in (1, 2, 3, 4)] == [2000.0, 4000.0, 1000.0, 2000.0]
