@@ -5,8 +5,11 @@ that this room needs no catalogue.
 """
 
 import re
+from collections import Counter
 from collections.abc import Callable, Iterable
 from typing import cast
+
+import msgspec
 
 from railguard.circuit.bind import bind
 from railguard.circuit.calls import closed as closed_call
@@ -14,7 +17,7 @@ from railguard.circuit.calls import pin_names
 from railguard.circuit.card import COUNTS, Names, UnboundError
 from railguard.circuit.environment import Bound, Environment
 from railguard.circuit.expressions import ExpressionError
-from railguard.circuit.ground import GROUNDS, likely_ground, no_ground, other_grounds
+from railguard.circuit.ground import ELSEWHERE, GROUNDS, likely_ground, no_ground, other_grounds
 from railguard.circuit.model import (
     GROUND,
     Circuit,
@@ -26,6 +29,7 @@ from railguard.circuit.model import (
     Subcircuit,
 )
 from railguard.circuit.plain import plain_element
+from railguard.circuit.references import unsteered
 from railguard.circuit.scopes import Scope
 from railguard.circuit.sorter import Sorted, sort_deck
 from railguard.circuit.written import parameter_cycle, text_of
@@ -86,7 +90,7 @@ def flatten(deck: Deck, closed: Closed = nothing_closed) -> Circuit:
         analyses=found.analyses,
         directives=tuple(Directive(text, place) for text, place in deck.directives),
         globals=found.globals,
-        problems=tuple(problems),
+        problems=_not_drowned(problems),
         remarks=deck.remarks,
         sha256=deck.sha256,
         files=deck.files,
@@ -158,6 +162,7 @@ class _Expander:
         self._closed = closed
         self._devices: dict[tuple[int, str], bool] = {}
         self._grounds = grounds
+        self._aliases: list[str] = []
         self._globals = {name.casefold(): name for name in found.globals}
         self._joined = {a.casefold(): b for a, b in found.connected}
         self._unconnected = 0
@@ -202,7 +207,10 @@ class _Expander:
 
     def afterwards(self, found: Sorted) -> list[Problem]:
         """Return what can be said once everything is expanded."""
-        problems = other_grounds(self.elements) if self.grounded else []
+        problems: list[Problem] = []
+        if self.grounded:
+            problems += other_grounds(self._aliases, self.elements)
+        problems += unsteered(self.elements)
         for name, subcircuit in sorted(self.environment.borrowed):
             problems.append(
                 Problem(
@@ -235,7 +243,7 @@ class _Expander:
             bound = bind(names, scope.items(number, line), line)
         except CardError as error:
             names.problems.append(self._card(line, error.reason))
-            bound = ()
+            bound = _unread(line)
         except UnboundError as error:
             names.problems.append(error.problem)
             bound = (error.element,) if error.element is not None else ()
@@ -295,6 +303,8 @@ class _Expander:
         if key in self._grounds:
             self.grounded = True
             return GROUND
+        if key in ELSEWHERE and not prefix:
+            self._aliases.append(name)
         if not prefix and key in self._joined and self._joined[key].casefold() != key:
             other = self._joined.pop(key)
             return self.net(other, other.casefold(), prefix)
@@ -414,6 +424,44 @@ class _Expander:
                 designators=(prefix + instance.designator,),
             )
         )
+
+
+def _unread(line: Line) -> tuple[Element, ...]:
+    """Keep the nets of a card that cannot be split, so that nothing on them looks unconnected."""
+    words = re.split(r"[=(){}'\"]", line.text, maxsplit=1)[0].replace(",", " ").split()
+    nets = tuple(w for w in words[1:] if w == "0" or read_number(w) is None)
+    if not nets:
+        return ()
+    return (
+        Element(
+            kind="opaque", designator=words[0], nets=nets, text=line.text, location=line.location
+        ),
+    )
+
+
+MOST_ALIKE = 200
+"""Problems of one rule that are told one by one."""
+
+
+def _not_drowned(problems: list[Problem]) -> tuple[Problem, ...]:
+    """Leave out what is told too often to be read, and say how much that is."""
+    times: Counter[str] = Counter()
+    kept = []
+    for problem in problems:
+        times[problem.rule] += 1
+        if times[problem.rule] <= MOST_ALIKE:
+            kept.append(problem)
+    for rule, count in times.items():
+        if count > MOST_ALIKE:
+            last = next(p for p in reversed(problems) if p.rule == rule)
+            kept.append(
+                msgspec.structs.replace(
+                    last,
+                    message=f"{count - MOST_ALIKE:,} more of these are not listed, up to this one: "
+                    f"{last.message}",
+                )
+            )
+    return tuple(kept)
 
 
 def _counted(count: int, noun: str) -> str:

@@ -9,7 +9,7 @@ from railguard.notices import Problem
 GROUNDS = frozenset({"0", "gnd"})
 """What is ground to every SPICE of today, case-folded."""
 
-_ELSEWHERE = frozenset({"gnd!", "ground", "00", "000"})
+ELSEWHERE = frozenset({"gnd!", "ground", "00", "000"})
 """What is ground to some: HSPICE takes the words, SPICE 2 and HSPICE every zero."""
 
 _MEANT = (
@@ -56,20 +56,16 @@ def no_ground(likely: str, elements: Iterable[Element]) -> Problem:
     )
 
 
-def other_grounds(elements: Iterable[Element]) -> list[Problem]:
+def other_grounds(nets: Iterable[str], elements: Iterable[Element]) -> list[Problem]:
     """Say which nets beside ground are ground to other programs, and are nets of their own here."""
-    found: dict[str, Element] = {}
-    for element in elements:
-        for net in element.nets:
-            if net.casefold() in _ELSEWHERE:
-                found.setdefault(net, element)
+    found = {net: next((e for e in elements if net in e.nets), None) for net in nets}
     return [
         Problem(
             rule="netlist-ground",
             message=f"The net {net} is a net of its own beside ground; some SPICE programs take it "
             "for ground.",
             remedy=f"Name it 0 if it is ground, or otherwise than {net}.",
-            location=element.location,
+            location=element.location if element is not None else None,
             nets=(net,),
             severity="minor",
         )

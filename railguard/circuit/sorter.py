@@ -249,21 +249,23 @@ class _Sorter:
         models[name.lower()] = (name, word, rest, line)
 
     def balanced(self, line: Line) -> Items:
-        """Split a .model card; parentheses that are not closed are closed at its end.
+        """Split a .model card; a parenthesis too few or too many at its end is mended.
 
         Raises  CardError
         """
-        missing = line.text.count("(") - line.text.count(")")
-        if missing <= 0:
-            return items_of(line.text)
-        items = items_of(line.text + ")" * missing)
-        self.problem(
-            "netlist-card",
-            f"The .model card of {text_of(items[1]) if len(items) > 1 else 'no name'} is not "
-            "closed by ); it was read to its end.",
-            line,
-            "Put ) behind its last parameter.",
-        )
+        text = line.text
+        missing = text.count("(") - text.count(")")
+        if missing == 0:
+            return items_of(text)
+        if missing > 0:
+            items = items_of(text + ")" * missing)
+            what, remedy = "is not closed by )", "Put ) behind its last parameter."
+        else:
+            items = items_of(text.removesuffix(")" * -missing))
+            what, remedy = "has a ) too many", "Take the last ) off."
+        name = text_of(items[1]) if len(items) > 1 else "no name"
+        told = f"The .model card of {name} {what}; it was read to its end."
+        self.problem("netlist-card", told, line, remedy)
         return items
 
     def condition(self, word: str, line: Line) -> None:

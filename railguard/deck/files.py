@@ -22,6 +22,7 @@ from railguard.deck.includes import (
     section_opened,
 )
 from railguard.deck.lines import Line, scan
+from railguard.deck.numbers import read_number
 from railguard.deck.source import DISK, Files
 from railguard.location import Location
 from railguard.notices import Problem, Remark
@@ -371,12 +372,15 @@ _BLOCKS = {
 """Blocks that hold no cards, and what closes them."""
 _RUN = frozenset({"tran", "ac", "dc", "op", "noise", "tf", "pz", "sens", "disto"})
 """Commands of a control block that are analyses, as their dot cards are."""
-_CARD = re.compile(r"(?i)^[RCLVIEGFHDQJMX]\S*\s+\S+\s+\S+\s+[\d.+-]")
+_DESIGNATOR = re.compile(r"(?i)^[RCLVIEGFHDQJMX](?:\S*\d\S*)?$")
 
 
 def _is_card(title: str) -> bool:
     """Tell whether a title line looks like a card that was meant to be one."""
-    return bool(_CARD.match(title)) and len(title.split()) <= 6
+    words = title.split()
+    if not 4 <= len(words) <= 6 or not _DESIGNATOR.match(words[0]):
+        return False
+    return read_number(words[3]) is not None
 
 
 def _is_library(name: str, text: str) -> bool:

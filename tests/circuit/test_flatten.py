@@ -329,3 +329,36 @@ def test_instances_share_nothing_they_should_not():
     assert [values[f"X{k}.R1"] for k in (1, 2, 3, 4)] == [1000.0, 2000.0, 500.0, 1000.0]
     assert [values[f"X{k}.R2"] for k in (1, 2, 3, 4)] == [1000.0, 1000.0, 500.0, 1000.0]
     assert [values[f"X{k}.X9.R3"] for k in (1, 2, 3, 4)] == [2000.0, 4000.0, 1000.0, 2000.0]
+
+
+@pytest.mark.parametrize(
+    ("card", "name"),
+    [("F2 b 0 V9 2", "V9"), ("H2 b 0 V9 1k", "V9"), ("K1 L1 L9 0.9\nL1 b 0 1m", "L9")],
+)
+def test_card_that_names_what_is_not_there(card, name):
+    """A source steered by nothing, an inductor coupled to nothing."""
+    (problem,) = circuit(f"V1 a 0 5\nR1 b 0 1k\n{card}").problems
+    assert problem.rule == "netlist-card"
+    assert f"{name}, which is not in the circuit" in problem.message
+
+
+def test_references_inside_a_subcircuit():
+    """They name what stands beside them."""
+    body = "V2 p q 0\nF1 q 0 V2 1\nL1 q 0 1\nL2 q 0 1\nK1 L1 L2 1"
+    cards = f"V1 a 0 5\nX1 a s\n.subckt s p\n{body}\n.ends"
+    assert circuit(cards).problems == ()
+
+
+def test_many_alike_problems_are_counted():
+    """A deck with a thousand doubled designators does not drown what else is wrong with it."""
+    found = circuit("V1 a 0 5\nR2 a 0 1M\n" + "R1 a 0 1k\n" * 1001)
+    assert len(found.problems) < 250
+    assert any("800 more of these" in p.message for p in found.problems)
+    assert "netlist-value-suffix" in [p.rule for p in found.problems]
+
+
+def test_card_that_cannot_be_split_keeps_its_nets():
+    """Nothing on them is taken for unconnected."""
+    found = circuit("V1 a 0 5\nX1 a b c s r={1k")
+    assert found.elements[1].kind == "opaque"
+    assert {"a", "b", "c"} <= set(found.elements[1].nets)
