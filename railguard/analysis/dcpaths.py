@@ -6,6 +6,7 @@ not conduct; op-amp outputs, sources and rails define a potential. A net that le
 seen is open, not unbiased.
 """
 
+import re
 from collections import defaultdict, deque
 from collections.abc import Iterable, Mapping
 from typing import Literal
@@ -114,6 +115,12 @@ def is_linear(element: Element) -> bool:
     if control is None or control.gain is None:
         return False
     return bool(control.element) if element.kind in ("F", "H") else len(control.nets) == 2
+
+
+def is_capacitor(element: Element) -> bool:
+    """Tell whether an element is a capacitor, though perhaps one whose card gives no value."""
+    named = element.kind == "opaque" and re.match(r"(?i)C\d", element.designator.split(".")[-1])
+    return len(element.nets) == 2 and (element.kind == "C" or bool(named))
 
 
 def leaves_sheet(element: Element) -> bool:

@@ -21,7 +21,7 @@ from railguard.analysis.stages import drafts_of, finished, unsolved
 from railguard.analysis.supplies import Feed, feeds, supply_nets
 from railguard.analysis.surroundings import MID_HERTZ, bridge_resistors
 from railguard.analysis.unseen import spoiled, swinging, unseen_things
-from railguard.circuit.model import GROUND, Circuit
+from railguard.circuit.model import GROUND, Circuit, Element
 from railguard.devices.catalogue import Catalogue
 from railguard.errors import SolveError
 from railguard.notices import Problem, Remark
@@ -229,22 +229,38 @@ def _conflicts(network: Network, prepared: Prepared) -> list[Problem]:
     """Turn voltages that contradict each other into problems, named by net and element."""
     problems = []
     amplifiers = {a.designator for a in network.amplifiers}
-    places = {e.designator: e.location for e in prepared.elements} if network.conflicts else {}
+    own = {e.designator: e for e in prepared.elements} if network.conflicts else {}
+    levels = source_levels(prepared) if network.conflicts else {}
     for designator, *nets in network.conflicts:
         if designator in amplifiers:
             continue  # two outputs on one net are a matter of drive
         where = " and ".join(n for n in dict.fromkeys(nets) if n != GROUND)
+        element = own.get(designator)
+        same = element is not None and _agrees(element, levels)
         problems.append(
             Problem(
                 rule="netlist-sources-fight",
-                message=f"{designator} sets a voltage at {where} that other sources already set.",
+                message=f"{designator} sets a voltage at {where} that other sources already set"
+                + (", to the same level: most SPICE programs stop at that." if same else "."),
                 remedy="Put a resistance in series, or take one of them out.",
-                location=places.get(designator),
+                location=element.location if element is not None else None,
                 designators=(designator,),
                 nets=tuple(nets),
+                severity="minor" if same else None,
             )
         )
     return problems
+
+
+def _agrees(element: Element, levels: Mapping[str, float]) -> bool:
+    """Tell whether a source sets the level that is there already, and no wave beside it."""
+    source = element.source
+    if source is None or source.wave is not None or not source.stated:
+        return False
+    high, low = (levels.get(net) for net in element.nets[:2])
+    if high is None or low is None:
+        return False
+    return abs(high - low - source.level) <= SHORTED_VOLTS
 
 
 def _shorted(prepared: Prepared) -> list[Problem]:

@@ -9,7 +9,7 @@ from collections import defaultdict
 from collections.abc import Iterable, Mapping
 from typing import Literal
 
-from railguard.analysis.dcpaths import leaves_sheet
+from railguard.analysis.dcpaths import is_capacitor, leaves_sheet
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.stage import Capacitor, Package, Rail, Range
 from railguard.analysis.supplies import DEFAULT_RAIL_TOLERANCE, Feed
@@ -84,7 +84,7 @@ class RailMap:
         returns = self.grounds()
         for at, behind in nets.items():
             for element in self.at(at):
-                if element.kind != "C" or len(element.nets) < 2:
+                if not is_capacitor(element):
                     continue
                 other = element.nets[1] if element.nets[0] == at else element.nets[0]
                 if other in nets:

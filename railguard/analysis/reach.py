@@ -24,14 +24,19 @@ def band_of(view: View) -> Range:
 
 
 def is_ac_coupled(view: View) -> bool:
-    """Tell whether every signal that reaches the output is blocked at DC."""
+    """Tell whether every signal that reaches the output is blocked at DC.
+
+    What has no stated amplitude (a probe, a net that leaves the sheet) counts where nothing else
+    moves the output.
+    """
     moved = [
         (t, float(t.peaks[view.at("output")]))
         for t in view.answers.tones
         if t.peaks[view.at("output")] > 0
     ]
     if not moved:
-        return False
+        unseen = view.spoil("output")
+        return bool(unseen.ac) and not unseen.dc
     rows = [int(view.answers.rows[view.at("output")])]
     adjoint = view.answers.dc.adjoint(rows)[0]
     for tone, peak in moved:
@@ -62,14 +67,16 @@ def gains_of(view: View) -> tuple[tuple[str, float], ...]:
 
 
 _LOWEST_CORNER = 1e-4
+_HIGHEST_BAND, _BAND_STEPS = 1e4, 17
+"""How far above a signal its pass band is looked for, and in how many steps."""
 _HALVINGS = 24
 
 
 def high_pass_of(view: View) -> float | None:
     """Return the -3 dB corner that coupling capacitors give on the way to the output, hertz.
 
-    Looked for below the frequency where the strongest signal is largest; None where no signal is
-    stated, or where the stage passes DC.
+    Against the pass band, which may lie above the signal: a coupling far too small takes most of
+    it. None where no signal is stated, or where the stage passes DC.
     """
     q = view.at("output")
     moved = [t for t in view.answers.tones if t.peaks[q] > 0 and t.hertz[q] > 0]
@@ -79,12 +86,15 @@ def high_pass_of(view: View) -> float | None:
     tone = max(moved, key=lambda t: float(t.peaks[q]))
     network = view.answers.network
     b = network.right_hand_side(tone.tone.drives)
-    target = float(tone.peaks[q]) / np.sqrt(2.0)
 
     def size(hertz: float) -> float:
         return abs(complex(factor(network, hertz).forward(b)[row]))
 
-    low, high = _LOWEST_CORNER, float(tone.hertz[q])
+    above = np.geomspace(float(tone.hertz[q]), _HIGHEST_BAND * float(tone.hertz[q]), _BAND_STEPS)
+    sizes = [size(float(hertz)) for hertz in above]
+    largest = max(sizes)
+    target = largest / np.sqrt(2.0)
+    low, high = _LOWEST_CORNER, float(above[sizes.index(largest)])
     if size(low) >= target:
         return None
     for _ in range(_HALVINGS):

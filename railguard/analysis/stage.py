@@ -215,11 +215,13 @@ class Divider(msgspec.Struct, frozen=True):
 
     resistance  of the tap, ohm
     bypass      capacitance from the tap to a return, F; 0: none
+    unvalued    designator of a capacitor there whose value is not known, or ""
     """
 
     elements: tuple[str, ...]
     resistance: float
     bypass: float = 0.0
+    unvalued: str = ""
 
 
 class Pin(msgspec.Struct, frozen=True, kw_only=True):

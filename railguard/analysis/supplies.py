@@ -158,7 +158,8 @@ def _feed(
             )
         for element, other in around.get(at, ()):
             if element.kind in ("V", "E", "H", "battery", "B"):
-                if sourced is None and _delivers(element):
+                grounded = element.kind == "V" and other == GROUND and _is_stated(element)
+                if sourced is None and (grounded or _delivers(element)):
                     sourced = Feed(
                         net=net, level=None, basis="netlist", origin=element.designator,
                         source=element.designator, series=series, at=at,
@@ -173,6 +174,10 @@ def _feed(
     if found is not None:
         return found
     return Feed(net=net, level=None, basis="assumed", origin="", held=False, at=net)
+
+
+def _is_stated(element: Element) -> bool:
+    return element.source is not None and element.source.stated
 
 
 def _delivers(element: Element) -> bool:

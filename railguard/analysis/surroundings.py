@@ -11,7 +11,7 @@ from collections.abc import Iterable
 import msgspec
 import numpy as np
 
-from railguard.analysis.dcpaths import DcMap, leaves_sheet
+from railguard.analysis.dcpaths import DcMap, is_capacitor, leaves_sheet
 from railguard.analysis.network import Network
 from railguard.analysis.ranges import Answers
 from railguard.analysis.recognise import Amplifier
@@ -206,7 +206,7 @@ def heaviest_load(amplifier: Amplifier, ways: Ways) -> str:
 def divider_at(net: str, ways: Ways, rails: frozenset[str]) -> Divider | None:
     """Return the resistive divider between a rail and a return that sets a net's level."""
     up, down = [], []
-    bypass = 0.0
+    bypass, unknown = 0.0, ""
     for element in ways.around.get(net, ()):
         if len(element.nets) < 2:
             continue
@@ -216,13 +216,14 @@ def divider_at(net: str, ways: Ways, rails: frozenset[str]) -> Divider | None:
                 up.append(element)
             elif other == GROUND:
                 down.append(element)
-        elif element.kind == "C" and element.value and (other == GROUND or other in rails):
-            bypass += element.value
+        elif is_capacitor(element) and (other == GROUND or other in rails):
+            bypass += element.value or 0.0
+            unknown = unknown or ("" if element.value else element.designator)
     sides = [*up, *down]
     if not up or len(sides) < 2:
         return None
     siemens = sum(1.0 / (e.value or np.inf) for e in sides)
-    return Divider(tuple(e.designator for e in sides), 1.0 / siemens, bypass)
+    return Divider(tuple(e.designator for e in sides), 1.0 / siemens, bypass, unknown)
 
 
 def series_resistance(net: str, dc: DcMap, limit: int = 200) -> float | None:

@@ -27,7 +27,7 @@ def most_current(amplifier: Amplifier, ways: Ways, supply: Supply) -> float | No
         if element.kind == "R" and element.value and element.value > 0:
             amps += supply.total / element.value
         elif element.kind == "C":
-            continue  # no direct current; drive-capacitive judges edges
+            continue  # no direct current
         elif amplifier.output in _drawing(element.kind, element.nets):
             return None
     return amps

@@ -54,7 +54,7 @@ def _is_driven(amplifier: Amplifier, ways: Ways, rails: frozenset[str]) -> bool:
         return False
     for net, other in ((amplifier.plus, amplifier.minus), (amplifier.minus, amplifier.plus)):
         around = Around(net, amplifier, ways, skip=other)
-        if around.currents or any(n not in rails for n in around.driven):
+        if around.currents or any(n not in rails | {amplifier.output} for n in around.driven):
             return True
         if any(e.kind == "V" and e.source is not None for e in ways.around.get(net, ())):
             return True

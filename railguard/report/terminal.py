@@ -41,9 +41,7 @@ _MARKS: dict[Role, str] = {
     "asked-unknown": "bold",
 }
 _REASONS = {rule.name: rule.reason for rule in RULES}
-_OUTPUT_FAMILIES = frozenset(
-    {"headroom-output", "headroom-stuck", "headroom-load", "drive-current"}
-)
+_OUTPUT_FAMILIES = frozenset({"headroom-output", "headroom-load", "drive-current"})
 
 
 def terminal(review: Review, stream: IO[str] | None) -> bytes:

@@ -251,7 +251,7 @@ def level_wrong(base: Base) -> Fault | None:
         return None
     cards = base.with_cards(VREF=f"VREF ref 0 {a.positive * 0.99:.4g}")
     last = base.roles["last"]
-    rules = ("headroom-output", "headroom-input", "bias-level", "headroom-stuck")
+    rules = ("headroom-output", "headroom-input", "bias-level")
     return Fault(cards, rules, (base.main, last, base.roles.get("spare", last)), True)
 
 
@@ -331,7 +331,7 @@ def capacitor_at_slope(base: Base) -> Fault | None:
         VIN=f"VIN in 0 SIN({a.middle:g} {a.peak / 2:.4g} {hertz:.4g})",
         RO="RO out line 10", CO=f"CO line 0 {farads:.4g}",
     )  # fmt: skip
-    rules = ("drive-current", "drive-capacitive")
+    rules = ("drive-current",)
     return Fault(cards, rules, (base.main,))
 
 
@@ -628,7 +628,7 @@ def capacitor_at_output(base: Base) -> Fault | None:
     if base.name not in ("level_amplifier", "probe_buffer", "level_inverter", "reference_buffer"):
         return None
     cards = {**base.cards, "CO": "CO out 0 100n"}
-    rules = ("stability-load-capacitance", "stability-phase-margin", "drive-capacitive")
+    rules = ("stability-load-capacitance", "stability-phase-margin")
     return Fault(cards, rules, (base.main,))
 
 

@@ -50,15 +50,14 @@ def _fault(stage: Stage) -> tuple[Severity, str] | None:
             "its inputs are tied apart without feedback, so its output stands at a rail; some "
             "makers allow that, and it may draw more current"
         )
-    reach, level = stage.inputs.available, plus.level
-    if level is None or reach.low is None or reach.high is None:
+    typical, sure, level = stage.inputs.available, stage.inputs.guaranteed, plus.level
+    low = typical.low if typical.low is not None else sure.low
+    high = typical.high if typical.high is not None else sure.high
+    if level is None or low is None or high is None or low <= level <= high:
         return None
-    if not reach.low <= level <= reach.high:
-        return "minor", (
-            f"its input at {si(level, 'V')} is outside the {si(reach.low, 'V')} to "
-            f"{si(reach.high, 'V')} it takes"
-        )
-    return None
+    return "minor", (
+        f"its input at {si(level, 'V')} is outside the {si(low, 'V')} to {si(high, 'V')} it takes"
+    )
 
 
 def _remedy(stage: Stage) -> str:

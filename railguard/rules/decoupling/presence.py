@@ -1,8 +1,8 @@
 """Whether a rail is decoupled, at its pins, to its return, often enough."""
 
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator
 
-from railguard.analysis.stage import Design, Rail
+from railguard.analysis.stage import Capacitor, Design, Rail
 from railguard.notices import NotChecked
 from railguard.rules.compose import finding
 from railguard.rules.decoupling.capacitors import (
@@ -33,10 +33,9 @@ def judge_absent(rail: Rail, limits: Limits, design: Design) -> Iterator[Outcome
     """Judge whether a rail has any decoupling capacitor at all."""
     if not is_bare(rail, limits):
         return
-    unknown = [c.designator for c in rail.decoupling if c.farads is None]
-    if unknown:
-        why = f"the value of {listed(unknown)} on rail {rail.net} could not be read"
-        yield NotChecked(rail.net, "decoupling-absent", why, f"give {unknown[0]} a value")
+    unvalued = _unvalued((*rail.decoupling, *rail.upstream, *rail.across))
+    if unvalued:
+        yield _no_value(rail, unvalued, "decoupling-absent")
         return
     if design.kind == "bench":
         yield from _bench(rail, limits, design)
@@ -57,6 +56,15 @@ def judge_absent(rail: Rail, limits: Limits, design: Design) -> Iterator[Outcome
         source=PER_PIN_SOURCE,
         location=rail.location,
     )
+
+
+def _unvalued(capacitors: Iterable[Capacitor]) -> tuple[str, ...]:
+    return tuple(c.designator for c in capacitors if c.farads is None)
+
+
+def _no_value(rail: Rail, unvalued: tuple[str, ...], rule: str) -> NotChecked:
+    why = f"the value of {listed(unvalued)} on rail {rail.net} could not be read"
+    return NotChecked(rail.net, rule, why, f"give {unvalued[0]} a value")
 
 
 def _other_sizes(rail: Rail) -> str:
@@ -112,6 +120,10 @@ def judge_few(rail: Rail, limits: Limits, design: Design) -> Iterator[Outcome]:
         return
     needed = len(rail.packages) * limits["per-package"]
     if len(good) >= needed * (1 - ROUNDING):
+        return
+    unvalued = _unvalued(at_pins(rail))
+    if len(good) + len(unvalued) >= needed * (1 - ROUNDING):
+        yield _no_value(rail, unvalued, "decoupling-few")
         return
     missing = max(1, round(needed - len(good)))
     yield finding(

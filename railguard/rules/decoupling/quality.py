@@ -1,8 +1,10 @@
 """What else capacitors on rails and references should be: large, small, rated, there."""
 
+import math
 from collections.abc import Iterator
 
 from railguard.analysis.stage import Capacitor, Design, Package, Rail, Stage
+from railguard.notices import NotChecked
 from railguard.rules.compose import channels_of, finding, stage_finding
 from railguard.rules.decoupling.capacitors import (
     BULK_SOURCE,
@@ -141,15 +143,25 @@ def judge_reference(stage: Stage, limits: Limits, design: Design) -> Iterator[Ou
     switches = stage.use in ("comparator", "oscillator")
     if stage.use == "unused" or switches or divider is None or design.kind == "bench":
         return
-    if divider.bypass > 0:
+    corner = 1 / (2 * math.pi * divider.resistance * divider.bypass) if divider.bypass else None
+    if corner is not None and corner <= limits["corner"]:
         return
+    if divider.unvalued:
+        why = f"the value of {divider.unvalued} at the divider's tap could not be read"
+        add = f"give {divider.unvalued} a value"
+        yield NotChecked(stage.designator, "decoupling-reference", why, add)
+        return
+    small = "without a capacitor: what the rail carries reaches the output"
+    if corner is not None:
+        small = f"with only {si(divider.bypass, 'F')}: what the rail carries below "
+        small += f"{si(corner, 'Hz')} reaches the output"
     yield stage_finding(
         "decoupling-reference",
         stage,
         "minor",
         f"The level of {stage.schematic}'s non-inverting input comes from the divider "
-        f"{listed(divider.elements)} ({si(divider.resistance, 'Ω')}) straight from a rail, without "
-        "a capacitor: what the rail carries reaches the output.",
+        f"{listed(divider.elements)} ({si(divider.resistance, 'Ω')}) straight from a rail, "
+        f"{small}.",
         nets=(stage.inputs.plus.net,),
         demand=divider.resistance,
         unit="Ω",
@@ -169,6 +181,15 @@ REFERENCE = Rule(
     reason="A bare divider passes half of what the rail carries; no supply rejection helps there.",
     source="Analog Devices AN-581, opening section",
     silent="Comparators and oscillators, whose thresholds may well follow the rail; bench decks.",
+    limits=(
+        Limit(
+            name="corner",
+            default=1e3,
+            unit="Hz",
+            meaning="highest corner of divider and capacitor that counts as bypassed",
+            source=NO_SOURCE,
+        ),
+    ),
     judge=judge_reference,
 )
 

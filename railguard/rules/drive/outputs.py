@@ -5,14 +5,14 @@ from collections.abc import Iterator
 
 from railguard.analysis.stage import Design, Stage
 from railguard.circuit.model import GROUND, Element
-from railguard.rules.compose import finding, stage_finding
+from railguard.rules.compose import finding, missing_figure, open_point, stage_finding
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.remedies import fit
-from railguard.rules.severity import TABLE, evidence
-from railguard.rules.wording import NO_SOURCE, listed, origin
+from railguard.rules.severity import evidence
+from railguard.rules.wording import NO_SOURCE, device, listed, origin
 from railguard.rules.working import NO_SUPPLY, standstill
 from railguard.units import si
-from railguard.words import Basis, Severity
+from railguard.words import Severity
 
 # --- drive-joined
 
@@ -122,59 +122,60 @@ TIED = Rule(
 
 
 def judge_capacitive(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome]:
-    """Judge the current a capacitor at the output takes while the output slews."""
+    """Judge how fast an output slews into its capacitance where no signal tells how fast it must.
+
+    Where one is known, the capacitor's current is in the solved one, which drive-current judges.
+    """
     farads, family = stage.current.load_capacitance, stage.family
-    slew = stage.output.slew
-    if not farads or not slew or stage.use == "unused":
+    if not farads or stage.output.slew or stage.use == "unused":
         return
-    wanted = farads * slew
-    counted = max(stage.current.demand_source or 0.0, stage.current.demand_sink or 0.0)
-    if counted >= limits["counted-share"] * wanted:
-        return  # the solved current has the capacitor's in it, and drive-current judges that
-    given = stage.current.available_source
-    if given is None or wanted <= given:
+    gap = None
+    if family is not None and family.slew_rate.best is None:
+        gap = missing_figure(stage, "slew rate", "slew_rate")
+    yield from open_point("drive-capacitive", stage, ("device",), gap)
+    gives = [g for g in (stage.current.available_source, stage.current.available_sink) if g]
+    if family is None or gap is not None or not gives:
         return
-    basis: Basis = "practice" if family is None else stage.current.source.guaranteed_basis
+    figure, given = family.slew_rate, min(gives)
+    rate = figure.typical if figure.typical is not None else figure.guaranteed
+    wanted = farads * (rate or 0.0)
+    if wanted <= given * limits["factor"]:
+        return
     yield stage_finding(
         "drive-capacitive",
         stage,
-        TABLE["guaranteed"][evidence(basis)],
-        f"{stage.schematic} must charge {si(farads, 'F')} at {si(slew, 'V/s')}, which takes "
-        f"{si(wanted, 'A')}; it gives {si(given, 'A')} ({origin(basis)}), so it slews at "
-        f"{si(given / farads, 'V/s')}.",
+        "remark",
+        f"{stage.schematic} drives {si(farads, 'F')}: at the {si(rate, 'V/s')} of "
+        f"{device(stage)} that takes {si(wanted, 'A')}, and it gives {si(given, 'A')} "
+        f"({origin(stage.current.source.guaranteed_basis)}), so a step goes at "
+        f"{si(given / farads, 'V/s')} only. No signal is known that would tell whether that does.",
         nets=(stage.output.net,),
         demand=wanted,
         limit=given,
         margin=given - wanted,
         unit="A",
-        basis=("netlist", basis),
-        remedy=f"Fit {si(fit(max(1.0, _series(stage, given)), 'up'), 'Ω')} between the output and "
-        "the capacitor, or lower the capacitance.",
+        basis=("netlist", stage.current.source.guaranteed_basis),
+        remedy="State the signal under [signals], or lower the capacitance to "
+        f"{si(fit(given / (rate or 1.0), 'down'), 'F')}.",
         source="i = C dv/dt",
     )
-
-
-def _series(stage: Stage, given: float) -> float:
-    """Return the resistance that holds the charging current at the full swing, ohm."""
-    span = stage.output.demand.span or 1.0
-    return span / given if given else math.inf
 
 
 CAPACITIVE = Rule(
     name="drive-capacitive",
     family="drive",
     looks_at="stage",
-    judges="The current a capacitor at the output takes at the demanded slope, where the solved "
-    "current does not hold it.",
+    judges="Whether the capacitance at an output holds its steps below the device's own slew rate, "
+    "where no signal is known.",
     reason="i = C dv/dt: 1 nF at 13 V/µs asks for 13 mA.",
     source="derived",
-    silent="Where the solved output current has the capacitor's in it: drive-current judges that.",
+    silent="Where a signal is known: its current into the capacitor is judged by drive-current.",
     limits=(
         Limit(
-            name="counted-share",
-            default=0.9,
+            name="factor",
+            default=1.0,
             unit="",
-            meaning="share of the capacitor's current from which the solved one holds it",
+            meaning="current at the full slew rate, as a multiple of what the device gives",
             source=NO_SOURCE,
         ),
     ),

@@ -2,9 +2,7 @@
 
 from collections.abc import Iterator
 
-import msgspec
-
-from railguard.analysis.stage import Bound, Design, Stage
+from railguard.analysis.stage import Design, Stage
 from railguard.notices import NotChecked
 from railguard.rules.compose import (
     finding,
@@ -12,10 +10,9 @@ from railguard.rules.compose import (
     open_point,
     stage_finding,
 )
-from railguard.rules.headroom.ranges import cap_of
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.remedies import fit
-from railguard.rules.severity import ROUNDING, TABLE, breach, evidence
+from railguard.rules.severity import ROUNDING, TABLE, evidence
 from railguard.rules.wording import NO_SOURCE, capital, cited, device, origin
 from railguard.rules.working import standstill
 from railguard.settings.model import Load
@@ -145,62 +142,6 @@ DIFFERENTIAL = Rule(
         ),
     ),
     judge=judge_differential,
-)
-
-
-# --- headroom-stuck
-
-
-def judge_stuck(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome]:
-    """Judge the output's DC level where no signal is known: whether it rests within its range."""
-    output = stage.output
-    unknown = output.high.demand is None and output.low.demand is None
-    if stage.use != "linear" or not unknown or output.level is None or standstill(stage):
-        return
-    for bound in (output.high, output.low):
-        resting: Bound = msgspec.structs.replace(
-            bound, demand=output.level, level=output.level, span=None, stated=None, default=None
-        )
-        broken = breach(resting, scale=stage.supply.total, cap=cap_of(stage))
-        if broken is None:
-            continue
-        end = "upper" if bound.upper else "lower"
-        yield stage_finding(
-            "headroom-stuck",
-            stage,
-            broken.severity,
-            f"{stage.schematic}'s output rests at {si(output.level, 'V')} without any signal, "
-            f"beyond the {si(broken.limit, 'V')} ({origin(broken.limit_basis)}) it reaches at its "
-            f"{end} end: it is stuck there.",
-            nets=(output.net,),
-            demand=broken.demand,
-            limit=broken.limit,
-            margin=broken.margin,
-            unit="V",
-            basis=broken.basis,
-            remedy=f"Bring the level to the middle of the rails, "
-            f"{si(_middle(stage), 'V')}, by the reference at its non-inverting input.",
-            source=cited(stage, broken.limit_basis),
-        )
-        return
-
-
-def _middle(stage: Stage) -> float | None:
-    supply = stage.supply
-    if supply.positive is None or supply.negative is None:
-        return None
-    return (supply.positive + supply.negative) / 2
-
-
-STUCK = Rule(
-    name="headroom-stuck",
-    family="headroom",
-    looks_at="stage",
-    judges="Whether an output rests within its range where no signal is known that moves it.",
-    reason="An output that stands at its limit at rest follows no signal at all.",
-    source="the device's data sheet",
-    silent="Where a signal is known: headroom-output judges the level with it.",
-    judge=judge_stuck,
 )
 
 
@@ -335,4 +276,4 @@ LOAD = Rule(
     judge=judge_load,
 )
 
-RULES = (REVERSAL, DIFFERENTIAL, STUCK, OFFSET, LOAD)
+RULES = (REVERSAL, DIFFERENTIAL, OFFSET, LOAD)

@@ -88,6 +88,8 @@ def judge_output(stage: Stage, limits: Limits, design: Design) -> Iterator[Outco
         return
     bound, broken = sides[0]
     messages = [_output_message(stage, bound, broken)]
+    if _is_stuck(stage, bound, broken):
+        messages.append("All of its range lies beyond, so it is stuck there and passes no signal.")
     messages += [_other_end(b, x) for b, x in sides[1:]]
     yield breach_finding(
         "headroom-output",
@@ -99,6 +101,14 @@ def judge_output(stage: Stage, limits: Limits, design: Design) -> Iterator[Outco
         remedy=_output_remedy(stage, bound, broken, design, both=len(sides) == 2),
         source=sheet(stage, broken),
     )
+
+
+def _is_stuck(stage: Stage, bound: Bound, broken: Breach) -> bool:
+    """Tell whether no part of the demanded range can be reached."""
+    nearest = stage.output.demand.low if bound.upper else stage.output.demand.high
+    if nearest is None or broken.broken not in ("absolute", "typical"):
+        return False
+    return nearest > broken.limit if bound.upper else nearest < broken.limit
 
 
 def _output_message(stage: Stage, bound: Bound, broken: Breach) -> str:

@@ -6,10 +6,11 @@ from collections.abc import Callable, Iterator
 import msgspec
 
 from railguard.analysis.stage import Design
+from railguard.circuit.model import Element
 from railguard.notices import Problem
 from railguard.rules.finding import Finding
 from railguard.rules.protocol import Limits, Outcome, Rule
-from railguard.rules.wording import NO_SOURCE
+from railguard.rules.wording import NO_SOURCE, listed
 from railguard.units import si
 from railguard.words import Kind, Severity
 
@@ -27,6 +28,40 @@ class _Topic(msgspec.Struct, frozen=True):
     severity: Severity = "major"
     on_board: Severity | None = None
     source: str = SPICE_SOURCE
+    silent: str = "What cannot be decided from the card alone."
+    beside: Callable[[Design], Iterator[Outcome]] | None = None
+
+
+def undefined(design: Design) -> Iterator[Outcome]:
+    """Name what a deck made to simulate calls and defines nowhere, once for all of it."""
+    if design.kind == "board" or any(p.rule == "netlist-include" for p in design.problems):
+        return
+    known = {s.designator for s in design.stages}
+    known |= {u.designator for u in design.unrecognised if u.sort != "unknown"}
+    defined = (*design.circuit.models, *design.circuit.subcircuits)
+    names = {key.rpartition(".")[2] for key in defined}
+    lost: dict[str, list[Element]] = {}
+    for element in design.circuit.elements:
+        word = element.model.split()[0] if element.model.split() else ""
+        if element.kind not in ("D", "Q", "J", "M", "X") or not word or not element.fitted:
+            continue
+        if element.designator not in known and word.lower() not in names:
+            lost.setdefault(word, []).append(element)
+    if not lost:
+        return
+    told = listed(f"{word} ({listed(e.designator for e in users)})" for word, users in lost.items())
+    first = next(iter(lost.values()))[0]
+    yield Finding(
+        rule="netlist-model",
+        family="netlist",
+        severity="minor" if design.kind == "bench" else "remark",
+        designators=tuple(e.designator for users in lost.values() for e in users),
+        basis=("netlist",),
+        message=f"The deck calls {told} and defines none of it.",
+        remedy="Include the models; what hangs on them is not checked without.",
+        source=SPICE_SOURCE,
+        location=first.location,
+    )
 
 
 _TOPICS = (
@@ -125,6 +160,9 @@ _TOPICS = (
         "A simulator stops there; a review has to do without what the model would say.",
         "major",
         "minor",
+        silent="Boards, whose netlists seldom carry models; devices the catalogue knows; decks an "
+        "include of which is missing.",
+        beside=undefined,
     ),
     _Topic(
         "include",
@@ -188,6 +226,8 @@ def _judge(topic: _Topic) -> Callable[[Design, Limits, Design], Iterator[Outcome
         for problem in subject.problems:
             if problem.rule == name:
                 yield finding_of(problem, _severity(topic, problem, subject.kind), topic.source)
+        if topic.beside is not None:
+            yield from topic.beside(subject)
 
     return judge
 
@@ -266,8 +306,8 @@ RULES = tuple(
         source=topic.source,
         silent="Minor on a board, where the value that is bought is the one meant, major on a "
         "bench."
-        if topic.on_board == "minor"
-        else "",
+        if topic.on_board == "minor" and topic.beside is None
+        else topic.silent,
         judge=_judge(topic),
     )
     for topic in _TOPICS

@@ -3,14 +3,16 @@
 import pytest
 
 from railguard.analysis.stage import Current, Range
+from railguard.devices.model import Figure
 from railguard.rules.drive.outputs import ABOVE_RAIL, CAPACITIVE, JOINED, TIED
 from tests.rules.stages import (
     ELEMENTS,
-    amps,
+    FAMILY,
     changed,
     design,
     findings,
     inputs,
+    open_points,
     outcomes,
     pin,
     single,
@@ -68,36 +70,40 @@ def test_an_output_on_ground():
     assert "held by ground" in found.message
 
 
-def charging(farads, slew=1e6, counted=1e-3, available=10e-3):
-    """Make a stage with a capacitor at its output."""
+def charging(farads, slew=None, available=10e-3, **fields):
+    """Make a stage with a capacitor at its output; its device slews at 1 V/µs."""
     current = Current(
-        source=amps(), sink=amps(), demand_source=counted, demand_sink=counted,
-        available_source=available, load_capacitance=farads,
+        available_source=available, available_sink=available, load_capacitance=farads
     )  # fmt: skip
-    return stage(current=current, output=changed(stage().output, slew=slew))
+    family = changed(FAMILY, slew_rate=Figure(typical=1e6))
+    output = changed(stage().output, slew=slew)
+    return stage(**{"current": current, "output": output, "family": family, **fields})
 
 
 def test_a_small_capacitor_is_quiet():
-    """What it takes is within what the output gives; at the limit as well."""
+    """What it takes at the device's own slope is within what the output gives; at it as well."""
     assert outcomes(CAPACITIVE, charging(1e-9)) == []
     assert outcomes(CAPACITIVE, charging(10e-9)) == []
 
 
-def test_a_large_capacitor_slows_the_output():
-    """Twenty nanofarads at 1 V/µs take 20 mA of 10."""
+def test_a_large_capacitor_slows_steps_that_nobody_states():
+    """Twenty nanofarads at 1 V/µs take 20 mA of 10: half the slope is left."""
     (found,) = findings(CAPACITIVE, charging(20e-9))
-    assert (found.severity, found.unit) == ("major", "A")
+    assert (found.severity, found.unit) == ("remark", "A")
     assert found.demand == pytest.approx(20e-3)
+    assert "0.5 V/µs" in found.message
 
 
-def test_a_current_already_counted_is_left_to_drive_current():
-    """Where the solved current holds the capacitor's nothing is told twice."""
-    assert outcomes(CAPACITIVE, charging(20e-9, counted=20e-3)) == []
+def test_a_known_signal_is_left_to_drive_current():
+    """The solved current holds the capacitor's, so nothing is told twice."""
+    assert outcomes(CAPACITIVE, charging(20e-9, slew=1e5)) == []
 
 
-def test_an_unknown_slope_or_current_is_not_judged():
-    """Without a slope or a known current nothing can be said."""
-    assert outcomes(CAPACITIVE, charging(20e-9, slew=None)) == []
+def test_an_unknown_slew_rate_is_not_checked():
+    """Of a device without one, or of a device nobody knows, it is listed as missing."""
+    unlisted = charging(20e-9, family=changed(FAMILY, slew_rate=Figure()))
+    assert len(open_points(CAPACITIVE, unlisted)) == 1
+    assert len(open_points(CAPACITIVE, charging(20e-9, family=None))) == 1
     assert outcomes(CAPACITIVE, charging(20e-9, available=None)) == []
 
 

@@ -2,8 +2,8 @@
 
 import pytest
 
-from railguard.analysis.stage import Loop, Output, Range
-from railguard.rules.headroom.limits import DIFFERENTIAL, LOAD, OFFSET, REVERSAL, STUCK
+from railguard.analysis.stage import Range
+from railguard.rules.headroom.limits import DIFFERENTIAL, LOAD, OFFSET, REVERSAL
 from railguard.settings.model import Load, Settings
 from tests.rules.stages import (
     FAMILY,
@@ -73,35 +73,6 @@ def test_an_unlisted_differential_limit_is_not_checked():
     (point,) = open_points(DIFFERENTIAL, apart(5.0))
     assert "differential_input" in point.add
     assert len(open_points(DIFFERENTIAL, apart(5.0, family=None))) == 1
-
-
-def resting(level, **fields):
-    """Make a stage without a known signal that rests at some level."""
-    high = bound(True, level=level, typical=10.5, guaranteed=9.5, absolute=12.0)
-    low = bound(False, level=level, typical=-10.5, guaranteed=-9.5, absolute=-12.0)
-    return stage(output=Output(net="out", level=level, high=high, low=low), **fields)
-
-
-def test_a_level_inside_is_quiet():
-    """An output that rests where it is sure to reach draws nothing."""
-    assert outcomes(STUCK, resting(0.0)) == []
-    assert outcomes(STUCK, resting(9.5)) == []
-
-
-def test_an_output_stuck_at_its_end():
-    """An output that rests beyond its range follows nothing."""
-    (found,) = findings(STUCK, resting(11.0))
-    assert found.severity == "critical"
-    assert "rests at 11 V without any signal" in found.message
-    (lower,) = findings(STUCK, resting(-13.0))
-    assert "lower end" in lower.message
-
-
-def test_stuck_is_silent_where_the_signal_or_the_level_is_another_matter():
-    """With a known signal, without a level, or in a broken loop it says nothing."""
-    assert outcomes(STUCK, stage()) == []
-    assert outcomes(STUCK, resting(None)) == []
-    assert outcomes(STUCK, resting(11.0, loop=Loop(dc="positive"))) == []
 
 
 def drifting(volts, **fields):
