@@ -25,8 +25,9 @@ LEAD = 0.8
 ELEMENT = 2.2
 """Length of one element with its leads, in units of the drawing."""
 
-PITCH = 2.0
-"""Room to the right of a vertical element for its name and value."""
+GAP = 0.8
+"""Room between the texts beside a vertical element and whatever stands next, its own half width
+included."""
 
 ABOVE = 0.47
 """Distance of an element's name and value from its axis."""
@@ -211,7 +212,7 @@ class _Drawing:
                 starts.append((x, node))
                 self.dot((x, y))
             for shunt in node.shunts:
-                x -= PITCH
+                x -= _room_right(shunt)
                 self.shunt(shunt, (x, y))
                 self.dot((x, y))
             self.line((start, y), (x, y))
@@ -269,12 +270,13 @@ class _Drawing:
         if low < high:
             self.line((OUT, low), (OUT, high))
             self.dot((OUT, 0))
-        x = OUT
+        x, step = OUT, 0.0
         for load in self.wired.loads:
-            begin, x = x, x + 1.2 if x == OUT else x + PITCH
+            begin, x = x, x + max(step, _half_end(load) + 0.3, 1.2)
             self.line((begin, 0), (x, 0))
             self.dot((x, 0))
             self.shunt(load, (x, 0))
+            step = _room_right(load)
         self.line((x, 0), (x + 0.9, 0))
         self.dot((x + 0.9, 0), open_=True)
         self.text(short(self.stage.output.net), (x + 1.1, 0))
@@ -350,6 +352,18 @@ def _depth(nodes: Sequence[Node]) -> float:
     """Return how far down the longest shunt of a chain reaches, with what it ends on."""
     longest = max((len(s.elements) for node in nodes for s in node.shunts), default=0)
     return longest * ELEMENT * 0.8 + 0.6 if longest else 0.0
+
+
+def _room_right(branch: Branch) -> float:
+    """Return what a vertical branch's names and values take to its right."""
+    texts = [t for e in branch.elements for t in (e.designator, value_of(e))]
+    longest = max((len(short(text)) for text in texts), default=0)
+    return max(GAP + longest * LETTER / POINTS_A_UNIT, _half_end(branch) + 0.3)
+
+
+def _half_end(branch: Branch) -> float:
+    """Return half the width of the net's name under a vertical branch."""
+    return 0.0 if branch.end == GROUND else len(short(branch.end)) * LETTER / POINTS_A_UNIT / 2
 
 
 def _between(start: Point, end: Point, share: float) -> Point:

@@ -71,6 +71,7 @@ class Nets:
     def __init__(self, design: Design) -> None:
         self.on: dict[str, list[Element]] = defaultdict(list)
         self.names = {stage.designator: stage.schematic for stage in design.stages}
+        self.amplifiers = {name for p in design.packages for name in (p.designator, *p.channels)}
         self.rails = {rail.net for rail in design.rails}
         self.outputs = {stage.output.net for stage in design.stages}
         self.driven = set(self.outputs)
@@ -192,10 +193,10 @@ class _Walk:
 
     def goes_further(self, net: str) -> bool:
         """Tell whether a chain's last net has more to it than is drawn, so that it needs a name."""
-        drawn = self.used | {self.stage.designator}
-        return net in self.nets.driven or any(
-            element.designator not in drawn for element in self.nets.on.get(net, ())
-        )
+        drawn = self.used | self.nets.amplifiers
+        if net in self.nets.driven or self.nets.pins.get(net, set()) - {self.stage.designator}:
+            return True
+        return any(e.designator not in drawn for e in self.nets.on.get(net, ()))
 
     def goes_on(self, net: str) -> bool:
         """Tell whether a net behind a chain's element is a node of its own."""
@@ -237,11 +238,17 @@ class _Walk:
             ours = net == self.out or net not in self.nets.outputs
             if net in self.nets.held or net in self.nets.rails or not ours:
                 continue
-            for element in self.nets.on.get(net, ()):
-                if element.designator in self.used or element.designator == self.stage.designator:
-                    continue
-                name = self.nets.names.get(element.designator, element.designator)
-                left[f"{name} at {net}"] = None
+            names = [
+                element.designator
+                for element in self.nets.on.get(net, ())
+                if element.designator not in self.used | self.nets.amplifiers
+            ]
+            names += [
+                self.nets.names[other]
+                for other in sorted(self.nets.pins.get(net, ()))
+                if other != self.stage.designator
+            ]
+            left.update((f"{name} at {net}", None) for name in names)
         return tuple(left)
 
 

@@ -17,6 +17,7 @@ from railguard.reviewing import review
 from railguard.units import si
 from tests.report.html.test_document import HOSTILE, ROOT, SOUND, STATION
 
+BOARD = ROOT / "fixtures" / "board" / "gauge_board.cir"
 SUPPLY = "VP vp 0 12\nVN vn 0 -12\n.end\n"
 
 
@@ -230,3 +231,20 @@ def test_plots_hold_no_number_that_is_none():
             if picture is not None:
                 found = re.findall(r"-?[\d.]+|nan|inf", str(svg.markup(picture)))
                 assert all(math.isfinite(float(n)) for n in found if n.strip("."))
+
+
+@pytest.mark.parametrize("path", [STATION, BOARD, *SOUND], ids=lambda p: p.stem)
+def test_no_text_covers_another(path):
+    """Names and values stay apart, whatever hangs on a stage's nets."""
+    for stage, wired, _ in stages_of(path):
+        boxes = []
+        for node in drawing.drawn(stage, wired).iter("text"):
+            width = 6.0 * len(node.text)
+            share = {"start": 0.0, "middle": 0.5, "end": 1.0}[node.get("text-anchor")]
+            left, base = float(node.get("x")) - share * width, float(node.get("y"))
+            boxes.append((left, base - drawing.FONT * 0.75, left + width, base, node.text))
+        for one, other in itertools.combinations(boxes, 2):
+            apart = (
+                one[2] <= other[0] or other[2] <= one[0] or one[3] <= other[1] or other[3] <= one[1]
+            )
+            assert apart, (stage.designator, one[4], other[4])
