@@ -85,11 +85,16 @@ class DesignReview(msgspec.Struct, frozen=True, kw_only=True):
 
 
 class Review(msgspec.Struct, frozen=True, kw_only=True):
-    """What was found in all decks of one run. `findings` are those about the run itself."""
+    """What was found in all decks of one run.
+
+    findings     those about the run itself
+    extra_rules  rules of other packages that ran beside the house's own
+    """
 
     designs: tuple[DesignReview, ...]
     settings: Settings
     findings: tuple[Finding, ...] = ()
+    extra_rules: tuple[Rule, ...] = ()
 
     @property
     def held(self) -> bool:
@@ -150,7 +155,10 @@ def review(
         if step is not None:
             step()
     return Review(
-        designs=tuple(designs), settings=run.first or Settings(), findings=run.leftovers()
+        designs=tuple(designs),
+        settings=run.first or Settings(),
+        findings=run.leftovers(),
+        extra_rules=extra.rules,
     )
 
 

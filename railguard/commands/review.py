@@ -8,7 +8,7 @@ from typing import get_args
 import click
 
 from railguard.analysis.solution import Options
-from railguard.commands.deliver import write_whole
+from railguard.commands.deliver import check_places, write_whole
 from railguard.commands.progress import progress
 from railguard.errors import UsageError
 from railguard.report.formats import FORMATS, render
@@ -91,6 +91,9 @@ def review(  # one parameter an option: click hands them over by name
     """
     wanted = [_wanted(text) for text in reports] or [("terminal", None)]
     _refuse_two_in_one(wanted)
+    check_places(
+        [place for _, place in wanted if place is not None], [Path(name) for name in files]
+    )
     if root is not None and not root.is_dir():
         raise UsageError(f"{root} is no folder.", remedy="--root names one that holds the decks.")
     changes: dict[str, object] = {}
@@ -143,17 +146,19 @@ def _day(text: str | None) -> dt.date | None:
 
 
 def _wanted(text: str) -> tuple[str, Path | None]:
-    name, _, place = text.partition("=")
+    name, sign, place = text.partition("=")
     if name not in FORMATS:
         raise UsageError(
             f'There is no report format "{name}".', remedy=f"Choose one of {', '.join(FORMATS)}."
         )
+    if sign and not place:
+        raise UsageError(f"--report {text} names no file.", remedy=f"Write --report {name}=FILE.")
     return name, Path(place) if place else None
 
 
 def _refuse_two_in_one(wanted: list[tuple[str, Path | None]]) -> None:
     """Refuse two reports in one place: neither could be read."""
-    places = [place.absolute() if place is not None else None for _, place in wanted]
+    places = [place.resolve() if place is not None else None for _, place in wanted]
     for place in places:
         if places.count(place) > 1:
             where = f"go to {place}" if place is not None else "go to the screen"

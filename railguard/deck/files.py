@@ -79,7 +79,11 @@ def read_deck(
     return _Reader(bounds or Bounds(), files.real(root or path.parent), files).main(path)
 
 
-def deck_from_text(text: str, name: str = "<text>", bounds: Bounds | None = None) -> Deck:
+IN_MEMORY = "<text>"
+"""The path of a netlist that came as text, not as a file."""
+
+
+def deck_from_text(text: str, name: str = IN_MEMORY, bounds: Bounds | None = None) -> Deck:
     """Take a netlist's text; includes are refused, because a text has no folder."""
     reader = _Reader(bounds or Bounds(), None, DISK)
     return reader.deck(name, text, hashlib.sha256(text.encode()).hexdigest())

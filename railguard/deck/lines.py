@@ -62,8 +62,9 @@ class Line(msgspec.Struct, frozen=True, gc=False):
 
     @property
     def location(self) -> Location:
-        """The place of the whole card."""
-        return Location(self.file, self.number, self.column, len(self.text))
+        """The place of the card: of its first line, where it runs over several."""
+        end = self.pieces[0][0] - 1 if self.pieces else len(self.text)
+        return Location(self.file, self.number, self.column, end)
 
 
 class Scanned(msgspec.Struct, frozen=True):

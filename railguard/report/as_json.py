@@ -6,8 +6,7 @@ that was not worked out is null.
 """
 
 import math
-import re
-from pathlib import Path, PurePath
+from pathlib import Path
 from typing import Literal
 
 import msgspec
@@ -15,6 +14,8 @@ import msgspec
 from railguard import __version__
 from railguard.analysis.stage import Allowed, Range, Stage
 from railguard.location import Location
+from railguard.report.json_text import encoded
+from railguard.report.places import from_root, posix
 from railguard.report.words import near
 from railguard.reviewing import DesignReview, Review
 from railguard.rules.finding import Finding
@@ -206,37 +207,7 @@ def document(review: Review, root: Path | None = None) -> bytes:
         ),
         designs=[_design(design, review, base) for design in review.designs],
     )
-    return _escaped(msgspec.json.format(_encoded(out), indent=1)) + b"\n"
-
-
-_STEERING = re.compile("[\x7f-\x9f\u200b-\u200f\u2028-\u202e\u2060-\u206f\ufeff]")
-"""Beyond JSON's own escapes: what would steer a terminal the report is printed on."""
-
-
-def _escaped(data: bytes) -> bytes:
-    """Write steering characters as JSON escapes; outside strings JSON has none of them."""
-    if data.isascii() and b"\x7f" not in data:
-        return data
-    return _STEERING.sub(lambda found: f"\\u{ord(found[0]):04x}", data.decode()).encode()
-
-
-def _encoded(out: Document) -> bytes:
-    try:
-        return msgspec.json.encode(out)
-    except UnicodeEncodeError:
-        # A file name that is no UTF-8 reaches Python as lone surrogates, which JSON cannot hold.
-        return msgspec.json.encode(_mended(msgspec.to_builtins(out)))
-
-
-def _mended(value: object) -> object:
-    """Return the value with U+FFFD for what is no character, in every text it holds."""
-    if isinstance(value, str):
-        return value.encode("utf-8", "replace").decode("utf-8")
-    if isinstance(value, list):
-        return [_mended(inner) for inner in value]
-    if isinstance(value, dict):
-        return {key: _mended(inner) for key, inner in value.items()}
-    return value
+    return encoded(out)
 
 
 def schema() -> bytes:
@@ -244,26 +215,7 @@ def schema() -> bytes:
     made = msgspec.json.schema(Document)
     made["$schema"] = "https://json-schema.org/draft/2020-12/schema"
     made["title"] = "railguard report"
-    return msgspec.json.format(msgspec.json.encode(made, order="sorted"), indent=1) + b"\n"
-
-
-def posix(path: str) -> str:
-    """Return a path with forward slashes."""
-    return PurePath(path).as_posix()
-
-
-def from_root(path: str, root: Path) -> str:
-    """Return a path as a fingerprint names it: from the run's root, where it lies below it.
-
-    Whatever folder the command is given in, and however the path is spelled, the same deck has
-    the same name.
-    """
-    whole = Path(path).absolute()
-    below = whole.resolve() if ".." in whole.parts else whole
-    for base in (root.absolute(), root.resolve()):
-        if below.is_relative_to(base):
-            return posix(str(below.relative_to(base)))
-    return posix(path)
+    return encoded(made, order="sorted")
 
 
 def _finite(value: float | None) -> float | None:

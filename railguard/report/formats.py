@@ -11,6 +11,10 @@ _MODULES = {
     "json": "railguard.report.as_json",
     "html": "railguard.report.html.document",
     "svg": "railguard.report.as_svg",
+    "sarif": "railguard.report.as_sarif",
+    "junit": "railguard.report.as_junit",
+    "markdown": "railguard.report.as_markdown",
+    "csv": "railguard.report.as_csv",
 }
 FORMATS = tuple(_MODULES)
 

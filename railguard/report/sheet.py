@@ -11,6 +11,8 @@ import math
 import msgspec
 
 from railguard.analysis.stage import Rail, Range, Stage
+from railguard.report.escaping import csv_cell, markdown
+from railguard.report.json_text import encoded
 from railguard.reviewing import DesignReview, Review
 from railguard.units import si
 
@@ -202,14 +204,14 @@ def as_csv(sheet: tuple[Row, ...]) -> bytes:
 
 
 def _plain(value: object) -> object:
-    if isinstance(value, str) and value[:1] in ("=", "+", "-", "@", "\t", "\r"):
-        return f"'{value}"
+    if isinstance(value, str):
+        return csv_cell(value)
     return "" if value is None else value
 
 
 def as_json(sheet: tuple[Row, ...]) -> bytes:
     """Return the sheet as a JSON array of rows."""
-    return msgspec.json.format(msgspec.json.encode(sheet), indent=1) + b"\n"
+    return encoded(sheet)
 
 
 def as_markdown(sheet: tuple[Row, ...]) -> bytes:
@@ -219,14 +221,8 @@ def as_markdown(sheet: tuple[Row, ...]) -> bytes:
     for row in sheet:
         name = f"{row.file}: {row.designator}"
         if name != before:
-            lines += ["", f"### {_escaped(name)}", "", "| " + " | ".join(HEADINGS) + " |"]
+            lines += ["", f"### {markdown(name)}", "", "| " + " | ".join(HEADINGS) + " |"]
             lines.append("|" + " --- |" * len(HEADINGS))
             before = name
-        lines.append("| " + " | ".join(_escaped(cell) for cell in cells(row)) + " |")
+        lines.append("| " + " | ".join(markdown(cell) for cell in cells(row)) + " |")
     return ("\n".join(lines).lstrip("\n") + "\n").encode()
-
-
-def _escaped(text: str) -> str:
-    for mark in "\\`*_[]<>|#":
-        text = text.replace(mark, f"\\{mark}")
-    return text.replace("\n", " ")

@@ -277,12 +277,9 @@ class _Printer:
             return
         self.line(f"{words.WAIVED} ({len(waived)})", "bold")
         for finding in waived:
-            note = finding.waiver
-            who = f" by {note.by}" if note and note.by else ""
-            until = f" until {note.until}" if note and note.until else ""
-            reason = note.reason if note else ""
+            told = words.waiver(finding.waiver) if finding.waiver else ""
             about = ", ".join(finding.designators) or ", ".join(finding.nets)
-            self.paragraph(f"{about}: {finding.rule} ({finding.severity}): {reason}{who}{until}", 2)
+            self.paragraph(f"{about}: {finding.rule} ({finding.severity}): {told}", 2)
         self.line("")
 
     def reading(self, review: DesignReview) -> None:

@@ -7,7 +7,7 @@ hold becomes its usual spelling in ASCII (`Ω` is `Ohm`) or the same mark.
 import re
 import unicodedata
 
-_HIDDEN = frozenset({"Cc", "Cf", "Cs", "Co", "Cn", "Zl", "Zp"})
+_HIDDEN = frozenset({"Cc", "Cf", "Cs", "Co", "Cn", "Zl", "Zp", "Zs"})
 """Unicode categories that have no glyph of their own, or move what stands around them."""
 
 _SPELLED = {
@@ -35,12 +35,13 @@ def visible(text: str) -> str:
     return "".join(map(_shown, text))
 
 
+def is_hidden(character: str) -> bool:
+    """Tell whether a character has no glyph of its own, or moves what stands around it."""
+    return character != " " and unicodedata.category(character) in _HIDDEN
+
+
 def _shown(character: str) -> str:
-    if character == " ":
-        return " "
-    category = unicodedata.category(character)
-    blank = category == "Zs"
-    return _mark(character) if blank or category in _HIDDEN else character
+    return _mark(character) if is_hidden(character) else character
 
 
 def _mark(character: str) -> str:

@@ -9,7 +9,7 @@ from railguard.circuit.model import GROUND
 from railguard.location import Location
 from railguard.report.grouping import OpenGroup
 from railguard.reviewing import DesignReview
-from railguard.rules.finding import Finding
+from railguard.rules.finding import Finding, WaiverNote
 from railguard.units import si
 from railguard.words import SEVERITIES
 
@@ -144,6 +144,13 @@ def left_to_the_table(total: int, held: int, shown: int) -> str:
     )
 
 
+def waiver(note: WaiverNote) -> str:
+    """Return why, by whom and until when a finding is accepted."""
+    who = f" by {note.by}" if note.by else ""
+    until = f" until {note.until}" if note.until else ""
+    return f"{note.reason}{who}{until}"
+
+
 def near(path: str) -> str:
     """Return a path as seen from the folder the command runs in, where it lies below it."""
     try:
@@ -152,18 +159,22 @@ def near(path: str) -> str:
         return path
 
 
+def covered(review: DesignReview) -> str:
+    """Return how much was judged: `368 judged, 0 not checked`."""
+    return f"{review.judged} judged, {review.open} not checked"
+
+
 def verdict(review: DesignReview) -> str:
     """Return the one line a review comes to."""
     settings = review.design.settings
     found = count_words(review.findings).capitalize()
-    covered = f"{review.judged} judged, {review.open} not checked"
     match review.verdict:
         case "hold":
-            return f"Verdict: hold at {settings.hold_at}. {found}; {covered}."
+            return f"Verdict: hold at {settings.hold_at}. {found}; {covered(review)}."
         case "incomplete":
-            return f"Verdict: incomplete. {found}; {covered}, so it is no pass."
+            return f"Verdict: incomplete. {found}; {covered(review)}, so it is no pass."
         case _:
-            return f"Verdict: pass. {found}; {covered}."
+            return f"Verdict: pass. {found}; {covered(review)}."
 
 
 def kind(review: DesignReview) -> str:

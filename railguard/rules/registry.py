@@ -100,7 +100,7 @@ def judge(design: Design, extra: tuple[Rule, ...] = ()) -> Judgement:
     judged = left_open = 0
     for one in running:
         limits = limits_of(one, design.settings)
-        for subject in _subjects(one, design):
+        for subject in subjects_of(one, design):
             outcomes = _outcomes(one, subject, limits, design, guarded=one in extra)
             points = [o for o in outcomes if isinstance(o, NotChecked)]
             found += [_reweighed(o, design.settings) for o in outcomes if isinstance(o, Finding)]
@@ -128,7 +128,8 @@ def _refuse_doubles(extra: tuple[Rule, ...]) -> None:
         names.add(one.name)
 
 
-def _subjects(one: Rule, design: Design) -> Sequence[Any]:
+def subjects_of(one: Rule, design: Design) -> Sequence[Any]:
+    """Return what a rule looks at in a design, one by one."""
     by_kind: Mapping[str, Sequence[Any]] = {
         "stage": design.stages,
         "rail": design.rails,

@@ -9,7 +9,8 @@ import msgspec
 import pytest
 
 from railguard.analysis.stage import Allowed, Range
-from railguard.report.as_json import Document, document, from_root, schema
+from railguard.report.as_json import Document, document, schema
+from railguard.report.places import from_root
 from railguard.reviewing import review
 
 ROOT = Path(__file__).parents[2]

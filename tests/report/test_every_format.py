@@ -1,0 +1,99 @@
+"""What every report format must do, on every kind of design."""
+
+import os
+import subprocess
+import sys
+import unicodedata
+from pathlib import Path
+
+import pytest
+
+from railguard.report.formats import FORMATS, render
+from railguard.reviewing import review
+from tests.report import designs
+
+HOUSE = Path(__file__).parents[2]
+LOCALES = ("C", "C.UTF-8", "tr_TR.UTF-8")
+
+
+@pytest.mark.parametrize("form", FORMATS)
+@pytest.mark.parametrize("name", designs.KINDS)
+def test_a_report_is_whole_text(form, name, report):
+    """UTF-8 that ends in a newline."""
+    text = report(form, name).decode()
+    assert text.strip()
+    assert text.endswith("\n")
+
+
+@pytest.mark.parametrize("form", FORMATS)
+@pytest.mark.parametrize("name", ["faulty", "partly", "empty", "missing"])
+def test_the_worst_finding_is_in_it(form, name, reviewed, report):
+    """By the name of its rule, the first words of its message, and the netlist's name."""
+    found, root = reviewed(name)
+    text = " ".join(report(form, name).decode().replace("\\", "").split())
+    worst = found.designs[0].findings[0]
+    assert worst.rule in text
+    assert " ".join(worst.message.split()[:3]).replace(str(root), "")[-20:] in text
+    assert Path(found.designs[0].path).stem in text
+
+
+@pytest.mark.parametrize("form", FORMATS)
+def test_all_of_two_hundred_netlists_are_in_it(form, report):
+    """None is lost, whatever is left to a table."""
+    text = report(form, "many").decode().replace("\\", "")
+    assert all(f"gauge_{number:03}" in text for number in range(designs.MANY))
+
+
+@pytest.mark.parametrize("form", FORMATS)
+@pytest.mark.parametrize("name", ["hostile", "partly"])
+def test_nothing_steers_a_screen(form, name, report):
+    """No control, format or bidirectional character leaves a netlist or a path for a report."""
+    text = report(form, name).decode().removeprefix("\ufeff")
+    kept = {"\n", "\r"} if form == "csv" else {"\n"}
+    assert {c for c in text if unicodedata.category(c)[0] == "C"} <= kept
+    assert "\u2028" not in text
+
+
+@pytest.mark.parametrize("form", FORMATS)
+@pytest.mark.parametrize("name", ["faulty", "partly", "waived", "hostile"])
+def test_a_second_review_gives_the_same_bytes(form, name, reviewed, report):
+    """Nothing of the hour, of memory addresses or of the first run is in it."""
+    found, root = reviewed(name)
+    again = review([Path(design.path) for design in found.designs], as_of=designs.DAY)
+    assert render(form, again, root=root) == report(form, name)
+
+
+@pytest.fixture(scope="module")
+def by_environment(tmp_path_factory):
+    """Return the reports of one run by hash seed and locale."""
+    root = tmp_path_factory.mktemp("laid")
+    for name in ("faulty", "partly", "hostile"):
+        (root / name).mkdir()
+        designs.paths(name, root / name)
+    netlists = sorted(str(p.relative_to(root)) for p in root.rglob("*.cir"))
+    made = {}
+    for seed, locale in (("0", LOCALES[0]), ("1", LOCALES[1]), ("4242", LOCALES[2])):
+        out = tmp_path_factory.mktemp("out")
+        call = [sys.executable, "-m", "railguard", "review", *netlists, "--as-of", "2027-01-31"]
+        for form in FORMATS:
+            call += ["--report", f"{form}={out / form}"]
+        environment = {
+            **os.environ,
+            "PYTHONPATH": str(HOUSE),
+            "PYTHONHASHSEED": seed,
+            "LC_ALL": locale,
+            "LANG": locale,
+            "COLUMNS": "80",
+        }
+        done = subprocess.run(call, cwd=root, env=environment, capture_output=True, check=False)
+        assert (done.returncode, done.stdout, done.stderr) == (1, b"", b"")
+        made[seed] = {form: (out / form).read_bytes() for form in FORMATS}
+    return made
+
+
+@pytest.mark.parametrize("form", FORMATS)
+def test_hash_seed_and_locale_change_nothing(form, by_environment):
+    """The same netlists give the same bytes under any of them."""
+    first, *others = (reports[form] for reports in by_environment.values())
+    assert all(other == first for other in others)
+    assert len(others) == 2
