@@ -9,6 +9,7 @@ bytes.
 from pathlib import Path
 from xml.etree import ElementTree as Xml
 
+from railguard.notices import NotChecked
 from railguard.report import words
 from railguard.report.cases import Case, Told, cases
 from railguard.report.escaping import xml
@@ -45,7 +46,8 @@ def _suite(design: DesignReview, review: Review, root: Path) -> Xml.Element:
         ("sha256", design.design.circuit.sha256),
     ):
         Xml.SubElement(facts, "property", name=fact, value=value)
-    made = [_case(case, name, design, root) for case in cases(design, review.extra_rules)]
+    required = frozenset(design.open_though_required())
+    made = [_case(case, name, design, required, root) for case in cases(design, review.extra_rules)]
     _count(suite, made)
     return suite
 
@@ -78,7 +80,9 @@ def _count(suite: Xml.Element, made: list[Xml.Element]) -> None:
     suite.extend(made)
 
 
-def _case(case: Case, suite: str, design: DesignReview, root: Path) -> Xml.Element:
+def _case(
+    case: Case, suite: str, design: DesignReview, required: frozenset[NotChecked], root: Path
+) -> Xml.Element:
     holding = design.design.settings.hold_at
     shown = Xml.Element("testcase", classname=suite, name=xml(f"{case.rule} {case.subject}"))
     failing = [
@@ -90,14 +94,14 @@ def _case(case: Case, suite: str, design: DesignReview, root: Path) -> Xml.Eleme
     if place is not None:
         shown.set("file", xml(from_root(place.file, root)))
         shown.set("line", str(place.line))
-    required = [n for n in case.missed if n in design.open_though_required()]
+    missing = [note for note in case.missed if note in required]
     open_points = "\n".join(xml(f"{n.why}. {words.ADD}: {n.add}") for n in case.missed)
     if failing:
         worst = failing[0].finding
         failure = Xml.SubElement(shown, "failure", type=worst.severity, message=xml(worst.message))
         failure.text = "\n\n".join(_told(told, root) for told in failing)
-    elif required:
-        what = f"This family must not stay open, and it does: {required[0].why}."
+    elif missing:
+        what = f"This family must not stay open, and it does: {missing[0].why}."
         Xml.SubElement(shown, "failure", type="open", message=xml(what)).text = open_points
     elif case.missed:
         why = xml(f"{words.NOT_CHECKED}: {case.missed[0].why}")
