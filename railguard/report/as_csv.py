@@ -1,4 +1,4 @@
-"""The CSV report (RFC 4180): a line for each verdict, finding and open point.
+"""The CSV report (RFC 4180, lines ending in LF): a line for each verdict, finding and open point.
 
 One table, so that a spreadsheet filters it; `state` says what a line is. Numbers are plain SI
 numbers, texts are never formulas. A byte order mark lets spreadsheets read the letters as UTF-8.
@@ -49,13 +49,13 @@ class Row(msgspec.Struct, frozen=True, kw_only=True):
 
 
 def document(review: Review, root: Path | None = None) -> bytes:
-    """Return the report as UTF-8 with a byte order mark, lines ending in CR LF.
+    """Return the report as UTF-8 with a byte order mark.
 
     root  the run's root, from which netlists are named; None: the current folder
     """
     base = root or Path.cwd()
     out = io.StringIO()
-    writer = csv.writer(out, lineterminator="\r\n")
+    writer = csv.writer(out, lineterminator="\n")
     writer.writerow(Row.__struct_fields__)
     for row in _rows(review, base):
         writer.writerow([_field(getattr(row, name)) for name in Row.__struct_fields__])
