@@ -42,6 +42,7 @@ class Environment:
         self._values = dict(given)
         self._caller = caller
         self._busy: list[str] = []
+        self._absent: set[str] = set()
 
     def of(self, scope: Scope | None) -> "Environment | None":
         """Return the environment of the scope a definition stands in: the nearest one outwards."""
@@ -90,7 +91,8 @@ class Environment:
                 self._busy.pop()
             self._values[name] = value
             return value
-        for other in (self._outer, self._caller):
+        # Each environment is asked for a name once: outwards and to the caller there are many ways.
+        for other in (self._outer, self._caller) if name not in self._absent else ():
             if other is not None:
                 try:
                     value = other.look(name)
@@ -100,6 +102,7 @@ class Environment:
                 except ExpressionError as error:
                     if "is not defined" not in error.reason:
                         raise
+        self._absent.add(name)
         raise ExpressionError(f"{name} is not defined")
 
     def evaluate(self, text: str) -> float:

@@ -66,6 +66,12 @@ def flatten(deck: Deck, closed: Closed = nothing_closed) -> Circuit:
         )  # fmt: skip
     found, expander = _expanded(deck, closed, GROUNDS)
     problems = [*deck.problems]
+    if expander.over is not None:
+        # A circuit cut off somewhere is another circuit: judging it would say wrong things.
+        return Circuit(
+            path=deck.path, title=deck.title, problems=(*problems, _over(deck, expander.over)),
+            remarks=deck.remarks, sha256=deck.sha256, files=deck.files, texts=deck.texts,
+        )  # fmt: skip
     if not expander.elements and not (deck.problems or found.problems or expander.problems):
         problems.append(
             Problem(
@@ -95,6 +101,16 @@ def flatten(deck: Deck, closed: Closed = nothing_closed) -> Circuit:
         sha256=deck.sha256,
         files=deck.files,
         texts=deck.texts,
+    )
+
+
+def _over(deck: Deck, line: Line) -> Problem:
+    return Problem(
+        rule="netlist-bound",
+        message=f"The deck expands to more than {deck.bounds.elements:,} elements and instances; "
+        "none of it is judged.",
+        remedy="Review its subcircuits one by one, or raise the bound if this is meant.",
+        location=line.location,
     )
 
 
@@ -166,7 +182,8 @@ class _Expander:
         self._globals = {name.casefold(): name for name in found.globals}
         self._joined = {a.casefold(): b for a, b in found.connected}
         self._unconnected = 0
-        self._over = False
+        self._instances = 0
+        self.over: Line | None = None
 
     def scope(
         self,
@@ -186,8 +203,8 @@ class _Expander:
         elements, kept, fixed, first = self.elements, environment.bound, scope.bound, scope.first
         alone = environment.multiplier == 1.0
         for number, line in enumerate(scope.cards):
-            if len(elements) >= most:
-                self._bound(f"more than {most:,} elements", line)
+            if len(elements) + self._instances >= most:
+                self.over = self.over or line
                 return
             bound = kept.get(number) or (fixed.get(number) if alone else None)
             if bound is None:
@@ -283,18 +300,6 @@ class _Expander:
             designators=(name,),
         )
 
-    def _bound(self, what: str, line: Line) -> None:
-        if not self._over:
-            self._over = True
-            self.problems.append(
-                Problem(
-                    rule="netlist-bound",
-                    message=f"The deck expands to {what}; the rest is not read.",
-                    remedy="Raise the bound if this is meant.",
-                    location=line.location,
-                )
-            )
-
     def net(self, name: str, key: str, prefix: str) -> str:
         """Return the name in the circuit of a net that an instance meets first.
 
@@ -381,6 +386,7 @@ class _Expander:
         if self._is_device(instance.model, definition):
             self._add(closed_call(instance, ports, definition.notes), nets, prefix)
             return
+        self._instances += 1
         given = instance.nets
         if len(given) != len(ports):
             if not len(ports) - len(definition.optional) <= len(given) <= len(ports):

@@ -10,7 +10,7 @@ from railguard.circuit.model import Analysis
 from railguard.circuit.scopes import Scope
 from railguard.circuit.written import split_parameters, text_of, unquoted
 from railguard.deck.cards import Assignment, Call, CardError, Group, Items, items_of
-from railguard.deck.files import Deck
+from railguard.deck.files import Bounds, Deck
 from railguard.deck.lines import Line
 from railguard.notices import Problem
 
@@ -316,19 +316,24 @@ class _Sorter:
             return False
 
 
+def _too_long(text: str, bounds: Bounds) -> str:
+    """Say what of a card is longer than its bound, or ""."""
+    if len(text) > bounds.line_characters:
+        return f"A card is longer than {bounds.line_characters:,} characters"
+    if max(map(len, text.split())) > bounds.word_characters:
+        return f"A name or value is longer than {bounds.word_characters:,} characters"
+    return ""
+
+
 def sort_deck(deck: Deck) -> Sorted:
     """Sort a deck's lines into scopes."""
     sorter = _Sorter()
-    longest = deck.bounds.line_characters
+    word = deck.bounds.word_characters
     for line in deck.lines:
-        if len(line.text) > longest:
-            sorter.problem(
-                "netlist-bound",
-                f"A card is longer than {deck.bounds.line_characters:,} characters.",
-                line,
-            )
-            continue
-        sorter.take(line)
+        if len(line.text) > word and (what := _too_long(line.text, deck.bounds)):
+            sorter.problem("netlist-bound", f"{what}; it is left out.", line)
+        else:
+            sorter.take(line)
     for scope in sorter.stack[1:]:
         if scope.header is not None:
             sorter.problem(

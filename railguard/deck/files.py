@@ -32,15 +32,21 @@ class Bounds(msgspec.Struct, frozen=True, kw_only=True):
     """How much of a netlist is read and expanded; all can be set by the user.
 
     file_bytes       one file
+    total_bytes      a netlist with everything it includes, as often as it is included
+    includes         include cards followed
     line_characters  one logical line
+    word_characters  one name, value or expression
     include_depth    files including files
     subcircuit_depth instances inside instances
-    elements         after expansion
+    elements         after expansion, empty instances included
     expression       nested parentheses of one expression
     """
 
     file_bytes: int = 32_000_000
+    total_bytes: int = 64_000_000
+    includes: int = 2_000
     line_characters: int = 1_000_000
+    word_characters: int = 10_000
     include_depth: int = 32
     subcircuit_depth: int = 64
     elements: int = 500_000
@@ -102,6 +108,10 @@ class _Reader:
         self._texts: dict[str, str] = {}
         self._hash = hashlib.sha256()
         self._title = ""
+        self._reals: dict[Path, Path] = {}
+        self._total = 0
+        self._included = 0
+        self._full = False
 
     def main(self, path: Path) -> Deck:
         name = str(path)
@@ -290,6 +300,8 @@ class _Reader:
             )
             return
         told = chain_of(chain, line.file)
+        if self._too_much(place):
+            return
         if self._root is None or chain[-1] is None:
             self._lost(
                 place, f"{target} is not read: a text has no folder to look in.{told}", target
@@ -306,16 +318,61 @@ class _Reader:
                 )
             )
             return
-        found = find(self._from, chain[-1].parent, target, self._root)
+        if len(target) > LONGEST_PATH:
+            self._problem(
+                "netlist-include",
+                f"An include names a file of {len(target):,} characters; there is none such.",
+                line.file,
+                "",
+                line.number,
+            )
+            return
+        try:
+            found = find(self._from, chain[-1].parent, target, self._root)
+        except (OSError, ValueError) as error:
+            # A part of a name that is too long, a ring of links, a character no name may hold.
+            found = f"cannot be looked for ({getattr(error, 'strerror', None) or error})"
         if isinstance(found, str):
             self._lost(place, f"{target} {found}.{told}", target)
             return
-        if any(
-            step is not None and self._from.real(step) == self._from.real(found) for step in chain
-        ):
+        if any(step is not None and self._real(step) == self._real(found) for step in chain):
             self._lost(place, f"{target} includes itself.{told}", target)
             return
         self._open(found, place, target, chain, section, told)
+
+    def _real(self, path: Path) -> Path:
+        known = self._reals.get(path)
+        if known is None:
+            known = self._reals[path] = self._from.real(path)
+        return known
+
+    def _too_much(self, place: Location) -> bool:
+        """Tell whether the deck has followed, or read, all it may; the first time it is told.
+
+        Files that include each other twice would be read two to the power of their depth.
+        """
+        if self._full:
+            return True
+        self._included += 1
+        bounds = self._bounds
+        if self._included > bounds.includes:
+            what = f"follows more than {bounds.includes:,} include cards"
+        elif self._total > bounds.total_bytes:
+            what = f"includes more than {bounds.total_bytes:,} bytes"
+        elif len(self._lines) > bounds.elements:
+            what = f"holds more than {bounds.elements:,} cards"
+        else:
+            return False
+        self._full = True
+        self._problems.append(
+            Problem(
+                rule="netlist-bound",
+                message=f"The deck {what}; no further file is read.",
+                remedy="Raise the bound if this is meant.",
+                location=place,
+            )
+        )
+        return True
 
     def _open(
         self,
@@ -334,6 +391,7 @@ class _Reader:
         if data is None:
             self._lost(place, f"{target} is larger than a netlist may be.{told}", target)
             return
+        self._total += len(data)
         text, how = decode(data)
         name = str(found)
         what = no_netlist(data) or no_netlist_text(text)
@@ -362,6 +420,9 @@ class _Reader:
             )
         )
 
+
+LONGEST_PATH = 4_096
+"""Characters; what Linux and Windows take for a path at most."""
 
 _INCLUDES = frozenset({".include", ".inc", ".incl"})
 _BLOCKS = {
