@@ -20,7 +20,7 @@ def check_places(places: Iterable[Path], inputs: Iterable[Path]) -> None:
 
     Raises UsageError.
     """
-    read = {file.resolve() for file in inputs}
+    read = {_real(file) for file in inputs}
     for place in places:
         if place.is_dir():
             raise UsageError(
@@ -32,7 +32,7 @@ def check_places(places: Iterable[Path], inputs: Iterable[Path]) -> None:
                 f"The report {place} cannot be written: its folder does not exist.",
                 remedy="Make the folder, or name another one.",
             )
-        if place.resolve() in read:
+        if _real(place) in read:
             raise UsageError(
                 f"The report would replace {place}, which is to be reviewed.",
                 remedy="Name another file behind --report FORMAT=.",
@@ -51,7 +51,7 @@ def write_whole(place: Path, data: bytes) -> None:
         if mode is not None and not stat.S_ISREG(mode):
             place.write_bytes(data)
         else:
-            _replace(place.resolve(), data, stat.S_IMODE(mode) if mode else _USUAL_MODE & ~_mask())
+            _replace(_real(place), data, stat.S_IMODE(mode) if mode else _USUAL_MODE & ~_mask())
     except OSError as error:
         why = error.strerror or str(error)
         raise UsageError(f"The report {place} cannot be written: {why}.") from error
@@ -70,6 +70,11 @@ def _replace(target: Path, data: bytes, mode: int) -> None:
         with contextlib.suppress(OSError):
             Path(temporary).unlink()
         raise
+
+
+def _real(path: Path) -> Path:
+    """Follow a path's links; a ring of links is left for the writing to stumble over."""
+    return Path(os.path.realpath(path))
 
 
 def _mode(target: Path) -> int | None:

@@ -158,7 +158,7 @@ def _wanted(text: str) -> tuple[str, Path | None]:
 
 def _refuse_two_in_one(wanted: list[tuple[str, Path | None]]) -> None:
     """Refuse two reports in one place: neither could be read."""
-    places = [place.resolve() if place is not None else None for _, place in wanted]
+    places = [place.absolute() if place is not None else None for _, place in wanted]
     for place in places:
         if places.count(place) > 1:
             where = f"go to {place}" if place is not None else "go to the screen"

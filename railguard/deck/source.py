@@ -1,5 +1,6 @@
 """Where a deck's files come from: the disk, an archive, a bucket, what is about to be committed."""
 
+import os
 from pathlib import Path
 from typing import Protocol
 
@@ -52,8 +53,8 @@ class Disk:
         return tuple(sorted(path.name for path in folder.iterdir()))
 
     def real(self, path: Path) -> Path:
-        """Return the path with every link and every `..` followed."""
-        return path.resolve()
+        """Return the path with every link and every `..` followed; a ring of links stays one."""
+        return Path(os.path.realpath(path))
 
 
 DISK = Disk()

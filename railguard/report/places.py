@@ -1,9 +1,15 @@
 """Where something stands, as addresses other programs follow: relative to the run's root."""
 
+import os
 from pathlib import Path, PurePath
 from urllib.parse import quote
 
 from railguard.deck.files import IN_MEMORY
+
+
+def real(path: str) -> Path:
+    """Return a path with its links followed; a ring of links stays one, and nothing is raised."""
+    return Path(os.path.realpath(path))
 
 
 def posix(path: str) -> str:
@@ -14,8 +20,8 @@ def posix(path: str) -> str:
 def below(path: str, root: Path) -> str | None:
     """Return a path from the run's root, with forward slashes; None where it lies elsewhere."""
     whole = Path(path).absolute()
-    plain = whole.resolve() if ".." in whole.parts else whole
-    for base in (root.absolute(), root.resolve()):
+    plain = real(path) if ".." in whole.parts else whole
+    for base in (root.absolute(), real(str(root))):
         if plain.is_relative_to(base):
             return posix(str(plain.relative_to(base)))
     return None
@@ -42,4 +48,4 @@ def address(path: str, root: Path) -> tuple[str, bool] | None:
     if inside is not None:
         # A name that is no UTF-8 is quoted byte by byte.
         return quote(inside.encode("utf-8", "surrogateescape")), True
-    return Path(path).resolve().as_uri(), False
+    return real(path).as_uri(), False

@@ -56,6 +56,16 @@ def test_a_device_is_written_to_and_not_replaced():
     assert (before.st_ino, before.st_mode) == (after.st_ino, after.st_mode)
 
 
+@POSIX
+def test_a_ring_of_links_is_told(tmp_path):
+    """It leads to no file that could be written."""
+    (tmp_path / "a.json").symlink_to("b.json")
+    (tmp_path / "b.json").symlink_to("a.json")
+    check_places([tmp_path / "a.json"], [])
+    with pytest.raises(UsageError, match="cannot be written"):
+        write_whole(tmp_path / "a.json", b"new")
+
+
 @pytest.mark.parametrize("failing", ["write_bytes", "replace", "chmod"])
 def test_a_failure_leaves_the_old_file_and_no_half(tmp_path, monkeypatch, failing):
     """Whatever step fails: the old report is whole, nothing lies beside it."""

@@ -9,7 +9,7 @@ from railguard.reviewing import Review, review
 from railguard.words import SEVERITIES
 
 SECONDS = 10.0
-"""What one small deck may take on a loaded machine; none comes near."""
+"""Processor time one small deck may take; none comes near."""
 
 FORBIDDEN = frozenset(map(chr, (*range(0x0A), *range(0x0B, 0x20), 0x7F, *range(0x80, 0xA0)))) | set(
     "\u2028\u2029\u202a\u202b\u202c\u202d\u202e\u2066\u2067\u2068\u2069"
@@ -20,7 +20,7 @@ def hold(data: bytes, folder: Path) -> Review:
     """Review one deck and check what holds of every review; return it."""
     path = folder / "gauge.cir"
     path.write_bytes(data)
-    begun = time.monotonic()
+    begun = time.process_time()
     found = review(path, plugins=False)
     (design,) = found.designs
     assert design.verdict in ("pass", "hold", "incomplete")
@@ -33,5 +33,5 @@ def hold(data: bytes, folder: Path) -> Review:
     json.loads(render("json", found))
     for name in FORMATS:
         assert not FORBIDDEN & set(render(name, found).decode("utf-8")), name
-    assert time.monotonic() - begun < SECONDS
+    assert time.process_time() - begun < SECONDS
     return found
