@@ -7,7 +7,7 @@ import unicodedata
 from xml.etree import ElementTree as Xml
 
 import pytest
-from hypothesis import given
+from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 from markdown_it import MarkdownIt
 
@@ -48,6 +48,10 @@ texts = st.one_of(
 )
 
 
+unhurried = settings(deadline=None, suppress_health_check=[HealthCheck.too_slow])
+"""A loaded machine is no fault of an escape."""
+
+
 def tokens(text):
     """Return what a forge reads in one line of Markdown."""
     reader = MarkdownIt("gfm-like")
@@ -55,6 +59,7 @@ def tokens(text):
     return [i for t in reader.parse(f"- **major** {text}") for i in (t, *(t.children or ()))]
 
 
+@unhurried
 @given(texts)
 def test_markdown_shows_the_text_and_nothing_else(text):
     """One item of one list, one emphasis of our own, and the text as it is."""
@@ -69,6 +74,7 @@ def test_markdown_shows_the_text_and_nothing_else(text):
     assert shown.replace("\u2060", "").split() == f"major {wanted}".split()
 
 
+@unhurried
 @given(texts)
 def test_markdown_leaves_nothing_to_link_to(text):
     """No name, number or address stands directly behind the sign a forge looks for."""
@@ -89,6 +95,7 @@ def test_plain_text_stays_readable_in_markdown(text):
     assert escaping.markdown(text) == text
 
 
+@unhurried
 @given(texts)
 def test_markdown_in_a_table_stays_in_its_cell(text):
     """A row has as many cells as its heading, whatever stands in one."""
@@ -98,6 +105,7 @@ def test_markdown_in_a_table_stays_in_its_cell(text):
     assert sum(t.type == "tr_open" for t in found) == 2
 
 
+@unhurried
 @given(texts)
 def test_xml_is_well_formed_and_reads_back(text):
     """As an attribute and as a text, of characters that XML 1.0 has."""
@@ -109,6 +117,7 @@ def test_xml_is_well_formed_and_reads_back(text):
     assert (again.text or "") == safe
 
 
+@unhurried
 @given(texts)
 def test_csv_reads_back_and_is_no_formula(text):
     """One field on one line; behind the apostrophe the text is as it was."""
@@ -120,6 +129,7 @@ def test_csv_reads_back_and_is_no_formula(text):
     assert field.removeprefix("'") == escaping.xml(text).removeprefix("'")
 
 
+@unhurried
 @given(texts)
 def test_sarif_messages_hold_no_link_and_no_placeholder(text):
     """Brackets are no link, and braces come in pairs that a viewer shows as one."""
@@ -130,6 +140,7 @@ def test_sarif_messages_hold_no_link_and_no_placeholder(text):
     assert "}" not in left
 
 
+@unhurried
 @given(texts)
 def test_no_escape_lets_a_hidden_character_through(text):
     """Nothing steers a terminal, breaks a line or turns the direction of writing."""
@@ -142,6 +153,7 @@ def hidden(text):
     return [c for c in text if unicodedata.category(c)[0] in "CZ" and c != " "]
 
 
+@unhurried
 @given(texts)
 def test_json_reads_back_and_steers_no_screen(text):
     """The value is the text itself; on a screen its hidden characters are escapes."""
