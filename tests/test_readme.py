@@ -1,10 +1,14 @@
 """What the README says is what the project does."""
 
+import re
 import shlex
 import tomllib
 from pathlib import Path
 
+import yaml
+
 from railguard.commands.rules import as_markdown
+from railguard.report.formats import FORMATS
 from railguard.report.terminal import terminal
 from railguard.reviewing import review
 from railguard.settings.file import parse
@@ -51,6 +55,23 @@ def test_settings_example_is_valid():
     example = _blocks("toml")[0]
     assert tomllib.loads(example)
     assert parse(example, "railguard.toml").hold_at == "major"
+
+
+def test_every_report_format_is_listed():
+    """The table of reports names each format, and no other."""
+    table = README.split("## Reports\n")[1].split("## ")[0]
+    cells = [line.split("|")[1] for line in table.splitlines() if line.startswith("| `")]
+    assert sorted(name for cell in cells for name in re.findall(r"`(\w+)`", cell)) == sorted(
+        FORMATS
+    )
+
+
+def test_workflow_examples_are_yaml():
+    """Both can be pasted, and ask for formats there are."""
+    examples = [yaml.safe_load(block) for block in _blocks("yaml")]
+    assert len(examples) >= 2
+    asked = re.findall(r"--report (\w+)", README)
+    assert set(asked) <= {*FORMATS, "FORMAT"}
 
 
 def test_python_example_runs(monkeypatch, capsys):

@@ -2,6 +2,7 @@
 
 import datetime as dt
 import sys
+from importlib import resources
 from pathlib import Path
 from typing import get_args
 
@@ -20,6 +21,15 @@ from railguard.words import SEVERITIES, Family, Severity
 
 HOLD = 1
 """Exit status where something stands at or above the hold level."""
+
+
+def _show_schema(context: click.Context, _: click.Parameter, wanted: bool) -> None:
+    """Print the schema that ships with the package."""
+    if not wanted:
+        return
+    shipped = resources.files("railguard.report").joinpath("report.schema.json")
+    sys.stdout.buffer.write(shipped.read_bytes())
+    context.exit()
 
 
 @click.command()
@@ -68,6 +78,14 @@ HOLD = 1
     help="Let it work out what rests on diodes and transistors.",
 )
 @click.option("--confirm", is_flag=True, help="Hold range and current findings against ngspice.")
+@click.option(
+    "--schema",
+    is_flag=True,
+    is_eager=True,
+    expose_value=False,
+    callback=_show_schema,
+    help="Print the JSON Schema of the JSON report, and review nothing.",
+)
 @click.option("--no-plugins", is_flag=True, help="Leave out the rules other packages bring.")
 def review(  # one parameter an option: click hands them over by name
     files: tuple[str, ...],

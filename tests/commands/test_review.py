@@ -104,6 +104,23 @@ def test_refused_request_is_one_line_and_status_2(monkeypatch, capsys):
     assert told.err.startswith('railguard: "soon" is no date.')
 
 
+def test_the_schema_of_the_json_report_is_printed():
+    """Without a netlist, and exactly as it ships."""
+    result = CliRunner().invoke(review, ["--schema"])
+    assert result.exit_code == 0
+    shipped = ROOT / "railguard" / "report" / "report.schema.json"
+    assert result.stdout_bytes == shipped.read_bytes()
+
+
+def test_a_report_never_replaces_the_netlist(tmp_path):
+    """The wrong name behind --report costs nobody a netlist."""
+    deck = tmp_path / "gauge.cir"
+    deck.write_text(DECK)
+    assert "would replace" in refused(deck, "--report", f"json={deck}")
+    assert deck.read_text() == DECK
+    assert "names no file" in refused(deck, "--report", "json=")
+
+
 def test_several_reports_of_one_run(tmp_path):
     """JSON into a file and the terminal's text into another, in one run."""
     machine, people = tmp_path / "report.json", tmp_path / "report.txt"

@@ -28,13 +28,14 @@ def document(review: Review, root: Path | None = None) -> bytes:
     """
     del root
     style, script = _text("page.css"), _text("page.js")
-    return _filled(
+    text = _filled(
         "page.html",
         page(review),
         script=Markup(script),
         style_hash=_hash(style),
         script_hash=_hash(script),
-    ).encode("utf-8", "replace")
+    )
+    return f"{text}\n".encode("utf-8", "replace")
 
 
 def fragment(review: Review, prefix: str) -> str:
