@@ -103,8 +103,8 @@ def test_functions_that_call_themselves():
 def test_powers_of_powers():
     """A number is no longer than a float, however it is asked for."""
     found = reviewed(
-        "Rx in 0 {10**10**10**10}\nRy in 0 {9^9^9^9}\nRz in 0 {pow(10,pow(10,10))}\n"
-        "Rw in 0 {2**99999999999}"
+        "R7 in 0 {10**10**10**10}\nR8 in 0 {9^9^9^9}\nR9 in 0 {pow(10,pow(10,10))}\n"
+        "R6 in 0 {2**99999999999}"
     )
     told = [f.message for f in found.findings if f.rule == "netlist-expression"]
     assert len(told) == 4
