@@ -18,7 +18,7 @@ from typing import IO
 
 import msgspec
 
-from railguard.audit.child import SPENT
+from railguard.audit.child import OUT_OF_MEMORY
 from railguard.audit.wire import Began, Message, Outcome, Plan, Ready, Task
 from railguard.errors import RailguardError
 
@@ -28,6 +28,9 @@ AHEAD = 6
 PATIENCE = 20
 """Wall time a file may take, in budgets of processor time: other work may share the machine."""
 
+LEAST_WALL_SECONDS = 300.0
+"""A file may always take so long by the clock: a share over a network may hang for a while."""
+
 TICK = 0.25
 """Seconds after which `results` hands over None where nothing came."""
 
@@ -35,6 +38,10 @@ START_SECONDS = 120.0
 
 _ONE_THREAD = ("OMP_NUM_THREADS", "OPENBLAS_NUM_THREADS", "MKL_NUM_THREADS")
 """A worker is one of several: linear algebra on many threads would only get in their way."""
+
+
+_KEPT_MEMORY = {"MALLOC_MMAP_THRESHOLD_": "67108864", "MALLOC_TRIM_THRESHOLD_": "134217728"}
+"""glibc: keep what a review has used for the next one, instead of asking for fresh pages."""
 
 
 class WorkerError(RailguardError):
@@ -90,6 +97,11 @@ class Pool:
         self._again: deque[Task] = deque()
         self._workers = [_Worker(plan) for _ in range(workers)]
 
+    @property
+    def pids(self) -> tuple[int, ...]:
+        """Return the process ids of the workers that have started."""
+        return tuple(worker.process.pid for worker in self._workers if worker.ready)
+
     def __enter__(self) -> "Pool":
         return self
 
@@ -97,6 +109,10 @@ class Pool:
         self, kind: type[BaseException] | None, error: BaseException | None,
         trace: TracebackType | None,
     ) -> None:  # fmt: skip
+        self.close()
+
+    def close(self) -> None:
+        """End every worker."""
         for worker in self._workers:
             worker.end()
 
@@ -153,7 +169,7 @@ class Pool:
         if not worker.ready:
             words = worker.last_words()
             raise WorkerError(f"A worker does not start: {words or f'status {status}'}.")
-        if status != SPENT and worker.waiting:
+        if worker.waiting:
             task = worker.waiting.popleft()
             why = self._why(status)
             yield Outcome(root=task.root, path=task.path, state="stopped", key=worker.key, why=why)
@@ -163,14 +179,20 @@ class Pool:
 
     def _why(self, status: int) -> str:
         seconds = self._plan.budget.seconds
+        if status == OUT_OF_MEMORY:
+            return f"Its review needs more than the {self._plan.budget.megabytes} MB it may take."
         if -status == signal.SIGXCPU:
             return f"Its review takes more than the {seconds} s of processor time a file may take."
         if -status == signal.SIGKILL:
             return "Its worker was killed from outside, by lack of memory or by hand."
         if -status == signal.SIGALRM:
-            return f"Its review did not end within {seconds * PATIENCE} s."
+            return f"Its review did not end within {self._wall_seconds:.0f} s."
         name = signal.Signals(-status).name if status < 0 else f"status {status}"
         return f"Its worker crashed ({name})."
+
+    @property
+    def _wall_seconds(self) -> float:
+        return max(self._plan.budget.seconds * PATIENCE, LEAST_WALL_SECONDS)
 
     def _watch(self) -> None:
         """End a worker that has been at one file for too long; its pipe then tells."""
@@ -178,10 +200,10 @@ class Pool:
         for worker in self._workers:
             if not worker.ready and now - worker.since > START_SECONDS:
                 raise WorkerError(f"A worker has not started within {START_SECONDS:.0f} s.")
-            limit = self._plan.budget.seconds * PATIENCE
+            limit = self._wall_seconds
             if worker.ready and worker.waiting and now - worker.since > limit:
                 worker.process.send_signal(signal.SIGALRM)
 
 
 def _environment() -> dict[str, str]:
-    return {**os.environ, **dict.fromkeys(_ONE_THREAD, "1")}
+    return {**os.environ, **dict.fromkeys(_ONE_THREAD, "1"), **_KEPT_MEMORY}

@@ -8,6 +8,7 @@ from typing import Protocol
 
 import msgspec
 
+from railguard.audit.cluster import Cluster
 from railguard.audit.pool import Pool
 from railguard.audit.store import Store
 from railguard.audit.walk import SettingsSeen, Step, skipped, walk
@@ -41,6 +42,17 @@ def audit(plan: Plan, store: Store, workers: int, skips: tuple[str, ...], watche
     """
     with Pool(plan, workers) as pool:
         collect(plan, store, pool, skips, watcher)
+
+
+def audit_on(
+    plan: Plan, store: Store, address: str, skips: tuple[str, ...], watcher: Watcher
+) -> None:
+    """Audit the roots of a plan on a cluster.
+
+    Raises UsageError: a root is not there. ClusterError: the cluster cannot be used.
+    """
+    with Cluster(plan, address) as cluster:
+        collect(plan, store, cluster, skips, watcher)
 
 
 def collect(

@@ -214,11 +214,12 @@ def _connected(place: Path) -> sqlite3.Connection:
     """Open the file for writing."""
     try:
         base = sqlite3.connect(place, isolation_level="DEFERRED", timeout=1.0)
-        base.execute("PRAGMA journal_mode = WAL")
-        base.execute("PRAGMA synchronous = NORMAL")
         tables = {row[0] for row in base.execute("SELECT name FROM sqlite_master")}
         if tables and "about" not in tables:
+            base.close()
             raise UsageError(f"{place} is no audit's file.", remedy="Name another with --to.")
+        base.execute("PRAGMA journal_mode = WAL")
+        base.execute("PRAGMA synchronous = NORMAL")
         base.executescript(schema())
     except sqlite3.Error as error:
         raise UsageError(

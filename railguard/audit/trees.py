@@ -9,6 +9,7 @@ from typing import IO, Any, Protocol, cast
 from railguard.audit.archives import Archive, ArchiveError, guarded, opened
 from railguard.audit.wire import Budget, Task
 from railguard.deck.source import Files
+from railguard.errors import UsageError
 
 OPEN_ARCHIVES = 3
 """Archives a worker keeps open: one after another is read, and one may lie in another."""
@@ -109,15 +110,25 @@ class Bucket:
     """What fsspec reaches under a URL."""
 
     def __init__(self, url: str) -> None:
-        from fsspec.core import url_to_fs  # the extra `audit` brings it
-
+        try:
+            from fsspec.core import url_to_fs
+        except ImportError as error:
+            raise UsageError(
+                f"The URL {url} needs fsspec.", remedy="pip install 'railguard[audit]'."
+            ) from error
         self._fs, base = url_to_fs(url)
         self._base = str(base).rstrip("/")
 
     def read(self, path: Path, most: int) -> bytes:
         """Return a file's bytes, but never more than one over `most`."""
-        with self._fs.open(self._at(path), "rb", block_size=_BLOCK) as file:
-            return bytes(file.read(most + 1))
+        try:
+            return bytes(self._fs.cat_file(self._at(path), start=0, end=most + 1))
+        except FileNotFoundError:
+            raise
+        except (OSError, ValueError):
+            # A range of an empty file is refused by some stores.
+            with self._fs.open(self._at(path), "rb") as file:
+                return bytes(file.read(most + 1))
 
     def open(self, path: Path) -> IO[bytes]:
         """Open a file for reading from anywhere in it."""
@@ -142,19 +153,16 @@ class Bucket:
 
     def listing(self, folder: str) -> list[dict[str, Any]]:
         """Return what stands in a folder, as fsspec describes it."""
-        return list(self._fs.ls(f"{self._base}/{folder}".rstrip("/"), detail=True))
+        found = list(self._fs.ls(self._at(Path(folder)), detail=True))
+        self._fs.invalidate_cache()  # a listing is read once, and would be kept for ever
+        return found
 
     def below(self, name: str) -> str:
         """Return a full name as seen from the URL."""
         return name.strip("/")[len(self._base.strip("/")) :].strip("/")
 
     def _at(self, path: Path) -> str:
-        plain = _plain(path)
-        return f"{self._base}/{plain}" if plain else self._base
-
-
-_BLOCK = 1 << 18
-"""Bytes fetched at once: nearly every netlist is smaller."""
+        return "/".join(filter(None, (self._base, _plain(path))))
 
 
 class Over:

@@ -29,7 +29,9 @@ Step = Task | Outcome | SettingsSeen
 
 
 def walk(root: int, name: str, skips: tuple[str, ...]) -> Iterator[Step]:
-    """Yield what lies below a root, folder by folder, each in order of its names.
+    """Yield what lies below a root, folder by folder, in the order the system lists it.
+
+    A folder is not gone through as a whole first: it may hold millions of files.
 
     name   the root: a folder, a file or a URL
     skips  patterns of names, or of paths below the root, that are left out
@@ -59,7 +61,7 @@ def _in_folder(
 ) -> Iterator[Step]:
     try:
         own = folder.stat()
-        entries = sorted(os.scandir(folder), key=lambda entry: entry.name)
+        entries = os.scandir(folder)
     except OSError as error:
         yield _passed(root, below or ".", f"The folder cannot be read: {error.strerror}.")
         return
@@ -117,11 +119,13 @@ def _in_bucket(root: int, url: str, skips: tuple[str, ...]) -> Iterator[Step]:
     bucket = Bucket(url)
     folders = [""]
     while folders:
-        entries = bucket.listing(folders.pop())
+        folder = folders.pop()
+        entries = bucket.listing(folder)
         found = sorted((bucket.below(str(entry["name"])), entry["type"]) for entry in entries)
         below = []
         for path, sort in found:
-            if not path or skipped(path, skips):
+            # A store may list a folder in itself, as a file of no length or as a folder.
+            if PurePosixPath(path).parent != PurePosixPath(folder) or skipped(path, skips):
                 continue
             if sort == "directory":
                 below.append(path)

@@ -60,6 +60,11 @@ def audit() -> None:
     "--workers", type=click.IntRange(1, 256), help="Processes at work [one for each core]."
 )
 @click.option(
+    "--cluster",
+    metavar="ADDRESS",
+    help="Work on this dask.distributed cluster: tcp://host:8786.",
+)
+@click.option(
     "--seconds",
     type=click.IntRange(1, 86_400),
     default=30,
@@ -81,10 +86,11 @@ def run(
     trust_settings: bool,
     hold_at: Severity | None,
     workers: int | None,
+    cluster: str | None,
     seconds: int,
     megabytes: int,
 ) -> None:
-    """Audit folders, archives (zip, tar, gz) and single files.
+    """Audit folders, archives (zip, tar, gz), single files, and fsspec URLs (s3://bucket/boards).
 
     Stopped at any moment, the same command goes on. Files whose content, settings and railguard
     have not changed are not reviewed again. No link is followed. Status 0: done; 2: not carried
@@ -94,14 +100,15 @@ def run(
     from railguard.audit.build import identity
     from railguard.audit.progress import Display
     from railguard.audit.store import Store
+    from railguard.audit.trees import is_url
     from railguard.audit.walk import USUAL_SKIPS
     from railguard.audit.wire import Budget, Plan
 
     for root in roots:
-        if not Path(root).exists():
+        if not is_url(root) and not Path(root).exists():
             raise UsageError(f"{root} does not exist.", remedy="Check the path.")
     plan = Plan(
-        roots=tuple(str(Path(root).absolute()) for root in roots),
+        roots=tuple(root if is_url(root) else str(Path(root).absolute()) for root in roots),
         labels=running.labels(roots),
         settings=_text(settings),
         hold_at=hold_at,
@@ -114,10 +121,12 @@ def run(
     with Store(target) as store:
         if store.resumed:
             console.print("Going on with the run that was not finished.")
+        left_out = (*USUAL_SKIPS, *skips, *_own(target))
         with Display(console) as display:
-            running.audit(
-                plan, store, workers or _cores(), (*USUAL_SKIPS, *skips, *_own(target)), display
-            )
+            if cluster is not None:
+                running.audit_on(plan, store, cluster, left_out, display)
+            else:
+                running.audit(plan, store, workers or _cores(), left_out, display)
     console.print(
         f"{display.done} files met, {display.reviewed} designs reviewed, {display.same} unchanged."
     )

@@ -1,6 +1,9 @@
 """An audit of a folder, as the command runs it."""
 
+import contextlib
 import json
+import os
+import signal
 import sqlite3
 from pathlib import Path
 
@@ -62,3 +65,19 @@ def run_audit(tmp_path):
         return Audited(place)
 
     return run
+
+
+STARTED = []
+"""Processes a test has started, each the first of a group of its own."""
+
+
+@pytest.fixture(autouse=True)
+def nothing_left_running():
+    """End what a test leaves running, however it ended."""
+    yield
+    while STARTED:
+        run = STARTED.pop()
+        with contextlib.suppress(ProcessLookupError):
+            if run.poll() is None:
+                os.killpg(run.pid, signal.SIGKILL)
+        run.communicate()

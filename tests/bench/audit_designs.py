@@ -6,8 +6,10 @@ fault. They call their op-amps from `opamps.lib` beside them, so that ngspice ca
 Run: python tests/bench/audit_designs.py FOLDER [COUNT]
 """
 
+import math
 import random
 import sys
+from collections.abc import Callable
 from pathlib import Path
 
 FOLDER_HOLDS = 500
@@ -15,7 +17,7 @@ SOUND_SHARE = 0.9
 AMPLIFIERS = (1, 2, 3, 3, 4, 4, 4, 4, 5, 5, 6, 7)
 E24 = (10, 11, 12, 13, 15, 16, 18, 20, 22, 24, 27, 30, 33, 36, 39, 43, 47, 51, 56, 62, 68, 75, 82)
 DUALS = ("TL072", "TL082", "OPA2134", "OPA2277", "OPA2604")
-FAULTS = ("gain", "no-decoupling", "swapped-inputs", "heavy-load", "no-bias")
+FAULTS = ("gain", "no-decoupling", "swapped-inputs", "high-rails", "no-bias")
 
 MODEL = """* A plain linear op-amp: enough for an operating point.
 .subckt {name} p n vp vn o
@@ -42,6 +44,12 @@ def design(number: int) -> tuple[str, str]:
     return _Board(made, fault).netlist(number), fault
 
 
+def preferred(ohms: float) -> str:
+    """Return the nearest value of the E24 series, as a card has it."""
+    decade = 10 ** math.floor(math.log10(ohms) - 1)
+    return f"{min((base * decade for base in (*E24, 91, 100)), key=lambda o: abs(o - ohms)):.0f}"
+
+
 class _Board:
     def __init__(self, made: random.Random, fault: str) -> None:
         self.made = made
@@ -66,17 +74,25 @@ class _Board:
         broken = self.made.randrange(amplifiers) if self.fault else -1
         for k in range(amplifiers):
             self.cards.append(f"* --- stage {k + 1}")
-            stage = self.made.choice((self.inverting, self.amplifying, self.low_pass, self.summing))
-            net = stage(k, net, self.fault if k == broken else "")
+            fault = self.fault if k == broken else ""
+            net = self.made.choice(self.stages(fault))(k, net, fault)
         self.add("R", net, "logger", 100)
         self.add("C", "logger", 0, "1n")
         self.add("R", "logger", 0, "100k")
         head = [f"Gauge board {number}: sensor to logger", '.include "opamps.lib"']
         return "\n".join([*head, *self.cards, ".op", ".end", ""])
 
+    def stages(self, fault: str) -> tuple[Callable[[int, str, str], str], ...]:
+        """Return the stages that can have a fault."""
+        if fault == "no-bias":
+            return (self.amplifying,)
+        if fault == "gain":
+            return (self.inverting, self.amplifying, self.summing)
+        return (self.inverting, self.amplifying, self.summing, self.low_pass)
+
     def supply(self, packages: int) -> None:
         for rail, source, level in (("vpp", "cp", 12), ("vnn", "cn", -12)):
-            self.add("V", source, 0, level)
+            self.add("V", source, 0, level * (2.5 if self.fault == "high-rails" else 1))
             self.add("R", source, rail, 0.22)
             self.add("C", rail, 0, "47u")
             self.add("C", rail, 0, "10u")
@@ -99,22 +115,22 @@ class _Board:
         self.add("C", f"f{k}", 0, "220p")
         return f"f{k}"
 
-    def exit(self, k: int, fault: str) -> str:
+    def exit(self, k: int) -> str:
         self.add("R", f"o{k}", f"x{k}", 47)
         self.add("C", f"x{k}", 0, "470p")
-        self.add("R", f"x{k}", 0, 10 if fault == "heavy-load" else "22k")
+        self.add("R", f"x{k}", 0, "22k")
         self.add("R", f"x{k}", f"t{k}", "1k")
         self.add("C", f"t{k}", 0, "100p")
         return f"x{k}"
 
     def inverting(self, k: int, net: str, fault: str) -> str:
         at, r = self.entry(k, net), self.ohms()
-        self.add("R", at, f"n{k}", f"{r:.0f}")
-        self.add("R", f"n{k}", f"o{k}", f"{r * (1000 if fault == 'gain' else 1.5):.0f}")
+        self.add("R", at, f"n{k}", preferred(r))
+        self.add("R", f"n{k}", f"o{k}", preferred(r * (1000 if fault == "gain" else 1.5)))
         self.add("C", f"n{k}", f"o{k}", "47p")
-        self.add("R", f"p{k}", 0, f"{r * 0.6:.0f}")
+        self.add("R", f"p{k}", 0, preferred(r * 0.6))
         self.amplifier(k, f"p{k}", f"n{k}", fault)
-        return self.exit(k, fault)
+        return self.exit(k)
 
     def amplifying(self, k: int, net: str, fault: str) -> str:
         at, r = self.entry(k, net), self.ohms()
@@ -122,34 +138,34 @@ class _Board:
             self.add("C", at, f"p{k}", "1u")
         else:
             self.add("R", at, f"p{k}", "2.2k")
-        self.add("R", f"n{k}", 0, f"{r:.0f}")
-        self.add("R", f"n{k}", f"o{k}", f"{r * (1000 if fault == 'gain' else 0.8):.0f}")
+        self.add("R", f"n{k}", 0, preferred(r))
+        self.add("R", f"n{k}", f"o{k}", preferred(r * (1000 if fault == "gain" else 0.8)))
         self.add("C", f"n{k}", f"o{k}", "33p")
         self.amplifier(k, f"p{k}", f"n{k}", fault)
-        return self.exit(k, fault)
+        return self.exit(k)
 
     def low_pass(self, k: int, net: str, fault: str) -> str:
         at, r = self.entry(k, net), self.ohms()
-        self.add("R", at, f"m{k}", f"{r:.0f}")
-        self.add("R", f"m{k}", f"p{k}", f"{r:.0f}")
+        self.add("R", at, f"m{k}", preferred(r))
+        self.add("R", f"m{k}", f"p{k}", preferred(r))
         self.add("C", f"m{k}", f"n{k}", "2.2n")
         self.add("C", f"p{k}", 0, "1n")
         self.add("R", f"n{k}", f"o{k}", 0.001)
         self.amplifier(k, f"p{k}", f"n{k}", fault)
-        return self.exit(k, fault)
+        return self.exit(k)
 
     def summing(self, k: int, net: str, fault: str) -> str:
         at, r = self.entry(k, net), self.ohms()
         self.add("R", "vpp", f"b{k}", "100k")
         self.add("R", f"b{k}", 0, "1k")
         self.add("C", f"b{k}", 0, "100n")
-        self.add("R", f"b{k}", f"n{k}", f"{r:.0f}")
-        self.add("R", at, f"n{k}", f"{r:.0f}")
-        self.add("R", f"n{k}", f"o{k}", f"{r * (1000 if fault == 'gain' else 1):.0f}")
+        self.add("R", f"b{k}", f"n{k}", preferred(r))
+        self.add("R", at, f"n{k}", preferred(r))
+        self.add("R", f"n{k}", f"o{k}", preferred(r * (1000 if fault == "gain" else 1)))
         self.add("C", f"n{k}", f"o{k}", "22p")
-        self.add("R", f"p{k}", 0, f"{r * 0.33:.0f}")
+        self.add("R", f"p{k}", 0, preferred(r * 0.33))
         self.amplifier(k, f"p{k}", f"n{k}", fault)
-        return self.exit(k, fault)
+        return self.exit(k)
 
 
 def write(folder: Path, count: int) -> dict[str, str]:
