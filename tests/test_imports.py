@@ -21,7 +21,7 @@ ORDER = (
     ("engine",),
     ("rules",),
     ("reviewing",),
-    ("simulated",),
+    ("simulated", "redline"),
     ("report",),
     ("audit",),
     ("commands", "plugins"),

@@ -27,6 +27,11 @@ _COMMANDS = {
         "audit",
         "Review a whole archive of designs, and see what changed.",
     ),
+    "redline": (
+        "railguard.commands.redline",
+        "redline",
+        "Propose changed cards, each proved by a review.",
+    ),
     "rules": ("railguard.commands.rules", "rules", "List the rules, or explain one."),
     "devices": (
         "railguard.commands.devices",
@@ -62,6 +67,7 @@ _HELP = """Check the op-amp stages of SPICE netlists against their devices' limi
 \b
 railguard review station.cir         one netlist, before its review
 railguard review boards/*.net        many; a table first
+railguard redline station.cir        what to change, as a diff
 railguard rules headroom-output      what a rule judges, and its limits
 railguard devices TL072CP            what is known of a device
 """

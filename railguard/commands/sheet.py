@@ -8,11 +8,11 @@ import click
 from railguard.analysis.solution import Options
 from railguard.errors import UsageError
 from railguard.report import sheet as sheets
-from railguard.report.visible import visible
+from railguard.report import sheet_forms as forms
 from railguard.reviewing import review as run
 from railguard.settings import file as settings_file
 
-_BYTES = {"csv": sheets.as_csv, "json": sheets.as_json, "markdown": sheets.as_markdown}
+_BYTES = {"csv": forms.as_csv, "json": forms.as_json, "markdown": forms.as_markdown}
 
 
 @click.command()
@@ -38,28 +38,6 @@ def sheet(
     if how != "screen":
         sys.stdout.buffer.write(_BYTES[how](found))
         return
-    _screen(found)
-
-
-def _screen(found: tuple[sheets.Row, ...]) -> None:
     from rich.console import Console
-    from rich.table import Table
-    from rich.text import Text
 
-    console = Console(highlight=False)
-    before = ""
-    table = Table(box=None)
-    for row in found:
-        name = f"{row.designator}  ({row.file})"
-        if name != before:
-            if before:
-                console.print(table)
-                console.print()
-            console.print(Text(visible(name), style="bold"))
-            table = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0))
-            for heading in sheets.HEADINGS:
-                table.add_column(heading, overflow="fold", no_wrap=heading == "quantity")
-            before = name
-        table.add_row(*(Text(visible(cell)) for cell in sheets.cells(row)))
-    if before:
-        console.print(table)
+    forms.screen(found, Console(highlight=False, markup=False, emoji=False))

@@ -1,24 +1,49 @@
 """The stage sheet: every op-amp, pass or not, with its numbers and where each came from.
 
-Rows first (plain values), then one renderer a format; all show the same rows, so that the sheet
-filed as review evidence and the one on the screen say the same.
+Rows first (plain values); `report.sheet_forms` writes them, and every form shows the same rows, so
+that the sheet filed as review evidence and the one on the screen say the same.
 """
 
-import csv
-import io
 import math
+from collections.abc import Iterator
+from typing import Protocol
 
 import msgspec
 
-from railguard.analysis.stage import Rail, Range, Stage
-from railguard.report.escaping import csv_cell, markdown
-from railguard.report.json_text import encoded
+from railguard import __version__
+from railguard.analysis.corners import DEFAULT_CAPACITOR, DEFAULT_RESISTOR
+from railguard.analysis.stage import Bound, Rail, Range, Stage
+from railguard.devices.model import Figure
+from railguard.report.sheet_basis import bases, figure_basis, phase_basis, why
+from railguard.report.words import near
 from railguard.reviewing import DesignReview, Review
-from railguard.units import si
+from railguard.rules.finding import Finding
+from railguard.rules.wording import listed, origin
+from railguard.units import percent, si
+
+PARTS = ("demand", "worst", "rss", "sampled", "available", "guaranteed")
+"""What is given of a quantity: nominal demand; extreme values; root of squares; Monte Carlo; what
+the device does typically; what its data sheet guarantees."""
+HEADINGS = {
+    "demand": "asked",
+    "worst": "worst",
+    "rss": "RSS",
+    "sampled": "sampled",
+    "available": "typical",
+    "guaranteed": "guaranteed",
+}
+BASES = ("demand", "worst", "available", "guaranteed")
+NEXT_TO_NOTHING = 1e-9
+"""Share of the other end of a range below which a number is rounding of the solution."""
 
 
 class Row(msgspec.Struct, frozen=True, kw_only=True):
-    """One line of the sheet. Numbers in SI units; None: not worked out, and `basis` says why."""
+    """One line of the sheet. Numbers in SI units; None: not worked out, and the basis says why.
+
+    *_low, *_high  the two ends; a single figure stands in high
+    *_basis        where the figures of that kind came from
+    text           what is no number
+    """
 
     file: str
     designator: str
@@ -28,28 +53,73 @@ class Row(msgspec.Struct, frozen=True, kw_only=True):
     demand_high: float | None = None
     worst_low: float | None = None
     worst_high: float | None = None
+    rss_low: float | None = None
+    rss_high: float | None = None
+    sampled_low: float | None = None
+    sampled_high: float | None = None
     available_low: float | None = None
     available_high: float | None = None
     guaranteed_low: float | None = None
     guaranteed_high: float | None = None
     text: str = ""
-    basis: str = ""
+    demand_basis: str = ""
+    worst_basis: str = ""
+    available_basis: str = ""
+    guaranteed_basis: str = ""
 
 
-HEADINGS = ("quantity", "demand", "worst", "available", "guaranteed", "basis")
+class _Maker(Protocol):
+    """Makes a row of one stage."""
+
+    def __call__(self, quantity: str, unit: str = "", **fields: object) -> Row: ...
 
 
 def rows(review: Review, only: str = "") -> tuple[Row, ...]:
-    """Return the rows of every stage, or of the one called `only` in either spelling."""
+    """Return the rows of every deck and stage.
+
+    only  a designator in either spelling, or a package's, whatever its case: that one's rows
+    """
     found: list[Row] = []
     for design in review.designs:
-        for stage in design.design.stages:
-            if not only or only in (stage.designator, stage.schematic):
-                found += _stage(design, stage)
+        stages = [s for s in design.design.stages if not only or _is_called(s, only)]
+        if stages or not only:
+            found += _deck(design)
+        for stage in stages:
+            found += _stage(design, stage)
     return tuple(found)
 
 
-def _stage(design: DesignReview, stage: Stage) -> list[Row]:
+def _is_called(stage: Stage, name: str) -> bool:
+    names = (stage.designator, stage.schematic, stage.package)
+    return name.casefold() in (n.casefold() for n in names)
+
+
+def _deck(design: DesignReview) -> Iterator[Row]:
+    """Yield what a sheet must say to be evidence: which text was read, with which statements."""
+    settings, tolerances = design.design.settings, design.design.settings.tolerances
+
+    def said(quantity: str, text: str) -> Row:
+        return Row(file=design.path, designator="", quantity=quantity, text=text)
+
+    yield said("deck", f"{design.path}, sha256 {design.design.circuit.sha256}")
+    yield said("reviewed", f"by railguard {__version__}, as of {settings.as_of.isoformat()}")
+    yield said("statements", near(settings.file) or "in the netlist alone")
+    yield said("taken for", f"a {design.design.kind}: {design.design.kind_reason}")
+    shares = [
+        f"{name} {percent(default if stated is None else stated)} "
+        f"({'default' if stated is None else 'stated'})"
+        for name, stated, default in (
+            ("resistors", tolerances.resistor, DEFAULT_RESISTOR),
+            ("capacitors", tolerances.capacitor, DEFAULT_CAPACITOR),
+        )
+    ]
+    yield said("tolerances", f"{listed(shares)}, where no card states its own")
+    cold, hot = settings.ambient or (25.0, 25.0)
+    yield said("ambient", f"{si(cold, '°C')} to {si(hot, '°C')}")
+    yield said("verdict", f"{design.verdict}: {design.judged} judged, {design.open} not checked")
+
+
+def _stage(design: DesignReview, stage: Stage) -> Iterator[Row]:
     def row(quantity: str, unit: str = "", **fields: object) -> Row:
         return Row(
             file=design.path,
@@ -59,105 +129,202 @@ def _stage(design: DesignReview, stage: Stage) -> list[Row]:
             **fields,  # type: ignore[arg-type]  # msgspec checks the names when the row is made
         )
 
-    output, inputs, current, loop = stage.output, stage.inputs, stage.current, stage.loop
-    unknown = {part: reason.why for part, reason in stage.unknown.items()}
-    device = stage.family
-    sheet = str(device.source) if device is not None else unknown.get("device", "no device known")
     use = stage.use if stage.use_stated else f"{stage.use} (worked out)"
-    return [
-        row("device", text=f"{stage.device}, {stage.topology}, {use}", basis=sheet),
-        row(
-            "supply",
+    device = stage.family
+    yield row(
+        "device",
+        text=f"{stage.device}, {stage.topology}; {use}",
+        demand_basis=f"netlist, {stage.location}" if stage.location else "netlist",
+        guaranteed_basis=str(device.source) if device is not None else why(stage, "device"),
+    )
+    yield from _supply(design, stage, row)
+    for net, gain in stage.gain:
+        yield row(
+            "gain", "V/V", demand_high=gain, text=f"from {net}", demand_basis="netlist, solved"
+        )
+    yield _ranges(row, "output", "V", stage.output, stage, "output")
+    yield _cleaned(row("output current", "A", **_current(stage)))
+    yield _ranges(row, "inputs", "V", stage.inputs, stage, "input")
+    yield from _dynamics(stage, row)
+    yield row(
+        "dissipation",
+        "W",
+        worst_high=stage.dissipation,
+        text=_junction(stage),
+        worst_basis=why(stage, "dissipation")
+        or f"whole package, every channel at its worst level; supply current "
+        f"{figure_basis(device.supply_current if device else Figure())}",
+        guaranteed_basis=f"thermal resistance {origin(device.theta_basis)}"
+        if device is not None and stage.junction is not None
+        else "",
+    )
+    yield row(
+        "offset at output",
+        "V",
+        worst_high=stage.output.offset,
+        worst_basis=f"offset and bias current of this stage and those before; offset "
+        f"{figure_basis(device.offset_voltage if device else Figure())}",
+    )
+    yield from (_decoupling(row("decoupling"), rail) for rail in _rails(design, stage))
+    yield _largest(row("largest input", stage.allowed.unit if stage.allowed else "V"), stage)
+    yield row("findings", text=_findings(design, stage))
+    yield row("not checked", text=_open(design, stage))
+
+
+def _supply(design: DesignReview, stage: Stage, row: _Maker) -> Iterator[Row]:
+    supply, device = stage.supply, stage.family
+    for word, level, worst, net in (
+        ("positive", supply.positive, supply.positive_worst, supply.positive_net),
+        ("negative", supply.negative, supply.negative_worst, supply.negative_net),
+    ):
+        rail = next((r for r in design.design.rails if r.net == net), None)
+        told = rail.origin if rail is not None and rail.origin else origin(supply.basis)
+        share = percent(rail.tolerance) if rail is not None else ""
+        sort = "stated" if rail is not None and rail.tolerance_stated else "default"
+        yield row(
+            f"{word} supply",
             "V",
-            demand_low=stage.supply.negative,
-            demand_high=stage.supply.positive,
-            worst_low=stage.supply.negative_worst.low,
-            worst_high=stage.supply.positive_worst.high,
-            available_high=device.supply_high if device else None,
-            available_low=device.supply_low if device else None,
-            basis=unknown.get("supply", stage.supply.basis),
-        ),
-        *(row("gain", "V/V", demand_high=gain, text=f"from {net}") for net, gain in stage.gain),
-        row("output", "V", basis=_basis(stage, "output"), **_range(output)),
-        row(
-            "output current",
-            "A",
-            demand_low=_negative(current.demand_sink),
-            demand_high=current.demand_source,
-            worst_low=_negative(current.worst_sink),
-            worst_high=current.worst_source,
-            available_low=_negative(current.sink.typical),
-            available_high=current.source.typical,
-            guaranteed_low=_negative(current.available_sink),
-            guaranteed_high=current.available_source,
-            basis=_basis(stage, "current"),
-        ),
-        row("inputs", "V", basis=_basis(stage, "input"), **_range(inputs)),
-        row(
-            "slew rate",
-            "V/s",
-            demand_high=output.slew,
-            available_high=device.slew_rate.typical if device else None,
-            guaranteed_high=device.slew_rate.guaranteed if device else None,
-            basis=unknown.get("output", "netlist"),
-        ),
-        row("bandwidth", "Hz", demand_high=loop.band, available_high=loop.crossover),
-        row("noise gain", "V/V", demand_low=loop.noise_gain_dc, demand_high=loop.noise_gain),
-        row("loop gain", "V/V", available_high=loop.loop_gain, text=_at(loop.band)),
-        row(
-            "phase margin",
-            "°",
-            available_high=loop.phase_margin,
-            available_low=loop.margins.low,
-            text="" if loop.phase_margin is not None else "bounds: not all of it is listed",
-        ),
-        row("dissipation", "W", demand_high=stage.dissipation, text=_junction(stage)),
-        row("offset at output", "V", demand_high=output.offset),
-        *(_rail(row("decoupling"), rail) for rail in _rails(design, stage)),
-        row(
-            "largest input",
-            stage.allowed.unit if stage.allowed else "V",
-            available_low=stage.allowed.low if stage.allowed else None,
-            available_high=stage.allowed.high if stage.allowed else None,
-            text=f"{stage.allowed.net}, limited by {stage.allowed.limited_by}"
-            if stage.allowed
-            else "not worked out",
-        ),
-    ]
+            demand_high=level,
+            worst_low=worst.low,
+            worst_high=worst.high,
+            text=f"net {net}" if net else "no such pin",
+            demand_basis=why(stage, "supply") or told,
+            worst_basis=f"tolerance {share} ({sort})" if rail is not None and level else "ground",
+        )
+    basis = device.supply_basis if device is not None else {}
+    yield row(
+        "total supply",
+        "V",
+        demand_high=supply.total,
+        demand_basis=why(stage, "supply") or "positive less negative supply",
+        guaranteed_low=device.supply_low if device else None,
+        guaranteed_high=device.supply_high if device else None,
+        guaranteed_basis=f"recommended range, {origin(basis.get('high', 'memory'))}"
+        if device is not None
+        else "",
+    )
 
 
-def _range(part: object) -> dict[str, float | None]:
-    ranges: dict[str, Range] = {
-        name: getattr(part, name) for name in ("demand", "worst", "available", "guaranteed")
+def _ranges(row: _Maker, quantity: str, unit: str, part: object, stage: Stage, name: str) -> Row:
+    fields: dict[str, float | None] = {}
+    for kind in PARTS:
+        found: Range = getattr(part, kind, Range())
+        fields |= {f"{kind}_low": found.low, f"{kind}_high": found.high}
+    bounds: tuple[Bound, Bound] = (part.high, part.low)  # type: ignore[attr-defined]
+    return _cleaned(row(quantity, unit, **fields, **bases(bounds, stage, name)))
+
+
+def _current(stage: Stage) -> dict[str, float | str | None]:
+    current = stage.current
+    return {
+        "demand_low": _negative(current.demand_sink),
+        "demand_high": current.demand_source,
+        "worst_low": _negative(current.worst_sink),
+        "worst_high": current.worst_source,
+        "sampled_low": current.sampled.low,
+        "sampled_high": current.sampled.high,
+        "available_low": _negative(current.sink.typical),
+        "available_high": current.source.typical,
+        "guaranteed_low": _negative(current.sink.guaranteed),
+        "guaranteed_high": current.source.guaranteed,
+        "text": f"mostly into {current.into}" if current.into else "",
+        **bases((current.source, current.sink), stage, "current"),
     }
-    return {f"{n}_{end}": getattr(r, end) for n, r in ranges.items() for end in ("low", "high")}
 
 
-def _basis(stage: Stage, part: str) -> str:
-    reason = next((r.why for p, r in stage.unknown.items() if p == part), "")
-    bound = {
-        "output": stage.output.high,
-        "current": stage.current.source,
-        "input": stage.inputs.high,
-    }[part]
-    known = f"demand {bound.demand_basis}, limit {bound.guaranteed_basis}"
-    if bound.condition:
-        known += f" ({bound.condition})"
-    return f"{known}; {reason}" if reason else known
+def _dynamics(stage: Stage, row: _Maker) -> Iterator[Row]:
+    loop, device = stage.loop, stage.family
+    speed = device.gain_bandwidth if device is not None else Figure()
+    slew = device.slew_rate if device is not None else Figure()
+    at = f"at {si(loop.band, 'Hz')}" if loop.band else ""
+    open_loop = why(stage, "loop") or figure_basis(speed)
+    yield row(
+        "slew rate",
+        "V/s",
+        demand_high=stage.output.slew,
+        available_high=slew.typical,
+        guaranteed_high=slew.guaranteed,
+        demand_basis=why(stage, "output") or origin(stage.output.high.demand_basis),
+        available_basis=origin(slew.typical_basis) if slew.typical is not None else "",
+        guaranteed_basis=origin(slew.guaranteed_basis) if slew.guaranteed is not None else "",
+    )
+    yield row(
+        "bandwidth",
+        "Hz",
+        demand_high=loop.band,
+        available_high=loop.crossover,
+        demand_basis="top of the stated band" if loop.band else "no band is stated",
+        available_basis=f"where the loop gain is one; gain-bandwidth {open_loop}",
+    )
+    for where, value in (("at DC", loop.noise_gain_dc), (at or "in band", loop.noise_gain)):
+        yield row(
+            "noise gain",
+            "V/V",
+            demand_high=value,
+            text=where,
+            demand_basis=why(stage, "loop") or "netlist, solved",
+        )
+    yield row(
+        "loop gain",
+        "V/V",
+        available_high=loop.loop_gain,
+        text=at,
+        available_basis=f"gain-bandwidth {open_loop}" if loop.band else "no band is stated",
+    )
+    bounds = loop.phase_margin is None and loop.margins.low is not None
+    yield row(
+        "phase margin",
+        "°",
+        available_low=loop.margins.low if bounds else None,
+        available_high=loop.margins.high if bounds else loop.phase_margin,
+        text="between these, as not every figure is listed" if bounds else "",
+        available_basis=why(stage, "loop") or phase_basis(stage),
+    )
+
+
+def _largest(row: Row, stage: Stage) -> Row:
+    allowed = stage.allowed
+    if allowed is None:
+        reason = "no signal reaches it alone, or none keeps every stage in range"
+        return msgspec.structs.replace(row, text=f"not worked out: {reason}")
+    return _cleaned(
+        msgspec.structs.replace(
+            row,
+            guaranteed_low=allowed.low,
+            guaranteed_high=allowed.high,
+            text=f"at {allowed.net}, limited by {allowed.limited_by}",
+            guaranteed_basis="this input moved alone, all others at rest; guaranteed limits, "
+            "typical ones where nothing is guaranteed",
+        )
+    )
+
+
+def _findings(design: DesignReview, stage: Stage) -> str:
+    def about(findings: tuple[Finding, ...]) -> Iterator[str]:
+        for finding in findings:
+            names = {stage.designator, stage.package, stage.schematic}
+            if names & set(finding.designators):
+                waived = ", waived" if finding.waiver is not None else ""
+                yield f"{finding.rule} ({finding.severity}{waived})"
+            yield from about(finding.consequences)
+
+    return "; ".join(dict.fromkeys(about(design.findings))) or "none"
+
+
+def _open(design: DesignReview, stage: Stage) -> str:
+    names = {stage.designator, stage.schematic, stage.package}
+    notes = [f"{n.rule}: {n.why}" for n in design.not_checked if n.subject in names]
+    return "; ".join(notes) or "nothing"
 
 
 def _negative(value: float | None) -> float | None:
     return None if value is None else -value
 
 
-def _at(hertz: float | None) -> str:
-    return f"at {si(hertz, 'Hz')}" if hertz else "no band stated"
-
-
 def _junction(stage: Stage) -> str:
     if stage.junction is None:
-        return "whole package"
-    return f"whole package; junction at {stage.junction:.0f} °C in the worst listed case"
+        return ""
+    return f"junction at {stage.junction:.0f} °C in the case of most thermal resistance"
 
 
 def _rails(design: DesignReview, stage: Stage) -> list[Rail]:
@@ -165,64 +332,52 @@ def _rails(design: DesignReview, stage: Stage) -> list[Rail]:
     return [rail for rail in design.design.rails if rail.net in nets]
 
 
-def _rail(row: Row, rail: Rail) -> Row:
+def _decoupling(row: Row, rail: Rail) -> Row:
     fitted = ", ".join(f"{c.designator} {si(c.farads, 'F')}" for c in rail.decoupling) or "none"
-    text = f"{rail.net}: {fitted}, for {len(rail.packages)} package" + "s" * (
-        len(rail.packages) > 1
+    packages = f"{len(rail.packages)} package" + "s" * (len(rail.packages) != 1)
+    return msgspec.structs.replace(
+        row,
+        text=f"{rail.net} to {listed(rail.returns) or '0'}: {fitted}, for {packages}",
+        demand_basis="netlist, which knows no distance",
     )
-    return msgspec.structs.replace(row, text=text, basis=rail.basis)
 
 
-def cells(row: Row) -> tuple[str, ...]:
-    """Return a row as the screen and Markdown show it, in the order of HEADINGS."""
-    pairs = [
-        _pair(getattr(row, f"{name}_low"), getattr(row, f"{name}_high"), row.unit)
-        for name in ("demand", "worst", "available", "guaranteed")
-    ]
-    first = pairs[0] if pairs[0] else row.text
-    basis = row.basis if first is row.text or not row.text else f"{row.text}; {row.basis}"
-    return (row.quantity, first, *pairs[1:], basis.strip("; "))
+def _cleaned(row: Row) -> Row:
+    """Write what is only rounding of the solution as zero, and no basis where there is no worst."""
+    changes: dict[str, float | str] = {}
+    if row.worst_low is None and row.worst_high is None:
+        changes["worst_basis"] = ""
+    for part in PARTS:
+        low, high = getattr(row, f"{part}_low"), getattr(row, f"{part}_high")
+        for name, value, other in (("low", low, high), ("high", high, low)):
+            if value and other and abs(value) < NEXT_TO_NOTHING * abs(other):
+                changes[f"{part}_{name}"] = 0.0
+    return msgspec.structs.replace(row, **changes) if changes else row
 
 
-def _pair(low: float | None, high: float | None, unit: str) -> str:
+def range_of(row: Row, part: str) -> str:
+    """Return one kind of figure of a row in words: `-9 V to 9 V`, or "" where there is none."""
+    low, high = getattr(row, f"{part}_low"), getattr(row, f"{part}_high")
     known = [v for v in (low, high) if v is not None and math.isfinite(v)]
     if not known:
         return ""
     if len(known) == 1 or low == high:
-        return si(known[0], unit)
-    return f"{si(low, unit)} to {si(high, unit)}"
+        return si(known[0], row.unit)
+    return f"{si(low, row.unit)} to {si(high, row.unit)}"
 
 
-def as_csv(sheet: tuple[Row, ...]) -> bytes:
-    """Return the sheet as CSV; a text that a spreadsheet would take for a formula is quoted."""
-    out = io.StringIO()
-    writer = csv.writer(out, lineterminator="\n")
-    writer.writerow(Row.__struct_fields__)
-    for row in sheet:
-        writer.writerow([_plain(getattr(row, name)) for name in Row.__struct_fields__])
-    return out.getvalue().encode()
+def basis_of(row: Row) -> str:
+    """Say where the figures of a row came from, kind by kind; a common basis once."""
+    every = {part: str(getattr(row, f"{part}_basis")) for part in BASES}
+    told = {part: text for part, text in every.items() if text}
+    if len(told) == 1:
+        return "".join(told.values())
+    return "; ".join(f"{HEADINGS[part]}: {text}" for part, text in told.items())
 
 
-def _plain(value: object) -> object:
-    if isinstance(value, str):
-        return csv_cell(value)
-    return "" if value is None else value
-
-
-def as_json(sheet: tuple[Row, ...]) -> bytes:
-    """Return the sheet as a JSON array of rows."""
-    return encoded(sheet)
-
-
-def as_markdown(sheet: tuple[Row, ...]) -> bytes:
-    """Return the sheet as one Markdown table a stage."""
-    lines: list[str] = []
-    before = ""
-    for row in sheet:
-        name = f"{row.file}: {row.designator}"
-        if name != before:
-            lines += ["", f"### {markdown(name)}", "", "| " + " | ".join(HEADINGS) + " |"]
-            lines.append("|" + " --- |" * len(HEADINGS))
-            before = name
-        lines.append("| " + " | ".join(markdown(cell) for cell in cells(row)) + " |")
-    return ("\n".join(lines).lstrip("\n") + "\n").encode()
+def cells(row: Row) -> tuple[str, ...]:
+    """Return a row as a page shows it: quantity, asked, worst, typical, guaranteed, basis."""
+    parts = [range_of(row, part) for part in BASES]
+    first = parts[0] or ("" if any(parts) else row.text)
+    note = "" if first is row.text else row.text
+    return (row.quantity, first, *parts[1:], "; ".join(filter(None, (note, basis_of(row)))))

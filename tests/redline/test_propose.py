@@ -1,0 +1,160 @@
+"""Proposals: every one cures its finding and brings none; what no card cures is left to words."""
+
+from pathlib import Path
+
+import pytest
+from eseries import eseries
+
+from railguard.deck.numbers import read_number
+from railguard.redline.proof import every
+from railguard.redline.propose import causes, proposals, redline
+from railguard.redline.reach import no_card
+from railguard.redline.source import of_review
+from railguard.reviewing import review, review_deck
+
+ROOT = Path(__file__).parents[2]
+FAULTS = sorted((ROOT / "fixtures" / "faults").glob("*.cir"))
+BY_CARD = {
+    "bias-no-dc-path", "decoupling-absent", "feedback-high", "feedback-low", "feedback-reversed",
+    "headroom-input", "headroom-output", "netlist-value-suffix", "supply-missing",
+    "supply-reversed",
+}  # fmt: skip
+
+
+def reviewed(path):
+    """Review one deck."""
+    return review(path, plugins=False).designs[0]
+
+
+def keys(findings):
+    """Return what names each finding."""
+    return {(f.rule, f.designators, f.nets) for f in every(tuple(findings))}
+
+
+@pytest.mark.parametrize("path", [p for p in FAULTS if p.stem in BY_CARD], ids=lambda p: p.stem)
+def test_each_proposal_cures_its_finding_and_brings_none(path):
+    """The edits, made here and reviewed here, do what the proposal says."""
+    before = reviewed(path)
+    source = of_review(before)
+    found = proposals(before)
+    assert path.stem in {p.finding.rule for p in found}
+    for proposal in found:
+        changed, _ = review_deck(source.patched(proposal.edits).deck(), before.design.settings)
+        assert keys([proposal.finding]).isdisjoint(keys(changed.findings))
+        assert keys(changed.findings) <= keys(before.findings)
+
+
+@pytest.mark.parametrize("path", FAULTS, ids=lambda p: p.stem)
+def test_what_no_card_cures_is_said_in_words(path):
+    """Every finding is either cured or advised on, with the reason."""
+    before = reviewed(path)
+    found = redline(before)
+    left = keys(a.finding for a in found.advice)
+    for finding in causes(before):
+        cured = any(finding.rule == g.rule for g in found.gone)
+        assert cured or keys([finding]) & left
+    if path.stem not in BY_CARD:
+        assert found.advice[0].why.startswith("No card cures it: "), found.advice[0].why
+        assert no_card(found.advice[0].finding, before.design)
+
+
+def test_devices_named_pass_where_the_fitted_one_fails():
+    """Each device, written onto the cards, leaves no finding of the limit that failed."""
+    path = ROOT / "fixtures" / "faults" / "headroom-input.cir"
+    (proposal,) = redline(reviewed(path)).proposals
+    assert proposal.finding.rule == "headroom-input"
+    assert len(proposal.instead) >= 3
+    for device in proposal.instead:
+        text = path.read_text().replace("LMC662C", device.code)
+        after = review(text, plugins=False).designs[0]
+        assert not [f for f in after.findings if f.rule == "headroom-input"]
+        assert all(figure.given for figure in device.figures)
+
+
+def test_devices_are_named_where_no_card_cures():
+    """8 V in all on a device for 5.5 V: devices for more, each with the supply it takes."""
+    path = ROOT / "fixtures" / "faults" / "supply-range.cir"
+    (advice,) = redline(reviewed(path)).advice
+    assert len(advice.devices) >= 3
+    for device in advice.devices:
+        assert device.figures[0].words == "total supply"
+        text = path.read_text().replace("TLV9002", device.code)
+        found = review(text, plugins=False).designs[0].findings
+        assert not [f for f in found if f.rule == "supply-range"]
+
+
+def test_a_sound_deck_is_left_alone():
+    """Nothing is proposed where nothing is found."""
+    found = redline(reviewed(ROOT / "fixtures" / "station" / "station.cir"))
+    assert not found.proposals
+    assert not found.files
+    assert not found.held
+
+
+COUPLED = """coupled sensor amplifier
+VP vp 0 5
+C1 vp 0 100n
+CI in p 1u
+VIN in 0 SIN(0 0.2 1k)
+R1 n g 10k
+CG g 0 10u
+R2 n out 10k
+XU1 p n vp 0 out MCP6001
+RL out 0 20k
+.end
+"""
+
+
+def test_a_return_on_a_single_supply_gets_a_level(tmp_path):
+    """Ground would leave no room below, so a divider with a bypassed tap is proposed."""
+    deck = tmp_path / "coupled.cir"
+    deck.write_text(COUPLED)
+    found = redline(reviewed(deck))
+    (proposal,) = [p for p in found.proposals if p.finding.rule == "bias-no-dc-path"]
+    assert "at their tap" in proposal.what
+    assert "noise" in proposal.choice
+    assert not found.remaining
+
+
+def test_values_are_of_the_series_of_the_stated_tolerance(tmp_path):
+    """5 % resistors get a value of E24, 1 % ones one of E96."""
+    text = (ROOT / "fixtures" / "faults" / "headroom-output.cir").read_text()
+    values = {}
+    for tolerance in ("5%", "1%"):
+        deck = tmp_path / f"deck{tolerance[0]}.cir"
+        deck.write_text(text.replace("resistor 0.1%", f"resistor {tolerance}"))
+        cured = [p for p in proposals(reviewed(deck)) if p.finding.rule == "headroom-output"]
+        values[tolerance] = cured[0].edits[0].text.strip()
+    for tolerance, key in (("5%", eseries.E24), ("1%", eseries.E96)):
+        ohms = read_number(values[tolerance], "R").value
+        assert eseries.find_nearest(key, ohms) == pytest.approx(ohms, rel=1e-9)
+    assert values["5%"] != values["1%"]
+
+
+def test_included_files_are_patched_where_the_card_stands(tmp_path):
+    """The hunk is of the included file, and the main deck stays."""
+    deck, inner = tmp_path / "main.cir", tmp_path / "stage.inc"
+    body = (ROOT / "fixtures" / "faults" / "headroom-output.cir").read_text()
+    moved = "R24    n6     o6     51k\n"
+    deck.write_text(body.replace(moved, ".include stage.inc\n"))
+    inner.write_text("* feedback of the level shifter\n" + moved)
+    found = redline(reviewed(deck))
+    assert [Path(c.file).name for c in found.files] == ["stage.inc"]
+    assert found.gone[0].rule == "headroom-output"
+
+
+def test_a_card_inside_a_subcircuit_is_patched_in_its_own_names(tmp_path):
+    """A card added in a subcircuit uses the nets of that subcircuit."""
+    deck = tmp_path / "deck.cir"
+    deck.write_text(
+        "level amplifier twice\nVP vp 0 12\nVN vn 0 -12\nC1 vp 0 100n\nC2 vn 0 100n\n"
+        "C3 vp 0 100n\nC4 vn 0 100n\nVA a 0 SIN(0 1 1k)\n"
+        ".subckt stage in out vp vn\nC1 in p 100n\nXU1 p out vp vn out TL072\n.ends\n"
+        "X1 a o1 vp vn stage\nX2 a o2 vp vn stage\nR1 o1 0 10k\nR2 o2 0 10k\n.end\n"
+    )
+    before = reviewed(deck)
+    assert {f.rule for f in causes(before)} >= {"bias-no-dc-path"}
+    found = redline(before)
+    (proposal,) = [p for p in found.proposals if p.finding.rule == "bias-no-dc-path"]
+    assert len(proposal.cures) >= 2
+    assert " p 0 " in proposal.edits[0].text

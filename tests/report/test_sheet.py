@@ -1,0 +1,145 @@
+"""The stage sheet: every op-amp has every row, each figure its basis, in every form."""
+
+import csv
+import io
+import json
+import re
+from pathlib import Path
+
+import pytest
+from rich.console import Console
+
+from railguard.report import sheet_forms as forms
+from railguard.report.sheet import PARTS, Row, basis_of, range_of, rows
+from railguard.reviewing import review
+
+ROOT = Path(__file__).parents[2]
+STATION = ROOT / "fixtures" / "station" / "station.cir"
+QUANTITIES = {
+    "device", "positive supply", "negative supply", "total supply", "output", "output current",
+    "inputs", "slew rate", "bandwidth", "noise gain", "loop gain", "phase margin", "dissipation",
+    "offset at output", "decoupling", "largest input", "findings", "not checked",
+}  # fmt: skip
+
+
+@pytest.fixture(scope="module")
+def station():
+    """The sheet of the river-gauge station."""
+    return rows(review(STATION, plugins=False))
+
+
+def by_stage(sheet):
+    """Return the rows of each stage."""
+    found = {}
+    for row in sheet:
+        found.setdefault(row.designator, []).append(row)
+    return found
+
+
+def test_every_op_amp_has_every_quantity(station):
+    """Pass or not: nine channels, each with all of the sheet."""
+    stages = by_stage(station)
+    assert len(stages) == 10  # the deck's own rows stand under ""
+    for name, own in stages.items():
+        if name:
+            assert {row.quantity for row in own} >= QUANTITIES, name
+
+
+def test_every_figure_has_its_basis(station):
+    """No number stands without a word on where it came from."""
+    for row in station:
+        for part in ("demand", "worst", "available", "guaranteed"):
+            if range_of(row, part):
+                told = getattr(row, f"{part}_basis")
+                assert told, f"{row.designator} {row.quantity} {part}"
+
+
+def test_what_was_not_worked_out_says_why():
+    """A floating input leaves ranges without numbers, and the sheet names the reason."""
+    sheet = rows(review(ROOT / "fixtures" / "faults" / "bias-no-dc-path.cir", plugins=False))
+    own = {row.quantity: row for row in by_stage(sheet)["XU4A"]}
+    assert own["findings"].text == "bias-no-dc-path (critical)"
+    assert "floats" in own["not checked"].text
+
+
+@pytest.mark.parametrize("name", ["XU4A", "U4A", "u4a"])
+def test_one_stage_by_any_of_its_names(name):
+    """As in the netlist, as on the schematic, in any case."""
+    sheet = rows(review(STATION, plugins=False), name)
+    assert {row.designator for row in sheet} == {"", "XU4A"}
+
+
+def test_a_package_names_its_channels():
+    """Both channels of a dual."""
+    sheet = rows(review(STATION, plugins=False), "U4")
+    assert {row.designator for row in sheet} == {"", "XU4A", "XU4B"}
+
+
+def test_a_deck_says_what_was_read(station):
+    """A filed sheet tells which text it is about, and what was taken for granted."""
+    told = {row.quantity: row.text for row in station if not row.designator}
+    assert re.search(r"sha256 [0-9a-f]{64}$", told["deck"])
+    assert "0.1 % (stated)" in told["tolerances"]
+    assert told["statements"].endswith("railguard.toml")
+
+
+def test_rounding_of_the_solution_is_zero(station):
+    """No femtovolt stands beside volts."""
+    for row in station:
+        for part in PARTS:
+            ends = [getattr(row, f"{part}_{end}") for end in ("low", "high")]
+            known = sorted(abs(v) for v in ends if v)
+            assert len(known) < 2 or known[0] > 1e-9 * known[1]
+
+
+def test_csv_json_and_markdown_say_the_same(station):
+    """The same rows in each form, in the same order."""
+    table = list(csv.DictReader(io.StringIO(forms.as_csv(station).decode())))
+    document = json.loads(forms.as_json(station))
+    assert document["schema"] == "railguard-sheet/1"
+    assert [r["quantity"] for r in table] == [r["quantity"] for r in document["rows"]]
+    assert len(table) == len(station)
+    for read, wire, row in zip(table, document["rows"], station, strict=True):
+        assert wire["guaranteed_high"] == row.guaranteed_high
+        assert read["guaranteed_high"] == (
+            "" if row.guaranteed_high is None else str(row.guaranteed_high)
+        )
+    text = forms.as_markdown(station).decode()
+    assert text.count("| output |") == 9
+    assert text.count("###") == 9
+
+
+def test_screen_stays_within_80_columns(station):
+    """Nine stages, none of whose lines is wider than a terminal."""
+    out = io.StringIO()
+    forms.screen(station, Console(file=out, width=80, highlight=False))
+    lines = out.getvalue().splitlines()
+    assert max(map(len, lines)) <= 80
+    assert any(line.startswith("output, high") for line in lines)
+
+
+HOSTILE = "=HYPERLINK(1)\x1b[31m|<b>`x`\u202e"
+
+
+def test_text_of_a_netlist_steers_nothing():
+    """Neither a spreadsheet, nor a terminal, nor a page."""
+    row = Row(file=HOSTILE, designator="-X1", quantity="findings", text=HOSTILE)
+    table = forms.as_csv((row,)).decode()
+    assert "\x1b" not in table
+    assert next(csv.DictReader(io.StringIO(table)))["text"].startswith("'=HYPERLINK")
+    assert next(csv.DictReader(io.StringIO(table)))["designator"] == "'-X1"
+    page = forms.as_markdown((row,)).decode()
+    assert "<b>" not in page.replace("\\<b\\>", "")
+    assert "\x1b" not in page
+    out = io.StringIO()
+    forms.screen((row,), Console(file=out, width=80))
+    assert "\x1b[31m" not in out.getvalue()
+    assert "\u202e" not in out.getvalue()
+
+
+def test_a_common_basis_is_said_once():
+    """Kind by kind only where there are several."""
+    one = Row(file="", designator="", quantity="q", demand_basis="netlist")
+    two = Row(file="", designator="", quantity="q", demand_basis="a", guaranteed_basis="b")
+    assert basis_of(one) == "netlist"
+    assert basis_of(two) == "asked: a; guaranteed: b"
