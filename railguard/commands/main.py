@@ -79,6 +79,14 @@ def railguard() -> None:
     """Take the options that stand before a command; there are none but help and version."""
 
 
+def _plain(error: RailguardError) -> str:
+    """Return what an error says; it may quote a settings file that came with a netlist."""
+    # Loaded only where there is something to say.
+    from railguard.report.visible import visible
+
+    return "\n".join(map(visible, str(error).splitlines()))
+
+
 def main() -> None:
     """Run the command line; a request that cannot be carried out is one sentence and status 2."""
     try:
@@ -89,7 +97,7 @@ def main() -> None:
         error.show()
         sys.exit(CANNOT)
     except RailguardError as error:
-        click.echo(f"railguard: {error}", err=True)
+        click.echo(f"railguard: {_plain(error)}", err=True)
         sys.exit(CANNOT)
     except BrokenPipeError:
         # The reader of a pipe has gone; nothing is wrong with the review.

@@ -40,8 +40,8 @@ def _mended(value: object) -> object:
     """Return the value with U+FFFD for what is no character, in every text it holds."""
     if isinstance(value, str):
         return value.encode("utf-8", "replace").decode("utf-8")
-    if isinstance(value, list):
+    if isinstance(value, list | tuple):
         return [_mended(inner) for inner in value]
     if isinstance(value, dict):
-        return {key: _mended(inner) for key, inner in value.items()}
+        return {_mended(key): _mended(inner) for key, inner in value.items()}
     return value
