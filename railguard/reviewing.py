@@ -148,7 +148,7 @@ def review(
     for one in sources:
         found_settings = stated if stated is not None else _found_beside(one)
         own = run.prepared(msgspec.structs.replace(found_settings, **changes))
-        deck = _deck(one, root, bounds or Bounds())
+        deck = _deck(one, root, bounds or Bounds(**own.bounds))
         found, matched = review_deck(deck, own, extra, options, engine)
         run.took(own, matched, found.path)
         designs.append(found)

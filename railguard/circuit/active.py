@@ -32,8 +32,7 @@ def independent(names: Names, items: Items, line: Line, letter: str) -> list[Ele
             "Leave one of them out.",
         )
     source = found.source()
-    many = _times(names, rest)
-    if letter == "I" and many != 1.0:
+    if letter == "I" and (many := _times(names, rest)) != 1.0:
         source = multiplied(source, many)
     return [
         Element(

@@ -30,6 +30,7 @@ class UnboundError(Exception):
         super().__init__(problem.message)
 
 
+_READ_OTHERWISE = re.compile(r"(?i)\^|\*\*|mil")
 _READINGS = (
     ("chain", re.compile(r"(?:\^|\*\*)[^-+*/,()]*(?:\^|\*\*)"),
      "a power of a power is worked out from the left, as ngspice does, elsewhere from the right."),
@@ -112,7 +113,7 @@ class Names:
 
     def _other_readings(self, text: str, name: str, line: Line) -> None:
         """Say what other SPICE programs make of an expression, once for the deck."""
-        if "^" not in text and "**" not in text and "mil" not in text.lower():
+        if _READ_OTHERWISE.search(text) is None:
             return
         for kind, pattern, words in _READINGS:
             if pattern.search(text) and kind not in self.environment.deck_wide:

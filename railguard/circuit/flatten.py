@@ -420,12 +420,14 @@ class _Expander:
         )
 
     def _too_deep(self, instance: Instance, definition: Scope, prefix: str, itself: bool) -> None:
-        why = "calls itself" if itself else "is nested deeper than the bound allows"
+        most = self.deck.bounds.subcircuit_depth
+        why = "calls itself" if itself else f"is nested deeper than {most}"
         self.problems.append(
             Problem(
                 rule="netlist-card" if itself else "netlist-bound",
                 message=f"The subcircuit {definition.name} {why} (at {prefix}"
                 f"{instance.designator}); it is left out.",
+                remedy="" if itself else "Raise subcircuit-depth in [bounds] if this is meant.",
                 location=instance.location,
                 designators=(prefix + instance.designator,),
             )

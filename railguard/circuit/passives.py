@@ -50,7 +50,7 @@ def passive(names: Names, items: Items, line: Line, letter: str) -> list[Element
             f"The value of {names.prefix}{name} is negative.",
             line,
             name,
-            "Correct it, or state with a controlled source that it is meant.",
+            "Take the sign off if it is a slip.",
         )
     parameters = {k: v for k, t in keys.items() if (v := _share(names, k, t)) is not None}
     return [
@@ -63,6 +63,8 @@ def passive(names: Names, items: Items, line: Line, letter: str) -> list[Element
 
 def _without_second_coefficient(items: Items) -> Items:
     """Take the second of `tc=1m,2u` out: it is no value, though it stands where one may."""
+    if len(items) < 3:
+        return items
     for at, item in enumerate(items):
         if (
             isinstance(item, Assignment)

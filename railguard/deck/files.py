@@ -127,7 +127,7 @@ class _Reader:
             return self._refuse(
                 name,
                 f"{name} is larger than the {limit:,} bytes a netlist may have.",
-                "Raise the bound if this really is a netlist.",
+                "Raise file-bytes in [bounds] if this really is a netlist.",
             )
         text, how = decode(data)
         what = no_netlist(data) or no_netlist_text(text)
@@ -313,7 +313,7 @@ class _Reader:
                     rule="netlist-bound",
                     message=f"At {target} includes go deeper than {self._bounds.include_depth}."
                     f"{told}",
-                    remedy="Raise the bound if this is meant.",
+                    remedy="Raise include-depth in [bounds] if this is meant.",
                     location=place,
                 )
             )

@@ -126,6 +126,7 @@ class Settings(msgspec.Struct, frozen=True, kw_only=True):
     as_of       the day waivers are judged on
     require     families that count as a hold where they stay open
     named       every rule the file names, with its place
+    bounds      bounds on reading that are not the reader's own: fields of `deck.files.Bounds`
     """
 
     file: str = ""
@@ -146,3 +147,4 @@ class Settings(msgspec.Struct, frozen=True, kw_only=True):
     as_of: dt.date = dt.date(1970, 1, 1)
     require: tuple[str, ...] = ()
     named: tuple[Named, ...] = ()
+    bounds: Mapping[str, int] = {}

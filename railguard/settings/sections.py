@@ -29,7 +29,17 @@ SECTIONS = (
     "limits",
     "waivers",
     "devices",
+    "bounds",
 )
+BOUNDS = (
+    "file-bytes",
+    "line-characters",
+    "include-depth",
+    "subcircuit-depth",
+    "elements",
+    "expression",
+)
+"""Bounds on reading that a file may set; `deck.files.Bounds` says what each is."""
 FAMILIES: tuple[Family, ...] = get_args(Family)
 
 Made = TypeVar("Made")
@@ -68,6 +78,7 @@ def read_sections(
         rules_off=tuple(dict.fromkeys((*review.rules_off, *off))),
         waivers=waivers,
         devices=_devices(reader),
+        bounds=_bounds(reader),
         named=(*review.named, *named),
     )
 
@@ -133,6 +144,15 @@ class _Reader:
             what = f"The section {section} is a list of tables."
             raise SettingsError(what, self.place(section), f"Write [[{section}]] before each.")
         return len(found)
+
+
+def _bounds(reader: _Reader) -> Mapping[str, int]:
+    """Return the bounds that are set, by the names of `deck.files.Bounds`."""
+    with reader.faults_at(("bounds",)):
+        fields = reader.fields(("bounds",), "the section [bounds]")
+        fields.only(*BOUNDS)
+        stated = {key: fields.above_zero(key, "") for key in BOUNDS}
+    return {k.replace("-", "_"): int(v) for k, v in stated.items() if v is not None}
 
 
 def _each(reader: _Reader, section: str, noun: str, build: Build[Made]) -> dict[str, Made]:

@@ -5,9 +5,11 @@ from pathlib import Path
 
 import pytest
 
+from railguard.deck.files import Bounds
 from railguard.errors import SettingsError
 from railguard.settings.file import FILE_NAME, find, load, parse
 from railguard.settings.model import Load, NetLevel, Settings, Signal, Tolerances
+from railguard.settings.sections import BOUNDS
 
 NAME = "railguard.toml"
 
@@ -181,6 +183,17 @@ class TestStatements:
         assert parse("[limits.headroom-output]\noff = false", NAME).rules_off == ()
 
 
+def test_bounds_are_those_of_the_reader():
+    """Every bound on reading can be set, and none else."""
+    text = "[bounds]\n" + "\n".join(f"{key} = {k + 1}" for k, key in enumerate(BOUNDS))
+    bounds = Bounds(**parse(text, NAME).bounds)
+    fields = [field.replace("_", "-") for field in Bounds.__struct_fields__]
+    assert set(BOUNDS) <= set(fields)
+    assert bounds.elements == BOUNDS.index("elements") + 1
+    with pytest.raises(SettingsError, match="bounds"):
+        parse("[bounds]\nelements = 0", NAME)
+
+
 @pytest.mark.parametrize(
     ("text", "line", "what", "remedy"),
     [
@@ -188,8 +201,8 @@ class TestStatements:
             "[reviw]\nkind = 1",
             1,
             'The settings file has no field "reviw".',
-            'The nearest is "review". Known here: conditions, devices, limits, loads, nets, '
-            "review, severity, signals, stages, tolerances, waivers.",
+            'The nearest is "review". Known here: bounds, conditions, devices, limits, loads, '
+            "nets, review, severity, signals, stages, tolerances, waivers.",
         ),
         (
             "[review]\n\nhold_at = 'major'",
