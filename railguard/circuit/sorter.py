@@ -13,6 +13,7 @@ from railguard.deck.cards import Assignment, Call, CardError, Group, Items, item
 from railguard.deck.files import Bounds, Deck
 from railguard.deck.lines import Line
 from railguard.notices import Problem
+from railguard.words import Severity
 
 _ANALYSES = frozenset(
     {"tran", "ac", "dc", "op", "tf", "noise", "disto", "pz", "sens", "four", "fourier", "fft", "hb",
@@ -52,10 +53,20 @@ class _Sorter:
         self.taken: list[bool] = []
         self.live: list[bool] = []  # of each open .if: are its cards taken, and those outside
 
-    def problem(self, rule: str, message: str, line: Line, remedy: str = "") -> None:
+    def problem(
+        self,
+        rule: str,
+        message: str,
+        line: Line,
+        remedy: str = "",
+        severity: Severity | None = None,
+    ) -> None:
         self.problems.append(
-            Problem(rule=rule, message=message, remedy=remedy, location=line.location)
-        )
+            Problem(
+                rule=rule, message=message, remedy=remedy, location=line.location,
+                severity=severity,
+            )
+        )  # fmt: skip
 
     def take(self, line: Line) -> None:
         text = line.text
@@ -265,7 +276,7 @@ class _Sorter:
             what, remedy = "has a ) too many", "Take the last ) off."
         name = text_of(items[1]) if len(items) > 1 else "no name"
         told = f"The .model card of {name} {what}; it was read to its end."
-        self.problem("netlist-card", told, line, remedy)
+        self.problem("netlist-card", told, line, remedy, "minor")
         return items
 
     def condition(self, word: str, line: Line) -> None:

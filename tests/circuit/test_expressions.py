@@ -3,7 +3,7 @@
 import contextlib
 
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from railguard.circuit.expressions import (
@@ -63,6 +63,7 @@ def test_run_time_values_are_told_apart():
     assert probes("v(in+)*2 + V(a,b)") == ("in+", "a", "b")
 
 
+@settings(deadline=None)
 @given(st.text(alphabet="0123456789abkm+-*/^().,?:<>=&|!{} ", max_size=40))
 def test_any_text_has_a_value_or_a_reason(text):
     """No input raises anything else."""
@@ -80,6 +81,7 @@ def outcome(read, text):
         return error.reason
 
 
+@settings(deadline=None)
 @given(
     st.text(alphabet="12.eab_kM+-*/^ ()", max_size=10)
     | st.builds(

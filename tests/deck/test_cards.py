@@ -19,6 +19,7 @@ from railguard.deck.language import terminals
 WORDS = st.from_regex(r"[A-Za-z0-9_.+\-/#:$<>~!*&@%^]{1,12}", fullmatch=True)
 
 
+@settings(deadline=None)
 @given(st.lists(WORDS, min_size=1, max_size=9))
 def test_fast_path_equals_the_grammar(words):
     """Cards of plain words split as the grammar splits them."""
@@ -50,6 +51,7 @@ def test_tokens_equal_the_grammar(text):
     assert outcome(items_of, text) == outcome(parse_items, text)
 
 
+@settings(deadline=None)
 @given(WORDS)
 def test_fast_path_words_are_the_grammars_words(word):
     """Every word the fast path takes is one word of the grammar's terminal."""

@@ -152,3 +152,82 @@ def test_texts_are_kept_as_they_were_read(tmp_path):
     for line in deck.lines:
         shown = physical_lines(deck.texts[line.file])
         assert shown[line.location.line - 1].startswith(line.text.split()[0])
+
+
+@pytest.mark.parametrize(
+    ("name", "data", "what"),
+    [
+        ("symbols.lib", b"EESchema-LIBRARY Version 2.4\n#\n# TL072\n", "symbol library"),
+        ("board.net", b"(export (version D)\n (design\n", "another format"),
+        ("page.cir", b"<!DOCTYPE html>\n<html>", "web page"),
+        ("sheet.cir", b"Version 4\r\nSHEET 1 880 680\r\n", "schematic"),
+        ("secret.lib", b"* vendor\n" + b"0123456789abcdef0123456789abcdef0123\n" * 9, "encrypted"),
+        ("amp.sub", b"<Binary File>\n" + bytes(200), "binary"),
+        ("run.out", b"Circuit: gauge\n\nDoing analysis at TEMP = 27.0\n", "listing"),
+    ],
+)
+def test_what_it_is_instead_is_named(tmp_path, name, data, what):
+    """A file of another kind is one sentence, as a deck and as an include."""
+    path = tmp_path / name
+    path.write_bytes(data)
+    deck = read_deck(path)
+    assert not deck.readable
+    assert what in deck.problems[0].message
+    (tmp_path / "main.cir").write_text(f"t\n.include {name}\nR1 a 0 1k\n")
+    deck = read_deck(tmp_path / "main.cir")
+    assert lines(deck) == ["R1 a 0 1k"]
+    assert [p.rule for p in deck.problems] == ["netlist-include"]
+    assert what in deck.problems[0].message
+
+
+def test_file_outside_is_not_told_to_be_there(tmp_path):
+    """Whether it exists is no business of a netlist's; the chain of includes is shown."""
+    folder = tmp_path / "deck"
+    (folder / "lib").mkdir(parents=True)
+    (tmp_path / "there.lib").write_text("R9 x 0 1k\n")
+    (folder / "lib" / "a.lib").write_text(".include ../../there.lib\n.include ../../not.lib\n")
+    (folder / "main.cir").write_text("t\n.include lib/a.lib\nR1 a 0 1k\n")
+    there, missing = read_deck(folder / "main.cir").problems
+    assert there.message.replace("there.lib", "") == missing.message.replace("not.lib", "")
+    assert "a.lib which is included by main.cir" in there.message
+
+
+@pytest.mark.parametrize(
+    ("card", "target"),
+    [
+        (".include C:\\Program Files (x86)\\models\\standard.dio", "standard.dio"),
+        (".lib C:\\Program Files\\lib\\cmp\\standard.bjt", "standard.bjt"),
+        (".lib //server/models/x.lib tt", "x.lib"),
+        (".include https://example.org/x.lib", "x.lib"),
+    ],
+)
+def test_paths_of_other_computers(tmp_path, card, target):
+    """They are named whole, never followed, and cost only what stands in them."""
+    (tmp_path / "main.cir").write_text(f"t\n{card}\nR1 a 0 1k\n")
+    deck = read_deck(tmp_path / "main.cir")
+    assert lines(deck) == ["R1 a 0 1k"]
+    (problem,) = deck.problems
+    assert "stands on another computer" in problem.message
+    assert problem.remedy.startswith(f"Put {target} beside")
+    assert problem.severity == "minor"
+
+
+def test_include_depth_is_bounded(tmp_path):
+    """Files that include the next one, further than the bound."""
+    for k in range(8):
+        (tmp_path / f"a{k}.lib").write_text(f".include a{k + 1}.lib\n")
+    (tmp_path / "main.cir").write_text("t\n.include a0.lib\n")
+    deck = read_deck(tmp_path / "main.cir", Bounds(include_depth=4))
+    assert [p.rule for p in deck.problems] == ["netlist-bound"]
+    assert "include-depth" in deck.problems[0].remedy
+
+
+def test_library_read_whole_leaves_its_sections_out(tmp_path):
+    """Nobody asked for one of them."""
+    (tmp_path / "p.lib").write_text(
+        "R0 a 0 1\n.lib tt\nR1 a 0 1k\n.endl\n.lib ff\nR2 a 0 2k\n.endl\n"
+    )
+    (tmp_path / "main.cir").write_text("t\n.lib p.lib\n")
+    deck = read_deck(tmp_path / "main.cir")
+    assert lines(deck) == ["R0 a 0 1"]
+    assert [r.message[:28] for r in deck.remarks] == ["No card asks for the section"] * 2
