@@ -220,3 +220,21 @@ def flat(items: Items) -> list[str]:
         elif isinstance(item, Call):
             words += [item.name, *flat(item.items)] if item.name not in FUNCTIONS else []
     return words
+
+
+def unread(line: Line) -> tuple[Element, ...]:
+    """Keep the nets of a card that cannot be split, so that nothing on them looks unconnected."""
+    words = re.split(r"[=(){}'\"]", line.text, maxsplit=1)[0].replace(",", " ").split()
+    nets = tuple(w for w in words[1:] if w == "0" or read_number(w) is None)
+    if not nets:
+        return ()
+    return (
+        Element(
+            kind="opaque", designator=words[0], nets=nets, text=line.text, location=line.location
+        ),
+    )
+
+
+def counted(count: int, noun: str) -> str:
+    """Return "two nodes", "one net", "12 ports"."""
+    return f"{COUNTS[count] if count < len(COUNTS) else count} {noun}{'s' if count != 1 else ''}"

@@ -5,18 +5,15 @@ that this room needs no catalogue.
 """
 
 import re
-from collections import Counter
 from collections.abc import Callable, Iterable
 from typing import cast
-
-import msgspec
 
 from railguard.circuit.bind import bind
 from railguard.circuit.calls import closed as closed_call
 from railguard.circuit.calls import pin_names
-from railguard.circuit.card import COUNTS, Names, UnboundError
+from railguard.circuit.card import Names, UnboundError, counted, unread
+from railguard.circuit.definitions import numbers_of, subcircuits_of
 from railguard.circuit.environment import Bound, Environment
-from railguard.circuit.expressions import ExpressionError
 from railguard.circuit.ground import ELSEWHERE, GROUNDS, likely_ground, no_ground, other_grounds
 from railguard.circuit.model import (
     GROUND,
@@ -26,17 +23,16 @@ from railguard.circuit.model import (
     Element,
     Instance,
     Model,
-    Subcircuit,
 )
 from railguard.circuit.plain import plain_element
 from railguard.circuit.references import unsteered
 from railguard.circuit.scopes import Scope
 from railguard.circuit.sorter import Sorted, sort_deck
-from railguard.circuit.written import parameter_cycle, text_of
-from railguard.deck.cards import Assignment, CardError, Items
+from railguard.circuit.told import not_drowned
+from railguard.circuit.written import parameter_cycle
+from railguard.deck.cards import CardError
 from railguard.deck.files import Deck
 from railguard.deck.lines import Line
-from railguard.deck.numbers import read_number
 from railguard.notices import Problem
 
 Closed = Callable[[str, tuple[str, ...], tuple[str, ...], bool], bool]
@@ -92,11 +88,11 @@ def flatten(deck: Deck, closed: Closed = nothing_closed) -> Circuit:
         title=deck.title,
         elements=tuple(expander.elements),
         models=expander.models,
-        subcircuits=_subcircuits(found.top),
+        subcircuits=subcircuits_of(found.top),
         analyses=found.analyses,
         directives=tuple(Directive(text, place) for text, place in deck.directives),
         globals=found.globals,
-        problems=_not_drowned(problems),
+        problems=not_drowned(problems),
         remarks=deck.remarks,
         sha256=deck.sha256,
         files=deck.files,
@@ -119,26 +115,6 @@ def _expanded(deck: Deck, closed: Closed, grounds: frozenset[str]) -> tuple[Sort
     expander = _Expander(deck, closed, found, grounds)
     expander.scope(expander.environment, "", (), 0, frozenset())
     return found, expander
-
-
-def _subcircuits(top: Scope) -> dict[str, Subcircuit]:
-    kept: dict[str, Subcircuit] = {}
-    queue = [top]
-    while queue:
-        scope = queue.pop(0)
-        for name, inner in scope.subcircuits.items():
-            kept.setdefault(
-                name,
-                Subcircuit(
-                    inner.name,
-                    inner.ports,
-                    tuple(line.text for line in inner.cards),
-                    inner.notes,
-                    inner.header.location if inner.header else None,
-                ),
-            )
-            queue.append(inner)
-    return kept
 
 
 class _Nets(dict[str, str]):
@@ -260,7 +236,7 @@ class _Expander:
             bound = bind(names, scope.items(number, line), line)
         except CardError as error:
             names.problems.append(self._card(line, error.reason))
-            bound = _unread(line)
+            bound = unread(line)
         except UnboundError as error:
             names.problems.append(error.problem)
             bound = (error.element,) if error.element is not None else ()
@@ -354,7 +330,7 @@ class _Expander:
 
     def _take_models(self, scope: Scope, environment: Environment, prefix: str) -> None:
         for key, (name, word, items, line) in scope.models.items():
-            values = _numbers(items, environment)
+            values = numbers_of(items, environment)
             self.models.setdefault(
                 prefix.casefold() + key, Model(name, word, values, line.location)
             )
@@ -410,8 +386,8 @@ class _Expander:
         self.problems.append(
             Problem(
                 rule="netlist-node-count",
-                message=f"{instance.designator} gives {_counted(len(instance.nets), 'net')} to the "
-                f"subcircuit {definition.name}, which has {_counted(len(definition.ports), 'port')}"
+                message=f"{instance.designator} gives {counted(len(instance.nets), 'net')} to the "
+                f"subcircuit {definition.name}, which has {counted(len(definition.ports), 'port')}"
                 ".",
                 remedy="Compare the card with the .subckt line.",
                 location=instance.location,
@@ -432,63 +408,3 @@ class _Expander:
                 designators=(prefix + instance.designator,),
             )
         )
-
-
-def _unread(line: Line) -> tuple[Element, ...]:
-    """Keep the nets of a card that cannot be split, so that nothing on them looks unconnected."""
-    words = re.split(r"[=(){}'\"]", line.text, maxsplit=1)[0].replace(",", " ").split()
-    nets = tuple(w for w in words[1:] if w == "0" or read_number(w) is None)
-    if not nets:
-        return ()
-    return (
-        Element(
-            kind="opaque", designator=words[0], nets=nets, text=line.text, location=line.location
-        ),
-    )
-
-
-MOST_ALIKE = 200
-"""Problems of one rule that are told one by one."""
-
-
-def _not_drowned(problems: list[Problem]) -> tuple[Problem, ...]:
-    """Leave out what is told too often to be read, and say how much that is."""
-    times: Counter[str] = Counter()
-    kept = []
-    for problem in problems:
-        times[problem.rule] += 1
-        if times[problem.rule] <= MOST_ALIKE:
-            kept.append(problem)
-    for rule, count in times.items():
-        if count > MOST_ALIKE:
-            last = next(p for p in reversed(problems) if p.rule == rule)
-            kept.append(
-                msgspec.structs.replace(
-                    last,
-                    message=f"{count - MOST_ALIKE:,} more of these are not listed, up to this one: "
-                    f"{last.message}",
-                )
-            )
-    return tuple(kept)
-
-
-def _counted(count: int, noun: str) -> str:
-    return f"{COUNTS[count] if count < len(COUNTS) else count} {noun}{'s' if count != 1 else ''}"
-
-
-def _numbers(items: Items, environment: Environment) -> dict[str, float]:
-    values: dict[str, float] = {}
-    for item in items:
-        if isinstance(item, Assignment):
-            text = text_of(item.value)
-            number = read_number(text)
-            if number is not None:
-                values[item.key] = number.spice
-            else:
-                try:
-                    values[item.key] = environment.evaluate(text)
-                except ExpressionError:
-                    continue  # a string, or known only to a simulation
-        elif not isinstance(item, str) and hasattr(item, "items"):
-            values.update(_numbers(item.items, environment))
-    return values
