@@ -105,7 +105,7 @@ def _over(deck: Deck, line: Line) -> Problem:
         rule="netlist-bound",
         message=f"The deck expands to more than {deck.bounds.elements:,} elements and instances; "
         "none of it is judged.",
-        remedy="Review its subcircuits one by one, or raise the bound if this is meant.",
+        remedy="Review its subcircuits one by one, or raise elements in [bounds] if this is meant.",
         location=line.location,
     )
 

@@ -342,7 +342,12 @@ def sort_deck(deck: Deck) -> Sorted:
     word = deck.bounds.word_characters
     for line in deck.lines:
         if len(line.text) > word and (what := _too_long(line.text, deck.bounds)):
-            sorter.problem("netlist-bound", f"{what}; it is left out.", line)
+            sorter.problem(
+                "netlist-bound",
+                f"{what}; it is left out.",
+                line,
+                "Raise line-characters or word-characters in [bounds] if this is meant.",
+            )
         else:
             sorter.take(line)
     for scope in sorter.stack[1:]:

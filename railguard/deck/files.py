@@ -368,7 +368,7 @@ class _Reader:
             Problem(
                 rule="netlist-bound",
                 message=f"The deck {what}; no further file is read.",
-                remedy="Raise the bound if this is meant.",
+                remedy="Raise total-bytes or includes in [bounds] if this is meant.",
                 location=place,
             )
         )
@@ -437,7 +437,7 @@ _BLOCKS = {
 """Blocks that hold no cards, and what closes them."""
 _RUN = frozenset({"tran", "ac", "dc", "op", "noise", "tf", "pz", "sens", "disto"})
 """Commands of a control block that are analyses, as their dot cards are."""
-_DESIGNATOR = re.compile(r"(?i)^[RCLVIEGFHDQJMX](?:\S*\d\S*)?$")
+_DESIGNATOR = re.compile(r"(?i)^[RCLVIEGFHDQJMX]\S*$")
 
 
 def _is_card(title: str) -> bool:
@@ -445,7 +445,9 @@ def _is_card(title: str) -> bool:
     words = title.split()
     if not 4 <= len(words) <= 6 or not _DESIGNATOR.match(words[0]):
         return False
-    return read_number(words[3]) is not None
+    grounded = any(word.lower() in ("0", "gnd") for word in words[1:3])
+    numbered = any(character.isdigit() for character in words[0])
+    return read_number(words[3]) is not None and (grounded or numbered)
 
 
 def _is_library(name: str, text: str) -> bool:

@@ -33,7 +33,10 @@ SECTIONS = (
 )
 BOUNDS = (
     "file-bytes",
+    "total-bytes",
+    "includes",
     "line-characters",
+    "word-characters",
     "include-depth",
     "subcircuit-depth",
     "elements",

@@ -231,3 +231,20 @@ def test_library_read_whole_leaves_its_sections_out(tmp_path):
     deck = read_deck(tmp_path / "main.cir")
     assert lines(deck) == ["R0 a 0 1"]
     assert [r.message[:28] for r in deck.remarks] == ["No card asks for the section"] * 2
+
+
+@pytest.mark.parametrize(
+    ("title", "told"),
+    [
+        ("R9 a b 1k", True),
+        ("VX x 0 5", True),
+        ("RC filter at 1kHz", False),
+        ("Low pass filter 1kHz", False),
+        ("dc loop with .param change", False),
+        ("RING OSCILLATOR - 2UM DEVICES", False),
+    ],
+)
+def test_card_on_the_title_line(title, told):
+    """A card is told, a sentence about the circuit is none."""
+    deck = deck_from_text(f"{title}\nR1 a 0 1k\n")
+    assert [p.rule for p in deck.problems] == ["netlist-title"] * told

@@ -188,7 +188,7 @@ def test_bounds_are_those_of_the_reader():
     text = "[bounds]\n" + "\n".join(f"{key} = {k + 1}" for k, key in enumerate(BOUNDS))
     bounds = Bounds(**parse(text, NAME).bounds)
     fields = [field.replace("_", "-") for field in Bounds.__struct_fields__]
-    assert set(BOUNDS) <= set(fields)
+    assert set(BOUNDS) == set(fields)
     assert bounds.elements == BOUNDS.index("elements") + 1
     with pytest.raises(SettingsError, match="bounds"):
         parse("[bounds]\nelements = 0", NAME)
