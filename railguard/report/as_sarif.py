@@ -20,6 +20,7 @@ from railguard.report.escaping import sarif
 from railguard.report.grouping import open_groups, with_consequences
 from railguard.report.json_text import encoded
 from railguard.report.places import address, from_root
+from railguard.report.sarif_fixes import MOST_NETLISTS, Fixes
 from railguard.report.sarif_rules import NOTICES, descriptors
 from railguard.reviewing import DesignReview, Review
 from railguard.rules.finding import Finding
@@ -74,7 +75,7 @@ class _Run:
         results = [result for design in self.review.designs for result in self.results(design)]
         if self.review.designs:
             first = self.review.designs[0]
-            results += [self.result(f, first, Counter()) for f in self.review.findings]
+            results += [self.result(f, first, Counter(), ()) for f in self.review.findings]
         notices = dict.fromkeys(n for d in self.review.designs for n in self.notifications(d))
         driver = wire.Component(
             name="railguard",
@@ -110,6 +111,9 @@ class _Run:
         """Return what the run came to, netlist by netlist."""
         return {
             "holdAt": self.review.settings.hold_at,
+            "fixes": "worked out"
+            if len(self.review.designs) <= MOST_NETLISTS
+            else f"left out: more than {MOST_NETLISTS} netlists",
             "designs": [
                 {
                     "path": from_root(design.path, self.root),
@@ -165,10 +169,17 @@ class _Run:
 
     def results(self, design: DesignReview) -> Iterable[wire.Result]:
         seen: Counter[str] = Counter()
+        fixes = Fixes(design, self.review, self.artifact)
         for finding in design.findings:
-            yield self.result(finding, design, seen)
+            yield self.result(finding, design, seen, fixes.of(finding))
 
-    def result(self, finding: Finding, design: DesignReview, seen: Counter[str]) -> wire.Result:
+    def result(
+        self,
+        finding: Finding,
+        design: DesignReview,
+        seen: Counter[str],
+        fixes: tuple[wire.Fix, ...],
+    ) -> wire.Result:
         deck = from_root(design.path, self.root).encode("utf-8", "replace").decode("utf-8")
         mark = finding.fingerprint(deck)
         seen[mark] += 1
@@ -191,6 +202,7 @@ class _Run:
             ),
             partial_fingerprints={FINGERPRINT: f"{mark}{again}"},
             suppressions=self.suppressions(finding, design.design.circuit),
+            fixes=fixes,
             properties=_numbers(finding),
         )
 

@@ -100,11 +100,17 @@ class Suppression(_Wire, frozen=True, kw_only=True):
     properties: dict[str, object] = {}
 
 
+class Content(_Wire, frozen=True, kw_only=True):
+    """Text of a file, 3.3; unlike a message's it is taken as it is."""
+
+    text: str
+
+
 class Replacement(_Wire, frozen=True, kw_only=True):
     """A region and what stands there instead, 3.57."""
 
     deleted_region: Region
-    inserted_content: Message
+    inserted_content: Content
 
 
 class ArtifactChange(_Wire, frozen=True, kw_only=True):

@@ -362,6 +362,57 @@ def test_a_bound_that_is_passed_is_told(tmp_path):
     assert call["toolExecutionNotifications"][0]["descriptor"]["id"] == "not-read"
 
 
+def mended(text, replacements):
+    """Return a text with SARIF replacements made: regions in characters, columns from 1."""
+    ends = re.compile(r"\r\n|\n|\r")
+    lines = ends.split(text)
+    between = [*ends.findall(text), ""]
+    for one in sorted(replacements, key=lambda r: -r["deletedRegion"]["startLine"]):
+        place, new = one["deletedRegion"], one["insertedContent"]["text"]
+        at = place["startLine"] - 1
+        line = lines[at]
+        lines[at] = line[: place["startColumn"] - 1] + new + line[place["endColumn"] - 1 :]
+    return "".join(map("".join, zip(lines, between, strict=True)))
+
+
+@pytest.mark.parametrize("encoding", ["utf-8", "utf-8-sig", "utf-16"])
+@pytest.mark.parametrize("ends", ["\n", "\r\n"], ids=["LF", "CRLF"])
+@pytest.mark.parametrize("fault", ["headroom-output", "decoupling-absent"])
+def test_a_fix_cures_its_finding(tmp_path, fault, ends, encoding, validator):
+    """Made in the file as SARIF says, the change leaves nothing of the finding."""
+    source = designs.FIXTURES / "faults" / f"{fault}.cir"
+    text = source.read_text(encoding="utf-8").replace("\n", ends)
+    text = f"\u00b5{ASTRAL} {text}"
+    place = tmp_path / source.name
+    place.write_bytes(text.encode(encoding))
+    found = review(place)
+    validator.validate(json.loads(document(found, tmp_path)))
+    (result,) = [r for r in run_of(found, tmp_path)["results"] if r["ruleId"] == fault]
+    (fix,) = result["fixes"]
+    (change,) = fix["artifactChanges"]
+    assert fix["description"]["text"]
+    assert change["artifactLocation"]["uri"] == source.name
+    better = mended(text, change["replacements"])
+    assert better != text
+    assert better.count("\r") == (better.count("\n") if ends == "\r\n" else 0)
+    place.write_bytes(better.encode(encoding))
+    assert fault not in [f.rule for f in review(place).designs[0].findings]
+
+
+def test_a_run_over_many_netlists_goes_without_fixes(report):
+    """And says so."""
+    run = json.loads(report("sarif", "many"))["runs"][0]
+    assert not any("fixes" in result for result in run["results"])
+    assert run["properties"]["fixes"] == "left out: more than 12 netlists"
+
+
+def test_a_text_without_a_file_has_no_fixes():
+    """There is no file they could be made in."""
+    run = run_of(review(designs.GAUGE.format(peak=0.5, load=600)))
+    assert run["results"]
+    assert not any("fixes" in result for result in run["results"])
+
+
 def test_hostile_messages_hold_no_link_and_no_placeholder():
     """Braces are doubled, and no bracket is followed by a parenthesis."""
     found = review(designs.GAUGE.format(peak=0.5, load=600))
