@@ -56,17 +56,16 @@ def _holding(place: Location, scene: Scene) -> Line | None:
 def _written(text: str, words: tuple[Word, ...], problem: Problem) -> tuple[Word | None, int]:
     """Find how a value is written on its card, and how many characters of it are the value."""
     found = problem.message.partition("The value ")[2].partition(" of ")[0]
-    for index, word in enumerate(words):
-        if word.text != found:
-            continue
-        end = word.at + len(word.text)
-        if problem.rule == "netlist-value-form" and index + 1 < len(words):
-            behind = words[index + 1]
-            between = text[end : behind.at]
-            if "," in between or "blank" in problem.message:
-                end = behind.at + len(behind.text)
-        return word, end - word.at
-    return None, 0
+    at = text.find(found, words[0].at) if found and words else -1
+    if at < 0:
+        return None, 0
+    end = at + len(found)
+    if problem.rule == "netlist-value-form" and " " not in found:
+        behind = next((w for w in words if w.at >= end), None)
+        between = text[end : behind.at] if behind is not None else ""
+        if behind is not None and ("," in between or "blank" in problem.message):
+            end = behind.at + len(behind.text)
+    return Word(text[at:end], at), end - at
 
 
 def commented(finding: Finding, scene: Scene) -> Iterator[Candidate]:

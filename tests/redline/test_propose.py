@@ -158,3 +158,15 @@ def test_a_card_inside_a_subcircuit_is_patched_in_its_own_names(tmp_path):
     (proposal,) = [p for p in found.proposals if p.finding.rule == "bias-no-dc-path"]
     assert len(proposal.cures) >= 2
     assert " p 0 " in proposal.edits[0].text
+
+
+@pytest.mark.parametrize(("written", "text"), [("1M", "1meg"), ("20,5k", "20.5k"), ("4k7", "4.7k")])
+def test_a_value_read_two_ways_is_written_in_one(tmp_path, written, text):
+    """Suffix, decimal comma, RKM form."""
+    deck = tmp_path / "deck.cir"
+    deck.write_text(
+        "follower on the logger's rail\nVP vp 0 5\nC1 vp 0 100n\nVIN in 0 SIN(2.5 1 1k)\n"
+        f"XU1 in out vp 0 out MCP6001\nRL out 0 {written}\n.end\n"
+    )
+    cured = [p for p in redline(reviewed(deck)).proposals if p.finding.designators == ("RL",)]
+    assert [p.edits[0].text for p in cured] == [text]
