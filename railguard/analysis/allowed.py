@@ -21,14 +21,18 @@ class _Room(msgspec.Struct):
     limited: str = ""
     closest: float = np.inf
 
-    def tighten(self, step: float, start: float, by: str) -> None:
-        """Take one more limit in: `step` is how far the input may move towards it."""
-        if step >= 0:
-            self.high = min(self.high, start + step)
+    def tighten(self, room: float, start: float, upper: bool, by: str) -> None:
+        """Take one more limit in.
+
+        room   how far the input may move towards it; below zero where it is passed at rest
+        upper  whether that is the way up
+        """
+        if upper:
+            self.high = min(self.high, start + room)
         else:
-            self.low = max(self.low, start + step)
-        if abs(step) < self.closest:
-            self.limited, self.closest = by, abs(step)
+            self.low = max(self.low, start - room)
+        if room < self.closest:
+            self.limited, self.closest = by, room
 
 
 def allowed_inputs(solved: Sequence[tuple[Solution, Sequence[Stage]]]) -> dict[str, Allowed]:
@@ -55,6 +59,8 @@ def allowed_inputs(solved: Sequence[tuple[Solution, Sequence[Stage]]]) -> dict[s
             reached += _tightened(room, stages, solution, at_dc, at_mid, entry.level)
         if room.limited and np.isfinite(room.low) and np.isfinite(room.high):
             low, high = float(room.low), float(room.high)
+            if low > high:
+                continue  # no input keeps every stage in range
             allowed = Allowed(entry.label, low, high, room.limited, entry.unit)
             for designator in reached:
                 result.setdefault(designator, allowed)
@@ -96,6 +102,8 @@ def _tightened(
                 if limit is None:
                     continue
                 step = (limit - level) / gain
-                for way in (step, -step) if cut else (step,):
-                    room.tighten(way, start, f"{rule} {stage.designator}")
+                upper = bound.upper == (gain > 0)
+                for way in (True, False) if cut else (upper,):
+                    left = step if upper else -step
+                    room.tighten(left, start, way, f"{rule} {stage.designator}")
     return reached

@@ -46,8 +46,11 @@ def is_ac_coupled(view: View) -> bool:
     return True
 
 
-def gains_of(view: View) -> tuple[tuple[str, float], ...]:
-    """Return the gain from each net a signal arrives at: at DC, or in mid-band where DC is cut."""
+def gains_of(view: View, unit: str = "V") -> tuple[tuple[str, float], ...]:
+    """Return the gain from each net a signal arrives at: at DC, or in mid-band where DC is cut.
+
+    unit  "V": V/V from voltages; "A": V/A from currents
+    """
     answers, network = view.answers, view.answers.network
     row = int(answers.rows[view.at("output")])
     if row < 0 or view.amplifier.designator in view.solution.forced:
@@ -56,7 +59,7 @@ def gains_of(view: View) -> tuple[tuple[str, float], ...]:
     mid = view.solution.mid.adjoint([row])[0]
     gains = []
     for entry in view.solution.prepared.entries:
-        if entry.unit != "V" or not any(name in network.injections for name, _ in entry.drives):
+        if entry.unit != unit or not any(name in network.injections for name, _ in entry.drives):
             continue
         b = network.right_hand_side(entry.drives)
         at_dc, at_mid = float((dc @ b).real), complex(mid @ b)

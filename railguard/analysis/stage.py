@@ -359,6 +359,7 @@ class Stage(msgspec.Struct, frozen=True, kw_only=True):
     dissipation  W, of the whole package with all its channels at their worst
     junction     degrees Celsius, at the hottest ambient with that heat
     gain         from each input net: (net, V/V at DC or in band)
+    transfer     from each net a current arrives at: (net, V/A)
     after        designators of stages whose output reaches this one's inputs
     generic      True for an amplifier without a type: OPAMP
     ac_coupled   True where every signal reaches it through a capacitor
@@ -386,6 +387,7 @@ class Stage(msgspec.Struct, frozen=True, kw_only=True):
     dissipation: float | None = None
     junction: float | None = None
     gain: tuple[tuple[str, float], ...] = ()
+    transfer: tuple[tuple[str, float], ...] = ()
     after: tuple[str, ...] = ()
     generic: bool = False
     ac_coupled: bool = False

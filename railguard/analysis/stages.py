@@ -167,6 +167,7 @@ def _stage(
         feedback=feedback,
         dissipation=heat,
         gain=gains,
+        transfer=gains_of(view, "A"),
         after=after[view.k],
         generic=amplifier.match.sort == "generic",
         ac_coupled=is_ac_coupled(view),

@@ -142,6 +142,10 @@ def _stage(design: DesignReview, stage: Stage) -> Iterator[Row]:
         yield row(
             "gain", "V/V", demand_high=gain, text=f"from {net}", demand_basis="netlist, solved"
         )
+    for net, ohms in stage.transfer:
+        yield row(
+            "gain", "V/A", demand_high=ohms, text=f"from {net}", demand_basis="netlist, solved"
+        )
     yield _ranges(row, "output", "V", stage.output, stage, "output")
     yield _cleaned(row("output current", "A", **_current(stage)))
     yield _ranges(row, "inputs", "V", stage.inputs, stage, "input")

@@ -61,6 +61,7 @@ the two goals rests on them."""
 
 PHOTODIODE_FIGURES = [
     Cell("positive supply", "demand_high", 5.0, 0.0, "V"),
+    Cell("gain", "demand_high", 53.6e3, 1e-3, "V/A"),
     Cell("output", "demand_low", 0.100, 1e-3, "V"),  # 100.096 mV simulated, with its offset
     Cell("output", "demand_high", 4.924, 1e-4, "V"),
     Cell("output current", "demand_high", 90e-6, 1e-3, "A"),  # RF carries the diode's current

@@ -83,6 +83,15 @@ def test_a_deck_says_what_was_read(station):
     assert told["statements"].endswith("railguard.toml")
 
 
+def test_largest_input_of_a_stage_that_is_overdriven_at_rest():
+    """A level beyond its limit leaves the ends where they belong: 1.93 mV of the 10 mV fit."""
+    sheet = rows(review(ROOT / "fixtures" / "faults" / "headroom-output.cir", plugins=False))
+    (row,) = [r for r in by_stage(sheet)["XU5A"] if r.quantity == "largest input"]
+    # the output stands at 3.04 V without signal and reaches 4.98 V, at a gain of 1006
+    assert row.guaranteed_high == pytest.approx((4.98 - 3.038) / 1006, rel=0.01)
+    assert row.guaranteed_low < 0
+
+
 def test_rounding_of_the_solution_is_zero(station):
     """No femtovolt stands beside volts."""
     for row in station:
