@@ -1,12 +1,18 @@
 """What the README says is what the project does."""
 
+import os
 import re
 import shlex
+import subprocess
+import sys
 import tomllib
 from pathlib import Path
 
 import yaml
+from click.testing import CliRunner
 
+import railguard
+from railguard.commands.main import railguard as railguard_command
 from railguard.commands.rules import as_markdown
 from railguard.report.formats import FORMATS
 from railguard.report.terminal import terminal
@@ -79,6 +85,64 @@ def test_python_example_runs(monkeypatch, capsys):
     monkeypatch.chdir(ROOT)
     exec(compile(_blocks("python")[0], "README.md", "exec"), {})
     assert capsys.readouterr().out.startswith("pass")
+
+
+def test_pyspice_example_runs_as_a_test(tmp_path):
+    """The second Python example is a test that passes, and fails on a gain that is too high."""
+    example = _blocks("python")[1]
+    assert _passes(tmp_path / "test_sound.py", example)
+    assert not _passes(tmp_path / "test_clipped.py", example.replace("20e3", "200e3"))
+
+
+def _passes(place, text):
+    place.write_text(text, encoding="utf-8")
+    done = subprocess.run(
+        [sys.executable, "-m", "pytest", "-q", "-p", "no:cacheprovider", str(place)],
+        cwd=place.parent,
+        env={**os.environ, "PYTHONPATH": str(ROOT)},
+        capture_output=True,
+        text=True,
+        check=False,
+    )
+    assert "1 passed" in done.stdout or "headroom-output" in done.stdout, done.stdout
+    return done.returncode == 0
+
+
+def test_framework_example_names_the_hook():
+    """The id and the arguments are those that are offered."""
+    example = next(block for block in _blocks("yaml") if "- id:" in block)
+    offered = (ROOT / ".pre-commit-hooks.yaml").read_text(encoding="utf-8")
+    name = re.search(r"- id: (\S+)", example)[1]
+    assert f"- id: {name}\n" in offered
+    version = re.search(r"rev: v(\S+)", example)[1]
+    assert version == railguard.__version__
+
+
+def test_every_command_of_the_readme_is_there(tmp_path, monkeypatch):
+    """Commands and options that the text names exist; those on shipped files run."""
+    monkeypatch.chdir(ROOT)
+    named = {tuple(m[1].split()) for m in re.finditer(r"`railguard ([a-z]+(?: [a-z]+)?)", README)}
+    assert ("hook", "install") in named
+    for words in sorted(named):
+        help_ = _run(*_command(words), "--help")
+        assert help_.exit_code == 0, words
+    for line in re.findall(r"railguard review [^`\n]+", README):
+        for option in re.findall(r"(?<= )--[a-z-]+", line):
+            assert option in _run("review", "--help").output, line
+        for name in re.findall(r"--report ([a-z]+)", line):
+            assert name in FORMATS, line
+
+
+def _command(words):
+    known = railguard_command.list_commands(None)
+    assert words[0] in known, words
+    group = railguard_command.get_command(None, words[0])
+    inner = getattr(group, "commands", {})
+    return words if len(words) > 1 and words[1] in inner else words[:1]
+
+
+def _run(*arguments):
+    return CliRunner().invoke(railguard_command, arguments)
 
 
 def test_first_two_commands_install_and_run():

@@ -38,7 +38,7 @@ def audit() -> None:
 
 
 @audit.command("run", short_help="Audit folders, archives and files (may be left out).")
-@click.argument("roots", nargs=-1, required=True, metavar="ROOT...")
+@click.argument("roots", nargs=-1, required=True, metavar="ROOT...", type=click.Path())
 @click.option(
     "--to",
     "target",

@@ -7,6 +7,7 @@ import importlib
 import sys
 
 import click
+from click.shell_completion import CompletionItem
 
 from railguard import __version__
 from railguard.errors import RailguardError
@@ -56,6 +57,15 @@ class _Lazy(click.Group):
         command = getattr(importlib.import_module(module), name)
         return command if isinstance(command, click.Command) else None
 
+    def shell_complete(self, ctx: click.Context, incomplete: str) -> list[CompletionItem]:
+        """Complete a command's name without importing the commands."""
+        options = click.Command.shell_complete(self, ctx, incomplete)
+        return options + [
+            CompletionItem(name, help=words)
+            for name, (_, _, words) in _COMMANDS.items()
+            if name.startswith(incomplete)
+        ]
+
     def format_commands(self, ctx: click.Context, formatter: click.HelpFormatter) -> None:
         del ctx
         with formatter.section("Commands"):
@@ -68,6 +78,7 @@ _HELP = """Check the op-amp stages of SPICE netlists against their devices' limi
 railguard review station.cir         one netlist, before its review
 railguard review boards/*.net        many; a table first
 railguard redline station.cir        what to change, as a diff
+railguard hook install               review what is committed, from now on
 railguard rules headroom-output      what a rule judges, and its limits
 railguard devices TL072CP            what is known of a device
 """

@@ -33,7 +33,7 @@ def _show_schema(context: click.Context, _: click.Parameter, wanted: bool) -> No
 
 
 @click.command()
-@click.argument("files", nargs=-1, required=True, metavar="FILE...")
+@click.argument("files", nargs=-1, required=True, metavar="FILE...", type=click.Path())
 @click.option(
     "--report",
     "reports",

@@ -1,6 +1,8 @@
 """`railguard rules`: what is judged, by which limits, from which published reason."""
 
 import difflib
+from collections.abc import Iterable
+from typing import get_args
 
 import click
 from rich.console import Console
@@ -8,28 +10,43 @@ from rich.table import Table
 from rich.text import Text
 
 from railguard.errors import UsageError
+from railguard.rules import third_party
 from railguard.rules.protocol import Limit, Rule
 from railguard.rules.registry import RULES
 from railguard.units import si
+from railguard.words import Family
+
+
+def _names(context: click.Context, parameter: click.Parameter, begun: str) -> list[str]:
+    """Complete the name of a rule or a family, for the user's shell."""
+    del context, parameter
+    every = (*get_args(Family), *(rule.name for rule in RULES))
+    return [name for name in every if name.startswith(begun)]
 
 
 @click.command()
-@click.argument("name", required=False)
+@click.argument("name", required=False, shell_complete=_names)
 @click.option("--markdown", is_flag=True, help="List them as the table of a README.")
-def rules(name: str | None, markdown: bool) -> None:
+@click.option("--no-plugins", is_flag=True, help="Leave out the rules other packages bring.")
+def rules(name: str | None, markdown: bool, no_plugins: bool) -> None:
     """List the rules, or explain the one called NAME (or a family)."""
     if markdown:
         click.echo(as_markdown(), nl=False)
         return
     console = Console(highlight=False)
+    brought = third_party.Installed() if no_plugins else third_party.installed()
+    families = get_args(Family)
+    every = sorted((*RULES, *brought.rules), key=lambda rule: families.index(rule.family))
     if name is None:
-        _list(console)
+        _list(console, every)
+        for remark in brought.remarks:
+            click.echo(remark.message)
         return
-    found = next((rule for rule in RULES if rule.name == name), None)
+    found = next((rule for rule in every if rule.name == name), None)
     if found is None:
-        family = [rule for rule in RULES if rule.family == name]
+        family = [rule for rule in every if rule.family == name]
         if not family:
-            near = difflib.get_close_matches(name, [rule.name for rule in RULES], 1)
+            near = difflib.get_close_matches(name, [rule.name for rule in every], 1)
             hint = f"The nearest is {near[0]}." if near else "railguard rules lists them."
             raise UsageError(f'There is no rule "{name}".', remedy=hint)
         for rule in family:
@@ -38,12 +55,12 @@ def rules(name: str | None, markdown: bool) -> None:
     _explain(console, found)
 
 
-def _list(console: Console) -> None:
+def _list(console: Console, every: Iterable[Rule]) -> None:
     table = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0))
     for heading in ("rule", "judges", "default limits"):
         table.add_column(heading, overflow="fold", no_wrap=heading == "rule")
     family = ""
-    for rule in RULES:
+    for rule in every:
         if rule.family != family:
             table.add_row(Text(rule.family, style="bold"), "", "")
             family = rule.family

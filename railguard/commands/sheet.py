@@ -16,7 +16,7 @@ _BYTES = {"csv": forms.as_csv, "json": forms.as_json, "markdown": forms.as_markd
 
 
 @click.command()
-@click.argument("files", nargs=-1, required=True, metavar="FILE...")
+@click.argument("files", nargs=-1, required=True, metavar="FILE...", type=click.Path())
 @click.option("--of", "only", default="", metavar="XU3", help="This stage alone.")
 @click.option("--as", "how", type=click.Choice(["screen", *_BYTES]), default="screen")
 @click.option("--settings", "stated", type=click.Path(path_type=Path), metavar="FILE")

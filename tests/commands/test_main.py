@@ -1,7 +1,9 @@
 """The command line itself: its help, its version, and what they cost."""
 
+import os
 import subprocess
 import sys
+from pathlib import Path
 
 import pytest
 
@@ -10,7 +12,7 @@ import railguard
 HEAVY = ("numpy", "lark", "rich.console", "scipy", "railguard.reviewing")
 
 
-def run(*arguments):
+def run(*arguments, env=None):
     """Run the command in a process of its own, listing what it imported."""
     code = (
         "import sys, atexit\n"
@@ -21,7 +23,12 @@ def run(*arguments):
         "main()\n"
     )
     return subprocess.run(
-        [sys.executable, "-c", code], capture_output=True, text=True, encoding="utf-8", check=False
+        [sys.executable, "-c", code],
+        env={**os.environ, **(env or {})},
+        capture_output=True,
+        text=True,
+        encoding="utf-8",
+        check=False,
     )
 
 
@@ -47,7 +54,47 @@ def test_help_fits_a_screen_and_shows_examples():
     assert any("railguard review station.cir" in line for line in lines)
 
 
-@pytest.mark.parametrize("command", ["review", "sheet", "rules", "devices"])
+def completed(shell, *words):
+    """Return what a shell is offered for the last of some words."""
+    line = " ".join(("railguard", *words))
+    asked = {"COMP_WORDS": line, "COMP_CWORD": str(len(words))}
+    done = run(env={"_RAILGUARD_COMPLETE": f"{shell}_complete", **asked})
+    assert done.returncode == 0
+    return done
+
+
+@pytest.mark.parametrize(
+    ("words", "offered"),
+    [
+        (["re"], "plain,review"),
+        (["rules", "headroom-out"], "plain,headroom-output"),
+        (["review", "--hold"], "plain,--hold-at"),
+        (["review", "--hold-at", "ma"], "plain,major"),
+        (["review", "boards/ga"], "file,"),
+        (["hook", "ins"], "plain,install"),
+    ],
+)
+def test_the_shell_completes(words, offered):
+    """Commands, rules, options, their values, and files."""
+    told = completed("bash", *words).stdout
+    assert any(line.startswith(offered) for line in told.splitlines()), told
+
+
+def test_completing_a_command_imports_no_command():
+    """A key press waits for nothing of weight."""
+    assert completed("bash", "re").stderr.split() == []
+
+
+@pytest.mark.parametrize("shell", ["bash", "zsh", "fish"])
+def test_a_shells_script_is_printed(shell):
+    """As the README says."""
+    done = run(env={"_RAILGUARD_COMPLETE": f"{shell}_source"})
+    assert "_RAILGUARD_COMPLETE" in done.stdout
+    readme = (Path(__file__).parents[2] / "README.md").read_text(encoding="utf-8")
+    assert f"_RAILGUARD_COMPLETE={shell}_source railguard" in readme
+
+
+@pytest.mark.parametrize("command", ["review", "sheet", "hook", "audit", "rules", "devices"])
 def test_every_command_has_help(command):
     """Each command that is listed can be asked what it does."""
     done = run(command, "--help")

@@ -128,7 +128,7 @@ def _from_top(path: str, top: str) -> str:
 
 
 @hook.command()
-@click.argument("paths", nargs=-1, metavar="[PATH]...")
+@click.argument("paths", nargs=-1, metavar="[PATH]...", type=click.Path())
 @_options
 def run(
     paths: tuple[str, ...],

@@ -17,6 +17,14 @@ SETTINGS = "railguard.toml"
 CHUNK = 500
 """Paths handed to one git command: a command line has its bounds."""
 
+# Whatever the user has set for their own eyes, git answers us in one form. What was added by
+# intent only is not committed.
+_PLAIN_DIFF = ("--ignore-submodules=none", "--ita-invisible-in-index")
+_PLAIN_GREP = (
+    *("--full-name", "--no-color", "--no-line-number", "--no-column", "--no-heading"),
+    *("--no-break", "--no-recurse-submodules"),
+)
+
 # git compares bytes. In UTF-16 every second one is NUL, which `[^_]` takes and `.` does not.
 _CARD = r"\.[^_]?(i[^_]?n[^_]?c|l[^_]?i[^_]?b)"
 _INCLUDE = re.compile(r"^\s*\.(?:include|incl|inc|lib)\s+(.+?)\s*$", re.IGNORECASE)
@@ -34,7 +42,7 @@ class Change(NamedTuple):
 @lru_cache(maxsize=1)
 def changes(top: str) -> tuple[Change, ...]:
     """Return what is staged against the commit that is there; against nothing before the first."""
-    arguments = ("diff-index", "--cached", "--raw", "-z", "-M")
+    arguments = ("diff-index", "--cached", "--raw", "-z", "-M", *_PLAIN_DIFF)
     out = git(*arguments, "HEAD", "--", cwd=top, accepted=(0, CANNOT))
     if not out and not has_commit(top):
         nothing = git("hash-object", "-t", "tree", "--stdin", cwd=top).decode().strip()
@@ -99,9 +107,8 @@ def include_cards(top: str, paths: Iterable[str] | None = None) -> dict[str, lis
 
 
 def _grep(top: str, specs: list[str]) -> dict[str, list[str]]:
-    options = ("--cached", "-a", "-z", "-i", "-E", "--full-name", "--no-color", "-e", _CARD)
     out = git(
-        *("grep", *options, "--", *specs),
+        *("grep", "--cached", "-a", "-z", "-i", "-E", *_PLAIN_GREP, "-e", _CARD, "--", *specs),
         cwd=top,
         accepted=(0, 1),
         env={**os.environ, "LC_ALL": "C"},

@@ -450,3 +450,37 @@ def test_a_thousand_staged_files_are_one_question(repository):
     passed, told = repository.check()
     assert not passed
     assert "part 1199.txt is not there" in told
+
+
+def test_what_a_user_has_set_for_git_changes_nothing(repository):
+    """Colours, line numbers, orders and the like are for eyes."""
+    for name, value in (
+        ("color.ui", "always"),
+        ("grep.lineNumber", "true"),
+        ("grep.column", "true"),
+        ("grep.patternType", "perl"),
+        ("diff.renames", "false"),
+        ("diff.noprefix", "true"),
+        ("diff.relative", "true"),
+        ("core.quotePath", "true"),
+        ("submodule.recurse", "true"),
+    ):
+        repository.git("config", name, value)
+    repository.add("böards/gauge.cir", INCLUDING.format("load.txt"))
+    repository.add("böards/load.txt", LOAD.format("10k"))
+    assert repository.check()[0]
+    repository.keep()
+    repository.add("böards/load.txt", LOAD.format("20"))
+    passed, told = repository.check()
+    assert not passed
+    assert "drive-current" in told
+
+
+def test_what_is_added_by_intent_only(repository):
+    """`git add -N` commits nothing yet."""
+    repository.write("gauge.cir", CLIPPED)
+    repository.git("add", "-N", "gauge.cir")
+    repository.add("other.cir", SOUND)
+    passed, told = repository.check()
+    assert passed
+    assert "1 netlist reviewed" in told
