@@ -1,4 +1,4 @@
-"""`python -m railguard`, which is what the hook of a git repository runs."""
+"""Where a run begins: `railguard`, and `python -m railguard`, which is what a git hook runs."""
 
 import sys
 

@@ -15,6 +15,9 @@ from railguard.notices import NotChecked
 from railguard.rules.finding import Finding
 from railguard.words import Family
 
+Subject = Literal["stage", "rail", "package", "design"]
+SUBJECTS: tuple[Subject, ...] = ("stage", "rail", "package", "design")
+
 Limits = Mapping[str, float]
 """Named limits of one rule: the defaults with the user's values on top."""
 
@@ -51,7 +54,7 @@ class Rule(msgspec.Struct, frozen=True, kw_only=True):
 
     name: str
     family: Family
-    looks_at: Literal["stage", "rail", "package", "design"]
+    looks_at: Subject
     judges: str
     reason: str
     source: str

@@ -150,17 +150,29 @@ def _outcomes(
     if not guarded:
         return list(one.judge(subject, limits, design))
     try:
-        return list(one.judge(subject, limits, design))
-    except Exception as error:  # noqa: BLE001 - a third party's rule may raise anything
-        name = getattr(subject, "designator", None) or getattr(subject, "net", None)
-        return [
-            NotChecked(
-                name or design.circuit.path,
-                one.name,
-                f"the rule stopped with {type(error).__name__}: {error}",
-                "report it to the rule's author",
-            )
-        ]
+        outcomes = list(one.judge(subject, limits, design))
+        fault = next(filter(None, (_misfit(one, outcome) for outcome in outcomes)), "")
+    except (Exception, SystemExit) as error:  # noqa: BLE001 - a third party's may raise anything
+        fault = f"the rule stopped with {type(error).__name__}: {error}"
+    if not fault:
+        return outcomes
+    name = getattr(subject, "designator", None) or getattr(subject, "net", None)
+    add = "report it to the rule's author, or leave it out with --no-plugins"
+    return [NotChecked(name or design.circuit.path, one.name, fault, add)]
+
+
+def _misfit(one: Rule, outcome: object) -> str:
+    """Say why what a third party's rule yielded cannot be taken, or "" where it can."""
+    kind = Finding if isinstance(outcome, Finding) else NotChecked
+    if not isinstance(outcome, kind):
+        return f"the rule yielded {type(outcome).__name__}, which is no finding"
+    if outcome.rule != one.name:
+        return f'the rule yielded a finding of "{outcome.rule}"'
+    try:
+        msgspec.convert(msgspec.to_builtins(outcome), kind)
+    except (msgspec.ValidationError, TypeError) as error:
+        return f"the rule yielded a finding that is none: {error}"
+    return ""
 
 
 def _reweighed(finding: Finding, settings: Settings) -> Finding:

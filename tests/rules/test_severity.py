@@ -3,7 +3,7 @@
 import pytest
 
 from railguard.analysis.stage import Pair
-from railguard.rules.severity import TABLE, breach, capped, evidence, soften
+from railguard.rules.severity import TABLE, breach, capped, evidence, far_beyond, soften
 from tests.rules.stages import bound
 
 
@@ -198,3 +198,23 @@ def test_better_evidence_is_never_milder():
     for row in TABLE.values():
         ranks = [order.index(row[column]) for column in ("stated", "memory", "assumed")]
         assert ranks == sorted(ranks)
+
+
+@pytest.mark.parametrize(
+    ("fields", "basis", "severity"),
+    [
+        ({"demand": 20.1, "guaranteed": 10.0}, "catalogue", "critical"),
+        ({"demand": 20.1, "guaranteed": 10.0}, "memory", "major"),
+        ({"demand": 20.1, "guaranteed": 10.0}, "practice", "minor"),
+        ({"demand": 20.0, "guaranteed": 10.0}, "catalogue", "major"),
+        ({"demand": 20.1, "guaranteed": 10.0, "typical": 25.0}, "catalogue", "major"),
+        ({"demand": 9.0, "guaranteed": 10.0, "stated": Pair(25.0, 10.0)}, "catalogue", "major"),
+    ],
+)
+def test_far_beyond_what_is_guaranteed(fields, basis, severity):
+    """Twice the guaranteed limit, at nominal and with none typical, is as bad as a typical one."""
+    limits = bound(typical_basis=basis, guaranteed_basis=basis, **fields)
+    broken = breach(limits)
+    assert broken is not None
+    assert far_beyond(limits, broken, 2.0).severity == severity
+    assert far_beyond(limits, broken, 1e9) == broken

@@ -101,6 +101,30 @@ def test_the_glob_is_taken_from_the_settings_file_s_folder():
     ]
 
 
+@pytest.mark.parametrize(
+    ("pattern", "deck", "taken"),
+    [
+        ("lamp/*.cir", "lamp/driver.cir", True),
+        ("lamp/*.cir", "lamp/old/driver.cir", False),
+        ("**/driver.cir", "driver.cir", True),
+        ("**/driver.cir", "lamp/old/driver.cir", True),
+        ("lamp/**/driver.cir", "lamp/driver.cir", True),
+        ("lamp/**/driver.cir", "lamp/a/b/driver.cir", True),
+        ("lamp/**/driver.cir", "driver.cir", False),
+        ("lamp/**", "lamp/driver.cir", True),
+        ("lamp/**", "gauge/driver.cir", False),
+        ("lamp/**", "lamp.cir", False),
+        ("lamp/old/**/**", "driver.cir", False),
+        ("lamp\\*.cir", "lamp/driver.cir", True),
+        ("*.CIR", "driver.cir", False),
+    ],
+)
+def test_which_decks_a_glob_takes_in(pattern, deck, taken):
+    """`*` stays in a folder, `**` goes through any number of them, after what stands before it."""
+    found, _ = judged(LAMP, waiver(file=pattern), deck=deck)
+    assert (found.waiver is not None) == taken
+
+
 def test_an_expired_waiver_is_a_finding_again_and_says_so():
     """It still matches: it is no leftover."""
     made, matched = judged(LAMP, waiver(until=dt.date(2027, 1, 30)))

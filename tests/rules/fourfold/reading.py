@@ -108,7 +108,7 @@ CASES = {
     ),
     "netlist-title": Four(
         passing=_BASE,
-        failing=_raw(f"VX x 0 5\n{_BASE}RX x 0 1k\n.end\n"),
+        failing=_raw(f"V9 x 0 5\n{_BASE}RX x 0 1k\n.end\n"),
         inside=_raw(f"R1 of the gauge\n{_BASE}.end\n"),
         outside=_raw(f"R1 out 0 10k\n{_BASE}.end\n"),
         unknown=_raw(f"\n{_BASE}.end\n"),
