@@ -80,4 +80,5 @@ def nothing_left_running():
         with contextlib.suppress(ProcessLookupError):
             if run.poll() is None:
                 os.killpg(run.pid, signal.SIGKILL)
-        run.communicate()
+        run.wait()
+        run.stderr.close()
