@@ -11,6 +11,7 @@ from rich.text import Text
 
 from railguard.errors import UsageError
 from railguard.rules import third_party
+from railguard.rules.circuits import CIRCUITS, Assumed
 from railguard.rules.protocol import Limit, Rule
 from railguard.rules.registry import RULES
 from railguard.units import si
@@ -29,7 +30,10 @@ def _names(context: click.Context, parameter: click.Parameter, begun: str) -> li
 @click.option("--markdown", is_flag=True, help="List them as the table of a README.")
 @click.option("--no-plugins", is_flag=True, help="Leave out the rules other packages bring.")
 def rules(name: str | None, markdown: bool, no_plugins: bool) -> None:
-    """List the rules, or explain the one called NAME (or a family)."""
+    """List the rules, or explain the one called NAME (or a family).
+
+    `railguard rules circuits` says what is assumed of circuits that are no plain stage.
+    """
     if markdown:
         click.echo(as_markdown(), nl=False)
         return
@@ -41,6 +45,10 @@ def rules(name: str | None, markdown: bool, no_plugins: bool) -> None:
         _list(console, every)
         for remark in brought.remarks:
             click.echo(remark.message)
+        return
+    if name == "circuits":
+        for circuit in CIRCUITS:
+            _assume(console, circuit)
         return
     found = next((rule for rule in every if rule.name == name), None)
     if found is None:
@@ -77,6 +85,17 @@ def as_markdown() -> str:
         judges = rule.judges.replace("|", "\\|")
         lines.append(f"| `{rule.name}` | {judges} | {limits} |")
     return "\n".join(lines) + "\n"
+
+
+def _assume(console: Console, circuit: Assumed) -> None:
+    console.print(Text(circuit.name, style="bold"))
+    for label, words in (
+        ("seen", circuit.seen),
+        ("assumed", circuit.assumed),
+        ("instead", circuit.instead),
+    ):
+        console.print(Text.assemble((f"  {label:<8}", "dim"), words))
+    console.print()
 
 
 def _explain(console: Console, rule: Rule) -> None:

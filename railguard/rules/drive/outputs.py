@@ -10,7 +10,6 @@ from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.remedies import fit
 from railguard.rules.severity import evidence
 from railguard.rules.wording import NO_SOURCE, device, listed, origin
-from railguard.rules.working import NO_SUPPLY, standstill
 from railguard.units import si
 from railguard.words import Severity
 
@@ -189,7 +188,7 @@ CAPACITIVE = Rule(
 def judge_above_rail(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome]:
     """Judge the current that flows into an input driven beyond its device's rails."""
     supply, pins = stage.supply, (stage.inputs.plus, stage.inputs.minus)
-    if supply.positive is None or supply.negative is None or standstill(stage) == NO_SUPPLY:
+    if supply.positive is None or supply.negative is None or supply.positive < supply.negative:
         return
     for pin in pins:
         over = max(

@@ -110,7 +110,8 @@ def test_an_unknown_slew_rate_is_not_checked():
 def driven(volts, series, **fields):
     """Make a comparator on 5 V whose input is driven from elsewhere."""
     plus = pin("in", demand=Range(0.0, volts), series=series)
-    return stage(inputs=inputs(plus=plus), supply=single(), **{"use": "comparator", **fields})
+    usual = {"use": "comparator", "supply": single()}
+    return stage(inputs=inputs(plus=plus), **{**usual, **fields})
 
 
 @pytest.mark.parametrize(("volts", "series"), [(5.0, 0.0), (5.3, 0.0), (12.0, 1.5e3)])
@@ -127,6 +128,15 @@ def test_an_input_driven_beyond_its_rail():
     assert "Fit at least 1.5 kΩ in series" in found.remedy
     (direct,) = findings(ABOVE_RAIL, driven(12.0, 0.0))
     assert "without a resistor" in direct.message
+
+
+def test_an_input_driven_while_its_rail_is_off():
+    """Five volts into a device without power go through its diode into the dead rail."""
+    off = changed(single(), positive=0.0, positive_worst=Range(0.0, 0.0))
+    (found,) = findings(ABOVE_RAIL, driven(5.0, 100.0, supply=off))
+    assert found.demand == pytest.approx(47e-3)
+    turned = changed(off, positive=-5.0)
+    assert outcomes(ABOVE_RAIL, driven(5.0, 100.0, supply=turned)) == []
 
 
 def test_an_input_below_its_negative_rail():
