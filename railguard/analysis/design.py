@@ -51,7 +51,10 @@ def analyse(
     problems = [*circuit.problems, *(p for one in done for p in one.problems)]
     remarks = [*circuit.remarks, *found.remarks, *_missing(prepared, settings)]
     if solved:
-        whole = Network(prepared.elements, found.amplifiers)
+        lone = len(parts) == 1
+        whole = (
+            solved[0][0].answers.network if lone else Network(prepared.elements, found.amplifiers)
+        )
         problems += _conflicts(whole, prepared)
         problems += _shorted(prepared)
         remarks += _islands(whole, prepared)

@@ -27,6 +27,8 @@ OPEN_BETA = 1e-6
 """A feedback factor below this is no feedback: the loop gain of any op-amp is then below one."""
 LOWEST_HERTZ = 1.0
 POINTS = 41
+POINTS_A_DECADE = 16
+"""Points near a crossover that what is not listed may shift."""
 SURE_DEGREES = 5.0
 """A phase margin is given where what is not listed moves it by less than this."""
 LARGEST_INPUT_FARADS = 20e-12
@@ -108,15 +110,15 @@ def open_loop(amplifier: Amplifier, hertz: Real) -> Complex:
     return 1.0 / inverse
 
 
-def sweep(network: Network, tops: Sequence[float]) -> LoopSweep:
-    """Sweep all loops from DC to ten times the fastest amplifier's gain-bandwidth product.
+def sweep(network: Network, tops: Sequence[float], dc: Real) -> LoopSweep:
+    """Sweep all loops up to ten times the fastest amplifier's gain-bandwidth product.
 
     tops  further frequencies of interest: the tops of the stated bands, hertz
+    dc    A*beta at DC, which is worked out before anything is swept, shape (amplifiers,)
     """
     fastest = max((gain_bandwidth(a) or 0.0 for a in network.amplifiers), default=0.0) or 1e6
     grid = np.geomspace(LOWEST_HERTZ, 10 * fastest, POINTS)
     hertz = np.array(sorted({*grid.tolist(), *(t for t in tops if t > 0)}))
-    dc = return_ratios(network, np.zeros(1))[0].real
     return LoopSweep(hertz=hertz, a_beta=return_ratios(network, hertz), dc=dc)
 
 
@@ -172,17 +174,26 @@ def phase_margin(hertz: Real, a_beta: Complex, f: float) -> float:
 
 def crossover_margins(network: Network, crossovers: Mapping[str, float]) -> dict[str, float]:
     """Return the phase margin of each amplifier in `network`, its crossover found anew near by."""
-    steps = np.geomspace(SHIFT_LOW, SHIFT_HIGH, 30)
-    hertz = np.array(sorted({step * f for f in crossovers.values() for step in steps.tolist()}))
-    if not len(hertz):
+    if not crossovers:
         return {}
+    # One grid for all, so that loops that close near one another share their points.
+    steps = {
+        step
+        for f in crossovers.values()
+        for step in range(
+            int(np.floor(np.log10(SHIFT_LOW * f) * POINTS_A_DECADE)),
+            int(np.ceil(np.log10(SHIFT_HIGH * f) * POINTS_A_DECADE)) + 1,
+        )
+    }
+    hertz = np.array([10.0 ** (step / POINTS_A_DECADE) for step in sorted(steps)])
     ratios = return_ratios(network, hertz)
     margins = {}
     for column, amplifier in enumerate(network.amplifiers):
         near = crossovers.get(amplifier.designator)
         if near is None:
             continue
-        own = (hertz >= near * SHIFT_LOW * 0.999) & (hertz <= near * SHIFT_HIGH * 1.001)
+        beyond = 10.0 ** (1.0 / POINTS_A_DECADE)
+        own = (hertz >= near * SHIFT_LOW / beyond) & (hertz <= near * SHIFT_HIGH * beyond)
         f, t = hertz[own], ratios[own, column]
         at = crossing(f, np.abs(t))
         if at is not None:

@@ -13,6 +13,7 @@ second; an amplifier's current counts as flowing out of it into its net.
 from collections.abc import Iterable, Mapping, Sequence
 from functools import cached_property
 from types import MappingProxyType
+from typing import NamedTuple
 
 import msgspec
 import numpy as np
@@ -88,6 +89,18 @@ class Parasitics(msgspec.Struct, frozen=True):
     output_ohms: float
 
 
+class _Passive(NamedTuple):
+    """What a network holds before its amplifiers are stamped: the same however they are taken."""
+
+    branches: list[Branch]
+    stamps: list[Stamp]
+    injections: dict[str, Injection]
+    conflicts: list[tuple[str, ...]]
+    held: Sets
+    g: Entries
+    c: Entries
+
+
 class Network:
     """G, C and the way from names to rows.
 
@@ -137,24 +150,63 @@ class Network:
                     self._row(net)
         self.net_count = len(self.rows)
         self._next = self.net_count
-        later = []
+        self._later = []
         for element in kept:
             if id(element) in amplifier_elements:
                 continue
             if element.kind in ("F", "H"):
-                later.append(element)
+                self._later.append(element)
             else:
                 self._stamp(element)
-        for amplifier in amplifiers:
+        self._passive = self._state()
+        self._stamp_active(extra)
+        self.size = max(self._next, 1)
+        self.floating, self._leaks = self._find_floating()
+        self._g += self._leaks
+
+    def again(
+        self,
+        forced: frozenset[str] = frozenset(),
+        extra: "Mapping[str, Parasitics]" = MappingProxyType({}),
+    ) -> "Network":
+        """Return the network of the same elements with its amplifiers taken otherwise."""
+        other = Network.__new__(Network)
+        other.rows, other.net_count = self.rows, self.net_count
+        other.amplifiers, other.forced = self.amplifiers, forced
+        other._later, other._passive = self._later, self._passive
+        state = self._passive
+        other.branches, other.stamps = [*state.branches], [*state.stamps]
+        other.injections, other.outputs = dict(state.injections), {}
+        other.conflicts, other._held = [*state.conflicts], state.held.copy()
+        other._g, other._c = [*state.g], [*state.c]
+        other._next = self.net_count + len(state.branches)
+        other._stamp_active(extra)
+        other.size = self.size
+        # What conducts at DC is the same however an amplifier is taken.
+        other.floating, other._leaks = self.floating, self._leaks
+        other._g += self._leaks
+        return other
+
+    def _state(self) -> "_Passive":
+        return _Passive(
+            [*self.branches],
+            [*self.stamps],
+            dict(self.injections),
+            [*self.conflicts],
+            self._held.copy(),
+            [*self._g],
+            [*self._c],
+        )
+
+    def _stamp_active(self, extra: "Mapping[str, Parasitics]") -> None:
+        for amplifier in self.amplifiers:
             self._stamp_amplifier(
-                amplifier, amplifier.designator in forced, extra.get(amplifier.designator)
+                amplifier, amplifier.designator in self.forced, extra.get(amplifier.designator)
             )
-        for element in later:
+        for element in self._later:
             self._stamp_current_controlled(element)
         if not self._next:  # everything is tied to ground: one unknown, zero, keeps the algebra
             self._g.append((0, 0, 1.0))
-        self.size = max(self._next, 1)
-        self.floating = self._find_floating()
 
     @cached_property
     def g(self) -> Real:
@@ -330,8 +382,8 @@ class Network:
             if at >= 0:
                 self._g.append((row, at, sign))
 
-    def _find_floating(self) -> frozenset[str]:
-        """Tie nets without a DC way to ground down, and return them."""
+    def _find_floating(self) -> tuple[frozenset[str], Entries]:
+        """Return the nets without a DC way to ground, and the entries that tie them down."""
         sets = Sets()
         for branch in self.branches:
             sets.join(*branch.nets)
@@ -345,10 +397,9 @@ class Network:
             root = sets.find(net)
             if root != home:
                 groups.setdefault(root, []).append(net)
-        for nets in groups.values():
-            row = self.rows[nets[0]]
-            self._g.append((row, row, LEAK_SIEMENS))
-        return frozenset(net for nets in groups.values() for net in nets)
+        tied = [self.rows[nets[0]] for nets in groups.values()]
+        leaks = [(row, row, LEAK_SIEMENS) for row in tied]
+        return frozenset(net for nets in groups.values() for net in nets), leaks
 
 
 def open_loop_gain(amplifier: Amplifier) -> float:

@@ -86,7 +86,8 @@ def oscillators(
     decades = np.log10(HIGHEST_HERTZ / LOWEST_HERTZ)
     swept = np.geomspace(LOWEST_HERTZ, HIGHEST_HERTZ, int(decades * POINTS_A_DECADE))
     hertz = np.array([0.0, *swept.tolist()])
-    ratios = _swept(Network(elements, ideal, switched), hertz)
+    network = Network(elements, ideal, switched)
+    ratios = _swept(network, hertz)
     switching = set()
     sine = {name for name, use in uses.items() if use == "oscillator" and name in alone}
     for k, amplifier in enumerate(amplifiers):
@@ -99,7 +100,7 @@ def oscillators(
             sine.add(amplifier.designator)
     if not switching and not sine:
         return Oscillators()
-    still = return_ratios(Network(elements, ideal, switched | switching), np.zeros(1))[0].real
+    still = return_ratios(network.again(switched | switching), np.zeros(1))[0].real
     ramps = frozenset(
         a.designator
         for k, a in enumerate(amplifiers)

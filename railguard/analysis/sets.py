@@ -25,3 +25,9 @@ class Sets:
             return False
         self._parent[ra] = rb
         return True
+
+    def copy(self) -> "Sets":
+        """Return the same groups, to be joined further without changing these."""
+        other = Sets()
+        other._parent = dict(self._parent)
+        return other

@@ -107,11 +107,11 @@ def solve(
     network = Network(prepared.elements, amplifiers, extra=known)
     loop_network = Network(elements, amplifiers, extra=known) if bent else network
     signs = return_ratios(loop_network, np.zeros(1))[0].real
-    passive = passive_view(prepared.elements, amplifiers)
+    passive = passive_view(network)
     uses = {a.designator: use for a in amplifiers if (use := stated_use(a, settings)) is not None}
     latched = _latched(amplifiers, uses, passive)
     if latched and len(latched) < len(amplifiers) and (signs < 0).any():
-        without = Network(elements, amplifiers, frozenset(latched), known)
+        without = loop_network.again(frozenset(latched), known)
         rest = return_ratios(without, np.zeros(1))[0].real
         own = (latched.get(a.designator) for a in amplifiers)
         signs = np.array([r if t is None else t for r, t in zip(rest, own, strict=True)])
@@ -120,8 +120,8 @@ def solve(
     relaxing = {a.designator for a in amplifiers if charges_itself(a, ways)}
     forced = _without_loop(amplifiers, signs, settings) | frozenset(clamps) | relaxing | turning.all
     if forced:
-        network = Network(prepared.elements, amplifiers, forced, known)
-        loop_network = Network(elements, amplifiers, forced, known) if bent else network
+        network = network.again(forced, known)
+        loop_network = loop_network.again(forced, known) if bent else network
     draws = _quiescent(amplifiers, feeds)
     held: dict[str, Clamp] = {}
     if forced:
@@ -129,9 +129,8 @@ def solve(
         held = {**_limits(amplifiers, levels, forced), **clamps}
     answers = answer(network, amplifiers, prepared, draws, held)
     tops = tuple(sorted({t.top for t in prepared.tones if t.top > 0}))
-    swept = sweep(loop_network, tops)
     signs, through = _through_diodes(elements, amplifiers, signs)
-    swept = msgspec.structs.replace(swept, dc=signs)
+    swept = sweep(loop_network, tops, signs)
     options = options or Options()
     off = _spread(answers, prepared, amplifiers, feeds, settings, exempt)
     return Solution(
@@ -149,7 +148,7 @@ def solve(
         forced=forced,
         through=through,
         turning=turning,
-        margins=_margins(swept, elements, amplifiers, forced),
+        margins=_margins(swept, loop_network, amplifiers, forced),
         spread=off,
         mid=factor(network, MID_HERTZ),
         tops=tops,
@@ -268,7 +267,7 @@ def _stated(prepared: Prepared, feeds: Mapping[str, Feed], settings: Settings) -
 
 def _margins(
     swept: LoopSweep,
-    elements: tuple[Element, ...],
+    loop_network: Network,
     amplifiers: tuple[Amplifier, ...],
     forced: frozenset[str],
 ) -> dict[str, Margin]:
@@ -283,7 +282,7 @@ def _margins(
             listed[amplifier.designator] = phase_margin(swept.hertz, swept.a_beta[:, k], at)
     if not crossovers:
         return {}
-    bounding = Network(elements, amplifiers, forced, bounding_parasitics(amplifiers))
+    bounding = loop_network.again(forced, bounding_parasitics(amplifiers))
     bounds = crossover_margins(bounding, crossovers)
     return {
         name: Margin(

@@ -43,10 +43,9 @@ class Passive(msgspec.Struct, frozen=True):
         return float(self.dc.adjoint([row])[0, row].real)
 
 
-def passive_view(elements: Iterable[Element], amplifiers: tuple[Amplifier, ...]) -> Passive:
-    """Build the passive view of a circuit."""
-    forced = frozenset(a.designator for a in amplifiers)
-    network = Network(elements, amplifiers, forced)
+def passive_view(active: Network) -> Passive:
+    """Build the passive view of a circuit from its network."""
+    network = active.again(frozenset(a.designator for a in active.amplifiers))
     return Passive(network, factor(network, 0.0), factor(network, MID_HERTZ))
 
 

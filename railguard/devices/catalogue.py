@@ -7,7 +7,7 @@ small TOML files, not all of them.
 
 import tomllib
 from collections.abc import Iterator, Mapping, Sequence
-from functools import lru_cache
+from functools import cache, lru_cache
 from pathlib import Path
 
 import msgspec
@@ -52,7 +52,6 @@ class Catalogue:
         self._user = user
         self._listed = listed
         self._names = names
-        self._read = lru_cache(maxsize=None)(_shipped_device)
 
     def match(self, name: str) -> Match:
         """Say what a name in a netlist stands for."""
@@ -87,7 +86,7 @@ class Catalogue:
         entry = self._index.families.get(family)
         if entry is None:
             raise CatalogueError(f"There is no family {family} in the catalogue.")
-        return self._read(entry.file)
+        return _shipped_device(entry.file)
 
 
 def load(user: Sequence[tuple[Mapping[str, object], Location]] = ()) -> Catalogue:
@@ -99,13 +98,8 @@ def load(user: Sequence[tuple[Mapping[str, object], Location]] = ()) -> Catalogu
     Raises:
         CatalogueError: a table that cannot be used, with the place of it.
     """
-    index = msgspec.json.decode((DATA / "index.json").read_bytes(), type=Index)
-    names = matching.Names()
-    for family, entry in index.families.items():
-        _register(names, family, entry.names)
-    for channels, bases in index.named_only.items():
-        for base in _spelled_out(bases):
-            names.bases[base] = ("", channels)
+    index, shipped = _shipped()
+    names = matching.Names(dict(shipped.bases), {k: [*v] for k, v in shipped.also.items()})
     devices: dict[str, Device] = {}
     listed: dict[str, Mapping[int, tuple[str, ...]]] = {}
     for data, location in user:
@@ -118,6 +112,19 @@ def load(user: Sequence[tuple[Mapping[str, object], Location]] = ()) -> Catalogu
         listed[table.family] = table.names
         _register_user(names, table, table.family in index.families)
     return Catalogue(index, names, devices, listed)
+
+
+@lru_cache(maxsize=1)
+def _shipped() -> tuple[Index, matching.Names]:
+    """Return the index and the names it lists; read once in a process, never changed."""
+    index = msgspec.json.decode((DATA / "index.json").read_bytes(), type=Index)
+    names = matching.Names()
+    for family, entry in index.families.items():
+        _register(names, family, entry.names)
+    for channels, bases in index.named_only.items():
+        for base in _spelled_out(bases):
+            names.bases[base] = ("", channels)
+    return index, names
 
 
 def _register(names: matching.Names, family: str, listed: Mapping[int, Sequence[str]]) -> None:
@@ -164,7 +171,9 @@ def read_family_file(path: Path) -> FamilyTable:
     return read_table(data, place)
 
 
+@cache
 def _shipped_device(file: str) -> Device:
+    """Read a family's figures, once in a process: a bulk run meets the same few over and over."""
     return device_of(read_family_file(DATA / file))
 
 
