@@ -5,20 +5,20 @@ import msgspec
 from railguard.analysis.stage import Design, Stage
 from railguard.devices.catalogue import Catalogue
 from railguard.engine.confirm import filled, outcome
-from railguard.engine.ngspice import Ngspice
+from railguard.engine.ngspice import Engine
 from railguard.engine.operating import Simulated, Simulation, simulate
 from railguard.errors import EngineError
 from railguard.notices import Remark
 from railguard.rules.finding import Finding
 
-CONFIRMED = ("headroom-output", "drive-current")
+CONFIRMED = ("headroom-output", "headroom-input", "drive-current")
 """Rules whose findings a typical simulation at nominal values can confirm or refute."""
 
 
 class Ngspiced:
     """One review's simulations: one deck at a time, a bad one never spoils the next."""
 
-    def __init__(self, engine: Ngspice, *, fill: bool, confirm: bool) -> None:
+    def __init__(self, engine: Engine, *, fill: bool, confirm: bool) -> None:
         """Take an engine and what it is to do."""
         self._engine = engine
         self._fill = fill

@@ -184,6 +184,10 @@ def _delivers(element: Element) -> bool:
     if element.kind == "battery":
         return element.source is not None and element.source.stated
     if element.kind == "V":
-        # A source of exactly zero is an ammeter: the search goes on through it.
-        return element.source is not None and element.source.stated and element.source.level != 0
+        # A source of exactly zero between two nets is an ammeter: the search goes on through it.
+        # One to ground holds the net at ground, and says so.
+        source = element.source
+        if source is None or not source.stated:
+            return False
+        return source.level != 0 or GROUND in element.nets[:2]
     return True

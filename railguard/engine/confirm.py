@@ -2,13 +2,18 @@
 
 import msgspec
 
-from railguard.analysis.stage import Bound, Design, Stage, Unknown
+from railguard.analysis.stage import Bound, Design, Range, Stage, Unknown
 from railguard.engine.operating import Simulated, Simulation
 
 MET = 0.02
 """A demand counts as met when the simulation comes within this share of its span."""
 SMALLEST = 0.02
 """V within which an output voltage counts as reached whatever its span."""
+
+
+APART = 0.02
+"""V between the inputs from which an amplifier has stopped following; a working loop holds them
+within a few millivolts."""
 
 
 class Outcome(msgspec.Struct, frozen=True):
@@ -30,22 +35,62 @@ def outcome(
         return Outcome("open", "it states no number that can be simulated")
     if corner == "worst-case":
         return Outcome("open", "it is a corner; the simulation runs at nominal values")
+    if rule == "headroom-input":
+        return _input(demand, limit, stage, done)
     if rule == "headroom-output":
         upper = demand > limit
         reached = done.output.high if upper else done.output.low
-        span = max(stage.output.demand.span or 0.0, 1.0)
-        slack = max(MET * span, SMALLEST)
-        figure = "V"
+        slack = _slack(stage.output.demand)
+        figure, bound = "V", stage.output.high if upper else stage.output.low
     else:
-        reached = max(done.current.high or 0.0, -(done.current.low or 0.0))
+        reached = _most(done.current)
         slack, upper, figure = MET * abs(demand), True, "A"
+        sources = (done.current.high or 0.0) >= -(done.current.low or 0.0)
+        bound = stage.current.source if sources else stage.current.sink
     if reached is None:
         return Outcome("open", "it did not settle")
     short = demand - reached if upper else reached - demand
     told = f"{reached:.4g} {figure} of {demand:.4g} {figure}"
     if short > slack:
         return Outcome("confirmed", f"ngspice reaches {told}")
-    return Outcome("refuted", f"ngspice reaches {told} with typical figures")
+    return _not_met(bound, demand, f"ngspice reaches {told}")
+
+
+def _slack(span: Range) -> float:
+    return max(MET * max(span.span or 0.0, 1.0), SMALLEST)
+
+
+def _most(current: Range) -> float | None:
+    if current.high is None or current.low is None:
+        return None
+    return max(current.high, -current.low, 0.0)
+
+
+def _input(demand: float, limit: float, stage: Stage, done: Simulated) -> Outcome:
+    """Hold an input's demand against where the input got, and whether the amplifier followed."""
+    upper = demand > limit
+    reached = done.plus.high if upper else done.plus.low
+    if reached is None or done.apart is None:
+        return Outcome("open", "it did not settle")
+    short = demand - reached if upper else reached - demand
+    told = f"{reached:.4g} V of {demand:.4g} V"
+    if short > _slack(stage.inputs.demand):
+        return Outcome("refuted", f"ngspice brings the input to {told} only")
+    if done.apart > APART:
+        return Outcome(
+            "confirmed",
+            f"at {told} ngspice's inputs part by {done.apart:.3g} V: it stops following",
+        )
+    bound = stage.inputs.high if upper else stage.inputs.low
+    return _not_met(bound, demand, f"at {told} ngspice's inputs still follow")
+
+
+def _not_met(bound: Bound, demand: float, told: str) -> Outcome:
+    """Say what it means that the simulation does what the finding doubts."""
+    typical = bound.typical
+    if typical is not None and (demand <= typical if bound.upper else demand >= typical):
+        return Outcome("open", f"{told}: a typical device does, the finding is about the others")
+    return Outcome("refuted", f"{told} with typical figures")
 
 
 def filled(design: Design, simulation: Simulation) -> Design:
@@ -58,7 +103,7 @@ def filled(design: Design, simulation: Simulation) -> Design:
 def _filled(stage: Stage, simulation: Simulation) -> Stage:
     done = simulation.stages.get(stage.designator)
     bent = [p for p, u in stage.unknown.items() if u.add == "--engine ngspice"]
-    if done is None or not bent:
+    if done is None or not bent or done.output.high is None:
         return stage
     unknown = {part: reason for part, reason in stage.unknown.items() if part not in bent}
     for part in ("loop", "dissipation"):

@@ -18,9 +18,9 @@ PINS = ("inp", "inn", "vcc", "vee", "out")
 
 _TRANSCONDUCTANCE = 1e-5
 _COMMON_MODE_OHMS = 1e13
-_OUTSIDE_SHARE = 0.999
-"""Share of an input's excess beyond its range that is taken away: a thousandth still acts, so that
-a stage driven out of its range has one answer and not many."""
+_OUTSIDE_GAIN = 3.0
+"""What is left of the open-loop gain for the part of an input beyond its range: so little that a
+follower visibly stops following, enough that a stage driven out of its range has one answer."""
 _CORNER = 0.3
 """Milliamperes over which drop and current limit blend into one another."""
 _DEAD_BAND = 0.02
@@ -93,7 +93,7 @@ def _input(sign: str, f: Figures) -> str:
     pin = f"v(in{sign})"
     above = f"max({pin}-v(vcc){-f.input_high:+.9g},0)" if f.input_high is not None else "0"
     below = f"max(v(vee){f.input_low:+.9g}-{pin},0)" if f.input_low is not None else "0"
-    return f"{pin}-{_OUTSIDE_SHARE}*({above}-{below})"
+    return f"{pin}-{number(1 - _OUTSIDE_GAIN / f.gain)}*({above}-{below})"
 
 
 def _least(expression: str, limit: float) -> str:

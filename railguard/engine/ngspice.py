@@ -15,6 +15,7 @@ import subprocess
 import sys
 import tempfile
 from pathlib import Path
+from typing import Protocol
 
 import msgspec
 
@@ -60,6 +61,14 @@ class Run(msgspec.Struct, frozen=True):
     plots: tuple[Plot, ...]
     fallback: bool
     log: str
+
+
+class Engine(Protocol):
+    """What runs decks: the binary, or the shared library in a process of its own."""
+
+    def run(self, deck: str, *requests: Request) -> Run:
+        """Run analyses on a deck that holds none; raises EngineError."""
+        ...
 
 
 class Ngspice(msgspec.Struct, frozen=True):

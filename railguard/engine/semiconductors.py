@@ -10,7 +10,7 @@ from collections.abc import Mapping
 
 import msgspec
 
-from railguard.circuit.model import Model
+from railguard.circuit.model import Element, Model
 
 _TYPES = {
     "D": ("D",),
@@ -65,6 +65,19 @@ class WrittenModel(msgspec.Struct, frozen=True):
     type: str
     parameters: Mapping[str, float]
     stand_in: bool = False
+
+
+def scoped(element: Element, models: Mapping[str, Model]) -> Element:
+    """Name a device's model by the subcircuit it stands in, looked for from the inside out."""
+    if element.kind not in _TYPES or not element.model:
+        return element
+    scope = element.designator.casefold()
+    while scope:
+        scope = scope.rpartition(".")[0]
+        key = f"{scope}.{element.model.casefold()}".lstrip(".")
+        if key in models:
+            return msgspec.structs.replace(element, model=key)
+    return element
 
 
 def model_for(kind: str, name: str, models: Mapping[str, Model]) -> WrittenModel | None:

@@ -11,6 +11,7 @@ from railguard.deck.lines import Line
 from railguard.devices.model import Match
 from railguard.devices.pinouts import pin_order
 from railguard.engine.relations import Relation, linear_currents, relation
+from railguard.engine.semiconductors import scoped
 from railguard.engine.write import Placed
 from railguard.errors import EngineError, UsageError
 
@@ -97,12 +98,9 @@ def _writable(name: str, inside: list[Element], models: Mapping[str, Model]) -> 
 
 def _with_model(element: Element, models: Mapping[str, Model]) -> Element:
     """Name a device's model by the scope it stands in, looked for from the inside out."""
-    scope = element.designator.casefold()
-    while scope:
-        scope = scope.rpartition(".")[0]
-        key = f"{scope}.{element.model.casefold()}".lstrip(".")
-        if key in models:
-            return msgspec.structs.replace(element, model=key)
+    found = scoped(element, models)
+    if found.model in models:
+        return found
     raise EngineError(
         f"{element.designator.partition('.')[2]} of the model cannot be simulated: its model "
         f"{element.model} is not in the file.",

@@ -111,3 +111,11 @@ def test_one_large_resistor_from_a_source_feeds_a_pin():
     none = text.replace("RS raw vp 10k", "RS raw x 10k\nRT x vp 10k")
     (design,) = review(none, plugins=False).designs
     assert "supply-missing" in {f.rule for f in design.findings}
+
+
+def test_a_source_of_zero_volts_holds_a_rail_at_ground(design):
+    """A bench often draws its negative rail so; one in the way of a rail is an ammeter."""
+    cards = "VIN in 0 SIN(2 1 1k)\nXU1 in out vcc vee out MCP6002\n"
+    supply = "V1 bat 0 5\nVM bat vcc 0\nV2 vee 0 0\nC1 vcc 0 100n"
+    levels = {r.net: r.level for r in design(cards, supply=supply).rails}
+    assert levels == {"vcc": pytest.approx(5.0), "vee": pytest.approx(0.0)}

@@ -1,0 +1,206 @@
+"""A design as decks for ngspice: its op-amps as macromodels, its signals in its sources."""
+
+from collections.abc import Iterable, Mapping
+from typing import Literal
+
+import msgspec
+import numpy as np
+
+from railguard.analysis.dcpaths import is_linear
+from railguard.analysis.recognise import Amplifier, recognise
+from railguard.analysis.signals import Prepared, levels_and_tones, prepare
+from railguard.analysis.stage import Design
+from railguard.analysis.supplies import feeds, supply_nets
+from railguard.circuit.model import GROUND, Control, Element
+from railguard.circuit.sources import Piecewise, Sine, Source
+from railguard.devices.catalogue import Catalogue
+from railguard.engine.figures import figures_of
+from railguard.engine.macromodel import limited
+from railguard.engine.relations import linear_currents, relation
+from railguard.engine.requests import Transient
+from railguard.engine.semiconductors import scoped
+from railguard.engine.write import Placed, Written, write
+
+PERIODS = 3
+POINTS_A_PERIOD = 200
+MOST_POINTS = 12_000
+SLOW_HERTZ = 10.0
+"""Frequency a slow change is simulated at."""
+RAMP_SECONDS = 1e-3
+"""Time in which a ramped supply comes up."""
+
+Manner = Literal["limited", "straight", "ramp"]
+"""Macromodels with all limits; without slew rate; with all limits on supplies that come up."""
+
+
+class Bench(msgspec.Struct, frozen=True):
+    """What is run.
+
+    decks       by manner
+    written     the deck of the first manner: names are the same in all
+    amplifiers  those that are in the decks, by designator
+    request     the transient over the signals
+    remarks     what the decks do not show as it is
+    """
+
+    decks: Mapping[Manner, str]
+    written: Written
+    amplifiers: Mapping[str, Amplifier]
+    request: Transient
+    remarks: tuple[str, ...]
+
+    def output(self, name: str) -> str:
+        """Return the node of an amplifier's output."""
+        return self.written.nodes[self.amplifiers[name].output]
+
+    def inputs(self, name: str) -> tuple[str, str]:
+        """Return the nodes of an amplifier's inputs."""
+        amplifier = self.amplifiers[name]
+        return self.written.nodes[amplifier.plus], self.written.nodes[amplifier.minus]
+
+    def sensed(self, name: str) -> str:
+        """Return the source that carries an amplifier's output current."""
+        return self.written.sources[f"sense {name}"]
+
+
+def bench_of(design: Design, catalogue: Catalogue) -> Bench:
+    """Write a design's decks."""
+    circuit, settings = design.circuit, design.settings
+    amplifiers = recognise(circuit, catalogue, settings).amplifiers
+    fed = feeds(supply_nets(amplifiers), circuit.elements, settings, amplifiers)
+    prepared = prepare(circuit.elements, settings, fed)
+    own = {id(a.element) for a in amplifiers}
+    elements = [scoped(e, circuit.models) for e in _driven(prepared, design) if id(e) not in own]
+    plain, placed, bodies = _related(elements)
+    models: dict[Manner, list[str]] = {"limited": [*bodies], "straight": [*bodies]}
+    present: dict[str, Amplifier] = {}
+    remarks: list[str] = []
+    for number, amplifier in enumerate(amplifiers):
+        inner = f"{amplifier.designator} pin"
+        rails = _rails(design, amplifier)
+        if amplifier.has_supply and rails is None:
+            remarks.append(f"{amplifier.designator} is left out: it has no supply")
+            continue
+        present[amplifier.designator] = amplifier
+        plain.append(_sense(amplifier, inner))
+        if rails is None:
+            plain.append(_ideal(amplifier, inner))
+            continue
+        figures, assumed = figures_of(amplifier.match.device, *rails, gain=amplifier.gain)
+        name = f"amp{number}"
+        models["limited"].append(limited(name, figures))
+        models["straight"].append(limited(name, figures, straight=True))
+        if assumed:
+            remarks.append(f"{amplifier.designator}: {', '.join(assumed)} by common practice")
+        pins = (amplifier.plus, amplifier.minus, amplifier.positive, amplifier.negative, inner)
+        placed.append(Placed(amplifier.designator, name, pins))
+    written = write(plain, circuit.models, placed, models["limited"])
+    decks: dict[Manner, str] = {
+        "limited": written.text,
+        "straight": write(plain, circuit.models, placed, models["straight"]).text,
+        "ramp": write([_ramped(e) for e in plain], circuit.models, placed, models["limited"]).text,
+    }
+    notes = [f"{n.designator}: {n.text}" for n in (*written.left_out, *written.stand_ins)]
+    return Bench(decks, written, present, _transient(prepared), (*notes, *remarks))
+
+
+def _related(elements: list[Element]) -> tuple[list[Element], list[Placed], list[str]]:
+    """Turn sources with expressions into instances of subcircuits made for them."""
+    plain: list[Element] = []
+    placed: list[Placed] = []
+    bodies: list[str] = []
+    for element in elements:
+        if element.kind in ("F", "H") and not is_linear(element):
+            plain += linear_currents(element) or (element,)
+        elif element.kind == "B" or (element.kind in ("E", "G") and not is_linear(element)):
+            made = relation(element, f"rel{len(placed) + 1}")
+            if made is None:
+                plain.append(element)
+            else:
+                placed.append(made.placed)
+                bodies.append(made.body)
+        else:
+            plain.append(element)
+    return plain, placed, bodies
+
+
+def _rails(design: Design, amplifier: Amplifier) -> tuple[float, float] | None:
+    stage = next(s for s in design.stages if s.designator == amplifier.designator)
+    positive, negative = stage.supply.positive, stage.supply.negative
+    if positive is None or negative is None or positive <= negative:
+        return None
+    return positive, negative
+
+
+def _sense(amplifier: Amplifier, inner: str) -> Element:
+    return Element(
+        kind="V",
+        designator=f"sense {amplifier.designator}",
+        nets=(inner, amplifier.output),
+        source=Source(0.0),
+    )
+
+
+def _ideal(amplifier: Amplifier, output: str) -> Element:
+    control = Control(gain=1e5, nets=(amplifier.plus, amplifier.minus))
+    return Element(
+        kind="E", designator=f"ideal {amplifier.designator}", nets=(output, GROUND), control=control
+    )
+
+
+def _ramped(element: Element) -> Element:
+    """Return a source that comes up from zero to its level and stays there, without its signal."""
+    source = element.source
+    if element.kind not in ("V", "I", "battery") or source is None or not source.stated:
+        return element
+    level = levels_and_tones(source)[0]
+    ramp = Piecewise(((0.0, 0.0), (RAMP_SECONDS, level)))
+    return msgspec.structs.replace(element, source=Source(0.0, None, ramp))
+
+
+def _driven(prepared: Prepared, design: Design) -> Iterable[Element]:
+    """Return the elements with the user's levels and signals in their sources."""
+    levels = {d.injection: d.value for d in prepared.levels}
+    sines: dict[str, Sine] = {}
+    for tone in prepared.tones:
+        if tone.basis != "user":
+            continue
+        slow = _slow(tone.frequencies) if 0.0 in tone.frequencies else min(tone.frequencies)
+        hertz = max(_worst(design, tone.frequencies) or slow, slow)
+        for name, half in tone.drives:
+            sines[name] = Sine(levels.get(name, 0.0), float(np.real(half)), hertz)
+    for element in prepared.elements:
+        name = element.designator
+        if name in sines:
+            source = Source(levels.get(name, 0.0), None, sines[name])
+        elif element.source is None and name in levels:
+            source = Source(levels[name])
+        elif element.kind == "battery" and element.source is not None:
+            source = Source(levels.get(name, element.source.level))
+        else:
+            yield element
+            continue
+        kind = "I" if element.kind == "I" else "V"
+        yield Element(kind=kind, designator=name, nets=element.nets, source=source)
+
+
+def _slow(frequencies: tuple[float, ...]) -> float:
+    """Return the frequency a slow change within a band is simulated at, hertz."""
+    top = max(frequencies)
+    return min(SLOW_HERTZ, top / 10) if top > 0 else SLOW_HERTZ
+
+
+def _worst(design: Design, frequencies: tuple[float, ...]) -> float | None:
+    """Return the frequency of a band at which most stages are asked for most."""
+    asked = [s.output.frequency or 0.0 for s in design.stages]
+    inside = [f for f in asked if min(frequencies) <= f <= max(frequencies)]
+    return max(set(inside), key=inside.count) if inside else None
+
+
+def _transient(prepared: Prepared) -> Transient:
+    hertz = [f for tone in prepared.tones for f in (tone.frequencies[-1],) if f > 0]
+    hertz += [_slow(tone.frequencies) for tone in prepared.tones if 0.0 in tone.frequencies]
+    slow, fast = (min(hertz), max(hertz)) if hertz else (SLOW_HERTZ, SLOW_HERTZ)
+    stop = PERIODS / slow
+    step = max(1 / (POINTS_A_PERIOD * fast), stop / MOST_POINTS)
+    return Transient(step=step, stop=stop)
