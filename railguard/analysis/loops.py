@@ -27,7 +27,7 @@ OPEN_BETA = 1e-6
 """A feedback factor below this is no feedback: the loop gain of any op-amp is then below one."""
 LOWEST_HERTZ = 1.0
 POINTS = 41
-POINTS_A_DECADE = 16
+POINTS_A_DECADE = 8
 """Points near a crossover that what is not listed may shift."""
 SURE_DEGREES = 5.0
 """A phase margin is given where what is not listed moves it by less than this."""
