@@ -346,6 +346,13 @@ class Filter(msgspec.Struct, frozen=True):
     gain: float = 1.0
 
 
+class Case(msgspec.Struct, frozen=True):
+    """What a device is housed in, as its sheet calls it, and K/W from junction to ambient."""
+
+    name: str
+    resistance: float
+
+
 Part = Literal["device", "supply", "output", "current", "input", "bias", "loop", "dissipation"]
 
 
@@ -366,6 +373,7 @@ class Stage(msgspec.Struct, frozen=True, kw_only=True):
     band         hertz, of the stated signals that reach it; low 0: DC counts
     high_pass    hertz, the corner that coupling capacitors give it
     junction     degrees Celsius at the hottest ambient; `dissipation` W; both of the whole package
+    case         the one its heat was judged in
     unknown      by part: why it was not worked out
     """
 
@@ -394,6 +402,7 @@ class Stage(msgspec.Struct, frozen=True, kw_only=True):
     band: Range = Range()
     high_pass: float | None = None
     filter: Filter | None = None
+    case: Case | None = None
     unknown: Mapping[Part, Unknown] = {}
     location: Location | None = None
 

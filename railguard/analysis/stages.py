@@ -28,7 +28,7 @@ from railguard.analysis.stage import (
 from railguard.analysis.supplies import Feed
 from railguard.analysis.surroundings import feedback_of, output_load
 from railguard.analysis.switching import is_given, most_current, most_heat
-from railguard.analysis.thermal import dissipation, junction, package_heat
+from railguard.analysis.thermal import case_of, dissipation, junction, package_heat
 from railguard.analysis.topology import instrumentation, topology_of
 from railguard.analysis.unseen import Spoiled
 from railguard.analysis.uses import bridges, worked_out_use
@@ -72,7 +72,7 @@ def finished(
             topology=names[stage.designator],
             allowed=allowed.get(stage.designator),
             dissipation=heat[stage.package],
-            junction=junction(stage.family, heat[stage.package], settings),
+            junction=junction(stage.case, heat[stage.package], settings),
         )
         for stage in drafts
     )
@@ -179,6 +179,11 @@ def _stage(
             topology,
             _share_at_minus(view),
             max((abs(gain) for _, gain in gains), default=0.0),
+        ),
+        case=case_of(
+            device,
+            amplifier.match.channels,
+            f"{amplifier.match.name} {amplifier.element.text}",
         ),
         unknown=unknown,
         location=amplifier.element.location,

@@ -1,10 +1,11 @@
 """Heat: quiescent power, the output stage at its worst, and the junction."""
 
+import re
 from collections.abc import Iterable
 
 import numpy as np
 
-from railguard.analysis.stage import Current, Output, Stage, Supply
+from railguard.analysis.stage import Case, Current, Output, Stage, Supply
 from railguard.devices.model import Device
 from railguard.settings.model import Settings
 
@@ -74,12 +75,44 @@ def package_heat(stages: Iterable[Stage]) -> dict[str, float | None]:
     return heat
 
 
-def junction(device: Device | None, watts: float | None, settings: Settings) -> float | None:
-    """Return the junction temperature at the hottest ambient, degrees Celsius.
+PINS = {1: (5, 8), 2: (8, 10), 4: (14, 16)}
+"""Fewest and most pins of the cases that hold so many amplifiers."""
+_METAL_CAN_PINS = 8
+_PINS = re.compile(r"-?(\d+)$")
 
-    The package is not in the netlist, so the listed one with the highest resistance counts.
+
+def case_of(device: Device | None, channels: int | None, text: str) -> Case | None:
+    """Return the case whose thermal resistance counts; None where none is listed.
+
+    The one the card names; else, of those that hold so many amplifiers, the one with the highest
+    resistance, since a netlist seldom says more.
+
+    channels  amplifiers in the package; None: not known
+    text      of the card and its value, where a footprint may stand
     """
-    if device is None or watts is None or not device.theta:
+    if device is None or not device.theta:
+        return None
+    written = _letters(text)
+    named = [c for c in device.theta if _letters(c) in written]
+    low, high = PINS.get(channels or 0, (0, 10_000))
+    holding = [c for c in device.theta if low <= _pins_of(c) <= high]
+    chosen = named or holding or [*device.theta]
+    name = max(chosen, key=lambda c: device.theta[c])
+    return Case(name, device.theta[name])
+
+
+def _letters(text: str) -> str:
+    return re.sub(r"[^A-Z0-9]", "", text.upper())
+
+
+def _pins_of(case: str) -> int:
+    found = _PINS.search(case)
+    return _METAL_CAN_PINS if found is None or case.startswith("TO-") else int(found[1])
+
+
+def junction(case: Case | None, watts: float | None, settings: Settings) -> float | None:
+    """Return the junction temperature at the hottest ambient, degrees Celsius."""
+    if case is None or watts is None:
         return None
     hottest = settings.ambient[1] if settings.ambient is not None else ROOM
-    return hottest + max(device.theta.values()) * watts
+    return hottest + case.resistance * watts

@@ -24,7 +24,10 @@ def judge_power(package: Package, limits: Limits, design: Design) -> Iterator[Ou
     if family is None or watts is None or junction is None:
         yield _gap(package, stages)
         return
-    case, theta = max(family.theta.items(), key=lambda item: item[1])
+    if stage.case is not None:
+        case, theta = stage.case.name, stage.case.resistance
+    else:
+        case, theta = max(family.theta.items(), key=lambda item: item[1])
     hottest = design.settings.ambient[1] if design.settings.ambient else ROOM
     wanted, most = limits["junction"], limits["absolute"]
     if junction <= wanted:
@@ -75,8 +78,8 @@ POWER = Rule(
     "way between ground and rail.",
     source=HEAT_SOURCE,
     silent="Packages of unknown devices, or whose thermal resistance or load is not known, are "
-    "listed as not checked. The case with the highest listed resistance counts: a netlist does "
-    "not name it.",
+    "listed as not checked. The case the card names counts; else, of those that hold so many "
+    "amplifiers, the one with the highest resistance.",
     limits=(
         Limit(
             name="junction",
