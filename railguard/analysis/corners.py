@@ -35,13 +35,20 @@ Flags = npt.NDArray[np.bool_]
 class Parameter(msgspec.Struct, frozen=True):
     """One thing that may be off.
 
-    stamp  an element; None for an entry of b, which then stands in `row` with `value` per unit
+    stamp   an element; None for an entry of b, which then stands in `row` with `value` per unit
+    spread  (row, sign) entries of b where it stands in several
     """
 
     name: str
     stamp: Stamp | None = None
     row: int = -1
     value: float = 0.0
+    spread: tuple[tuple[int, float], ...] = ()
+
+    @property
+    def entries(self) -> tuple[tuple[int, float], ...]:
+        """Return where it stands in b, with its value per unit."""
+        return self.spread or ((self.row, self.value),)
 
 
 class Spread(msgspec.Struct, frozen=True, kw_only=True):
@@ -70,6 +77,10 @@ class Spread(msgspec.Struct, frozen=True, kw_only=True):
         """Return the extreme-value excursion of each quantity, shape (quantities,)."""
         return np.asarray(np.abs(side) @ self.delta)
 
+    def root_sum_square(self, side: Real) -> Real:
+        """Return the excursion where all add as roots of squares, shape (quantities,)."""
+        return np.asarray(np.linalg.norm(side * self.delta, axis=-1))
+
 
 _TEXT_TOLERANCE = re.compile(r"(?i)(?:^|[\s,;(=]|tol(?:erance)?\s*=\s*)±?(\d+(?:\.\d+)?)\s*%")
 _LARGEST_SHARE = 0.5
@@ -97,10 +108,16 @@ def tolerance_of(element: Element, stated: Tolerances) -> tuple[float, bool]:
 
 
 class Nuisance(msgspec.Struct, frozen=True):
-    """Offset voltage and bias current of one amplifier, worst: V, A."""
+    """Offset voltage and bias current of one amplifier, worst: V, A.
+
+    difference  between the bias currents of its inputs, where the sheet lists it: then the two go
+                together but for it, and an equal resistance at the other input takes most away;
+                None: each stands for itself
+    """
 
     offset: float
     bias: float
+    difference: float | None = None
 
 
 def spread(
@@ -188,6 +205,22 @@ def _elements(answers: Answers, stamps: list[Stamp]) -> tuple[Real, Real]:
     return dc + peaks, dc - peaks
 
 
+def _currents(
+    rows: tuple[int, int], nuisance: Nuisance
+) -> list[tuple[tuple[tuple[int, float], ...], float]]:
+    """Return the currents into an amplifier's inputs as entries of b, with the size of each, A.
+
+    rows  of both inputs; -1 for ground or a net without DC path
+    """
+    alone = [((row, 1.0),) for row in rows if row >= 0]
+    if nuisance.difference is None or len(alone) < 2:
+        spare = 0.0 if nuisance.difference is None else nuisance.difference / 2
+        return [(entry, nuisance.bias + spare) for entry in alone]
+    together = ((rows[0], 1.0), (rows[1], 1.0))
+    apart = ((rows[0], 0.5), (rows[1], -0.5))
+    return [(together, nuisance.bias), (apart, nuisance.difference)]
+
+
 def _levels(
     answers: Answers,
     rails: Mapping[str, tuple[float, float, bool]],
@@ -216,13 +249,17 @@ def _levels(
         columns.append(adjoint[:, row])
         entries.append(Parameter(f"offset of {amplifier.designator}", None, row, 1.0))
         delta.append(nuisance.offset)
-        for net in (amplifier.plus, amplifier.minus):
-            at = network.row(net)
-            # A bias current into a net without DC path has no level: that is a finding of its own.
-            if at >= 0 and net not in network.floating:
-                columns.append(adjoint[:, at])
-                entries.append(Parameter(f"bias current of {amplifier.designator}", None, at, 1.0))
-                delta.append(nuisance.bias)
+        # A bias current into a net without DC path has no level: that is a finding of its own.
+        at = [
+            network.row(net) if net not in network.floating else -1
+            for net in (amplifier.plus, amplifier.minus)
+        ]
+        for rows, amps in _currents((at[0], at[1]), nuisance):
+            columns.append(np.sum([sign * adjoint[:, r] for r, sign in rows], axis=0))
+            entries.append(
+                Parameter(f"bias current of {amplifier.designator}", None, -1, 1.0, rows)
+            )
+            delta.append(amps)
     stated += [False] * (len(entries) - len(stated))
     stacked = np.stack(columns, axis=1) if columns else np.zeros((len(answers.rows), 0))
     return stacked, entries, delta, stated

@@ -73,7 +73,8 @@ def _levels(answers: Answers, spread: Spread, moved: Real) -> Complex:
     b = np.tile(nominal.astype(np.complex128), (len(moved), 1))
     for column, parameter in enumerate(spread.parameters):
         if parameter.stamp is None:
-            b[:, parameter.row] += moved[:, column] * parameter.value
+            for row, value in parameter.entries:
+                b[:, row] += moved[:, column] * value
     return b
 
 

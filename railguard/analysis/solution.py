@@ -38,7 +38,7 @@ from railguard.analysis.surroundings import (
     Ways,
     passive_view,
 )
-from railguard.analysis.thermal import bias_current
+from railguard.analysis.thermal import bias_current, offset_current
 from railguard.analysis.uses import charges_itself
 from railguard.circuit.model import GROUND, Element
 from railguard.settings.model import Settings
@@ -326,7 +326,9 @@ def _spread(
         device = amplifier.match.device
         if device is not None:
             nuisances[amplifier.designator] = Nuisance(
-                device.offset_voltage.best or 0.0, bias_current(device, settings)
+                device.offset_voltage.best or 0.0,
+                bias_current(device, settings),
+                offset_current(device, settings),
             )
     return spread(answers, prepared.elements, exempt, settings.tolerances, rails, nuisances)
 

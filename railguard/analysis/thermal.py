@@ -62,6 +62,17 @@ def bias_current(device: Device, settings: Settings) -> float:
     return float(at_room * 2 ** ((hottest - ROOM) / DOUBLING))
 
 
+def offset_current(device: Device, settings: Settings) -> float | None:
+    """Return the worst difference of the bias currents, A; it grows with heat as they do.
+
+    None where the sheet lists none, or one that is no smaller than the bias current itself.
+    """
+    listed, bias = device.offset_current.best, device.bias_current.best
+    if listed is None or not bias or listed >= bias:
+        return None
+    return listed * bias_current(device, settings) / bias
+
+
 def package_heat(stages: Iterable[Stage]) -> dict[str, float | None]:
     """Return the power of each package, W: all its channels at their worst together.
 

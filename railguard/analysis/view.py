@@ -1,7 +1,5 @@
 """One amplifier's numbers in the solved circuit, and why some of them are not known."""
 
-import numpy as np
-
 from railguard.analysis.bounds import Exact
 from railguard.analysis.network import Real
 from railguard.analysis.ranges import Answers
@@ -88,16 +86,16 @@ class View:
             return Range(float(at.low[0, 0]), float(at.high[0, 0]))
         q, spread = self.at(quantity), self.solution.spread
         low, high = self.range(quantity)
-        up = float(np.abs(spread.high[q]) @ spread.delta)
-        down = float(np.abs(spread.low[q]) @ spread.delta)
+        up = float(spread.reach(spread.high[q]))
+        down = float(spread.reach(spread.low[q]))
         return Range(low - down, high + up)
 
     def rss(self, quantity: str) -> Range:
         """Return its range with all of them adding as roots of squares."""
         q, spread = self.at(quantity), self.solution.spread
         low, high = self.range(quantity)
-        up = float(np.linalg.norm(spread.high[q] * spread.delta))
-        down = float(np.linalg.norm(spread.low[q] * spread.delta))
+        up = float(spread.root_sum_square(spread.high[q]))
+        down = float(spread.root_sum_square(spread.low[q]))
         return Range(low - down, high + up)
 
     def why(self, quantity: str) -> Unknown | None:
