@@ -5,8 +5,8 @@ import msgspec
 from railguard.analysis.stage import Design, Stage
 from railguard.devices.catalogue import Catalogue
 from railguard.engine.confirm import filled, outcome
-from railguard.engine.ngspice import Engine
 from railguard.engine.operating import Simulated, Simulation, simulate
+from railguard.engine.process import Engine
 from railguard.errors import EngineError
 from railguard.notices import Remark
 from railguard.rules.finding import Finding

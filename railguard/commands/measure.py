@@ -17,7 +17,7 @@ from railguard.errors import UsageError
 
 if TYPE_CHECKING:
     from railguard.engine.measure import Outcome
-    from railguard.engine.ngspice import Ngspice
+    from railguard.engine.process import Engine
     from railguard.engine.specimen import Specimen
 
 USUAL_SUPPLY = 5.0
@@ -70,7 +70,7 @@ def _sheet_supply(name: str) -> float:
 
 
 def _run(
-    console: Console, made: "Specimen", engine: "Ngspice", supply: float
+    console: Console, made: "Specimen", engine: "Engine", supply: float
 ) -> "tuple[Outcome, ...]":
     from railguard.engine.measure import BENCHES
     from railguard.engine.measure import measure as run_benches

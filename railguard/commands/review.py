@@ -142,7 +142,7 @@ def _engine(fill: bool, confirm: bool) -> Simulator | None:
     if not fill and not confirm:
         return None
     # The engine's modules are of use to this request only.
-    from railguard.engine.ngspice import find
+    from railguard.engine.shared import find
     from railguard.simulated import Ngspiced
 
     return Ngspiced(find(), fill=fill, confirm=confirm)

@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 
 from railguard.circuit.model import GROUND, Control, Element
 from railguard.circuit.sources import Pulse, Source
-from railguard.engine.ngspice import Ngspice
+from railguard.engine.process import Engine
 from railguard.engine.rawfile import Plot
 from railguard.engine.requests import OperatingPoint, Request, SmallSignal, Sweep, Transient
 from railguard.engine.specimen import PINS, Specimen
@@ -47,7 +47,7 @@ class Bench(msgspec.Struct, frozen=True):
     """
 
     specimen: Specimen
-    engine: Ngspice
+    engine: Engine
     supply: float
 
     @property

@@ -15,7 +15,7 @@ import msgspec
 import numpy as np
 
 from railguard.engine.bench import PERIODS, Bench
-from railguard.engine.ngspice import Engine, Run
+from railguard.engine.process import Engine, Run
 from railguard.engine.rawfile import Plot
 from railguard.engine.requests import OperatingPoint, Transient
 from railguard.errors import EngineError

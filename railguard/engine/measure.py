@@ -11,7 +11,7 @@ import numpy as np
 
 from railguard.engine import benches
 from railguard.engine.benches import LOADS, Bench, Floats
-from railguard.engine.ngspice import Ngspice
+from railguard.engine.process import Engine
 from railguard.engine.specimen import Specimen
 from railguard.errors import EngineError
 
@@ -41,7 +41,7 @@ class Outcome(msgspec.Struct, frozen=True):
     failed: str = ""
 
 
-def measure(made: Specimen, engine: Ngspice, supply: float) -> Iterator[Outcome]:
+def measure(made: Specimen, engine: Engine, supply: float) -> Iterator[Outcome]:
     """Run every bench, one outcome each, in the order of `BENCHES`.
 
     supply  total, V

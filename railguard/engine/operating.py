@@ -15,7 +15,7 @@ from railguard.analysis.stage import Design, Range
 from railguard.devices.catalogue import Catalogue
 from railguard.engine.bench import Bench, bench_of
 from railguard.engine.ladder import Found, climb
-from railguard.engine.ngspice import Engine
+from railguard.engine.process import Engine
 from railguard.engine.rawfile import Plot
 
 SETTLED = 0.6
