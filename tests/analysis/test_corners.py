@@ -4,13 +4,17 @@ import numpy as np
 import pytest
 
 from railguard.analysis.corners import spread, tolerance_of
+from railguard.analysis.design import analyse
 from railguard.analysis.network import Network
 from railguard.analysis.ranges import answer
-from railguard.analysis.recognise import recognise
+from railguard.analysis.recognise import keeps_closed, recognise
 from railguard.analysis.sampling import exact_corners, monte_carlo
 from railguard.analysis.signals import prepare
+from railguard.analysis.solution import Options
 from railguard.analysis.supplies import feeds, supply_nets
+from railguard.circuit.flatten import flatten
 from railguard.circuit.model import Element
+from railguard.deck.files import deck_from_text
 from railguard.devices import catalogue
 from railguard.settings.model import Settings, Tolerances
 
@@ -75,6 +79,29 @@ def test_no_sample_leaves_the_exact_corner(design, name):
     slack = 1e-9 * (1 + abs(exact.high[0, 0]))
     assert sampled.high[:, q].max() <= exact.high[0, 0] + slack
     assert sampled.low[:, q].min() >= exact.low[0, 0] - slack
+
+
+@pytest.mark.parametrize("name", CIRCUITS)
+def test_reported_bounds_hold_reported_samples(name):
+    """The whole path, offset and bias included: output and current of every stage."""
+    text = f"title\n{CIRCUITS[name]}\nVP vp 0 15\nVN vn 0 -15\n"
+    devices = catalogue.load()
+    circuit = flatten(deck_from_text(text), keeps_closed(devices))
+    by_slope = analyse(circuit, Settings(), devices, Options(samples=10_000, seed=3)).stages
+    solved = analyse(circuit, Settings(), devices, Options(exact=True)).stages
+    for stage, exact in zip(by_slope, solved, strict=True):
+        worst, sampled = stage.output.worst, stage.output.sampled
+        slack = 0.005 * worst.span
+        assert worst.low - slack <= sampled.low <= sampled.high <= worst.high + slack
+        # Only what moves the sample one way over its whole tolerance is bounded by a corner.
+        least = 1e-9 * (1 + abs(exact.output.worst.high))
+        assert exact.output.worst.low - least <= sampled.low
+        assert sampled.high <= exact.output.worst.high + least
+        source, sink = stage.current.worst_source, stage.current.worst_sink
+        slack = 0.005 * (source + sink)
+        assert sampled.span > 0.1 * worst.span
+        assert stage.current.sampled.high <= source + slack
+        assert -stage.current.sampled.low <= sink + slack
 
 
 def test_inverting_gain_spreads_twice_the_tolerance(design):
