@@ -19,7 +19,7 @@ from railguard.analysis.network import (
     open_loop_gain,
 )
 from railguard.analysis.recognise import Amplifier
-from railguard.analysis.solve import return_ratios
+from railguard.analysis.solve import factor, return_ratios
 from railguard.analysis.stage import Loop, Range
 from railguard.circuit.model import Control, Element
 
@@ -46,11 +46,14 @@ class LoopSweep(msgspec.Struct, frozen=True):
     hertz   shape (frequencies,)
     a_beta  shape (frequencies, amplifiers)
     dc      A*beta at DC, shape (amplifiers,)
+    local   by amplifier: its own network's feedback factor at DC and over frequency, where its
+            loop also runs through an amplifier that multiplies it
     """
 
     hertz: Real
     a_beta: Complex
     dc: Real
+    local: Mapping[int, tuple[float, Complex]] = {}
 
 
 class Margin(msgspec.Struct, frozen=True):
@@ -120,6 +123,39 @@ def sweep(network: Network, tops: Sequence[float], dc: Real) -> LoopSweep:
     grid = np.geomspace(LOWEST_HERTZ, 10 * fastest, POINTS)
     hertz = np.array(sorted({*grid.tolist(), *(t for t in tops if t > 0)}))
     return LoopSweep(hertz=hertz, a_beta=return_ratios(network, hertz), dc=dc)
+
+
+MULTIPLIED = 1.05
+"""A feedback factor above one comes from an amplifier inside the loop: passive networks divide."""
+
+
+def local_betas(
+    passive: Network, swept: LoopSweep, amplifiers: Sequence[Amplifier]
+) -> dict[int, tuple[float, Complex]]:
+    """Return the feedback factors of the amplifiers' own networks, where an outer loop hides them.
+
+    In a composite amplifier the inner one's loop also runs through the outer one; its noise gain is
+    that of its own network all the same.
+
+    passive  the network with every output held
+    """
+    found: dict[int, tuple[float, Complex]] = {}
+    hertz = np.concatenate([[0.0], swept.hertz])
+    for column, amplifier in enumerate(amplifiers):
+        branch = passive.outputs.get(amplifier.designator, -1)
+        if branch < 0 or swept.dc[column] / open_loop_gain(amplifier) <= MULTIPLIED:
+            continue
+        unit = np.zeros(passive.size, dtype=np.complex128)
+        unit[branch] = 1.0
+        beta = np.zeros(len(hertz), dtype=np.complex128)
+        for place, f in enumerate(hertz):
+            x = factor(passive, float(f)).forward(unit)
+            for net, sign in ((amplifier.minus, 1.0), (amplifier.plus, -1.0)):
+                row = passive.row(net)
+                beta[place] += sign * x[row] if row >= 0 else 0.0
+        if beta[0].real > OPEN_BETA:
+            found[column] = float(beta[0].real), beta[1:]
+    return found
 
 
 def known_parasitics(amplifiers: Iterable[Amplifier]) -> dict[str, Parasitics]:
@@ -216,8 +252,10 @@ def loop_of(
     a = open_loop(amplifier, swept.hertz)
     a_beta = swept.a_beta[:, column]
     magnitude = np.abs(a_beta)
-    with np.errstate(divide="ignore"):
-        noise_gain = np.abs(a) / np.maximum(magnitude, 1e-300)
+    noise_gain = np.abs(a) / np.maximum(magnitude, 1e-300)
+    if column in swept.local:
+        beta_dc, beta = swept.local[column]
+        noise_gain = 1.0 / np.maximum(np.abs(beta), 1e-300)
     known = gain_bandwidth(amplifier) is not None
     f_cross = crossing(swept.hertz, magnitude) if known else None
     at_cross = None

@@ -5,6 +5,9 @@ import msgspec
 from railguard.analysis.stage import Loop, Range
 from railguard.analysis.view import View
 
+LEAST_SHARE = 1e-3
+"""A signal that reaches an input with less than this at DC comes through a capacitor."""
+
 
 def with_thresholds(view: View, loop: Loop, after: list[tuple[str, ...]]) -> Loop:
     """Add what a positive loop is judged by: its thresholds and what it feeds."""
@@ -24,12 +27,19 @@ def with_thresholds(view: View, loop: Loop, after: list[tuple[str, ...]]) -> Loo
     beta = float(solution.passive.dc.adjoint([network.row(amplifier.plus)])[0, row].real)
     half = (view.range("output")[1] - view.range("output")[0]) / 2
     moved_plus, moved_minus = (_signal(view, quantity) for quantity in ("plus", "minus"))
-    if moved_minus.span or not moved_plus.span:
-        # The signal is on the inverting input: the other one carries the two thresholds.
-        middle, drive = view.level("plus"), moved_minus
-    else:
-        middle, drive = view.level("minus"), moved_plus
-    thresholds = Range(middle - abs(beta) * half, middle + abs(beta) * half)
+    # The signal is on one input; the other one carries a standing level, or the two thresholds.
+    on_minus = bool(moved_minus.span or not moved_plus.span)
+    moved, other = ("minus", "plus") if on_minus else ("plus", "minus")
+    away = view.level(other) - view.level(moved)
+    entry = _entry(view, moved)
+    share, start = entry if entry is not None else (1.0, view.level(moved))
+    drive = moved_minus if on_minus else moved_plus
+    at = view.level(moved)
+    thresholds = _ordered(
+        start + (away - abs(beta) * half) / share, start + (away + abs(beta) * half) / share
+    )
+    if drive.low is not None and drive.high is not None:
+        drive = _ordered(start + (drive.low - at) / share, start + (drive.high - at) / share)
     feeds = any(
         amplifier.designator in reached and solution.amplifiers[j].designator not in solution.forced
         for j, reached in enumerate(after)
@@ -42,6 +52,35 @@ def with_thresholds(view: View, loop: Loop, after: list[tuple[str, ...]]) -> Loo
         drive=drive,
         feeds_linear=feeds,
     )
+
+
+def _ordered(a: float, b: float) -> Range:
+    return Range(min(a, b), max(a, b))
+
+
+def _entry(view: View, quantity: str) -> tuple[float, float] | None:
+    """Return what an input takes of the one signal that moves it at DC, and that signal's level.
+
+    None where no signal, or more than one, reaches it so: thresholds then stand as at the pin.
+    """
+    answers, own = view.answers, view.amplifier.designator
+    row = int(answers.rows[view.at(quantity)])
+    if row < 0:
+        return None
+    adjoint = answers.dc.adjoint([row])[0].real
+    levels = {drive.injection: drive.value for drive in view.solution.prepared.levels}
+    found = []
+    for tone in answers.tones:
+        if tone.tone.name == own or tone.peaks[view.at(quantity)] <= 0:
+            continue
+        if len(tone.tone.drives) != 1:
+            return None
+        name = tone.tone.drives[0][0]
+        b = answers.network.right_hand_side([(name, 1.0)]).real
+        found.append((float(adjoint @ b), levels.get(name, 0.0)))
+    if len(found) != 1 or abs(found[0][0]) < LEAST_SHARE:
+        return None
+    return found[0]
 
 
 def _signal(view: View, quantity: str) -> Range:

@@ -19,6 +19,7 @@ from railguard.analysis.loops import (
     crossing,
     crossover_margins,
     known_parasitics,
+    local_betas,
     phase_margin,
     small_signal,
     sweep,
@@ -131,6 +132,9 @@ def solve(
     tops = tuple(sorted({t.top for t in prepared.tones if t.top > 0}))
     signs, through = _through_diodes(elements, amplifiers, signs)
     swept = sweep(loop_network, tops, signs)
+    passive = passive_view(network)
+    local = local_betas(passive.network, swept, amplifiers)
+    swept = msgspec.structs.replace(swept, local=local) if local else swept
     options = options or Options()
     off = _spread(answers, prepared, amplifiers, feeds, settings, exempt)
     return Solution(

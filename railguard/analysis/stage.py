@@ -292,7 +292,8 @@ class Loop(msgspec.Struct, frozen=True, kw_only=True):
     holds       designators of other stages that hold the DC level where its own loop does not
     bridges     switches and unseen devices that may lead the output back where the loop is open
     margins     phase margin with the most and with nothing of what is not listed, degrees
-    thresholds  input volts at which a stage with positive feedback switches
+    thresholds  volts of its signal at which a stage with positive feedback switches; of the pin
+                where more than one signal moves it
     drive       the stated signal at that input, in the terms of `thresholds`
     """
 

@@ -140,7 +140,8 @@ def _stage(
             f"the output of {name} is tied to {amplifier.output}, which something else holds",
             "see the finding on it",
         )
-    topology = topology_of(amplifier, solution.ways, loop, rails)
+    outer = frozenset(a.output for a in solution.amplifiers if a.designator in loop.holds)
+    topology = topology_of(amplifier, solution.ways, loop, rails, outer)
     gains = gains_of(view)
     heat = dissipation(device, supply, output, current, load)
     if heat is None and use in ("comparator", "oscillator"):

@@ -62,14 +62,23 @@ def _is_level(net: str, ways: Ways) -> bool:
     return False
 
 
-def topology_of(amplifier: Amplifier, ways: Ways, loop: Loop, rails: frozenset[str]) -> str:
-    """Return the stage's name: follower, inverting, non-inverting, difference, ..."""
+def topology_of(
+    amplifier: Amplifier,
+    ways: Ways,
+    loop: Loop,
+    rails: frozenset[str],
+    outer: frozenset[str] = frozenset(),
+) -> str:
+    """Return the stage's name: follower, inverting, non-inverting, difference, ...
+
+    outer  outputs that close this stage's loop in place of its own: feedback, no signal
+    """
     if loop.dc == "positive":
         return "comparator with hysteresis"
     plus = Around(amplifier.plus, amplifier, ways, skip=amplifier.minus)
     minus = Around(amplifier.minus, amplifier, ways, skip=amplifier.plus)
     plus_driven = [n for n in plus.driven if n not in rails]
-    minus_driven = [n for n in minus.driven if n not in rails]
+    minus_driven = [n for n in minus.driven if n not in rails and n not in outer]
     wired = amplifier.output == amplifier.minus
     if loop.dc == "open" and not wired and not minus.own_output:
         return "comparator"
@@ -78,7 +87,8 @@ def topology_of(amplifier: Amplifier, ways: Ways, loop: Loop, rails: frozenset[s
     if plus_driven and minus_driven:
         return "difference"
     if plus_driven:
-        return _sallen_key(plus) or "non-inverting"
+        adds = len(set(plus_driven)) > 1 and all(e.kind == "R" for e in plus.first)
+        return _sallen_key(plus) or ("summing" if adds else "non-inverting")
     kinds = {e.kind for e in minus.own_output}
     if minus.currents and not minus_driven:
         return "transimpedance"

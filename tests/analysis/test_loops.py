@@ -110,3 +110,77 @@ def test_phase_margin_of_a_transimpedance_stage(stage):
     found = stage(cards, FAST)
     assert found.loop.phase_margin == pytest.approx(65.0, abs=2.0)
     assert found.loop.noise_gain_crossover == pytest.approx(1 + 20 / 1.1, rel=0.2)
+
+
+COMPOSITE = """
+VIN in 0 SIN(0 0.1 1k)
+R1 n 0 1k
+R2 n out 9k
+XU1 in n vp vn a TL072
+{inner}
+RL out 0 2k
+"""
+GAIN_OF_FIVE = "RA m 0 1k\nRB m out 4k\nXU2 a m vp vn out NE5532"
+
+
+@pytest.mark.parametrize(
+    ("inner", "local", "outer"),
+    [
+        # The outer one's loop has the inner one's gain in it: five of the divider's ten.
+        (GAIN_OF_FIVE, 5.0, 2.0),
+        ("XU2 a out vp vn out NE5532", 1.0, 10.0),
+    ],
+)
+def test_local_and_composite_loop_are_told_apart(design, inner, local, outer):
+    """The inner amplifier has its own network's noise gain, the outer one is held by the inner."""
+    found = {s.designator: s for s in design(COMPOSITE.format(inner=inner)).stages}
+    assert found["XU2"].loop.noise_gain_dc == pytest.approx(local, rel=1e-3)
+    assert found["XU2"].loop.noise_gain == pytest.approx(local, rel=1e-3)
+    assert found["XU2"].loop.holds == ()
+    assert found["XU1"].loop.noise_gain_dc == pytest.approx(outer, rel=1e-3)
+    assert found["XU1"].loop.holds == ("XU2",)
+    assert found["XU1"].topology == "non-inverting"
+    gbw = found["XU1"].family.gain_bandwidth.typical
+    # The inner amplifier's own bandwidth of 2 MHz and more takes its share.
+    assert found["XU1"].loop.crossover == pytest.approx(gbw / outer, rel=0.2)
+
+
+def test_a_servo_leaves_the_stages_own_noise_gain(design):
+    """An integrator that takes the level out of a stage multiplies its loop at DC only."""
+    cards = """
+VIN in 0 SIN(0 0.1 1k)
+R1 n 0 1k
+R2 n out 9k
+RS s n 100k
+XU1 in n vp vn out TL072
+R3 out m 1meg
+C3 m s 1u
+XU2 0 m vp vn s2 TL072
+R4 s2 x 10k
+R5 x s 10k
+XU3 0 x vp vn s TL072
+"""
+    main = next(s for s in design(cards).stages if s.designator == "XU1")
+    assert main.loop.noise_gain_dc == pytest.approx(1 + 9 + 9 / 100, rel=0.01)
+
+
+@pytest.mark.parametrize(
+    ("cards", "low", "high"),
+    [
+        # +-12 V and 1.5 V of drop: 10.5 V and a divider of eleven.
+        ("VIN in 0 SIN(0 2 100)\nR1 p 0 10k\nR2 p out 100k\nXU1 p in vp vn out TL072",
+         -10.5 / 11, 10.5 / 11),
+        ("VIN in 0 SIN(0 5 100)\nVR r 0 3\nR1 p r 10k\nR2 p out 100k\nXU1 p in vp vn out TL072",
+         (30 - 10.5) / 11, (30 + 10.5) / 11),
+        # The signal at the other end of the divider: a tenth of 10.5 V.
+        ("VIN in 0 SIN(0 2 100)\nR1 p in 10k\nR2 p out 100k\nXU1 p 0 vp vn out TL072", -1.05, 1.05),
+        ("VIN in 0 SIN(1 3 100)\nVR r 0 1\nR1 p in 10k\nR2 p out 100k\nXU1 p r vp vn out TL072",
+         1.1 - 1.05, 1.1 + 1.05),
+    ],
+)  # fmt: skip
+def test_thresholds_are_volts_of_the_signal(stage, cards, low, high):
+    """By hand for both kinds of hysteresis, with and without a reference."""
+    supply = "VP vp 0 12\nVN vn 0 -12\n"
+    loop = stage(cards + "\nRL out 0 1meg", supply=supply).loop
+    assert loop.thresholds.low == pytest.approx(low, rel=0.01, abs=0.01)
+    assert loop.thresholds.high == pytest.approx(high, rel=0.01)

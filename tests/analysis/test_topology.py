@@ -14,6 +14,11 @@ STAGES = {
         "VA a 0 SIN(0 1 1k)\nVB b 0 SIN(0 1 2k)\nR1 a n 10k\nR2 b n 10k\nR3 n out 10k\n"
         "XU1 0 n vp vn out TL072"
     ),
+    "instrumentation amplifier, output": (
+        "VA a 0 SIN(0 1 1k)\nVB b 0 SIN(0 1 2k)\nXU2 a m vp vn o1 TL072\nR5 o1 m 20k\nRG m k 2k\n"
+        "R6 k o2 20k\nXU3 b k vp vn o2 TL072\nR1 o1 n 10k\nR2 n out 10k\nR3 o2 p 10k\n"
+        "R4 p 0 10k\nXU1 p n vp vn out TL072"
+    ),
     "transimpedance": "I1 0 n SIN(0 1u 1k)\nR2 n out 100k\nXU1 0 n vp vn out TL072",
     "integrator": "VIN in 0 SIN(0 1 1k)\nR1 in n 10k\nC2 n out 10n\nXU1 0 n vp vn out TL072",
     "multiple-feedback filter": (
@@ -44,6 +49,16 @@ def test_an_integrator_held_by_a_t_is_no_filter(stage):
 def test_stage_is_named_as_people_name_it(stage, name):
     """Each textbook stage by its usual name."""
     assert stage(STAGES[name]).topology == name
+
+
+def test_signals_added_at_the_non_inverting_input_are_summed(stage):
+    """Two signals through a resistor each; a bias divider beside one signal is none."""
+    cards = (
+        "VA a 0 SIN(0 1 1k)\nR1 a p 10k\n{other}\nR3 n 0 1k\nR4 n out 1k\nXU1 p n vp vn out TL072"
+    )
+    two = stage(cards.format(other="VB b 0 SIN(0 1 3k)\nR2 b p 10k"))
+    assert two.topology == "summing"
+    assert stage(cards.format(other="R2 vp p 10k")).topology == "non-inverting"
 
 
 def test_shared_amplifier_card_with_two_channels(design):
