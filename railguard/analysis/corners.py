@@ -69,6 +69,12 @@ class Spread(msgspec.Struct, frozen=True, kw_only=True):
     low: Real
 
     @property
+    def elements(self) -> tuple[list[Stamp], Real]:
+        """Return the elements among the parameters, and the share each may be off."""
+        stamps = [p.stamp for p in self.parameters if p.stamp is not None]
+        return stamps, self.delta[: len(stamps)]
+
+    @property
     def names(self) -> tuple[str, ...]:
         """Designators of the parameters, as a report names them."""
         return tuple(p.name for p in self.parameters)
@@ -162,7 +168,7 @@ def spread(
     )
 
 
-def _factors(stamps: list[Stamp], s: complex) -> npt.NDArray[np.complex128]:
+def factors(stamps: list[Stamp], s: complex) -> npt.NDArray[np.complex128]:
     """Return -dM/dln p of each element for its unit pattern, shape (elements,)."""
     return np.array(
         [stamp.value if stamp.kind == "R" else (-s if stamp.kind == "C" else s) * stamp.value
@@ -171,7 +177,7 @@ def _factors(stamps: list[Stamp], s: complex) -> npt.NDArray[np.complex128]:
     )  # fmt: skip
 
 
-def _differences(
+def differences(
     vectors: npt.NDArray[np.complex128], stamps: list[Stamp]
 ) -> npt.NDArray[np.complex128]:
     """Return each vector's difference across each element, shape (vectors, elements)."""
@@ -186,8 +192,8 @@ def _elements(answers: Answers, stamps: list[Stamp]) -> tuple[Real, Real]:
     if not stamps:
         return np.zeros((count, 0)), np.zeros((count, 0))
     adjoint = answers.dc.adjoint([int(r) for r in answers.rows])
-    level = _differences(adjoint, stamps) * _differences(answers.x[None, :].astype(complex), stamps)
-    dc = (level * _factors(stamps, 0j)).real
+    level = differences(adjoint, stamps) * differences(answers.x[None, :].astype(complex), stamps)
+    dc = (level * factors(stamps, 0j)).real
     peaks = np.zeros_like(dc)
     for tone in answers.tones:
         for worst in tone.worst:
@@ -198,8 +204,8 @@ def _elements(answers: Answers, stamps: list[Stamp]) -> tuple[Real, Real]:
                 continue
             picks, rows, values = worst.picks[alive], rows[alive], values[alive]
             adjoint = worst.factor.adjoint([int(r) for r in rows])
-            change = _differences(adjoint, stamps) * _differences(worst.x[None, :], stamps)
-            change = change * _factors(stamps, 2j * np.pi * worst.hertz)
+            change = differences(adjoint, stamps) * differences(worst.x[None, :], stamps)
+            change = change * factors(stamps, 2j * np.pi * worst.hertz)
             direction = np.conj(values) / np.abs(values)
             peaks[picks] += (direction[:, None] * change).real
     return dc + peaks, dc - peaks

@@ -8,10 +8,13 @@ Source  TI SLOA049, Active low-pass filter design (the topologies); S. Franco, D
         Operational Amplifiers, ch. 3 (worked values in tests/outside)
 """
 
+from collections.abc import Mapping
+
+import msgspec
 import numpy as np
 
 from railguard.analysis.recognise import Amplifier
-from railguard.analysis.stage import Filter
+from railguard.analysis.stage import Filter, Range
 from railguard.analysis.surroundings import Ways
 from railguard.circuit.model import Element
 
@@ -23,12 +26,20 @@ _KINDS = {
 
 
 def filter_of(
-    amplifier: Amplifier, ways: Ways, topology: str, beta_minus: float | None, gain: float
+    amplifier: Amplifier,
+    ways: Ways,
+    topology: str,
+    beta_minus: float | None,
+    gain: float,
+    tolerances: Mapping[str, float],
+    noise_gain: Range,
 ) -> Filter | None:
     """Return the filter a stage is, or None.
 
     beta_minus  share of the output at the inverting input, V/V (1 for a follower)
     gain        magnitude in the pass band, where a signal tells it
+    tolerances  share each element may be off, by designator
+    noise_gain  its range over the tolerances of the network that sets `beta_minus`
     """
     if topology.startswith("Sallen-Key") and beta_minus:
         pin, positive = amplifier.plus, True
@@ -39,13 +50,48 @@ def filter_of(
     inner = _inner(pin, amplifier, ways)
     if inner is None:
         return None
-    found = _natural(pin, inner, amplifier, ways, beta_minus if positive else None)
+    around = {id(e): e for net in (pin, inner) for e in _passive(net, ways)}
+    stage = _Stage(pin, inner, amplifier, tuple(around.values()))
+    beta = beta_minus if positive else None
+    found = stage.natural({}, beta)
     if found is None:
         return None
     frequency, quality = found
     kind = _KINDS.get(topology) or _multiple_feedback(amplifier, inner, ways)
     reference = 1.0 / beta_minus if positive and beta_minus else gain
-    return Filter(kind, frequency, quality, gain or reference)
+    spans = _spans(stage, found, beta, tolerances, noise_gain)
+    return Filter(kind, frequency, quality, gain or reference, *spans)
+
+
+BUMP = 1e-4
+"""Share by which a part is moved to see what it does."""
+
+
+def _spans(
+    stage: "_Stage",
+    nominal: tuple[float, float],
+    beta: float | None,
+    tolerances: Mapping[str, float],
+    noise_gain: Range,
+) -> tuple[Range, Range]:
+    """Return the ranges of frequency and Q: the extreme-value sum over every part."""
+    moved = np.zeros(2)
+    for element in stage.elements:
+        share = tolerances.get(element.designator, 0.0)
+        bumped = stage.natural({element.designator: 1.0 + BUMP}, beta) if share else None
+        if bumped is not None:
+            moved += np.abs(np.subtract(bumped, nominal)) / BUMP * share
+    if beta is not None and noise_gain.low is not None and noise_gain.high is not None:
+        # What sets the gain moves the Q as well, and stands outside these elements.
+        bumped = stage.natural({}, beta * (1.0 + BUMP))
+        if bumped is not None:
+            share = (noise_gain.high - noise_gain.low) / (noise_gain.high + noise_gain.low)
+            moved += np.abs(np.subtract(bumped, nominal)) / BUMP * share
+    frequency, quality = nominal
+    return (
+        Range(frequency - float(moved[0]), frequency + float(moved[0])),
+        Range(quality - float(moved[1]), quality + float(moved[1])),
+    )
 
 
 def _other(element: Element, net: str) -> str:
@@ -78,31 +124,42 @@ def _multiple_feedback(amplifier: Amplifier, inner: str, ways: Ways) -> str:
     return "band-pass" if "C" in to_output else "high-pass"
 
 
-def _natural(
-    pin: str, inner: str, amplifier: Amplifier, ways: Ways, beta: float | None
-) -> tuple[float, float] | None:
-    """Return (hertz, Q) of the stage's pair of poles, or None where it has no such pair."""
-    index = {pin: 0, inner: 1, amplifier.output: 2}
-    g, c = np.zeros((3, 3)), np.zeros((3, 3))
-    elements = {id(e): e for net in (pin, inner) for e in _passive(net, ways)}
-    for element in elements.values():
-        value = element.value or 0.0
-        matrix, size = (g, 1.0 / value) if element.kind == "R" else (c, value)
-        a, b = (index.get(n, -1) for n in element.nets[:2])
-        for i, j, sign in ((a, a, 1.0), (b, b, 1.0), (a, b, -1.0), (b, a, -1.0)):
-            if i >= 0 and j >= 0:
-                matrix[i, j] += sign * size
-    # The third row is the amplifier: both inputs at one voltage.
-    g[2, :], c[2, :] = 0.0, 0.0
-    g[2, 0] = 1.0
-    if beta is not None:
-        g[2, 2] = -beta
-    if not c.any():
-        return None
-    scale = float(np.abs(g[:2]).max() / np.abs(c).max())
-    d0 = float(np.linalg.det(g))
-    plus, minus = (float(np.linalg.det(g + s * scale * c)) for s in (1.0, -1.0))
-    d1, d2 = (plus - minus) / 2, (plus + minus) / 2 - d0
-    if d0 * d2 <= 0 or d0 * d1 <= 0:
-        return None
-    return scale * float(np.sqrt(d0 / d2)) / (2 * np.pi), float(np.sqrt(d0 * d2)) / abs(d1)
+class _Stage(msgspec.Struct, frozen=True):
+    """A filter's two nets, its amplifier and the resistors and capacitors on those nets."""
+
+    pin: str
+    inner: str
+    amplifier: Amplifier
+    elements: tuple[Element, ...]
+
+    def natural(
+        self, scales: Mapping[str, float], beta: float | None
+    ) -> tuple[float, float] | None:
+        """Return (hertz, Q) of the pair of poles, or None where there is no such pair.
+
+        scales  factors on elements' values, by designator
+        beta    share of the output at the inverting input; None where that is the filter's own pin
+        """
+        index = {self.pin: 0, self.inner: 1, self.amplifier.output: 2}
+        g, c = np.zeros((3, 3)), np.zeros((3, 3))
+        for element in self.elements:
+            value = (element.value or 0.0) * scales.get(element.designator, 1.0)
+            matrix, size = (g, 1.0 / value) if element.kind == "R" else (c, value)
+            a, b = (index.get(n, -1) for n in element.nets[:2])
+            for i, j, sign in ((a, a, 1.0), (b, b, 1.0), (a, b, -1.0), (b, a, -1.0)):
+                if i >= 0 and j >= 0:
+                    matrix[i, j] += sign * size
+        # The third row is the amplifier: both inputs at one voltage.
+        g[2, :], c[2, :] = 0.0, 0.0
+        g[2, 0] = 1.0
+        if beta is not None:
+            g[2, 2] = -beta
+        if not c.any():
+            return None
+        scale = float(np.abs(g[:2]).max() / np.abs(c).max())
+        d0 = float(np.linalg.det(g))
+        plus, minus = (float(np.linalg.det(g + s * scale * c)) for s in (1.0, -1.0))
+        d1, d2 = (plus - minus) / 2, (plus + minus) / 2 - d0
+        if d0 * d2 <= 0 or d0 * d1 <= 0:
+            return None
+        return scale * float(np.sqrt(d0 / d2)) / (2 * np.pi), float(np.sqrt(d0 * d2)) / abs(d1)

@@ -1,9 +1,12 @@
 """Which signals reach a stage: its gains, its band, whether they come through a capacitor."""
 
+import msgspec
 import numpy as np
 
+from railguard.analysis.corners import differences, factors
 from railguard.analysis.solve import factor
-from railguard.analysis.stage import Range
+from railguard.analysis.stage import Loop, Range
+from railguard.analysis.surroundings import MID_HERTZ
 from railguard.analysis.view import View
 
 
@@ -46,7 +49,15 @@ def is_ac_coupled(view: View) -> bool:
     return True
 
 
-def gains_of(view: View, unit: str = "V") -> tuple[tuple[str, float], ...]:
+class Gain(msgspec.Struct, frozen=True):
+    """What a stage makes of one signal, V/V or V/A, and the range tolerances give it."""
+
+    net: str
+    value: float
+    worst: Range
+
+
+def gains_of(view: View, unit: str = "V") -> tuple[Gain, ...]:
     """Return the gain from each net a signal arrives at: at DC, or in mid-band where DC is cut.
 
     unit  "V": V/V from voltages; "A": V/A from currents
@@ -55,18 +66,65 @@ def gains_of(view: View, unit: str = "V") -> tuple[tuple[str, float], ...]:
     row = int(answers.rows[view.at("output")])
     if row < 0 or view.amplifier.designator in view.solution.forced:
         return ()
-    dc = answers.dc.adjoint([row])[0]
-    mid = view.solution.mid.adjoint([row])[0]
+    dc = answers.dc.adjoint([row])
+    mid = view.solution.mid.adjoint([row])
+    stamps, delta = view.solution.spread.elements
     gains = []
     for entry in view.solution.prepared.entries:
         if entry.unit != unit or not any(name in network.injections for name, _ in entry.drives):
             continue
         b = network.right_hand_side(entry.drives)
-        at_dc, at_mid = float((dc @ b).real), complex(mid @ b)
-        gain = at_dc if abs(at_dc) > 1e-3 * abs(at_mid) else abs(at_mid)
-        if abs(gain) > 1e-6:
-            gains.append((entry.label, gain))
+        at_dc, at_mid = float((dc[0] @ b).real), complex(mid[0] @ b)
+        passes = abs(at_dc) > 1e-3 * abs(at_mid)
+        gain = at_dc if passes else abs(at_mid)
+        if abs(gain) <= 1e-6:
+            continue
+        adjoint, solved = (dc, answers.dc) if passes else (mid, view.solution.mid)
+        s = 0j if passes else 2j * np.pi * MID_HERTZ
+        change = differences(adjoint, stamps) * differences(solved.forward(b)[None, :], stamps)
+        change = change[0] * factors(stamps, s)
+        # A magnitude changes by what lies in its own direction.
+        turn = 1.0 if passes else np.conj(at_mid) / abs(at_mid)
+        moved = float(np.abs((turn * change).real) @ delta)
+        gains.append(Gain(entry.label, gain, Range(gain - moved, gain + moved)))
     return tuple(gains)
+
+
+def noise_gain_span(view: View, loop: Loop) -> Range:
+    """Return the noise gain at DC over the tolerances of the stage's own network.
+
+    Unknown where another amplifier's gain stands in its loop.
+    """
+    passive, amplifier = view.solution.passive, view.amplifier
+    branch = passive.network.outputs.get(amplifier.designator, -1)
+    nominal = loop.noise_gain_dc
+    if nominal is None or loop.holds or branch < 0:
+        return Range()
+    rows = [passive.network.row(amplifier.minus), passive.network.row(amplifier.plus)]
+    adjoint = passive.dc.adjoint(rows)
+    stamps, delta = view.solution.spread.elements
+    unit = passive.network.right_hand_side([(amplifier.designator, 1.0)])
+    solved = passive.dc.forward(unit)[None, :]
+    change = differences(adjoint[:1] - adjoint[1:], stamps) * differences(solved, stamps)
+    moved = float(np.abs((change[0] * factors(stamps, 0j)).real) @ delta)
+    beta = float((adjoint[0] - adjoint[1])[branch].real)
+    if beta <= moved:
+        return Range()
+    return Range(1.0 / (beta + moved), 1.0 / (beta - moved))
+
+
+def crossover_span(view: View, loop: Loop, noise_gain: Range) -> Range:
+    """Return the bandwidth at the ends of the noise gain and of what is listed of its product."""
+    device, at, nominal = view.amplifier.match.device, loop.crossover, loop.noise_gain_dc
+    if device is None or at is None or nominal is None:
+        return Range()
+    if noise_gain.low is None or noise_gain.high is None:
+        return Range()
+    listed = device.gain_bandwidth
+    share = 1.0
+    if listed.typical is not None and listed.guaranteed is not None:
+        share = min(listed.guaranteed / listed.typical, 1.0)
+    return Range(at * share * nominal / noise_gain.high, at * nominal / noise_gain.low)
 
 
 _LOWEST_CORNER = 1e-4

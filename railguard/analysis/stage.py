@@ -291,6 +291,8 @@ class Loop(msgspec.Struct, frozen=True, kw_only=True):
     points      (hertz, |1/beta|, |A|, phase of A beta in degrees) for drawing
     holds       designators of other stages that hold the DC level where its own loop does not
     bridges     switches and unseen devices that may lead the output back where the loop is open
+    noise_gain_worst  of `noise_gain_dc`, at the resistors' tolerances
+    crossover_worst   with them and the least and the typical gain-bandwidth product listed
     margins     phase margin with the most and with nothing of what is not listed, degrees
     thresholds  volts of its signal at which a stage with positive feedback switches; of the pin
                 where more than one signal moves it
@@ -305,6 +307,8 @@ class Loop(msgspec.Struct, frozen=True, kw_only=True):
     noise_gain_crossover: float | None = None
     crossover: float | None = None
     phase_margin: float | None = None
+    noise_gain_worst: Range = Range()
+    crossover_worst: Range = Range()
     margins: Range = Range()
     band: float | None = None
     loop_gain: float | None = None
@@ -339,12 +343,17 @@ class Unknown(msgspec.Struct, frozen=True):
 
 
 class Filter(msgspec.Struct, frozen=True):
-    """A recognised filter stage: hertz, quality factor, gain in its pass band."""
+    """A recognised filter stage: hertz, quality factor, gain in its pass band.
+
+    frequency_worst, q_worst  with every part around it at its tolerance
+    """
 
     kind: str
     frequency: float
     q: float
     gain: float = 1.0
+    frequency_worst: Range = Range()
+    q_worst: Range = Range()
 
 
 class Case(msgspec.Struct, frozen=True):
@@ -366,8 +375,8 @@ class Stage(msgspec.Struct, frozen=True, kw_only=True):
     family       the catalogue's family, or None
     dissipation  W, of the whole package with all its channels at their worst
     junction     degrees Celsius, at the hottest ambient with that heat
-    gain         from each input net: (net, V/V at DC or in band)
     transfer     from each net a current arrives at: (net, V/A)
+    gain         from each input net: (net, V/V at DC or in band); `gain_worst` with tolerances
     after        designators of stages whose output reaches this one's inputs
     generic      True for an amplifier without a type: OPAMP
     ac_coupled   True where every signal reaches it through a capacitor
@@ -397,6 +406,7 @@ class Stage(msgspec.Struct, frozen=True, kw_only=True):
     junction: float | None = None
     gain: tuple[tuple[str, float], ...] = ()
     transfer: tuple[tuple[str, float], ...] = ()
+    gain_worst: tuple[tuple[str, Range], ...] = ()
     after: tuple[str, ...] = ()
     generic: bool = False
     ac_coupled: bool = False

@@ -10,7 +10,15 @@ from railguard.analysis.inputs import inputs_of
 from railguard.analysis.loops import OPEN_BETA, Margin, loop_of
 from railguard.analysis.outputs import output_side
 from railguard.analysis.positive import with_thresholds
-from railguard.analysis.reach import band_of, gains_of, high_pass_of, is_ac_coupled, top_of
+from railguard.analysis.reach import (
+    band_of,
+    crossover_span,
+    gains_of,
+    high_pass_of,
+    is_ac_coupled,
+    noise_gain_span,
+    top_of,
+)
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.solution import Solution, stated_use
 from railguard.analysis.stage import (
@@ -128,6 +136,12 @@ def _stage(
     )
     working = name not in solution.forced and name in solution.answers.network.outputs
     loop = with_thresholds(view, loop, after)
+    spread_noise_gain = noise_gain_span(view, loop)
+    loop = msgspec.structs.replace(
+        loop,
+        noise_gain_worst=spread_noise_gain,
+        crossover_worst=crossover_span(view, loop, spread_noise_gain),
+    )
     feedback = feedback_of(amplifier, solution.passive, solution.ways, solution.answers)
     load = output_load(amplifier, solution.passive)
     current, output = output_side(view, supply, load, working, unknown)
@@ -167,8 +181,9 @@ def _stage(
         loop=loop,
         feedback=feedback,
         dissipation=heat,
-        gain=gains,
-        transfer=gains_of(view, "A"),
+        gain=tuple((gain.net, gain.value) for gain in gains),
+        gain_worst=tuple((gain.net, gain.worst) for gain in gains),
+        transfer=tuple((gain.net, gain.value) for gain in gains_of(view, "A")),
         after=after[view.k],
         generic=amplifier.match.sort == "generic",
         ac_coupled=is_ac_coupled(view),
@@ -179,7 +194,9 @@ def _stage(
             solution.ways,
             topology,
             _share_at_minus(view),
-            max((abs(gain) for _, gain in gains), default=0.0),
+            max((abs(gain.value) for gain in gains), default=0.0),
+            _tolerances(view),
+            spread_noise_gain,
         ),
         case=case_of(
             device,
@@ -220,6 +237,12 @@ def _holds(view: View, loop: Loop, after: list[tuple[str, ...]]) -> tuple[str, .
                 reached.add(name)
                 queue.append(names.index(name))
     return tuple(n for n in names if n in reached and n != amplifier.designator)
+
+
+def _tolerances(view: View) -> dict[str, float]:
+    """Return the share each element may be off, by designator."""
+    stamps, delta = view.solution.spread.elements
+    return {stamp.designator: float(share) for stamp, share in zip(stamps, delta, strict=True)}
 
 
 def _share_at_minus(view: View) -> float | None:

@@ -1,0 +1,98 @@
+"""Every number of a stage at the ends of its tolerances, by hand."""
+
+import math
+
+import pytest
+
+INVERTING = "VIN in 0 SIN(0 0.5 1k)\nR1 in n 10k\nR2 n out 100k\nXU1 0 n vp vn out TL072"
+SALLEN_KEY = (
+    "VIN in 0 SIN(0 1 1k)\nR1 in a 11.25k\nR2 a p 11.25k\nC1 a out 2n\nC2 p 0 1n\n"
+    "XU1 p out vp vn out TL072"
+)
+
+
+def test_gain_of_two_resistors(stage):
+    """-10 with 1 % resistors: 2 % either way."""
+    found = stage(INVERTING)
+    (net, worst), (_, nominal) = found.gain_worst[0], found.gain[0]
+    assert net == "in"
+    assert worst.low == pytest.approx(nominal * 1.02, rel=1e-3)
+    assert worst.high == pytest.approx(nominal * 0.98, rel=1e-3)
+
+
+def test_gain_behind_a_capacitor_counts_in_mid_band(stage):
+    """A coupling that is short at 1 kHz adds nothing to the resistors' 2 %."""
+    cards = INVERTING.replace("R1 in n 10k", "C1 in m 10u\nR1 m n 10k")
+    found = stage(cards)
+    (_, worst), (_, nominal) = found.gain_worst[0], found.gain[0]
+    assert worst.span / 2 == pytest.approx(0.02 * nominal, rel=0.01)
+
+
+def test_noise_gain_and_bandwidth(stage):
+    """11 = 1 + 10: the ten moves by 2 %, the bandwidth with it."""
+    loop = stage(INVERTING).loop
+    assert loop.noise_gain_worst.low == pytest.approx(10.8, rel=2e-3)
+    assert loop.noise_gain_worst.high == pytest.approx(11.2, rel=2e-3)
+    assert loop.crossover_worst.high == pytest.approx(loop.crossover * 11 / 10.8, rel=2e-3)
+    assert loop.crossover_worst.low == pytest.approx(loop.crossover * 11 / 11.2, rel=2e-3)
+
+
+def test_least_gain_bandwidth_product_counts(stage):
+    """2 MHz at least of 4 MHz typical: half the bandwidth."""
+    own = """
+[[devices]]
+family = "HALF"
+technology = "cmos"
+gain_bandwidth = { typical = 4e6, guaranteed = 2e6 }
+names = { 1 = ["HALF"] }
+source = { title = "made for this test" }
+[tolerances]
+resistor = "0 %"
+"""
+    loop = stage(INVERTING.replace("TL072", "HALF"), own).loop
+    assert loop.crossover_worst.low == pytest.approx(loop.crossover / 2, rel=1e-6)
+    assert loop.crossover_worst.high == pytest.approx(loop.crossover, rel=1e-6)
+
+
+def test_filter_of_two_equal_resistors(stage):
+    """Frequency ~ (R1 R2 C1 C2)^-1/2: 11 %; Q ~ (C1 / C2)^1/2 and flat in equal resistors: 10 %."""
+    found = stage(SALLEN_KEY).filter
+    assert found.frequency_worst.span / 2 == pytest.approx(0.11 * found.frequency, rel=2e-3)
+    assert found.q_worst.span / 2 == pytest.approx(0.10 * found.q, rel=2e-3)
+
+
+def test_q_follows_the_resistors_that_set_the_gain(stage):
+    """Equal parts and a gain K: Q = 1 / (3 - K), so dQ/Q = Q dK; K = 1.6 moves by 0.6 * 2 %."""
+    cards = SALLEN_KEY.replace("2n", "1n").replace(
+        "XU1 p out vp vn out", "RA n 0 10k\nRB n out 6k\nXU1 p n vp vn out"
+    )
+    found = stage(cards, '[tolerances]\ncapacitor = "0 %"').filter
+    assert found.q == pytest.approx(1 / 1.4, rel=1e-3)
+    gain_part = found.q * 0.6 * 0.02
+    # dQ/dR of the two filter resistors: 0.5 - Q and Q - 0.5 per relative change, 1 % each.
+    resistors = 2 * 0.01 * abs(found.q * 1.0 - 0.5)
+    assert found.q_worst.span / 2 / found.q == pytest.approx(gain_part + resistors, rel=0.05)
+
+
+@pytest.mark.parametrize("cards", [INVERTING, SALLEN_KEY])
+def test_every_number_has_its_ends(stage, cards):
+    """Supply, output, current, inputs, gain, noise gain, bandwidth: low, nominal, high in order."""
+    found = stage(cards)
+    triples = [
+        (found.supply.positive_worst.low, found.supply.positive, found.supply.positive_worst.high),
+        (found.supply.negative_worst.low, found.supply.negative, found.supply.negative_worst.high),
+        (found.output.worst.low, found.output.demand.low, found.output.demand.high),
+        (found.output.demand.low, found.output.demand.high, found.output.worst.high),
+        (found.inputs.worst.low, found.inputs.demand.low, found.inputs.demand.high),
+        (found.inputs.demand.low, found.inputs.demand.high, found.inputs.worst.high),
+        (0.0, found.current.demand_source, found.current.worst_source),
+        (0.0, found.current.demand_sink, found.current.worst_sink),
+        (found.gain_worst[0][1].low, found.gain[0][1], found.gain_worst[0][1].high),
+        (found.loop.noise_gain_worst.low, found.loop.noise_gain_dc,
+         found.loop.noise_gain_worst.high),
+        (found.loop.crossover_worst.low, found.loop.crossover, found.loop.crossover_worst.high),
+        (found.output.worst.low, found.output.rss.low, found.output.demand.low),
+    ]  # fmt: skip
+    for low, nominal, high in triples:
+        assert low <= nominal * (1 + math.copysign(1e-9, nominal)) + 1e-12
+        assert nominal <= high + 1e-9 * abs(high) + 1e-12
