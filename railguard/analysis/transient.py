@@ -98,7 +98,7 @@ def _exponential(wave: Exponential, t: Real) -> Real:
     return np.asarray(value)
 
 
-def _window(wave: Wave) -> tuple[float, float]:
+def window(wave: Wave) -> tuple[float, float]:
     """Return how long a wave is followed and the finest thing in it, seconds."""
     match wave:
         case Pulse():
@@ -136,7 +136,7 @@ def excursion(network: Network, injection: str, wave: Wave, mean: float) -> Excu
 
     Raises  SolveError
     """
-    length, finest = _window(wave)
+    length, finest = window(wave)
     most = max(STEPS, min(MOST_STEPS, MOST_WORK // max(network.size, 1)))
     count = int(min(max(STEPS, EDGE_STEPS * length / finest), most))
     step = length / count

@@ -1,5 +1,6 @@
 """A design as decks for ngspice: its op-amps as macromodels, its signals in its sources."""
 
+import itertools
 from collections.abc import Iterable, Mapping
 from typing import Literal
 
@@ -8,9 +9,10 @@ import numpy as np
 
 from railguard.analysis.dcpaths import is_linear
 from railguard.analysis.recognise import Amplifier, recognise
-from railguard.analysis.signals import Prepared, levels_and_tones, prepare
+from railguard.analysis.signals import Prepared, Tone, levels_and_tones, prepare
 from railguard.analysis.stage import Design
 from railguard.analysis.supplies import feeds, supply_nets
+from railguard.analysis.transient import window
 from railguard.circuit.model import GROUND, Control, Element
 from railguard.circuit.sources import Piecewise, Sine, Source
 from railguard.devices.catalogue import Catalogue
@@ -24,6 +26,16 @@ from railguard.engine.write import Placed, Written, write
 PERIODS = 3
 POINTS_A_PERIOD = 200
 MOST_POINTS = 12_000
+MOST_BEAT_POINTS = 40_000
+"""Points of a run that lets two tones meet."""
+LEAST_POINTS = 50
+"""Points a period that show its peak within a fifth of a per cent."""
+FAR_APART = 8.0
+"""The peaks of two tones further apart than this ratio meet in every period of the slower one."""
+BEATS = 1.8
+"""Periods of the difference of two tones: one of them lies in what counts."""
+SETTLED = 0.6
+"""The last share of the run that is looked at: before it, couplings charge."""
 SLOW_HERTZ = 10.0
 """Frequency a slow change is simulated at."""
 RAMP_SECONDS = 1e-3
@@ -40,6 +52,8 @@ class Bench(msgspec.Struct, frozen=True):
     written     the deck of the first manner: names are the same in all
     amplifiers  those that are in the decks, by designator
     request     the transient over the signals
+    settled     seconds from which its waves count: before, couplings charge
+    meets       False where its tones would need a longer run to meet at their worst
     remarks     what the decks do not show as it is
     """
 
@@ -47,6 +61,8 @@ class Bench(msgspec.Struct, frozen=True):
     written: Written
     amplifiers: Mapping[str, Amplifier]
     request: Transient
+    settled: float
+    meets: bool
     remarks: tuple[str, ...]
 
     def output(self, name: str) -> str:
@@ -101,7 +117,7 @@ def bench_of(design: Design, catalogue: Catalogue) -> Bench:
         "ramp": write([_ramped(e) for e in plain], circuit.models, placed, models["limited"]).text,
     }
     notes = [f"{n.designator}: {n.text}" for n in (*written.left_out, *written.stand_ins)]
-    return Bench(decks, written, present, _transient(prepared), (*notes, *remarks))
+    return Bench(decks, written, present, *_transient(prepared, design), (*notes, *remarks))
 
 
 def _related(elements: list[Element]) -> tuple[list[Element], list[Placed], list[str]]:
@@ -165,8 +181,7 @@ def _driven(prepared: Prepared, design: Design) -> Iterable[Element]:
     for tone in prepared.tones:
         if tone.basis != "user":
             continue
-        slow = _slow(tone.frequencies) if 0.0 in tone.frequencies else min(tone.frequencies)
-        hertz = max(_worst(design, tone.frequencies) or slow, slow)
+        hertz = _hertz(tone, design)
         for name, half in tone.drives:
             sines[name] = Sine(levels.get(name, 0.0), float(np.real(half)), hertz)
     for element in prepared.elements:
@@ -197,10 +212,31 @@ def _worst(design: Design, frequencies: tuple[float, ...]) -> float | None:
     return max(set(inside), key=inside.count) if inside else None
 
 
-def _transient(prepared: Prepared) -> Transient:
-    hertz = [f for tone in prepared.tones for f in (tone.frequencies[-1],) if f > 0]
-    hertz += [_slow(tone.frequencies) for tone in prepared.tones if 0.0 in tone.frequencies]
-    slow, fast = (min(hertz), max(hertz)) if hertz else (SLOW_HERTZ, SLOW_HERTZ)
-    stop = PERIODS / slow
-    step = max(1 / (POINTS_A_PERIOD * fast), stop / MOST_POINTS)
-    return Transient(step=step, stop=stop)
+def _hertz(tone: Tone, design: Design) -> float:
+    """Return the frequency a tone is simulated at: of a user's band, the worst one."""
+    if tone.basis != "user":
+        top = tone.frequencies[-1]
+        return top if top > 0 else SLOW_HERTZ
+    slow = _slow(tone.frequencies) if 0.0 in tone.frequencies else min(tone.frequencies)
+    return max(_worst(design, tone.frequencies) or slow, slow)
+
+
+def _transient(prepared: Prepared, design: Design) -> tuple[Transient, float, bool]:
+    """Return the run over the signals, from when it counts, and whether its tones meet in it."""
+    hertz = sorted({_hertz(tone, design) for tone in prepared.tones}) or [SLOW_HERTZ]
+    slow, fast = hertz[0], hertz[-1]
+    stop, meets = PERIODS / slow, True
+    beats = [b - a for a, b in itertools.pairwise(hertz) if 1e-9 * b < b - a and b < FAR_APART * a]
+    if beats:
+        # Two sines meet at their worst once in the period of their difference.
+        meeting = BEATS / min(beats)
+        meets = meeting <= stop or (stop + meeting) * fast * LEAST_POINTS <= MOST_BEAT_POINTS
+        stop += meeting if meets else 0.0
+    settled = stop * (1 - SETTLED)
+    lengths = [window(tone.wave)[0] for tone in prepared.tones if tone.wave is not None]
+    if lengths:
+        # A wave of its own shape is followed from its beginning, where the circuit is at rest.
+        stop, settled = max(stop, *lengths), 0.0
+    most = MOST_BEAT_POINTS if beats else MOST_POINTS
+    step = max(1 / (POINTS_A_PERIOD * fast), stop / most)
+    return Transient(step=step, stop=stop), settled, meets

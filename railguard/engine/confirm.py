@@ -29,8 +29,17 @@ def outcome(
     """Hold one finding against what its stage did.
 
     The macromodel is typical, at nominal values: what breaks only a guaranteed limit or a corner
-    is left open.
+    is left open, and so is a demand that was not reached by tones that had no time to meet.
     """
+    said = _outcome(rule, demand, limit, corner, stage, done)
+    if said.word != "confirmed" or done.meets:
+        return said
+    return Outcome("open", "its tones are too near one another to meet in a run of bearable length")
+
+
+def _outcome(
+    rule: str, demand: float | None, limit: float | None, corner: str, stage: Stage, done: Simulated
+) -> Outcome:
     if demand is None or limit is None:
         return Outcome("open", "it states no number that can be simulated")
     if corner == "worst-case":

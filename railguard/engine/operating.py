@@ -18,9 +18,6 @@ from railguard.engine.ladder import Found, climb
 from railguard.engine.process import Engine
 from railguard.engine.rawfile import Plot
 
-SETTLED = 0.6
-"""The last share of the run that is looked at: before it, couplings charge."""
-
 
 class Simulated(msgspec.Struct, frozen=True):
     """What one amplifier did, V and A; ranges are empty where no run of its signals settled.
@@ -28,6 +25,7 @@ class Simulated(msgspec.Struct, frozen=True):
     current  out of the output pin
     plus     at its non-inverting input
     apart    largest voltage between its inputs: a few millivolts while its loop works
+    meets    False where the run was too short for its tones to meet at their worst
     """
 
     output: Range
@@ -35,6 +33,7 @@ class Simulated(msgspec.Struct, frozen=True):
     level: float
     plus: Range = Range()
     apart: float | None = None
+    meets: bool = True
 
 
 class Simulation(msgspec.Struct, frozen=True):
@@ -65,7 +64,7 @@ def _simulated(name: str, bench: Bench, found: Found) -> Simulated:
     if found.waves is None:
         return Simulated(Range(), Range(), level)
     waves = found.waves
-    kept = waves.real("time") >= waves.real("time")[-1] * (1 - SETTLED)
+    kept = waves.real("time") >= bench.settled
     plus, minus = (_volts(waves, node)[kept] for node in bench.inputs(name))
     return Simulated(
         output=_range(_volts(waves, bench.output(name))[kept]),
@@ -73,6 +72,7 @@ def _simulated(name: str, bench: Bench, found: Found) -> Simulated:
         level=level,
         plus=_range(plus),
         apart=float(np.max(np.abs(plus - minus))),
+        meets=bench.meets,
     )
 
 

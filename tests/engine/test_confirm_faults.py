@@ -290,6 +290,25 @@ VIN in 0 SIN(0 5 100)
 XU1 in out vp vn out NE5532
 RL out 0 600
 
+* two tones, split: nothing
+VA a 0 SIN(0 1 40)
+VB b 0 SIN(0 1 33)
+R1 a n 10k
+R3 b n 10k
+R2 n out 10k
+XU1 0 n vp vn out TL072
+RL out 0 20k
+
+* a loop's current in two seconds, split: nothing
+ILOOP 0 in PWL(0 0.004 1 0.020 2 0.004)
+RS in 0 75
+RP in p 4.99k
+C1X p 0 100n
+R1 n 0 10k
+R2 n out 10k
+XU1 p n vp vn out TL072
+RL out 0 20k
+
 * capacitor, split: nothing
 VIN in 0 SIN(0 1 5k)
 XU1 in out vp vn out OPA2134
@@ -370,3 +389,13 @@ def test_ngspice_reaches_what_is_asked_of_a_sound_stage(name):
     amps = 0.02 * max(asked, sunk) + 1e-5
     assert max(done.current.high, 0.0) == pytest.approx(asked, abs=amps)
     assert max(-done.current.low, 0.0) == pytest.approx(sunk, abs=amps)
+
+
+def test_tones_that_cannot_meet_in_time_leave_it_open():
+    """A hundredth of a hertz apart: what was not reached in the run may be reached later."""
+    cards = (
+        "gauge\nVA a 0 SIN(0 4 1000)\nVB b 0 SIN(0 4 1000.01)\nR1 a n 1k\nR3 b n 1k\nR2 n out 2k\n"
+        f"XU1 0 n vp vn out TL072\n{SUPPLIES['split']}.end\n"
+    )
+    (finding,) = [f for f in confirmed(cards) if f.rule == "headroom-output"]
+    assert "Not confirmed: its tones are too near one another" in finding.message
