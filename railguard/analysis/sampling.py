@@ -13,7 +13,9 @@ from railguard.analysis.network import Complex, Real
 from railguard.analysis.ranges import Answers
 
 STACK = 128
-"""Samples solved at once; bounds the memory."""
+"""Samples solved at once."""
+STACK_ENTRIES = 8_000_000
+"""Entries of all their matrices: 128 MB."""
 
 
 class Sampled(msgspec.Struct, frozen=True):
@@ -52,8 +54,9 @@ def exact_corners(answers: Answers, spread: Spread, quantities: list[int]) -> Sa
 def evaluate(answers: Answers, spread: Spread, shares: Real) -> Sampled:
     """Solve at given shares of each tolerance, shape (samples, parameters), -1 to 1."""
     highs, lows = [], []
-    for start in range(0, len(shares), STACK):
-        moved = shares[start : start + STACK] * spread.delta
+    stack = max(1, min(STACK, STACK_ENTRIES // max(answers.network.size, 1) ** 2))
+    for start in range(0, len(shares), stack):
+        moved = shares[start : start + stack] * spread.delta
         level = _solved(answers, spread, moved, 0.0, _levels(answers, spread, moved))
         peaks = np.zeros_like(level.real)
         for tone in answers.tones:

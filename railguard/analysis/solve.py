@@ -8,6 +8,7 @@ from collections.abc import Iterator
 from typing import Protocol
 
 import numpy as np
+import numpy.typing as npt
 from numpy.lib.stride_tricks import sliding_window_view
 
 from railguard.analysis.network import Complex, Network, Real
@@ -108,8 +109,18 @@ class Stepper:
         self._steady = factor(network, 0.0)
         # A step of h seconds is the matrix at s = 1/h.
         self._step = factor_at(network, 1.0 / seconds)
-        self._history = network.c / seconds
+        self._entries = network.entries()[1]
+        self._seconds = seconds
         self._size = network.size
+
+    def _history(self) -> tuple[npt.NDArray[np.int64], Complex]:
+        """Return the columns of C that are not empty, and those columns over the step's length."""
+        kept = np.array(sorted({column for _, column, _ in self._entries}), dtype=np.int64)
+        place = {int(column): k for k, column in enumerate(kept)}
+        history = np.zeros((self._size, len(kept)), dtype=np.complex128)
+        for row, column, value in self._entries:
+            history[row, place[column]] += value / self._seconds
+        return kept, history
 
     def steady(self, b: Real) -> Real:
         """Return the state that a standing right-hand side leads to."""
@@ -123,10 +134,9 @@ class Stepper:
         drive  its value at each step
         """
         v = self._step.forward(b.astype(np.complex128)).real
-        advance = self._step.forward(self._history.astype(np.complex128)).real
         # Only what stores energy remembers: the other columns of A are zero.
-        kept = np.flatnonzero(np.any(self._history != 0, axis=0))
-        advance = advance[:, kept]
+        kept, history = self._history()
+        advance = self._step.forward(history).real
         room = STRETCH_ENTRIES // max(self._size * max(len(kept), 1), 1)
         stretch = int(min(max(room, 1), LONGEST_STRETCH, len(drive)))
         powers, answers = [advance], [v]
