@@ -1,6 +1,7 @@
 """A design as decks for ngspice: its op-amps as macromodels, its signals in its sources."""
 
 import itertools
+from collections import defaultdict
 from collections.abc import Iterable, Mapping
 from typing import Literal
 
@@ -91,6 +92,7 @@ def bench_of(design: Design, catalogue: Catalogue) -> Bench:
     models: dict[Manner, list[str]] = {"limited": [*bodies], "straight": [*bodies]}
     present: dict[str, Amplifier] = {}
     remarks: list[str] = []
+    stand_ins: dict[str, list[str]] = defaultdict(list)
     for number, amplifier in enumerate(amplifiers):
         inner = f"{amplifier.designator} pin"
         rails = _rails(design, amplifier)
@@ -107,7 +109,7 @@ def bench_of(design: Design, catalogue: Catalogue) -> Bench:
         models["limited"].append(limited(name, figures))
         models["straight"].append(limited(name, figures, straight=True))
         if assumed:
-            remarks.append(f"{amplifier.designator}: {', '.join(assumed)} by common practice")
+            stand_ins[", ".join(assumed)].append(amplifier.designator)
         pins = (amplifier.plus, amplifier.minus, amplifier.positive, amplifier.negative, inner)
         placed.append(Placed(amplifier.designator, name, pins))
     written = write(plain, circuit.models, placed, models["limited"])
@@ -116,6 +118,9 @@ def bench_of(design: Design, catalogue: Catalogue) -> Bench:
         "straight": write(plain, circuit.models, placed, models["straight"]).text,
         "ramp": write([_ramped(e) for e in plain], circuit.models, placed, models["limited"]).text,
     }
+    remarks += [
+        f"{', '.join(names)}: {text} by common practice" for text, names in stand_ins.items()
+    ]
     notes = [f"{n.designator}: {n.text}" for n in (*written.left_out, *written.stand_ins)]
     return Bench(decks, written, present, *_transient(prepared, design), (*notes, *remarks))
 
