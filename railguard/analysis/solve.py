@@ -14,7 +14,7 @@ from numpy.lib.stride_tricks import sliding_window_view
 from railguard.analysis.network import Complex, Network, Real
 from railguard.errors import SolveError
 
-DENSE_LIMIT = 400
+DENSE_LIMIT = 250
 """Unknowns up to which a dense inverse is cheaper than a sparse factorisation."""
 
 

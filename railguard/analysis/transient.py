@@ -140,7 +140,11 @@ def excursion(network: Network, injection: str, wave: Wave, mean: float) -> Excu
     most = max(STEPS, min(MOST_STEPS, MOST_WORK // max(network.size, 1)))
     count = int(min(max(STEPS, EDGE_STEPS * length / finest), most))
     step = length / count
-    times = np.linspace(0.0, length, count + 1)
+    if finest > step:
+        # Whole steps between the corners of a wave: no peak falls between two of them.
+        step = finest / float(np.ceil(finest / step))
+        count = int(np.ceil(length / step))
+    times = step * np.arange(count + 1, dtype=np.float64)
     drive = value_at(wave, times) - mean
     b = network.right_hand_side([(injection, 1.0)]).real
     march = Stepper(network, step)

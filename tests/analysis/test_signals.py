@@ -78,7 +78,7 @@ def test_scipy_stays_away_from_small_circuits():
         "found = review('\\n'.join(cards), plugins=False).designs[0].design.stages[0]\n"
         "print('scipy' in sys.modules, found.output.level is not None)"
     )
-    for size, loaded in ((300, "False"), (600, "True")):
+    for size, loaded in ((200, "False"), (600, "True")):
         done = subprocess.run(
             [sys.executable, "-c", script % (size, size)],
             capture_output=True,

@@ -70,3 +70,10 @@ def test_a_first_order_stage_follows_a_wave(wave, highest):
     network = Network(RC, ())
     found = excursion(network, "V1", wave, 0.0)
     assert found.up[network.row("a")] == pytest.approx(highest, rel=5e-3)
+
+
+def test_a_corner_of_a_wave_falls_on_a_step():
+    """A photodiode's current that turns at one instant: 0.1 V and 90 uA in 53.6 kilohm."""
+    network = Network([*RC[:1], element("R", ("in", "0"), 1e3, "R1")], ())
+    wave = Piecewise(((0.0, 0.0), (1.0, 4.824), (2.0, 0.0)))
+    assert excursion(network, "V1", wave, 0.0).up[network.row("in")] == pytest.approx(4.824)
