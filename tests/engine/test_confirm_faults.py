@@ -217,6 +217,7 @@ VIN in 0 12
 R1 in a 100
 R2 a 0 12k
 XU1 a out vp 0 out OPA2134
+RL out 0 100k
 
 * divider from above, 3.3 V: headroom-input
 VIN in 0 12
