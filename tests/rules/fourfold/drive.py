@@ -88,7 +88,7 @@ CASES = {
         passing=_heat(25),
         failing=_heat(110),
         inside=_heat(40),
-        outside=_heat(80),
+        outside=_heat(84),
         unknown=_heat(110, NOBODYS),
     ),
 }
