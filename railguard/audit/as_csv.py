@@ -60,7 +60,7 @@ def pieces(base: Base, changes: Comparison | None, stream: IO[str] | None) -> It
 
 def _rows(rows: Iterable[tuple[object, ...]]) -> bytes:
     out = io.StringIO()
-    csv.writer(out, lineterminator="\r\n").writerows([_cell(cell) for cell in row] for row in rows)
+    csv.writer(out, lineterminator="\n").writerows([_cell(cell) for cell in row] for row in rows)
     return out.getvalue().encode()
 
 

@@ -37,16 +37,7 @@ def descriptors(review: Review) -> tuple[wire.Descriptor, ...]:
     spoke += with_consequences(review.findings)
     named = ran | {finding.rule for finding in spoke}
     known = {rule.name: rule for rule in (*RULES, *review.extra_rules)}
-    described = [_rule(rule, review.settings) for name, rule in known.items() if name in named]
-    # A rule may yield findings under another name than its own; they keep that name.
-    strays = sorted(named - known.keys())
-    return (*described, *(_stray(name) for name in strays))
-
-
-def _stray(name: str) -> wire.Descriptor:
-    return wire.Descriptor(
-        id=name, short_description=_message("A rule of another package that describes it nowhere.")
-    )
+    return tuple(_rule(rule, review.settings) for name, rule in known.items() if name in named)
 
 
 def _rule(rule: Rule, settings: Settings) -> wire.Descriptor:

@@ -29,7 +29,7 @@ _LABEL, _CELL = 22, 11
 def as_csv(sheet: tuple[Row, ...]) -> bytes:
     """Return the sheet as CSV (RFC 4180); what a spreadsheet takes for a formula is quoted."""
     out = io.StringIO()
-    writer = csv.writer(out, lineterminator="\r\n")
+    writer = csv.writer(out, lineterminator="\n")
     writer.writerow(Row.__struct_fields__)
     for row in sheet:
         writer.writerow([_plain(getattr(row, name)) for name in Row.__struct_fields__])
