@@ -9,6 +9,7 @@ much as all the rest of a short run, and its reader takes a bare M without askin
 
 import math
 import re
+from functools import lru_cache
 from typing import Literal
 
 NOT_KNOWN = "not known"
@@ -290,6 +291,7 @@ def series_for(tolerance: float) -> str:
     return next(name for least, name in _SERIES_BY_TOLERANCE if abs(tolerance) >= least)
 
 
+@lru_cache(maxsize=4096)
 def series_of(value: float) -> str | None:
     """Return the coarsest IEC 60063 series a value belongs to, or None where none has it."""
     # some 45 ms at import, and only a board's values are looked at

@@ -157,6 +157,32 @@ class Stepper:
             x = states[-1]
 
 
+AT_ONCE = 16
+"""Frequencies solved in one call: their matrices then fit a cache, and need no fresh memory."""
+
+
+def _solved_at(
+    network: Network, hertz: np.ndarray[tuple[int], np.dtype[np.float64]], b: Complex
+) -> Complex:
+    """Return (G + sC)^-1 b of a dense network, shape (frequencies, unknowns, columns).
+
+    Raises  SolveError
+    """
+    omega = 2 * np.pi * hertz
+    solved = np.empty((len(hertz), *b.shape), dtype=np.complex128)
+    matrices = np.empty((min(AT_ONCE, len(hertz)), *network.g.shape), dtype=np.complex128)
+    for start in range(0, len(hertz), AT_ONCE):
+        some = omega[start : start + AT_ONCE, None, None]
+        part = matrices[: len(some)]
+        part.real = network.g
+        np.multiply(some, network.c, out=part.imag)
+        try:
+            solved[start : start + AT_ONCE] = np.linalg.solve(part, b[None, :, :])
+        except np.linalg.LinAlgError as error:
+            raise SolveError("The circuit's equations have no single answer.") from error
+    return solved
+
+
 def return_ratios(network: Network, hertz: np.ndarray[tuple[int], np.dtype[np.float64]]) -> Complex:
     """Return each amplifier's own loop transmission A*beta, all others active.
 
@@ -176,11 +202,7 @@ def return_ratios(network: Network, hertz: np.ndarray[tuple[int], np.dtype[np.fl
             picks[row, column] = 1.0
     result = np.zeros((len(hertz), len(rows)), dtype=np.complex128)
     if network.size <= DENSE_LIMIT:
-        s = (2j * np.pi * hertz)[:, None, None]
-        try:
-            solved = np.linalg.solve(network.g + s * network.c, picks[None, :, :])
-        except np.linalg.LinAlgError as error:
-            raise SolveError("The circuit's equations have no single answer.") from error
+        solved = _solved_at(network, hertz, picks)
     else:
         solved = np.stack([factor(network, float(f)).forward(picks) for f in hertz])
     for column, amplifier in enumerate(network.amplifiers):
