@@ -157,6 +157,7 @@ def excursion(network: Network, injection: str, wave: Wave, mean: float) -> Excu
             np.maximum(highest, states.max(axis=0), out=highest)
             np.minimum(lowest, states.min(axis=0), out=lowest)
             x = states[-1]
-    if not np.all(np.isfinite(steepest)) or not np.all(np.isfinite(highest - lowest)):
+        slew = steepest / step
+    if not np.all(np.isfinite(slew)) or not np.all(np.isfinite(highest - lowest)):
         return None
-    return Excursion(np.maximum(highest, 0.0), np.maximum(-lowest, 0.0), steepest / step)
+    return Excursion(np.maximum(highest, 0.0), np.maximum(-lowest, 0.0), slew)

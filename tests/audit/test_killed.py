@@ -18,11 +18,11 @@ KILLS = 10
 
 @pytest.fixture
 def share(tmp_path):
-    """Some hundred designs of several kinds, with includes and an archive."""
+    """More designs than ten commits hold, of several kinds, with includes and an archive."""
     kinds = (SOUND, CLIPPED, BARE, UNKNOWN, LIBRARY)
-    names = {f"lot{k % 7}/design{k:03}.cir": kinds[k % 5] for k in range(120)}
+    names = {f"lot{k % 7}/design{k:04}.cir": kinds[k % 5] for k in range(1600)}
     names |= {
-        f"bench{k}.cir": f'bench {k}\n.include "lot0/design{7 * k:03}.cir"\n.tran 1u 1m\n.end\n'
+        f"bench{k}.cir": f'bench {k}\n.include "lot0/design{7 * k:04}.cir"\n.tran 1u 1m\n.end\n'
         for k in range(5)
     }
     folder = put(tmp_path / "share", **names)
