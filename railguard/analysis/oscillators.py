@@ -14,7 +14,7 @@ of stability needs the device's own poles. Then, with the amplifier's loop negat
   thresholds, which are not followed either.
 """
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Mapping
 
 import msgspec
 import numpy as np
@@ -73,8 +73,16 @@ def oscillators(
     switched = frozenset(name for name, use in uses.items() if use == "comparator")
     moved = {name for tone in prepared.tones for name, _ in tone.drives}
     moved |= {item.injection for item in prepared.unstated}
+    # A signal reaches these nets, or may: looked up once, a rail has many neighbours.
+    reached = {
+        net
+        for net, near in ways.around.items()
+        if any(e.designator in moved for e in near)
+        or (net not in ways.held and any(map(leaves_sheet, near)))
+    }
+    by_output = {a.output: a for a in amplifiers}
     around = {
-        a.designator: _surroundings(a, amplifiers, ways, moved)
+        a.designator: _surroundings(a, by_output, ways, reached)
         for a in amplifiers
         if uses.get(a.designator, "oscillator") == "oscillator"
     }
@@ -171,16 +179,16 @@ def _turns_round(ratio: Complex) -> bool:
 
 
 def _surroundings(
-    amplifier: Amplifier, amplifiers: Sequence[Amplifier], ways: Ways, moved: set[str]
+    amplifier: Amplifier, by_output: Mapping[str, Amplifier], ways: Ways, reached: set[str]
 ) -> _Loop | None:
     """Return what reaches an amplifier's inputs, through others too; None where it cannot turn.
 
     It cannot where a signal reaches it, without a capacitor, and where its output comes back only
     to its inverting input through less than three of them.
 
-    moved  designators of sources that change, or may
+    by_output  amplifiers by the net they drive
+    reached    nets that a source which changes, or may, is on
     """
-    by_output = {a.output: a for a in amplifiers}
     seen = {amplifier.plus, amplifier.minus}
     queue = list(seen)
     met: dict[int, Element] = {}
@@ -189,12 +197,10 @@ def _surroundings(
         at = queue.pop()
         if at == GROUND:
             continue
+        if at in reached:
+            return None
         around = ways.around.get(at, ())
         behind = by_output.get(at)
-        if any(e.designator in moved for e in around):
-            return None
-        if at not in ways.held and any(leaves_sheet(e) for e in around):
-            return None
         fresh: set[str] = set()
         if behind is not None:
             through.add(behind.designator)

@@ -91,14 +91,10 @@ def _after(view: View) -> tuple[str, ...]:
     passive, amplifier = view.solution.passive, view.amplifier
     rows = [passive.network.row(amplifier.plus), passive.network.row(amplifier.minus)]
     dc, mid = passive.dc.adjoint(rows), passive.mid.adjoint(rows)
-    found = []
-    for other in view.solution.amplifiers:
-        row = passive.network.outputs.get(other.designator, -1)
-        if other is amplifier or row < 0:
-            continue
-        if max(float(np.abs(dc[:, row]).max()), float(np.abs(mid[:, row]).max())) > WEAK:
-            found.append(other.designator)
-    return tuple(found)
+    strong = (np.maximum(np.abs(dc), np.abs(mid)).max(axis=0) > WEAK).tolist()
+    others = (a for a in view.solution.amplifiers if a is not amplifier)
+    driven = ((a.designator, passive.network.outputs.get(a.designator, -1)) for a in others)
+    return tuple(name for name, row in driven if row >= 0 and strong[row])
 
 
 def _stage(
