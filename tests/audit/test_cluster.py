@@ -150,6 +150,23 @@ def test_a_lost_worker_changes_nothing(cluster, share, tmp_path):
     assert export(tmp_path / "cluster.sqlite") == export(tmp_path / "alone.sqlite")
 
 
+def test_a_slow_worker_changes_nothing(cluster, share, tmp_path):
+    """One of two stands still in the middle of its batches and goes on seconds later."""
+    status, _ = finished(command(share, tmp_path / "alone.sqlite", "--workers", "1"))
+    assert status == 0
+    slow, _ = cluster.worker(), cluster.worker()
+    run = command(share, tmp_path / "cluster.sqlite", "--cluster", cluster.address)
+    wait_for(tmp_path / "cluster.sqlite", 20)
+    slow.send_signal(signal.SIGSTOP)
+    try:
+        time.sleep(4)
+    finally:
+        slow.send_signal(signal.SIGCONT)
+    status, said = finished(run)
+    assert status == 0, said
+    assert export(tmp_path / "cluster.sqlite") == export(tmp_path / "alone.sqlite")
+
+
 def test_a_scheduler_that_restarts(cluster, share, tmp_path):
     """It is waited for; and where the audit is killed meanwhile, the same command goes on."""
     base = tmp_path / "cluster.sqlite"
