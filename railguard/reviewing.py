@@ -15,7 +15,8 @@ from railguard.analysis.solution import Options
 from railguard.analysis.stage import Design
 from railguard.circuit.flatten import flatten
 from railguard.circuit.model import Circuit
-from railguard.deck.files import Bounds, Deck, deck_from_text, read_deck
+from railguard.deck.bounds import Bounds
+from railguard.deck.files import Deck, deck_from_text, read_deck
 from railguard.devices import catalogue
 from railguard.devices.names import schematic_name
 from railguard.notices import NotChecked, Problem

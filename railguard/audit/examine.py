@@ -18,7 +18,8 @@ from railguard.audit.archives import ArchiveError
 from railguard.audit.sniff import LIBRARIES, SURE, is_archive, sort_of, suffix, worth_opening
 from railguard.audit.trees import Over, Tree, Trees
 from railguard.audit.wire import Found, Outcome, Plan, Task, Unknown
-from railguard.deck.files import Bounds, Deck, read_deck
+from railguard.deck.bounds import Bounds
+from railguard.deck.files import Deck, read_deck
 from railguard.errors import RailguardError
 from railguard.reviewing import DesignReview, review_deck
 from railguard.rules.finding import Finding

@@ -9,8 +9,9 @@ from railguard.circuit.expressions import ExpressionError, Function, evaluate
 from railguard.circuit.model import Analysis
 from railguard.circuit.scopes import Scope
 from railguard.circuit.written import split_parameters, text_of, unquoted
+from railguard.deck.bounds import Bounds
 from railguard.deck.cards import Assignment, Call, CardError, Group, Items, items_of
-from railguard.deck.files import Bounds, Deck
+from railguard.deck.files import Deck
 from railguard.deck.lines import Line
 from railguard.notices import Problem
 from railguard.words import Severity

@@ -10,8 +10,9 @@ from pathlib import Path
 
 import msgspec
 
+from railguard.deck.bounds import Bounds
 from railguard.deck.encoding import decode, mend
-from railguard.deck.files import Bounds, Deck, read_deck
+from railguard.deck.files import Deck, read_deck
 from railguard.deck.source import Disk
 from railguard.errors import UsageError
 from railguard.redline.model import Edit

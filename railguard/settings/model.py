@@ -126,7 +126,7 @@ class Settings(msgspec.Struct, frozen=True, kw_only=True):
     as_of       the day waivers are judged on
     require     families that count as a hold where they stay open
     named       every rule the file names, with its place
-    bounds      bounds on reading that are not the reader's own: fields of `deck.files.Bounds`
+    bounds      bounds on reading that are not the reader's own: fields of `deck.bounds.Bounds`
     """
 
     file: str = ""

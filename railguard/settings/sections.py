@@ -42,7 +42,7 @@ BOUNDS = (
     "elements",
     "expression",
 )
-"""Bounds on reading that a file may set; `deck.files.Bounds` says what each is."""
+"""Bounds on reading that a file may set; `deck.bounds.Bounds` says what each is."""
 FAMILIES: tuple[Family, ...] = get_args(Family)
 
 Made = TypeVar("Made")
@@ -150,7 +150,7 @@ class _Reader:
 
 
 def _bounds(reader: _Reader) -> Mapping[str, int]:
-    """Return the bounds that are set, by the names of `deck.files.Bounds`."""
+    """Return the bounds that are set, by the names of `deck.bounds.Bounds`."""
     with reader.faults_at(("bounds",)):
         fields = reader.fields(("bounds",), "the section [bounds]")
         fields.only(*BOUNDS)

@@ -15,7 +15,8 @@ import atheris
 with atheris.instrument_imports(include=["railguard"]):
     from railguard.analysis.recognise import keeps_closed
     from railguard.circuit.flatten import flatten
-    from railguard.deck.files import Bounds, read_deck
+    from railguard.deck.bounds import Bounds
+    from railguard.deck.files import read_deck
     from railguard.devices import catalogue
     from railguard.errors import RailguardError
 

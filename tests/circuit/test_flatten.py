@@ -6,7 +6,8 @@ from hypothesis import strategies as st
 
 from railguard.circuit.flatten import flatten
 from railguard.circuit.sources import Piecewise, Pulse, Sine
-from railguard.deck.files import Bounds, deck_from_text
+from railguard.deck.bounds import Bounds
+from railguard.deck.files import deck_from_text
 
 
 def circuit(cards, bounds=None):

@@ -2,8 +2,9 @@
 
 import pytest
 
+from railguard.deck.bounds import Bounds
 from railguard.deck.encoding import decode
-from railguard.deck.files import Bounds, deck_from_text, read_deck
+from railguard.deck.files import deck_from_text, read_deck
 from railguard.deck.lines import physical_lines
 
 TEXT = "station\nC1 a 0 1µ\nR1 a 0 1k\n.end\n"

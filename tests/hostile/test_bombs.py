@@ -6,7 +6,7 @@ Nothing is timed: what is not bounded here does not end within a day.
 import pytest
 
 from railguard.circuit.expressions import MOST_STEPS
-from railguard.deck.files import Bounds
+from railguard.deck.bounds import Bounds
 from railguard.reviewing import review
 from tests.report import designs
 

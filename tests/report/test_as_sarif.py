@@ -7,7 +7,7 @@ import jsonschema
 import msgspec
 import pytest
 
-from railguard.deck.files import Bounds
+from railguard.deck.bounds import Bounds
 from railguard.location import Location
 from railguard.report.as_sarif import FINGERPRINT, document, region
 from railguard.reviewing import review

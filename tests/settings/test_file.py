@@ -5,7 +5,7 @@ from pathlib import Path
 
 import pytest
 
-from railguard.deck.files import Bounds
+from railguard.deck.bounds import Bounds
 from railguard.errors import SettingsError
 from railguard.settings.file import FILE_NAME, find, load, parse
 from railguard.settings.model import Load, NetLevel, Settings, Signal, Tolerances
