@@ -24,7 +24,7 @@ from railguard.circuit.model import (
     Instance,
     Model,
 )
-from railguard.circuit.plain import plain_element
+from railguard.circuit.plain import plain_card
 from railguard.circuit.references import unsteered
 from railguard.circuit.scopes import Scope
 from railguard.circuit.sorter import Sorted, sort_deck
@@ -172,7 +172,7 @@ class _Expander:
         """Expand one instance of an environment's scope."""
         scope = environment.scope
         nets = _Nets(ports, self, prefix)
-        names = Names(scope, environment, prefix)
+        names: Names | None = None
         if scope.models:
             self._take_models(scope, environment, prefix)
         most = self.deck.bounds.elements
@@ -184,14 +184,14 @@ class _Expander:
                 return
             bound = kept.get(number) or (fixed.get(number) if alone else None)
             if bound is None:
-                element = plain_element(line) if alone else None
-                if (
-                    element is None
-                    or first.setdefault(element.designator.casefold(), line) is not line
-                ):
+                plain = plain_card(line, scope) if alone else None
+                if plain is None or first.setdefault(plain.designator.casefold(), line) is not line:
+                    names = names or Names(scope, environment, prefix)
                     bound = self._bind(names, number, line)
+                elif isinstance(plain, Instance):
+                    bound = fixed[number] = plain
                 else:
-                    bound = fixed[number] = (element,)
+                    bound = fixed[number] = (plain,)
             if type(bound) is Instance:
                 self._instance(bound, environment, prefix, nets, depth, active)
             else:

@@ -69,12 +69,9 @@ class _Sorter:
             )
         )  # fmt: skip
 
-    def take(self, line: Line) -> None:
+    def card(self, line: Line) -> None:
+        """Take a dot card."""
         text = line.text
-        if text[0] != ".":
-            if not self.live or self.live[-1]:
-                self.stack[-1].cards.append(line)
-            return
         word = text[1:].split(None, 1)[0].split("(")[0].lower() if len(text) > 1 else ""
         if word in ("if", "elseif", "elif", "else", "endif"):
             self.condition(word, line)
@@ -341,6 +338,7 @@ def sort_deck(deck: Deck) -> Sorted:
     """Sort a deck's lines into scopes."""
     sorter = _Sorter()
     word = deck.bounds.word_characters
+    live, stack = sorter.live, sorter.stack
     for line in deck.lines:
         if len(line.text) > word and (what := _too_long(line.text, deck.bounds)):
             sorter.problem(
@@ -349,8 +347,10 @@ def sort_deck(deck: Deck) -> Sorted:
                 line,
                 "Raise line-characters or word-characters in [bounds] if this is meant.",
             )
-        else:
-            sorter.take(line)
+        elif line.text[0] == ".":
+            sorter.card(line)
+        elif not live or live[-1]:
+            stack[-1].cards.append(line)
     for scope in sorter.stack[1:]:
         if scope.header is not None:
             sorter.problem(

@@ -111,7 +111,7 @@ class _Assembler:
         self.remarks: list[Remark] = []
         self.comments: dict[int, list[str]] = {}
         self.odd: dict[str, int] = {}
-        self._more: list[tuple[str, int, int]] = []
+        self.waiting: list[tuple[str, int, int]] = []
         self.open = False
 
     def comment(self, text: str, number: int) -> None:
@@ -122,7 +122,7 @@ class _Assembler:
         before.append(text.strip().lstrip("*").strip())
 
     def card(self, text: str, number: int, column: int, note: str) -> None:
-        if self._more:
+        if self.waiting:
             self.join()
         self.done.append(Line(self.file, text, number, column, (), note))
         self.open = _FILE_CARD.match(text) is None
@@ -141,7 +141,7 @@ class _Assembler:
                 Location(self.file, number, column, len(text)),
             )
         elif text:
-            self._more.append((text, number, column))
+            self.waiting.append((text, number, column))
 
     def _problem(self, message: str, remedy: str, place: Location) -> None:
         self.problems.append(
@@ -160,18 +160,18 @@ class _Assembler:
 
     def join(self) -> None:
         """Put the continuations that were met behind their card."""
-        if not self._more:
+        if not self.waiting:
             return
         last = self.done[-1]
         texts, pieces, at = [last.text], [], len(last.text) + 1
-        for text, number, column in self._more:
+        for text, number, column in self.waiting:
             texts.append(text)
             pieces.append((at, number, column))
             at += len(text) + 1
         self.done[-1] = Line(
             self.file, " ".join(texts), last.number, last.column, tuple(pieces), last.note
         )
-        self._more = []
+        self.waiting = []
 
     def finish(self) -> tuple[Line, ...]:
         """Return the logical lines; headers of subcircuits get the comments round them.
@@ -203,6 +203,7 @@ def scan(text: str, file: str, titled: bool) -> Scanned:
     titled  True for a main deck: its first line is the title, whatever it looks like
     """
     build = _Assembler(file)
+    done = build.done
     raw = physical_lines(text)
     title, first = _title(raw[0], build) if titled else ("", 0)
     marked = any(mark in text for mark in _MARKS)
@@ -214,7 +215,10 @@ def scan(text: str, file: str, titled: bool) -> Scanned:
             and not joined
             and not (marked and any(mark in line for mark in _MARKS))
         ):
-            build.card(line.rstrip(), number, 1, "")
+            if build.waiting:
+                build.join()
+            done.append(Line(file, line.rstrip(), number))
+            build.open = True  # no file card begins with a letter
             continue
         stripped = line.lstrip()
         if not stripped:
