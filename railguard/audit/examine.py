@@ -17,7 +17,7 @@ from railguard.analysis.stage import Design
 from railguard.audit.archives import ArchiveError
 from railguard.audit.sniff import LIBRARIES, SURE, is_archive, sort_of, suffix, worth_opening
 from railguard.audit.trees import Over, Tree, Trees
-from railguard.audit.wire import Found, Outcome, Plan, Task, Unknown
+from railguard.audit.wire import Found, Outcome, Plan, State, Task, Unknown
 from railguard.deck.bounds import Bounds
 from railguard.deck.files import Deck, read_deck
 from railguard.errors import RailguardError
@@ -50,12 +50,8 @@ class Examiner:
         try:
             outcome = self._opened(task) if task.opens else self._looked_at(task, began)
         except (OSError, ArchiveError) as error:
-            outcome = self._outcome(task, "unreadable", why=_reason(error))
+            outcome = _outcome(task, "unreadable", why=_reason(error))
         return msgspec.structs.replace(outcome, seconds=time.process_time() - start)
-
-    def _outcome(self, task: Task, state: str, **fields: object) -> Outcome:
-        made: dict[str, object] = {"root": task.root, "path": task.path, "state": state, **fields}
-        return Outcome(**made)  # type: ignore[arg-type]
 
     def _opened(self, task: Task) -> Outcome:
         archive = self._trees.archive(task)
@@ -70,8 +66,8 @@ class Examiner:
             elif worth_opening(name):
                 members.append(Task(task.root, path, around))
         why = "; ".join(f"{name}: {reason}" for name, reason in archive.refused[:20])
-        return self._outcome(
-            task, "archive", members=tuple(members), settings=tuple(settings), why=why
+        return msgspec.structs.replace(
+            _outcome(task, "archive", why=why), members=tuple(members), settings=tuple(settings)
         )
 
     def _looked_at(self, task: Task, began: Callable[[str], None]) -> Outcome:
@@ -82,25 +78,26 @@ class Examiner:
             return self._too_long(task, data)
         sort = sort_of(task.path, data)
         if sort == "other":
-            return self._outcome(task, "other")
+            return _outcome(task, "other")
         root = Path(task.archives[-1]) if task.archives else Path()
         deck = read_deck(path, self._bounds, root, Over(tree, path, data))
         key = self._key(deck, data, self._stated(tree, task))
         if key == task.known:
-            return self._outcome(task, "same", key=key)
+            return _outcome(task, "same", key=key)
         began(key)
         if sort == "library":
-            return self._outcome(task, "library", key=key, sha256=deck.sha256, title=deck.title)
+            library = _outcome(task, "library", key=key)
+            return msgspec.structs.replace(library, sha256=deck.sha256, title=deck.title)
         if not deck.readable:
-            return self._outcome(task, "unreadable", key=key, why=deck.problems[0].message)
+            return _outcome(task, "unreadable", key=key, why=deck.problems[0].message)
         return self._reviewed(task, deck, key, tree)
 
     def _too_long(self, task: Task, data: bytes) -> Outcome:
         """Record what passes the bound, where it may be a netlist."""
         if suffix(task.path) not in SURE | LIBRARIES and sort_of(task.path, data) == "other":
-            return self._outcome(task, "other")
+            return _outcome(task, "other")
         why = f"It is larger than the {self._plan.budget.netlist:,} bytes a netlist may have."
-        return self._outcome(task, "unreadable", why=why)
+        return _outcome(task, "unreadable", why=why)
 
     def _key(self, deck: Deck, data: bytes, stated: tuple[str, str]) -> str:
         digest = hashlib.sha256(self._digest)
@@ -136,9 +133,9 @@ class Examiner:
             settings = self._settings(*self._stated(tree, task))
             found, _ = review_deck(deck, settings)
         except RailguardError as error:
-            return self._outcome(task, "unreadable", key=key, why=str(error))
+            return _outcome(task, "unreadable", key=key, why=str(error))
         except RecursionError:
-            return self._outcome(task, "stopped", key=key, why="It is nested too deeply.")
+            return _outcome(task, "stopped", key=key, why="It is nested too deeply.")
         design = found.design
         devices = {
             s.designator: s.family.family if s.family is not None else s.device
@@ -146,9 +143,10 @@ class Examiner:
         }
         for package in design.packages:
             devices.setdefault(package.designator, package.family or package.device)
-        return self._outcome(
-            task,
-            "design",
+        return Outcome(
+            root=task.root,
+            path=task.path,
+            state="design",
             key=key,
             sha256=deck.sha256,
             title=deck.title,
@@ -162,6 +160,10 @@ class Examiner:
             includes=tuple(dict.fromkeys(_near(name) for name in deck.files[1:])),
             circuit=_circuit(found, task.path),
         )
+
+
+def _outcome(task: Task, state: State, *, key: str = "", why: str = "") -> Outcome:
+    return Outcome(root=task.root, path=task.path, state=state, key=key, why=why)
 
 
 def _reason(error: Exception) -> str:

@@ -12,7 +12,7 @@ import tempfile
 import time
 from collections import deque
 from collections.abc import Callable, Iterator
-from multiprocessing.connection import Connection, Pipe, wait
+from multiprocessing.connection import Pipe, wait
 from types import TracebackType
 from typing import IO
 
@@ -128,12 +128,11 @@ class Pool:
             self._fill(take)
             if not any(worker.waiting for worker in self._workers):
                 return
-            pipes: dict[Connection, _Worker] = {w.pipe: w for w in self._workers}
-            heard = wait(list(pipes), TICK)
+            heard = wait([worker.pipe for worker in self._workers], TICK)
             if not heard:
                 yield None
-            for pipe in heard:
-                yield from self._listen(pipes[pipe])  # type: ignore[index]
+            for worker in [worker for worker in self._workers if worker.pipe in heard]:
+                yield from self._listen(worker)
             self._watch()
 
     def _fill(self, take: Callable[[], Task | None]) -> None:

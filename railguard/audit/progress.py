@@ -34,6 +34,7 @@ class Display:
         self._start = time.monotonic()
         self._told = self._start
         self._worst: tuple[int, ...] = ()
+        self._worst_text = ""
         self.done = 0
         self.reviewed = 0
         self.same = 0
@@ -55,15 +56,15 @@ class Display:
         self.reviewed += outcome.state == "design"
         self.same += outcome.state == "same"
         seconds = max(time.monotonic() - self._start, 1e-3)
-        fields: dict[str, str] = {"rate": f"{self.done / seconds:.0f} files/s"}
+        rate = f"{self.done / seconds:.0f} files/s"
         rank = _rank(outcome)
         if any(rank) and rank > self._worst:
             self._worst = rank
-            fields["worst"] = f"worst so far {_cut(path)} ({_counts(rank)})"
-        self._progress.update(self._task, advance=1, **fields)  # type: ignore[arg-type]
+            self._worst_text = f"worst so far {_cut(path)} ({_counts(rank)})"
+        self._progress.update(self._task, advance=1, rate=rate, worst=self._worst_text)
         if self._progress.disable and time.monotonic() - self._told > _LOG_SECONDS:
             self._told = time.monotonic()
-            self._console.print(Text(f"{self.done} files, {fields['rate']}"))
+            self._console.print(Text(f"{self.done} files, {rate}"))
 
 
 def _rank(outcome: Outcome) -> tuple[int, ...]:

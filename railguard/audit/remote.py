@@ -34,8 +34,14 @@ class Report(msgspec.Struct, frozen=True):
     blind: tuple[str, ...] = ()
 
 
-_own = threading.local()
-"""Each thread of a worker keeps one process, under the plan it was last asked for."""
+class _Own(threading.local):
+    """What each thread of a worker keeps: one process, under the plan it was last asked for."""
+
+    plan: bytes = b""
+    pool: Pool | None = None
+
+
+_own = _Own()
 
 
 def pack(tasks: list[Task]) -> bytes:
@@ -66,11 +72,12 @@ def introduce(roots: tuple[str, ...]) -> bytes:
 
 
 def _pool(plan: bytes, stated: Plan) -> Pool:
-    if getattr(_own, "plan", None) != plan:
-        if hasattr(_own, "pool"):
-            _own.pool.close()
-        _own.pool, _own.plan = Pool(stated, 1), plan
-    return _own.pool  # type: ignore[no-any-return]
+    if _own.pool is not None and _own.plan == plan:
+        return _own.pool
+    if _own.pool is not None:
+        _own.pool.close()
+    _own.plan, _own.pool = plan, Pool(stated, 1)
+    return _own.pool
 
 
 def _packed(answer: Answer) -> bytes:
