@@ -159,7 +159,7 @@ def _judged(bound: Bound, check: _Check, scale: float | None, cap: Severity) -> 
     bases = (bound.demand_basis, check.limit_basis)
     room = _room(bound, check.demand, check.limit)
     severity = TABLE[check.broken][evidence(*bases)]
-    if not check.at_corner and check.broken != "reserve":
+    if not check.at_corner:
         resting = _rests_at_zero(bound, scale)
         span = bound.span or (scale if resting else None)
         severity = soften(severity, -room, span, _level_outside(bound, check.limit) and not resting)

@@ -68,6 +68,25 @@ def test_a_corner_without_a_guaranteed_figure_rests_on_the_typical_one():
     assert broken.at_corner
 
 
+def test_a_corner_rests_on_the_guaranteed_figure_where_there_is_one():
+    """How well the typical one is known plays no part."""
+    broken = breach(
+        bound(
+            demand=8.0, typical=10.0, typical_basis="memory", guaranteed=9.0,
+            guaranteed_basis="catalogue", stated=Pair(9.5, 9.0),
+        )
+    )  # fmt: skip
+    assert broken is not None
+    assert (broken.severity, broken.limit_basis) == ("major", "catalogue")
+
+
+def test_a_corner_is_not_softened_by_size():
+    """Half a per cent of the span at a corner of stated tolerances: the row of the table stands."""
+    broken = breach(bound(demand=8.0, guaranteed=9.0, stated=Pair(9.1, 9.0), level=0.0, span=20.0))
+    assert broken is not None
+    assert broken.severity == "major"
+
+
 def test_a_kept_limit_is_no_breach():
     """A demand inside every limit breaks none."""
     assert breach(bound(demand=5.0, typical=10.0, guaranteed=9.0, absolute=12.0)) is None
@@ -76,6 +95,7 @@ def test_a_kept_limit_is_no_breach():
 def test_the_limit_itself_is_kept():
     """A demand equal to its limit, but for rounding, is inside."""
     assert breach(bound(demand=9.0 * (1 + 1e-12), guaranteed=9.0)) is None
+    assert breach(bound(False, demand=0.0, guaranteed=0.0)) is None
     assert breach(bound(demand=9.0 * (1 + 1e-6), guaranteed=9.0)) is not None
 
 
@@ -103,7 +123,14 @@ def test_a_lower_side_is_broken_from_above():
 
 @pytest.mark.parametrize(
     ("overrun", "severity"),
-    [(0.19, "minor"), (0.21, "major"), (0.99, "major"), (1.01, "critical")],
+    [
+        (0.19, "minor"),
+        (0.2, "major"),
+        (0.21, "major"),
+        (0.99, "major"),
+        (1.0, "critical"),
+        (1.01, "critical"),
+    ],
 )
 def test_softening_by_size(overrun, severity):
     """Below 2 % of the span minor, below 10 % at most major, beyond as the table says."""
@@ -130,6 +157,14 @@ def test_the_level_outside_keeps_its_weight():
     assert inside is not None
     assert outside is not None
     assert (inside.severity, outside.severity) == ("minor", "critical")
+
+
+@pytest.mark.parametrize("level", [9.5, 10.0])
+def test_a_level_just_inside_the_limit_or_on_it_is_not_outside(level):
+    """A tenth of a volt more than the limit is still half a per cent of the span."""
+    broken = breach(bound(demand=10.1, typical=10.0, level=level, span=20.0))
+    assert broken is not None
+    assert broken.severity == "minor"
 
 
 def test_zero_scale_on_a_single_supply_is_softened():
@@ -218,3 +253,27 @@ def test_far_beyond_what_is_guaranteed(fields, basis, severity):
     assert broken is not None
     assert far_beyond(limits, broken, 2.0).severity == severity
     assert far_beyond(limits, broken, 1e9) == broken
+
+
+def test_zero_scale_stands_on_whatever_the_lower_rail_is():
+    """At -5 V as at ground."""
+    resting = bound(False, demand=-5.0, level=-5.0, typical=-4.98, absolute=-5.0)
+    broken = breach(resting, scale=5.0)
+    assert broken is not None
+    assert broken.severity == "minor"
+
+
+@pytest.mark.parametrize(("level", "severity"), [(0.005, "minor"), (0.02, "critical")])
+def test_zero_scale_is_a_thousandth_of_the_span(level, severity):
+    """5 mV of 10 V rest on the rail, 20 mV do not."""
+    resting = bound(False, demand=0.0, level=level, span=10.0, typical=0.05, absolute=0.0)
+    broken = breach(resting, scale=5.0)
+    assert broken is not None
+    assert broken.severity == severity
+
+
+def test_what_nothing_moves_and_does_not_rest_is_measured_against_nothing():
+    """A level that is not known rests on no rail, so a small excess is not softened by size."""
+    unknown = breach(bound(False, demand=0.0, typical=0.02, absolute=0.0), scale=5.0)
+    assert unknown is not None
+    assert unknown.severity == "critical"

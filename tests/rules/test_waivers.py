@@ -1,6 +1,7 @@
 """Waivers: what they accept, when they stop, and those that match nothing."""
 
 import datetime as dt
+import ntpath
 from pathlib import Path
 
 import msgspec
@@ -264,3 +265,52 @@ class TestStale:
             self.SETTINGS, severities={"netlist-waiver-stale": "minor"}
         )
         assert {f.severity for f in stale(graver, ())} == {"minor"}
+
+    def test_it_has_the_form_of_any_finding(self):
+        """Family, basis and subject; what a waiver does not name stays empty."""
+        first, second = stale(self.SETTINGS, ())
+        assert (first.family, first.basis) == ("netlist", ("user",))
+        assert (first.designators, first.nets) == (("XU3",), ("LAMP",))
+        assert (second.designators, second.nets) == ((), ())
+
+
+def test_all_findings_of_a_run_come_out_and_all_that_matched_is_told():
+    """Waived or not, with what follows from them; dates count for consequences as well."""
+    clipped = msgspec.structs.replace(
+        TestConsequences.CLIPPED, designators=("XU4",), location=Location(DECK, 20)
+    )
+    cause = msgspec.structs.replace(LAMP, consequences=(clipped,))
+    other = msgspec.structs.replace(LAMP, rule="bias-level", family="bias")
+    waivers = (
+        waiver(),
+        waiver(rule="headroom-output", until=DAY),
+        waiver(rule="bias-level", until=DAY),
+        waiver(rule="drive-power"),
+    )
+    found, matched = apply((cause, other), Settings(waivers=waivers), DECK, DAY)
+    assert [(f.rule, f.waiver is not None, len(f.consequences)) for f in found] == [
+        ("bias-level", True, 0),
+        ("drive-current", True, 1),
+    ]
+    assert found[1].consequences[0].waiver is not None
+    assert matched == {0, 1, 2}
+
+
+def test_an_accepted_margin_of_nothing_holds_for_nothing():
+    """The limit itself is reached, as was accepted."""
+    made, _ = judged(msgspec.structs.replace(LAMP, margin=0.0), waiver(accepted=0.0))
+    assert made.waiver is not None
+
+
+def test_a_waiver_stated_nowhere_is_told_without_a_place():
+    """One made by a program has no line."""
+    made, _ = judged(LAMP, waiver(until=dt.date(2027, 1, 30), location=None))
+    assert made.message.endswith("The waiver (lamp test only, 10 ms) expired on 2027-01-30.")
+
+
+def test_a_deck_on_another_drive_is_among_no_files(monkeypatch):
+    """On Windows there is no way from the settings' drive to it, whatever the glob."""
+    monkeypatch.setattr("os.path.relpath", ntpath.relpath)
+    file = "C:/station/railguard.toml"
+    made, matched = judged(LAMP, waiver(file="**"), deck="D:/old/driver.cir", file=file)
+    assert (made.waiver, matched) == (None, frozenset())

@@ -233,7 +233,7 @@ def judge_across(rail: Rail, limits: Limits, design: Design) -> Iterator[Outcome
     yield finding(
         "decoupling-rail-to-rail-only",
         "minor",
-        f"Rail {listed(nets)} of {listed(packages)} "
+        f"{'Rail' if len(nets) == 1 else 'Rails'} {listed(nets)} of {listed(packages)} "
         f"{'is' if len(nets) == 1 else 'are'} decoupled only by "
         f"{listed(c.designator for c in across)} to the other rail, not to {return_net(rail)}.",
         designators=packages,

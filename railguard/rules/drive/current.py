@@ -49,7 +49,7 @@ def judge_current(stage: Stage, limits: Limits, design: Design) -> Iterator[Outc
     sides = []
     for verb, bound in bounds.items():
         reserve = limits["reserve-share"] * (bound.guaranteed or bound.typical or 0.0)
-        broken = breach(bound, reserve, cap=cap_of(stage))
+        broken = breach(bound, reserve)
         if broken is not None:
             broken = far_beyond(bound, broken, limits["far-factor"])
             broken = replace(broken, severity=capped(broken.severity, cap_of(stage)))

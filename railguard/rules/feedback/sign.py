@@ -178,10 +178,11 @@ def _bare_comparator(stage: Stage) -> Outcome:
 def _open(stage: Stage) -> Iterator[Outcome]:
     if stage.feedback.elements:
         severity: Severity = "major"
+        verb = "passes" if len(stage.feedback.elements) == 1 else "pass"
         message = (
             f"{stage.schematic} has no feedback at DC: {listed(stage.feedback.elements)} between "
-            "its output and its inverting input pass no direct current, and no other stage holds "
-            "its level. Offset and bias current take the output to a rail."
+            f"its output and its inverting input {verb} no direct current, and no other stage "
+            "holds its level. Offset and bias current take the output to a rail."
         )
         remedy = (
             f"Fit a resistor from net {stage.output.net} to net {stage.inputs.minus.net}, ten "

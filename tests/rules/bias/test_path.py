@@ -88,3 +88,52 @@ def test_the_analysis_may_say_why():
 def test_comparators_are_judged_and_unused_channels_are_not(use, count):
     """A comparator needs its levels too; unused channels have a rule of their own."""
     assert len(findings(NO_DC_PATH, with_pins(plus="floating", use=use))) == count
+
+
+@pytest.mark.parametrize(
+    ("pins", "fields", "message", "remedy"),
+    [
+        (
+            {"plus": "held-by-own-output"},
+            {},
+            "U1's non-inverting input (net in) has a DC path only to the stage's own output, which "
+            "follows it. Its bias current of 200 pA charges the net until the output stands at a "
+            "rail.",
+            "Fit 100 kΩ from in to 0.",
+        ),
+        (
+            {"plus": "floating"},
+            {"family": None},
+            "U1's non-inverting input (net in) has no DC path: only C3 stands on it. Its bias "
+            "current charges the net until the output stands at a rail.",
+            "Fit 100 kΩ from in to 0.",
+        ),
+        (
+            {"plus": "floating"},
+            {"feedback": Feedback()},
+            "U1's non-inverting input (net in) has no DC path: only C3 stands on it. Its bias "
+            "current of 200 pA charges the net until the output stands at a rail.",
+            "Fit 100 kΩ from in to 0.",
+        ),
+        (
+            {"minus": "floating"},
+            {},
+            "U1's inverting input (net n) has no DC path: only C4 stands on it. Its bias current "
+            "of 200 pA charges the net until the output stands at a rail.",
+            "Fit 100 kΩ from n to 0.",
+        ),
+    ],
+)
+def test_the_sentence_and_what_to_fit(pins, fields, message, remedy):
+    """A resistor to a potential; in the feedback only where that lacks one at DC."""
+    (found,) = findings(NO_DC_PATH, with_pins(**pins, **fields))
+    assert (found.message, found.remedy) == (message, remedy)
+
+
+@pytest.mark.parametrize(("path", "hangs"), [(("J1", "TP2"), " (J1 and TP2)"), ((), "")])
+def test_an_open_input_says_at_what_it_leaves(path, hangs):
+    """With the designators it hangs on, where there are any."""
+    one = stage(inputs=inputs(plus=pin("in", state="open", path=path)))
+    (point,) = open_points(NO_DC_PATH, one)
+    assert (point.subject, point.rule) == ("XU1", "bias-no-dc-path")
+    assert point.why == (f"its non-inverting input (net in) leaves what the netlist shows{hangs}")

@@ -34,12 +34,16 @@ def test_beyond_what_is_known_to_be_given():
     assert (found.demand, found.limit, found.unit) == (6e-3, 5e-3, "A")
 
 
-def test_both_directions_make_one_finding():
+@pytest.mark.parametrize(("worse", "other"), [("sink", "source"), ("source", "sink")])
+def test_both_directions_make_one_finding(worse, other):
     """The worse one leads."""
-    (found,) = findings(CURRENT, giving(6e-3, 20e-3))
+    (found,) = findings(CURRENT, giving(**{worse: 20e-3, other: 6e-3}))
     assert found.severity == "critical"
-    assert found.message.startswith("U1 must sink 20 mA")
-    assert "It must source 6 mA as well, against 5 mA." in found.message
+    assert found.nets == ("out",)
+    assert found.message == (
+        f"U1 must {worse} 20 mA into RL; a TL072 gives 10 mA (typical, data sheet), so 10 mA is "
+        f"missing. It must {other} 6 mA as well, against 5 mA."
+    )
 
 
 @pytest.mark.parametrize(
@@ -68,8 +72,13 @@ def test_a_corner_of_tolerances_is_told_as_such():
 def test_a_reserve_can_be_asked_for():
     """By default the known current may be used up; a share to be left is the user's to set."""
     assert findings(CURRENT, giving(4.8e-3)) == []
+    assert findings(CURRENT, giving(4.4e-3), reserve_share=0.1) == []
     (found,) = findings(CURRENT, giving(4.8e-3), reserve_share=0.1)
     assert found.severity == "minor"
+    assert found.message == (
+        "U1 must source 4.8 mA into RL; a TL072 is known to give 5 mA (guaranteed, data sheet): "
+        "200 µA is left."
+    )
 
 
 def test_an_unknown_device_is_minor_and_not_checked():
@@ -78,6 +87,46 @@ def test_an_unknown_device_is_minor_and_not_checked():
     one = unknown_device(current=Current(source=amps(0.1, **practice), sink=amps(**practice)))
     assert [f.severity for f in findings(CURRENT, one)] == ["minor"]
     assert len(open_points(CURRENT, one)) == 1
+
+
+def test_a_device_nobody_knows_is_minor_however_it_is_limited():
+    """Limits that an engine measured are no data sheet's."""
+    one = unknown_device(current=Current(source=amps(0.1, typical=None), sink=amps()))
+    assert [f.severity for f in findings(CURRENT, one)] == ["minor"]
+
+
+@pytest.mark.parametrize(("demand", "severity"), [(14e-3, "major"), (16e-3, "critical")])
+def test_far_beyond_a_guaranteed_current_where_no_typical_one_is_listed(demand, severity):
+    """Three times what it is known to give is as bad as beyond a typical limit."""
+    one = stage(current=Current(source=amps(demand, typical=None), sink=amps()))
+    (found,) = findings(CURRENT, one)
+    assert found.severity == severity
+    assert open_points(CURRENT, one) == []
+
+
+@pytest.mark.parametrize(
+    ("load", "demand", "guaranteed", "into"),
+    [
+        (1000.0, 6.1e-3, 5e-3, "raise what the output works into from 1 kΩ to at least 1.3 kΩ"),
+        (None, 6.1e-3, 5e-3, ""),
+        (0.0, 6.1e-3, 5e-3, ""),
+        (1000.0, 6.1e-3, 0.0, ""),
+    ],
+)
+def test_what_to_do_about_too_much_current(load, demand, guaranteed, into):
+    """A load that fits, where one is known that could; a buffer or another device in any case."""
+    source = amps(demand, guaranteed=guaranteed)
+    (found,) = findings(CURRENT, stage(current=Current(source=source, sink=amps(), load=load)))
+    choices = [f"{into}, its feedback network included"] if into else []
+    choices += ["put a buffer behind the stage", "fit a device that gives more current"]
+    text = ", or ".join(choices)
+    assert found.remedy == f"{text[0].upper()}{text[1:]}."
+
+
+def test_an_output_into_nothing_named():
+    """The sentence does without."""
+    (found,) = findings(CURRENT, stage(current=Current(source=amps(6e-3), sink=amps())))
+    assert found.message.startswith("U1 must source 6 mA; a TL072")
 
 
 def test_an_unknown_current_is_not_checked():
@@ -93,6 +142,7 @@ def test_unlisted_currents_are_named():
     """A device without current figures says which to add."""
     bare = amps(1e-3, typical=None, guaranteed=None)
     (point,) = open_points(CURRENT, stage(current=Current(source=bare, sink=bare)))
+    assert point.why == "the output current of TL072 is not in the catalogue"
     assert "source_current" in point.add
 
 

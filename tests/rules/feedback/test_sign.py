@@ -106,7 +106,7 @@ def test_an_integrator_without_a_resistor_is_major():
     one = stage(loop=Loop(dc="open"), feedback=Feedback(elements=("C2",)))
     (found,) = findings(OPEN, one)
     assert found.severity == "major"
-    assert "C2 between its output and its inverting input pass no direct current" in found.message
+    assert "C2 between its output and its inverting input passes no direct current" in found.message
 
 
 def test_a_level_another_stage_holds_is_sound():
