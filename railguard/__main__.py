@@ -1,10 +1,15 @@
 """Where a run begins: `railguard`, and `python -m railguard`, which is what a git hook runs."""
 
+import os
 import sys
+
+from railguard.threads import ONE_THREAD
 
 
 def main() -> None:
     """Run the command line; a commit that concerns no netlist pays for no import."""
+    for name, count in ONE_THREAD.items():
+        os.environ.setdefault(name, count)
     if sys.argv[1:3] == ["hook", "run"] and not _concerned():
         return
     from railguard.commands.main import main as command_line

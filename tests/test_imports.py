@@ -14,7 +14,7 @@ import railguard
 ROOT = Path(railguard.__file__).parent
 
 ORDER = (
-    ("location", "words", "errors", "notices", "units"),
+    ("location", "words", "errors", "notices", "units", "threads"),
     ("settings", "devices", "deck"),
     ("circuit",),
     ("analysis",),

@@ -139,23 +139,30 @@ def local_betas(
 
     passive  the network with every output held
     """
-    found: dict[int, tuple[float, Complex]] = {}
+    inner = [
+        (column, branch, amplifier)
+        for column, amplifier in enumerate(amplifiers)
+        if (branch := passive.outputs.get(amplifier.designator, -1)) >= 0
+        and swept.dc[column] / open_loop_gain(amplifier) > MULTIPLIED
+    ]
+    if not inner:
+        return {}
     hertz = np.concatenate([[0.0], swept.hertz])
-    for column, amplifier in enumerate(amplifiers):
-        branch = passive.outputs.get(amplifier.designator, -1)
-        if branch < 0 or swept.dc[column] / open_loop_gain(amplifier) <= MULTIPLIED:
-            continue
-        unit = np.zeros(passive.size, dtype=np.complex128)
-        unit[branch] = 1.0
-        beta = np.zeros(len(hertz), dtype=np.complex128)
-        for place, f in enumerate(hertz):
-            x = factor(passive, float(f)).forward(unit)
+    units = np.zeros((passive.size, len(inner)), dtype=np.complex128)
+    for place, (_, branch, _) in enumerate(inner):
+        units[branch, place] = 1.0
+    betas = np.zeros((len(hertz), len(inner)), dtype=np.complex128)
+    for step, f in enumerate(hertz):
+        x = factor(passive, float(f)).forward(units)
+        for place, (_, _, amplifier) in enumerate(inner):
             for net, sign in ((amplifier.minus, 1.0), (amplifier.plus, -1.0)):
                 row = passive.row(net)
-                beta[place] += sign * x[row] if row >= 0 else 0.0
-        if beta[0].real > OPEN_BETA:
-            found[column] = float(beta[0].real), beta[1:]
-    return found
+                betas[step, place] += sign * x[row, place] if row >= 0 else 0.0
+    return {
+        column: (float(beta[0].real), beta[1:])
+        for (column, _, _), beta in zip(inner, betas.T, strict=True)
+        if beta[0].real > OPEN_BETA
+    }
 
 
 def known_parasitics(amplifiers: Iterable[Amplifier]) -> dict[str, Parasitics]:

@@ -89,6 +89,20 @@ class Parasitics(msgspec.Struct, frozen=True):
     output_ohms: float
 
 
+class Columns(NamedTuple):
+    """Two matrices of one shape by column (CSC), their entries at the same places.
+
+    g, c    values, shape (entries,)
+    rows    of each entry, ascending in its column
+    starts  place of each column's first entry, and the number of entries
+    """
+
+    g: Real
+    c: Real
+    rows: npt.NDArray[np.int32]
+    starts: npt.NDArray[np.int32]
+
+
 class _Passive(NamedTuple):
     """What a network holds before its amplifiers are stamped: the same however they are taken."""
 
@@ -217,6 +231,19 @@ class Network:
     def c(self) -> Real:
         """The capacitances and inductances, dense."""
         return _dense(self._c, self.size)
+
+    @cached_property
+    def columns(self) -> Columns:
+        """G and C by column, for sparse solving at any frequency."""
+        size, count = self.size, len(self._g)
+        rows, columns, values = (np.array(part) for part in zip(*self._g, *self._c, strict=True))
+        places, at = np.unique(columns * size + rows, return_inverse=True)
+        return Columns(
+            g=np.bincount(at[:count], values[:count], len(places)).astype(np.float64),
+            c=np.bincount(at[count:], values[count:], len(places)).astype(np.float64),
+            rows=(places % size).astype(np.int32),
+            starts=np.searchsorted(places // size, np.arange(size + 1)).astype(np.int32),
+        )
 
     def entries(self) -> tuple[Entries, Entries]:
         """Return G and C as (row, column, value) entries, those of one place to be added up."""

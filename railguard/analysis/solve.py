@@ -52,11 +52,11 @@ class _Sparse:
         from scipy.sparse import csc_matrix
         from scipy.sparse.linalg import splu
 
-        g, c = network.entries()
-        rows, columns, values = (np.array(part) for part in zip(*g, *c, strict=True))
-        values = values.astype(np.complex128)
-        values[len(g) :] *= s
-        matrix = csc_matrix((values, (rows, columns)), shape=(network.size, network.size))
+        held = network.columns
+        matrix = csc_matrix(
+            (held.g + complex(s) * held.c, held.rows, held.starts),
+            shape=(network.size, network.size),
+        )
         self._size = network.size
         try:
             self._factor = splu(matrix)
@@ -200,21 +200,25 @@ def return_ratios(network: Network, hertz: np.ndarray[tuple[int], np.dtype[np.fl
     for column, row in enumerate(rows):
         if row >= 0:
             picks[row, column] = 1.0
-    result = np.zeros((len(hertz), len(rows)), dtype=np.complex128)
+    columns = np.arange(len(rows))
+    plus = np.array([network.row(a.plus) for a in network.amplifiers], dtype=np.int64)
+    minus = np.array([network.row(a.minus) for a in network.amplifiers], dtype=np.int64)
     if network.size <= DENSE_LIMIT:
         solved = _solved_at(network, hertz, picks)
+        z = np.where(plus >= 0, solved[:, plus, columns], 0.0)
+        z = z - np.where(minus >= 0, solved[:, minus, columns], 0.0)
     else:
-        solved = np.stack([factor(network, float(f)).forward(picks) for f in hertz])
-    for column, amplifier in enumerate(network.amplifiers):
-        if rows[column] < 0 or amplifier.designator in network.forced:
-            continue
-        plus, minus = network.row(amplifier.plus), network.row(amplifier.minus)
-        z = np.zeros(len(hertz), dtype=np.complex128)
-        if plus >= 0:
-            z += solved[:, plus, column]
-        if minus >= 0:
-            z -= solved[:, minus, column]
-        # A loop whose break leaves nothing to solve has no transmission of its own.
-        rest = 1.0 + z
-        result[:, column] = np.where(rest == 0, 0.0, -z / np.where(rest == 0, 1.0, rest))
-    return result
+        z = np.zeros((len(hertz), len(rows)), dtype=np.complex128)
+        for place, f in enumerate(hertz):
+            x = factor(network, float(f)).forward(picks)
+            z[place] = np.where(plus >= 0, x[plus, columns], 0.0)
+            z[place] -= np.where(minus >= 0, x[minus, columns], 0.0)
+    # A loop whose break leaves nothing to solve has no transmission of its own.
+    rest = 1.0 + z
+    result = np.where(rest == 0, 0.0, -z / np.where(rest == 0, 1.0, rest))
+    idle = [
+        r < 0 or a.designator in network.forced
+        for r, a in zip(rows, network.amplifiers, strict=True)
+    ]
+    result[:, idle] = 0.0
+    return np.asarray(result)

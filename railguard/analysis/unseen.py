@@ -265,12 +265,13 @@ def spoiled(answers: Answers, things: tuple[Unseen, ...], mid: Factor | None) ->
 def _moved(
     adjoint: Complex, things: tuple[Unseen, ...]
 ) -> np.ndarray[tuple[int, int], np.dtype[np.bool_]]:
-    effect = np.zeros((len(adjoint), len(things)))
-    for k, thing in enumerate(things):
-        total = np.zeros(len(adjoint), dtype=np.complex128)
-        for row, sign in thing.rows:
-            total += sign * adjoint[:, row]
-        effect[:, k] = np.abs(total)
+    total = np.zeros((len(adjoint), len(things)), dtype=np.complex128)
+    # A thing has one or two entries: the first of all of them at once, then the second.
+    for turn in range(max(len(thing.rows) for thing in things)):
+        which = [k for k, thing in enumerate(things) if len(thing.rows) > turn]
+        rows, signs = zip(*(things[k].rows[turn] for k in which), strict=True)
+        total[:, which] += adjoint[:, rows] * np.array(signs)
+    effect = np.abs(total)
     width = len(QUANTITIES)
     is_current = np.arange(len(adjoint)) % width == QUANTITIES.index("current")
     volts = np.array([t.volts for t in things])

@@ -21,6 +21,7 @@ import msgspec
 from railguard.audit.child import OUT_OF_MEMORY
 from railguard.audit.wire import Began, Message, Outcome, Plan, Ready, Task
 from railguard.errors import RailguardError
+from railguard.threads import ONE_THREAD
 
 AHEAD = 6
 """Files handed to a worker before it has answered: enough that it never waits for the parent."""
@@ -35,10 +36,6 @@ TICK = 0.25
 """Seconds after which `results` hands over None where nothing came."""
 
 START_SECONDS = 120.0
-
-_ONE_THREAD = ("OMP_NUM_THREADS", "OPENBLAS_NUM_THREADS", "MKL_NUM_THREADS")
-"""A worker is one of several: linear algebra on many threads would only get in their way."""
-
 
 _KEPT_MEMORY = {"MALLOC_MMAP_THRESHOLD_": "67108864", "MALLOC_TRIM_THRESHOLD_": "134217728"}
 """glibc: keep what a review has used for the next one, instead of asking for fresh pages."""
@@ -205,4 +202,4 @@ class Pool:
 
 
 def _environment() -> dict[str, str]:
-    return {**os.environ, **dict.fromkeys(_ONE_THREAD, "1"), **_KEPT_MEMORY}
+    return {**os.environ, **ONE_THREAD, **_KEPT_MEMORY}

@@ -74,6 +74,7 @@ def _printed(stream: IO[str] | None, run: Callable[["_Printer"], None]) -> bytes
         emoji=False,
         width=80 if stream is None or not out.isatty() else None,
     )
+    console.size = console.size  # asked of the terminal once, not for every line
     run(_Printer(console, getattr(out, "encoding", None) or "utf-8"))
     return out.getvalue().encode() if isinstance(out, io.StringIO) else b""
 
@@ -131,9 +132,13 @@ class _Printer:
         """Print wrapped text, its label hanging before it."""
         lead = " " * indent + (f"{label:<{max(8, len(label) + 2)}}" if label else "")
         mark = "dim" if label else ""
+        whole = Text()
         for row in wrapped(self.clean(text), self.width - len(lead)):
-            self.console.print(Text.assemble((lead, mark), (row, style)), soft_wrap=True)
+            whole.append("\n" if whole else "")
+            whole.append(lead, mark).append(row, style)
             lead, mark = " " * len(lead), ""
+        if whole:
+            self.console.print(whole, soft_wrap=True)
 
     # ------------------------------------------------------------------ parts
 
