@@ -166,6 +166,7 @@ class Trial:
             if any(report.failed for report in reports):
                 raise SystemExit(f"{item.nodeid} fails without any change")
         caches = list(_caches())
+        gc.freeze()  # the forks then leave the pages of what is there alone
         killers: Counter[int] = Counter()
         for done, mutant in enumerate(self.mutants, 1):
             tests = self._tests(mutant, killers)
