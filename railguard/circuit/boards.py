@@ -117,6 +117,8 @@ def component(names: Names, name: str, rest: Items, line: Line, kind: str) -> li
             )
         ]  # fmt: skip
     ohms = None
+    if kind == "link" and len(nets) > 2 and (prefix_of(name) == "NT" or _THREE_PADS in value):
+        return _several_pads(name, nets, value, fitted, line)
     if kind == "link":
         number = read_number(value, "R")
         ohms = number.value if number and number.value < 10 and kind_of(name) == "link" else None
@@ -127,4 +129,30 @@ def component(names: Names, name: str, rest: Items, line: Line, kind: str) -> li
             designator=name, nets=nets, value=ohms,
             model=value, fitted=fitted, location=place,
         )
+    ]  # fmt: skip
+
+
+_THREE_PADS = "_3_"
+"""In the value of a jumper of three pads, as KiCad names them: SolderJumper_3_Bridged12."""
+
+
+def _several_pads(
+    name: str, nets: tuple[str, ...], value: str, fitted: bool, line: Line
+) -> list[Element]:
+    """Join all pads of a net tie, and those of a jumper that its value says are bridged.
+
+    Where it says none, which are joined is settled on the board and not in the netlist.
+    """
+    bridged = value.rpartition("Bridged")[2]
+    if prefix_of(name) == "NT" or bridged == "123":
+        pairs: tuple[tuple[str, ...], ...] = tuple((nets[0], other) for other in nets[1:])
+    else:
+        pairs = (nets[:2],) if bridged == "12" else (nets,)
+    return [
+        Element(
+            kind="link" if len(pair) == 2 else "opaque",
+            designator=f"{name}.{number}" if len(pairs) > 1 else name,
+            nets=pair, model=value, fitted=fitted, location=line.location,
+        )
+        for number, pair in enumerate(pairs, 1)
     ]  # fmt: skip

@@ -1,9 +1,21 @@
 """Heat, and the case it is judged in."""
 
+import msgspec
 import pytest
 
-from railguard.analysis.thermal import case_of
+from railguard.analysis.stage import Bound, Case, Current, Output, Range, Supply
+from railguard.analysis.thermal import (
+    bias_current,
+    case_of,
+    dissipation,
+    junction,
+    offset_current,
+    package_heat,
+)
 from railguard.devices import catalogue
+from railguard.devices.model import Figure
+from railguard.settings.model import Settings
+from tests.rules.stages import stage as made
 
 LMV = catalogue.load().device("LMV358")
 BUFFER = "VIN in 0 5\nXU1 in out vp vn out {device}\nRL out 0 1k"
@@ -49,3 +61,128 @@ def test_worst_level_of_a_grounded_load_is_half_the_rail(stage):
     found = stage(cards)
     quiescent = 30.0 * found.family.supply_current.best
     assert found.dissipation - quiescent == pytest.approx(56.25e-3, rel=0.01)
+
+
+FET = msgspec.structs.replace(
+    catalogue.load().match("TL072").device,
+    bias_current=Figure(50e-12, 200e-12),
+    offset_current=Figure(20e-12, 100e-12),
+)
+
+
+def ambient(high):
+    """Return settings of a range of ambient temperatures."""
+    return Settings(ambient=(-20.0, high))
+
+
+@pytest.mark.parametrize(
+    ("high", "technology", "factor"),
+    [
+        (25.0, "jfet", 1.0),
+        (35.0, "jfet", 2.0),
+        (65.0, "cmos", 16.0),
+        (0.0, "jfet", 1.0),
+        (65.0, "bipolar", 1.0),
+    ],
+)
+def test_the_bias_current_of_a_field_effect_input_doubles_every_ten_kelvin(
+    high, technology, factor
+):
+    """From 25 degrees up; that of a bipolar input is taken as it stands."""
+    device = msgspec.structs.replace(FET, technology=technology)
+    assert bias_current(device, ambient(high)) == pytest.approx(factor * 200e-12)
+
+
+def test_a_bias_current_listed_over_temperature_counts_above_room():
+    """It is the sheet's own; it never makes the current smaller than at room temperature."""
+    for hot, expected in ((5e-9, 5e-9), (100e-12, 200e-12)):
+        figure = Figure(50e-12, 200e-12, hot)
+        device = msgspec.structs.replace(FET, bias_current=figure)
+        assert bias_current(device, ambient(85.0)) == pytest.approx(expected)
+        assert bias_current(device, ambient(25.0)) == pytest.approx(200e-12)
+        assert bias_current(device, Settings()) == pytest.approx(200e-12)
+
+
+def test_a_bias_current_nobody_lists_counts_as_none():
+    """At any temperature."""
+    device = msgspec.structs.replace(FET, bias_current=Figure())
+    assert [bias_current(device, ambient(high)) for high in (25.0, 85.0)] == [0.0, 0.0]
+
+
+def test_the_offset_current_grows_as_the_bias_current_does():
+    """Half of it cold, half of it hot."""
+    assert offset_current(FET, ambient(25.0)) == pytest.approx(100e-12)
+    assert offset_current(FET, ambient(45.0)) == pytest.approx(400e-12)
+
+
+@pytest.mark.parametrize(
+    ("offset", "bias"), [(None, 200e-12), (100e-12, None), (200e-12, 200e-12), (300e-12, 200e-12)]
+)
+def test_an_offset_current_that_says_nothing(offset, bias):
+    """Not listed, or no smaller than the bias current: the two inputs stand for themselves."""
+    device = msgspec.structs.replace(
+        FET, offset_current=Figure(None, offset), bias_current=Figure(None, bias)
+    )
+    assert offset_current(device, Settings()) is None
+
+
+def test_a_package_has_the_heat_of_its_channels():
+    """Together, each package for itself; one channel that is not known makes the package so."""
+    watts = {"XU1A": 0.1, "XU1B": 0.2, "XU2A": 0.3, "XU2B": None, "XU3A": None, "XU3B": 0.1}
+    stages = [made(name, package=name[1:3], dissipation=heat) for name, heat in watts.items()]
+    assert package_heat(stages) == {"U1": pytest.approx(0.3), "U2": None, "U3": None}
+    assert package_heat([]) == {}
+
+
+def test_the_junction_stands_above_the_hottest_ambient():
+    """100 K/W and 0.2 W are 20 K; without a case or its heat there is no number."""
+    case = Case("SOIC-8", 100.0)
+    assert junction(case, 0.2, ambient(60.0)) == pytest.approx(80.0)
+    assert junction(case, 0.2, Settings()) == pytest.approx(45.0)
+    assert junction(None, 0.2, Settings()) is None
+    assert junction(case, None, Settings()) is None
+
+
+@pytest.mark.parametrize(
+    ("cases", "channels", "name"),
+    [
+        ({"TO-99": 200.0, "DIP-14": 300.0}, 2, "TO-99"),  # a can has eight pins, not ninety-nine
+        ({"TO-99": 200.0, "DIP-14": 100.0}, 4, "DIP-14"),
+        ({"DIP": 200.0, "SOIC-16": 300.0}, 1, "DIP"),  # no number: taken for eight
+        ({"SC70-5": 400.0, "SOIC-8": 200.0}, 3, "SC70-5"),  # three in one case: any will do
+        ({"SOIC-14": 100.0}, 2, "SOIC-14"),
+    ],
+)
+def test_the_hottest_case_that_holds_so_many_counts(cases, channels, name):
+    """Where none does, the hottest of all."""
+    device = msgspec.structs.replace(FET, theta=cases)
+    assert case_of(device, channels, "TL072") == Case(name, cases[name])
+
+
+def test_no_case_where_none_is_listed():
+    """Nor for a device nobody knows."""
+    assert case_of(None, 2, "TL072") is None
+    assert case_of(msgspec.structs.replace(FET, theta={}), 2, "TL072") is None
+
+
+@pytest.mark.parametrize(
+    ("low", "high", "level", "amps", "load", "watts"),
+    [
+        # 10 V and -10 V, 1 mA of supply current: 20 mW quiescent
+        (-8.0, 8.0, 0.0, 0.0, None, 0.0),
+        (-8.0, 8.0, 0.0, 0.0, 1000.0, 25e-3),  # sourced: 5 V into 1 kilohm, 5 V left
+        (-8.0, 0.0, 0.0, 0.0, 1000.0, 25e-3),  # sunk
+        (0.0, 2.0, 0.0, 0.0, 1000.0, 16e-3),  # 2 V: 8 V left, 2 mA
+        (0.0, 0.0, 0.0, 3e-3, None, 30e-3),  # 3 mA at rest
+        (0.0, 0.0, 0.0, -3e-3, None, 30e-3),
+        (-50.0, -20.0, -20.0, 3e-3, None, 60e-3),  # beyond the rail it stands at the rail
+    ],
+)
+def test_the_output_stage_at_its_worst(low, high, level, amps, load, watts):
+    """The volts it holds off times the current it gives, whichever way that goes."""
+    device = msgspec.structs.replace(FET, supply_current=Figure(1e-3))
+    supply = Supply(positive=10.0, negative=-10.0)
+    current = Current(source=Bound(upper=True, level=amps), demand_source=1.0)
+    output = Output(net="out", level=level, demand=Range(low, high))
+    found = dissipation(device, supply, output, current, load)
+    assert found == pytest.approx(20e-3 + watts, rel=0.02)

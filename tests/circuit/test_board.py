@@ -102,3 +102,26 @@ def test_card_that_fits_its_letter_stays_one(card, kind):
     cards = f"V9 a 0 5\n.param k=1n\n.model dm d\n.model rm r(r=1k)\n{card}"
     (found,) = [e for n, e in elements(cards).items() if n != "V9"]
     assert found.kind == kind
+
+
+@pytest.mark.parametrize(
+    ("card", "found"),
+    [
+        ("NT1 0 agnd NetTie_2", [("NT1", "link", ("0", "agnd"))]),
+        (
+            "NT1 0 agnd pgnd NetTie_3",
+            [("NT1.1", "link", ("0", "agnd")), ("NT1.2", "link", ("0", "pgnd"))],
+        ),
+        ("JP1 a b c SolderJumper_3_Bridged12", [("JP1", "link", ("a", "b"))]),
+        (
+            "JP1 a b c SolderJumper_3_Bridged123",
+            [("JP1.1", "link", ("a", "b")), ("JP1.2", "link", ("a", "c"))],
+        ),
+        ("JP1 a b c Jumper_3_Open", [("JP1", "opaque", ("a", "b", "c"))]),
+        ("FB1 a b 600R 0805", [("FB1", "link", ("a", "b", "600R"))]),
+    ],
+)
+def test_pads_that_a_tie_or_a_jumper_joins(card, found):
+    """A net tie joins all; a jumper those its value says, and what it does not say is not seen."""
+    made = elements(f"V1 a 0 5\n{card}").values()
+    assert [(e.designator, e.kind, e.nets) for e in made if e.kind != "V"] == found
