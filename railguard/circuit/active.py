@@ -210,11 +210,13 @@ def other(names: Names, items: Items, line: Line, letter: str) -> list[Element]:
             "netlist-node-count",
             f"{name} has {COUNTS[count]} nodes; found {COUNTS[len(words)]}",
         )
+    rest = words[count:]
+    steered = Control(None, (), rest.pop(0)) if letter == "W" and rest else None
     return [
         Element(
             kind=letter if letter in "SWT" else "opaque", designator=name,
-            nets=tuple(words[:count]), model=words[count] if len(words) > count else "",
-            text=" ".join(words[count + 1 :]), location=line.location,
+            nets=tuple(words[:count]), model=rest[0] if rest else "", control=steered,
+            text=" ".join(rest[1:]), location=line.location,
         )
     ]  # fmt: skip
 

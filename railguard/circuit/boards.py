@@ -25,9 +25,10 @@ def is_board(names: Names, name: str, rest: Items, board: str) -> bool:
     keyed = any(isinstance(item, Assignment) for item in rest)
     longer = len(prefix_of(name)) > 1
     match letter:
+        case "W":
+            return not keyed and not _steered(words) and not names.names_model(words, 2)
         case "F" | "H":
-            steered = len(words) >= 4 and words[2][:1].upper() == "V"
-            return not steered and not any(w.lower().startswith("poly") for w in words)
+            return not _steered(words) and not any(w.lower().startswith("poly") for w in words)
         case "U":
             return board == "ic" and bool(words)
         case "B" | "T":
@@ -47,8 +48,13 @@ def is_board(names: Names, name: str, rest: Items, board: str) -> bool:
             return longer and pins and not keyed and not names.names_model(words, 2)
         case _:
             pins = board in ("open", "link") or (board == "ic" and len(words) >= 5)
-            return pins and not keyed
+            return pins and not keyed and not names.names_model(words, 2)
     return False
+
+
+def _steered(words: list[str]) -> bool:
+    """Tell whether the word behind two nodes is a voltage source whose current steers the card."""
+    return len(words) >= 4 and words[2][:1].upper() == "V"
 
 
 def _is_value(names: Names, words: list[str], letter: str) -> bool:

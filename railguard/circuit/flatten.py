@@ -8,10 +8,11 @@ import re
 from collections.abc import Callable, Iterable
 from typing import cast
 
+from railguard.circuit import slips
 from railguard.circuit.bind import bind
 from railguard.circuit.calls import closed as closed_call
 from railguard.circuit.calls import pin_names
-from railguard.circuit.card import Names, UnboundError, counted, unread
+from railguard.circuit.card import Names, UnboundError, unread
 from railguard.circuit.definitions import numbers_of, subcircuits_of
 from railguard.circuit.environment import Bound, Environment
 from railguard.circuit.ground import ELSEWHERE, GROUNDS, likely_ground, no_ground, other_grounds
@@ -65,8 +66,9 @@ def flatten(deck: Deck, closed: Closed = nothing_closed) -> Circuit:
     if expander.over is not None:
         # A circuit cut off somewhere is another circuit: judging it would say wrong things.
         return Circuit(
-            path=deck.path, title=deck.title, problems=(*problems, _over(deck, expander.over)),
-            remarks=deck.remarks, sha256=deck.sha256, files=deck.files, texts=deck.texts,
+            path=deck.path, title=deck.title,
+            problems=(*problems, slips.too_large(deck, expander.over)), remarks=deck.remarks,
+            sha256=deck.sha256, files=deck.files, texts=deck.texts,
         )  # fmt: skip
     if not expander.elements and not (deck.problems or found.problems or expander.problems):
         problems.append(
@@ -97,16 +99,6 @@ def flatten(deck: Deck, closed: Closed = nothing_closed) -> Circuit:
         sha256=deck.sha256,
         files=deck.files,
         texts=deck.texts,
-    )
-
-
-def _over(deck: Deck, line: Line) -> Problem:
-    return Problem(
-        rule="netlist-bound",
-        message=f"The deck expands to more than {deck.bounds.elements:,} elements and instances; "
-        "none of it is judged.",
-        remedy="Review its subcircuits one by one, or raise elements in [bounds] if this is meant.",
-        location=line.location,
     )
 
 
@@ -157,6 +149,7 @@ class _Expander:
         self._aliases: list[str] = []
         self._globals = {name.casefold(): name for name in found.globals}
         self._joined = {a.casefold(): b for a, b in found.connected}
+        self._told: set[tuple[int, str]] = set()
         self._unconnected = 0
         self._instances = 0
         self.over: Line | None = None
@@ -235,7 +228,7 @@ class _Expander:
         try:
             bound = bind(names, scope.items(number, line), line)
         except CardError as error:
-            names.problems.append(self._card(line, error.reason))
+            names.problems.append(slips.unreadable(line, error.reason))
             bound = unread(line)
         except UnboundError as error:
             names.problems.append(error.problem)
@@ -244,7 +237,7 @@ class _Expander:
             name = bound.designator if isinstance(bound, Instance) else bound[0].designator
             first = scope.first.setdefault(name.casefold(), line)
             if first is not line:
-                names.problems[:] = [self._double(name, line, first)]
+                names.problems[:] = [slips.doubled(name, line, first)]
                 bound, names.asked = (), False
         if names.problems:
             if number not in scope.told:
@@ -256,25 +249,6 @@ class _Expander:
         else:
             scope.bound[number] = bound
         return bound
-
-    def _card(self, line: Line, reason: str) -> Problem:
-        name = line.text.split(None, 1)[0]
-        return Problem(
-            rule="netlist-card",
-            message=f"The card {name} cannot be read: {reason}.",
-            location=line.location,
-            designators=(name,),
-        )
-
-    def _double(self, name: str, line: Line, first: Line) -> Problem:
-        return Problem(
-            rule="netlist-duplicate",
-            message=f"{name} stands twice: on line {first.number} and on line {line.number}. "
-            "The first one counts.",
-            remedy="Give one of them another designator.",
-            location=line.location,
-            designators=(name,),
-        )
 
     def net(self, name: str, key: str, prefix: str) -> str:
         """Return the name in the circuit of a net that an instance meets first.
@@ -367,12 +341,19 @@ class _Expander:
         if len(given) != len(ports):
             if not len(ports) - len(definition.optional) <= len(given) <= len(ports):
                 self._add(closed_call(instance, ports, ()), nets, prefix)
-                self._misfit(instance, definition, prefix)
+                self.problems.append(slips.misfit(instance, definition, prefix))
                 return
             given += tuple([definition.optional[p] for p in ports[len(given) :]])
+        if instance.parameters and not definition.defaults.keys() >= instance.parameters.keys():
+            self._unasked(instance, definition, prefix)
         key = definition.key
         if key in active or depth >= self.deck.bounds.subcircuit_depth:
-            self._too_deep(instance, definition, prefix, key in active)
+            most = self.deck.bounds.subcircuit_depth
+            self.problems.append(
+                slips.calls_itself(instance, definition, prefix)
+                if key in active
+                else slips.too_deep(instance, definition, prefix, most)
+            )
             return
         self.scope(
             environment.of_call(definition, instance),
@@ -382,29 +363,10 @@ class _Expander:
             active | {key},
         )
 
-    def _misfit(self, instance: Instance, definition: Scope, prefix: str) -> None:
-        self.problems.append(
-            Problem(
-                rule="netlist-node-count",
-                message=f"{instance.designator} gives {counted(len(instance.nets), 'net')} to the "
-                f"subcircuit {definition.name}, which has {counted(len(definition.ports), 'port')}"
-                ".",
-                remedy="Compare the card with the .subckt line.",
-                location=instance.location,
-                designators=(prefix + instance.designator,),
-            )
-        )
-
-    def _too_deep(self, instance: Instance, definition: Scope, prefix: str, itself: bool) -> None:
-        most = self.deck.bounds.subcircuit_depth
-        why = "calls itself" if itself else f"is nested deeper than {most}"
-        self.problems.append(
-            Problem(
-                rule="netlist-card" if itself else "netlist-bound",
-                message=f"The subcircuit {definition.name} {why} (at {prefix}"
-                f"{instance.designator}); it is left out.",
-                remedy="" if itself else "Raise subcircuit-depth in [bounds] if this is meant.",
-                location=instance.location,
-                designators=(prefix + instance.designator,),
-            )
-        )
+    def _unasked(self, instance: Instance, definition: Scope, prefix: str) -> None:
+        """Say once which parameters of a call its subcircuit never asks for."""
+        for name in instance.parameters:
+            if name == "m" or (definition.key, name) in self._told or definition.asks_for(name):
+                continue
+            self._told.add((definition.key, name))
+            self.problems.append(slips.unasked(name, instance, definition, prefix))

@@ -35,7 +35,5 @@ def _named(element: Element) -> tuple[str, ...]:
         prefix = element.designator.rpartition(".")[0]
         inside = f"{prefix}." if prefix else ""
         return tuple(inside + w for w in element.text.split() if w[:1] in "lL")
-    if element.kind == "W":
-        return ()
     control = element.control
     return (control.element,) if control is not None and control.element else ()

@@ -58,6 +58,18 @@ class Scope:
         """Tell whether a card of this scope calls a subcircuit."""
         return any(line.text[0] in "xX" for line in self.cards)
 
+    def asks_for(self, parameter: str) -> bool:
+        """Tell whether a parameter is in the header or anywhere in the body, inner headers too."""
+        if parameter in self.defaults or parameter in self.parameters:
+            return True
+        texts = [line.text for line in self.cards]
+        texts += [text for text, _ in self.parameters.values()]
+        texts += [line.text for _, _, _, line in self.models.values()]
+        texts += [function.body for function in self.functions.values()]
+        if any(parameter in text.lower() for text in texts):
+            return True
+        return any(inner.asks_for(parameter) for inner in self.subcircuits.values())
+
     def subcircuit(self, name: str) -> "Scope | None":
         """Find a definition from here outwards."""
         scope: Scope | None = self
