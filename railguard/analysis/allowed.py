@@ -56,7 +56,10 @@ def allowed_inputs(solved: Sequence[tuple[Solution, Sequence[Stage]]]) -> dict[s
                 continue
             b = network.right_hand_side(entry.drives)
             at_dc, at_mid = (dc @ b).real, np.abs(mid @ b)
-            reached += _tightened(room, stages, solution, at_dc, at_mid, entry.level)
+            here = _tightened(room, stages, solution, at_dc, at_mid, entry.level)
+            if here and solution.boost.working:
+                _transistors_kept(room, solution, solution.answers.dc.forward(b).real, entry.level)
+            reached += here
         if room.limited and np.isfinite(room.low) and np.isfinite(room.high):
             low, high = float(room.low), float(room.high)
             if low > high:
@@ -70,6 +73,25 @@ def allowed_inputs(solved: Sequence[tuple[Solution, Sequence[Stage]]]) -> dict[s
 def _factors(solution: Solution) -> tuple[Complex, Complex]:
     rows = [int(r) for r in solution.answers.rows]
     return solution.answers.dc.adjoint(rows), solution.mid.adjoint(rows)
+
+
+OUT_OF_SIGHT = 1e6
+"""Volts or amperes of an input from which on a transistor's limit is none of its own."""
+
+
+def _transistors_kept(room: _Room, solution: Solution, moved: Real, start: float) -> None:
+    """Take in what the transistors of a part need to go on working.
+
+    moved  what a unit of the input makes of the DC solution, shape (unknowns,)
+    """
+    x = solution.answers.x
+    for one in solution.boost.working:
+        for limit in one.limits:
+            left = sum(unit * float(x[row]) for row, unit in limit.entries) - limit.least
+            gain = sum(unit * float(moved[row]) for row, unit in limit.entries)
+            if abs(gain) * OUT_OF_SIGHT > abs(left):
+                by = f"{one.carried.designator}, which {limit.why}"
+                room.tighten(left / abs(gain), start, gain < 0, by)
 
 
 def _tightened(

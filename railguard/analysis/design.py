@@ -147,6 +147,7 @@ class _Worker:
             self._exempt,
             clamps,
             self._options,
+            self._circuit.models,
         )
 
     def _drafts(self, part: Part, solution: Solution) -> tuple[Stage, ...]:
@@ -158,6 +159,7 @@ class _Worker:
             part.prepared.unstated,
             self._settings,
             solution.answers,
+            solution.boost,
         )
         things += swinging(solution.turning.unfollowed, part.amplifiers, solution.answers)
         hertz = solution.tops[0] if solution.tops else MID_HERTZ

@@ -4,7 +4,7 @@ import numpy as np
 
 from railguard.analysis.available import Reach, current_reach, output_reach
 from railguard.analysis.bounds import bound
-from railguard.analysis.stage import Bound, Current, Output, Part, Range, Supply, Unknown
+from railguard.analysis.stage import Bound, Carrier, Current, Output, Part, Range, Supply, Unknown
 from railguard.analysis.surroundings import heaviest_load, load_capacitance
 from railguard.analysis.view import View
 
@@ -50,8 +50,13 @@ def output_side(
     if known and high - low > 1e-9:
         slope = max(slope, (amps_high - amps) / (high - level))
 
+    # A transistor takes base current one way only: beyond what is asked nothing is added to it.
+    carriers = view.solution.boost.drives.get(amplifier.designator, ())
+    most = max(amps_high, 0.0), min(view.range("current")[0] if current_known else 0.0, 0.0)
+
     def line(volts: float) -> float:
-        return amps + slope * (volts - level) if known else slope * volts
+        at = amps + slope * (volts - level) if known else slope * volts
+        return min(max(at, most[1]), most[0]) if carriers else at
 
     reaches: dict[bool, Reach | None] = {True: None, False: None}
     if (
@@ -120,7 +125,7 @@ def output_side(
         slew=float(view.answers.slew[q]) if known and view.answers.slew[q] > 0 else None,
         offset=error if known and device is not None else None,
     )
-    return _current(view, current_known, load), output
+    return _current(view, current_known, load, carriers if current_known else ()), output
 
 
 def _rail_ohms(view: View, upper: bool) -> float:
@@ -135,7 +140,7 @@ def _worst_frequency(view: View) -> float | None:
     return float(best.hertz[q]) if best is not None and best.peaks[q] > 0 else None
 
 
-def _current(view: View, known: bool, load: float | None) -> Current:
+def _current(view: View, known: bool, load: float | None, carriers: tuple[Carrier, ...]) -> Current:
     device = view.amplifier.match.device
     amps = view.level("current")
     low, high = view.range("current")
@@ -180,4 +185,5 @@ def _current(view: View, known: bool, load: float | None) -> Current:
         load=load,
         load_capacitance=capacitance,
         into=heaviest_load(view.amplifier, view.solution.ways),
+        carriers=carriers,
     )

@@ -121,7 +121,7 @@ def answer(
     Raises  SolveError
     """
     rows = quantity_rows(network, amplifiers)
-    dc, x = _standing(network, prepared, draws, held)
+    dc, x = standing(network, prepared, draws, held)
     level = picked(x, rows)
     tones = [*prepared.tones]
     for name, clamp in held.items():
@@ -155,16 +155,17 @@ def standing_levels(
     draws: Mapping[str, float],
 ) -> Real:
     """Return the DC value of every quantity, shape (amplifiers * 6,); as `answer`, no tones."""
-    _, x = _standing(network, prepared, draws, {})
+    _, x = standing(network, prepared, draws, {})
     return picked(x, quantity_rows(network, amplifiers))
 
 
-def _standing(
+def standing(
     network: Network,
     prepared: Prepared,
     draws: Mapping[str, float],
     held: Mapping[str, Clamp],
 ) -> tuple[Factor, Real]:
+    """Return the factor at DC and the DC solution; the arguments are those of `answer`."""
     levels = [(d.injection, complex(d.value)) for d in prepared.levels]
     levels += [(name, complex(clamp.middle)) for name, clamp in held.items()]
     b = network.right_hand_side(levels)

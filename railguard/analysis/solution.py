@@ -7,6 +7,8 @@ import msgspec
 import numpy as np
 
 from railguard.analysis.available import output_reach
+from railguard.analysis.boost import Boost, boosted
+from railguard.analysis.boost import Part as Boostable
 from railguard.analysis.corners import Nuisance, Spread, spread
 from railguard.analysis.dcpaths import DcMap
 from railguard.analysis.loops import (
@@ -27,7 +29,7 @@ from railguard.analysis.loops import (
 from railguard.analysis.network import Network, Real, open_loop_gain
 from railguard.analysis.oscillators import Oscillators, oscillators
 from railguard.analysis.rails import rail_tolerance
-from railguard.analysis.ranges import Answers, Clamp, answer, quantity_at, standing_levels
+from railguard.analysis.ranges import Answers, Clamp, quantity_at, standing_levels
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.sampling import Sampled, monte_carlo
 from railguard.analysis.signals import Prepared
@@ -41,7 +43,7 @@ from railguard.analysis.surroundings import (
 )
 from railguard.analysis.thermal import bias_current, offset_current
 from railguard.analysis.uses import charges_itself
-from railguard.circuit.model import GROUND, Element
+from railguard.circuit.model import GROUND, Element, Model
 from railguard.settings.model import Settings
 from railguard.words import Use
 
@@ -66,6 +68,7 @@ class Solution(msgspec.Struct, frozen=True, kw_only=True):
     margins  phase margin by amplifier
     through  amplifiers whose feedback runs through diodes: its sign is known, their range is not
     turning  amplifiers of circuits that move by themselves
+    boost    transistors that are followed, and what they are to the amplifiers
     """
 
     prepared: Prepared
@@ -82,6 +85,7 @@ class Solution(msgspec.Struct, frozen=True, kw_only=True):
     spread: Spread
     mid: Factor
     tops: tuple[float, ...]
+    boost: Boost = Boost()
     exact: bool = False
     sampled: Sampled | None = None
 
@@ -94,12 +98,14 @@ def solve(
     exempt: frozenset[str] = frozenset(),
     clamps: Mapping[str, Clamp] = MappingProxyType({}),
     options: Options | None = None,
+    models: Mapping[str, Model] = MappingProxyType({}),
 ) -> Solution:
     """Solve a circuit, or a part of one.
 
     exempt   designators that have no default tolerance
     clamps   outputs that cannot follow: each is held to what it reaches, at its own frequency
     options  how the corners are worked out
+    models   of the deck, by lower-cased name
 
     Raises  SolveError
     """
@@ -128,15 +134,23 @@ def solve(
     if forced:
         levels = standing_levels(network, amplifiers, prepared, draws)
         held = {**_limits(amplifiers, levels, forced), **clamps}
-    answers = answer(network, amplifiers, prepared, draws, held)
+    network, answers, boost = boosted(
+        Boostable(network, amplifiers, prepared, draws, held, known), models if bent else None
+    )
     tops = tuple(sorted({t.top for t in prepared.tones if t.top > 0}))
+    if boost.working:
+        # What was found to work has its own numbers in the loops too.
+        rest = tuple(e for e in elements if e.designator.partition(" ")[0] not in boost.names)
+        loop_network = Network((*rest, *boost.lines), amplifiers, forced, known)
+        lined = return_ratios(loop_network, np.zeros(1))[0].real
+        signs = np.where([a.designator in forced for a in amplifiers], signs, lined)
     signs, through = _through_diodes(elements, amplifiers, signs)
     swept = sweep(loop_network, tops, signs)
     passive = passive_view(network)
     local = local_betas(passive.network, swept, amplifiers)
     swept = msgspec.structs.replace(swept, local=local) if local else swept
     options = options or Options()
-    off = _spread(answers, prepared, amplifiers, feeds, settings, exempt)
+    off = _spread(answers, prepared, amplifiers, feeds, settings, exempt, boost)
     return Solution(
         exact=options.exact,
         sampled=monte_carlo(answers, off, options.samples, options.seed)
@@ -156,6 +170,7 @@ def solve(
         spread=off,
         mid=factor(network, MID_HERTZ),
         tops=tops,
+        boost=boost,
     )
 
 
@@ -305,8 +320,9 @@ def _spread(
     feeds: Mapping[str, Feed],
     settings: Settings,
     exempt: frozenset[str],
+    boost: Boost,
 ) -> Spread:
-    rails: dict[str, tuple[float, float, bool]] = {}
+    rails = {name: (volts, share, False) for name, (volts, share) in boost.spread.items()}
     volts = {d.injection: d.value for d in prepared.levels}
     holders = {
         net: e.designator

@@ -192,8 +192,31 @@ class Output(msgspec.Struct, frozen=True, kw_only=True):
     offset: float | None = None
 
 
+class Carrier(msgspec.Struct, frozen=True, kw_only=True):
+    """A transistor that an output drives and that works: it carries what the output need not.
+
+    designators  one, or the two of a complementary pair
+
+    carries  peak of its collector or drain current, A
+    takes    peak of its base current, A; 0 for a gate
+    gain     current gain; None for a gate; `gain_stated` where its model says it
+    volts    most from base to emitter or gate to source; `volts_stated` where its model says it
+    """
+
+    designators: tuple[str, ...]
+    carries: float
+    takes: float = 0.0
+    gain: float | None = None
+    gain_stated: bool = True
+    volts: float = 0.0
+    volts_stated: bool = True
+
+
 class Current(msgspec.Struct, frozen=True, kw_only=True):
-    """The output's current. `load` the resistance it sees at DC, `into` the heaviest element."""
+    """The output's current. `load` the resistance it sees at DC, `into` the heaviest element.
+
+    carriers  transistors it drives
+    """
 
     demand_source: float | None = None
     demand_sink: float | None = None
@@ -208,6 +231,7 @@ class Current(msgspec.Struct, frozen=True, kw_only=True):
     load: float | None = None
     load_capacitance: float | None = None
     into: str = ""
+    carriers: tuple[Carrier, ...] = ()
 
 
 class Divider(msgspec.Struct, frozen=True):

@@ -12,6 +12,7 @@ from collections.abc import Iterable
 import msgspec
 import numpy as np
 
+from railguard.analysis.boost import Boost
 from railguard.analysis.dcpaths import is_linear, leaves_sheet
 from railguard.analysis.network import Complex, Network, Real
 from railguard.analysis.ranges import QUANTITIES, Answers
@@ -66,10 +67,12 @@ def unseen_things(
     unstated: Iterable[Unstated],
     settings: Settings,
     answers: Answers,
+    boost: Boost,
 ) -> tuple[Unseen, ...]:
     """Collect everything the netlist does not tell about a solved circuit.
 
-    own  designators of the amplifiers' cards
+    own    designators of the amplifiers' cards
+    boost  the transistors that were followed: they are seen
     """
     network = answers.network
     found: list[Unseen] = []
@@ -90,7 +93,8 @@ def unseen_things(
         if element.kind == "D":
             found += _diode(element, circuit, answers)
         elif element.kind in ("Q", "J", "M"):
-            found += _transistor(element, network)
+            if element.designator not in boost.names:
+                found += _transistor(element, network, boost.left.get(element.designator, ""))
         elif element.kind in ("B", "E", "G", "F", "H") and not is_linear(element):
             found += _expression(element, network, told)
         elif leaves_sheet(element):
@@ -225,11 +229,11 @@ def _breakdown(element: Element, circuit: Circuit) -> float | None:
     return BREAKDOWN_VOLTS if _ZENER.search(element.model) else None
 
 
-def _transistor(element: Element, network: Network) -> list[Unseen]:
+def _transistor(element: Element, network: Network, why: str) -> list[Unseen]:
     return [
         Unseen(
             sort="bend",
-            why=f"it rests on the transistor {element.designator}",
+            why=f"it rests on the transistor {element.designator}" + (f", {why}" if why else ""),
             add="--engine ngspice",
             rows=((network.row(net), 1.0),),
             volts=False,

@@ -47,8 +47,10 @@ class View:
         return all(thing.sort == "signal" for thing in self.spoil(quantity).dc)
 
     def basis(self, quantity: str) -> Basis:
-        """Return where its range comes from: the user's signals or the deck."""
+        """Return where its range comes from: the user's signals, the deck or an assumed gain."""
         q = self.at(quantity)
+        if q in self.solution.boost.assumed:
+            return "assumed"
         moved = any(t.tone.basis == "user" and t.peaks[q] > 0 for t in self.answers.tones)
         return "user" if moved else "netlist"
 

@@ -14,6 +14,7 @@ from railguard.analysis.signals import Prepared, Tone, levels_and_tones, prepare
 from railguard.analysis.stage import Design
 from railguard.analysis.supplies import feeds, supply_nets
 from railguard.analysis.transient import window
+from railguard.analysis.transistors import scoped
 from railguard.circuit.model import GROUND, Control, Element
 from railguard.circuit.sources import Piecewise, Sine, Source
 from railguard.devices.catalogue import Catalogue
@@ -21,7 +22,6 @@ from railguard.engine.figures import figures_of
 from railguard.engine.macromodel import limited
 from railguard.engine.relations import linear_currents, relation
 from railguard.engine.requests import Transient
-from railguard.engine.semiconductors import scoped
 from railguard.engine.write import Placed, Written, write
 
 PERIODS = 3

@@ -61,6 +61,10 @@ def _outcome(
     short = demand - reached if upper else reached - demand
     told = f"{reached:.4g} {figure} of {demand:.4g} {figure}"
     if short > slack:
+        if figure == "A" and done.apart is not None and done.apart <= APART:
+            return Outcome(
+                "refuted", f"ngspice needs {reached:.4g} A to follow, not {demand:.4g} A"
+            )
         return Outcome("confirmed", f"ngspice reaches {told}")
     return _not_met(bound, demand, f"ngspice reaches {told}")
 

@@ -4,6 +4,7 @@ from collections.abc import Mapping
 
 import msgspec
 
+from railguard.analysis.transistors import scoped
 from railguard.circuit.flatten import flatten
 from railguard.circuit.model import Element, Model
 from railguard.deck.files import Deck
@@ -11,7 +12,6 @@ from railguard.deck.lines import Line
 from railguard.devices.model import Match
 from railguard.devices.pinouts import pin_order
 from railguard.engine.relations import Relation, linear_currents, relation
-from railguard.engine.semiconductors import scoped
 from railguard.engine.write import Placed
 from railguard.errors import EngineError, UsageError
 

@@ -12,13 +12,13 @@ import msgspec
 
 from railguard import __version__
 from railguard.analysis.corners import DEFAULT_CAPACITOR, DEFAULT_RESISTOR
-from railguard.analysis.stage import Bound, Rail, Range, Stage
+from railguard.analysis.stage import Bound, Current, Rail, Range, Stage
 from railguard.devices.model import Figure
 from railguard.report.sheet_basis import bases, figure_basis, phase_basis, why
 from railguard.report.words import near
 from railguard.reviewing import DesignReview, Review
 from railguard.rules.finding import Finding
-from railguard.rules.wording import listed, origin
+from railguard.rules.wording import listed, of_gain, of_volts, origin
 from railguard.units import percent, si
 
 PARTS = ("demand", "worst", "rss", "sampled", "available", "guaranteed")
@@ -231,9 +231,20 @@ def _current(stage: Stage) -> dict[str, float | str | None]:
         "available_high": current.source.typical,
         "guaranteed_low": _negative(current.sink.guaranteed),
         "guaranteed_high": current.source.guaranteed,
-        "text": f"mostly into {current.into}" if current.into else "",
+        "text": _where_to(current),
         **bases((current.source, current.sink), stage, "current"),
     }
+
+
+def _where_to(current: Current) -> str:
+    """Say what an output drives: the smallest resistor at it, and its transistors."""
+    words = [f"mostly into {current.into}"] if current.into else []
+    for carrier in current.carriers:
+        takes = f"; base current {si(carrier.takes, 'A')}" if carrier.gain is not None else ""
+        words.append(
+            f"{listed(carrier.designators)} {of_gain(carrier)}{takes}; {of_volts(carrier)}"
+        )
+    return "; ".join(words)
 
 
 def _dynamics(stage: Stage, row: _Maker) -> Iterator[Row]:

@@ -91,12 +91,22 @@ CIRCUITS = (
         "signals of one group under [signals] where they are stated",
     ),
     Assumed(
+        "boosted output, current sink or source",
+        "A transistor, two in a row or a complementary pair whose base or gate an output drives.",
+        "A bipolar one takes its current over the gain of its model (BF), or over 50 (1,000 for "
+        "the usual Darlingtons) where no model states one, and 0.7 V from base to emitter where "
+        "its model gives no IS: common practice, no source. A gate stands at the square law of "
+        "VTO and KP and takes C dv/dt. One that stops conducting or saturates within the range "
+        "of the signals, or whose current no loop holds, is not followed.",
+        "a .model card with BF and IS, or with VTO, KP, CGSO and CGDO; --engine ngspice",
+    ),
+    Assumed(
         "4-20 mA transmitter",
         "A transistor in the loop that sets the current of its own supply.",
         "Net 0 is the circuit's own ground, behind the sense resistor where it is drawn so. The "
-        "transistor gives the loop its sign (a follower positive, a common emitter negative) and "
-        "asks of the output its base current, the load's over the gain of its model.",
-        "--engine ngspice for levels that rest on the transistor",
+        "transistor is that of a current sink; it gives the loop its sign (a follower positive, "
+        "a common emitter negative).",
+        "as for a current sink",
     ),
     Assumed(
         "unused channel",

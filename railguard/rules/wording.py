@@ -2,7 +2,7 @@
 
 from collections.abc import Iterable
 
-from railguard.analysis.stage import Stage, Supply
+from railguard.analysis.stage import Carrier, Stage, Supply
 from railguard.rules.severity import Breach
 from railguard.units import si
 from railguard.words import Basis
@@ -25,6 +25,31 @@ _SPOKEN_WITH_VOWEL = "AEFHILMNORSX"
 def origin(basis: Basis) -> str:
     """Say in a few words where a number came from."""
     return _ORIGIN[basis]
+
+
+def of_gain(carrier: Carrier) -> str:
+    """Say what a transistor carries and by which gain: `carries 2 A at a current gain of 50`."""
+    verb = "carries" if len(carrier.designators) == 1 else "carry"
+    carries = f"{verb} {si(carrier.carries, 'A')}"
+    if carrier.gain is None:
+        return carries
+    note = "as its model states" if carrier.gain_stated else NO_GAIN
+    return f"{carries} at a current gain of {si(carrier.gain, '')} ({note})"
+
+
+NO_GAIN = "common practice; no model states it"
+
+
+def either(carrier: Carrier) -> str:
+    """Name a transistor, or the two of which either may conduct."""
+    return " or ".join(carrier.designators)
+
+
+def of_volts(carrier: Carrier) -> str:
+    """Say what stands between an output and what its transistor holds."""
+    ends = "from base to emitter" if carrier.gain is not None else "from gate to source"
+    note = "" if carrier.volts_stated else " (common practice)"
+    return f"{si(carrier.volts, 'V')} {ends} of {either(carrier)}{note}"
 
 
 def listed(words: Iterable[str]) -> str:

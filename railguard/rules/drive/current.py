@@ -4,7 +4,7 @@ from collections.abc import Iterator
 
 from msgspec.structs import replace
 
-from railguard.analysis.stage import Bound, Design, Stage, Unknown
+from railguard.analysis.stage import Bound, Carrier, Design, Stage, Unknown
 from railguard.devices.model import UNLISTED_CURRENT
 from railguard.rules.compose import (
     breach_finding,
@@ -13,11 +13,11 @@ from railguard.rules.compose import (
 )
 from railguard.rules.headroom.ranges import cap_of, corner_words
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
-from railguard.rules.remedies import fit, sentence
+from railguard.rules.remedies import SERIES, fit, sentence
 from railguard.rules.severity import Breach, breach, capped, far_beyond, gravity
-from railguard.rules.wording import NO_SOURCE, device, limit_note, sheet
+from railguard.rules.wording import NO_SOURCE, device, either, limit_note, of_gain, sheet
 from railguard.rules.working import stands_still, standstill
-from railguard.units import si
+from railguard.units import preferred, si
 
 NO_CURRENT = Unknown(
     "its output current is not known",
@@ -87,7 +87,7 @@ def _gap(stage: Stage) -> Unknown | None:
 
 def _current_message(stage: Stage, verb: str, bound: Bound, broken: Breach) -> str:
     lead = corner_words(bound, broken)
-    into = f" into {stage.current.into}" if stage.current.into else ""
+    into = _into(stage)
     asked = f"{lead}{stage.schematic} must {verb} {si(broken.demand, 'A')}{into}"
     limit = si(broken.limit, "A")
     typical = broken.broken == "typical" or bound.guaranteed is None
@@ -98,6 +98,21 @@ def _current_message(stage: Stage, verb: str, bound: Bound, broken: Breach) -> s
     return (
         f"{asked}; {device(stage)} {gives} {limit} {note}, so {si(-broken.margin, 'A')} is {end}."
     )
+
+
+def _into(stage: Stage) -> str:
+    """Say where most of the current goes: into a transistor, which carries more, or a resistor."""
+    carrier = _carrier(stage)
+    if carrier is not None:
+        return f" into the base of {either(carrier)}, which {of_gain(carrier)}"
+    return f" into {stage.current.into}" if stage.current.into else ""
+
+
+def _carrier(stage: Stage) -> Carrier | None:
+    """Return the transistor that takes most of an output's current, if one does."""
+    most = max(stage.current.carriers, key=lambda c: c.takes, default=None)
+    asked = max(stage.current.demand_source or 0.0, stage.current.demand_sink or 0.0)
+    return most if most is not None and most.takes > 0.5 * asked else None
 
 
 def _note(bound: Bound, broken: Breach, typical: bool) -> str:
@@ -115,6 +130,9 @@ def _note(bound: Bound, broken: Breach, typical: bool) -> str:
 
 def _current_remedy(stage: Stage, broken: Breach) -> str:
     load, buffer = "", "put a buffer behind the stage"
+    carrier = _carrier(stage)
+    if carrier is not None:
+        return sentence(*_more_gain(carrier, broken), "fit a device that gives more current")
     ohms = stage.current.load
     if ohms is not None and ohms > 0 and broken.demand > 0:
         fitting = fit(ohms * broken.demand / broken.limit, "up") if broken.limit > 0 else None
@@ -126,13 +144,24 @@ def _current_remedy(stage: Stage, broken: Breach) -> str:
     return sentence(load, buffer, "fit a device that gives more current")
 
 
+def _more_gain(carrier: Carrier, broken: Breach) -> tuple[str, ...]:
+    """Say which gain a transistor needs that leaves its output no more than it gives."""
+    room = broken.limit - max(broken.demand - carrier.takes, 0.0)
+    words = f"put a second transistor in front of {either(carrier)}, a Darlington"
+    if room <= 0:
+        return (words,)
+    wanted = preferred(carrier.carries / room, SERIES, "up")
+    gain = f"fit one for {either(carrier)} with a gain of at least {si(wanted, '')}"
+    return f"{gain} at {si(carrier.carries, 'A')}", words
+
+
 CURRENT = Rule(
     name="drive-current",
     family="drive",
     looks_at="stage",
-    judges="The peak current an output must source and sink, its own feedback network and any "
-    "capacitive load included, against what the device is known to give, then its short-circuit "
-    "current.",
+    judges="The peak current an output must source and sink, its own feedback network, any "
+    "capacitive load and the base of a transistor it drives included, against what the device is "
+    "known to give, then its short-circuit current.",
     reason="Beyond its current an output follows the load, not the input. The short-circuit "
     "current is the point of gross distortion and falls when hot.",
     source="the device's data sheet; Texas Instruments on OPA2134 output current, hot and cold",
