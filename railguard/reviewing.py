@@ -150,7 +150,11 @@ def review(
         found_settings = stated if stated is not None else _found_beside(one)
         own = run.prepared(msgspec.structs.replace(found_settings, **changes))
         deck = _deck(one, root, bounds or Bounds(**own.bounds))
-        found, matched = review_deck(deck, own, extra, options, engine)
+        try:
+            found, matched = review_deck(deck, own, extra, options, engine)
+        except Exception as error:
+            error.add_note(f"while reviewing {deck.path}")
+            raise
         run.took(own, matched, found.path)
         designs.append(found)
         if step is not None:

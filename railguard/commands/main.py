@@ -98,6 +98,25 @@ def _plain(error: RailguardError) -> str:
     return "\n".join(map(visible, str(error).splitlines()))
 
 
+def _fault(error: Exception) -> str:
+    """Return what is said where railguard itself fails; the trace may quote a netlist."""
+    import traceback
+
+    from railguard.report.visible import visible
+
+    trace = "".join(traceback.format_exception(error)).splitlines()
+    told = [*getattr(error, "__notes__", []), f"{type(error).__name__}: {error}"]
+    return "\n".join(
+        [
+            *map(visible, trace),
+            "",
+            f"railguard: this is a fault in railguard, not in the netlist: "
+            f"{visible('; '.join(told))}. Nothing was judged. A report with the lines above and, "
+            "where it may be shown, the netlist helps to mend it.",
+        ]
+    )
+
+
 def main() -> None:
     """Run the command line; a request that cannot be carried out is one sentence and status 2."""
     try:
@@ -114,3 +133,6 @@ def main() -> None:
         # The reader of a pipe has gone; nothing is wrong with the review.
         sys.stderr.close()
         sys.exit(0)
+    except Exception as error:  # noqa: BLE001 - its own status, 1, would put a netlist on hold
+        click.echo(_fault(error), err=True)
+        sys.exit(CANNOT)

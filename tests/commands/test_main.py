@@ -8,7 +8,9 @@ from pathlib import Path
 import pytest
 
 import railguard
+from railguard.commands.main import main
 
+STATION = Path(__file__).parents[2] / "fixtures" / "station" / "station.cir"
 HEAVY = ("numpy", "lark", "rich.console", "scipy", "railguard.reviewing")
 
 
@@ -108,3 +110,20 @@ def test_misspelt_request_has_status_2(arguments):
     done = run(*arguments)
     assert done.returncode == 2
     assert "Traceback" not in done.stderr
+
+
+def test_a_fault_of_railguard_itself_is_status_2(monkeypatch, capsys):
+    """Status 1 would say that the netlist is on hold; a hook would block on a false claim."""
+
+    def broken(*_):
+        raise TypeError("no such \x1b[31mmatrix")
+
+    monkeypatch.setattr("railguard.reviewing.analyse", broken)
+    monkeypatch.setattr(sys, "argv", ["railguard", "review", str(STATION)])
+    with pytest.raises(SystemExit) as stopped:
+        main()
+    said = capsys.readouterr().err
+    assert stopped.value.code == 2
+    assert "a fault in railguard" in said
+    assert f"while reviewing {STATION}" in said
+    assert "\x1b" not in said
