@@ -175,8 +175,9 @@ class Trial:
                 killers[int(outcome.removeprefix("killed by "))] += 1
                 outcome = "killed"
             self.outcomes.append((mutant, outcome))
-            if sys.stderr.isatty() or done % 100 == 0:
-                print(f"{done} of {len(self.mutants)}", end="\r", file=sys.stderr)
+            if outcome != "killed":
+                print(told(mutant, outcome), flush=True)
+            print(f"{done} of {len(self.mutants)}", end="\r", file=sys.stderr)
         return True
 
     @contextlib.contextmanager
@@ -291,26 +292,24 @@ def main() -> None:
     trial = Trial(tried, asked.seconds)
     os.chdir(ROOT)
     pytest.main(["-q", "-p", "no:cacheprovider", *asked.tests], plugins=[trial])
-    report(trial.outcomes)
+    print("\n" + "\n".join(figures(trial.outcomes)))
 
 
-def report(outcomes: list[tuple[Mutant, str]]) -> None:
-    """Print survivors by module, and a line of figures for each."""
-    modules: dict[Path, list[tuple[Mutant, str]]] = defaultdict(list)
+def told(mutant: Mutant, outcome: str) -> str:
+    """Return a change no test noticed: where it stands, the line before and after."""
+    where = f"{mutant.path.relative_to(PACKAGE).as_posix()}, line {mutant.lines.start}"
+    word = "" if outcome == "survived" else f" ({outcome})"
+    return f"{where}, {mutant.function}{word}\n    {mutant.before}\n  > {mutant.after}"
+
+
+def figures(outcomes: list[tuple[Mutant, str]]) -> Iterator[str]:
+    """Yield a line for each module: how many were tried, and what became of them."""
+    modules: dict[Path, Counter[str]] = defaultdict(Counter)
     for mutant, outcome in outcomes:
-        modules[mutant.path.relative_to(PACKAGE)].append((mutant, outcome))
-    for path, held in modules.items():
-        print(f"\n=== {path}")
-        for mutant, outcome in held:
-            if outcome != "killed":
-                word = "" if outcome == "survived" else f"   [{outcome}]"
-                print(f"{mutant.lines.start} {mutant.function}{word}")
-                print(f"    {mutant.before}\n  > {mutant.after}")
-    print()
-    for path, held in modules.items():
-        counts = Counter(outcome for _, outcome in held)
-        figures = ", ".join(f"{number} {outcome}" for outcome, number in counts.most_common())
-        print(f"{path.as_posix()}: {len(held)} tried; {figures}")
+        modules[mutant.path.relative_to(PACKAGE)][outcome] += 1
+    for path, counts in modules.items():
+        words = ", ".join(f"{number} {outcome}" for outcome, number in counts.most_common())
+        yield f"{path.as_posix()}: {counts.total()} tried; {words}"
 
 
 if __name__ == "__main__":

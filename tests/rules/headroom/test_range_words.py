@@ -1,0 +1,296 @@
+"""What the two range rules say and propose, sentence by sentence."""
+
+import pytest
+
+from railguard.analysis.stage import Output, Pair, Range
+from railguard.devices.model import SwingPoint
+from railguard.rules.headroom.ranges import INPUT, OUTPUT
+from tests.rules.stages import (
+    FAMILY,
+    bound,
+    changed,
+    findings,
+    high,
+    inputs,
+    low,
+    open_points,
+    stage,
+)
+
+TO_THE_RAILS = changed(FAMILY, rail_to_rail_output=True, rail_to_rail_input=True)
+STUCK = "All of its range lies beyond, so it is stuck there and passes no signal."
+GAIN = "Lower the gain from 11 to at most 10.5 (R2 = 9.1 kΩ instead of 10 kΩ)"
+CLOSER = "fit a device whose output comes closer to the rail"
+
+
+def asked(most, least, level=0.0, upper=None, lower=None, **fields):
+    """Make a stage whose output is asked for a range; 10.5 V typical, 9.5 V guaranteed."""
+    common = {"level": level, "span": most - least}
+    return stage(
+        output=Output(
+            net="out",
+            level=level,
+            demand=Range(least, most),
+            high=high(most, **{**common, **(upper or {})}),
+            low=low(least, **{**common, **(lower or {})}),
+        ),
+        **fields,
+    )
+
+
+@pytest.mark.parametrize(
+    ("one", "message"),
+    [
+        (
+            asked(11.0, -3.0),
+            "U1 is asked for 11 V at its output; a TL072 on ±12 V reaches 10.5 V (typical, data "
+            "sheet), so 500 mV is missing.",
+        ),
+        (
+            asked(3.0, -11.0, lower={"condition": "10 kΩ load", "typical_basis": "memory"}),
+            "U1 is asked for -11 V at its output; a TL072 on ±12 V reaches down to -10.5 V "
+            "(typical, 10 kΩ load, data sheet from memory), so 500 mV is missing.",
+        ),
+        (
+            asked(10.0, -3.0),
+            "U1 is asked for 10 V at its output; a TL072 on ±12 V is sure to reach 9.5 V "
+            "(guaranteed, data sheet), so 500 mV is not covered.",
+        ),
+        (
+            asked(3.0, -10.0, lower={"condition": "10 kΩ load"}),
+            "U1 is asked for -10 V at its output; a TL072 on ±12 V is sure to reach down to -9.5 V "
+            "(guaranteed, 10 kΩ load, data sheet), so 500 mV is not covered.",
+        ),
+        (
+            asked(9.48, -3.0),
+            "U1 is asked for 9.48 V at its output; a TL072 on ±12 V reaches 9.5 V (guaranteed, "
+            "data sheet), so only 20 mV is left.",
+        ),
+        (
+            asked(9.0, -3.0, upper={"stated": Pair(10.6, 10.4), "guaranteed": None}),
+            "At the worst corner of the stated tolerances U1 is asked for 10.6 V at its output; a "
+            "TL072 on ±12 V is sure to reach 10.4 V (typical, data sheet), so 200 mV is not "
+            "covered.",
+        ),
+        (
+            asked(14.0, 13.0, level=13.5),
+            "U1 is asked for 14 V at its output; its positive rail is at 12 V, so 2 V is missing "
+            f"for any device. {STUCK}",
+        ),
+        (
+            asked(-13.0, -14.0, level=-13.5),
+            "U1 is asked for -14 V at its output; its negative rail is at -12 V, so 2 V is "
+            f"missing for any device. {STUCK}",
+        ),
+        (
+            asked(11.5, 11.0, level=11.2),
+            "U1 is asked for 11.5 V at its output; a TL072 on ±12 V reaches 10.5 V (typical, data "
+            f"sheet), so 1 V is missing. {STUCK}",
+        ),
+        (
+            asked(11.0, -10.0),
+            "U1 is asked for 11 V at its output; a TL072 on ±12 V reaches 10.5 V (typical, data "
+            "sheet), so 500 mV is missing. At the lower end -10 V is asked for and -9.5 V reached.",
+        ),
+        (
+            asked(9.48, -11.0),
+            "U1 is asked for -11 V at its output; a TL072 on ±12 V reaches down to -10.5 V "
+            "(typical, data sheet), so 500 mV is missing. At the upper end 20 mV is left.",
+        ),
+    ],
+)
+def test_what_is_said_of_an_output(one, message):
+    """Demand, device and rails, limit with its source, what is missing; then the other end."""
+    (found,) = findings(OUTPUT, one)
+    assert found.message == message
+
+
+@pytest.mark.parametrize(
+    ("one", "remedy"),
+    [
+        (
+            asked(11.0, -3.0),
+            f"{GAIN}, or raise the positive rail to at least 12.5 V, or {CLOSER}.",
+        ),
+        (
+            asked(3.0, -11.0),
+            f"{GAIN}, or take the negative rail down to at least -12.5 V, or {CLOSER}.",
+        ),
+        (
+            asked(11.0, -11.0),
+            f"{GAIN}, or move the rails out to at least ±12.5 V, or {CLOSER}.",
+        ),
+        (
+            asked(11.0, -3.0, family=TO_THE_RAILS),
+            f"{GAIN}, or raise the positive rail to at least 12.5 V.",
+        ),
+        (asked(9.48, -3.0), f"{CLOSER.capitalize()}."),
+        (asked(3.0, -9.48), f"{CLOSER.capitalize()}."),
+        # the level itself is outside: it is moved, or scaled where a gain makes it
+        (
+            asked(11.5, 11.0, level=11.2),
+            "Lower the gain from 11 to at most 10 (R2 = 8.2 kΩ instead of 10 kΩ), or move the "
+            "output's level (11.2 V) below 10.5 V, or raise the positive rail to at least 13 V, "
+            f"or {CLOSER}.",
+        ),
+        (
+            asked(-11.0, -11.5, level=-11.2, gain=(("a", 1.0), ("b", 2.0))),
+            "Move the output's level (-11.2 V) above -10.5 V, or take the negative rail down to "
+            f"at least -13 V, or {CLOSER}.",
+        ),
+        # a level on the limit is not outside
+        (
+            asked(11.5, 10.0, level=10.5),
+            f"Raise the positive rail to at least 13 V, or {CLOSER}.",
+        ),
+        # no device comes past its rail
+        (
+            asked(12.0, -3.0, family=changed(FAMILY, supply_high=24.0)),
+            "Lower the gain from 11 to at most 9.62 (R2 = 8.2 kΩ instead of 10 kΩ).",
+        ),
+    ],
+)
+def test_what_is_proposed_for_an_output(one, remedy):
+    """Less gain, another level, another rail, another device: what applies, and nothing else."""
+    (found,) = findings(OUTPUT, one)
+    assert found.remedy == remedy
+
+
+def test_a_lighter_load_is_proposed_where_it_would_do():
+    """The data sheet lists a swing at a lighter load that reaches the demand."""
+    light = changed(FAMILY, swing_high=(SwingPoint(amps=0.0, typical=0.5),))
+    (found,) = findings(OUTPUT, asked(11.0, -3.0, family=light))
+    assert found.remedy.startswith("Lighten its load, or lower the gain")
+    (far,) = findings(OUTPUT, asked(11.8, -3.0, family=light))
+    assert "load" not in far.remedy
+    (reserve,) = findings(OUTPUT, asked(9.48, -3.0, family=light))
+    assert "load" not in reserve.remedy
+
+
+def into(most, least, upper=None, lower=None, **fields):
+    """Make a stage whose inputs cover a range; ±10 V typical, ±9 V guaranteed, ±12 V at most."""
+    common = {"level": 0.0, "span": most - least}
+    limits = {"typical": 10.0, "guaranteed": 9.0, "absolute": 12.0}
+    return stage(
+        inputs=inputs(
+            demand=Range(least, most),
+            high=bound(True, demand=most, **{**common, **limits, **(upper or {})}),
+            low=bound(
+                False,
+                demand=least,
+                **{**common, **{k: -v for k, v in limits.items()}, **(lower or {})},
+            ),
+        ),
+        **fields,
+    )
+
+
+@pytest.mark.parametrize(
+    ("one", "message"),
+    [
+        (
+            into(11.0, -1.0),
+            "U1's inputs go up to 11 V; a TL072 on ±12 V takes inputs up to 10 V (typical, data "
+            "sheet), so they are 1 V beyond it.",
+        ),
+        (
+            into(1.0, -9.5, lower={"condition": "at 25 °C"}),
+            "U1's inputs go down to -9.5 V; a TL072 on ±12 V takes inputs down to -9 V "
+            "(guaranteed, at 25 °C, data sheet), so they are 500 mV beyond it.",
+        ),
+        (
+            into(8.95, -1.0),
+            "U1's inputs go up to 8.95 V; a TL072 on ±12 V takes inputs up to 9 V (guaranteed, "
+            "data sheet), so only 50 mV is left.",
+        ),
+        (
+            into(9.95, -1.0, upper={"guaranteed": None}),
+            "U1's inputs go up to 9.95 V; a TL072 on ±12 V takes inputs up to 10 V (typical, data "
+            "sheet), so only 50 mV is left.",
+        ),
+        (
+            into(13.0, -1.0, upper={"typical": None, "guaranteed": 12.5}),
+            "U1's inputs go up to 13 V; the absolute limit there is 12 V, so they are 1 V beyond "
+            "it.",
+        ),
+        (
+            into(8.5, -1.0, upper={"default": Pair(9.5, 9.2), "culprits": ("A", "B", "C", "D")}),
+            "At the worst corner of the default tolerances (A, B and C move it most) U1's inputs "
+            "may go up to 9.5 V; a TL072 on ±12 V takes inputs up to 9.2 V (guaranteed, data "
+            "sheet), so they are 300 mV beyond it.",
+        ),
+        (
+            into(9.5, -11.0),
+            "U1's inputs go down to -11 V; a TL072 on ±12 V takes inputs down to -10 V (typical, "
+            "data sheet), so they are 1 V beyond it. At the upper end they go to 9.5 V, and 9 V "
+            "is the limit.",
+        ),
+        (
+            into(11.0, -9.5),
+            "U1's inputs go up to 11 V; a TL072 on ±12 V takes inputs up to 10 V (typical, data "
+            "sheet), so they are 1 V beyond it. At the lower end they go to -9.5 V, and -9 V is "
+            "the limit.",
+        ),
+    ],
+)
+def test_what_is_said_of_the_inputs(one, message):
+    """Demand, device and rails, limit with its source, how far beyond; then the other end."""
+    (found,) = findings(INPUT, one)
+    assert found.message == message
+
+
+@pytest.mark.parametrize(
+    ("one", "remedy"),
+    [
+        (
+            into(11.0, -1.0),
+            "Keep the inputs below 10 V by attenuating or shifting the signal, or raise the "
+            "positive rail to at least 13 V, or fit a device whose inputs reach the positive rail.",
+        ),
+        (
+            into(1.0, -11.0),
+            "Keep the inputs above -10 V by attenuating or shifting the signal, or take the "
+            "negative rail down to at least -13 V, or fit a device whose inputs reach the negative "
+            "rail.",
+        ),
+        (
+            into(11.0, -1.0, topology="inverting", family=TO_THE_RAILS),
+            "Put the reference at the non-inverting input below 10 V, or raise the positive rail "
+            "to at least 13 V.",
+        ),
+        (
+            into(1.0, -11.0, topology="inverting", family=None),
+            "Put the reference at the non-inverting input above -10 V, or fit a device whose "
+            "inputs reach the negative rail.",
+        ),
+    ],
+)
+def test_what_is_proposed_for_the_inputs(one, remedy):
+    """The signal, the reference of an inverting stage, another rail, another device."""
+    (found,) = findings(INPUT, one)
+    assert found.remedy == remedy
+
+
+@pytest.mark.parametrize("rule", [OUTPUT, INPUT])
+@pytest.mark.parametrize("figure", ["typical", "guaranteed"])
+def test_one_figure_of_a_device_is_enough_to_judge_by(rule, figure):
+    """Typical or guaranteed; where one side has neither, that is listed."""
+    bare = {"typical": None, "guaranteed": None, "absolute": None}
+    one, other = {**bare, figure: 10.0}, {**bare, figure: -10.0}
+    sides = {"high": bound(True, demand=1.0, **one), "low": bound(False, demand=-1.0, **other)}
+    made = stage(output=Output(net="out", **sides), inputs=inputs(**sides))
+    assert open_points(rule, made) == []
+    half = {**sides, "low": bound(False, demand=-1.0, **bare)}
+    (point,) = open_points(rule, stage(output=Output(net="out", **half), inputs=inputs(**half)))
+    what = "output swing" if rule is OUTPUT else "input common-mode range"
+    fields = "swing_high and swing_low" if rule is OUTPUT else "input_low and input_high"
+    assert point.why == f"the {what} of TL072 is not in the catalogue"
+    assert point.add == f"add {fields} to a [[devices]] table of railguard.toml"
+
+
+@pytest.mark.parametrize("rule", [OUTPUT, INPUT])
+def test_one_end_that_was_worked_out_is_enough_to_judge_by(rule):
+    """The other one is no gap where its limits are known."""
+    sides = {"high": high(11.0, span=16.0), "low": low(None)}
+    one = stage(output=Output(net="out", **sides), inputs=inputs(**sides))
+    assert len(findings(rule, one)) == 1
