@@ -115,18 +115,16 @@ def _is_stuck(stage: Stage, bound: Bound, broken: Breach) -> bool:
 
 def _output_message(stage: Stage, bound: Bound, broken: Breach) -> str:
     who, demand, limit = stage.schematic, si(broken.demand, "V"), si(broken.limit, "V")
-    asked = f"{who} is asked for {demand} at its output"
-    lead = corner_words(bound, broken)
-    asked = f"{lead}{asked}" if lead else asked
+    asked = f"{corner_words(bound, broken)}{who} is asked for {demand} at its output"
     down = "" if bound.upper else "down to "
-    note = limit_note("guaranteed", broken.limit_basis, bound.condition)
+    typical = broken.broken == "typical" or bound.guaranteed is None
+    note = limit_note("typical" if typical else "guaranteed", broken.limit_basis, bound.condition)
     missing = si(-broken.margin, "V")
     match broken.broken:
         case "absolute":
             end = "positive" if bound.upper else "negative"
             return f"{asked}; its {end} rail is at {limit}, so {missing} is missing for any device."
         case "typical":
-            note = limit_note("typical", broken.limit_basis, bound.condition)
             return (
                 f"{asked}; {device_on(stage)} reaches {down}{limit} {note}, "
                 f"so {missing} is missing."
@@ -137,8 +135,6 @@ def _output_message(stage: Stage, bound: Bound, broken: Breach) -> str:
                 f"{asked}; {device_on(stage)} reaches {down}{limit} {note}, so only {left} is left."
             )
         case _:
-            best = "guaranteed" if bound.guaranteed is not None else "typical"
-            note = limit_note(best, broken.limit_basis, bound.condition)
             return (
                 f"{asked}; {device_on(stage)} is sure to reach {down}{limit} {note}, "
                 f"so {missing} is not covered."
@@ -236,9 +232,8 @@ def judge_input(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcom
 def _input_message(stage: Stage, bound: Bound, broken: Breach) -> str:
     word = "up to" if bound.upper else "down to"
     verb = "go" if not broken.at_corner else "may go"
-    asked = f"{stage.schematic}'s inputs {verb} {word} {si(broken.demand, 'V')}"
     lead = corner_words(bound, broken)
-    asked = f"{lead}{asked}" if lead else asked
+    asked = f"{lead}{stage.schematic}'s inputs {verb} {word} {si(broken.demand, 'V')}"
     limit, missing = si(broken.limit, "V"), si(-broken.margin, "V")
     if broken.broken == "absolute":
         return f"{asked}; the absolute limit there is {limit}, so they are {missing} beyond it."

@@ -67,6 +67,11 @@ def asked(most, least, level=0.0, upper=None, lower=None, **fields):
             "data sheet), so only 20 mV is left.",
         ),
         (
+            asked(10.48, -3.0, upper={"guaranteed": None}),
+            "U1 is asked for 10.5 V at its output; a TL072 on ±12 V reaches 10.5 V (typical, data "
+            "sheet), so only 20 mV is left.",
+        ),
+        (
             asked(9.0, -3.0, upper={"stated": Pair(10.6, 10.4), "guaranteed": None}),
             "At the worst corner of the stated tolerances U1 is asked for 10.6 V at its output; a "
             "TL072 on ±12 V is sure to reach 10.4 V (typical, data sheet), so 200 mV is not "
@@ -137,6 +142,22 @@ def test_what_is_said_of_an_output(one, message):
             asked(-11.0, -11.5, level=-11.2, gain=(("a", 1.0), ("b", 2.0))),
             "Move the output's level (-11.2 V) above -10.5 V, or take the negative rail down to "
             f"at least -13 V, or {CLOSER}.",
+        ),
+        (
+            asked(
+                -11.0,
+                -11.5,
+                level=-11.2,
+                gain=(("a", 1.0), ("b", 2.0)),
+                family=changed(TO_THE_RAILS, supply_high=24.0),
+            ),
+            "Move the output's level (-11.2 V) above -10.5 V.",
+        ),
+        # what the level itself takes of the swing is no gain's
+        (
+            asked(11.5, -3.0, level=1.0, family=TO_THE_RAILS),
+            "Lower the gain from 11 to at most 9.95 (R2 = 8.2 kΩ instead of 10 kΩ), or raise the "
+            "positive rail to at least 13 V.",
         ),
         # a level on the limit is not outside
         (
@@ -286,6 +307,14 @@ def test_one_figure_of_a_device_is_enough_to_judge_by(rule, figure):
     fields = "swing_high and swing_low" if rule is OUTPUT else "input_low and input_high"
     assert point.why == f"the {what} of TL072 is not in the catalogue"
     assert point.add == f"add {fields} to a [[devices]] table of railguard.toml"
+
+
+@pytest.mark.parametrize("rule", [OUTPUT, INPUT])
+def test_what_does_not_move_wants_no_reserve(rule):
+    """The reserve is a share of the span: a level on its limit is inside."""
+    sides = {"high": high(9.5, span=None), "low": low(None)}
+    one = stage(output=Output(net="out", **sides), inputs=inputs(**sides))
+    assert findings(rule, one) == []
 
 
 @pytest.mark.parametrize("rule", [OUTPUT, INPUT])
