@@ -75,6 +75,12 @@ class Spread(msgspec.Struct, frozen=True, kw_only=True):
         return stamps, self.delta[: len(stamps)]
 
     @property
+    def shares(self) -> dict[str, float]:
+        """Return the share each element may be off, by designator."""
+        stamps, delta = self.elements
+        return {s.designator: float(d) for s, d in zip(stamps, delta, strict=True)}
+
+    @property
     def names(self) -> tuple[str, ...]:
         """Designators of the parameters, as a report names them."""
         return tuple(p.name for p in self.parameters)

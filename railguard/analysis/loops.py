@@ -10,6 +10,7 @@ from collections.abc import Iterable, Mapping, Sequence
 import msgspec
 import numpy as np
 
+from railguard.analysis.closing import Bands, Closing, InBand
 from railguard.analysis.network import (
     Complex,
     Network,
@@ -111,6 +112,12 @@ def open_loop(amplifier: Amplifier, hertz: Real) -> Complex:
     if gbw:
         inverse += 1j * hertz / gbw
     return 1.0 / inverse
+
+
+def _open_loop_at(amplifier: Amplifier, *hertz: float | None) -> list[float | None]:
+    """Return |A| at some frequencies; None where one is not known."""
+    known = np.array([np.nan if f is None else f for f in hertz])
+    return [float(a) if np.isfinite(a) else None for a in np.abs(open_loop(amplifier, known))]
 
 
 def sweep(network: Network, tops: Sequence[float], dc: Real) -> LoopSweep:
@@ -245,9 +252,14 @@ def crossover_margins(network: Network, crossovers: Mapping[str, float]) -> dict
 
 
 def loop_of(
-    amplifier: Amplifier, column: int, swept: LoopSweep, top: float | None, margin: Margin
+    amplifier: Amplifier,
+    column: int,
+    swept: LoopSweep,
+    top: float | None,
+    margin: Margin,
+    closing: Closing | None,
 ) -> Loop:
-    """Return one amplifier's loop.
+    """Return one amplifier's loop, its ends in band left open.
 
     top     top of the band of the signals that reach it, hertz; None: nothing stated
     """
@@ -265,9 +277,16 @@ def loop_of(
         noise_gain = 1.0 / np.maximum(np.abs(beta), 1e-300)
     known = gain_bandwidth(amplifier) is not None
     f_cross = crossing(swept.hertz, magnitude) if known else None
-    at_cross = None
+    at_cross, at_cross_worst = None, Range()
     if f_cross is not None:
         at_cross = float(np.exp(_at(swept.hertz, np.log(noise_gain), f_cross)))
+    if f_cross is not None and closing is not None:
+        f_cross = closing.hertz
+        if column not in swept.local:
+            at_cross, *ends = _open_loop_at(
+                amplifier, f_cross, closing.bare_worst.high, closing.bare_worst.low
+            )
+            at_cross_worst = Range(*ends)
     if top:
         in_band = _at(swept.hertz, noise_gain, max(top, LOWEST_HERTZ))
     elif f_cross is not None:
@@ -283,6 +302,11 @@ def loop_of(
         noise_gain_crossover=at_cross,
         crossover=f_cross,
         phase_margin=margin.value,
+        at_crossover_worst=at_cross_worst,
+        crossover_worst=closing.hertz_worst if closing is not None and known else Range(),
+        phase_margin_worst=closing.margin_worst
+        if closing is not None and margin.value is not None
+        else Range(),
         margins=Range(margin.least, margin.most),
         band=top,
         loop_gain=_at(swept.hertz, magnitude, max(top, LOWEST_HERTZ)) if top and known else None,
@@ -293,3 +317,56 @@ def loop_of(
         if known
         else (),
     )
+
+
+def with_ends(loop: Loop, own_at_dc: Range, bands: Bands, k: int, *, local: bool) -> Loop:
+    """Return a loop with the ends of its noise gain and of its loop gain.
+
+    own_at_dc  of the noise gain at DC, its own network alone
+    local      True where an outer loop hides the amplifier's own network: its noise gain has no
+               ends beyond those at DC
+    """
+    if loop.dc != "negative":
+        return loop
+    at_dc = own_at_dc
+    if not local and not loop.holds and not _holds(own_at_dc, loop.noise_gain_dc):
+        # Other amplifiers have a share in it: two followers that feed each other's dividers.
+        held = bands.at(k, 0.0)
+        at_dc = held.noise_gain if held is not None else Range()
+    hertz = _noise_gain_hertz(loop)
+    found = None
+    if loop.crossover is not None and hertz is not None:
+        found = bands.at(k, hertz)
+    ends = found or InBand(Range(), at_dc if hertz is None else Range())
+    return msgspec.structs.replace(
+        loop,
+        noise_gain_worst=at_dc,
+        in_band_worst=Range() if local and hertz is not None else ends.noise_gain,
+        loop_gain_worst=Range() if loop.loop_gain is None else ends.loop_gain,
+    )
+
+
+def _holds(span: Range, value: float | None) -> bool:
+    """Tell whether a range holds a value, but for rounding."""
+    if span.low is None or span.high is None or value is None:
+        return False
+    return span.low * (1 - _ROUNDING) <= value <= span.high * (1 + _ROUNDING)
+
+
+_ROUNDING = 1e-6
+
+
+def _noise_gain_hertz(loop: Loop) -> float | None:
+    """Return where the noise gain in band was taken; None: at DC."""
+    if loop.band:
+        return max(loop.band, LOWEST_HERTZ)
+    within = [p for p in loop.points if loop.crossover is not None and p[0] <= loop.crossover]
+    largest = max(within, key=lambda p: p[1], default=None)
+    dc = loop.noise_gain_dc
+    if largest is None or dc is None or largest[1] <= dc * _AS_AT_DC:
+        return None
+    return largest[0]
+
+
+_AS_AT_DC = 1.001
+"""A noise gain that rises by less than this in band is the one at DC."""

@@ -113,20 +113,6 @@ def noise_gain_span(view: View, loop: Loop) -> Range:
     return Range(1.0 / (beta + moved), 1.0 / (beta - moved))
 
 
-def crossover_span(view: View, loop: Loop, noise_gain: Range) -> Range:
-    """Return the bandwidth at the ends of the noise gain and of what is listed of its product."""
-    device, at, nominal = view.amplifier.match.device, loop.crossover, loop.noise_gain_dc
-    if device is None or at is None or nominal is None:
-        return Range()
-    if noise_gain.low is None or noise_gain.high is None:
-        return Range()
-    listed = device.gain_bandwidth
-    share = 1.0
-    if listed.typical is not None and listed.guaranteed is not None:
-        share = min(listed.guaranteed / listed.typical, 1.0)
-    return Range(at * share * nominal / noise_gain.high, at * nominal / noise_gain.low)
-
-
 _LOWEST_CORNER = 1e-4
 _HIGHEST_BAND, _BAND_STEPS = 1e4, 17
 """How far above a signal its pass band is looked for, and in how many steps."""

@@ -9,6 +9,7 @@ import numpy as np
 from railguard.analysis.available import output_reach
 from railguard.analysis.boost import Boost, boosted
 from railguard.analysis.boost import Part as Boostable
+from railguard.analysis.closing import Closing, Off, Seen, closings, off_of
 from railguard.analysis.corners import Nuisance, Spread, spread
 from railguard.analysis.dcpaths import DcMap
 from railguard.analysis.loops import (
@@ -65,7 +66,8 @@ class Solution(msgspec.Struct, frozen=True, kw_only=True):
     """Everything the stages are read from.
 
     forced   amplifiers without a working loop: their output stands at either limit
-    margins  phase margin by amplifier
+    margins  phase margin by amplifier; closings: where its loop closes, with the ends of both
+    loop_network, off  the network the loops are looked at in, and what moves them
     through  amplifiers whose feedback runs through diodes: its sign is known, their range is not
     turning  amplifiers of circuits that move by themselves
     boost    transistors that are followed, and what they are to the amplifiers
@@ -82,6 +84,9 @@ class Solution(msgspec.Struct, frozen=True, kw_only=True):
     through: frozenset[str]
     turning: Oscillators
     margins: Mapping[str, Margin]
+    closings: Mapping[str, Closing]
+    loop_network: Network
+    off: Off
     spread: Spread
     mid: Factor
     tops: tuple[float, ...]
@@ -150,10 +155,12 @@ def solve(
     local = local_betas(passive.network, swept, amplifiers)
     swept = msgspec.structs.replace(swept, local=local) if local else swept
     options = options or Options()
-    off = _spread(answers, prepared, amplifiers, feeds, settings, exempt, boost)
+    spread_of = _spread(answers, prepared, amplifiers, feeds, settings, exempt, boost)
+    off = off_of(loop_network, spread_of.shares)
+    margins, closing = _margins(swept, loop_network, amplifiers, forced, off)
     return Solution(
         exact=options.exact,
-        sampled=monte_carlo(answers, off, options.samples, options.seed)
+        sampled=monte_carlo(answers, spread_of, options.samples, options.seed)
         if options.samples
         else None,
         prepared=prepared,
@@ -166,8 +173,11 @@ def solve(
         forced=forced,
         through=through,
         turning=turning,
-        margins=_margins(swept, loop_network, amplifiers, forced),
-        spread=off,
+        margins=margins,
+        closings=closing,
+        loop_network=loop_network,
+        off=off,
+        spread=spread_of,
         mid=factor(network, MID_HERTZ),
         tops=tops,
         boost=boost,
@@ -289,28 +299,41 @@ def _margins(
     loop_network: Network,
     amplifiers: tuple[Amplifier, ...],
     forced: frozenset[str],
-) -> dict[str, Margin]:
-    """Return phase margins: with what is listed, and the least with the largest unlisted terms."""
-    crossovers, listed = {}, {}
+    off: Off,
+) -> tuple[dict[str, Margin], dict[str, Closing]]:
+    """Return phase margins, and where each loop closes with the ends of both.
+
+    With what is listed, and the least with the largest unlisted terms.
+    """
+    sights = {}
     for k, amplifier in enumerate(amplifiers):
         if amplifier.designator in forced or amplifier.match.device is None:
             continue
         at = crossing(swept.hertz, np.abs(swept.a_beta[:, k]))
         if at is not None:
-            crossovers[amplifier.designator] = at
-            listed[amplifier.designator] = phase_margin(swept.hertz, swept.a_beta[:, k], at)
-    if not crossovers:
-        return {}
+            sights[k] = at, phase_margin(swept.hertz, swept.a_beta[:, k], at)
+    if not sights:
+        return {}, {}
+    names = {k: amplifiers[k].designator for k in sights}
     bounding = loop_network.again(forced, bounding_parasitics(amplifiers))
-    bounds = crossover_margins(bounding, crossovers)
-    return {
-        name: Margin(
-            margin if name in bounds and abs(bounds[name] - margin) <= SURE_DEGREES else None,
-            min(margin, bounds[name]) if name in bounds else None,
+    bounds = crossover_margins(bounding, {names[k]: at for k, (at, _) in sights.items()})
+    seen = {
+        k: Seen(
+            at,
             margin,
+            names[k] in bounds and abs(bounds[names[k]] - margin) <= SURE_DEGREES,
         )
-        for name, margin in listed.items()
+        for k, (at, margin) in sights.items()
     }
+    found = closings(loop_network, off, seen)
+    margins = {}
+    for k, sight in seen.items():
+        margin = found[k].margin if k in found else sight.margin
+        least = bounds.get(names[k])
+        margins[names[k]] = Margin(
+            margin if sight.sure else None, None if least is None else min(margin, least), margin
+        )
+    return margins, {names[k]: closing for k, closing in found.items()}
 
 
 def _spread(

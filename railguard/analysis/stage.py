@@ -316,7 +316,9 @@ class Loop(msgspec.Struct, frozen=True, kw_only=True):
     holds       designators of other stages that hold the DC level where its own loop does not
     bridges     switches and unseen devices that may lead the output back where the loop is open
     noise_gain_worst  of `noise_gain_dc`, at the resistors' tolerances
-    crossover_worst   with them and the least and the typical gain-bandwidth product listed
+    in_band_worst, at_crossover_worst  of `noise_gain` and `noise_gain_crossover`, with capacitors
+    crossover_worst, phase_margin_worst, loop_gain_worst  with all tolerances, and the least and the
+                typical gain-bandwidth product listed; unknown where the nominal figure is
     margins     phase margin with the most and with nothing of what is not listed, degrees
     thresholds  volts of its signal at which a stage with positive feedback switches; of the pin
                 where more than one signal moves it
@@ -332,7 +334,11 @@ class Loop(msgspec.Struct, frozen=True, kw_only=True):
     crossover: float | None = None
     phase_margin: float | None = None
     noise_gain_worst: Range = Range()
+    in_band_worst: Range = Range()
+    at_crossover_worst: Range = Range()
     crossover_worst: Range = Range()
+    phase_margin_worst: Range = Range()
+    loop_gain_worst: Range = Range()
     margins: Range = Range()
     band: float | None = None
     loop_gain: float | None = None

@@ -5,14 +5,14 @@ from collections.abc import Mapping, Sequence
 import msgspec
 import numpy as np
 
+from railguard.analysis.closing import Bands
 from railguard.analysis.filters import filter_of
 from railguard.analysis.inputs import inputs_of
-from railguard.analysis.loops import OPEN_BETA, Margin, loop_of
+from railguard.analysis.loops import OPEN_BETA, Margin, loop_of, with_ends
 from railguard.analysis.outputs import output_side
 from railguard.analysis.positive import with_thresholds
 from railguard.analysis.reach import (
     band_of,
-    crossover_span,
     gains_of,
     high_pass_of,
     is_ac_coupled,
@@ -59,7 +59,8 @@ def drafts_of(
     """Build the stage of every amplifier of a solved part, without what other parts add to it."""
     views = [View(solution, k, spoiled) for k in range(len(solution.amplifiers))]
     after = [_after(view) for view in views]
-    return tuple(_stage(view, feeds, settings, rails, after) for view in views)
+    bands = Bands(solution.loop_network, solution.off)
+    return tuple(_stage(view, feeds, settings, rails, after, bands) for view in views)
 
 
 def finished(
@@ -103,6 +104,7 @@ def _stage(
     settings: Settings,
     rails: frozenset[str],
     after: list[tuple[str, ...]],
+    bands: Bands,
 ) -> Stage:
     solution, amplifier, device = view.solution, view.amplifier, view.amplifier.match.device
     name = amplifier.designator
@@ -118,7 +120,8 @@ def _stage(
         loop = Loop(dc="negative", band=top, holds=tuple(sorted(solution.turning.switching)))
     elif name in solution.answers.network.outputs:
         margin = solution.margins.get(name, Margin())
-        loop = loop_of(amplifier, view.k, solution.swept, top, margin)
+        closing = solution.closings.get(name)
+        loop = loop_of(amplifier, view.k, solution.swept, top, margin, closing)
         loop = msgspec.structs.replace(
             loop,
             holds=_holds(view, loop, after),
@@ -133,11 +136,7 @@ def _stage(
     working = name not in solution.forced and name in solution.answers.network.outputs
     loop = with_thresholds(view, loop, after)
     spread_noise_gain = noise_gain_span(view, loop)
-    loop = msgspec.structs.replace(
-        loop,
-        noise_gain_worst=spread_noise_gain,
-        crossover_worst=crossover_span(view, loop, spread_noise_gain),
-    )
+    loop = with_ends(loop, spread_noise_gain, bands, view.k, local=view.k in solution.swept.local)
     feedback = feedback_of(amplifier, solution.passive, solution.ways, solution.answers)
     load = output_load(amplifier, solution.passive)
     current, output = output_side(view, supply, load, working, unknown)
@@ -191,7 +190,7 @@ def _stage(
             topology,
             _share_at_minus(view),
             max((abs(gain.value) for gain in gains), default=0.0),
-            _tolerances(view),
+            solution.spread.shares,
             spread_noise_gain,
         ),
         case=case_of(
@@ -233,12 +232,6 @@ def _holds(view: View, loop: Loop, after: list[tuple[str, ...]]) -> tuple[str, .
                 reached.add(name)
                 queue.append(names.index(name))
     return tuple(n for n in names if n in reached and n != amplifier.designator)
-
-
-def _tolerances(view: View) -> dict[str, float]:
-    """Return the share each element may be off, by designator."""
-    stamps, delta = view.solution.spread.elements
-    return {stamp.designator: float(share) for stamp, share in zip(stamps, delta, strict=True)}
 
 
 def _share_at_minus(view: View) -> float | None:

@@ -1,7 +1,7 @@
 """Making findings and open points from a stage, so that every rule fills the same fields."""
 
 from collections.abc import Iterable, Iterator
-from typing import cast
+from typing import Literal, cast
 
 from railguard.analysis.stage import Design, Package, Part, Rail, Stage, Unknown
 from railguard.location import Location
@@ -37,8 +37,9 @@ def finding(
     remedy: str = "",
     source: str = "",
     location: Location | None = None,
+    corner: Literal["nominal", "worst-case"] = "nominal",
 ) -> Finding:
-    """Make a finding whose numbers were compared directly, at nominal."""
+    """Make a finding whose numbers were compared directly."""
     return Finding(
         rule=rule,
         family=family_of(rule),
@@ -54,6 +55,7 @@ def finding(
         remedy=remedy,
         source=source,
         location=location,
+        corner=corner,
     )
 
 
@@ -71,6 +73,7 @@ def stage_finding(
     basis: tuple[Basis, ...] = ("netlist",),
     remedy: str = "",
     source: str = "",
+    corner: Literal["nominal", "worst-case"] = "nominal",
 ) -> Finding:
     """Make a finding about one stage."""
     return finding(
@@ -87,6 +90,7 @@ def stage_finding(
         remedy=remedy,
         source=source,
         location=stage.location,
+        corner=corner,
     )
 
 

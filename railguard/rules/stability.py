@@ -120,7 +120,11 @@ def judge_phase_margin(stage: Stage, limits: Limits, design: Design) -> Iterator
             "add output_resistance and input_capacitance to a [[devices]] table",
         )
     yield from open_point("stability-phase-margin", stage, ("loop", "device"), gap)
-    if margin is None or margin >= wanted:
+    if margin is None:
+        return
+    low = loop.phase_margin_worst.low
+    at_corner = low is not None and low < limits["least"] <= margin
+    if margin >= wanted and not at_corner:
         return
     bases = _bases(stage)
     row: Broken = "reserve"
@@ -128,24 +132,30 @@ def judge_phase_margin(stage: Stage, limits: Limits, design: Design) -> Iterator
         row = "typical"
     elif margin < limits["least"]:
         row = "guaranteed"
-    does = "oscillates" if margin <= 0 else "rings" if margin >= limits["least"] else "rings long"
+    elif at_corner:
+        row = "default-corner"
+    held = low if at_corner and low is not None else margin
+    does = "oscillates" if held <= 0 else "rings" if held >= limits["least"] else "rings long"
     load = stage.current.load_capacitance
     with_load = f" with {si(load, 'F')} at its output" if load else ""
+    then = f", {si(low, '°')} at a corner of the tolerances" if at_corner else ""
     yield stage_finding(
         "stability-phase-margin",
         stage,
         TABLE[row][evidence(*bases)],
         f"{stage.schematic}'s loop closes at {si(loop.crossover, 'Hz')} with a phase margin of "
-        f"{si(margin, '°')}{with_load}, so it {does}; {si(wanted, '°')} is wanted.",
+        f"{si(margin, '°')}{with_load}{then}, so it {does}{' there' if at_corner else ''}; "
+        f"{si(wanted, '°')} is wanted.",
         nets=(stage.output.net,),
         demand=wanted,
-        limit=margin,
-        margin=margin - wanted,
+        limit=held,
+        margin=held - wanted,
         unit="°",
         basis=("netlist", *bases),
         remedy=_phase_remedy(stage),
         source="Texas Instruments TIDU535 designs for more than 45°; "
         f"{cited(stage, bases[0] if bases else 'practice')}",
+        corner="worst-case" if at_corner else "nominal",
     )
 
 
@@ -219,7 +229,8 @@ PHASE_MARGIN = Rule(
     reason="The less margin, the longer a step rings; at none the stage oscillates.",
     source="Texas Instruments TIDU535; S. Franco, Design with Operational Amplifiers, 3rd ed., "
     "ch. 8",
-    silent="Comparators, oscillators, unused channels. Where a figure that matters is not listed "
+    silent="Comparators, oscillators, unused channels. What tolerances leave between the least and "
+    "the wanted margin: that is what the reserve is for. Where a figure that matters is not listed "
     "the margin is not known and listed as not checked.",
     limits=(
         _WANTED,
@@ -227,7 +238,8 @@ PHASE_MARGIN = Rule(
             name="least",
             default=20.0,
             unit="°",
-            meaning="phase margin below which it counts like a guaranteed limit",
+            meaning="phase margin below which it counts like a guaranteed limit, and which "
+            "tolerances may not reach either",
             source=NO_SOURCE,
         ),
     ),

@@ -78,6 +78,31 @@ def test_phase_margin(degrees, severity):
     )
 
 
+@pytest.mark.parametrize(
+    ("nominal", "low", "severity"),
+    [
+        (60.0, 40.0, None),  # the reserve is there for tolerances
+        (60.0, 19.0, "minor"),
+        (30.0, 10.0, "minor"),
+        (30.0, 25.0, "minor"),
+        (10.0, 5.0, "major"),
+        (80.0, None, None),
+    ],
+)
+def test_phase_margin_at_a_corner(nominal, low, severity):
+    """Tolerances may use up what is wanted, but not go below the least."""
+    loop = Loop(
+        dc="negative", crossover=1e6, phase_margin=nominal, phase_margin_worst=Range(low, 90.0)
+    )
+    found = findings(PHASE_MARGIN, stage(loop=loop))
+    assert [f.severity for f in found] == ([severity] if severity else [])
+    at_corner = nominal >= 20.0 and low is not None and low < 20.0
+    for one in found:
+        assert one.corner == ("worst-case" if at_corner else "nominal")
+        assert one.limit == (low if at_corner else nominal)
+        assert ("at a corner of the tolerances" in one.message) == at_corner
+
+
 def test_the_remedy_fits_the_cause():
     """A capacitive load wants a resistor, a large feedback resistor a capacitor."""
     load = Current(load_capacitance=10e-9)
