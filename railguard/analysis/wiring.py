@@ -5,7 +5,13 @@ from collections.abc import Mapping
 from railguard.circuit.model import GROUND, Circuit, Element
 from railguard.circuit.rails import level_from_name
 from railguard.devices.model import Channel, PinOrder
-from railguard.devices.pinouts import USUAL, USUAL_CHANNEL
+from railguard.devices.pinnames import channels_from
+from railguard.devices.pinouts import PACKAGES, USUAL, USUAL_CHANNEL
+
+PACKAGE_CHANNELS = tuple(
+    channel for name in ("SOT-23-5", "SC70-5") for channel in channels_from(PACKAGES[name])
+)
+"""Both pin-outs of single amplifiers in small packages; which a device has, its order code says."""
 
 
 def stiff_nets(circuit: Circuit) -> dict[str, float | None]:
@@ -59,8 +65,9 @@ def order_by_wiring(
 
     An assumed order stands unless it drives a supply with the output, or ground, and leaves a
     supply pin without one. Then the first of these stands that does not: on a board card the order
-    of the schematic symbol (the usual one); on both, the output before the supplies, where that net
-    feeds the inverting input back, which no supply does.
+    of the schematic symbol (the usual one); elsewhere the output before the supplies; on both, the
+    pins 1 to 5 of a small package. All but the usual one only where the output feeds the inverting
+    input back, which no supply does.
     """
     nets = element.nets
     if order.basis != "assumed" or len(order.channels) != 1 or len(nets) != len(USUAL):
@@ -81,16 +88,17 @@ def order_by_wiring(
             and nets[channel.positive or 0] != nets[channel.negative or 0]
         )
 
+    def shows(channel: Channel) -> bool:
+        back = frozenset((nets[channel.output], nets[channel.minus]))
+        return fits(channel) and (len(back) == 1 or back in joined)
+
     (assumed,) = order.channels
-    if element.kind == "ic":
-        (usual,) = USUAL_CHANNEL
-        if not fits(assumed) and fits(usual):
-            return _shown(usual)
-        return order
-    early = _output_third(nets, rails)
-    fed_back = nets[2] == nets[1] or frozenset(nets[1:3]) in joined
-    if contradicted(assumed) and fits(early) and fed_back:
-        return _shown(early)
+    board = element.kind == "ic"
+    if board and not fits(assumed) and fits(USUAL_CHANNEL[0]):
+        return _shown(USUAL_CHANNEL[0])
+    if (board and not shows(assumed)) or contradicted(assumed):
+        others = PACKAGE_CHANNELS if board else (_output_third(nets, rails), *PACKAGE_CHANNELS)
+        return next((_shown(channel) for channel in others if shows(channel)), order)
     return order
 
 

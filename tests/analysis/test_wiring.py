@@ -47,6 +47,28 @@ def test_a_board_card_in_the_order_of_its_symbol_or_its_package(card):
     assert found.output.demand.high == pytest.approx(5.0, rel=0.01)
 
 
+@pytest.mark.parametrize(
+    "card",
+    [
+        "XU1 out vee p m vcc TLV9061",  # pins 1 to 5 of SOT-23-5: out, V-, in+, in-, V+
+        "XU1 p vee m out vcc LMV321",  # TI SLOS263, SOT-23-5 and SC70-5: in+, GND, in-, out, VCC
+        "U1 p vee m out vcc OP27G",
+    ],
+)
+def test_an_export_in_the_order_of_a_small_package(card):
+    """Nets in the order of pins 1 to 5, as schematic editors write them: no swapped supplies."""
+    found, remarks = stage(card)
+    assert (found.supply.positive, found.supply.negative) == (12.0, -12.0)
+    assert found.output.demand.high == pytest.approx(5.0, rel=0.02)
+    assert "taken from what stands on the nets" in remarks
+
+
+def test_supplies_swapped_at_a_small_package_stay_swapped():
+    """The output shows the package; which supply pin is which, the package says."""
+    found, _ = stage("XU1 out vcc p m vee TLV9061")
+    assert (found.supply.positive, found.supply.negative) == (-12.0, 12.0)
+
+
 def test_an_output_on_a_supply_is_no_other_order():
     """Nothing feeds the third net back: the output is tied, which is a fault."""
     found, remarks = stage("XU1 p m vcx 0 vcc TL072\nRX vcc vcx 10")
