@@ -55,6 +55,14 @@ class Solved:
         """Return the first amplifier's loop transmission."""
         return complex(return_ratios(self.network, np.array([hertz]))[0, 0])
 
+    def unlimited(self, source, net, hertz):
+        """Return the gain that the feedback network alone gives: A (1 + 1/T).
+
+        What an op-amp without end would make of it, at the loop transmission T of the real one
+        (H. W. Bode's return ratio, from memory; what passes the op-amp by is left out).
+        """
+        return self.gain(source, net, hertz) * (1 + 1 / self.loop_gain(hertz))
+
     def corner(self, source, net, start, stop):
         """Return where the magnitude passes 0.7071 of the larger of its values at two frequencies."""
         ends = [abs(self.gain(source, net, f)) for f in (start, stop)]
