@@ -31,6 +31,7 @@ NAMED = {
     "composite amplifier": "composite_gauge",
     "servo loop": "hydrophone_servo",
     "bridge-tied pair": "siren_bridge",
+    "boosted output": "sluice_driver",
     "4-20 mA transmitter, two wires": "loop_transmitter",
     "4-20 mA transmitter, three wires": "three_wire_transmitter",
 }

@@ -33,7 +33,8 @@ def of_gain(carrier: Carrier) -> str:
     carries = f"{verb} {si(carrier.carries, 'A')}"
     if carrier.gain is None:
         return carries
-    note = "as its model states" if carrier.gain_stated else NO_GAIN
+    stated = "as its model states" if len(carrier.designators) == 1 else "as their models state"
+    note = stated if carrier.gain_stated else NO_GAIN
     return f"{carries} at a current gain of {si(carrier.gain, '')} ({note})"
 
 

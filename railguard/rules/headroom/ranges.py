@@ -91,7 +91,7 @@ def judge_output(stage: Stage, limits: Limits, design: Design) -> Iterator[Outco
     messages = [_output_message(stage, bound, broken)]
     if _is_stuck(stage, bound, broken):
         messages.append("All of its range lies beyond, so it is stuck there and passes no signal.")
-    messages += [f"That holds {of_volts(carrier)}." for carrier in stage.current.carriers]
+    messages += [f"That counts {of_volts(carrier)}." for carrier in stage.current.carriers]
     messages += [_other_end(b, x) for b, x in sides[1:]]
     yield breach_finding(
         "headroom-output",
