@@ -121,7 +121,9 @@ _EXAMPLES = {
     "%": "5 % or 0.05",
 }
 
-_NUMBER = re.compile(r"([+-]?)([0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE]([+-]?[0-9]{1,4}))?(.*)", re.DOTALL)
+_NUMBER = re.compile(
+    r"([+-]?)([0-9]+(?:\.[0-9]*)?|\.[0-9]+)(?:[eE]([+-]?[0-9]{1,4}))?(.*)", re.DOTALL
+)
 _RKM_TAIL = re.compile(r"([A-Za-zµμΩ])([0-9]+)(\D*)")
 _RKM_BELOW_ONE = re.compile(r"[Rr]([0-9]+)")
 _DECIMAL_COMMA = re.compile(r"[0-9],[0-9]")

@@ -89,7 +89,7 @@ def package_heat(stages: Iterable[Stage]) -> dict[str, float | None]:
 PINS = {1: (5, 8), 2: (8, 10), 4: (14, 16)}
 """Fewest and most pins of the cases that hold so many amplifiers."""
 _METAL_CAN_PINS = 8
-_PINS = re.compile(r"-?(\d+)$")
+_PINS = re.compile(r"(?<!\d)-?(\d+)$")
 
 
 def case_of(device: Device | None, channels: int | None, text: str) -> Case | None:

@@ -2,7 +2,7 @@
 
 from collections.abc import Mapping
 
-from railguard.circuit.expressions import DEEPEST, ExpressionError, Function, evaluate
+from railguard.circuit.expressions import DEEPEST, ExpressionError, Function, Work, evaluate
 from railguard.circuit.model import Element, Instance
 from railguard.circuit.scopes import Scope
 from railguard.circuit.written import unquoted
@@ -21,6 +21,7 @@ class Environment:
     deepest     parentheses inside parentheses of one expression
     deck_wide   what has been said once for the whole deck
     borrowed    (parameter, subcircuit) found only with a caller, in the whole deck
+    work        what the expressions of the whole deck have cost
 
     Where a name is found nowhere outside, the caller's are looked through: some SPICE programs do,
     so decks rely on it.
@@ -38,6 +39,7 @@ class Environment:
         self.deepest: int = caller.deepest if caller is not None else DEEPEST
         self.deck_wide: set[str] = caller.deck_wide if caller is not None else set()
         self.borrowed: set[tuple[str, str]] = caller.borrowed if caller is not None else set()
+        self.work: Work = caller.work if caller is not None else Work()
         self._outer = outer
         self._values = dict(given)
         self._caller = caller
@@ -113,6 +115,6 @@ class Environment:
         found = self._known.get(text)
         if found is None:
             found = self._known[text] = evaluate(
-                unquoted(text), self.look, self.functions, self.deepest
+                unquoted(text), self.look, self.functions, self.deepest, self.work
             )
         return found

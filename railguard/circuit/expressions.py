@@ -38,12 +38,14 @@ DEEPEST = 64
 """Nested parentheses and calls of one expression."""
 MOST_STEPS = 50_000
 """Operations of one expression with all the functions it calls."""
+MOST_STEPS_OF_A_DECK = 10_000_000
+"""Operations of all expressions of a deck: some ten seconds."""
 _TOO_DEEP = "the expression is longer or deeper than the bound allows"
 _T = terminals("expression.lark")
 _OPERAND = rf"(?:(?P<number{{0}}>{_T['NUMBER']})|(?P<name{{0}}>{_T['NAME']}))"
 _SHORT = re.compile(
-    rf"\s*(?P<sign>{_T['ADD']})?\s*{_OPERAND.format(1)}\s*"
-    rf"(?:(?P<operator>{_T['ADD']}|{_T['MULTIPLY']})\s*{_OPERAND.format(2)}\s*)?"
+    rf"\s*+(?P<sign>{_T['ADD']})?\s*+{_OPERAND.format(1)}\s*+"
+    rf"(?:(?P<operator>{_T['ADD']}|{_T['MULTIPLY']})\s*+{_OPERAND.format(2)}\s*+)?"
 )
 
 
@@ -71,16 +73,24 @@ class Function(msgspec.Struct, frozen=True):
     body: str
 
 
+class Work:
+    """What the expressions of one deck have cost so far."""
+
+    steps = 0
+
+
 def evaluate(
     text: str,
     lookup: Lookup,
     functions: Mapping[str, Function] = MappingProxyType({}),
     deepest: int = DEEPEST,
+    work: Work | None = None,
 ) -> float:
     """Return an expression's value.
 
     lookup   gives a parameter's value by its lower-cased name, or raises ExpressionError
     deepest  how deep its parentheses may be nested
+    work     of the deck it stands in, where that is counted
 
     Raises  ExpressionError: bad syntax, an unknown name, a division by zero, a run-time value
     """
@@ -92,9 +102,20 @@ def evaluate(
         if _NAME.match(plain) and plain.lower() not in _RESERVED:
             return lookup(plain.lower())
         tree = parse(plain, deepest)
-        return _Evaluator(lookup, functions, itertools.count()).value(tree, 0)
+        return _evaluated(_Evaluator(lookup, functions, itertools.count()), tree, work or Work())
     except RecursionError:
         raise ExpressionError("it rests on too long a chain of parameters or functions") from None
+
+
+def _evaluated(evaluator: "_Evaluator", tree: Node, work: Work) -> float:
+    if work.steps > MOST_STEPS_OF_A_DECK:
+        raise ExpressionError(
+            f"the expressions of this deck take more than {MOST_STEPS_OF_A_DECK:,} steps"
+        )
+    try:
+        return evaluator.value(tree, 0)
+    finally:
+        work.steps += evaluator.steps
 
 
 @lru_cache(maxsize=4096)
@@ -223,6 +244,11 @@ class _Evaluator:
         self._lookup = lookup
         self._functions = functions
         self._steps = steps
+
+    @property
+    def steps(self) -> int:
+        """Operations up to now."""
+        return next(self._steps)
 
     def value(self, node: Node, depth: int) -> float:
         if next(self._steps) > MOST_STEPS:

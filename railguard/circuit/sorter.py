@@ -5,7 +5,7 @@ from collections import Counter
 
 import msgspec
 
-from railguard.circuit.expressions import ExpressionError, Function, evaluate
+from railguard.circuit.expressions import DEEPEST, ExpressionError, Function, Work, evaluate
 from railguard.circuit.model import Analysis
 from railguard.circuit.scopes import Scope
 from railguard.circuit.written import split_parameters, text_of, unquoted
@@ -49,6 +49,7 @@ class _Sorter:
         self.problems: list[Problem] = []
         self.connected: list[tuple[str, str]] = []
         self.commas = False
+        self.work = Work()
         self.gnd_ports: list[tuple[str, Line]] = []
         self.conditions: list[Line] = []
         self.taken: list[bool] = []
@@ -304,17 +305,23 @@ class _Sorter:
         if line.text.split("(")[0].strip().lower() in (".if", ".elseif", ".elif"):
             text = line.text[line.text.index("(") :]
         stack = list(reversed(self.stack))
+        known: dict[str, float] = {}
 
         def look(name: str) -> float:
+            if name in known:
+                return known[name]
             for scope in stack:
                 found = scope.parameters.get(name)
                 written = found[0] if found is not None else scope.defaults.get(name)
                 if written is not None:
-                    return evaluate(unquoted(written), look, scope.functions)
+                    value = known[name] = evaluate(
+                        unquoted(written), look, scope.functions, DEEPEST, self.work
+                    )
+                    return value
             raise ExpressionError(f"{name} is not defined")
 
         try:
-            return bool(evaluate(text, look, self.top.functions))
+            return bool(evaluate(text, look, self.top.functions, DEEPEST, self.work))
         except (ExpressionError, RecursionError) as error:
             why = error if isinstance(error, ExpressionError) else "it rests on itself"
             self.problem(

@@ -20,15 +20,15 @@ MIL = 25.4e-6
 
 GREEK_MU = "μ"
 _NUMBER = re.compile(
-    r"^(?P<sign>[+-]?)(?P<digits>\d+\.?\d*|\.\d+)(?:[eE](?P<exponent>[+-]?\d{1,4}))?(?P<tail>[^\d\s].*)?$"
+    r"^(?P<sign>[+-]?)(?P<digits>\d+(?:\.\d*)?|\.\d+)(?:[eE](?P<exponent>[+-]?\d{1,4}))?(?P<tail>[^\d\s].*)?$"
 )
 _LEADING = re.compile(
-    r"^(?P<digits>[+-]?(?:\d+\.?\d*|\.\d+))(?:[eE](?P<exponent>[+-]?\d{1,4}))?(?P<tail>[A-Za-zµ]*)"
+    r"^(?P<digits>[+-]?(?:\d+(?:\.\d*)?|\.\d+))(?:[eE](?P<exponent>[+-]?\d{1,4}))?(?P<tail>[A-Za-zµ]*)"
 )
 _CODED = re.compile(
     r"^(?P<whole>\d*)(?P<mark>[RrKkMmGgLTtpPnNuUµμfF])(?P<part>\d{1,3})(?P<unit>[A-Za-zΩΩ]*)$"
 )
-_D_EXPONENT = re.compile(r"^([+-]?\d+\.?\d*|\.\d+)[dD]([+-]?\d{1,4})(.*)$")
+_D_EXPONENT = re.compile(r"^([+-]?\d+(?:\.\d*)?|\.\d+)[dD]([+-]?\d{1,4})(.*)$")
 _TAIL = re.compile(r"^[A-Za-zµμΩΩ°]*$")
 _CODES = {
     "R": 0, "r": 0, "K": 3, "k": 3, "G": 9, "g": 9, "T": 12, "t": 12, "p": -12, "P": -12, "n": -9,

@@ -91,7 +91,7 @@ def spell_out(base: str) -> Iterator[str]:
 
     Only sets are known, not ranges or other signs of regular expressions.
     """
-    pieces = re.split(r"\[([^\]]+)\]", base.upper())
+    pieces = re.split(r"\[([^\[\]]+)\]", base.upper())
     for letters in product(*pieces[1::2]):
         spelled = pieces[0]
         for letter, rest in zip(letters, pieces[2::2], strict=True):

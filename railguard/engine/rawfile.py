@@ -17,7 +17,7 @@ Vector = NDArray[np.float64] | NDArray[np.complex128]
 
 _BINARY = b"Binary:\n"
 _COUNTS = re.compile(r"^No\. (Variables|Points):\s*(\d+)", re.MULTILINE)
-_NAME = re.compile(r"^Plotname:\s*(.*?)\s*$", re.MULTILINE)
+_NAME = re.compile(r"^Plotname:(.*)$", re.MULTILINE)
 _VARIABLE = re.compile(r"^\s+\d+\t(\S+)\t", re.MULTILINE)
 
 
@@ -69,7 +69,7 @@ def _plots(data: bytes) -> Iterator[Plot]:
         rows: Vector = reals if wide == 1 else reals.view(np.complex128)
         table = rows.reshape(points, len(names))
         columns = {name.lower(): table[:, index] for index, name in enumerate(names)}
-        yield Plot(title[1], columns, points)
+        yield Plot(title[1].strip(), columns, points)
 
 
 def read_raw(data: bytes) -> tuple[Plot, ...]:

@@ -24,13 +24,13 @@ FUNCTIONS = frozenset(
 """What means the same in every simulator; `limit` and `table` do not."""
 
 _WORD = re.compile(
-    r"\s*(?:(?P<volts>v\s*\(\s*[^(),\s]+\s*(?:,\s*[^(),\s]+\s*)?\))"
-    r"|(?P<number>(?:\d+\.?\d*|\.\d+)(?:e[+-]?\d+)?[a-z]*)"
+    r"\s*+(?:(?P<volts>v\s*\(\s*[^(),\s]+\s*(?:,\s*[^(),\s]+\s*)?\))"
+    r"|(?P<number>(?:\d+(?:\.\d*)?|\.\d+)(?:e[+-]?\d+)?[a-z]*)"
     r"|(?P<name>[a-z_]\w*)"
     r"|(?P<sign>\*\*|<=|>=|==|!=|[-+*/^(),<>]))",
     re.IGNORECASE,
 )
-_POLY = re.compile(r"poly\s*\(?\s*(\d+)\s*\)?", re.IGNORECASE)
+_POLY = re.compile(r"poly\s*+\(?\s*+(\d+)\s*\)?", re.IGNORECASE)
 
 
 class Relation(msgspec.Struct, frozen=True):

@@ -10,7 +10,7 @@ from railguard.deck.numbers import read_number
 from railguard.redline.model import Edit
 
 _WORD = re.compile(r"[^\s(),={}'\"]+")
-_NUMBER = re.compile(r"^([+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?)([A-Za-zµμΩΩ]*)$")
+_NUMBER = re.compile(r"^([+-]?(?:\d+(?:\.\d*)?|\.\d+)(?:[eE][+-]?\d+)?)([A-Za-zµμΩΩ]*)$")
 _CODED = re.compile(r"^\d*[RrKkMmLpPnNuUµμ]\d+[A-Za-zΩΩ]*$")
 _SCALES = (
     (1e12, "T"), (1e9, "G"), (1e6, "meg"), (1e3, "k"), (1.0, ""), (1e-3, "m"), (1e-6, "u"),

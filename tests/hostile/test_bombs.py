@@ -1,10 +1,12 @@
 """Small decks that ask for endless work: each comes to an end, and the report says what was left.
 
-Nothing is timed: what is not bounded here does not end within a day.
+Nothing is timed: what is not bounded here does not end within a day. `test_bounds` runs them once
+more in a process of its own, with bounds on what that may take.
 """
 
 import pytest
 
+from railguard.circuit import expressions
 from railguard.circuit.expressions import MOST_STEPS
 from railguard.deck.bounds import Bounds
 from railguard.reviewing import review
@@ -94,6 +96,24 @@ def test_functions_that_call_others_twice():
     assert f"{MOST_STEPS:,} steps" in told
 
 
+def test_a_thousand_calls_of_such_functions(monkeypatch):
+    """Each stays below its own bound; the deck has one as well."""
+    monkeypatch.setattr(expressions, "MOST_STEPS_OF_A_DECK", 3 * MOST_STEPS)
+    functions = [f".func f{n}(x)={{f{n - 1}(x)+f{n - 1}(x)}}" for n in range(1, 60)]
+    calls = [f"Rx{n} in 0 {{f59({n})}}" for n in range(1_000)]
+    found = reviewed("\n".join([".func f0(x)={x+x}", *functions, *calls]))
+    told = [f.message for f in found.findings if f.rule == "netlist-expression"]
+    assert sum(f"more than {MOST_STEPS:,} steps" in one for one in told) <= 4
+    assert any(f"this deck take more than {3 * MOST_STEPS:,} steps" in one for one in told)
+
+
+def test_a_condition_on_a_chain_of_parameters():
+    """Each is asked for twice by the next: 2^60 ways down."""
+    cards = [f".param a{n}={{a{n - 1}+a{n - 1}}}" for n in range(1, 61)]
+    found = reviewed("\n".join([".param a0=1", *cards, ".if (a60 > 1)", "Rx in 0 1k", ".endif"]))
+    assert "Rx" in [e.designator for e in found.design.circuit.elements]
+
+
 def test_functions_that_call_themselves():
     """They have no end and no value."""
     found = reviewed(".func f(x)={f(x)+f(x)}\nRx in 0 {f(1)}")
@@ -164,6 +184,12 @@ ENDLESS = {
     "a long name": "R" + "9" * 900_000 + " in 0 1k",
     "many digits": "R9 in 0 " + "1" * 9_000 + "\nR8 in 0 1e" + "9" * 9_000,
     "digits in an expression": "R9 in 0 {" + "1" * 9_000 + "}",
+    "digits and a mark, often": ("R9 in 0 {" + "7" * 9_000 + "!}\n") * 100,
+    "digits in quotes, often": ("R9 in 0 '" + "7" * 9_000 + "!'\n") * 100,
+    "blanks in an expression, often": ("R9 in 0 {1" + " " * 9_000 + "!}\n") * 100,
+    "parentheses, often": ("R9 in 0 {" + "(" * 4_000 + "1" + ")" * 4_000 + "}\n") * 100,
+    "braces inside braces": "R9 in 0 " + "{" * 9_000 + "1",
+    "braces beside braces": "R9 in 0 {" + "{1}" * 3_000,
     "deep parentheses": "R9 in 0 {" + "(" * 4_000 + "1" + ")" * 4_000 + "}",
     "deep calls": "V9 a 0 " + "SIN(" * 100_000,
     "signs": "R9 in 0 {" + "-" * 9_000 + "1}",

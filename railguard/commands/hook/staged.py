@@ -27,7 +27,7 @@ _PLAIN_GREP = (
 
 # git compares bytes. In UTF-16 every second one is NUL, which `[^_]` takes and `.` does not.
 _CARD = r"\.[^_]?(i[^_]?n[^_]?c|l[^_]?i[^_]?b)"
-_INCLUDE = re.compile(r"^\s*\.(?:include|incl|inc|lib)\s+(.+?)\s*$", re.IGNORECASE)
+_INCLUDE = re.compile(r"^\s*\.(?:include|incl|inc|lib)\s+(\S.*)$", re.IGNORECASE)
 _WORDS = re.compile(r"\"[^\"]*\"|'[^']*'|\S+")
 
 
@@ -132,7 +132,7 @@ def targets_of(card: str) -> Iterator[str]:
     match = _INCLUDE.match(card.lstrip("\ufeff"))
     if match is None:
         return
-    for whole in dict.fromkeys((match[1], match[1].split(";")[0].rstrip())):
+    for whole in dict.fromkeys((match[1].rstrip(), match[1].split(";")[0].rstrip())):
         words = _WORDS.findall(whole)
         yield _bare(whole)
         if len(words) > 1:
