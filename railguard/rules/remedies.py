@@ -2,7 +2,7 @@
 
 import math
 
-from railguard.analysis.stage import Design, Stage
+from railguard.analysis.stage import Bound, Design, Stage
 from railguard.circuit.model import Element
 from railguard.units import preferred, si
 
@@ -38,6 +38,66 @@ def own_gain(stage: Stage) -> float | None:
     return {"non-inverting": noise_gain, "inverting": 1 - noise_gain}.get(stage.topology)
 
 
+def kept_level(stage: Stage) -> float | None:
+    """Return the output's level at which no gain matters: what the gain multiplies counts from it.
+
+    For a non-inverting stage the potential its ground leg goes to, for an inverting one that of its
+    non-inverting input; the output's own level where the gain at DC is one. Otherwise a signal that
+    is level and swing at once is taken to count from ground.
+    """
+    level, gain, plus = stage.output.level, stage.loop.noise_gain_dc, stage.inputs.plus.level
+    if level is None or (stage.ac_coupled and (gain is None or gain < ONE)):
+        return level
+    if stage.topology.startswith("inverting") or stage.topology in ("summing", "transimpedance"):
+        return plus if plus is not None else level
+    if stage.topology == "follower":
+        return 0.0
+    if stage.topology.startswith("non-inverting") and gain is not None and plus is not None:
+        return (level - gain * plus) / (1.0 - gain) if gain >= ONE else 0.0
+    return level
+
+
+ONE = 1.02
+"""A noise gain below this is one: nothing multiplies the level."""
+
+
+def share_that_fits(stage: Stage, bound: Bound, other: Bound) -> float:
+    """Return the largest share of a stage's gain that keeps `bound`, or 0 where none does.
+
+    Every limit known counts, at nominal and at the corners; those of the other side where less gain
+    helps there as well.
+    """
+    kept = kept_level(stage)
+    if kept is None:
+        return 0.0
+    nominal = [_share(bound, kept, bound.demand, limit) for limit in _limits(bound)]
+    corners = [
+        _share(side, kept, pair.demand, pair.limit)
+        for side in (bound, other)
+        for pair in (side.stated, side.default)
+        if pair is not None
+    ]
+    corners += [_share(other, kept, other.demand, limit) for limit in _limits(other)]
+    least = min([*nominal, *(share for share in corners if share > 0)], default=0.0)
+    return least if LEAST_SHARE <= least < 1 else 0.0
+
+
+def _limits(bound: Bound) -> tuple[float, ...]:
+    found = (bound.guaranteed, bound.typical, bound.absolute)
+    return tuple(limit for limit in found if limit is not None)
+
+
+def _share(bound: Bound, kept: float, demand: float | None, limit: float) -> float:
+    """Return the share of the way from the kept level to a demand that meets its limit."""
+    if demand is None or ((demand <= limit) if bound.upper else (demand >= limit)):
+        return 1.0
+    return (limit - kept) / (demand - kept) if demand != kept else 0.0
+
+
+LEAST_SHARE = 0.05
+"""A smaller share of the gain is no remedy: the level is what stands wrong."""
+
+
 def smaller_gain(stage: Stage, factor: float, design: Design) -> str:
     """Say how to lower a stage's gain by a factor below one: `R2 = 82 kΩ instead of 100 kΩ`.
 
@@ -46,6 +106,8 @@ def smaller_gain(stage: Stage, factor: float, design: Design) -> str:
     if not 0 < factor < 1:
         return ""
     gain = own_gain(stage)
+    if stage.topology == "follower" and (gain is None or gain > 1 / ONE):
+        return f"attenuate its signal to at most {si(100 * factor, '%')} of what it is"
     if gain is None:
         return f"lower the gain to {si(100 * factor, '%')} of what it is"
     target = gain * factor

@@ -9,8 +9,14 @@ from railguard.rules.compose import (
     open_point,
 )
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
-from railguard.rules.remedies import other_rail, reached_unloaded, sentence, smaller_gain
-from railguard.rules.severity import Breach, breach, gravity
+from railguard.rules.remedies import (
+    other_rail,
+    reached_unloaded,
+    sentence,
+    share_that_fits,
+    smaller_gain,
+)
+from railguard.rules.severity import ROUNDING, Breach, breach, gravity
 from railguard.rules.wording import (
     device_on,
     limit_note,
@@ -145,7 +151,7 @@ def _other_end(bound: Bound, broken: Breach) -> str:
     end = "upper" if bound.upper else "lower"
     if broken.broken == "reserve":
         return f"At the {end} end {si(broken.margin, 'V')} is left."
-    asked, reached = si(broken.demand, "V"), si(broken.limit, "V")
+    asked, reached = _volts(broken.demand, bound), si(broken.limit, "V")
     return f"At the {end} end {asked} is asked for and {reached} reached."
 
 
@@ -154,15 +160,15 @@ def _output_remedy(
 ) -> str:
     level = stage.output.level or 0.0
     outside = level > broken.limit if bound.upper else level < broken.limit
-    gain = ""
-    if not outside and broken.broken != "reserve" and broken.demand != level:
-        gain = smaller_gain(stage, (broken.limit - level) / (broken.demand - level), design)
-    shift = ""
-    if outside:
-        if len(stage.gain) == 1 and broken.demand:
-            gain = smaller_gain(stage, broken.limit / broken.demand, design)
+    gain = shift = ""
+    opposite = stage.output.low if bound.upper else stage.output.high
+    share = share_that_fits(stage, bound, opposite)
+    if broken.broken != "reserve" and not (outside and len(stage.gain) != 1):
+        gain = smaller_gain(stage, share, design)
+    if outside or (not gain and broken.broken != "reserve" and _has_room(bound, opposite)):
         side = "below" if bound.upper else "above"
-        shift = f"move the output's level ({si(level, 'V')}) {side} {si(broken.limit, 'V')}"
+        target = broken.limit if outside else level + broken.limit - broken.demand
+        shift = f"move the output's level ({_volts(level, bound)}) {side} {si(target, 'V')}"
     device = ""
     family = stage.family
     rail = stage.supply.positive if bound.upper else stage.supply.negative
@@ -179,6 +185,19 @@ def _output_remedy(
         other = f"attenuate or shift its signal so that the output stays {side} "
         other += si(broken.limit, "V")
     return sentence(load, gain, shift, rail_words, device, other)
+
+
+def _has_room(bound: Bound, opposite: Bound) -> bool:
+    """Tell whether the demanded span fits between the limits, moved as a whole."""
+    ends = (bound.typical, opposite.typical)
+    if bound.span is None or ends[0] is None or ends[1] is None:
+        return False
+    return 0 < bound.span <= abs(ends[0] - ends[1])
+
+
+def _volts(value: float, bound: Bound) -> str:
+    """Write a voltage; what arithmetic leaves of zero is zero."""
+    return si(0.0 if abs(value) < ROUNDING * (bound.span or 1.0) else value, "V")
 
 
 OUTPUT = Rule(

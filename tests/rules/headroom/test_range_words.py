@@ -2,24 +2,28 @@
 
 import pytest
 
-from railguard.analysis.stage import Output, Pair, Range
+from railguard.analysis.stage import Loop, Output, Pair, Range
 from railguard.devices.model import SwingPoint
 from railguard.rules.headroom.ranges import INPUT, OUTPUT
 from tests.rules.stages import (
     FAMILY,
     bound,
     changed,
+    design,
     findings,
     high,
     inputs,
     low,
     open_points,
+    pin,
+    single,
     stage,
 )
 
 TO_THE_RAILS = changed(FAMILY, rail_to_rail_output=True, rail_to_rail_input=True)
 STUCK = "All of its range lies beyond, so it is stuck there and passes no signal."
-GAIN = "Lower the gain from 11 to at most 10.5 (R2 = 9.1 kΩ instead of 10 kΩ)"
+# What is sure to be reached is 9.5 V: a gain of 11 * 9.5 / 11, so R2 of 8.5 kΩ, the next below.
+GAIN = "Lower the gain from 11 to at most 9.5 (R2 = 8.2 kΩ instead of 10 kΩ)"
 CLOSER = "fit a device whose output comes closer to the rail"
 
 
@@ -35,6 +39,26 @@ def asked(most, least, level=0.0, upper=None, lower=None, **fields):
             low=low(least, **{**common, **(lower or {})}),
         ),
         **fields,
+    )
+
+
+def single_supply(most, least, level, gain, plus, topology="non-inverting"):
+    """Make a stage on 5 V from ground that reaches 0 V and 4.9 V and takes no more supply."""
+    side = {"level": level, "span": most - least}
+    return stage(
+        topology=topology,
+        supply=single(),
+        family=changed(TO_THE_RAILS, supply_high=5.0),
+        gain=(("in", gain),),
+        inputs=inputs(plus=pin("in", level=plus)),
+        loop=Loop(dc="negative", noise_gain_dc=gain, beta_dc=1 / gain),
+        output=Output(
+            net="out",
+            level=level,
+            demand=Range(least, most),
+            high=bound(True, demand=most, typical=4.9, guaranteed=4.9, absolute=5.0, **side),
+            low=bound(False, demand=least, typical=0.0, guaranteed=0.0, absolute=0.0, **side),
+        ),
     )
 
 
@@ -133,8 +157,8 @@ def test_what_is_said_of_an_output(one, message):
         (asked(3.0, -9.48), f"{CLOSER.capitalize()}."),
         # the level itself is outside: it is moved, or scaled where a gain makes it
         (
-            asked(11.5, 11.0, level=11.2),
-            "Lower the gain from 11 to at most 10 (R2 = 8.2 kΩ instead of 10 kΩ), or move the "
+            asked(11.5, 11.0, level=11.2, inputs=inputs(plus=pin("in", level=11.2 / 11))),
+            "Lower the gain from 11 to at most 9.09 (R2 = 7.5 kΩ instead of 10 kΩ), or move the "
             "output's level (11.2 V) below 10.5 V, or raise the positive rail to at least 13 V, "
             f"or {CLOSER}.",
         ),
@@ -153,21 +177,28 @@ def test_what_is_said_of_an_output(one, message):
             ),
             "Move the output's level (-11.2 V) above -10.5 V.",
         ),
-        # what the level itself takes of the swing is no gain's
+        # what a reference under the ground leg gives of the level is no gain's: 8.5 V of 10.5 V
         (
-            asked(11.5, -3.0, level=1.0, family=TO_THE_RAILS),
-            "Lower the gain from 11 to at most 9.95 (R2 = 8.2 kΩ instead of 10 kΩ), or raise the "
+            asked(
+                11.5,
+                -3.0,
+                level=1.0,
+                family=TO_THE_RAILS,
+                inputs=inputs(plus=pin("in", level=1.0)),
+            ),
+            "Lower the gain from 11 to at most 8.9 (R2 = 7.5 kΩ instead of 10 kΩ), or raise the "
             "positive rail to at least 13 V.",
         ),
-        # a level on the limit is not outside
+        # a level on the limit is not outside, but no gain helps there
         (
-            asked(11.5, 10.0, level=10.5),
-            f"Raise the positive rail to at least 13 V, or {CLOSER}.",
+            asked(11.5, 10.0, level=10.5, inputs=inputs(plus=pin("in", level=10.5))),
+            "Move the output's level (10.5 V) below 9.5 V, or raise the positive rail to at least "
+            f"13 V, or {CLOSER}.",
         ),
         # no device comes past its rail
         (
             asked(12.0, -3.0, family=changed(FAMILY, supply_high=24.0)),
-            "Lower the gain from 11 to at most 9.62 (R2 = 8.2 kΩ instead of 10 kΩ).",
+            "Lower the gain from 11 to at most 8.71 (R2 = 7.5 kΩ instead of 10 kΩ).",
         ),
     ],
 )
@@ -175,6 +206,37 @@ def test_what_is_proposed_for_an_output(one, remedy):
     """Less gain, another level, another rail, another device: what applies, and nothing else."""
     (found,) = findings(OUTPUT, one)
     assert found.remedy == remedy
+
+
+@pytest.mark.parametrize(
+    ("one", "words"),
+    [
+        # Gain of 2 from ground, 0 V to 7 V asked of 4.9 V: 2 * 4.9 / 7.
+        (
+            single_supply(7.0, 0.0, 3.5, 2.0, plus=1.75),
+            "Lower the gain from 2 to at most 1.4.",
+        ),
+        # The same round 2.5 V: 2 V of swing where 2.4 V is room; a level moved with its gain.
+        (
+            single_supply(5.5, 2.5, 2.5, 2.0, plus=2.5),
+            "Lower the gain from 2 to at most 1.6.",
+        ),
+        # A follower has no gain to lower.
+        (
+            single_supply(5.6, 0.0, 2.8, 1.0, plus=2.8, topology="follower"),
+            "Attenuate its signal to at most 87.5 % of what it is.",
+        ),
+        # A signal that swings round ground on one supply: no gain helps, a reference does.
+        (
+            single_supply(1.0, -1.0, 3e-14, 2.0, plus=1.5e-14),
+            "Move the output's level (0 V) above 1 V.",
+        ),
+    ],
+)
+def test_a_gain_that_makes_the_level_as_well(one, words):
+    """What the gain multiplies counts from where its ground leg goes."""
+    (found,) = findings(OUTPUT, one, design(one, elements=()))
+    assert found.remedy == words
 
 
 def test_a_lighter_load_is_proposed_where_it_would_do():

@@ -124,7 +124,7 @@ def test_the_remedy_names_a_resistor_to_buy():
     """A non-inverting stage with one feedback resistor gets its new value, from E24."""
     one = asked(11.8)
     (found,) = findings(OUTPUT, one, design(one))
-    assert "lower the gain from 11 to at most 9.79 (R2 = 8.2 kΩ instead of 10 kΩ)" in (
+    assert "lower the gain from 11 to at most 8.86 (R2 = 7.5 kΩ instead of 10 kΩ)" in (
         found.remedy[0].lower() + found.remedy[1:]
     )
     assert "raise the positive rail to at least 13.5 V" in found.remedy
