@@ -30,14 +30,15 @@ def filter_of(
     ways: Ways,
     topology: str,
     beta_minus: float | None,
-    gain: float,
+    gain: tuple[float, Range],
     tolerances: Mapping[str, float],
     noise_gain: Range,
 ) -> Filter | None:
     """Return the filter a stage is, or None.
 
     beta_minus  share of the output at the inverting input, V/V (1 for a follower)
-    gain        magnitude in the pass band, where a signal tells it
+    gain        magnitude in the pass band from a signal, and its range: that of the stage where
+                nothing else tells it
     tolerances  share each element may be off, by designator
     noise_gain  its range over the tolerances of the network that sets `beta_minus`
     """
@@ -58,9 +59,9 @@ def filter_of(
         return None
     frequency, quality = found
     kind = _KINDS.get(topology) or _multiple_feedback(amplifier, inner, ways)
-    reference = 1.0 / beta_minus if positive and beta_minus else gain
+    own = (1.0 / beta_minus, noise_gain) if positive and beta_minus else gain
     spans = _spans(stage, found, beta, tolerances, noise_gain)
-    return Filter(kind, frequency, quality, gain or reference, *spans)
+    return Filter(kind, frequency, quality, own[0], *spans, own[1])
 
 
 BUMP = 1e-4

@@ -373,9 +373,9 @@ class Unknown(msgspec.Struct, frozen=True):
 
 
 class Filter(msgspec.Struct, frozen=True):
-    """A recognised filter stage: hertz, quality factor, gain in its pass band.
+    """A recognised filter stage: hertz, quality factor, magnitude of the gain in its pass band.
 
-    frequency_worst, q_worst  with every part around it at its tolerance
+    frequency_worst, q_worst, gain_worst  with every part around it at its tolerance
     """
 
     kind: str
@@ -384,6 +384,7 @@ class Filter(msgspec.Struct, frozen=True):
     gain: float = 1.0
     frequency_worst: Range = Range()
     q_worst: Range = Range()
+    gain_worst: Range = Range()
 
 
 class Case(msgspec.Struct, frozen=True):
@@ -405,7 +406,7 @@ class Stage(msgspec.Struct, frozen=True, kw_only=True):
     family       the catalogue's family, or None
     dissipation  W, of the whole package with all its channels at their worst
     junction     degrees Celsius, at the hottest ambient with that heat
-    transfer     from each net a current arrives at: (net, V/A)
+    transfer     from each net a current arrives at: (net, V/A); `transfer_worst` with tolerances
     gain         from each input net: (net, V/V at DC or in band); `gain_worst` with tolerances
     after        designators of stages whose output reaches this one's inputs
     generic      True for an amplifier without a type: OPAMP
@@ -436,6 +437,7 @@ class Stage(msgspec.Struct, frozen=True, kw_only=True):
     junction: float | None = None
     gain: tuple[tuple[str, float], ...] = ()
     transfer: tuple[tuple[str, float], ...] = ()
+    transfer_worst: tuple[tuple[str, Range], ...] = ()
     gain_worst: tuple[tuple[str, Range], ...] = ()
     after: tuple[str, ...] = ()
     generic: bool = False

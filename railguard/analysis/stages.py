@@ -12,6 +12,7 @@ from railguard.analysis.loops import OPEN_BETA, Margin, loop_of, with_ends
 from railguard.analysis.outputs import output_side
 from railguard.analysis.positive import with_thresholds
 from railguard.analysis.reach import (
+    Gain,
     band_of,
     gains_of,
     high_pass_of,
@@ -151,7 +152,7 @@ def _stage(
         )
     outer = frozenset(a.output for a in solution.amplifiers if a.designator in loop.holds)
     topology = topology_of(amplifier, solution.ways, loop, rails, outer)
-    gains = gains_of(view)
+    gains, transfers = gains_of(view), gains_of(view, "A")
     heat = dissipation(device, supply, output, current, load)
     if heat is None and use in ("comparator", "oscillator"):
         most = most_current(amplifier, solution.ways, supply)
@@ -178,7 +179,8 @@ def _stage(
         dissipation=heat,
         gain=tuple((gain.net, gain.value) for gain in gains),
         gain_worst=tuple((gain.net, gain.worst) for gain in gains),
-        transfer=tuple((gain.net, gain.value) for gain in gains_of(view, "A")),
+        transfer=tuple((gain.net, gain.value) for gain in transfers),
+        transfer_worst=tuple((gain.net, gain.worst) for gain in transfers),
         after=after[view.k],
         generic=amplifier.match.sort == "generic",
         ac_coupled=is_ac_coupled(view),
@@ -189,7 +191,7 @@ def _stage(
             solution.ways,
             topology,
             _share_at_minus(view),
-            max((abs(gain.value) for gain in gains), default=0.0),
+            _largest(gains),
             solution.spread.shares,
             spread_noise_gain,
         ),
@@ -201,6 +203,17 @@ def _stage(
         unknown=unknown,
         location=amplifier.element.location,
     )
+
+
+def _largest(gains: Sequence[Gain]) -> tuple[float, Range]:
+    """Return the largest magnitude among gains, and its range; zero without any."""
+    most = max(gains, key=lambda gain: abs(gain.value), default=None)
+    if most is None:
+        return 0.0, Range()
+    worst = most.worst
+    if most.value < 0 and worst.low is not None and worst.high is not None:
+        worst = Range(-worst.high, -worst.low)
+    return abs(most.value), worst
 
 
 _THROUGH_DIODES = Unknown(

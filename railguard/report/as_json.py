@@ -12,7 +12,7 @@ from typing import Literal
 import msgspec
 
 from railguard import __version__
-from railguard.analysis.stage import Allowed, Range, Stage
+from railguard.analysis.stage import Allowed, Filter, Loop, Range, Stage
 from railguard.location import Location
 from railguard.report.json_text import encoded
 from railguard.report.places import from_root, posix
@@ -124,6 +124,48 @@ class AllowedOut(msgspec.Struct):
     limited_by: str
 
 
+class EndsOut(msgspec.Struct):
+    """What tolerances make of a figure at the most.
+
+    One that hangs on a gain-bandwidth product: with the least and the typical one listed.
+    """
+
+    low: float
+    high: float
+
+
+class GainOut(msgspec.Struct):
+    """From a net a signal arrives at to the output: V/V at DC or in mid-band, or V/A."""
+
+    net: str
+    unit: Literal["V/V", "V/A"]
+    value: float | None
+    spread: EndsOut | None
+
+
+class FilterOut(msgspec.Struct):
+    """A recognised filter of second order."""
+
+    kind: str
+    frequency: float | None
+    q: float | None
+    gain: float | None
+    frequency_spread: EndsOut | None
+    q_spread: EndsOut | None
+    gain_spread: EndsOut | None
+
+
+class SpreadOut(msgspec.Struct):
+    """The ends of the stage's figures of the same names; null where a figure has none."""
+
+    noise_gain: EndsOut | None
+    noise_gain_dc: EndsOut | None
+    noise_gain_crossover: EndsOut | None
+    bandwidth: EndsOut | None
+    phase_margin: EndsOut | None
+    loop_gain: EndsOut | None
+
+
 class StageOut(msgspec.Struct):
     """One op-amp channel."""
 
@@ -143,7 +185,11 @@ class StageOut(msgspec.Struct):
     noise_gain_crossover: float | None
     bandwidth: float | None
     phase_margin: float | None
+    loop_gain: float | None
     dissipation: float | None
+    gain: list[GainOut]
+    filter: FilterOut | None
+    spread: SpreadOut
     file: str | None
     line: int | None
 
@@ -293,6 +339,48 @@ def _allowed(allowed: Allowed | None) -> AllowedOut | None:
     return AllowedOut(allowed.net, allowed.low, allowed.high, allowed.limited_by)
 
 
+def _ends(span: Range) -> EndsOut | None:
+    low, high = _finite(span.low), _finite(span.high)
+    return None if low is None or high is None else EndsOut(low, high)
+
+
+def _gains(stage: Stage) -> list[GainOut]:
+    spans = {"V/V": dict(stage.gain_worst), "V/A": dict(stage.transfer_worst)}
+    every: tuple[tuple[Literal["V/V", "V/A"], str, float], ...] = (
+        *(("V/V", net, value) for net, value in stage.gain),
+        *(("V/A", net, value) for net, value in stage.transfer),
+    )
+    return [
+        GainOut(net, unit, _finite(value), _ends(spans[unit].get(net, Range())))
+        for unit, net, value in every
+    ]
+
+
+def _filter(found: Filter | None) -> FilterOut | None:
+    if found is None:
+        return None
+    return FilterOut(
+        kind=found.kind,
+        frequency=_finite(found.frequency),
+        q=_finite(found.q),
+        gain=_finite(found.gain),
+        frequency_spread=_ends(found.frequency_worst),
+        q_spread=_ends(found.q_worst),
+        gain_spread=_ends(found.gain_worst),
+    )
+
+
+def _spread(loop: Loop) -> SpreadOut:
+    return SpreadOut(
+        noise_gain=_ends(loop.in_band_worst),
+        noise_gain_dc=_ends(loop.noise_gain_worst),
+        noise_gain_crossover=_ends(loop.at_crossover_worst),
+        bandwidth=_ends(loop.crossover_worst),
+        phase_margin=_ends(loop.phase_margin_worst),
+        loop_gain=_ends(loop.loop_gain_worst),
+    )
+
+
 def _stage(stage: Stage) -> StageOut:
     output, inputs, current, loop = stage.output, stage.inputs, stage.current, stage.loop
     file, line, _ = _place(stage.location)
@@ -322,7 +410,11 @@ def _stage(stage: Stage) -> StageOut:
         noise_gain_crossover=_finite(loop.noise_gain_crossover),
         bandwidth=_finite(loop.crossover),
         phase_margin=_finite(loop.phase_margin),
+        loop_gain=_finite(loop.loop_gain),
         dissipation=_finite(stage.dissipation),
+        gain=_gains(stage),
+        filter=_filter(stage.filter),
+        spread=_spread(loop),
         file=file,
         line=line,
     )

@@ -13,9 +13,9 @@ import msgspec
 from railguard import __version__
 from railguard.analysis.corners import DEFAULT_CAPACITOR, DEFAULT_RESISTOR
 from railguard.analysis.stage import Bound, Current, Rail, Range, Stage
-from railguard.devices.model import Figure
+from railguard.devices.model import Device, Figure
 from railguard.report.sheet_basis import bases, figure_basis, phase_basis, why
-from railguard.report.words import near
+from railguard.report.words import USUAL_DIGITS, digits_apart, near
 from railguard.reviewing import DesignReview, Review
 from railguard.rules.finding import Finding
 from railguard.rules.wording import listed, of_gain, of_volts, origin
@@ -138,17 +138,17 @@ def _stage(design: DesignReview, stage: Stage) -> Iterator[Row]:
         guaranteed_basis=str(device.source) if device is not None else why(stage, "device"),
     )
     yield from _supply(design, stage, row)
-    for net, gain in stage.gain:
-        yield row(
-            "gain", "V/V", demand_high=gain, text=f"from {net}", demand_basis="netlist, solved"
-        )
-    for net, ohms in stage.transfer:
-        yield row(
-            "gain", "V/A", demand_high=ohms, text=f"from {net}", demand_basis="netlist, solved"
-        )
+    for unit, gains, spans in (
+        ("V/V", stage.gain, stage.gain_worst),
+        ("V/A", stage.transfer, stage.transfer_worst),
+    ):
+        ends = dict(spans)
+        for net, gain in gains:
+            yield row("gain", unit, text=f"from {net}", **_solved(gain, ends.get(net, Range())))
     yield _ranges(row, "output", "V", stage.output, stage, "output")
     yield _cleaned(row("output current", "A", **_current(stage)))
     yield _ranges(row, "inputs", "V", stage.inputs, stage, "input")
+    yield from _filter(stage, row)
     yield from _dynamics(stage, row)
     yield row(
         "dissipation",
@@ -247,6 +247,47 @@ def _where_to(current: Current) -> str:
     return "; ".join(words)
 
 
+TOLERANCES = "extreme values of tolerances"
+
+
+def _solved(value: float | None, ends: Range, told: str = "") -> dict[str, float | str | None]:
+    """Return the fields of a figure that the netlist alone gives, with its ends."""
+    return {
+        "demand_high": value,
+        **_ends(ends, TOLERANCES),
+        "demand_basis": told or "netlist, solved",
+    }
+
+
+def _ends(ends: Range, basis: str) -> dict[str, float | str | None]:
+    return {
+        "worst_low": ends.low,
+        "worst_high": ends.high,
+        "worst_basis": basis if ends.low is not None else "",
+    }
+
+
+def _speeds(device: Device | None) -> str:
+    """Say what the ends of a figure rest on that hangs on the gain-bandwidth product."""
+    listed = device.gain_bandwidth if device is not None else Figure()
+    both = listed.typical is not None and listed.guaranteed is not None
+    return f"{TOLERANCES}{', gain-bandwidth typical and guaranteed' if both else ''}"
+
+
+def _filter(stage: Stage, row: _Maker) -> Iterator[Row]:
+    found = stage.filter
+    if found is None:
+        return
+    yield row(
+        "natural frequency",
+        "Hz",
+        text=found.kind,
+        **_solved(found.frequency, found.frequency_worst),
+    )
+    yield row("quality factor", "", **_solved(found.q, found.q_worst))
+    yield row("gain in pass band", "V/V", **_solved(found.gain, found.gain_worst))
+
+
 def _dynamics(stage: Stage, row: _Maker) -> Iterator[Row]:
     loop, device = stage.loop, stage.family
     speed = device.gain_bandwidth if device is not None else Figure()
@@ -268,21 +309,22 @@ def _dynamics(stage: Stage, row: _Maker) -> Iterator[Row]:
         "Hz",
         demand_high=loop.band,
         available_high=loop.crossover,
+        **_ends(loop.crossover_worst, f"of the bandwidth, {_speeds(device)}"),
         demand_basis="top of the stated band" if loop.band else "no band is stated",
         available_basis=f"where the loop gain is one; gain-bandwidth {open_loop}",
     )
-    for where, value in (("at DC", loop.noise_gain_dc), (at or "in band", loop.noise_gain)):
-        yield row(
-            "noise gain",
-            "V/V",
-            demand_high=value,
-            text=where,
-            demand_basis=why(stage, "loop") or "netlist, solved",
-        )
+    told = why(stage, "loop")
+    for where, value, ends in (
+        ("at DC", loop.noise_gain_dc, loop.noise_gain_worst),
+        (at or "in band", loop.noise_gain, loop.in_band_worst),
+        ("where the loop closes", loop.noise_gain_crossover, loop.at_crossover_worst),
+    ):
+        yield row("noise gain", "V/V", text=where, **_solved(value, ends, told))
     yield row(
         "loop gain",
         "V/V",
         available_high=loop.loop_gain,
+        **_ends(loop.loop_gain_worst, _speeds(device)),
         text=at,
         available_basis=f"gain-bandwidth {open_loop}" if loop.band else "no band is stated",
     )
@@ -292,6 +334,7 @@ def _dynamics(stage: Stage, row: _Maker) -> Iterator[Row]:
         "°",
         available_low=loop.margins.low if bounds else None,
         available_high=loop.margins.high if bounds else loop.phase_margin,
+        **_ends(loop.phase_margin_worst, _speeds(device)),
         text="between these, as not every figure is listed" if bounds else "",
         available_basis=why(stage, "loop") or phase_basis(stage),
     )
@@ -376,9 +419,18 @@ def range_of(row: Row, part: str) -> str:
     known = [v for v in (low, high) if v is not None and math.isfinite(v)]
     if not known:
         return ""
-    if len(known) == 1 or low == high:
-        return si(known[0], row.unit)
-    return f"{si(low, row.unit)} to {si(high, row.unit)}"
+    ends = [si(value, row.unit, digits_of(row)) for value in known]
+    return " to ".join(dict.fromkeys(ends))
+
+
+def digits_of(row: Row) -> int:
+    """Return the digits that tell a figure from its ends; of a range the usual ones."""
+    figures = [v for v in (row.demand_high, row.available_high) if v is not None]
+    ends = [v for v in (row.worst_low, row.worst_high) if v is not None]
+    if row.demand_low is not None or len(ends) < len(("low", "high")) or not figures:
+        return USUAL_DIGITS
+    # A figure may stand beside another one, as a bandwidth beside the band.
+    return max(digits_apart((*ends, figure), row.unit) for figure in figures)
 
 
 def basis_of(row: Row) -> str:

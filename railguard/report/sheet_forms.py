@@ -16,7 +16,7 @@ from rich.text import Text
 from railguard import __version__
 from railguard.report.escaping import csv_cell, markdown
 from railguard.report.json_text import encoded
-from railguard.report.sheet import HEADINGS, PARTS, Row, basis_of, range_of
+from railguard.report.sheet import HEADINGS, PARTS, Row, basis_of, digits_of, range_of
 from railguard.report.visible import encodable, visible
 from railguard.report.wrapping import wrapped
 from railguard.units import si
@@ -128,12 +128,13 @@ def _stage(rows: tuple[Row, ...], shown: tuple[str, ...], width: int) -> Iterato
 
 
 def _number_lines(row: Row, shown: tuple[str, ...]) -> Iterator[tuple[str, tuple[str, ...]]]:
-    """Yield the high and the low end of a row as cells; one line where there is but one end."""
+    """Yield the high and the low end of a row as cells; one line where they read alike."""
     ends = {
-        end: tuple(_cell(getattr(row, f"{part}_{end}"), row.unit) for part in shown)
+        end: tuple(_cell(getattr(row, f"{part}_{end}"), row.unit, digits_of(row)) for part in shown)
         for end in ("high", "low")
     }
-    if not any(ends["low"]):
+    alike = all(low in ("", high) for low, high in zip(ends["low"], ends["high"], strict=True))
+    if alike:
         if any(ends["high"]):
             yield row.quantity, ends["high"]
         return
@@ -141,8 +142,8 @@ def _number_lines(row: Row, shown: tuple[str, ...]) -> Iterator[tuple[str, tuple
     yield f"{row.quantity}, low", ends["low"]
 
 
-def _cell(value: float | None, unit: str) -> str:
-    return "" if value is None or not math.isfinite(value) else si(value, unit)
+def _cell(value: float | None, unit: str, digits: int) -> str:
+    return "" if value is None or not math.isfinite(value) else si(value, unit, digits)
 
 
 def _hung(head: str, text: str, width: int, style: str = "") -> Iterator[tuple[str, str]]:

@@ -4,7 +4,7 @@ from collections import Counter
 from collections.abc import Iterable, Sequence
 from pathlib import Path
 
-from railguard.analysis.stage import Stage, Supply
+from railguard.analysis.stage import Range, Stage, Supply
 from railguard.circuit.model import GROUND
 from railguard.location import Location
 from railguard.report.grouping import OpenGroup
@@ -75,6 +75,32 @@ def heading(stage: Stage) -> str:
         rails(stage.supply),
     ]
     return ", ".join(part for part in parts if part)
+
+
+def with_ends(value: float, worst: Range, unit: str) -> str:
+    """Return a figure with what tolerances make of it: `65.2° (63.1° to 67°)`.
+
+    Without ends where they read as the figure does.
+    """
+    if worst.low is None or worst.high is None:
+        return si(value, unit)
+    digits = digits_apart((worst.low, value, worst.high), unit)
+    own, low, high = (si(v, unit, digits) for v in (value, worst.low, worst.high))
+    return own if low == own == high else f"{own} ({low} to {high})"
+
+
+USUAL_DIGITS, MOST_DIGITS = 3, 5
+
+
+def digits_apart(values: Sequence[float], unit: str) -> int:
+    """Return the digits that tell figures apart: 21.1 from 21.06 and 21.14.
+
+    The usual ones where not even the most do.
+    """
+    for digits in range(USUAL_DIGITS, MOST_DIGITS + 1):
+        if len({si(value, unit, digits) for value in values}) == len(values):
+            return digits
+    return USUAL_DIGITS
 
 
 def name(stage: Stage) -> str:

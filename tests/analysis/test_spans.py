@@ -74,6 +74,24 @@ def test_q_follows_the_resistors_that_set_the_gain(stage):
     assert found.q_worst.span / 2 / found.q == pytest.approx(gain_part + resistors, rel=0.05)
 
 
+def test_a_filter_behind_a_gain_has_its_own(design):
+    """The follower in a Sallen-Key filter makes one of it, whatever stands in front."""
+    cards = "VIN i 0 SIN(0 0.1 1k)\nRA i n 10k\nRB n in 100k\nXU0 0 n vp vn in TL072"
+    behind = SALLEN_KEY.replace("VIN in 0 SIN(0 1 1k)\n", "")
+    found = next(s.filter for s in design(f"{cards}\n{behind}").stages if s.designator == "XU1")
+    assert found.gain == pytest.approx(1.0, rel=1e-3)
+    assert found.gain_worst.span == pytest.approx(0.0, abs=1e-9)
+
+
+def test_transfer_of_a_transimpedance_stage(stage):
+    """1 V/uA of one resistor: 1 %."""
+    found = stage("IIN 0 n SIN(0 1u 1k)\nR2 n out 1meg\nXU1 0 n vp vn out TL072")
+    (net, nominal), (same, worst) = found.transfer[0], found.transfer_worst[0]
+    assert net == same
+    assert abs(nominal) == pytest.approx(1e6, rel=1e-3)
+    assert worst.span / 2 == pytest.approx(0.01 * abs(nominal), rel=1e-3)
+
+
 @pytest.mark.parametrize("cards", [INVERTING, SALLEN_KEY])
 def test_every_number_has_its_ends(stage, cards):
     """Supply, output, current, inputs, gain, noise gain, bandwidth: low, nominal, high in order."""

@@ -54,7 +54,8 @@ def test_keys_stand_in_the_promised_order(report):
     assert list(design["stages"][0]) == [
         "designator", "device", "catalogue", "package", "topology", "supply", "output", "current",
         "input", "input_allowed", "dc_loop", "noise_gain", "noise_gain_dc", "noise_gain_crossover",
-        "bandwidth", "phase_margin", "dissipation", "file", "line",
+        "bandwidth", "phase_margin", "loop_gain", "dissipation", "gain", "filter", "spread",
+        "file", "line",
     ]  # fmt: skip
 
 
@@ -70,8 +71,38 @@ def test_numbers_are_si(report):
 
 
 def test_what_was_not_worked_out_is_null(report):
-    """The phase margin hangs on figures the data sheet does not list."""
-    assert report["designs"][0]["stages"][0]["phase_margin"] is None
+    """The phase margin hangs on figures the data sheet does not list: it has no ends either."""
+    stage = report["designs"][0]["stages"][0]
+    assert stage["phase_margin"] is None
+    assert stage["spread"]["phase_margin"] is None
+    assert stage["filter"] is None
+
+
+def test_figures_have_their_ends(report):
+    """Gain -10 and noise gain 11 of 1 % resistors: 2 % of ten."""
+    stage = report["designs"][0]["stages"][0]
+    (gain,) = stage["gain"]
+    assert (gain["net"], gain["unit"]) == ("in", "V/V")
+    assert gain["value"] == pytest.approx(-10, rel=1e-3)
+    assert gain["spread"]["low"] == pytest.approx(-10.2, rel=1e-3)
+    assert gain["spread"]["high"] == pytest.approx(-9.8, rel=1e-3)
+    for name, nominal in (("noise_gain_dc", 11), ("bandwidth", 3e6 / 11), ("loop_gain", 272)):
+        ends = stage["spread"][name]
+        assert stage[name] == pytest.approx(nominal, rel=1e-2)
+        assert ends["low"] == pytest.approx(stage[name] * (1 - 0.2 / 11), rel=1e-3)
+        assert ends["high"] == pytest.approx(stage[name] * (1 + 0.2 / 11), rel=1e-3)
+
+
+def test_a_filter_has_its_ends():
+    """The Sallen-Key low-pass of two equal resistors: its own gain is one, exactly."""
+    text = DECK.replace("R1 in n 10k", "R1 in a 11.25k\nR3 a p 11.25k\nC1 a out 2n\nC2 p 0 1n")
+    text = text.replace("R2 n out 100k\n", "").replace("XU1 0 n vp", "XU1 p out vp")
+    found = json.loads(document(review(text)))["designs"][0]["stages"][0]["filter"]
+    assert found["kind"] == "low-pass"
+    assert found["frequency"] == pytest.approx(10e3, rel=0.01)
+    assert found["frequency_spread"]["low"] < found["frequency"]
+    assert found["q_spread"]["high"] > found["q"]
+    assert found["gain_spread"] == {"low": 1.0, "high": 1.0}
 
 
 def test_margin_is_room_left_in_the_findings_unit(report):

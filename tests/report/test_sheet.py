@@ -9,8 +9,10 @@ from pathlib import Path
 import pytest
 from rich.console import Console
 
+from railguard.analysis.stage import Range
 from railguard.report import sheet_forms as forms
 from railguard.report.sheet import PARTS, Row, basis_of, range_of, rows
+from railguard.report.words import with_ends
 from railguard.reviewing import review
 
 ROOT = Path(__file__).parents[2]
@@ -125,6 +127,43 @@ def test_screen_stays_within_80_columns(station):
     lines = out.getvalue().splitlines()
     assert max(map(len, lines)) <= 80
     assert any(line.startswith("output, high") for line in lines)
+
+
+def test_figures_stand_with_their_ends(station):
+    """Gain of the bridge amplifier, 0.1 % resistors: enough digits to tell them apart."""
+    own = by_stage(station)["XU1"]
+    (gain,) = [row for row in own if row.quantity == "gain"]
+    assert range_of(gain, "demand") == "20.6 V/V"
+    assert range_of(gain, "worst") == "20.56 V/V to 20.64 V/V"
+    out = io.StringIO()
+    forms.screen(tuple(own), Console(file=out, width=80))
+    shown = out.getvalue().splitlines()
+    at = shown.index(next(line for line in shown if line.startswith("gain, high")))
+    assert shown[at].split() == ["gain,", "high", "20.6", "V/V", "20.64", "V/V"]
+    assert shown[at + 1].split() == ["gain,", "low", "20.56", "V/V"]
+
+
+def test_ends_that_read_alike_take_one_line(station):
+    """A follower's noise gain of one."""
+    out = io.StringIO()
+    forms.screen(tuple(by_stage(station)["XU5B"]), Console(file=out, width=80))
+    assert not [line for line in out.getvalue().splitlines() if line.startswith("noise gain, ")]
+
+
+@pytest.mark.parametrize(
+    ("value", "low", "high", "unit", "text"),
+    [
+        (50.0, 49.1, 50.9, "V/V", "50 V/V (49.1 V/V to 50.9 V/V)"),
+        (20.598, 20.561, 20.639, "", "20.6 (20.56 to 20.64)"),
+        (65.21, 63.1, 67.0, "°", "65.2° (63.1° to 67°)"),
+        (1.0, 1.0, 1.0, "V/V", "1 V/V"),
+        (1.0, 1.0 - 1e-9, 1.0 + 1e-9, "", "1"),
+        (3e6, None, None, "Hz", "3 MHz"),
+    ],
+)
+def test_a_figure_with_its_ends_in_words(value, low, high, unit, text):
+    """As an engineer writes it."""
+    assert with_ends(value, Range(low, high), unit) == text
 
 
 HOSTILE = "=HYPERLINK(1)\x1b[31m|<b>`x`\u202e"

@@ -10,6 +10,7 @@ from xml.etree import ElementTree as ET
 
 from railguard.analysis.stage import Loop
 from railguard.report.html.svg import node, picture
+from railguard.report.words import with_ends
 from railguard.units import si
 
 WIDTH = 540.0
@@ -160,7 +161,8 @@ def spoken(loop: Loop) -> str:
     """Return a loop in words."""
     parts = [f"noise gain {loop.noise_gain_dc:.3g} at DC" if loop.noise_gain_dc else ""]
     if loop.crossover:
-        parts.append(f"the loop closes at {si(loop.crossover, 'Hz')}")
+        ends = with_ends(loop.crossover, loop.crossover_worst, "Hz")
+        parts.append(f"the loop closes at {ends}")
     if loop.noise_gain_crossover:
         parts.append(f"where the noise gain is {loop.noise_gain_crossover:.3g}")
     parts.append(margin_words(loop))
@@ -170,7 +172,7 @@ def spoken(loop: Loop) -> str:
 def margin_words(loop: Loop) -> str:
     """Return the phase margin in words, or its bounds, or "" where neither is known."""
     if loop.phase_margin is not None:
-        return f"phase margin {si(loop.phase_margin, '°')}"
+        return f"phase margin {with_ends(loop.phase_margin, loop.phase_margin_worst, '°')}"
     low, high = loop.margins.low, loop.margins.high
     if low is None or high is None:
         return ""
