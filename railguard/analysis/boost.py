@@ -36,7 +36,12 @@ from railguard.analysis.ranges import Answers, Clamp, answer, standing
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.signals import Drive, Prepared
 from railguard.analysis.stage import Carrier
-from railguard.analysis.transistors import Bipolar, FieldEffect, transistors_of
+from railguard.analysis.transistors import (
+    BASE_EMITTER_SPREAD,
+    Bipolar,
+    FieldEffect,
+    transistors_of,
+)
 from railguard.circuit.model import Element, Model
 
 MOST = 32
@@ -84,6 +89,8 @@ class Boost(msgspec.Struct, frozen=True):
     left     by designator: what a transistor does that cannot be followed, as `which ...`
     assumed  indexes of the quantities that rest on a gain nobody states
     spread   by injection: its volts, and the share they may be off
+    unsure   what each quantity moves where the junctions no model states are off by as much as
+             they may be, shape (quantities,)
     drives   by amplifier: the transistors its output drives
     idle     transistors that never conduct
     """
@@ -92,6 +99,7 @@ class Boost(msgspec.Struct, frozen=True):
     left: Mapping[str, str] = {}
     assumed: frozenset[int] = frozenset()
     spread: Mapping[str, tuple[float, float]] = {}
+    unsure: tuple[float, ...] = ()
     drives: Mapping[str, tuple[Carrier, ...]] = {}
     idle: frozenset[str] = frozenset()
 
@@ -341,11 +349,20 @@ class _Solver:
                 for one, line in self._lines.items()
                 if not isinstance(one, Pair) and (share := share_off(one, line)) > 0
             },
+            unsure=self._unsure(),
             drives={
                 amplifier.designator: tuple(_carriers(self._driven(k, working)))
                 for k, amplifier in enumerate(self.answers.amplifiers)
             },
         )
+
+    def _unsure(self) -> tuple[float, ...]:
+        moved = np.zeros(len(self._adjoint))
+        for one in self._lines:
+            if isinstance(one, Pair) or (isinstance(one, Bipolar) and one.saturation is None):
+                row = self.network.injections[injection_of(one)].row
+                moved += np.abs(self._adjoint[:, row]) * BASE_EMITTER_SPREAD
+        return tuple(moved.tolist())
 
     def _driven(self, k: int, working: Iterable[Working]) -> list[Working]:
         effect = self._adjoint[self.answers.at(k, "current")]

@@ -29,10 +29,12 @@ def bound(
     spread: Spread,
     moves: Real,
     limit_moves: Real,
+    unsure: float = 0.0,
     exact: Exact | None = None,
 ) -> Bound:
     """Build a bound.
 
+    unsure       how far the demand may be off by what is assumed, in its unit
     exact        solves a corner anew instead of following the derivatives to it
 
     moves        derivative of the demand's end to every parameter, shape (parameters,)
@@ -65,6 +67,7 @@ def bound(
         demand_basis=demand_basis,
         culprits=culprits,
         condition=reach.condition,
+        unsure=unsure,
     )
 
 

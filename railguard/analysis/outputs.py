@@ -106,6 +106,7 @@ def output_side(
             spread=spread,
             moves=spread.high[q] if upper else spread.low[q],
             limit_moves=spread.high[pin],
+            unsure=view.unsure("output"),
             exact=view.exact("output", upper, "positive" if upper else "negative"),
         )
     error = float((np.abs(spread.high[q]) * spread.delta * spread.error).sum())

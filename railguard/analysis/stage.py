@@ -52,6 +52,7 @@ class Bound(msgspec.Struct, frozen=True, kw_only=True):
     demand_basis  where the demand came from, the least trusted of its parts
     culprits     designators that move the corner most, worst first
     condition    the load, current or supply the limit was taken at, in words
+    unsure       how far the demand may be off by what is assumed: less beyond a limit is no proof
     """
 
     upper: bool
@@ -69,6 +70,7 @@ class Bound(msgspec.Struct, frozen=True, kw_only=True):
     demand_basis: Basis = "netlist"
     culprits: tuple[str, ...] = ()
     condition: str = ""
+    unsure: float = 0.0
 
 
 class Capacitor(msgspec.Struct, frozen=True):

@@ -54,6 +54,11 @@ class View:
         moved = any(t.tone.basis == "user" and t.peaks[q] > 0 for t in self.answers.tones)
         return "user" if moved else "netlist"
 
+    def unsure(self, quantity: str) -> float:
+        """Return how far it may be off by what is assumed of transistors, in its unit."""
+        moved = self.solution.boost.unsure
+        return moved[self.at(quantity)] if moved else 0.0
+
     def exact(self, quantity: str, upper: bool, pin: str = "", sign: float = 1.0) -> Exact | None:
         """Return what solves a corner of a quantity anew, where the run asks for it.
 

@@ -35,7 +35,9 @@ def no_card(finding: Finding, design: Design) -> str:
     if finding.rule == "drive-current" and finding.demand:
         own = stage.feedback.current or 0.0
         if own < 0.5 * finding.demand and not stage.current.load_capacitance:
-            return f"the current goes into the load ({stage.current.into or 'stated'}), as given"
+            into = " or ".join(name for c in stage.current.carriers for name in c.designators)
+            into = f"base of {into}" if into else f"load ({stage.current.into or 'stated'})"
+            return f"the current goes into the {into}, as given"
     if finding.rule == "feedback-reversed" and finding.severity == "remark":
         return "it is a comparator, as its use shows"
     if finding.rule == "feedback-open" and finding.severity == "remark":

@@ -156,8 +156,8 @@ def _fails(bound: Bound, check: _Check) -> bool:
 
 
 def _judged(bound: Bound, check: _Check, scale: float | None, cap: Severity) -> Breach:
-    bases = (bound.demand_basis, check.limit_basis)
     room = _room(bound, check.demand, check.limit)
+    bases = ("assumed" if 0 < -room <= bound.unsure else bound.demand_basis, check.limit_basis)
     severity = TABLE[check.broken][evidence(*bases)]
     if not check.at_corner:
         resting = _rests_at_zero(bound, scale)

@@ -3,6 +3,9 @@
 import math
 
 import pytest
+from msgspec.structs import replace
+
+from railguard.rules.severity import breach
 
 SINK = """
 VIN in 0 SIN(1 0.8 10)
@@ -243,3 +246,29 @@ def test_the_largest_input_keeps_the_transistor_working(stage):
     allowed = stage(SINK + NPN).allowed
     assert allowed.low == pytest.approx(0.0, abs=1e-3)
     assert allowed.limited_by == "Q1, which stops conducting"
+
+
+NEAR = """
+VIN in 0 {volts}
+XU1 in e vp 0 o LM358
+Q1 vq o e QN
+RE e 0 1k
+VQ vq 0 30
+.model QN NPN(BF=200{junction})
+"""
+
+
+def test_a_limit_passed_by_less_than_a_junction_may_be_off_is_no_proof(stage):
+    """0.7 V is practice: 30 mV beyond what an LM358 reaches may lie inside it, 0.5 V does not."""
+    free = stage(NEAR.format(volts=8.0, junction=""))
+    limit = free.output.high.typical
+    assert free.output.high.unsure == pytest.approx(0.1, rel=1e-3)
+    for volts, junction, severity in (
+        (limit - 0.67, "", "minor"),
+        (limit - 0.2, "", "major"),
+        (limit - 0.67, " IS=1e-14", "major"),
+    ):
+        high = stage(NEAR.format(volts=volts, junction=junction)).output.high
+        assert high.demand > limit
+        broken = breach(replace(high, guaranteed=None, stated=None, default=None))
+        assert broken.severity == severity
