@@ -65,30 +65,28 @@ def output_reach(
     def end(level: float) -> Drop:
         return drop(points, max(current_at(level), 0.0), total)
 
-    def settle(which: int) -> tuple[float | None, Basis, str]:
+    def settle(sure: bool) -> tuple[float | None, Basis, str]:
         # The end of the swing is where rail, drop and load line meet. The curves are straight
         # piecewise, so a secant meets them in a few turns.
         level, before = rail, None
-        found: tuple[float | None, Basis, str] = (None, "memory", "")
         for _ in range(_ROUNDS):
             dropped = end(level)
-            volts = dropped.typical if which == 0 else dropped.guaranteed
-            basis = dropped.typical_basis if which == 0 else dropped.guaranteed_basis
+            volts = dropped.guaranteed if sure else dropped.typical
+            basis = dropped.guaranteed_basis if sure else dropped.typical_basis
             if volts is None:
-                return None, "memory", dropped.condition
+                return None, basis, dropped.condition
             met = rail + sign * min(volts, total)
             met += sign * rail_ohms * max(current_at(level), 0.0)
-            found = met, basis, dropped.condition
             gap = met - level
             if abs(gap) < 1e-6 * total:
                 break
             slope = None if before is None else (gap - before[1]) / (level - before[0])
             before = level, gap
             level = level - gap / slope if slope is not None and slope < -0.5 else met
-        return found
+        return met, basis, dropped.condition
 
-    typical, typical_basis, condition = settle(0)
-    guaranteed, guaranteed_basis, guaranteed_condition = settle(1)
+    typical, typical_basis, condition = settle(sure=False)
+    guaranteed, guaranteed_basis, guaranteed_condition = settle(sure=True)
     if guaranteed is not None and carried(points, total):
         guaranteed_basis = "memory"
     return Reach(

@@ -172,6 +172,16 @@ def test_a_swing_names_its_test_and_how_well_it_is_known():
     assert heavy.condition == "carried on beyond 1 kΩ"
 
 
+def test_what_is_guaranteed_gives_the_condition_and_each_figure_its_own_basis():
+    """At 950 ohm the typical current is beyond the last point listed, the guaranteed one is not."""
+    points = tuple(
+        msgspec.structs.replace(point, guaranteed_basis="user") for point in SWINGS.swing_high
+    )
+    reach = output_reach(device(swing_high=points), 12.0, -5.0, True, into(950.0))
+    assert (reach.typical_basis, reach.guaranteed_basis) == ("memory", "user")
+    assert reach.condition == "1 kΩ"
+
+
 def test_a_swing_of_another_supply_is_guaranteed_from_memory_only():
     """The typical one is a matter of the circuit inside and carries over."""
     points = (SwingPoint(0.0, 1.0, 1.5, 30.0, "catalogue", "catalogue"),)
@@ -230,6 +240,8 @@ TEST_LOAD = f"{UNLISTED_CURRENT}: swing is guaranteed at 2 kΩ"
         ((None, 5e-3, TEST_LOAD), (60e-3, None), (60e-3, "assumed"), (30e-3, "practice")),
         ((None, 30e-3, TEST_LOAD), (40e-3, None), (40e-3, "assumed"), (30e-3, "catalogue")),
         ((None, 5e-3, TEST_LOAD), (None, None), (None, None), (5e-3, "catalogue")),
+        ((None, 20e-3, TEST_LOAD), (40e-3, None), (40e-3, "assumed"), (20e-3, "catalogue")),
+        ((10e-3, 10e-3, ""), (None, None), (10e-3, "memory"), (10e-3, "catalogue")),
         # never less typical than guaranteed
         ((5e-3, 10e-3, ""), (None, None), (10e-3, "catalogue"), (10e-3, "catalogue")),
         ((None, 50e-3, ""), (40e-3, None), (50e-3, "catalogue"), (50e-3, "catalogue")),

@@ -8,12 +8,12 @@ from railguard.analysis.bounds import bound
 from railguard.analysis.corners import Parameter, Spread
 from railguard.analysis.stage import Pair
 
-REACH = Reach(10.5, 9.5, "memory", "catalogue", "10 kΩ load")
+REACH = Reach(10.5, 9.5, "memory", "practice", "10 kΩ load")
 NAMES = ("R1", "R2", "VP", "VN")
 DELTA = (0.01, 0.02, 0.05, 0.05)
 STATED = (True, False, False, False)
-MOVES = (10.0, -20.0, 0.0, 1.0)
-LIMIT_MOVES = (0.0, 0.0, 12.0, 1.0)
+MOVES = (10.0, -20.0, 0.0, 5.0)
+LIMIT_MOVES = (0.0, 0.0, 12.0, 5.0)
 
 
 def made(names=NAMES, delta=DELTA, stated=STATED, **fields):
@@ -42,7 +42,7 @@ def test_numbers_and_their_bases_are_passed_on():
     found = made()
     assert (found.upper, found.demand, found.level, found.span) == (True, 9.0, 0.5, 17.0)
     assert (found.typical, found.guaranteed, found.absolute) == (10.5, 9.5, 12.0)
-    assert (found.typical_basis, found.guaranteed_basis) == ("memory", "catalogue")
+    assert (found.typical_basis, found.guaranteed_basis) == ("memory", "practice")
     assert (found.absolute_basis, found.demand_basis) == ("user", "assumed")
     assert found.condition == "10 kΩ load"
 
@@ -79,6 +79,12 @@ def test_three_culprits_the_heaviest_first():
         moves=np.array([1.0, 5.0, 3.0, 4.0, 2.0]), limit_moves=np.zeros(5),
     )  # fmt: skip
     assert five.culprits == ("B", "D", "C")
+    alike = np.array([1.0, 5.0])
+    two = made(
+        names=("A", "VN"), delta=(0.1, 0.1), stated=(False, False), moves=alike,
+        limit_moves=np.array([0.0, 5.0]),
+    )  # fmt: skip
+    assert two.culprits == ("A",)
 
 
 def test_a_culprit_is_named_once():

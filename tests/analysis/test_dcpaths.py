@@ -115,6 +115,8 @@ def test_a_linear_current_source_is_in_the_equations():
     """It holds nothing, and hides nothing; one of an expression hides what it does."""
     linear = part("G", "G1", "in", "0", control=FACTOR)
     assert path(linear) == DcPath("floating", ("G1",))
+    mirror = part("F", "F1", "in", "0", control=Control(gain=1.0, element="V1"))
+    assert path(mirror) == DcPath("floating", ("F1",))
     hidden = part("G", "G1", "in", "0", control=Control(gain=None, text="v(a)^2"))
     assert path(hidden) == DcPath("open", ("G1",))
 

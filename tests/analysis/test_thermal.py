@@ -186,3 +186,23 @@ def test_the_output_stage_at_its_worst(low, high, level, amps, load, watts):
     output = Output(net="out", level=level, demand=Range(low, high))
     found = dissipation(device, supply, output, current, load)
     assert found == pytest.approx(20e-3 + watts, rel=0.02)
+
+
+def test_no_heat_without_its_figures():
+    """The quiescent current, the rails, the range and the current are all wanted."""
+    device = msgspec.structs.replace(FET, supply_current=Figure(1e-3))
+    supply = Supply(positive=10.0, negative=-10.0)
+    output = Output(net="out", level=0.0, demand=Range(-1.0, 1.0))
+    current = Current(demand_source=1.0)
+    assert dissipation(device, supply, output, current, None) is not None
+    for given in (
+        (None, supply, output, current),
+        (msgspec.structs.replace(FET, supply_current=Figure()), supply, output, current),
+        (device, Supply(positive=None, negative=-10.0), output, current),
+        (device, Supply(positive=10.0, negative=None), output, current),
+        (device, supply, Output(net="out", level=None, demand=Range(-1.0, 1.0)), current),
+        (device, supply, Output(net="out", level=0.0, demand=Range(None, 1.0)), current),
+        (device, supply, Output(net="out", level=0.0, demand=Range(-1.0, None)), current),
+        (device, supply, output, Current()),
+    ):
+        assert dissipation(*given, None) is None

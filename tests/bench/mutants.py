@@ -171,7 +171,7 @@ class Trial:
         for done, mutant in enumerate(self.mutants, 1):
             tests = self._tests(mutant, killers)
             outcome = "not reached" if not tests else self._try(mutant, items, tests, caches)
-            if outcome.startswith("killed by "):
+            if outcome.startswith("killed by"):
                 killers[int(outcome.removeprefix("killed by "))] += 1
                 outcome = "killed"
             self.outcomes.append((mutant, outcome))
@@ -240,7 +240,7 @@ class Trial:
         with os.fdopen(reader, "rb") as answer:
             said = answer.read().decode()
         os.waitpid(child, 0)
-        return said or "hung or broke off"
+        return said or "killed"  # it hung, or took the process with it
 
 
 def put_in_place(mutant: Mutant) -> bool:
