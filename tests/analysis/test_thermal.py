@@ -30,6 +30,7 @@ BUFFER = "VIN in 0 5\nXU1 in out vp vn out {device}\nRL out 0 1k"
         (4, "LMV3X4", "TSSOP-14"),
         (2, "LMV358 Package_SO:SOIC-8_3.9x4.9mm", "SOIC-8"),
         (1, "LMV321 SOT23-5", "SOT23-5"),
+        (1, "LMV321 SOT-23-5_Handsoldering", "SOT23-5"),
         (None, "LMV3XX", "SC70-5"),
     ],
 )
@@ -151,6 +152,7 @@ def test_the_junction_stands_above_the_hottest_ambient():
         ({"DIP": 200.0, "SOIC-16": 300.0}, 1, "DIP"),  # no number: taken for eight
         ({"SC70-5": 400.0, "SOIC-8": 200.0}, 3, "SC70-5"),  # three in one case: any will do
         ({"SOIC-14": 100.0}, 2, "SOIC-14"),
+        ({"SOIC-14": 200.0, "SOIC-8": 100.0}, None, "SOIC-14"),  # how many is not known
     ],
 )
 def test_the_hottest_case_that_holds_so_many_counts(cases, channels, name):
@@ -176,6 +178,7 @@ def test_no_case_where_none_is_listed():
         (0.0, 0.0, 0.0, 3e-3, None, 30e-3),  # 3 mA at rest
         (0.0, 0.0, 0.0, -3e-3, None, 30e-3),
         (-50.0, -20.0, -20.0, 3e-3, None, 60e-3),  # beyond the rail it stands at the rail
+        (20.0, 50.0, 20.0, -3e-3, None, 60e-3),
     ],
 )
 def test_the_output_stage_at_its_worst(low, high, level, amps, load, watts):

@@ -61,7 +61,13 @@ def test_a_meant_comparator_is_a_remark(use, stated):
     """Stated or shown by what it drives, its thresholds are worth knowing and no more."""
     (found,) = findings(REVERSED, looped(use=use, use_stated=stated, feeds_linear=True))
     assert found.severity == "remark"
-    assert "switches at -1 V and 1 V" in found.message
+    article, basis = "an" if use == "oscillator" else "a", "as what it drives shows"
+    assert found.message == (
+        "U1 has positive feedback at DC (9 % of the output comes back to the non-inverting "
+        f"input): it switches at -1 V and 1 V. It is {article} {use}, "
+        f"{'as stated' if stated else basis}."
+    )
+    assert found.remedy == ""
 
 
 def test_a_comparator_by_its_load_that_never_switches_is_a_mistake():
@@ -72,10 +78,50 @@ def test_a_comparator_by_its_load_that_never_switches_is_a_mistake():
     assert [f.severity for f in stated] == ["remark"]
 
 
+def test_an_oscillator_needs_no_signal_to_switch_it():
+    """It drives itself."""
+    small = {"drive": Range(-0.5, 0.5), "use": "oscillator"}
+    assert [f.severity for f in findings(REVERSED, looped(**small))] == ["remark"]
+
+
 def test_unknown_thresholds_are_said_to_be():
     """What was not worked out is not made up."""
     (found,) = findings(REVERSED, looped(thresholds=Range()))
     assert "thresholds could not be worked out" in found.message
+
+
+@pytest.mark.parametrize("missing", ["low", "high"])
+@pytest.mark.parametrize("field", ["thresholds", "drive"])
+def test_half_of_what_tells_a_small_signal_tells_nothing(field, missing):
+    """Neither a threshold nor an end of the signal is made up."""
+    small = {"thresholds": {"low": -1.0, "high": 1.0}, "drive": {"low": -0.5, "high": 0.5}}
+    small[field][missing] = None
+    one = looped(**{name: Range(**ends) for name, ends in small.items()})
+    (found,) = findings(REVERSED, one)
+    assert found.severity == "major"
+    unknown = "thresholds could not be worked out" in found.message
+    assert unknown == (field == "thresholds")
+
+
+def test_nearly_all_of_the_output_counts_as_all():
+    """From 99 % on it latches."""
+    assert [f.severity for f in findings(REVERSED, looped(beta_plus=0.99))] == ["critical"]
+    assert [f.severity for f in findings(REVERSED, looped(beta_plus=0.98))] == ["major"]
+
+
+def test_how_much_comes_back_is_a_number_where_it_is_known():
+    """Against none, which is what a linear stage has."""
+    (found,) = findings(REVERSED, looped())
+    assert (found.demand, found.limit, found.margin) == (0.09, 0.0, -0.09)
+    (unknown,) = findings(REVERSED, looped(beta_plus=None))
+    assert (unknown.demand, unknown.limit, unknown.margin) == (None, None, None)
+    assert unknown.message.startswith("U1 has positive feedback at DC: it switches")
+
+
+@pytest.mark.parametrize("rule", [REVERSED, OPEN])
+def test_the_loop_of_an_unused_channel_is_not_asked_for(rule):
+    """Not even where it could not be solved."""
+    assert outcomes(rule, stage(loop=Loop(), use="unused")) == []
 
 
 @pytest.mark.parametrize("rule", [REVERSED, OPEN])
