@@ -120,10 +120,9 @@ def _tightened(
                 continue
             level = float(solution.answers.level[index])
             for bound in pair:
-                limit = bound.guaranteed if bound.guaranteed is not None else bound.typical
-                if limit is None:
+                if bound.best is None:
                     continue
-                step = (limit - level) / gain
+                step = (bound.best - level) / gain
                 upper = bound.upper == (gain > 0)
                 for way in (True, False) if cut else (upper,):
                     left = step if upper else -step

@@ -35,6 +35,16 @@ class Reach(msgspec.Struct, frozen=True):
     guaranteed_basis: Basis
     condition: str = ""
 
+    @property
+    def best(self) -> float | None:
+        """The guaranteed figure, or the typical one where none is guaranteed."""
+        return self.guaranteed if self.guaranteed is not None else self.typical
+
+    @property
+    def best_basis(self) -> Basis:
+        """Where `best` came from."""
+        return self.guaranteed_basis if self.guaranteed is not None else self.typical_basis
+
 
 def output_reach(
     device: Device | None,

@@ -40,7 +40,7 @@ def bound(
     moves        derivative of the demand's end to every parameter, shape (parameters,)
     limit_moves  the same of the limit: what moves both together leaves the margin alone
     """
-    limit = reach.guaranteed if reach.guaranteed is not None else reach.typical
+    limit = reach.best
     stated = default = None
     culprits: tuple[str, ...] = ()
     if limit is not None and len(spread.delta):

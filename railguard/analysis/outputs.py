@@ -151,7 +151,7 @@ def _current(view: View, known: bool, load: float | None, carriers: tuple[Carrie
     for source in (True, False):
         reach = current_reach(device, source)
         demand = max(high if source else -low, 0.0)
-        available[source] = reach.guaranteed if reach.guaranteed is not None else reach.typical
+        available[source] = reach.best
         moves = spread.high[q] if source else -spread.low[q]
         bounds[source] = (
             bound(

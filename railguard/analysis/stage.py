@@ -72,6 +72,16 @@ class Bound(msgspec.Struct, frozen=True, kw_only=True):
     condition: str = ""
     unsure: float = 0.0
 
+    @property
+    def best(self) -> float | None:
+        """The guaranteed limit, or the typical one where none is guaranteed."""
+        return self.guaranteed if self.guaranteed is not None else self.typical
+
+    @property
+    def best_basis(self) -> Basis:
+        """Where `best` came from."""
+        return self.guaranteed_basis if self.guaranteed is not None else self.typical_basis
+
 
 class Capacitor(msgspec.Struct, frozen=True):
     """A capacitor between a rail and another net.

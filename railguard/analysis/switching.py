@@ -6,7 +6,7 @@ inside what the device gives, nothing need be simulated.
 """
 
 from railguard.analysis.recognise import Amplifier
-from railguard.analysis.stage import Bound, Current, Supply
+from railguard.analysis.stage import Current, Supply
 from railguard.analysis.surroundings import Ways
 from railguard.devices.model import Device
 
@@ -41,13 +41,8 @@ def _drawing(kind: str, nets: tuple[str, ...]) -> tuple[str, ...]:
 def is_given(amps: float | None, current: Current) -> bool:
     """Tell whether a device is known to give a current in both directions."""
     return amps is not None and all(
-        (best := _best(bound)) is not None and amps <= best
-        for bound in (current.source, current.sink)
+        bound.best is not None and amps <= bound.best for bound in (current.source, current.sink)
     )
-
-
-def _best(bound: Bound) -> float | None:
-    return bound.guaranteed if bound.guaranteed is not None else bound.typical
 
 
 def most_heat(device: Device | None, supply: Supply, amps: float | None) -> float | None:

@@ -14,6 +14,11 @@ ROOM = 25.0
 _STEPS = 21
 
 
+def hottest(settings: Settings) -> float:
+    """Return the upper end of the stated ambient range, degrees Celsius."""
+    return settings.ambient[1] if settings.ambient is not None else ROOM
+
+
 def dissipation(
     device: Device | None,
     supply: Supply,
@@ -45,21 +50,24 @@ DOUBLING = 10.0
 """Kelvin in which the bias current of a field-effect input doubles: S. Franco, 3rd ed., ex. 5.3."""
 
 
+FIELD_EFFECT = frozenset({"jfet", "cmos", "bifet", "fet"})
+"""Technologies of inputs whose bias current is a leakage."""
+
+
 def bias_current(device: Device, settings: Settings) -> float:
     """Return the worst bias current over the stated ambient range, A; 0 where none is listed.
 
     The sheet's own value over temperature counts where it is listed; else that of a field-effect
     input doubles every 10 K above 25 degrees Celsius.
     """
-    hottest = settings.ambient[1] if settings.ambient is not None else ROOM
-    at_room = device.bias_current.best or 0.0
-    if hottest <= ROOM:
+    at_room, ambient = device.bias_current.best or 0.0, hottest(settings)
+    if ambient <= ROOM:
         return at_room
     if device.bias_current.hot is not None:
         return max(device.bias_current.hot, at_room)
-    if device.technology not in ("jfet", "cmos"):
+    if device.technology.lower() not in FIELD_EFFECT:
         return at_room
-    return float(at_room * 2 ** ((hottest - ROOM) / DOUBLING))
+    return float(at_room * 2 ** ((ambient - ROOM) / DOUBLING))
 
 
 def offset_current(device: Device, settings: Settings) -> float | None:
@@ -125,5 +133,4 @@ def junction(case: Case | None, watts: float | None, settings: Settings) -> floa
     """Return the junction temperature at the hottest ambient, degrees Celsius."""
     if case is None or watts is None:
         return None
-    hottest = settings.ambient[1] if settings.ambient is not None else ROOM
-    return hottest + case.resistance * watts
+    return hottest(settings) + case.resistance * watts

@@ -51,6 +51,11 @@ class Figure(msgspec.Struct, frozen=True):
         """The guaranteed value, or the typical one where none is guaranteed."""
         return self.guaranteed if self.guaranteed is not None else self.typical
 
+    @property
+    def best_basis(self) -> Basis:
+        """Where `best` came from."""
+        return self.guaranteed_basis if self.guaranteed is not None else self.typical_basis
+
 
 class SwingPoint(msgspec.Struct, frozen=True):
     """The drop to a rail at one load.

@@ -27,7 +27,7 @@ def output(finding: Finding, stage: Stage, device: Device) -> Iterator[tuple[Fig
         if asked is None:
             continue
         reach = output_reach(device, supply.positive, supply.negative, upper, _always(amps or 0.0))
-        best = reach.guaranteed if reach.guaranteed is not None else reach.typical
+        best = reach.best
         if best is None:
             return
         end = "up to" if upper else "down to"
@@ -49,7 +49,7 @@ def inputs(finding: Finding, stage: Stage, device: Device) -> Iterator[tuple[Fig
     for upper in (True, False):
         asked = demand.high if upper else demand.low
         reach = input_reach(device, supply.positive, supply.negative, upper)
-        best = reach.guaranteed if reach.guaranteed is not None else reach.typical
+        best = reach.best
         if asked is None or best is None:
             continue
         end = "up to" if upper else "down to"
@@ -64,7 +64,7 @@ def current(finding: Finding, stage: Stage, device: Device) -> Iterator[tuple[Fi
     for source in (True, False):
         asked = stage.current.demand_source if source else stage.current.demand_sink
         reach = current_reach(device, source)
-        best = reach.guaranteed if reach.guaranteed is not None else reach.typical
+        best = reach.best
         if not asked or best is None:
             continue
         word = "current sourced" if source else "current sunk"

@@ -68,8 +68,7 @@ RANGES = ("headroom-output", "headroom-input", "headroom-stuck", "headroom-phase
 def _shares(bound: Bound, level: float, reserve: float) -> Iterator[float]:
     """Yield the share of the present swing that fits each limit of one side, at every corner."""
     room_kept = reserve * (bound.span or 0.0)
-    best = bound.guaranteed if bound.guaranteed is not None else bound.typical
-    pairs = [(bound.demand, best), (bound.demand, bound.typical)]
+    pairs = [(bound.demand, bound.best), (bound.demand, bound.typical)]
     pairs += [(p.demand, p.limit) for p in (bound.stated, bound.default) if p is not None]
     for demand, limit in pairs:
         if demand is None or limit is None or demand == level:

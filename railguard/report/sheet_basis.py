@@ -39,10 +39,7 @@ def limit(high: Bound, low: Bound) -> str:
 
 def figure_basis(figure: Figure) -> str:
     """Say where a device's figure came from, or that none is listed."""
-    if figure.best is None:
-        return "not listed"
-    known = figure.guaranteed is not None
-    return origin(figure.guaranteed_basis if known else figure.typical_basis)
+    return "not listed" if figure.best is None else origin(figure.best_basis)
 
 
 def phase_basis(stage: Stage) -> str:

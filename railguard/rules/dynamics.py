@@ -221,7 +221,7 @@ def judge_filter(stage: Stage, limits: Limits, design: Design) -> Iterator[Outco
     needed *= filtered.frequency
     if product >= needed:
         return
-    basis = figure.guaranteed_basis if figure.guaranteed is not None else figure.typical_basis
+    basis = figure.best_basis
     row: Broken = "guaranteed" if product < limits["far-share"] * needed else "reserve"
     yield stage_finding(
         "dynamics-filter",

@@ -2,16 +2,11 @@
 
 import msgspec
 
+from railguard.analysis import thermal
 from railguard.analysis.stage import Design, Stage
 from railguard.rules.protocol import Limit
 from railguard.units import si
 from railguard.words import Basis
-
-DOUBLING_KELVIN = 10.0
-"""K; the bias current of a FET input doubles every ten. S. Franco, 3rd ed., ch. 5; ST TL072."""
-ROOM = 25.0
-"""Degrees Celsius at which data sheets list their figures."""
-
 
 LEAST_UNEQUAL = Limit(
     name="least",
@@ -35,20 +30,13 @@ def bias_current(stage: Stage, design: Design) -> BiasCurrent | None:
     family = stage.family
     if family is None or family.bias_current.best is None:
         return None
-    figure = family.bias_current
-    guaranteed = figure.guaranteed is not None
-    basis = figure.guaranteed_basis if guaranteed else figure.typical_basis
-    kind = "guaranteed" if guaranteed else "typical"
-    hottest = design.settings.ambient[1] if design.settings.ambient else ROOM
-    amps = family.bias_current.best
-    if hottest <= ROOM or amps is None:
-        return BiasCurrent(amps or 0.0, basis, kind)
-    if figure.hot is not None:
-        return BiasCurrent(figure.hot, basis, "guaranteed over temperature")
-    if family.technology.lower() in ("jfet", "cmos", "bifet", "fet"):
-        amps *= 2 ** ((hottest - ROOM) / DOUBLING_KELVIN)
-        return BiasCurrent(amps, basis, f"{kind}, carried to {si(hottest, '°C')}")
-    return BiasCurrent(amps, basis, kind)
+    figure, amps = family.bias_current, thermal.bias_current(family, design.settings)
+    note = "guaranteed" if figure.guaranteed is not None else "typical"
+    if amps != figure.best and figure.hot is not None:
+        note = "guaranteed over temperature"
+    elif amps != figure.best:
+        note = f"{note}, carried to {si(thermal.hottest(design.settings), '°C')}"
+    return BiasCurrent(amps, figure.best_basis, note)
 
 
 def output_span(stage: Stage) -> tuple[float | None, Basis]:

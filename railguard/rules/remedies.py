@@ -23,6 +23,21 @@ def fit(value: float, direction: str = "nearest") -> float:
             return preferred(value, SERIES)
 
 
+LEAST_CAPACITOR = 1e-12
+"""F; the smallest anybody fits: less is what the board has by itself."""
+
+
+def compensation(stage: Stage, farads: float | None) -> float | None:
+    """Return the capacitance across the feedback that leaves about 65 degrees, F.
+
+    farads  at the inverting input
+    Source  sqrt(Cin / (2 pi RF GBW)): S. Franco, 3rd ed., ch. 8; TI SBOS981J
+    """
+    ohms = stage.feedback.resistance
+    gbw = None if stage.family is None else stage.family.gain_bandwidth.best
+    return math.sqrt(farads / (2 * math.pi * ohms * gbw)) if farads and ohms and gbw else None
+
+
 def element_named(designator: str, design: Design) -> Element | None:
     """Return an element of the flat circuit by its designator."""
     return next((e for e in design.circuit.elements if e.designator == designator), None)

@@ -134,8 +134,7 @@ def _checks(bound: Bound, reserve: float) -> Iterator[_Check]:
     if bound.demand is None:
         return
     demand = bound.demand
-    best = bound.guaranteed if bound.guaranteed is not None else bound.typical
-    best_basis = bound.guaranteed_basis if bound.guaranteed is not None else bound.typical_basis
+    best, best_basis = bound.best, bound.best_basis
     if bound.absolute is not None:
         yield _Check("absolute", demand, bound.absolute, bound.absolute_basis)
     if bound.typical is not None:

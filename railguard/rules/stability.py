@@ -1,12 +1,11 @@
 """Stability: noise gain, phase margin, capacitive load, transimpedance stages."""
 
-import math
 from collections.abc import Iterator
 
 from railguard.analysis.stage import Bound, Design, Stage, Unknown
 from railguard.rules.compose import breach_finding, missing_figure, open_point, stage_finding
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
-from railguard.rules.remedies import fit
+from railguard.rules.remedies import LEAST_CAPACITOR, compensation, fit
 from railguard.rules.severity import TABLE, Broken, breach, evidence
 from railguard.rules.wording import NO_SOURCE, cited, device, listed, origin, sheet
 from railguard.units import si
@@ -37,9 +36,7 @@ def judge_noise_gain(stage: Stage, limits: Limits, design: Design) -> Iterator[O
         upper=False,
         demand=closes * (1 + limits["slack"]),
         typical=figure.best,
-        typical_basis=figure.guaranteed_basis
-        if figure.guaranteed is not None
-        else figure.typical_basis,
+        typical_basis=figure.best_basis,
     )
     broken = breach(bound)
     if broken is None:
@@ -180,13 +177,7 @@ def _bases(stage: Stage) -> tuple[Basis, ...]:
     if family is None:
         return ("practice",)
     figures = (family.gain_bandwidth, family.output_resistance, family.input_capacitance)
-    return tuple(
-        dict.fromkeys(
-            f.guaranteed_basis if f.guaranteed is not None else f.typical_basis
-            for f in figures
-            if f.best is not None
-        )
-    )
+    return tuple(dict.fromkeys(f.best_basis for f in figures if f.best is not None))
 
 
 ISOLATION = 47.0
@@ -209,15 +200,10 @@ def across_feedback(stage: Stage, farads: float | None = None) -> float | None:
     """Return the capacitor across the feedback that leaves about 65 degrees, F.
 
     farads  at the inverting input; None: what the data sheet lists
-    Source  sqrt(Cin / (2 pi RF GBW)): S. Franco, 3rd ed., ch. 8; TI SBOS981J
     """
-    family, resistance = stage.family, stage.feedback.resistance
-    if family is None or not resistance:
-        return None
-    at_input, gbw = farads or family.input_capacitance.best, family.gain_bandwidth.best
-    if not at_input or not gbw:
-        return None
-    return fit(max(math.sqrt(at_input / (2 * math.pi * resistance * gbw)), 1e-12), "up")
+    listed = None if stage.family is None else stage.family.input_capacitance.best
+    wanted = compensation(stage, farads or listed)
+    return None if wanted is None else fit(max(wanted, LEAST_CAPACITOR), "up")
 
 
 PHASE_MARGIN = Rule(
@@ -267,10 +253,7 @@ def judge_load(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome
     limit = (stated or limits["usual"]) * gain
     if load <= limit:
         return
-    basis: Basis = "practice"
-    if stated is not None and figure is not None:
-        known = figure.guaranteed is not None
-        basis = figure.guaranteed_basis if known else figure.typical_basis
+    basis: Basis = "practice" if figure is None or stated is None else figure.best_basis
     yield stage_finding(
         "stability-load-capacitance",
         stage,

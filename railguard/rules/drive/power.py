@@ -3,9 +3,9 @@
 from collections.abc import Iterator
 
 from railguard.analysis.stage import Design, Package, Stage
+from railguard.analysis.thermal import hottest
 from railguard.notices import NotChecked
 from railguard.rules.compose import OWN_TABLE, channels_of, finding, first_unknown
-from railguard.rules.inputs import ROOM
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.severity import TABLE, evidence
 from railguard.rules.wording import count, origin
@@ -20,15 +20,11 @@ def judge_power(package: Package, limits: Limits, design: Design) -> Iterator[Ou
     if not stages:
         return
     stage = stages[0]
-    family, watts, junction = stage.family, stage.dissipation, stage.junction
-    if family is None or watts is None or junction is None:
+    family, case, watts, junction = stage.family, stage.case, stage.dissipation, stage.junction
+    if family is None or case is None or watts is None or junction is None:
         yield _gap(package, stages)
         return
-    if stage.case is not None:
-        case, theta = stage.case.name, stage.case.resistance
-    else:
-        case, theta = max(family.theta.items(), key=lambda item: item[1])
-    hottest = design.settings.ambient[1] if design.settings.ambient else ROOM
+    ambient = hottest(design.settings)
     wanted, most = limits["junction"], limits["absolute"]
     if junction <= wanted:
         return
@@ -36,20 +32,20 @@ def judge_power(package: Package, limits: Limits, design: Design) -> Iterator[Ou
     beyond = junction > most
     severity = TABLE["absolute" if beyond else "guaranteed"][weight]
     limit = most if beyond else wanted
-    allowed = (wanted - hottest) / theta
+    allowed = (wanted - ambient) / case.resistance
     yield finding(
         "drive-power",
         severity,
         f"{package.designator} turns {si(watts, 'W')} into heat ({count(len(stages), 'channel')}), "
-        f"so its junction reaches {si(junction, '°C')} at {si(hottest, '°C')} ambient with "
-        f"{si(theta, 'K/W')} ({case}, {origin(family.theta_basis)}); {si(limit, '°C')} is the "
-        f"{'absolute' if beyond else 'usual'} limit.",
+        f"so its junction reaches {si(junction, '°C')} at {si(ambient, '°C')} ambient with "
+        f"{si(case.resistance, 'K/W')} ({case.name}, {origin(family.theta_basis)}); "
+        f"{si(limit, '°C')} is the {'absolute' if beyond else 'usual'} limit.",
         designators=package.channels or (package.designator,),
         demand=junction,
         limit=limit,
         margin=limit - junction,
         unit="°C",
-        basis=("netlist", family.supply_current.guaranteed_basis, family.theta_basis),
+        basis=("netlist", family.supply_current.best_basis, family.theta_basis),
         remedy=f"Bring the heat down to {si(max(allowed, 0.0), 'W')}: a lower supply, a lighter "
         "load, a buffer outside the package, or a package of less thermal resistance.",
         source=HEAT_SOURCE,

@@ -10,12 +10,29 @@ from collections.abc import Iterator
 import msgspec
 
 from railguard.analysis.stage import Bound, Design, Stage, Unknown
+from railguard.devices.model import Device
 from railguard.rules.compose import first_unknown, open_point, stage_finding
 from railguard.rules.drive.current import FAR_FACTOR
 from railguard.rules.inputs import LEAST_UNEQUAL, bias_current, output_span
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
-from railguard.rules.remedies import decades, fit, scaled_network, sentence
-from railguard.rules.severity import TABLE, Breach, Broken, breach, capped, evidence, far_beyond
+from railguard.rules.remedies import (
+    LEAST_CAPACITOR,
+    compensation,
+    decades,
+    fit,
+    scaled_network,
+    sentence,
+)
+from railguard.rules.severity import (
+    TABLE,
+    Breach,
+    Broken,
+    breach,
+    capped,
+    evidence,
+    far_beyond,
+    gravity,
+)
 from railguard.rules.wording import NO_SOURCE, cited, device, listed, origin
 from railguard.units import percent, si
 from railguard.words import SEVERITIES, Basis, Severity
@@ -49,14 +66,13 @@ def judge_low(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome]
         gap = NO_NETWORK
     yield from open_point("feedback-low", stage, ("loop", "device"), gap)
     found = [_low(bound, limits) for bound in limit_known]
-    worst = min(filter(None, found), key=lambda b: SEVERITIES.index(b[1]), default=None)
-    if worst is None:
+    broken = min(filter(None, found), key=gravity, default=None)
+    if broken is None:
         return
-    broken, severity = worst
     yield stage_finding(
         "feedback-low",
         stage,
-        capped(severity, "minor") if stage.family is None else severity,
+        capped(broken.severity, "minor") if stage.family is None else broken.severity,
         _low_message(stage, broken),
         nets=(stage.output.net,),
         demand=broken.demand,
@@ -86,22 +102,19 @@ def _own_current(stage: Stage, bound: Bound) -> Bound:
     )
 
 
-def _low(bound: Bound, limits: Limits) -> tuple[Breach, Severity] | None:
+def _low(bound: Bound, limits: Limits) -> Breach | None:
     """Find a limit the network alone breaks, else whether it takes more than its share."""
     broken = breach(bound)
     if broken is not None:
-        broken = far_beyond(bound, broken, limits["far-factor"])
-        return broken, broken.severity
-    best = bound.guaranteed if bound.guaranteed is not None else bound.typical
+        return far_beyond(bound, broken, limits["far-factor"])
+    best, basis = bound.best, bound.best_basis
     if bound.demand is None or best is None or bound.demand <= limits["share"] * best:
         return None
-    basis = bound.guaranteed_basis if bound.guaranteed is not None else bound.typical_basis
     severity = TABLE["reserve"][evidence(bound.demand_basis, basis)]
     bases: tuple[Basis, ...] = tuple(dict.fromkeys((bound.demand_basis, basis)))
-    share = Breach(
+    return Breach(
         "reserve", severity, bound.demand, best, best - bound.demand, None, bases, basis, False
     )
-    return share, severity
 
 
 def _low_message(stage: Stage, broken: Breach) -> str:
@@ -164,13 +177,14 @@ def judge_high(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome
     """Judge what bias current, input capacitance and noise make of the feedback resistors."""
     if not _negative(stage) or stage.feedback.resistance == 0 or not stage.feedback.elements:
         return
-    seen = stage.feedback.seen
+    seen, family = stage.feedback.seen, stage.family
     gap = NO_NETWORK if seen is None else None
     yield from open_point("feedback-high", stage, ("loop", "device"), gap)
-    if seen is None or stage.family is None or first_unknown(stage, ("loop",)) is not None:
+    if seen is None or family is None or first_unknown(stage, ("loop",)) is not None:
         return
-    troubles = [t for t in (_bias(stage, limits, design), _pole(stage, seen, limits),
-                            _noise(stage, seen, limits)) if t is not None]  # fmt: skip
+    troubles = [t for t in (_bias(stage, family, limits, design),
+                            _pole(stage, family, seen, limits),
+                            _noise(stage, family, seen, limits)) if t is not None]  # fmt: skip
     if not troubles:
         return
     troubles.sort(key=lambda t: (SEVERITIES.index(t.severity), t.fitting))
@@ -199,7 +213,7 @@ def _high_source(stage: Stage, worst: _Trouble) -> str:
     return reasons if sheet == NO_SOURCE else f"{reasons}; {sheet}"
 
 
-def _bias(stage: Stage, limits: Limits, design: Design) -> _Trouble | None:
+def _bias(stage: Stage, family: Device, limits: Limits, design: Design) -> _Trouble | None:
     """Bias current through the network, less what an equal resistance at the other input undoes."""
     current = bias_current(stage, design)
     ohms = stage.inputs.minus.resistance or stage.feedback.seen
@@ -209,7 +223,7 @@ def _bias(stage: Stage, limits: Limits, design: Design) -> _Trouble | None:
         return None
     unequal = ohms - (stage.inputs.plus.resistance or 0.0)
     error = current.amps * unequal * gain
-    offset = (stage.family.offset_voltage.best if stage.family else None) or 0.0
+    offset = family.offset_voltage.best or 0.0
     allowed = max(limits["error-share"] * span, offset * gain)
     far = error > limits["far-error-share"] * span
     if error <= allowed or (unequal <= limits["least"] and not far):
@@ -226,15 +240,15 @@ def _bias(stage: Stage, limits: Limits, design: Design) -> _Trouble | None:
     )
 
 
-def _pole(stage: Stage, seen: float, limits: Limits) -> _Trouble | None:
+def _pole(stage: Stage, family: Device, seen: float, limits: Limits) -> _Trouble | None:
     """The pole of the network's resistance with the input capacitance, against the crossover."""
-    family, loop = stage.family, stage.loop
+    loop = stage.loop
     sure = loop.phase_margin if loop.phase_margin is not None else loop.margins.low
-    if family is None or not loop.crossover or (sure or 0.0) >= limits["phase-margin"]:
+    if not loop.crossover or (sure or 0.0) >= limits["phase-margin"]:
         return None
     listed_farads = family.input_capacitance.best
     farads = listed_farads or limits["input-capacitance"]
-    basis: Basis = _figure_basis(stage) if listed_farads else "practice"
+    basis: Basis = family.input_capacitance.best_basis if listed_farads else "practice"
     pole = 1 / (2 * math.pi * seen * farads)
     ratio = loop.crossover / pole
     if ratio <= limits["pole-ratio"] or _compensated(stage, seen, farads):
@@ -250,57 +264,39 @@ def _pole(stage: Stage, seen: float, limits: Limits) -> _Trouble | None:
     )
 
 
-def _figure_basis(stage: Stage) -> Basis:
-    figure = stage.family.input_capacitance if stage.family else None
-    if figure is None:
-        return "practice"
-    return figure.guaranteed_basis if figure.guaranteed is not None else figure.typical_basis
-
-
-def _wanted_capacitance(stage: Stage, farads: float) -> float | None:
-    """Return sqrt(Cin / (2 pi RF GBW)), which leaves some 65 degrees, F."""
-    resistance = stage.feedback.resistance
-    gbw = stage.family.gain_bandwidth.best if stage.family else None
-    if not resistance or not gbw:
-        return None
-    return math.sqrt(farads / (2 * math.pi * resistance * gbw))
-
-
 def _compensated(stage: Stage, seen: float, farads: float) -> bool:
     """Tell whether a capacitor across the feedback already undoes the pole."""
     fitted, resistance = stage.feedback.capacitance or 0.0, stage.feedback.resistance
     if fitted <= 0 or not resistance:
         return False
-    enough = [c for c in (_wanted_capacitance(stage, farads),) if c is not None]
+    enough = [c for c in (compensation(stage, farads),) if c is not None]
     if resistance > seen:
         enough.append(farads * seen / (resistance - seen))
     return fitted >= min(enough, default=math.inf)
 
 
 def _capacitor_across(stage: Stage, farads: float) -> str:
-    wanted = _wanted_capacitance(stage, farads)
+    wanted = compensation(stage, farads)
     if wanted is None:
         return ""
-    across = f" across {listed(stage.feedback.elements)}" if stage.feedback.elements else ""
-    return f"fit {si(fit(max(wanted, 1e-12), 'up'), 'F')}{across}"
+    fitting = fit(max(wanted, LEAST_CAPACITOR), "up")
+    return f"fit {si(fitting, 'F')} across {listed(stage.feedback.elements)}"
 
 
-def _noise(stage: Stage, seen: float, limits: Limits) -> _Trouble | None:
+def _noise(stage: Stage, family: Device, seen: float, limits: Limits) -> _Trouble | None:
     """The network's thermal noise against the device's own."""
-    family = stage.family
-    density = family.voltage_noise.best if family else None
+    density = family.voltage_noise.best
     if not density or "transimpedance" in stage.topology:
         return None  # there the large resistor is what makes the signal
     resistor = math.sqrt(BOLTZMANN_4KT * seen)
     if resistor <= limits["noise-ratio"] * density:
         return None
-    basis: Basis = family.voltage_noise.typical_basis if family else "practice"
     return _Trouble(
         severity="remark",
         words=f"its thermal noise of {si(resistor, 'V')}/√Hz is {si(resistor / density, '')} times "
         f"the device's own {si(density, 'V')}/√Hz",
         fitting=(limits["noise-ratio"] * density) ** 2 / BOLTZMANN_4KT,
-        basis=("netlist", basis),
+        basis=("netlist", family.voltage_noise.best_basis),
     )
 
 

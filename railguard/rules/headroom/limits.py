@@ -94,8 +94,7 @@ def judge_differential(stage: Stage, limits: Limits, design: Design) -> Iterator
     yield from open_point("headroom-differential", stage, ("device",), gap)
     if limit is None or figure is None:
         return
-    known = figure.guaranteed is not None
-    basis = figure.guaranteed_basis if known else figure.typical_basis
+    basis = figure.best_basis
     yield stage_finding(
         "headroom-differential",
         stage,
@@ -157,10 +156,7 @@ def judge_offset(stage: Stage, limits: Limits, design: Design) -> Iterator[Outco
     if share <= limits["share"]:
         return
     figure = None if stage.family is None else stage.family.offset_voltage
-    basis: Basis = "practice"
-    if figure is not None:
-        known = figure.guaranteed is not None
-        basis = figure.guaranteed_basis if known else figure.typical_basis
+    basis: Basis = "practice" if figure is None else figure.best_basis
     row = TABLE["guaranteed"] if share > limits["far-share"] else TABLE["reserve"]
     gain = stage.loop.noise_gain_dc
     words = f" at a noise gain of {si(gain, '')}" if gain else ""

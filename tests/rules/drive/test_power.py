@@ -2,6 +2,7 @@
 
 import pytest
 
+from railguard.analysis.stage import Case
 from railguard.rules.drive.power import POWER
 from railguard.settings.model import Settings
 from tests.rules.stages import FAMILY, changed, design, figure, findings, open_points, stage
@@ -16,7 +17,8 @@ WARM = changed(
 
 def hot(junction, watts=0.5, family=WARM, **fields):
     """Make a design whose package reaches a temperature."""
-    one = stage(family=family, dissipation=watts, junction=junction, **fields)
+    case = Case("SOIC8", 150.0)
+    one = stage(family=family, case=case, dissipation=watts, junction=junction, **fields)
     return design(one, settings=Settings(ambient=(-20.0, 60.0)))
 
 

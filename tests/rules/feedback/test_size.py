@@ -4,7 +4,7 @@ import math
 
 import pytest
 
-from railguard.analysis.stage import Current, Feedback, Loop, Output, Range
+from railguard.analysis.stage import Current, Feedback, Loop, Output, Pair, Range
 from railguard.rules.feedback.size import HIGH, LOW
 from tests.rules.stages import (
     FAMILY,
@@ -204,3 +204,116 @@ def test_high_is_silent_for_followers_and_lists_what_is_unknown():
     assert len(open_points(HIGH, unsolved)) == 1
     assert findings(HIGH, unknown_device()) == []
     assert len(open_points(HIGH, unknown_device())) == 1
+
+
+def test_a_corner_of_the_whole_current_is_not_the_network_s():
+    """What the load does at a corner is drive-current's matter."""
+    source = amps(1e-3, stated=Pair(9e-3, 5e-3), default=Pair(9e-3, 5e-3))
+    assert outcomes(LOW, taking(0.45e-3, current=Current(source=source, sink=amps()))) == []
+
+
+def test_a_share_of_what_is_taken_by_practice_is_a_remark():
+    """As the row of used-up reserve has it for an assumed figure."""
+    practice = {"typical_basis": "practice", "guaranteed_basis": "practice"}
+    current = Current(source=amps(**practice), sink=amps(**practice))
+    (found,) = findings(LOW, taking(2.6e-3, current=current))
+    assert (found.severity, found.basis) == ("remark", ("netlist", "practice"))
+
+
+@pytest.mark.parametrize(("load", "words"), [(11e3, " (11 kΩ)"), (0.0, ""), (None, "")])
+def test_what_the_network_is_to_the_output_is_said_where_it_is_known(load, words):
+    """In ohms, behind its name."""
+    network = changed(stage().feedback, current=2.6e-3, load=load)
+    (found,) = findings(LOW, stage(feedback=network))
+    assert found.message == (
+        f"U1's own feedback network{words} takes 2.6 mA, 52 % of the 5 mA a TL072 gives (data "
+        "sheet), before anything reaches the load."
+    )
+    assert found.margin == pytest.approx(2.4e-3)
+
+
+def test_a_solved_network_leaves_nothing_open():
+    """Neither its current nor what its inverting input sees."""
+    assert open_points(HIGH, seeing(10e3)) == []
+    assert open_points(LOW, stage()) == []
+
+
+@pytest.mark.parametrize(
+    ("offset", "gain", "severities"),
+    [
+        (None, 2.0, ["minor"]),  # 1.2 uA x 100 kohm x 2 is 240 mV, 1 % of 10 V is 100 mV
+        (100e-3, 2.0, ["minor"]),
+        (121e-3, 2.0, []),  # no more than the offset voltage does
+    ],
+)
+def test_bias_that_does_no_more_than_the_offset_is_no_matter(offset, gain, severities):
+    """Both come out times the noise gain."""
+    family = changed(
+        BIPOLAR, bias_current=figure(guaranteed=1.2e-6), offset_voltage=figure(guaranteed=offset)
+    )
+    one = seeing(100e3, family, noise_gain_dc=gain)
+    assert [f.severity for f in findings(HIGH, one)] == severities
+
+
+@pytest.mark.parametrize(
+    ("margin", "margins", "count"),
+    [
+        (45.0, Range(), 0),
+        (44.0, Range(), 1),
+        (None, Range(45.0, 80.0), 0),  # enough at the least
+        (None, Range(30.0, 80.0), 1),
+        (None, Range(), 1),
+    ],
+)
+def test_a_margin_that_is_sure_to_be_enough(margin, margins, count):
+    """From 45 degrees on the pole is harmless, whatever it is; the rule's limit can be moved."""
+    one = at_ratio(5.0, phase_margin=margin, margins=margins)
+    assert len(findings(HIGH, one)) == count
+    assert len(findings(HIGH, one, phase_margin=0.5)) == (margin is None and margins.low is None)
+
+
+@pytest.mark.parametrize(
+    ("guaranteed", "basis", "severity"), [(10e-12, "memory", "minor"), (None, "practice", "remark")]
+)
+def test_the_pole_is_as_well_known_as_the_input_capacitance(guaranteed, basis, severity):
+    """The guaranteed figure's basis where there is one."""
+    listed = figure(10e-12, guaranteed, typical_basis="practice", guaranteed_basis="memory")
+    (found,) = findings(HIGH, at_ratio(5.0, changed(POLE, input_capacitance=listed)))
+    assert (found.severity, found.basis) == (severity, ("netlist", basis))
+
+
+@pytest.mark.parametrize(("farads", "count"), [(9.9e-12, 1), (10e-12, 0)])
+def test_neutral_compensation_is_enough_and_a_little_less_is_not(farads, count):
+    """Cin x RG / RF with RG = RF: 10 pF; where the gain-bandwidth product is not listed."""
+    slow = changed(POLE, gain_bandwidth=figure())
+    assert len(findings(HIGH, at_ratio(5.0, slow, capacitance=farads))) == count
+
+
+def test_a_network_without_a_single_resistor_back_is_not_compensated():
+    """A T of resistors has no one resistance to set its capacitor against."""
+    one = at_ratio(5.0, capacitance=1e-9)
+    tee = changed(one, feedback=changed(one.feedback, resistance=None))
+    (found,) = findings(HIGH, tee)
+    assert "pF across" not in found.remedy
+
+
+@pytest.mark.parametrize(
+    ("farads", "fitting"),
+    [(10e-12, "2.4 pF"), (10.5e-12, "2.4 pF"), (12e-12, "2.7 pF"), (0.1e-12, "1 pF")],
+)
+def test_the_capacitor_proposed_is_the_next_one_up(farads, fitting):
+    """sqrt(10 pF / (2 pi 100 kohm 3 MHz)) is 2.30 pF; none below a picofarad is fitted."""
+    family = changed(POLE, input_capacitance=figure(farads))
+    one = seeing(50e3, family, crossover=5 / (2 * math.pi * 50e3 * farads))
+    (found,) = findings(HIGH, one)
+    assert found.remedy.endswith(f"fit {fitting} across R2.")
+
+
+def test_noise_says_by_how_much_and_what_would_do():
+    """Of 4kTR at 300 K: 25 kohm make 20.35 nV; 24.1 kohm are five times 4 nV."""
+    (found,) = findings(HIGH, seeing(25e3, NOISY))
+    assert "its thermal noise of 20.4 nV/√Hz is 5.09 times the device's own 4 nV/√Hz" in (
+        found.message
+    )
+    assert found.limit == pytest.approx(24.14e3, rel=1e-3)
+    assert found.basis == ("netlist", "catalogue")
