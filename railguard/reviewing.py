@@ -20,7 +20,7 @@ from railguard.deck.files import Deck, deck_from_text, read_deck
 from railguard.devices import catalogue
 from railguard.devices.names import schematic_name
 from railguard.notices import NotChecked, Problem
-from railguard.rules import third_party, waivers
+from railguard.rules import strays, third_party, waivers
 from railguard.rules.finding import Finding
 from railguard.rules.protocol import Rule
 from railguard.rules.registry import judge, known_limits
@@ -155,7 +155,7 @@ def review(
         except Exception as error:
             error.add_note(f"while reviewing {deck.path}")
             raise
-        run.took(own, matched, found.path)
+        run.took(own, matched, found)
         designs.append(found)
         if step is not None:
             step()
@@ -168,13 +168,13 @@ def review(
 
 
 class _Run:
-    """What must be known over all decks of a run: which waivers were of use."""
+    """What must be known over all decks of a run: which waivers and stages were met."""
 
     def __init__(self, day: dt.date, extra: tuple[Rule, ...]) -> None:
         self.first: Settings | None = None
         self._day = day
         self._limits = known_limits(extra)
-        self._used: dict[str, tuple[Settings, set[int], list[str]]] = {}
+        self._used: dict[str, tuple[Settings, set[int], list[DesignReview]]] = {}
 
     def prepared(self, settings: Settings) -> Settings:
         """Set the day waivers are judged on, and check the names once per settings file."""
@@ -185,19 +185,23 @@ class _Run:
         self.first = self.first or settings
         return settings
 
-    def took(self, settings: Settings, matched: set[int], path: str) -> None:
+    def took(self, settings: Settings, matched: set[int], found: DesignReview) -> None:
         """Note which waivers of a file matched in one deck."""
-        _, indexes, paths = self._used[settings.file]
+        _, indexes, decks = self._used[settings.file]
         indexes |= {index for index in matched if index < len(settings.waivers)}
-        paths.append(path)
+        decks.append(found)
 
     def leftovers(self) -> tuple[Finding, ...]:
-        """Return a remark for each waiver of a file that matched nothing in the whole run."""
-        return tuple(
-            finding
-            for settings, matched, paths in self._used.values()
-            for finding in waivers.stale(settings, matched, paths)
-        )
+        """Return a remark for each waiver and stage of a file met nowhere in the whole run."""
+        found: list[Finding] = []
+        for settings, matched, decks in self._used.values():
+            paths = [deck.path for deck in decks]
+            found += waivers.stale(settings, matched, paths)
+            if not strays.is_for_others(settings, paths):
+                designs = [deck.design for deck in decks]
+                met = {name for design in designs for name in strays.met(settings, design)}
+                found += strays.left_over(settings, met, designs)
+        return tuple(found)
 
 
 def _is_path(source: object) -> bool:
@@ -242,8 +246,10 @@ def review_deck(
     judged = judge(design, extra.rules)
     found = judged.findings if engine is None else engine.confirmed(judged.findings, design)
     findings, matched = waivers.apply(found, settings, circuit.path, settings.as_of)
-    # A waiver in a comment card speaks of this deck alone, so it is left over here or nowhere.
+    # A comment card speaks of this deck alone: what it names is left over here or nowhere.
     own = waivers.stale(settings, matched | frozenset(range(len(stated.waivers))))
+    told = strays.met(settings, design) | frozenset(stated.stages_at)
+    own = (*own, *strays.left_over(settings, told, [design]))
     result = DesignReview(
         path=circuit.path,
         design=design,

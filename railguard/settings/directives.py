@@ -191,7 +191,12 @@ def _load(words: _Words, place: Location) -> _Statement:
     )
 
 
-def _use(words: _Words, _: Location) -> _Statement:
+def _placed(settings: Settings, stage: str, place: Location) -> Settings:
+    """Note where a stage is spoken of, the first place where there are several."""
+    return msgspec.structs.replace(settings, stages_at={stage: place, **settings.stages_at})
+
+
+def _use(words: _Words, place: Location) -> _Statement:
     form = "use DESIGNATOR comparator"
     stage, *rest = words.take(form, "use", least=2)
     fields = Fields(f'the stage "{stage}"', {**words.fields, "use": rest[0].casefold()}, _number)
@@ -202,11 +207,11 @@ def _use(words: _Words, _: Location) -> _Statement:
     return _Statement(
         ("use", stage.casefold()),
         lambda s: _has(s.uses, stage),
-        lambda s: msgspec.structs.replace(s, uses={**s.uses, stage: made}),
+        lambda s: _placed(msgspec.structs.replace(s, uses={**s.uses, stage: made}), stage, place),
     )
 
 
-def _pins(words: _Words, _: Location) -> _Statement:
+def _pins(words: _Words, place: Location) -> _Statement:
     if len(words.words) < 2:
         remedy = "Write pins DESIGNATOR in+ in- v+ v- out."
         raise StatementError("It has too few or too many words.", remedy=remedy)
@@ -218,7 +223,7 @@ def _pins(words: _Words, _: Location) -> _Statement:
     return _Statement(
         ("pins", stage.casefold()),
         lambda s: _has(s.pins, stage),
-        lambda s: msgspec.structs.replace(s, pins={**s.pins, stage: made}),
+        lambda s: _placed(msgspec.structs.replace(s, pins={**s.pins, stage: made}), stage, place),
     )
 
 

@@ -117,6 +117,7 @@ class Settings(msgspec.Struct, frozen=True, kw_only=True):
     hold_at     the level that stops a commit or a build
     kind        "board" or "bench"; "" : worked out
     nets, uses, pins  by name; `settings.spelling` makes it the netlist's own
+    stages_at   where a stage is spoken of, by its name as stated there
     pins        pin names in the order of the card: `in+ in- v+ v- out`, `1out 1in- 1in+ ...`
     ambient     lowest and highest, degrees Celsius; None: 25 throughout
     limits      rule name -> limit name -> value
@@ -138,6 +139,7 @@ class Settings(msgspec.Struct, frozen=True, kw_only=True):
     loads: tuple[Load, ...] = ()
     uses: Mapping[str, Use] = {}
     pins: Mapping[str, tuple[str, ...]] = {}
+    stages_at: Mapping[str, Location] = {}
     tolerances: Tolerances = Tolerances()
     limits: Mapping[str, Mapping[str, float]] = {}
     severities: Mapping[str, Severity] = {}

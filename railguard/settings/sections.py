@@ -65,7 +65,7 @@ def read_sections(
     limits, off, named = _limits(reader)
     severities = _severities(reader)
     waivers = _waivers(reader)
-    uses, pins = _stages(reader)
+    uses, pins, stages_at = _stages(reader)
     named += [Named(rule, location=reader.place("severity", rule)) for rule in severities]
     named += [Named(waiver.rule, location=waiver.location) for waiver in waivers]
     return msgspec.structs.replace(
@@ -75,6 +75,7 @@ def read_sections(
         loads=tuple(_each(reader, "loads", "the load on", statements.load).values()),
         uses=uses,
         pins=pins,
+        stages_at=stages_at,
         tolerances=_tolerances(reader),
         limits=limits,
         severities=severities,
@@ -226,7 +227,11 @@ def _severities(reader: _Reader) -> dict[str, Severity]:
     return made
 
 
-def _stages(reader: _Reader) -> tuple[dict[str, Use], dict[str, tuple[str, ...]]]:
+def _stages(
+    reader: _Reader,
+) -> tuple[dict[str, Use], dict[str, tuple[str, ...]], dict[str, Location]]:
+    """Return uses and pins by the stage's name, and where each name stands."""
+
     def build(_: str, fields: Fields, __: Location | None) -> tuple[Use | None, tuple[str, ...]]:
         fields.only("use", "pins")
         made = fields.word("use", statements.USES), statements.pins(fields)
@@ -236,7 +241,12 @@ def _stages(reader: _Reader) -> tuple[dict[str, Use], dict[str, tuple[str, ...]]
 
     made = _each(reader, "stages", "the stage", build)
     uses = {name: use for name, (use, _) in made.items() if use is not None}
-    return uses, {name: pins for name, (_, pins) in made.items() if pins}
+    places = {name: reader.place("stages", name) for name in made}
+    return (
+        uses,
+        {name: pins for name, (_, pins) in made.items() if pins},
+        {name: place for name, place in places.items() if place is not None},
+    )
 
 
 def _tolerances(reader: _Reader) -> Tolerances:

@@ -204,6 +204,13 @@ _TOPICS = (
         source=NO_SOURCE,
     ),
     _Topic(
+        "stage-unknown",
+        "A stage that the user's file or a comment card speaks of and no netlist of the run has.",
+        "What was meant for one stage reaches none, and the stage meant is judged without it.",
+        "remark",
+        source=NO_SOURCE,
+    ),
+    _Topic(
         "bound",
         "A netlist that passed a bound on size, depth or expansion.",
         "What lies beyond the bound was not read.",

@@ -218,6 +218,14 @@ CASES = {
         unknown=_BASE,
         listed=None,
     ),
+    "netlist-stage-unknown": Four(
+        passing=_with("* railguard: use XU1 linear"),
+        failing=_with("* railguard: use XU9 comparator"),
+        inside=_with("* railguard: use u1 linear"),
+        outside=_with("* railguard: use XU11 linear"),
+        unknown=_BASE,
+        listed=None,
+    ),
     "netlist-bound": Four(
         passing=_with(*_nested(10)),
         failing=_with(*_nested(200)),
