@@ -3,6 +3,7 @@
 from collections.abc import Iterator
 
 from railguard.analysis.stage import Design, Stage
+from railguard.devices.model import Figure
 from railguard.rules.compose import missing_figure, open_point, stage_finding
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.severity import ROUNDING, TABLE, evidence
@@ -27,7 +28,7 @@ def judge_current_type(stage: Stage, limits: Limits, design: Design) -> Iterator
             stage,
             f"a capacitor of {si(stage.feedback.capacitance, 'F')} stands across its feedback: "
             "with current feedback it closes the loop at any frequency and the stage oscillates",
-            stated,
+            figure,
             "Take the capacitor out; filter elsewhere.",
         )
         return
@@ -45,7 +46,7 @@ def judge_current_type(stage: Stage, limits: Limits, design: Design) -> Iterator
             stage,
             f"{device(stage)} with current feedback asks for {si(stated, 'Ω')} and has {fitted}: "
             "its bandwidth runs away and it rings or oscillates",
-            stated,
+            figure,
             fit,
         )
     elif ohms > limits["high-share"] * stated:
@@ -53,17 +54,16 @@ def judge_current_type(stage: Stage, limits: Limits, design: Design) -> Iterator
             stage,
             f"{device(stage)} with current feedback asks for {si(stated, 'Ω')} and has {fitted}: "
             f"its bandwidth falls to about {percent(stated / ohms)}",
-            stated,
+            figure,
             fit,
             severity="remark",
         )
 
 
 def _finding(
-    stage: Stage, what: str, stated: float | None, remedy: str, severity: Severity | None = None
+    stage: Stage, what: str, figure: Figure, remedy: str, severity: Severity | None = None
 ) -> Outcome:
-    figure = stage.family.feedback_resistor if stage.family else None
-    basis = "memory" if figure is None else figure.typical_basis
+    basis = figure.best_basis
     return stage_finding(
         "feedback-current-type",
         stage,
@@ -71,8 +71,8 @@ def _finding(
         f"{stage.schematic}: {what}.",
         nets=(stage.inputs.minus.net,),
         demand=stage.feedback.resistance,
-        limit=stated,
-        margin=None if stated is None else (stage.feedback.resistance or 0.0) - stated,
+        limit=figure.best,
+        margin=None if figure.best is None else (stage.feedback.resistance or 0.0) - figure.best,
         unit="Ω",
         basis=("netlist", basis),
         remedy=remedy,

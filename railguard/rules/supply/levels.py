@@ -79,9 +79,9 @@ def _range_bounds(stage: Stage, device: Device, total: float) -> tuple[Bound, Bo
         demand=total,
         guaranteed=device.supply_high,
         absolute=device.supply_absolute,
-        guaranteed_basis=supply_basis(
-            device, "high" if device.supply_high is not None else "absolute"
-        ),
+        guaranteed_basis=supply_basis(device, "high"),
+        # where no range is listed, the corners are held against the absolute maximum
+        typical_basis=supply_basis(device, "absolute"),
         absolute_basis=supply_basis(device, "absolute"),
         demand_basis=supply.basis,
         stated=_pair(highest, top, supply.tolerance_stated),

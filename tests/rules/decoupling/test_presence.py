@@ -156,3 +156,53 @@ def test_across_of_unknown_value_is_left_to_absent():
     one = rail(decoupling=(), across=(capacitor("C3", None, to="-12V"),))
     assert outcomes(ACROSS, one, whole(one)) == []
     assert len(open_points(ABSENT, one, whole(one))) == 1
+
+
+@pytest.mark.parametrize("rule", [ABSENT, FEW, BEHIND, ACROSS])
+@pytest.mark.parametrize(
+    "fields",
+    [{"packages": ()}, {"net": "mid", "returns": ("mid",)}, {"net": "0", "returns": ("0",)}],
+)
+def test_a_return_and_a_rail_that_feeds_nothing_are_not_judged(rule, fields):
+    """Whatever stands on them."""
+    usual = {"decoupling": (), "packages": ("U1", "U2")}
+    for capacitors in (
+        {},
+        {"upstream": (capacitor(behind="FB1"),)},
+        {"across": (capacitor("C3", to="-12V"),)},
+    ):
+        one = rail(**{**usual, **capacitors, **fields})
+        assert outcomes(rule, one, whole(one)) == []
+
+
+@pytest.mark.parametrize(("returns", "to"), [(("0",), "0"), (("-12V", "0"), "-12V"), ((), "0")])
+def test_a_capacitor_goes_to_the_rail_s_own_return(returns, to):
+    """The opposite rail where no ground is used; ground where none is known."""
+    one = rail(decoupling=(), returns=returns)
+    (found,) = findings(ABSENT, one, whole(one))
+    assert found.remedy == f"Fit 100 nF from +12V to {to} at U1."
+
+
+def test_a_rail_with_nothing_on_it_says_no_more():
+    """No other size stands there."""
+    (found,) = findings(ABSENT, BARE, whole(BARE))
+    assert found.message == (
+        "Rail +12V feeds 1 package (U1) and has no capacitor of 10 nF to 1 µF to its return."
+    )
+
+
+@pytest.mark.parametrize(
+    ("rails", "words"),
+    [
+        ((BARE,), "rail +12V (U1)"),
+        ((BARE, rail("-12V", decoupling=())), "rails +12V and -12V (U1)"),
+    ],
+)
+def test_what_is_said_of_a_bench(rails, words):
+    """Which rails, whose, and why it may be right."""
+    (found,) = findings(ABSENT, BARE, whole(*rails, kind="bench"))
+    assert found.message == (
+        f"No capacitor stands on {words}. The deck is read as a bench, where ideal sources need "
+        "none; a board does."
+    )
+    assert (found.basis, found.location) == (("netlist", "practice"), BARE.location)

@@ -117,3 +117,41 @@ def test_no_rating_or_no_level_is_not_judged():
     """A card without a rating says nothing, and neither does a rail nobody states."""
     assert outcomes(RATING, rail()) == []
     assert outcomes(RATING, rail(level=None, decoupling=(capacitor(rating=1.0),))) == []
+
+
+def test_a_fast_device_is_judged_on_the_rails_it_stands_on():
+    """Each for itself: one that is served, bare, not its own, or the return is passed by."""
+    small = rail("+5V", decoupling=(capacitor(), capacitor("C8", 10e-9)))
+    bare = rail("+3V3", decoupling=())
+    other = rail("+9V", packages=("U2",))
+    ground = rail("0", 0.0)
+    found = judged(fast(rails=(small, bare, other, ground, rail("-12V", -12.0))))
+    assert [f.nets for f in found] == [("-12V",)]
+
+
+def test_an_oscillator_s_divider_is_no_reference():
+    """Its thresholds follow the rail, and so does its swing."""
+    assert outcomes(REFERENCE, referred(0.0, use="oscillator")) == []
+
+
+def test_every_capacitor_of_a_rail_is_judged():
+    """One that is sound, or that states no rating, hides none behind it."""
+    one = rail(
+        decoupling=(capacitor("C1", rating=25.0), capacitor("C2"), capacitor("C3", rating=16.0)),
+        upstream=(capacitor("C4", rating=10.0),),
+    )
+    assert [f.designators for f in findings(RATING, one)] == [("C3",), ("C4",)]
+
+
+def test_what_is_said_of_a_reversed_capacitor():
+    """Where it stands and at what; a polarity has no numbers."""
+    (found,) = findings(RATING, rail("-12V", -12.0, decoupling=(capacitor(reversed=True),)))
+    assert found.message == "C1 is polarised and stands the wrong way round on -12V (-12 V)."
+    assert (found.demand, found.limit, found.margin, found.unit) == (None, None, None, "")
+
+
+def test_the_derating_itself_is_kept():
+    """Seventy per cent of 10 V are 7 V, but for rounding."""
+    for level, count in ((7.0, 0), (7.0 * (1 + 1e-12), 0), (7.0 * (1 + 1e-6), 1)):
+        one = rail("+7V", level, decoupling=(capacitor(rating=10.0),))
+        assert len(findings(RATING, one)) == count

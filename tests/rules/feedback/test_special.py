@@ -2,7 +2,7 @@
 
 import pytest
 
-from railguard.analysis.stage import Feedback, Output, Range
+from railguard.analysis.stage import Feedback, Loop, Output, Range
 from railguard.rules.feedback.special import CURRENT_TYPE, MATCHING
 from railguard.settings.model import Settings, Tolerances
 from tests.rules.stages import (
@@ -93,3 +93,80 @@ def test_weights_that_differ_on_purpose_and_unknown_ranges_are_not_judged():
     assert outcomes(MATCHING, difference(gains=(1.0, -3.0))) == []
     assert outcomes(MATCHING, changed(difference(), output=Output(net="out"))) == []
     assert outcomes(MATCHING, stage()) == []
+
+
+@pytest.mark.parametrize(
+    ("ohms", "words"),
+    [
+        (690.0, "690 Ω of feedback: its bandwidth runs away and it rings or oscillates."),
+        (0.0, "a wire for its feedback: its bandwidth runs away and it rings or oscillates."),
+        (2500.0, "2.5 kΩ of feedback: its bandwidth falls to about 40 %."),
+    ],
+)
+def test_what_is_said_of_another_resistor(ohms, words):
+    """What the sheet asks for, what there is, what it does."""
+    (found,) = findings(CURRENT_TYPE, with_resistor(ohms))
+    assert found.message == f"U1: a TL072 with current feedback asks for 1 kΩ and has {words}"
+    assert (found.demand, found.limit, found.margin) == (ohms, 1000.0, ohms - 1000.0)
+
+
+@pytest.mark.parametrize(("family", "limit", "margin"), [(FAST, 1000.0, 200.0), (None, None, None)])
+def test_a_capacitor_is_told_with_the_resistor_it_stands_across(family, limit, margin):
+    """Beside what the sheet states, where it states one."""
+    family = family or changed(FAST, feedback_resistor=figure())
+    (found,) = findings(CURRENT_TYPE, with_resistor(1200.0, family, 10e-12))
+    assert (found.demand, found.limit, found.margin) == (1200.0, limit, margin)
+
+
+def test_what_is_missing_of_a_current_feedback_device_is_named():
+    """With the field to add."""
+    bare = changed(FAST, feedback_resistor=figure())
+    (point,) = open_points(CURRENT_TYPE, with_resistor(10.0, bare))
+    assert point.rule == "feedback-current-type"
+    assert point.why == "the stated feedback resistor of TL072 is not in the catalogue"
+
+
+def test_a_guaranteed_resistor_has_its_own_basis():
+    """It is the one compared with."""
+    vague = figure(900.0, 1000.0, typical_basis="catalogue", guaranteed_basis="memory")
+    (found,) = findings(CURRENT_TYPE, with_resistor(600.0, changed(FAST, feedback_resistor=vague)))
+    assert (found.severity, found.basis) == ("major", ("netlist", "memory"))
+
+
+@pytest.mark.parametrize(
+    "fields",
+    [{"use": "comparator"}, {"loop": Loop(dc="positive")}, {"topology": "summing"}],
+)
+def test_only_a_linear_difference_amplifier_has_matched_resistors(fields):
+    """Neither a comparator nor what has no working loop."""
+    assert outcomes(MATCHING, changed(difference(), **fields)) == []
+
+
+@pytest.mark.parametrize(
+    ("gains", "count"),
+    [((10.0, -9.45), 1), ((10.0, -9.15), 0), ((0.0, -10.0), 0), ((10.0, 10.0), 0)],
+)
+def test_weights_within_their_tolerance_are_meant_to_be_alike(gains, count):
+    """Two per cent and four times one per cent apart may be chance; more, and no sign, is not."""
+    assert len(findings(MATCHING, difference(gains=gains))) == count
+
+
+@pytest.mark.parametrize(
+    ("demand", "count"),
+    [(Range(None, 0.5), 0), (Range(0.5, None), 0), (Range(None, 0.6), 1), (Range(-0.6, 0.1), 1)],
+)
+def test_the_farther_end_of_the_inputs_counts(demand, count):
+    """4 x 1 % of 0.5 V are 20 mV, 1 % of 2 V; an end nobody knows counts as none."""
+    one = changed(difference(span=2.0), inputs=inputs(demand=demand))
+    assert len(findings(MATCHING, one)) == count
+
+
+def test_what_is_said_of_a_difference_amplifier():
+    """Its gain, its resistors and where that figure is from, rejection, and the error."""
+    (found,) = findings(MATCHING, difference())
+    assert found.message == (
+        "U1 is a difference amplifier with a gain of 10 and resistors of 1 % (default): "
+        "common-mode rejection may be as low as 48.8 dB, and 5 V at its inputs moves the output "
+        "by 200 mV, 5 % of its span."
+    )
+    assert found.basis == ("netlist", "assumed")
