@@ -4,8 +4,10 @@ import pytest
 
 from railguard.analysis.stage import Feedback, Output
 from railguard.devices.model import SwingPoint
+from railguard.location import Location
 from railguard.rules.causes import merge, order
 from railguard.rules.compose import finding
+from railguard.rules.links import Link
 from railguard.rules.relations import elements_of, upstream
 from tests.rules.stages import (
     FAMILY,
@@ -438,3 +440,28 @@ def test_a_stage_without_a_loop_explains_the_network_that_ends_at_it():
         "feedback-high"
     ]
     assert len(merge([high, open_loop], design(stage(), half, elements=elements[1:]))) == 2
+
+
+def test_in_a_ring_of_causes_the_first_one_told_is_the_cause(monkeypatch):
+    """Everything in the ring, and what follows from it, hangs under the smallest index."""
+    names = ("behind", "first", "second", "third")
+    follows = {"behind": "third", "first": "second", "second": "third", "third": "first"}
+    links = tuple(
+        Link(causes=(cause,), follows=(rule,), related=lambda *_: "ring")
+        for rule, cause in follows.items()
+    )
+    monkeypatch.setattr("railguard.rules.causes.LINKS", links)
+    (root,) = merge([about(name) for name in names], ONE)
+    assert root.rule == "first"
+    assert {consequence.rule for consequence in root.consequences} == {"behind", "second", "third"}
+
+
+def test_equals_stand_in_the_order_of_the_netlist():
+    """By file and line, then by rule; what has no place comes last."""
+    places = ((None, "a"), (("b.cir", 3), "a"), (("a.cir", 20), "a"), (("a.cir", 3), "b"))
+    found = [
+        changed(about("drive-power", name), location=place and Location(*place))
+        for place, name in places
+    ]
+    said = [f.location and (f.location.file, f.location.line) for f in sorted(found, key=order)]
+    assert said == [("a.cir", 3), ("a.cir", 20), ("b.cir", 3), None]

@@ -189,3 +189,40 @@ def test_an_unknown_device_still_wants_a_capacitor():
     """Without figures no value is named."""
     (found,) = findings(TRANSIMPEDANCE, converting(100e3, family=None))
     assert found.remedy == "Fit a few picofarads across RF."
+
+
+@pytest.mark.parametrize(
+    ("degrees", "severity", "does"),
+    [
+        (44.0, "minor", "rings"),
+        (20.0, "minor", "rings"),
+        (19.0, "major", "rings long"),
+        (0.0, "critical", "oscillates"),
+        (-5.0, "critical", "oscillates"),
+    ],
+)
+def test_what_a_phase_margin_does(degrees, severity, does):
+    """From twenty degrees on it rings; at none it oscillates."""
+    load = Current(load_capacitance=10e-9)
+    (found,) = findings(PHASE_MARGIN, with_margin(degrees, current=load))
+    assert found.severity == severity
+    assert found.message == (
+        f"U1's loop closes at 1 MHz with a phase margin of {degrees:g}° with 10 nF at its output, "
+        f"so it {does}; 45° is wanted."
+    )
+
+
+def test_what_keeps_a_phase_margin_from_being_known():
+    """The figures that make it."""
+    (point,) = open_points(PHASE_MARGIN, with_margin(None))
+    assert point.why == (
+        "what a TL072 does to the phase here is not listed: gain-bandwidth product, output "
+        "resistance or input capacitance"
+    )
+
+
+def test_the_resistor_between_the_inputs_is_the_next_one_down():
+    """10 kilohm over 3.9 are 2.56: 2.7 would leave too little noise gain."""
+    network = Feedback(elements=("R2",), resistance=10e3)
+    (found,) = findings(NOISE_GAIN, closing_at(1.1, feedback=network))
+    assert "2.4 kΩ or less" in found.remedy

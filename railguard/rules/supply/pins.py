@@ -53,9 +53,9 @@ def unstated(package: Package, stage: Stage, rule: str) -> NotChecked:
     return NotChecked(package.designator, rule, why, add)
 
 
-def supply_basis(device: Device | None, name: str) -> Basis:
+def supply_basis(device: Device, name: str) -> Basis:
     """Return where a device's supply figure came from: `low`, `high` or `absolute`."""
-    return "practice" if device is None else device.supply_basis.get(name, "memory")
+    return device.supply_basis.get(name, "memory")
 
 
 def no_channel(package: Package, rule: str) -> NotChecked:

@@ -1,6 +1,9 @@
 """Whether packages are supplied, the right way round, and on one pair of rails."""
 
+import pytest
+
 from railguard.analysis.stage import Rail, Unknown
+from railguard.circuit.model import Element
 from railguard.rules.supply.presence import MISSING, REVERSED, SPLIT
 from tests.rules.stages import (
     SUPPLY,
@@ -170,3 +173,28 @@ def test_rails_know_ground_as_no_rail():
     assert isinstance(rail(), Rail)
     whole = design(stage(supply=single()), rails=(rail("+5V", 5.0),))
     assert findings(MISSING, whole.packages[0], whole) == []
+
+
+def test_a_deck_of_batteries_states_its_supplies():
+    """A rail that none of them feeds is missing, as with sources."""
+    one = stage(supply=changed(SUPPLY, positive=None, positive_net="vp"))
+    cell = Element(kind="battery", designator="BT1", nets=("vbat", "0"))
+    whole = design(one, rails=(unfed(),), elements=(cell,))
+    assert len(findings(MISSING, whole.packages[0], whole)) == 1
+
+
+@pytest.mark.parametrize(("positive", "negative"), [(12.0, 12.0), (0.5, 0.5)])
+def test_a_negative_rail_of_the_wrong_sign(positive, negative):
+    """Both pins stand above ground: the lower one is wrong."""
+    whole = design(supplied(positive, negative))
+    (found,) = findings(REVERSED, whole.packages[0], whole)
+    assert "net -12V has the wrong sign" in found.message
+    assert found.remedy == "Turn the source that feeds -12V."
+    assert (found.demand, found.limit, found.margin) == (0.0, 0.1, -0.1)
+
+
+def test_channels_on_two_negative_rails():
+    """The pin is named."""
+    twin = package(channels=("XU1A", "XU1B"), negative=("-12V", "0"))
+    (found,) = findings(SPLIT, twin)
+    assert "its negative supply pin on nets -12V and 0" in found.message
