@@ -314,6 +314,24 @@ class Feedback(msgspec.Struct, frozen=True, kw_only=True):
     current: float | None = None
 
 
+class Balance(msgspec.Struct, frozen=True, kw_only=True):
+    """The four resistors of a difference amplifier.
+
+    elements   from the input to the inverting input, back from the output, and their fellows
+    gain       of the difference, V/V
+    tolerance  sum of the four, as a share; `stated` where each is
+    reference  volts the output counts from
+    sense      designator of the small resistor, or the source, the two inputs stand across, or ""
+    """
+
+    elements: tuple[str, ...]
+    gain: float
+    tolerance: float
+    stated: bool
+    reference: float = 0.0
+    sense: str = ""
+
+
 class Loop(msgspec.Struct, frozen=True, kw_only=True):
     """The stage's own loop, all other stages active.
 
@@ -427,6 +445,7 @@ class Stage(msgspec.Struct, frozen=True, kw_only=True):
     high_pass    hertz, the corner that coupling capacitors give it
     junction     degrees Celsius at the hottest ambient; `dissipation` W; both of the whole package
     case         the one its heat was judged in
+    balance      the four resistors of a difference amplifier, where it is one
     unknown      by part: why it was not worked out
     """
 
@@ -458,6 +477,7 @@ class Stage(msgspec.Struct, frozen=True, kw_only=True):
     high_pass: float | None = None
     filter: Filter | None = None
     case: Case | None = None
+    balance: Balance | None = None
     unknown: Mapping[Part, Unknown] = {}
     location: Location | None = None
 

@@ -5,6 +5,7 @@ from collections.abc import Mapping, Sequence
 import msgspec
 import numpy as np
 
+from railguard.analysis.balance import balance_of
 from railguard.analysis.closing import Bands
 from railguard.analysis.filters import filter_of
 from railguard.analysis.inputs import inputs_of
@@ -88,6 +89,10 @@ def finished(
     )
 
 
+RESIDUE = 1e-3
+"""Share of a difference amplifier's gain below which a gain is common mode."""
+
+
 def _after(view: View) -> tuple[str, ...]:
     """Return the amplifiers whose output reaches this one's inputs without passing a third."""
     passive, amplifier = view.solution.passive, view.amplifier
@@ -151,8 +156,13 @@ def _stage(
             "see the finding on it",
         )
     outer = frozenset(a.output for a in solution.amplifiers if a.designator in loop.holds)
+    balance = balance_of(view, settings.tolerances)
     topology = topology_of(amplifier, solution.ways, loop, rails, outer)
     gains, transfers = gains_of(view), gains_of(view, "A")
+    if balance is not None and balance.sense:
+        topology = "difference"
+    if balance is not None:  # what a finite open-loop gain leaves of the common mode is no gain
+        gains = tuple(gain for gain in gains if abs(gain.value) > RESIDUE * balance.gain)
     heat = dissipation(device, supply, output, current, load)
     if heat is None and use in ("comparator", "oscillator"):
         most = most_current(amplifier, solution.ways, supply)
@@ -200,6 +210,7 @@ def _stage(
             amplifier.match.channels,
             f"{amplifier.match.name} {amplifier.element.text}",
         ),
+        balance=balance,
         unknown=unknown,
         location=amplifier.element.location,
     )

@@ -120,41 +120,83 @@ def judge_matching(stage: Stage, limits: Limits, design: Design) -> Iterator[Out
     """Judge the common-mode error a difference amplifier's resistor tolerance allows."""
     if stage.topology != "difference" or stage.use != "linear" or stage.loop.dc != "negative":
         return
-    gains = [gain for _, gain in stage.gain]
-    if len(gains) != 2 or gains[0] * gains[1] >= 0:
-        return
-    gain = max(abs(g) for g in gains)
-    mismatch = abs(gains[0] + gains[1]) / gain
-    stated = design.settings.tolerances.resistor
-    tolerance = DEFAULT_TOLERANCE if stated is None else stated
-    if mismatch > limits["mismatch"] + 4 * tolerance:
-        return  # weights meant to differ: a subtractor, not a difference amplifier
+    balance = stage.balance
+    told = design.settings.tolerances.resistor
+    stated = told is not None if balance is None else balance.stated
+    four = 4 * (DEFAULT_TOLERANCE if told is None else told)
+    four = four if balance is None else balance.tolerance
+    gain = _gain_of_difference(stage, limits["mismatch"] + four)
     common = max(abs(stage.inputs.demand.high or 0.0), abs(stage.inputs.demand.low or 0.0))
-    span = stage.output.demand.span
-    if not span or not common:
+    span, shown = _shown(stage)
+    if gain is None or not span or not common:
         return
-    error = 4 * tolerance * common
+    error = four * common
     if error <= limits["share"] * span:
         return
-    rejection = (1 + gain) / (4 * tolerance)
+    rejection = (1 + gain) / four
+    far = error > limits["far-share"] * span
+    severity: Severity = "major" if stated and far else "minor" if stated or far else "remark"
+    tolerance = four / 4
     yield stage_finding(
         "feedback-matching",
         stage,
-        "remark" if stated is None else "minor",
+        severity,
         f"{stage.schematic} is a difference amplifier with a gain of {si(gain, '')} and resistors "
-        f"of {percent(tolerance)} ({'default' if stated is None else 'stated'}): common-mode "
+        f"of {percent(tolerance)} ({'stated' if stated else 'default'}): common-mode "
         f"rejection may be as low as {si(_decibels(rejection), 'dB')}, and {si(common, 'V')} at "
-        f"its inputs moves the output by {si(error, 'V')}, {percent(error / span)} of its span.",
+        f"its inputs moves the output by {si(error, 'V')}, {percent(error / span)} of {shown}.",
         nets=(stage.output.net,),
         demand=error,
         limit=limits["share"] * span,
         margin=limits["share"] * span - error,
         unit="V",
-        basis=("netlist", "assumed" if stated is None else "user"),
-        remedy=f"Fit resistors of {percent(tolerance * limits['share'] * span / error)} in "
-        f"{listed(stage.feedback.elements) or 'the network'} and its fellows, or a matched array.",
+        basis=("netlist", "user" if stated else "assumed"),
+        remedy=_matched(stage, tolerance * limits["share"] * span / error),
         source="Texas Instruments SLPS785 (RES11A), CMRR section: (1 + G) / 4t",
     )
+
+
+FINEST = 0.0005
+"""Share; single resistors of a closer tolerance are no stock items."""
+
+
+def _gain_of_difference(stage: Stage, apart: float) -> float | None:
+    """Return the gain of the difference, or None where two gains are meant to differ."""
+    if stage.balance is not None and stage.balance.sense:
+        return stage.balance.gain
+    gains = [gain for _, gain in stage.gain]
+    if len(gains) != 2 or gains[0] * gains[1] >= 0:
+        return None
+    gain = max(abs(g) for g in gains)
+    # Further apart: weights that are meant to differ, a subtractor.
+    return gain if abs(gains[0] + gains[1]) / gain <= apart else None
+
+
+def _shown(stage: Stage) -> tuple[float, str]:
+    """Return what the output is to show, V, and the words for it.
+
+    A current that stands still has no span: there it is the level over the reference.
+    """
+    span = stage.output.demand.span or 0.0
+    if stage.balance is not None and stage.balance.sense and stage.output.demand.high is not None:
+        ends = (stage.output.demand.high, stage.output.demand.low or 0.0)
+        most = max(abs(end - stage.balance.reference) for end in ends)
+        if most > span:
+            return most, f"the {si(most, 'V')} it is to show"
+    return span, "its span"
+
+
+def _matched(stage: Stage, tolerance: float) -> str:
+    own = stage.feedback.elements
+    names = stage.balance.elements if stage.balance is not None else own
+    fellows = "" if stage.balance is not None else " and its fellows"
+    where = f"{listed(names) or 'the network'}{fellows}"
+    if tolerance < FINEST:
+        return (
+            f"Fit a matched array, or a difference amplifier with its resistors inside, for "
+            f"{where}: single resistors would have to be of {percent(tolerance)}."
+        )
+    return f"Fit resistors of {percent(tolerance)} in {where}, or a matched array."
 
 
 def _decibels(ratio: float) -> float:
@@ -179,6 +221,14 @@ MATCHING = Rule(
             default=0.01,
             unit="",
             meaning="share of the output span the common-mode error may take",
+            source=NO_SOURCE,
+        ),
+        Limit(
+            name="far-share",
+            default=0.1,
+            unit="",
+            meaning="share beyond which the error is no question of accuracy: major where the "
+            "tolerances are stated, minor where they are the default",
             source=NO_SOURCE,
         ),
         Limit(
