@@ -44,14 +44,37 @@ def with_thresholds(view: View, loop: Loop, after: list[tuple[str, ...]]) -> Loo
         amplifier.designator in reached and solution.amplifiers[j].designator not in solution.forced
         for j, reached in enumerate(after)
     )
+    switched = _switched(thresholds, drive) and not feeds and abs(beta) < WHOLE_BETA
     return msgspec.structs.replace(
         loop,
         beta_plus=beta,
         capacitor_across_plus=across,
         thresholds=thresholds,
         drive=drive,
+        switched=switched,
         feeds_linear=feeds,
     )
+
+
+CLEAR_SHARE = 0.1
+"""Share of the hysteresis by which a signal passes both thresholds that is meant to switch."""
+
+
+WHOLE_BETA = 0.99
+"""Share of the output that comes back from which on a stage latches."""
+
+
+def _switched(thresholds: Range, drive: Range) -> bool:
+    """Tell whether a signal goes well past both thresholds.
+
+    With its inputs exchanged the stage would be linear, and its output stand at both limits at just
+    those levels: a linear stage would be asked for what it cannot give, a comparator switches.
+    """
+    low, high = thresholds.low, thresholds.high
+    if low is None or high is None or drive.low is None or drive.high is None:
+        return False
+    past = CLEAR_SHARE * (high - low)
+    return drive.low <= low - past and drive.high >= high + past
 
 
 def _ordered(a: float, b: float) -> Range:

@@ -353,6 +353,7 @@ class Loop(msgspec.Struct, frozen=True, kw_only=True):
     thresholds  volts of its signal at which a stage with positive feedback switches; of the pin
                 where more than one signal moves it
     drive       the stated signal at that input, in the terms of `thresholds`
+    switched    True where that signal goes well past both: no linear stage could follow it
     """
 
     dc: Literal["negative", "positive", "open"] | None = None
@@ -378,6 +379,7 @@ class Loop(msgspec.Struct, frozen=True, kw_only=True):
     capacitor_across_plus: str = ""
     thresholds: Range = Range()
     drive: Range = Range()
+    switched: bool = False
     feeds_linear: bool = False
 
 

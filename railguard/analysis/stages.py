@@ -141,6 +141,8 @@ def _stage(
     )
     working = name not in solution.forced and name in solution.answers.network.outputs
     loop = with_thresholds(view, loop, after)
+    if use == "linear" and stated is None and loop.switched:
+        use = "comparator"
     spread_noise_gain = noise_gain_span(view, loop)
     loop = with_ends(loop, spread_noise_gain, bands, view.k, local=view.k in solution.swept.local)
     feedback = feedback_of(amplifier, solution.passive, solution.ways, solution.answers)
@@ -164,7 +166,7 @@ def _stage(
     if balance is not None:  # what a finite open-loop gain leaves of the common mode is no gain
         gains = tuple(gain for gain in gains if abs(gain.value) > RESIDUE * balance.gain)
     heat = dissipation(device, supply, output, current, load)
-    if heat is None and use in ("comparator", "oscillator"):
+    if heat is None and use in ("comparator", "oscillator", "unused"):
         most = most_current(amplifier, solution.ways, supply)
         heat = most_heat(device, supply, most)
         if is_given(most, current):

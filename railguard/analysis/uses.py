@@ -56,6 +56,8 @@ def _is_driven(amplifier: Amplifier, ways: Ways, rails: frozenset[str]) -> bool:
         around = Around(net, amplifier, ways, skip=other)
         if around.currents or any(n not in rails | {amplifier.output} for n in around.driven):
             return True
+        if net == GROUND or net in rails:
+            continue  # whatever stands on a rail stands on its net
         if any(e.kind == "V" and e.source is not None for e in ways.around.get(net, ())):
             return True
     return False

@@ -61,3 +61,60 @@ def test_a_comparator_turns_no_buffer_round_over_the_rail():
     design, _ = looked_at(text)
     signs = {s.designator: s.loop.dc for s in design.design.stages}
     assert signs == {"XU1": "positive", "XU2": "negative"}
+
+
+TRIGGER = """float switch
+V1 vdd 0 3.3
+C1 vdd 0 100n
+VIN in 0 SIN(1.65 {peak} 50)
+R1 vdd ref 100k
+R2 ref 0 100k
+R4 out ref {back}
+XU1 ref in vdd 0 out TLV9061
+RL out 0 100k
+"""
+
+
+@pytest.mark.parametrize(
+    ("peak", "severity"),
+    [
+        # 50k of 150k: a third of 1.65 V, so it switches at 1.65 V +- 0.55 V.
+        (1.5, "remark"),
+        (0.58, "major"),  # just past both: a linear stage with its inputs swapped would just clip
+        (0.5, "critical"),  # never crosses them
+    ],
+)
+def test_a_signal_well_past_both_thresholds_shows_a_comparator(peak, severity):
+    """What a linear stage with its inputs exchanged could not follow is meant to switch."""
+    design, _ = looked_at(TRIGGER.format(peak=peak, back="100k"))
+    found = [f for f in design.findings if f.rule == "feedback-reversed"]
+    assert [f.severity for f in found] == [severity]
+    assert (design.design.stages[0].use == "comparator") == (severity == "remark")
+
+
+def test_a_linear_stage_behind_needs_more_than_the_signal():
+    """A filter or a buffer behind it has no use for a switched level."""
+    text = TRIGGER.format(peak=1.5, back="100k") + "XU2 out o2 vdd 0 o2 TLV9061\nRM o2 0 100k\n"
+    design, _ = looked_at(text)
+    assert design.design.stages[0].use == "linear"
+
+
+SPARE = """spare channels
+V1 vdd 0 5
+C1 vdd 0 100n
+VIN in 0 SIN(2 1 50)
+XU1A in o1 vdd 0 o1 MCP6004
+RL o1 0 100k
+XU1B 0 nb vdd 0 nb MCP6004
+XU1C vdd 0 vdd 0 nc MCP6004
+XU1D vdd nd vdd 0 nd MCP6004
+"""
+
+
+def test_inputs_tied_to_rails_and_ground_drive_nothing():
+    """Sources stand on the nets of rails and ground; they are no signal at a spare channel."""
+    design, missed = looked_at(SPARE)
+    uses = {s.designator: s.use for s in design.design.stages}
+    assert uses == {"XU1A": "linear", "XU1B": "unused", "XU1C": "unused", "XU1D": "unused"}
+    assert not [f for f in design.findings if f.severity in ("critical", "major", "minor")]
+    assert not missed

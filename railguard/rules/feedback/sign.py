@@ -75,8 +75,7 @@ def _evidence(stage: Stage, whole: float) -> tuple[Severity, str]:
     # What is worked out from the output's load alone does not make up for a signal that never
     # switches the stage; what the user states does.
     if meant and (stage.use_stated or stage.use == "oscillator" or not never):
-        basis = "as stated" if stage.use_stated else "as what it drives shows"
-        return "remark", f"{_thresholds(loop)}. It is {_a_use(stage)}, {basis}."
+        return "remark", f"{_thresholds(loop)}. It is {_a_use(stage)}, {_basis(stage)}."
     if loop.capacitor_across_plus:
         return "critical", (
             f"{loop.capacitor_across_plus} stands across the positive path, where a linear stage "
@@ -95,6 +94,18 @@ def _evidence(stage: Stage, whole: float) -> tuple[Severity, str]:
             f"{si(loop.drive.high, 'V')}) never crosses both, so it stays at a rail."
         )
     return "major", f"{_thresholds(loop)}; nothing shows that switching is meant."
+
+
+def _basis(stage: Stage) -> str:
+    if stage.use_stated:
+        return "as stated"
+    if stage.use == "comparator" and stage.loop.switched:
+        drive = stage.loop.drive
+        return (
+            f"as its signal shows, which goes from {si(drive.low, 'V')} to {si(drive.high, 'V')}: "
+            "no linear stage could follow it"
+        )
+    return "as what it drives shows"
 
 
 def _a_use(stage: Stage) -> str:
@@ -119,7 +130,8 @@ REVERSED = Rule(
     silent="Critical where the evidence says mistake (a capacitor across the positive path, a "
     "signal smaller than the hysteresis, an output that feeds a linear stage, all of the output "
     "fed back); major with its thresholds otherwise; a remark where comparator or oscillator is "
-    "stated, or the output only feeds a switch, gate, LED or relaxation network.",
+    "stated, or the output only feeds a switch, gate, LED or relaxation network, or the signal "
+    "goes well past both thresholds.",
     limits=(
         Limit(
             name="whole-beta",

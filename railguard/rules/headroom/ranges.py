@@ -49,12 +49,20 @@ def cap_of(stage: Stage) -> Severity:
     return "minor" if stage.family is None else "critical"
 
 
-def _sides(stage: Stage, bounds: tuple[Bound, Bound], share: float) -> list[Side]:
-    """Return the sides that break a limit, the worse one first."""
+def _sides(
+    stage: Stage, bounds: tuple[Bound, Bound], share: float, beyond: Severity = "minor"
+) -> list[Side]:
+    """Return the sides that break a limit, the worse one first.
+
+    beyond  worst severity where an unknown device's rail itself is passed
+    """
     scale = None if stage.ac_coupled else stage.supply.total
     sides = []
     for bound in bounds:
-        broken = breach(bound, share * (bound.span or 0.0), scale=scale, cap=cap_of(stage))
+        wanted = share * (bound.span or 0.0)
+        broken = breach(bound, wanted, scale=scale, cap=cap_of(stage))
+        if stage.family is None and broken is not None and broken.broken == "absolute":
+            broken = breach(bound, wanted, scale=scale, cap=beyond)
         if broken is not None:
             sides.append((bound, broken))
     return sorted(sides, key=lambda side: gravity(side[1]))
@@ -90,7 +98,8 @@ def judge_output(stage: Stage, limits: Limits, design: Design) -> Iterator[Outco
     bounds = (stage.output.high, stage.output.low)
     gap = _gap(stage, bounds, ("output swing", "swing_high and swing_low"))
     yield from open_point("headroom-output", stage, ("supply", "output", "device"), gap)
-    sides = _sides(stage, bounds, limits["reserve-share"])
+    # Whatever the device is, its output ends at its rails.
+    sides = _sides(stage, bounds, limits["reserve-share"], beyond="major")
     if not sides:
         return
     bound, broken = sides[0]

@@ -59,7 +59,7 @@ CASES = {
         failing=_follower(11, "TL072"),
         inside=_follower(8.95, "TL072"),  # typically 3 V above the negative rail
         outside=_follower(9.05, "TL072"),
-        unknown=_follower(11, "OP07C"),  # nobody says whether it turns over
+        unknown=_follower(11, "OP177"),  # nobody says whether it turns over
         listed=None,
     ),
     "headroom-differential": Four(
@@ -67,7 +67,7 @@ CASES = {
         failing=_open(3),
         inside=_open(0.69),
         outside=_open(0.72),
-        unknown=_open(3, "OP07C"),
+        unknown=_open(3, "OP177"),
     ),
     "headroom-offset": Four(
         passing=_offset(10),

@@ -162,7 +162,7 @@ def test_an_unknown_device_is_minor_and_not_checked():
     one = unknown_device(
         output=Output(
             net="out",
-            high=high(20.0, typical_basis="practice", guaranteed_basis="practice"),
+            high=high(11.9, typical_basis="practice", guaranteed_basis="practice"),
             low=low(-5.0),
         )
     )
@@ -171,6 +171,21 @@ def test_an_unknown_device_is_minor_and_not_checked():
     (point,) = open_points(OUTPUT, one)
     assert (point.subject, point.rule) == ("XU1", "headroom-output")
     assert "does not know MYAMP" in point.why
+
+
+def test_no_device_comes_past_its_rail_known_or_not():
+    """20 V on 12 V is no question of the device; its inputs may be made for more."""
+    basis = {"typical_basis": "practice", "guaranteed_basis": "practice"}
+    one = unknown_device(output=Output(net="out", high=high(20.0, **basis), low=low(-5.0)))
+    assert [f.severity for f in findings(OUTPUT, one)] == ["major"]
+    side = {"level": 0.0, "span": 40.0, **basis}
+    wide = unknown_device(
+        inputs=inputs(
+            high=bound(True, demand=20.0, typical=11.0, absolute=12.0, **side),
+            low=bound(False, demand=-1.0, typical=-11.0, absolute=-12.0, **side),
+        )
+    )
+    assert [f.severity for f in findings(INPUT, wide)] == ["minor"]
 
 
 def test_an_unknown_signal_is_not_checked():
