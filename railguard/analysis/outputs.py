@@ -47,7 +47,7 @@ def output_side(
     if not current_known:
         amps, amps_high = 0.0, 0.0
     slope = 1.0 / load if load else 0.0
-    if known and high - low > 1e-9:
+    if known and high - level > 1e-9:
         slope = max(slope, (amps_high - amps) / (high - level))
 
     # A transistor takes base current one way only: beyond what is asked nothing is added to it.

@@ -96,6 +96,15 @@ XU1 0 n vp vn out TL072
     assert output.demand.high == pytest.approx(0.0, abs=0.01)
 
 
+def test_an_output_that_moves_one_way_only(stage):
+    """A falling ramp through a capacitor: the follower goes from rest to one side."""
+    cards = "VIN in 0 PWL(0 3 1m 0)\nC1 in p 1n\nR1 p 0 100k\nXU1 p out vp vn out TL072"
+    output = stage(f"{cards}\nRL out 0 10k").output
+    assert output.demand.high == output.level == pytest.approx(0.0, abs=1e-6)
+    assert output.demand.low == pytest.approx(-100e3 * 1e-9 * 3e3, rel=0.01)
+    assert output.available.high is not None
+
+
 def test_probe_states_no_amplitude(stage):
     """AC 1 leaves the DC level and an open question."""
     cards = "VIN in 0 AC 1\nR1 in n 10k\nR2 n out 100k\nXU1 0 n vp vn out TL072"

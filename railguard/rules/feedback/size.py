@@ -180,7 +180,7 @@ def judge_high(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome
     seen, family = stage.feedback.seen, stage.family
     gap = NO_NETWORK if seen is None else None
     yield from open_point("feedback-high", stage, ("loop", "device"), gap)
-    if seen is None or family is None or first_unknown(stage, ("loop",)) is not None:
+    if not seen or family is None or first_unknown(stage, ("loop",)) is not None:
         return
     troubles = [t for t in (_bias(stage, family, limits, design),
                             _pole(stage, family, seen, limits),

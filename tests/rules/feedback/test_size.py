@@ -206,6 +206,13 @@ def test_high_is_silent_for_followers_and_lists_what_is_unknown():
     assert len(open_points(HIGH, unknown_device())) == 1
 
 
+def test_high_is_silent_where_a_source_holds_the_input():
+    """Feedback to an input that a source holds has no resistance there, and so no pole."""
+    held = Feedback(elements=("C2",), seen=0.0)
+    loop = changed(stage().loop, crossover=1e6, phase_margin=20.0)
+    assert outcomes(HIGH, stage(feedback=held, loop=loop)) == []
+
+
 def test_a_corner_of_the_whole_current_is_not_the_network_s():
     """What the load does at a corner is drive-current's matter."""
     source = amps(1e-3, stated=Pair(9e-3, 5e-3), default=Pair(9e-3, 5e-3))
