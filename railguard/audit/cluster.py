@@ -36,7 +36,8 @@ PATIENCE_SECONDS = 90.0
 """How long a scheduler, or the last worker, may be away."""
 
 OVERDUE_SECONDS = 120.0
-"""At the end of a run a batch that has been out this long is given to another worker as well."""
+"""At the end of a run a batch that has been out this long is sent once more, and so on: whichever
+answer comes first counts, the others are dropped."""
 
 LOST = ("cancelled", "lost")
 
@@ -79,8 +80,10 @@ class _Batch:
 class Cluster:
     """A connection to a cluster, under one plan."""
 
-    def __init__(self, plan: Plan, address: str) -> None:
+    def __init__(self, plan: Plan, address: str, overdue: float = OVERDUE_SECONDS) -> None:
         """Connect, and hold every worker to the plan's build and roots.
+
+        overdue  seconds after which a batch is sent once more, when there is nothing else to send
 
         Raises ClusterError: no scheduler answers, there is no worker, or one of them is of another
         build or does not see a root.
@@ -88,6 +91,7 @@ class Cluster:
         self._plan = plan
         self._packed = msgspec.msgpack.encode(plan)
         self._address = address
+        self._overdue = overdue
         self._client = self._connected(CONNECT_SECONDS)
         self._out: dict[_Future, _Batch] = {}
         self._most = AHEAD
@@ -112,7 +116,8 @@ class Cluster:
                 return
             done = [future for future in self._out if future.done()]
             for future in done:
-                yield from self._answered(future)
+                if future in self._out:  # else its other copy has just been answered
+                    yield from self._answered(future)
                 silent = time.monotonic()
             if not done:
                 if drained:
@@ -153,6 +158,9 @@ class Cluster:
 
     def _answered(self, future: _Future) -> Iterator[Outcome]:
         batch = self._out.pop(future)
+        other = any(copy.tasks is batch.tasks for copy in self._out.values())
+        if future.status != "finished" and other:
+            return
         if future.status in LOST:
             self._again += batch.tasks
             return
@@ -162,7 +170,7 @@ class Cluster:
         try:
             answer = remote.unpack(future.result(timeout=CONNECT_SECONDS))
         except Exception:  # noqa: BLE001 - whatever the way back breaks with, the batch is done again
-            self._again += batch.tasks
+            self._again += batch.tasks if not other else ()
             return
         if answer.refused:
             raise _other_build(self._plan.build, {answer.refused: "a worker"})
@@ -170,7 +178,7 @@ class Cluster:
         self._forget(batch)
 
     def _forget(self, batch: _Batch) -> None:
-        """Drop the second copy of a batch that has come back."""
+        """Drop the other copies of a batch that has come back."""
         for future in [f for f, other in self._out.items() if other.tasks is batch.tasks]:
             del self._out[future]
             future.cancel()
@@ -192,11 +200,16 @@ class Cluster:
     def _hurry(self) -> None:
         """Give the batches a slow worker sits on to others too, once there is nothing else."""
         now = time.monotonic()
-        once = [batch.tasks for batch in self._out.values()]
-        for batch in list(self._out.values()):
-            twice = sum(tasks is batch.tasks for tasks in once) > 1
-            if now - batch.since > OVERDUE_SECONDS and not twice:
-                self._send(batch.tasks)
+        for tasks, since in self._newest():
+            if now - since > self._overdue:
+                self._send(tasks)
+
+    def _newest(self) -> list[tuple[list[Task], float]]:
+        """Return each batch that is out once, and when its last copy was sent."""
+        found: dict[int, tuple[list[Task], float]] = {}
+        for batch in self._out.values():  # in the order they were sent
+            found[id(batch.tasks)] = batch.tasks, batch.since
+        return list(found.values())
 
     # ------------------------------------------------------------------ connection
 
@@ -214,8 +227,8 @@ class Cluster:
 
         Raises ClusterError: it does not.
         """
-        for batch in self._out.values():
-            self._again += batch.tasks
+        for tasks, _ in self._newest():
+            self._again += tasks
         self._out.clear()
         self._client.close(timeout=1)
         deadline = time.monotonic() + PATIENCE_SECONDS

@@ -8,6 +8,7 @@ from pathlib import Path
 import click
 from rich.console import Console
 
+from railguard.commands import options
 from railguard.errors import UsageError
 from railguard.words import SEVERITIES, Severity
 
@@ -56,6 +57,7 @@ def audit() -> None:
 )
 @click.option("--trust-settings", is_flag=True, help="Obey railguard.toml files below ROOT.")
 @click.option("--hold-at", type=click.Choice(SEVERITIES), help="What puts a design on hold.")
+@options.as_of
 @click.option(
     "--workers", type=click.IntRange(1, 256), help="Processes at work [one for each core]."
 )
@@ -85,6 +87,7 @@ def run(
     settings: Path | None,
     trust_settings: bool,
     hold_at: Severity | None,
+    as_of: dt.date | None,
     workers: int | None,
     cluster: str | None,
     seconds: int,
@@ -113,7 +116,7 @@ def run(
         settings=_text(settings),
         hold_at=hold_at,
         trust=trust_settings,
-        day=dt.date.today().isoformat(),
+        day=(as_of or dt.date.today()).isoformat(),
         build=identity(),
         budget=Budget(seconds=seconds, megabytes=megabytes),
     )

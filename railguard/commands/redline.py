@@ -1,11 +1,13 @@
 """`railguard redline`: what to change on the cards, proved, as a diff or as a new file."""
 
+import datetime as dt
 import sys
 from pathlib import Path
 
 import click
 import msgspec
 
+from railguard.commands import options
 from railguard.commands.deliver import write_whole
 from railguard.errors import UsageError
 from railguard.redline.difference import unified
@@ -38,21 +40,11 @@ HOLD = 1
     default="screen",
     help="On the screen; the bare diff, for `patch`; or everything as JSON.",
 )
-@click.option(
-    "--settings",
-    "stated",
-    type=click.Path(path_type=Path),
-    metavar="FILE",
-    help="This file instead of the railguard.toml beside the netlist.",
-)
-@click.option("--no-settings", is_flag=True, help="Obey no railguard.toml.")
-@click.option("--kind", type=click.Choice(["board", "bench"]), help="Judge it as this.")
-@click.option(
-    "--root",
-    type=click.Path(path_type=Path),
-    metavar="DIR",
-    help="Includes may lie anywhere below it [the netlist's folder].",
-)
+@options.settings
+@options.no_settings
+@options.kind
+@options.as_of
+@options.root
 def redline(
     file: Path,
     target: Path | None,
@@ -60,6 +52,7 @@ def redline(
     stated: Path | None,
     no_settings: bool,
     kind: str | None,
+    as_of: dt.date | None,
     root: Path | None,
 ) -> None:
     """Propose changed and added cards for what a card can cure, each proved by a review.
@@ -71,7 +64,7 @@ def redline(
     if stated is not None:
         settings = settings_file.load(stated)
     changes = {"kind": kind} if kind is not None else {}
-    found = run([file], settings, root=root, changes=changes)
+    found = run([file], settings, root=root, changes=changes, as_of=as_of)
     result = propose(found.designs[0])
     if target is not None:
         _save(result, target)

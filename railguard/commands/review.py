@@ -9,6 +9,7 @@ from typing import get_args
 import click
 
 from railguard.analysis.solution import Options
+from railguard.commands import options
 from railguard.commands.deliver import check_places, write_whole
 from railguard.commands.progress import progress
 from railguard.errors import UsageError
@@ -43,35 +44,18 @@ def _show_schema(context: click.Context, _: click.Parameter, wanted: bool) -> No
 )
 @click.option("--hold-at", type=click.Choice(SEVERITIES), help="What gives status 1 [major].")
 @click.option("--require", metavar="FAMILIES", help="What must not stay open: headroom,drive.")
-@click.option(
-    "--settings",
-    "stated",
-    type=click.Path(path_type=Path),
-    metavar="FILE",
-    help="This file instead of the railguard.toml beside each netlist.",
-)
-@click.option("--no-settings", is_flag=True, help="Obey no railguard.toml.")
-@click.option("--kind", type=click.Choice(["board", "bench"]), help="Judge it as this.")
-@click.option("--as-of", metavar="DATE", help="Judge waivers on this day [today].")
-@click.option(
-    "--root",
-    type=click.Path(path_type=Path),
-    metavar="DIR",
-    help="Includes may lie anywhere below it [each netlist's folder].",
-)
+@options.settings
+@options.no_settings
+@options.kind
+@options.as_of
+@options.root
 @click.option(
     "--corners",
     type=click.Choice(["extreme", "exact"]),
     default="extreme",
     help="Follow sensitivities to the corners, or solve each corner anew.",
 )
-@click.option(
-    "--monte-carlo",
-    type=click.IntRange(0, 1_000_000),
-    default=0,
-    metavar="N",
-    help="Draw N samples beside the corners.",
-)
+@options.monte_carlo
 @click.option(
     "--engine",
     type=click.Choice(["ngspice"]),
@@ -86,7 +70,7 @@ def _show_schema(context: click.Context, _: click.Parameter, wanted: bool) -> No
     callback=_show_schema,
     help="Print the JSON Schema of the JSON report, and review nothing.",
 )
-@click.option("--no-plugins", is_flag=True, help="Leave out the rules other packages bring.")
+@options.no_plugins
 def review(  # one parameter an option: click hands them over by name
     files: tuple[str, ...],
     reports: tuple[str, ...],
@@ -95,7 +79,7 @@ def review(  # one parameter an option: click hands them over by name
     stated: Path | None,
     no_settings: bool,
     kind: str | None,
-    as_of: str | None,
+    as_of: dt.date | None,
     root: Path | None,
     corners: str,
     monte_carlo: int,
@@ -125,7 +109,7 @@ def review(  # one parameter an option: click hands them over by name
         result = run(
             [Path(name) for name in files],
             _settings(stated, no_settings),
-            as_of=_day(as_of),
+            as_of=as_of,
             root=root,
             plugins=not no_plugins,
             options=Options(exact=corners == "exact", samples=monte_carlo),
@@ -152,15 +136,6 @@ def _settings(stated: Path | None, none: bool) -> Settings | None:
     if none:
         return Settings()
     return settings_file.load(stated) if stated is not None else None
-
-
-def _day(text: str | None) -> dt.date | None:
-    if text is None:
-        return None
-    try:
-        return dt.date.fromisoformat(text)
-    except ValueError:
-        raise UsageError(f'"{text}" is no date.', remedy="Write it as 2027-01-31.") from None
 
 
 def _wanted(text: str) -> tuple[str, Path | None]:

@@ -9,6 +9,7 @@ from rich.console import Console
 from rich.table import Table
 from rich.text import Text
 
+from railguard.commands import options
 from railguard.errors import UsageError
 from railguard.rules import third_party
 from railguard.rules.circuits import CIRCUITS, Assumed
@@ -28,7 +29,7 @@ def _names(context: click.Context, parameter: click.Parameter, begun: str) -> li
 @click.command()
 @click.argument("name", required=False, shell_complete=_names)
 @click.option("--markdown", is_flag=True, help="List them as the table of a README.")
-@click.option("--no-plugins", is_flag=True, help="Leave out the rules other packages bring.")
+@options.no_plugins
 def rules(name: str | None, markdown: bool, no_plugins: bool) -> None:
     """List the rules, or explain the one called NAME (or a family).
 

@@ -16,6 +16,9 @@ from pathlib import Path
 import pytest
 
 import railguard
+from railguard.audit.build import identity
+from railguard.audit.cluster import Cluster
+from railguard.audit.wire import Plan
 from tests.audit.conftest import STARTED, Audited
 from tests.audit.designs import BARE, CLIPPED, LIBRARY, SOUND, UNKNOWN, put
 from tests.audit.test_archives import zipped
@@ -25,6 +28,20 @@ pytest.importorskip("fsspec", reason="the extra `audit` is not installed")
 
 PACKAGE = Path(railguard.__file__).parent
 KINDS = (SOUND, CLIPPED, BARE, UNKNOWN, LIBRARY)
+
+
+class Counting:
+    """A watcher that keeps the path of every outcome it is told of."""
+
+    def __init__(self):
+        self.done = []
+
+    def expects(self, files, *, final):
+        """Take how many files there are."""
+
+    def did(self, outcome, path):
+        """Keep the path."""
+        self.done.append(path)
 
 
 def free_port():
@@ -164,6 +181,42 @@ def test_a_slow_worker_changes_nothing(cluster, share, tmp_path):
         slow.send_signal(signal.SIGCONT)
     status, said = finished(run)
     assert status == 0, said
+    assert export(tmp_path / "cluster.sqlite") == export(tmp_path / "alone.sqlite")
+
+
+def test_a_worker_that_never_answers_again_changes_nothing(cluster, tmp_path, monkeypatch):
+    """One of two stands still for good: its batches are overdue, and the other one does them."""
+    from railguard.audit.run import audit, collect
+    from railguard.audit.store import Store
+
+    folder = put(tmp_path / "share", **{f"{k}.cir": KINDS[k % 5] for k in range(30)})
+    plan = Plan(
+        roots=(str(folder),), labels=("",), settings="", hold_at=None, trust=False,
+        day="2027-01-31", build=identity(),
+    )  # fmt: skip
+    with Store(tmp_path / "alone.sqlite") as store:
+        audit(plan, store, 1, (), Counting())
+    slow, _ = cluster.worker(), cluster.worker()
+    monkeypatch.setattr("railguard.audit.cluster.BATCH", 2)
+    watcher = Counting()
+    sent = []
+    send = Cluster._send
+
+    def noted(self, tasks):
+        sent.append(tasks)
+        send(self, tasks)
+
+    monkeypatch.setattr(Cluster, "_send", noted)
+    with (
+        Store(tmp_path / "cluster.sqlite") as store,
+        Cluster(plan, cluster.address, overdue=5.0) as connected,
+    ):
+        connected._client.wait_for_workers(2, timeout=60)
+        slow.send_signal(signal.SIGSTOP)
+        collect(plan, store, connected, (), watcher)
+    assert len(sent) > len({id(tasks) for tasks in sent})  # some were sent to both
+    assert sorted(watcher.done) == sorted({*watcher.done})
+    assert len(watcher.done) == 30
     assert export(tmp_path / "cluster.sqlite") == export(tmp_path / "alone.sqlite")
 
 

@@ -1,8 +1,5 @@
 """What every report format must do, on every kind of design."""
 
-import os
-import subprocess
-import sys
 import unicodedata
 from pathlib import Path
 from xml.etree import ElementTree as Xml
@@ -14,7 +11,6 @@ from railguard.reviewing import review
 from tests.report import designs
 
 HOUSE = Path(__file__).parents[2]
-LOCALES = ("C", "C.UTF-8", "tr_TR.UTF-8")
 
 
 def words_of(form, data):
@@ -69,39 +65,3 @@ def test_a_second_review_gives_the_same_bytes(form, name, reviewed, report):
     found, root = reviewed(name)
     again = review([Path(design.path) for design in found.designs], as_of=designs.DAY)
     assert render(form, again, root=root) == report(form, name)
-
-
-@pytest.fixture(scope="module")
-def by_environment(tmp_path_factory):
-    """Return the reports of one run by hash seed and locale."""
-    root = tmp_path_factory.mktemp("laid")
-    for name in ("faulty", "partly", "hostile"):
-        (root / name).mkdir()
-        designs.paths(name, root / name)
-    netlists = sorted(str(p.relative_to(root)) for p in root.rglob("*.cir"))
-    made = {}
-    for seed, locale in (("0", LOCALES[0]), ("1", LOCALES[1]), ("4242", LOCALES[2])):
-        out = tmp_path_factory.mktemp("out")
-        call = [sys.executable, "-m", "railguard", "review", *netlists, "--as-of", "2027-01-31"]
-        for form in FORMATS:
-            call += ["--report", f"{form}={out / form}"]
-        environment = {
-            **os.environ,
-            "PYTHONPATH": str(HOUSE),
-            "PYTHONHASHSEED": seed,
-            "LC_ALL": locale,
-            "LANG": locale,
-            "COLUMNS": "80",
-        }
-        done = subprocess.run(call, cwd=root, env=environment, capture_output=True, check=False)
-        assert (done.returncode, done.stdout, done.stderr) == (1, b"", b"")
-        made[seed] = {form: (out / form).read_bytes() for form in FORMATS}
-    return made
-
-
-@pytest.mark.parametrize("form", FORMATS)
-def test_hash_seed_and_locale_change_nothing(form, by_environment):
-    """The same netlists give the same bytes under any of them."""
-    first, *others = (reports[form] for reports in by_environment.values())
-    assert all(other == first for other in others)
-    assert len(others) == 2
