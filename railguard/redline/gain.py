@@ -9,7 +9,7 @@ from railguard.redline.scene import Candidate, Scene, all_of, with_value
 from railguard.rules.compose import stage_named
 from railguard.rules.finding import Finding
 from railguard.rules.relations import upstream
-from railguard.rules.remedies import own_gain
+from railguard.rules.remedies import level_amplified, own_gain
 from railguard.units import si
 
 STEPS = (1.0, 0.97, 0.94, 0.9, 0.86, 0.8, 0.7, 0.55, 0.35)
@@ -121,6 +121,8 @@ def _lowered(
 
 def _raised(stage: Stage, factors: tuple[float, ...], scene: Scene) -> Iterator[Candidate]:
     """Raise the resistors that bring the signal in, or set the gain from the other side."""
+    if stage.topology == "difference":
+        return  # one of them alone would cost the balance
     own = set(stage.feedback.elements)
     inputs = [e for e in scene.on(stage.inputs.minus.net, "R") if e.designator not in own]
     inputs = [e for e in inputs if e.value]
@@ -158,8 +160,14 @@ def _choice(stage: Stage, share: float, finding: Finding) -> str:
 def scaling_resistors(stage: Stage, scene: Scene) -> tuple[Element, ...]:
     """Return the resistors that multiply a stage's signal: of its feedback, and their fellows.
 
-    A difference amplifier has a second one, from its non-inverting input to its reference.
+    A difference amplifier has a second one, from its non-inverting input to its reference; where
+    none is found, as in one of two amplifiers, its balance hangs on more than it has, and it is
+    left alone.
     """
+    if stage.topology == "difference" and stage.balance is not None:
+        _lead, back, _first, fellow = stage.balance.elements
+        pair = tuple(e for d in (back, fellow) if (e := scene.elements.get(d)))
+        return pair if len(pair) == 2 and all(e.value and e.fitted for e in pair) else ()
     own = [e for d in stage.feedback.elements if (e := scene.elements.get(d))]
     resistors = [e for e in own if e.kind == "R" and e.value and e.fitted]
     if not resistors or len(resistors) > 2:
@@ -169,7 +177,7 @@ def scaling_resistors(stage: Stage, scene: Scene) -> tuple[Element, ...]:
             e for e in scene.on(stage.inputs.plus.net, "R")
             if e.value and abs(e.value - (resistors[0].value or 0.0)) < 0.02 * e.value
         ]  # fmt: skip
-        return (resistors[0], *fellows[:1])
+        return (resistors[0], fellows[0]) if fellows else ()
     return tuple(resistors)
 
 
@@ -190,6 +198,13 @@ def _across(stage: Stage, scene: Scene) -> tuple[Element, ...]:
     if len(ends) < 2:
         return ()
     return tuple(e for e in scene.on(stage.output.net, "C") if set(e.nets[:2]) == ends and e.value)
+
+
+def level_blocked(finding: Finding, scene: Scene) -> Iterator[Candidate]:
+    """Take the level out of the gain where the signal comes through a capacitor anyway."""
+    stage = scene.stage(finding)
+    if stage is not None and stage.ac_coupled and level_amplified(stage):
+        yield from blocked(finding, scene)
 
 
 def blocked(finding: Finding, scene: Scene) -> Iterator[Candidate]:
@@ -218,6 +233,6 @@ def blocked(finding: Finding, scene: Scene) -> Iterator[Candidate]:
             what=f"put {made[1]} of {si(farads, 'F')} into the ground leg of {stage.schematic}, "
             f"between {leg.designator} and 0",
             choice=f"its corner stands at a tenth of {si(stage.band.low, 'Hz')}; the gain at DC "
-            "is one, so offset is not amplified",
+            "is one, so neither level nor offset is amplified",
             regains=True,
         )

@@ -15,6 +15,7 @@ import msgspec
 from railguard.analysis.corners import tolerance_of
 from railguard.analysis.stage import Design, Stage
 from railguard.analysis.wiring import joined_nets, order_by_wiring, stiff_nets
+from railguard.circuit.ground import GROUNDS
 from railguard.circuit.model import GROUND, Element
 from railguard.deck.lines import Line
 from railguard.deck.numbers import read_number
@@ -184,8 +185,8 @@ class Scene:
         line = self.card(element.location)
         if line is None:
             return None
-        local = self.local(old, element)
-        hits = [w for w in self._node_words(line, element) if w.text.casefold() == local.casefold()]
+        names = GROUNDS if old == GROUND else frozenset({self.local(old, element).casefold()})
+        hits = [w for w in self._node_words(line, element) if w.text.casefold() in names]
         return replaced(line, hits[nth], new) if len(hits) > nth else None
 
     def pin(self, stage: Stage, role: Role, net: str) -> Edit | None:

@@ -2,7 +2,7 @@
 
 import math
 
-from railguard.analysis.stage import Bound, Design, Stage
+from railguard.analysis.stage import Balance, Bound, Design, Stage
 from railguard.circuit.model import Element
 from railguard.units import preferred, si
 
@@ -45,6 +45,8 @@ def element_named(designator: str, design: Design) -> Element | None:
 
 def own_gain(stage: Stage) -> float | None:
     """Return what one stage alone makes of its signal, V/V; None where it has several inputs."""
+    if stage.topology == "difference" and stage.balance is not None:
+        return stage.balance.gain
     if len(stage.gain) == 1 and not stage.after:
         return stage.gain[0][1] or None
     noise_gain = stage.loop.noise_gain_dc
@@ -61,6 +63,8 @@ def kept_level(stage: Stage) -> float | None:
     is level and swing at once is taken to count from ground.
     """
     level, gain, plus = stage.output.level, stage.loop.noise_gain_dc, stage.inputs.plus.level
+    if stage.topology == "difference" and stage.balance is not None and not stage.ac_coupled:
+        return stage.balance.reference
     if level is None or (stage.ac_coupled and (gain is None or gain < ONE)):
         return level
     if stage.topology.startswith("inverting") or stage.topology in ("summing", "transimpedance"):
@@ -113,6 +117,37 @@ LEAST_SHARE = 0.05
 """A smaller share of the gain is no remedy: the level is what stands wrong."""
 
 
+def level_amplified(stage: Stage) -> bool:
+    """Tell whether an AC amplifier multiplies the level it rests at past what its output reaches.
+
+    Its ground leg then wants a capacitor: what it is to amplify comes through one.
+    """
+    level, gain = stage.output.level, stage.loop.noise_gain_dc
+    if not stage.ac_coupled or stage.topology != "non-inverting" or level is None:
+        return False
+    low, high = stage.output.low, stage.output.high
+    over = high.typical is not None and level > high.typical
+    under = low.typical is not None and level < low.typical
+    return gain is not None and gain >= ONE and (over or under)
+
+
+def blocked_leg(stage: Stage, design: Design) -> str:
+    """Say where a capacitor keeps the level out of the gain; "" where that is not the fault."""
+    if not level_amplified(stage):
+        return ""
+    net, own = stage.inputs.minus.net, stage.feedback.elements
+    legs = [
+        e
+        for e in design.circuit.elements
+        if e.kind == "R" and e.fitted and net in e.nets[:2] and e.designator not in own
+    ]
+    if len(legs) != 1:
+        return ""
+    return (
+        f"put a capacitor in series with {legs[0].designator}, so that the level is not amplified"
+    )
+
+
 def smaller_gain(stage: Stage, factor: float, design: Design) -> str:
     """Say how to lower a stage's gain by a factor below one: `R2 = 82 kΩ instead of 100 kΩ`.
 
@@ -127,6 +162,8 @@ def smaller_gain(stage: Stage, factor: float, design: Design) -> str:
         return f"lower the gain to {si(100 * factor, '%')} of what it is"
     target = gain * factor
     words = f"lower the gain from {si(gain, '')} to at most {si(target, '')}"
+    if stage.topology == "difference" and stage.balance is not None:
+        return f"{words}{_both(stage.balance, factor, design)}"
     resistor = _single_feedback_resistor(stage, design)
     if resistor is None or resistor.value is None:
         return words
@@ -135,6 +172,15 @@ def smaller_gain(stage: Stage, factor: float, design: Design) -> str:
         return words
     new = si(fit(wanted, "down"), "Ω")
     return f"{words} ({resistor.designator} = {new} instead of {si(resistor.value, 'Ω')})"
+
+
+def _both(balance: Balance, factor: float, design: Design) -> str:
+    """Say what becomes of the two resistors that set a difference amplifier's gain together."""
+    _lead, back, _first, fellow = (element_named(d, design) for d in balance.elements)
+    if back is None or fellow is None or not back.value or not fellow.value:
+        return ""
+    values = [(e, si(fit((e.value or 0.0) * factor, "down"), "Ω")) for e in (back, fellow)]
+    return f" ({' and '.join(f'{e.designator} = {new}' for e, new in values)})"
 
 
 def _single_feedback_resistor(stage: Stage, design: Design) -> Element | None:

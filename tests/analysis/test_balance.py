@@ -81,3 +81,15 @@ def test_a_large_resistor_between_the_inputs_is_no_sense_resistor():
     """Half of what it feeds: a bridge's arm."""
     (stage,) = reviewed(sense="50k", amps="10u").design.stages
     assert stage.balance.sense == ""
+
+
+def test_what_is_lowered_is_lowered_on_both_sides():
+    """A gain of 10 asks 5 V of 5 V: the resistor back and its fellow change together."""
+    text = CARDS.format(sense="1", amps="0.5", reference="0", tol=" tol=0.01%")
+    text = text.replace("100k", "4.99k").replace("VB bat 0 12", "VB bat 0 3")
+    (found,) = [
+        f for f in review(text, plugins=False).designs[0].findings if f.rule == "headroom-output"
+    ]
+    assert found.remedy.startswith("Lower the gain from 10 to at most ")
+    assert "R4 = " in found.remedy
+    assert "R2 = " in found.remedy

@@ -170,3 +170,76 @@ def test_a_value_read_two_ways_is_written_in_one(tmp_path, written, text):
     )
     cured = [p for p in redline(reviewed(deck)).proposals if p.finding.designators == ("RL",)]
     assert [p.edits[0].text for p in cured] == [text]
+
+
+WAVE = """wave sensor, signal through a capacitor, level amplified
+VDD vdd {ground} 5
+C1 vdd {ground} 100n
+C2 vdd {ground} 10u
+R1 vdd mid 100k
+R2 mid {ground} 100k
+C3 mid {ground} 10u
+R3 mid p 100k
+C4 wave p 100n
+VW wave {ground} SIN(0 0.05 200)
+R4 out n 100k
+R5 n {ground} 10k
+XU1 p n vdd {ground} out MCP6001
+RL out {ground} 10k
+"""
+
+
+@pytest.mark.parametrize("ground", ["0", "GND"])
+def test_a_level_that_is_amplified_is_blocked_and_the_gain_kept(tmp_path, ground):
+    """A capacitor in the ground leg: 10 / (2 pi 200 Hz 10 kilohm) = 0.8 uF; the gain stays 11."""
+    path = tmp_path / "wave.cir"
+    path.write_text(WAVE.format(ground=ground), encoding="utf-8")
+    (found,) = [p for p in proposals(review(path).designs[0]) if "headroom-output" in p.reason]
+    text = "".join(edit.text for edit in found.edits)
+    assert "820n" in text
+    assert "R4" not in found.what
+
+
+TWO = """bridge amplifier of two amplifiers
+VDD vdd 0 3.3
+C1 vdd 0 100n
+C2 vdd 0 10u
+VP sp 0 SIN(1.0 0.2 5)
+VN sn 0 1.0
+VR ref 0 1.5
+R1 ref n1 100k
+R2 n1 o1 10k
+R3 o1 n2 10k
+R4 n2 out 100k
+XU1A sn n1 vdd 0 o1 MCP6002
+XU1B sp n2 vdd 0 out MCP6002
+RL out 0 22k
+"""
+
+
+def test_one_resistor_of_a_balanced_four_is_not_changed(tmp_path):
+    """3.7 V is asked of 3.3 V: R4 alone would cure it and cost the common-mode rejection."""
+    path = tmp_path / "two.cir"
+    path.write_text(TWO, encoding="utf-8")
+    first = review(path).designs[0]
+    assert "headroom-output" in {f.rule for f in first.findings}
+    changed = {
+        e.text for p in proposals(first) if "R4" in p.what or "R3" in p.what for e in p.edits
+    }
+    assert not changed
+
+
+def test_both_resistors_of_a_difference_amplifier_go_together(tmp_path):
+    """The one back from the output and its fellow to the reference: 6.2 V is asked of 5 V."""
+    path = tmp_path / "shunt.cir"
+    path.write_text(
+        "battery current\nVDD vdd 0 5\nC1 vdd 0 100n\nC2 vdd 0 10u\nVB bat 0 3\nRS bat load 1\n"
+        "IL load 0 SIN(1 0.24 5)\nR1 bat p 20k\nR2 p 0 100k\nR3 load n 20k\nR4 out n 100k\n"
+        "XU1 p n vdd 0 out OPA197\nRL out 0 100k\n* railguard: tolerance resistor 0.01%\n",
+        encoding="utf-8",
+    )
+    found = [p for p in proposals(review(path).designs[0]) if "gain" in p.choice]
+    assert found
+    for proposal in found:
+        assert "R4" in proposal.what
+        assert "R2" in proposal.what

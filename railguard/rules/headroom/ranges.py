@@ -10,6 +10,7 @@ from railguard.rules.compose import (
 )
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.remedies import (
+    blocked_leg,
     other_rail,
     reached_unloaded,
     sentence,
@@ -172,7 +173,8 @@ def _output_remedy(
     gain = shift = ""
     opposite = stage.output.low if bound.upper else stage.output.high
     share = share_that_fits(stage, bound, opposite)
-    if broken.broken != "reserve" and not (outside and len(stage.gain) != 1):
+    one = len(stage.gain) == 1 or stage.balance is not None
+    if broken.broken != "reserve" and (one or not outside):
         gain = smaller_gain(stage, share, design)
     if outside or (not gain and broken.broken != "reserve" and _has_room(bound, opposite)):
         side = "below" if bound.upper else "above"
@@ -193,7 +195,7 @@ def _output_remedy(
         side = "below" if bound.upper else "above"
         other = f"attenuate or shift its signal so that the output stays {side} "
         other += si(broken.limit, "V")
-    return sentence(load, gain, shift, rail_words, device, other)
+    return sentence(blocked_leg(stage, design), load, gain, shift, rail_words, device, other)
 
 
 def _has_room(bound: Bound, opposite: Bound) -> bool:
