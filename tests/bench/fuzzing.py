@@ -71,6 +71,7 @@ def main() -> None:
     parser.add_argument("--seed", type=int, default=0)
     parser.add_argument("--keep", type=Path, default=Path(tempfile.gettempdir()))
     asked = parser.parse_args()
+    asked.keep.mkdir(parents=True, exist_ok=True)
     for name, strategy in KINDS.items():
         begun = time.process_time()
         count, failed = tried(
