@@ -137,7 +137,7 @@ def _rail_ohms(view: View, upper: bool) -> float:
 
 def _worst_frequency(view: View) -> float | None:
     q = view.at("output")
-    best = max(view.answers.tones, key=lambda t: float(t.peaks[q]), default=None)
+    best = max(view.tones, key=lambda t: float(t.peaks[q]), default=None)
     return float(best.hertz[q]) if best is not None and best.peaks[q] > 0 else None
 
 

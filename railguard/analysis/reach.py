@@ -13,14 +13,14 @@ from railguard.analysis.view import View
 def top_of(view: View) -> float | None:
     """Return the highest stated frequency that reaches the output, hertz."""
     q = view.at("output")
-    tops = [t.tone.top for t in view.answers.tones if t.peaks[q] > 0 and t.tone.top > 0]
+    tops = [t.tone.top for t in view.tones if t.peaks[q] > 0 and t.tone.top > 0]
     return max(tops, default=None)
 
 
 def band_of(view: View) -> Range:
     """Return the lowest and highest stated frequency that reaches the output, hertz."""
     q = view.at("output")
-    reached = [t.tone.frequencies for t in view.answers.tones if t.peaks[q] > 0]
+    reached = [t.tone.frequencies for t in view.tones if t.peaks[q] > 0]
     if not reached:
         return Range()
     return Range(min(min(f) for f in reached), max(max(f) for f in reached))
@@ -33,9 +33,7 @@ def is_ac_coupled(view: View) -> bool:
     moves the output.
     """
     moved = [
-        (t, float(t.peaks[view.at("output")]))
-        for t in view.answers.tones
-        if t.peaks[view.at("output")] > 0
+        (t, float(t.peaks[view.at("output")])) for t in view.tones if t.peaks[view.at("output")] > 0
     ]
     if not moved:
         unseen = view.spoil("output")
@@ -126,7 +124,7 @@ def high_pass_of(view: View) -> float | None:
     it. None where no signal is stated, or where the stage passes DC.
     """
     q = view.at("output")
-    moved = [t for t in view.answers.tones if t.peaks[q] > 0 and t.hertz[q] > 0]
+    moved = [t for t in view.tones if t.peaks[q] > 0 and t.hertz[q] > 0]
     row = int(view.answers.rows[q])
     if not moved or row < 0 or not is_ac_coupled(view):
         return None

@@ -7,11 +7,12 @@ import msgspec
 import numpy as np
 
 from railguard.analysis.available import output_reach
-from railguard.analysis.boost import Boost, boosted
-from railguard.analysis.boost import Part as Boostable
+from railguard.analysis.boost import boosted
 from railguard.analysis.closing import Closing, Off, Seen, closings, off_of
 from railguard.analysis.corners import Nuisance, Spread, spread
 from railguard.analysis.dcpaths import DcMap
+from railguard.analysis.lined import Boost
+from railguard.analysis.lined import Part as Boostable
 from railguard.analysis.loops import (
     OPEN_BETA,
     SURE_DEGREES,

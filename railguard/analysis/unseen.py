@@ -12,8 +12,8 @@ from collections.abc import Iterable
 import msgspec
 import numpy as np
 
-from railguard.analysis.boost import Boost
 from railguard.analysis.dcpaths import is_linear, leaves_sheet
+from railguard.analysis.lined import Boost
 from railguard.analysis.network import Complex, Network, Real
 from railguard.analysis.ranges import QUANTITIES, Answers
 from railguard.analysis.recognise import Amplifier

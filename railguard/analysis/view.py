@@ -2,7 +2,7 @@
 
 from railguard.analysis.bounds import Exact
 from railguard.analysis.network import Real
-from railguard.analysis.ranges import Answers
+from railguard.analysis.ranges import Answers, ToneAnswer
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.sampling import evaluate, exact_corners
 from railguard.analysis.solution import Solution
@@ -25,6 +25,12 @@ class View:
     def at(self, quantity: str) -> int:
         """Return the index of a quantity."""
         return self.answers.at(self.k, quantity)
+
+    @property
+    def tones(self) -> tuple[ToneAnswer, ...]:
+        """Return what the signals do; what a pair of followers adds to them is no signal."""
+        pairs = self.solution.boost.pairs
+        return tuple(t for t in self.answers.tones if t.tone.name not in pairs)
 
     def level(self, quantity: str) -> float:
         """Return its DC level."""

@@ -65,6 +65,16 @@ def test_a_saturation_current_gives_the_junction_its_volts(stage):
     assert found.current.carriers[0].volts_stated
 
 
+def test_a_follower_outside_the_loop_asks_for_its_base_current_too(stage):
+    """The output's level is its own, the load's current over the gain comes on top."""
+    cards = SINK.replace("XU1 in e", "XU1 in o").replace("SIN(1 0.8", "SIN(2 0.8")
+    found = stage(cards + NPN)
+    base = (2.8 - 0.7) / (10 * 51 + 100)
+    assert found.current.demand_source == pytest.approx(base, rel=0.02)
+    assert found.output.demand.high == pytest.approx(2.8, rel=1e-3)
+    assert found.current.carriers[0].designators == ("Q1",)
+
+
 def test_a_common_emitter_turns_the_loop_round(stage):
     """A PNP from the rail, the load on its collector, feedback to the non-inverting input."""
     cards = """
@@ -111,6 +121,25 @@ def test_a_complementary_pair_works_both_ways(stage):
     assert found.output.demand.high == pytest.approx(5.7, abs=0.01)
     assert found.output.demand.low == pytest.approx(-5.7, abs=0.01)
     assert found.current.carriers[0].designators == ("Q1", "Q2")
+
+
+def test_a_pair_is_no_signal_of_its_own(stage):
+    """Behind a capacitor a stage stays one, and its band is that of its signal."""
+    cards = PAIR.format(level=0).replace("XU1 in", "CI in p 10u\nRI p 0 100k\nXU1 p")
+    found = stage(cards)
+    assert found.ac_coupled
+    assert found.band.low == found.band.high == 100.0
+    assert found.output.frequency == 100.0
+    assert found.output.demand.high == pytest.approx(5.7, abs=0.01)
+
+
+def test_a_pair_outside_the_loop_is_not_followed(design):
+    """What the next stage gets of its crossover is no sine and no sum of peaks."""
+    cards = PAIR.format(level=0).replace("XU1 in out", "XU1 in o")
+    after = "R1 out n 10k\nR2 n o2 10k\nXU2 0 n vp vn o2 TL072\n"
+    second = next(s for s in design(cards + after).stages if s.designator == "XU2")
+    assert second.output.demand.high is None
+    assert "change over" in second.unknown["output"].why
 
 
 def test_a_pair_of_which_one_rests_is_a_follower(stage):
@@ -169,6 +198,24 @@ Q1 c b 0 QN
 RC vp c 5k
 XU1 c out vp vn out TL072
 RL out 0 10k
+.model QN NPN(BF=100)
+"""
+    (found,) = design(cards).stages
+    assert found.output.demand.high is None
+    assert "its own gain" in found.unknown["output"].why
+
+
+def test_nor_is_one_in_front_of_a_virtual_ground(design):
+    """There the input stands still, and the output moves with the gain all the same."""
+    cards = """
+VIN in 0 SIN(0 5m 100)
+CI in b 10u
+RB vp b 1meg
+Q1 c b 0 QN
+RC vp c 5k
+R1 c n 100k
+R2 n out 100k
+XU1 0 n vp vn out TL072
 .model QN NPN(BF=100)
 """
     (found,) = design(cards).stages
