@@ -8,15 +8,17 @@ Source  TI SLOA049, Active low-pass filter design (the topologies); S. Franco, D
         Operational Amplifiers, ch. 3 (worked values in tests/outside)
 """
 
+from collections import defaultdict
 from collections.abc import Mapping
 
 import msgspec
 import numpy as np
 
+from railguard.analysis.network import Complex, Real
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.stage import Filter, Range
 from railguard.analysis.surroundings import Ways
-from railguard.circuit.model import Element
+from railguard.circuit.model import GROUND, Element
 
 _KINDS = {
     "Sallen-Key low-pass": "low-pass",
@@ -37,8 +39,8 @@ def filter_of(
     """Return the filter a stage is, or None.
 
     beta_minus  share of the output at the inverting input, V/V (1 for a follower)
-    gain        magnitude in the pass band from a signal, and its range: that of the stage where
-                nothing else tells it
+    gain        magnitude from a signal, and its range: taken where the filter's own network does
+                not tell its pass band's
     tolerances  share each element may be off, by designator
     noise_gain  its range over the tolerances of the network that sets `beta_minus`
     """
@@ -60,6 +62,8 @@ def filter_of(
     frequency, quality = found
     kind = _KINDS.get(topology) or _multiple_feedback(amplifier, inner, ways)
     own = (1.0 / beta_minus, noise_gain) if positive and beta_minus else gain
+    if not positive:
+        own = stage.passed_span(kind, frequency, tolerances) or gain
     spans = _spans(stage, found, beta, tolerances, noise_gain)
     return Filter(kind, frequency, quality, own[0], *spans, own[1])
 
@@ -141,20 +145,7 @@ class _Stage(msgspec.Struct, frozen=True):
         scales  factors on elements' values, by designator
         beta    share of the output at the inverting input; None where that is the filter's own pin
         """
-        index = {self.pin: 0, self.inner: 1, self.amplifier.output: 2}
-        g, c = np.zeros((3, 3)), np.zeros((3, 3))
-        for element in self.elements:
-            value = (element.value or 0.0) * scales.get(element.designator, 1.0)
-            matrix, size = (g, 1.0 / value) if element.kind == "R" else (c, value)
-            a, b = (index.get(n, -1) for n in element.nets[:2])
-            for i, j, sign in ((a, a, 1.0), (b, b, 1.0), (a, b, -1.0), (b, a, -1.0)):
-                if i >= 0 and j >= 0:
-                    matrix[i, j] += sign * size
-        # The third row is the amplifier: both inputs at one voltage.
-        g[2, :], c[2, :] = 0.0, 0.0
-        g[2, 0] = 1.0
-        if beta is not None:
-            g[2, 2] = -beta
+        g, c = self._matrices(scales, beta)
         if not c.any():
             return None
         scale = float(np.abs(g[:2]).max() / np.abs(c).max())
@@ -164,3 +155,66 @@ class _Stage(msgspec.Struct, frozen=True):
         if d0 * d2 <= 0 or d0 * d1 <= 0:
             return None
         return scale * float(np.sqrt(d0 / d2)) / (2 * np.pi), float(np.sqrt(d0 * d2)) / abs(d1)
+
+    def _matrices(self, scales: Mapping[str, float], beta: float | None) -> tuple[Real, Real]:
+        """Return conductances and capacitances over pin, inner net and output.
+
+        The last row is the amplifier's: both inputs at one voltage.
+        """
+        index = self._index()
+        g, c = np.zeros((3, 3)), np.zeros((3, 3))
+        for element in self.elements:
+            value = (element.value or 0.0) * scales.get(element.designator, 1.0)
+            matrix, size = (g, 1.0 / value) if element.kind == "R" else (c, value)
+            a, b = (index.get(n, -1) for n in element.nets[:2])
+            for i, j, sign in ((a, a, 1.0), (b, b, 1.0), (a, b, -1.0), (b, a, -1.0)):
+                if i >= 0 and j >= 0:
+                    matrix[i, j] += sign * size
+        g[2, :], c[2, :] = 0.0, 0.0
+        g[2, 0] = 1.0
+        if beta is not None:
+            g[2, 2] = -beta
+        return g, c
+
+    def _index(self) -> dict[str, int]:
+        return {self.pin: 0, self.inner: 1, self.amplifier.output: 2}
+
+    def passed(self, kind: str, hertz: float, scales: Mapping[str, float]) -> float | None:
+        """Return the gain in the pass band of a multiple-feedback stage, V/V, from its signal.
+
+        At DC, far above, or at the natural frequency. Several nets may feed it, a reference under a
+        small resistor among them, which makes a large gain: the smallest counts.
+        """
+        s = 2j * np.pi * {"low-pass": 0.0, "high-pass": FAR_ABOVE * hertz}.get(kind, hertz)
+        g, c = self._matrices(scales, None)
+        index = self._index()
+        fed: defaultdict[str, Complex] = defaultdict(lambda: np.zeros(3, dtype=np.complex128))
+        for element in self.elements:
+            value = (element.value or 0.0) * scales.get(element.designator, 1.0)
+            inside = [index[n] for n in element.nets[:2] if n in index]
+            outside = [n for n in element.nets[:2] if n not in index and n != GROUND]
+            if inside and outside:
+                fed[outside[0]][inside[0]] += 1.0 / value if element.kind == "R" else s * value
+        if not fed:
+            return None
+        found = np.linalg.solve(g + s * c, np.array(list(fed.values())).T)
+        return float(np.abs(found[2]).min()) or None
+
+    def passed_span(
+        self, kind: str, hertz: float, tolerances: Mapping[str, float]
+    ) -> tuple[float, Range] | None:
+        """Return that gain, and its range: the extreme-value sum over every part."""
+        nominal = self.passed(kind, hertz, {})
+        if nominal is None:
+            return None
+        moved = 0.0
+        for element in self.elements:
+            share = tolerances.get(element.designator, 0.0)
+            bumped = self.passed(kind, hertz, {element.designator: 1.0 + BUMP}) if share else None
+            if bumped is not None:
+                moved += abs(bumped - nominal) / BUMP * share
+        return nominal, Range(nominal - moved, nominal + moved)
+
+
+FAR_ABOVE = 1e3
+"""Multiple of its frequency at which a high-pass passes all it passes."""

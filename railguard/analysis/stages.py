@@ -25,6 +25,7 @@ from railguard.analysis.recognise import Amplifier
 from railguard.analysis.solution import Solution, stated_use
 from railguard.analysis.stage import (
     Allowed,
+    Filter,
     Inputs,
     Loop,
     Output,
@@ -165,6 +166,17 @@ def _stage(
         topology = "difference"
     if balance is not None:  # what a finite open-loop gain leaves of the common mode is no gain
         gains = tuple(gain for gain in gains if abs(gain.value) > RESIDUE * balance.gain)
+    filtered = filter_of(
+        amplifier,
+        solution.ways,
+        topology,
+        _share_at_minus(view),
+        _largest(gains),
+        solution.spread.shares,
+        spread_noise_gain,
+    )
+    if filtered is not None and filtered.kind == "band-pass" and len(gains) == 1:
+        gains = _in_pass_band(gains, filtered, topology, after[view.k])
     heat = dissipation(device, supply, output, current, load)
     if heat is None and use in ("comparator", "oscillator", "unused"):
         most = most_current(amplifier, solution.ways, supply)
@@ -198,15 +210,7 @@ def _stage(
         ac_coupled=is_ac_coupled(view),
         band=band_of(view),
         high_pass=high_pass_of(view),
-        filter=filter_of(
-            amplifier,
-            solution.ways,
-            topology,
-            _share_at_minus(view),
-            _largest(gains),
-            solution.spread.shares,
-            spread_noise_gain,
-        ),
+        filter=filtered,
         case=case_of(
             device,
             amplifier.match.channels,
@@ -238,6 +242,18 @@ _UNFOLLOWED = Unknown(
     "it oscillates, and its amplitude is set by something the built-in solver does not follow",
     "--engine ngspice",
 )
+
+
+def _in_pass_band(
+    gains: tuple[Gain, ...], filtered: Filter, topology: str, before: tuple[str, ...]
+) -> tuple[Gain, ...]:
+    """Return the gain of a band-pass from its signal where it is meant to pass, not far below.
+
+    Only of a stage that has the signal at first hand: what stands before has its own gain.
+    """
+    if before or topology != "multiple-feedback filter":
+        return gains
+    return (Gain(gains[0].net, filtered.gain, filtered.gain_worst),)
 
 
 def _holds(view: View, loop: Loop, after: list[tuple[str, ...]]) -> tuple[str, ...]:

@@ -217,7 +217,9 @@ def judge_filter(stage: Stage, limits: Limits, design: Design) -> Iterator[Outco
     if family is None or family.gain_bandwidth.best is None:
         return
     figure, product = family.gain_bandwidth, family.gain_bandwidth.best
-    needed = limits["factor"] * max(abs(filtered.gain), 1.0) * max(filtered.q, 1.0)
+    # With feedback from both sides the poles of a band-pass move by Q f / GBW, whatever its gain.
+    gain = 1.0 if _is_two_sided(stage) else max(abs(filtered.gain), 1.0)
+    needed = limits["factor"] * gain * max(filtered.q, 1.0)
     needed *= filtered.frequency
     if product >= needed:
         return
@@ -241,6 +243,12 @@ def judge_filter(stage: Stage, limits: Limits, design: Design) -> Iterator[Outco
         source="S. Franco, Design with Operational Amplifiers, 3rd ed., ex. 6.12 for the "
         "band-pass; Op Amps for Everyone, ch. 16, from memory",
     )
+
+
+def _is_two_sided(stage: Stage) -> bool:
+    """Tell whether a stage is a multiple-feedback band-pass."""
+    kind = stage.filter.kind if stage.filter is not None else ""
+    return kind == "band-pass" and stage.topology == "multiple-feedback filter"
 
 
 FILTER = Rule(

@@ -114,3 +114,29 @@ def test_every_number_has_its_ends(stage, cards):
     for low, nominal, high in triples:
         assert low <= nominal * (1 + math.copysign(1e-9, nominal)) + 1e-12
         assert nominal <= high + 1e-9 * abs(high) + 1e-12
+
+
+def test_a_multiple_feedback_band_pass_has_the_gain_of_its_middle(stage):
+    """S. Franco's sizing: H0 = R3 / 2 R1 where both capacitors are one.
+
+    At 20.4 kHz with a Q of 10.2; far below, where a signal of 1 kHz would be, it passes 0.05.
+    """
+    cards = (
+        "VIN in 0 SIN(0 0.1 20k)\nR1 in a 7.87k\nR2 a {leg} 402\nC1 a out 1n\nC2 a n 1n\n"
+        "R3 out n 160k\nXU1 0 n vp vn out TL072"
+    )
+    one = stage(cards.format(leg="0"))
+    assert one.filter.gain == pytest.approx(160 / (2 * 7.87), rel=1e-3)
+    assert one.gain == (("in", pytest.approx(160 / (2 * 7.87), rel=1e-3)),)
+    # A reference under the small resistor brings no signal.
+    two = stage(cards.format(leg="ref") + "\nVR ref 0 1")
+    assert two.filter.gain == pytest.approx(160 / (2 * 7.87), rel=1e-3)
+
+
+def test_a_multiple_feedback_low_pass_has_its_gain_at_dc(stage):
+    """20 kilohm over 10 kilohm."""
+    found = stage(
+        "VIN in 0 SIN(0 1 1k)\nR1 in a 10k\nR2 a out 20k\nR3 a n 5k\nC1 a 0 10n\nC2 n out 1n\n"
+        "XU1 0 n vp vn out TL072"
+    ).filter
+    assert (found.kind, found.gain) == ("low-pass", pytest.approx(2.0, rel=1e-6))

@@ -144,6 +144,13 @@ def test_a_filter_wants_bandwidth(hertz, q, gain, severity):
     )
 
 
+def test_the_gain_of_a_two_sided_band_pass_does_not_move_it():
+    """S. Franco, ex. 6.12: frequency falls by Q f / GBW, whatever stands before its network."""
+    narrow = Filter("band-pass", 5e3, 4.0, 10.0)
+    assert not findings(FILTER, stage(filter=narrow, topology="multiple-feedback filter"))
+    assert findings(FILTER, stage(filter=narrow, topology="Sallen-Key band-pass"))
+
+
 def test_a_filter_says_what_it_is_and_wants():
     """Frequency, Q, gain and the product wanted stand in the sentence."""
     (found,) = findings(FILTER, filtering(10e3, 4.0))
