@@ -30,12 +30,17 @@ LEAST_CAPACITOR = 1e-12
 def compensation(stage: Stage, farads: float | None) -> float | None:
     """Return the capacitance across the feedback that leaves about 65 degrees, F.
 
-    farads  at the inverting input
+    farads  at the inverting input, without what the netlist holds there
     Source  sqrt(Cin / (2 pi RF GBW)): S. Franco, 3rd ed., ch. 8; TI SBOS981J
     """
-    ohms = stage.feedback.resistance
+    ohms, loop = stage.feedback.resistance, stage.loop
     gbw = None if stage.family is None else stage.family.gain_bandwidth.best
-    return math.sqrt(farads / (2 * math.pi * ohms * gbw)) if farads and ohms and gbw else None
+    found = [math.sqrt(farads / (2 * math.pi * ohms * gbw))] if farads and ohms and gbw else []
+    bare = stage.topology == "transimpedance" and not stage.feedback.capacitance
+    if bare and ohms and loop.crossover:
+        # The loop closes at sqrt(GBW / (2 pi RF Cin)), the source's own capacitance included.
+        found.append(1 / (2 * math.pi * ohms * loop.crossover))
+    return max(found, default=None)
 
 
 def element_named(designator: str, design: Design) -> Element | None:

@@ -3,6 +3,7 @@
 import pytest
 
 from railguard.analysis.stage import Current, Feedback, Loop, Range
+from railguard.rules.feedback.size import HIGH
 from railguard.rules.stability import LOAD_CAPACITANCE, NOISE_GAIN, PHASE_MARGIN, TRANSIMPEDANCE
 from tests.rules.stages import (
     FAMILY,
@@ -174,6 +175,19 @@ def test_a_transimpedance_stage_wants_a_capacitor():
     (found,) = findings(TRANSIMPEDANCE, converting(100e3))
     assert found.severity == "minor"
     assert found.remedy == "Fit 3.3 pF across RF."
+
+
+def test_the_capacitance_of_the_source_counts():
+    """1 nF at 1 Mohm and 3 MHz: sqrt(3e6 / 2 pi 1e6 1e-9) = 21.9 kHz, so 1 / (2 pi 1e6 21.9e3).
+
+    That is 7.3 pF; the 10 pF of the input alone would ask for 0.7 pF.
+    """
+    one = converting(1e6)
+    loop = Loop(dc="negative", crossover=21.9e3, phase_margin=0.5)
+    (found,) = findings(PHASE_MARGIN, changed(one, loop=loop))
+    assert found.remedy == "Fit 7.5 pF across RF."
+    solved = changed(one.feedback, seen=1e6)
+    assert outcomes(HIGH, changed(one, loop=loop, feedback=solved)) == []
 
 
 def test_compensated_small_or_known_to_be_stable_stages_are_quiet():

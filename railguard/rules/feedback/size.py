@@ -242,6 +242,8 @@ def _bias(stage: Stage, family: Device, limits: Limits, design: Design) -> _Trou
 
 def _pole(stage: Stage, family: Device, seen: float, limits: Limits) -> _Trouble | None:
     """The pole of the network's resistance with the input capacitance, against the crossover."""
+    if stage.topology == "transimpedance":
+        return None  # there the source's capacitance counts, and the loop is judged as a whole
     loop = stage.loop
     sure = loop.phase_margin if loop.phase_margin is not None else loop.margins.low
     if not loop.crossover or (sure or 0.0) >= limits["phase-margin"]:
@@ -311,7 +313,8 @@ HIGH = Rule(
     source="Texas Instruments SLOA013A; S. Franco, Design with Operational Amplifiers, 3rd ed., "
     "ch. 5 and 8",
     silent="Followers wired straight back; a pole that a feedback capacitor undoes, or that the "
-    "phase margin shows to be harmless; noise of a transimpedance stage.",
+    "phase margin shows to be harmless; pole and noise of a transimpedance stage, which has rules "
+    "of its own.",
     limits=(
         Limit(
             name="error-share",
