@@ -7,10 +7,13 @@ import msgspec
 from railguard.analysis.stage import Design
 from railguard.rules.finding import Finding
 from railguard.rules.relations import (
+    by_bias_current,
     dead_before,
     graver,
     heavy_load,
     heavy_network,
+    made_by_offset,
+    makes_no_offset,
     network_alone,
     no_linear_loop,
     on_the_tied_net,
@@ -120,10 +123,16 @@ LINKS: tuple[Link, ...] = (
     ),
     Link(
         ("feedback-high",),
-        ("stability-phase-margin", "stability-transimpedance", "bias-current-error"),
+        ("stability-phase-margin", "stability-transimpedance"),
         shared_designator,
     ),
-    Link(("feedback-high",), ("headroom-offset", "headroom-output"), only_at_a_corner),
+    Link(("feedback-high",), ("bias-current-error",), by_bias_current),
+    Link(
+        ("bias-current-error", "feedback-high"),
+        ("headroom-offset", "headroom-output", "headroom-input"),
+        only_at_a_corner,
+    ),
+    Link(("headroom-offset",), ("headroom-output",), made_by_offset),
     Link(
         ("feedback-reversed", "feedback-open", "drive-tied"),
         ("headroom", "feedback-high", "bias-current-error"),
@@ -135,7 +144,7 @@ LINKS: tuple[Link, ...] = (
         ("headroom-output", "headroom-input"),
         one_reference,
     ),
-    Link(("headroom-output",), ("headroom-offset",), shared_designator),
+    Link(("headroom-output",), ("headroom-offset",), makes_no_offset),
     Link(("headroom-output",), ("drive-current", "dynamics-slew", "feedback-low"), only_unclipped),
     Link(("headroom-output",), ("headroom-input",), same_side),
     Link(

@@ -89,10 +89,20 @@ def _rail_elements(finding: Finding, design: Design) -> frozenset[str]:
     return frozenset(names)
 
 
+FAR_APART = 2.0
+"""Ratio of two readings of a value from which a stage is another one with either."""
+
+
 def rests_on_value(cause: Finding, finding: Finding, design: Design) -> str:
-    """Relate a misread value to what was worked out with it."""
+    """Relate a misread value to what was worked out with it.
+
+    Two readings that are about one value explain nothing: 6k8 is 6 kilohm or 6.8 kilohm.
+    """
+    readings = (abs(cause.demand or 0.0), abs(cause.limit or 0.0))
+    if min(readings) > 0 and max(readings) < FAR_APART * min(readings):
+        return ""
     names = set(finding.designators) | _rail_elements(finding, design)
-    for designator in finding.designators:
+    for designator in () if finding.family == "supply" else finding.designators:
         stage = stage_named(designator, design)
         if stage is None:
             continue
@@ -190,13 +200,46 @@ def only_unclipped(cause: Finding, finding: Finding, design: Design) -> str:
 
 def only_at_a_corner(cause: Finding, finding: Finding, design: Design) -> str:
     """Relate a range that is too wide only with offset and bias current to what amplifies them."""
-    nominal = finding.rule == "headroom-output" and finding.corner == "nominal"
-    return "" if nominal else _same_or_before(cause, finding, design)
+    ranged = finding.rule in ("headroom-output", "headroom-input")
+    if (ranged and finding.corner == "nominal") or _milder(cause, finding):
+        return ""
+    return _same_or_before(cause, finding, design)
+
+
+def made_by_offset(cause: Finding, finding: Finding, design: Design) -> str:
+    """Relate an output's range that only offset and bias current make too wide to the two."""
+    stage = _stage_of(finding, design)
+    if stage is None or finding.corner == "nominal" or None in (finding.demand, finding.limit):
+        return ""
+    upper = (finding.demand or 0.0) > (finding.limit or 0.0)
+    moved = (stage.output.high if upper else stage.output.low).culprits[:1]
+    errors = ("offset of ", "bias current of ")
+    return (
+        shared_designator(cause, finding, design) if moved and moved[0].startswith(errors) else ""
+    )
+
+
+def makes_no_offset(cause: Finding, finding: Finding, design: Design) -> str:
+    """Relate an output that clips to the error its lost range makes look large."""
+    turned = made_by_offset(finding, cause, design)
+    return "" if turned else shared_designator(cause, finding, design)
+
+
+def _milder(cause: Finding, finding: Finding) -> bool:
+    return SEVERITIES.index(cause.severity) > SEVERITIES.index(finding.severity)
 
 
 def _same_or_before(cause: Finding, finding: Finding, design: Design) -> str:
     """Relate what is about one stage to what is about it or a stage behind it."""
     return shared_designator(cause, finding, design) or dead_before(cause, finding, design)
+
+
+def by_bias_current(cause: Finding, finding: Finding, design: Design) -> str:
+    """Relate large resistors to the error of a bias current where that is what is wrong with them.
+
+    A remark on their pole explains no error, and nothing graver than itself.
+    """
+    return "" if _milder(cause, finding) else shared_designator(cause, finding, design)
 
 
 def graver(cause: Finding, finding: Finding, design: Design) -> str:

@@ -14,6 +14,8 @@ from tests.rules.stages import (
     capacitor,
     changed,
     design,
+    high,
+    low,
     pin,
     rail,
     resistor,
@@ -221,6 +223,45 @@ def test_a_misread_value_takes_along_what_was_worked_out_with_it():
     found = merge([about("headroom-output", "XU1"), about("feedback-high", "XU1"), trap], ONE)
     assert rules(found) == (["netlist-value-suffix"], ["feedback-high", "headroom-output"])
     assert {c.cause for c in found[0].consequences} == {"R2"}
+
+
+def test_two_readings_of_about_one_value_explain_nothing():
+    """6k8 is 6 kilohm or 6.8 kilohm: whatever is wrong with the stage, it is not that."""
+    clip = about("headroom-output", "XU1")
+    near = about("netlist-value-suffix", "R2", severity="minor", demand=6800.0, limit=6000.0)
+    assert rules(merge([clip, near], ONE)) == (["headroom-output", "netlist-value-suffix"], [])
+    far = changed(near, demand=1e6, limit=1e-3)
+    assert rules(merge([clip, far], ONE)) == (["netlist-value-suffix"], ["headroom-output"])
+
+
+def test_a_misread_feedback_resistor_turns_no_supply_round():
+    """What feeds the pins is the rails' own."""
+    trap = about("netlist-value-suffix", "R2", severity="minor")
+    found = merge([about("supply-reversed", "XU1", nets=("+12V",)), trap], ONE)
+    assert rules(found) == (["supply-reversed", "netlist-value-suffix"], [])
+
+
+def test_a_remark_on_a_pole_is_no_cause_of_a_bias_error():
+    """Large resistors are it where they are as bad as what follows."""
+    error = about("bias-current-error", "XU1")
+    remark = about("feedback-high", "XU1", severity="remark")
+    assert rules(merge([error, remark], ONE)) == (["bias-current-error", "feedback-high"], [])
+    as_bad = changed(remark, severity="major")
+    assert rules(merge([error, as_bad], ONE)) == (["feedback-high"], ["bias-current-error"])
+
+
+@pytest.mark.parametrize(
+    ("culprit", "top"), [("offset of XU1", "headroom-offset"), ("R2", "headroom-output")]
+)
+def test_a_range_that_offset_alone_makes_too_wide_follows_from_the_offset(culprit, top):
+    """At nominal, or where a resistor moves it most, the clipped range leads."""
+    output = Output(net="out", high=high(culprits=(culprit, "VP")), low=low())
+    whole = design(stage(output=output))
+    clip = changed(about("headroom-output", "XU1", demand=12.0, limit=9.5), corner="worst-case")
+    found = merge([clip, about("headroom-offset", "XU1")], whole)
+    assert [f.rule for f in found] == [top]
+    nominal = merge([changed(clip, corner="nominal"), about("headroom-offset", "XU1")], whole)
+    assert [f.rule for f in nominal] == ["headroom-output"]
 
 
 def test_a_misread_value_elsewhere_explains_nothing():

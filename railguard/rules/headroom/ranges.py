@@ -3,6 +3,7 @@
 from collections.abc import Iterator
 
 from railguard.analysis.stage import Bound, Design, Stage, Unknown
+from railguard.circuit.model import GROUND
 from railguard.rules.compose import (
     breach_finding,
     missing_figure,
@@ -176,10 +177,13 @@ def _output_remedy(
     one = len(stage.gain) == 1 or stage.balance is not None
     if broken.broken != "reserve" and (one or not outside):
         gain = smaller_gain(stage, share, design)
-    if outside or (not gain and broken.broken != "reserve" and _has_room(bound, opposite)):
+    nominal = broken.broken != "reserve" and not broken.at_corner
+    if outside or (not gain and nominal and _has_room(bound, opposite)):
         side = "below" if bound.upper else "above"
         target = broken.limit if outside else level + broken.limit - broken.demand
         shift = f"move the output's level ({_volts(level, bound)}) {side} {si(target, 'V')}"
+        if stage.topology.startswith("inverting") and stage.inputs.plus.net == GROUND:
+            shift += ", by a reference at its non-inverting input instead of ground"
     device = ""
     family = stage.family
     rail = stage.supply.positive if bound.upper else stage.supply.negative
@@ -191,16 +195,24 @@ def _output_remedy(
         load = "lighten its load"
     rail_words = other_rail(stage, bound.upper, -broken.margin, both)
     other = ""
-    if not (load or gain or shift or rail_words or device):
+    precise = bool(broken.at_corner and _moved_by_offset(bound))
+    if not (precise or load or gain or shift or rail_words or device):
         side = "below" if bound.upper else "above"
         other = f"attenuate or shift its signal so that the output stays {side} "
         other += si(broken.limit, "V")
-    return sentence(blocked_leg(stage, design), load, gain, shift, rail_words, device, other)
+    blocked = blocked_leg(stage, design)
+    better = "fit a device of less offset voltage" if precise else ""
+    return sentence(better, blocked, load, gain, shift, rail_words, device, other)
+
+
+def _moved_by_offset(bound: Bound) -> bool:
+    """Tell whether it is the stage's offset that moves a corner most."""
+    return bool(bound.culprits) and bound.culprits[0].startswith("offset of ")
 
 
 def _has_room(bound: Bound, opposite: Bound) -> bool:
     """Tell whether the demanded span fits between the limits, moved as a whole."""
-    ends = (bound.typical, opposite.typical)
+    ends = [b.guaranteed if b.guaranteed is not None else b.typical for b in (bound, opposite)]
     if bound.span is None or ends[0] is None or ends[1] is None:
         return False
     return 0 < bound.span <= abs(ends[0] - ends[1])

@@ -239,6 +239,24 @@ def test_a_gain_that_makes_the_level_as_well(one, words):
     assert found.remedy == words
 
 
+def test_an_inverting_stage_wants_a_reference_where_ground_is_one():
+    """On a single supply what is inverted about ground goes below it."""
+    one = single_supply(1.0, -1.0, 0.0, 2.0, plus=0.0, topology="inverting")
+    one = changed(one, inputs=inputs(plus=pin("0")), ac_coupled=True)
+    (found,) = findings(OUTPUT, one, design(one, elements=()))
+    assert found.remedy == (
+        "Move the output's level (0 V) above 1 V, by a reference at its non-inverting input "
+        "instead of ground."
+    )
+
+
+def test_what_offset_moves_wants_a_better_device():
+    """No gain and no level is wrong where the corner is the device's own offset."""
+    pair = {"default": Pair(11.0, 9.4), "culprits": ("offset of XU1", "VP")}
+    (found,) = findings(OUTPUT, asked(5.0, -5.0, upper=pair, family=TO_THE_RAILS))
+    assert found.remedy.startswith("Fit a device of less offset voltage, or ")
+
+
 def test_a_lighter_load_is_proposed_where_it_would_do():
     """The data sheet lists a swing at a lighter load that reaches the demand."""
     light = changed(FAMILY, swing_high=(SwingPoint(amps=0.0, typical=0.5),))
