@@ -32,6 +32,7 @@ NAMED = {
     "servo loop": "hydrophone_servo",
     "bridge-tied pair": "siren_bridge",
     "boosted output": "sluice_driver",
+    "current sink": "beacon_lamp",
     "4-20 mA transmitter, two wires": "loop_transmitter",
     "4-20 mA transmitter, three wires": "three_wire_transmitter",
 }

@@ -5,7 +5,7 @@ that stops conducting, saturates, or whose current nothing but its own gain sets
 and what rests on it has no number.
 """
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 
 from railguard.analysis.lined import Boost, Lined, Part, total, with_lines
 from railguard.analysis.lines import (
@@ -21,7 +21,6 @@ from railguard.analysis.lines import (
 from railguard.analysis.network import Network
 from railguard.analysis.ranges import Answers, answer, standing
 from railguard.analysis.transistors import transistors_of
-from railguard.circuit.model import Model
 
 MOST = 32
 """Transistors in one part up to which they are looked at: beyond, it is no op-amp stage."""
@@ -32,14 +31,14 @@ STEPS = 20
 SETTLED_VOLTS = 1e-4
 
 
-def boosted(part: Part, models: Mapping[str, Model] | None) -> tuple[Network, Answers, Boost]:
+def boosted(part: Part, bent: bool) -> tuple[Network, Answers, Boost]:
     """Solve a part with those of its transistors that work as straight lines.
 
-    models  of the deck, by lower-cased name; None: the part has no transistor
+    bent  whether the part has transistors
 
     Raises  SolveError
     """
-    found, left = transistors_of(part.prepared.elements, models) if models is not None else ((), {})
+    found, left = transistors_of(part.prepared.elements, part.models) if bent else ((), {})
     if len(found) > MOST:
         left |= {one.designator: "which is one of very many" for one in found}
         found = ()
@@ -67,8 +66,9 @@ def _settled(part: Part, chosen: Sequence[Carried]) -> dict[Carried, Line]:
     """Return the lines that touch the transistors' curves where they stand at DC."""
     lines = {one: first_line(one) for one in chosen}
     for _ in range(STEPS):
-        prepared, network, held = with_lines(part, lines)
-        x = standing(network, prepared, part.draws, held)[1]
+        solvable = with_lines(part, lines)
+        network = solvable.network
+        x = standing(network, solvable.prepared, part.draws, solvable.held)[1]
         moved = {}
         for one, line in lines.items():
             amps = total(current(one, line, network), x).real

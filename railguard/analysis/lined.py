@@ -10,6 +10,9 @@ from collections.abc import Iterable, Mapping, Sequence
 import msgspec
 import numpy as np
 
+from railguard.analysis.lamps import MOST_VOLTS, drop_of, lamps_at
+from railguard.analysis.lamps import elements_of as elements_of_lamp
+from railguard.analysis.lamps import injection_of as volts_of_lamp
 from railguard.analysis.lines import (
     Carried,
     Entries,
@@ -19,6 +22,7 @@ from railguard.analysis.lines import (
     control,
     current,
     elements_of,
+    feeding,
     injection_of,
     limits,
     names_of,
@@ -36,7 +40,7 @@ from railguard.analysis.transistors import (
     Bipolar,
     FieldEffect,
 )
-from railguard.circuit.model import Element
+from railguard.circuit.model import Element, Model
 
 RESTING_SHARE = 1e-3
 """A current that ends this share of its peak below zero is one that just reaches zero."""
@@ -108,6 +112,7 @@ class Part(msgspec.Struct, frozen=True):
     """One part of a circuit, ready to be solved; the fields are the arguments of `answer`.
 
     network  without its transistors
+    models   of the deck, by lower-cased name
     """
 
     network: Network
@@ -116,24 +121,44 @@ class Part(msgspec.Struct, frozen=True):
     draws: Mapping[str, float]
     held: Mapping[str, Clamp]
     extra: Mapping[str, Parasitics]
+    models: Mapping[str, Model]
 
 
-def with_lines(
-    part: Part, lines: Mapping[Carried, Line]
-) -> tuple[Prepared, Network, dict[str, Clamp]]:
-    """Return a part with lines in it: a pair's voltage goes either way, as a held output does."""
+class Solvable(msgspec.Struct, frozen=True):
+    """A part with lines in it, ready to be solved.
+
+    lamps  the injections of the diodes that feed each transistor
+    """
+
+    prepared: Prepared
+    network: Network
+    held: Mapping[str, Clamp]
+    lamps: Mapping[Carried, tuple[str, ...]]
+
+
+def with_lines(part: Part, lines: Mapping[Carried, Line]) -> Solvable:
+    """Put lines into a part: a pair's voltage goes either way, as a held output does."""
     elements, levels, held = [*part.prepared.elements], [*part.prepared.levels], dict(part.held)
+    lamps: dict[Carried, tuple[str, ...]] = {}
+    lit: dict[str, Element] = {}
     for one, line in lines.items():
         elements += elements_of(one, line)
         if isinstance(one, Pair):
             held[injection_of(one)] = Clamp(0.0, line.volts)
-        else:
-            levels.append(Drive(injection_of(one), one.sign * line.volts))
+            continue
+        levels.append(Drive(injection_of(one), one.sign * line.volts))
+        (net,) = feeding(one)
+        fed = lamps_at(net, one.sign, part.network, part.prepared.elements)
+        lamps[one] = tuple(volts_of_lamp(diode) for diode in fed)
+        lit |= {diode.designator: diode for diode in fed}
+    for diode in lit.values():
+        elements += elements_of_lamp(diode)
+        levels.append(Drive(volts_of_lamp(diode), drop_of(diode, part.models)))
     prepared = msgspec.structs.replace(
         part.prepared, elements=tuple(elements), levels=tuple(levels)
     )
     network = Network(elements, part.amplifiers, part.network.forced, part.extra)
-    return prepared, network, held
+    return Solvable(prepared, network, held, lamps)
 
 
 def total(entries: Entries, x: Real | Complex) -> complex:
@@ -157,8 +182,11 @@ class Lined:
         """Solve. Raises SolveError."""
         self._part = part
         self._lines = lines
-        prepared, self.network, held = with_lines(part, lines)
-        self.answers = answer(self.network, part.amplifiers, prepared, part.draws, held)
+        solvable = with_lines(part, lines)
+        self.network, self._lamps = solvable.network, solvable.lamps
+        self.answers = answer(
+            self.network, part.amplifiers, solvable.prepared, part.draws, solvable.held
+        )
         self._adjoint = self.answers.dc.adjoint([int(r) for r in self.answers.rows]).real
 
     def one_sided(self) -> dict[Carried, tuple[Bipolar, Bipolar]]:
@@ -185,6 +213,8 @@ class Lined:
         return found
 
     def _why_not(self, one: Carried, line: Line) -> str:
+        if any(net in self.network.floating for net in feeding(one)):
+            return "is fed by nothing that is followed"
         low, high = _span(self.answers, current(one, line, self.network))
         peak = max(abs(low), abs(high))
         broken = [
@@ -197,6 +227,10 @@ class Lined:
             return broken[0].why
         if GAIN_ERROR * peak * self._elsewhere(one, self._of_its_current(one)) > HELD_VOLTS:
             return "carries a current that its own gain sets, not a loop"
+        for name in self._lamps.get(one, ()):
+            row = self.network.injections[name].row
+            if MOST_VOLTS * self._elsewhere(None, np.abs(self._adjoint[:, row])) > HELD_VOLTS:
+                return "shares its diodes with what is to be worked out"
         if isinstance(one, Pair):
             row = self.network.injections[injection_of(one)].row
             if one.volts * self._elsewhere(one, np.abs(self._adjoint[:, row])) > HELD_VOLTS:
@@ -242,7 +276,7 @@ class Lined:
             effect = np.maximum(effect, np.abs(moved))
         return effect
 
-    def _elsewhere(self, one: Carried, effect: Real) -> float:
+    def _elsewhere(self, one: Carried | None, effect: Real) -> float:
         """Return the most of an effect on every quantity that is not what a loop makes up for, V.
 
         The output that drives a transistor makes up for what it does; all others, and all inputs,
@@ -250,7 +284,8 @@ class Lined:
         """
         most = 0.0
         for k in range(len(self.answers.amplifiers)):
-            seen = ("plus", "minus") if self._drives(k, one) else ("plus", "minus", "output")
+            drives = one is not None and self._drives(k, one)
+            seen = ("plus", "minus") if drives else ("plus", "minus", "output")
             most = max(most, *(float(effect[self.answers.at(k, quantity)]) for quantity in seen))
         return most
 

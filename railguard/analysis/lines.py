@@ -129,6 +129,13 @@ def steering(carried: Carried) -> str:
     return carried.gate if isinstance(carried, FieldEffect) else carried.base
 
 
+def feeding(carried: Carried) -> tuple[str, ...]:
+    """Return the nets its current comes from: collector or drain."""
+    if isinstance(carried, Pair):
+        return carried.npn.collector, carried.pnp.collector
+    return (carried.drain if isinstance(carried, FieldEffect) else carried.collector,)
+
+
 def first_line(carried: Carried) -> Line:
     """Return the line to begin with."""
     if isinstance(carried, FieldEffect):

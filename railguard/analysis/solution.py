@@ -140,9 +140,8 @@ def solve(
     if forced:
         levels = standing_levels(network, amplifiers, prepared, draws)
         held = {**_limits(amplifiers, levels, forced), **clamps}
-    network, answers, boost = boosted(
-        Boostable(network, amplifiers, prepared, draws, held, known), models if bent else None
-    )
+    part = Boostable(network, amplifiers, prepared, draws, held, known, models)
+    network, answers, boost = boosted(part, bent)
     tops = tuple(sorted({t.top for t in prepared.tones if t.top > 0}))
     if boost.working:
         # What was found to work has its own numbers in the loops too.

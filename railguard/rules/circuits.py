@@ -96,8 +96,10 @@ CIRCUITS = (
         "A bipolar one takes its current over the gain of its model (BF), or over 50 (1,000 for "
         "the usual Darlingtons) where no model states one, and 0.7 V from base to emitter where "
         "its model gives no IS: common practice, no source. A gate stands at the square law of "
-        "VTO and KP and takes C dv/dt. One that stops conducting or saturates within the range "
-        "of the signals, or whose current no loop holds, is not followed.",
+        "VTO and KP and takes C dv/dt. Lamps and other diodes between its supply and its collector "
+        "or drain drop 4 V each, or what the IS of their model gives. One that stops conducting or "
+        "saturates within the range of the signals, or whose current no loop holds, is not "
+        "followed.",
         "a .model card with BF and IS, or with VTO, KP, CGSO and CGDO; --engine ngspice",
     ),
     Assumed(

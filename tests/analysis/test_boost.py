@@ -172,6 +172,37 @@ def test_what_does_not_work_as_a_line_is_not_checked(stage, why):
     assert found.loop.dc == "negative"
 
 
+LAMP = SINK.replace("RE e 0 10", "RE e 0 100")
+
+
+@pytest.mark.parametrize(
+    "lamps", ["D1 vp c LED", "D1 vp x LED\nRX x y 10\nD2 y c LED", "D1 vp c LED\nD2 vp c LED"]
+)
+def test_lamps_at_the_collector_leave_the_base_current_alone(stage, lamps):
+    """What they drop only says whether enough is left across the transistor."""
+    found = stage(LAMP.replace("RC vp c 20", lamps) + NPN + ".model LED D\n")
+    assert found.current.demand_source == pytest.approx(0.018 / 51, rel=1e-3)
+    assert not found.unknown
+
+
+def test_lamps_that_may_drop_too_much_leave_it_open(stage):
+    """Four of unknown sort may need 16 V of the 15; four of a stated junction do not."""
+    string = "D1 vp x LED\nD2 x y LED\nD3 y z LED\nD4 z c LED"
+    cards = LAMP.replace("RC vp c 20", string) + NPN
+    found = stage(cards + ".model LED D\n")
+    assert found.current.demand_source is None
+    assert "saturates" in found.unknown["current"].why
+    stated = stage(cards + ".model LED D(IS=1e-18 N=1.6)\n")
+    assert stated.current.demand_source == pytest.approx(0.018 / 51, rel=1e-3)
+
+
+def test_a_lamp_the_wrong_way_round_feeds_nothing(stage):
+    """Its anode on the collector of an NPN: no current gets there."""
+    found = stage(LAMP.replace("RC vp c 20", "D1 c vp LED") + NPN + ".model LED D\n")
+    assert found.current.demand_source is None
+    assert "Q1, which is fed by nothing that is followed" in found.unknown["current"].why
+
+
 def test_a_collector_that_leaves_the_sheet_is_not_guessed(stage):
     """Nothing says what stands at the connector, so nothing says that the transistor works."""
     found = stage(SINK.replace("RC vp c 20", "J1 c") + NPN)

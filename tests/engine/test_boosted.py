@@ -60,7 +60,15 @@ def test_what_is_asked_of_the_output_is_what_ngspice_shows(name):
 
 
 @pytest.mark.parametrize(
-    "name", ["bridge_excitation", "loop_transmitter", "three_wire_transmitter", "heater_sink"]
+    "name",
+    [
+        "beacon_lamp",
+        "bridge_excitation",
+        "heater_sink",
+        "loop_transmitter",
+        "sluice_driver",
+        "three_wire_transmitter",
+    ],
 )
 def test_the_sound_circuits_with_transistors_are_judged_and_right(name):
     """Nothing is left open, and current and range are those of ngspice."""
