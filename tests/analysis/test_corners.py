@@ -1,9 +1,10 @@
 """Extreme values against sampling and against hand calculation."""
 
+import msgspec
 import numpy as np
 import pytest
 
-from railguard.analysis.corners import spread, tolerance_of
+from railguard.analysis.corners import Nuisance, spread, tolerance_of
 from railguard.analysis.design import analyse
 from railguard.analysis.network import Network
 from railguard.analysis.ranges import answer
@@ -124,3 +125,142 @@ def test_tolerance_is_read_from_the_card(text, expected):
     """A card's own tolerance counts as stated; else the class's default."""
     element = Element(kind="R", designator="R1", nets=("a", "b"), value=1e3, text=text)
     assert tolerance_of(element, Tolerances()) == expected
+
+
+@pytest.mark.parametrize(
+    ("designator", "fields", "expected"),
+    [
+        # narrower statements go first, whatever the card says, by either spelling, in any case
+        ("XCH1.R5", {"text": "5%"}, (0.001, True)),
+        ("r7", {}, (0.002, True)),
+        ("XCH2.R7", {}, (0.003, True)),
+        ("R8", {"text": "5%"}, (0.05, True)),
+        # then the card's own parameter, then its text
+        ("R8", {"parameters": {"tol": 0.02}, "text": "5%"}, (0.02, True)),
+        ("R8", {"parameters": {"tol": 0.0}}, (0.0, True)),
+        ("R8", {"parameters": {"tol": 1.0}}, (0.01, False)),  # no share: per cent, or a slip
+        ("R8", {"parameters": {"tol": -0.1}}, (0.01, False)),
+        ("R8", {"text": "50%"}, (0.5, True)),
+        ("R8", {"text": "51%"}, (0.01, False)),  # nothing is sold so loose
+        ("C1", {"kind": "C"}, (0.10, False)),
+        ("L1", {"kind": "L"}, (0.20, False)),
+        ("V1", {"kind": "V"}, (0.0, False)),
+    ],
+)
+def test_whose_tolerance_counts(designator, fields, expected):
+    """Statements, card, text, class: the first that speaks."""
+    rules = (("ch1.R5", 0.001), ("R7", 0.002), ("XCH2.*", 0.003))
+    usual = {"kind": "R", "designator": designator, "nets": ("a", "b"), "value": 1e3}
+    element = Element(**{**usual, **fields})
+    assert tolerance_of(element, Tolerances(rules=rules)) == expected
+
+
+def test_a_class_may_be_stated():
+    """Each for itself; it counts as stated then."""
+    stated = Tolerances(resistor=0.001, capacitor=0.02, inductor=0.05)
+    shares = []
+    for kind in "RCL":
+        element = Element(kind=kind, designator=f"{kind}1", nets=("a", "b"), value=1.0)
+        shares.append(tolerance_of(element, stated))
+    assert shares == [(0.001, True), (0.02, True), (0.05, True)]
+
+
+MOVING = {
+    **{name: CIRCUITS[name] for name in ("low-pass", "Sallen-Key", "difference", "two-stage")},
+    "coil": (
+        "VIN in 0 SIN(0.5 1 20k)\nL1 in a 10m\nR1 a p 1k\nC1 p 0 4.7n\nR2 p 0 10k\nR3 n 0 1k\n"
+        "R4 n out 2k\nXU1 p n vp vn out TL072"
+    ),
+    "two tones that meet": (
+        "V1 a 0 SIN(0 1 1k)\nV2 b 0 SIN(0 0.5 7.3137k)\nR1 a n 10k\nR2 b n 22k\nR3 n out 15k\n"
+        "C3 n out 2.2n\nXU1 0 n vp vn out TL072"
+    ),
+}
+
+
+@pytest.mark.parametrize("name", MOVING)
+def test_derivatives_are_what_a_small_change_does(design, name):
+    """Each element by a hundred-thousandth: both ends of every quantity move as they are said to.
+
+    The circuit with the changed element is solved anew, phase, peak and all.
+    """
+    answers, found = _solved(design, MOVING[name])
+    circuit = design(MOVING[name]).circuit
+    stamps, _ = found.elements
+    assert {stamp.kind for stamp in stamps} >= ({"L"} if name == "coil" else {"R"})
+    for column, stamp in enumerate(stamps):
+        share = 1e-5
+        changed = tuple(
+            msgspec.structs.replace(e, value=e.value * (1 + share))
+            if e.designator == stamp.designator
+            else e
+            for e in circuit.elements
+        )
+        amplifiers = recognise(circuit, catalogue.load(), Settings()).amplifiers
+        fed = feeds(supply_nets(amplifiers), changed, Settings(), amplifiers)
+        prepared = prepare(changed, Settings(), fed)
+        moved = answer(Network(prepared.elements, amplifiers), amplifiers, prepared, {}, {})
+        scale = np.abs(answers.high).max()
+        for ends, before, said in (
+            (moved.high, answers.high, found.high),
+            (moved.low, answers.low, found.low),
+        ):
+            seen = (ends - before) / share
+            assert said[:, column] == pytest.approx(seen, rel=2e-3, abs=2e-4 * scale)
+
+
+def _disturbed(design, cards, nuisance, stated=False):
+    """Return the spread of a circuit whose elements are exact, its amplifier's errors given."""
+    circuit = design(cards).circuit
+    found = recognise(circuit, catalogue.load(), Settings()).amplifiers
+    fed = feeds(supply_nets(found), circuit.elements, Settings(), found)
+    prepared = prepare(circuit.elements, Settings(), fed)
+    network = Network(prepared.elements, found)
+    answers = answer(network, found, prepared, {}, {})
+    exact = frozenset(e.designator for e in circuit.elements)
+    rails = {"VP": (15.0, 0.05, stated), "VN": (-15.0, 0.0, stated), "VX": (1.0, 0.1, False)}
+    made = spread(answers, prepared.elements, exact, Tolerances(), rails, {"XU1": nuisance})
+    return answers, network, made
+
+
+@pytest.mark.parametrize(
+    ("name", "difference", "sizes"),
+    [
+        # 1 mV times eleven; 1 uA through 100 kohm, its fellow flows into ground
+        ("inverting", None, (11e-3, 0.1)),
+        # what the currents may differ by is in either of them
+        ("inverting", 0.2e-6, (11e-3, 0.11)),
+        # 10 kohm at either input: apart they add up, together they cancel but for the rest
+        ("equal", None, (11e-3, 0.11, 0.1)),
+        ("equal", 0.2e-6, (11e-3, 0.01, 0.021)),
+    ],
+)
+def test_offset_and_bias_current_move_the_output(design, name, difference, sizes):
+    """By hand at a noise gain of eleven, each error named by its amplifier."""
+    equal = "RS in p 10k\nVIN in 0 0\nR1 n 0 10k\nR2 n out 100k\nXU1 p n vp vn out TL072"
+    cards = CIRCUITS["inverting"] if name == "inverting" else equal
+    answers, _, made = _disturbed(design, cards, Nuisance(1e-3, 1e-6, difference))
+    q = answers.at(0, "output")
+    assert made.names == (
+        "VP", "offset of XU1", *["bias current of XU1"] * (len(sizes) - 1),
+    )  # fmt: skip
+    assert np.abs(made.high[q, 1:] * made.delta[1:]) == pytest.approx(np.array(sizes), rel=1e-3)
+    assert list(made.error) == [False] + [True] * len(sizes)
+
+
+@pytest.mark.parametrize("stated", [True, False])
+def test_a_rail_moves_what_stands_on_it(design, stated):
+    """A third of the rail at the input: 5 % of 5 V; the entry of b it moves is told for re-solving.
+
+    A rail that is exact, or that no source of the deck holds, is no parameter.
+    """
+    answers, network, made = _disturbed(
+        design, CIRCUITS["rail reference"], Nuisance(0.0, 0.0), stated
+    )
+    q = answers.at(0, "output")
+    assert made.high[q, 0] * made.delta[0] == pytest.approx(0.25, rel=1e-3)
+    assert list(made.stated) == [stated, False, False, False]
+    rail, offset, *bias = made.parameters
+    assert rail.entries == ((network.injections["VP"].row, 15.0),)
+    assert offset.entries == ((network.outputs["XU1"], 1.0),)
+    assert [p.entries for p in bias] == [((network.row(net), 1.0),) for net in ("p", "out")]

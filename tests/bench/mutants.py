@@ -152,11 +152,13 @@ class Trial:
         self.files = {str(mutant.path) for mutant in mutants}
         self.reached: dict[tuple[str, int], set[int]] = defaultdict(set)
         self.took: list[float] = []
+        self.files_of: list[Path] = []
         self.outcomes: list[tuple[Mutant, str]] = []
 
     def pytest_runtestloop(self, session: pytest.Session) -> bool:
         """Learn which test reaches which line, then try each change against its tests."""
         items = session.items
+        self.files_of = [item.path for item in items]
         for number, item in enumerate(items):
             follower = items[number + 1] if number + 1 < len(items) else None
             begun = time.perf_counter()
@@ -198,10 +200,15 @@ class Trial:
             sys.settrace(None)
 
     def _tests(self, mutant: Mutant, killers: Counter[int]) -> list[int]:
-        """Return the tests that reach a change, those first that told many, then the quick ones."""
+        """Return the tests that reach a change, those first that told many, then the quick ones.
+
+        The module's own tests are always among them; of the others the quick ones, while time
+        lasts.
+        """
         found = set().union(*(self.reached[str(mutant.path), line] for line in mutant.lines))
-        chosen, left = [], self.seconds
-        for number in sorted(found, key=lambda n: self.took[n]):
+        chosen = [n for n in found if self.files_of[n].stem == f"test_{mutant.path.stem}"]
+        left = self.seconds
+        for number in sorted(found.difference(chosen), key=lambda n: self.took[n]):
             left -= self.took[number]
             if left < 0:
                 break
