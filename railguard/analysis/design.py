@@ -86,6 +86,7 @@ def analyse(
             )
             for element, match in (*found.unknown, *found.others)
         ),
+        bridges=exempt,
         problems=tuple(problems),
         remarks=tuple(remarks),
     )

@@ -501,7 +501,10 @@ class Unrecognised(msgspec.Struct, frozen=True):
 
 
 class Design(msgspec.Struct, frozen=True, kw_only=True):
-    """Everything the rules may look at."""
+    """Everything the rules may look at.
+
+    bridges  designators of the resistors of sensor bridges: no parts off the shelf
+    """
 
     circuit: Circuit
     settings: Settings
@@ -511,5 +514,6 @@ class Design(msgspec.Struct, frozen=True, kw_only=True):
     packages: tuple[Package, ...]
     stages: tuple[Stage, ...]
     unrecognised: tuple[Unrecognised, ...] = ()
+    bridges: frozenset[str] = frozenset()
     problems: tuple[Problem, ...] = ()
     remarks: tuple[Remark, ...] = ()

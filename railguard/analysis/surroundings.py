@@ -6,7 +6,7 @@ reaches it.
 """
 
 from collections import defaultdict, deque
-from collections.abc import Iterable
+from collections.abc import Iterable, Mapping
 
 import msgspec
 import numpy as np
@@ -256,8 +256,10 @@ def bridge_resistors(
 ) -> frozenset[str]:
     """Return the resistors of bridges: two half-bridges between the same nets, a sensor's own.
 
-    Their mismatch is the measured quantity, so no default tolerance applies to them.
+    Their mismatch is the measured quantity, so no default tolerance applies to them. Where other
+    dividers stand between those nets, the two taps that one instrumentation amplifier compares.
     """
+    amplifiers = tuple(amplifiers)
     resistors = [e for e in elements if e.kind == "R" and e.fitted and e.value]
     ohms = {e.designator: e.value or 0.0 for e in resistors}
     around: dict[str, list[Element]] = defaultdict(list)
@@ -278,8 +280,37 @@ def bridge_resistors(
     for found_halves in halves.values():
         taps = {net for net, _ in found_halves}
         names = {name for _, pair in found_halves for name in pair}
-        if len(taps) == 2 and len(names) == 4 and taps & inputs:
-            values = [ohms[name] for name in names]
-            if max(values) <= BRIDGE_SPREAD * min(values):
-                bridge.update(names)
+        if len(taps) == 2 and len(names) == 4 and taps & inputs and _alike(names, ohms):
+            bridge.update(names)
+            continue
+        for i, (tap, pair) in enumerate(found_halves):
+            for other, fellows in found_halves[i + 1 :]:
+                both = {*pair, *fellows}
+                if (
+                    len(both) == 4
+                    and _alike(both, ohms)
+                    and _compared(tap, other, amplifiers, around)
+                ):
+                    bridge.update(both)
     return frozenset(bridge)
+
+
+def _alike(names: set[str], ohms: Mapping[str, float]) -> bool:
+    values = [ohms[name] for name in names]
+    return max(values) <= BRIDGE_SPREAD * min(values)
+
+
+def _compared(
+    tap: str, other: str, amplifiers: tuple[Amplifier, ...], around: Mapping[str, list[Element]]
+) -> bool:
+    """Tell whether two nets are the inputs of amplifiers that a resistor joins: of two or three."""
+    first = [a for a in amplifiers if a.plus == tap]
+    second = [a for a in amplifiers if a.plus == other]
+    return tap != other and any(
+        _joined(one, two, around) or _joined(two, one, around) for one in first for two in second
+    )
+
+
+def _joined(one: Amplifier, two: Amplifier, around: Mapping[str, list[Element]]) -> bool:
+    ends = {one.minus, one.output}
+    return any(ends & set(e.nets[:2]) for e in around.get(two.minus, ()))

@@ -143,6 +143,8 @@ def judge_reference(stage: Stage, limits: Limits, design: Design) -> Iterator[Ou
     switches = stage.use in ("comparator", "oscillator")
     if stage.use == "unused" or switches or divider is None or design.kind == "bench":
         return
+    if set(divider.elements) <= design.bridges:
+        return  # half of a sensor: a capacitor there would take its signal
     corner = 1 / (2 * math.pi * divider.resistance * divider.bypass) if divider.bypass else None
     if corner is not None and corner <= limits["corner"]:
         return

@@ -170,7 +170,9 @@ def judge_series(subject: Design, limits: Limits, design: Design) -> Iterator[Ou
     """Judge whether a board's values are of a preferred series."""
     if subject.kind != "board":
         return
-    odd = [e for e in subject.circuit.elements if _is_odd(e)]
+    odd = [
+        e for e in subject.circuit.elements if e.designator not in subject.bridges and _is_odd(e)
+    ]
     if not odd:
         return
     named = odd[: int(limits["named"])]
@@ -214,7 +216,7 @@ VALUE_SERIES = Rule(
     judges="Whether the values of a board are of a preferred series, E3 to E192.",
     reason="What is not in a series is not in stock.",
     source="IEC 60063",
-    silent="Benches, whose values are often worked out.",
+    silent="Benches, whose values are often worked out; the arms of a sensor bridge.",
     limits=(
         Limit(
             name="named",
