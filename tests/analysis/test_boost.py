@@ -319,6 +319,27 @@ RL l 0 100
     assert found.output.level == pytest.approx(12 - 2 - drive, abs=0.01)
 
 
+@pytest.mark.parametrize("channel", ["N", "P"])
+def test_a_junction_fet_stands_on_the_other_side_of_its_source(stage, channel):
+    """1 mA with 2 mA/V^2 is 0.707 V beyond the pinch-off of 2 V: 1.293 V against the current."""
+    cards = "XU1 in s vp vn o TL072\nJ1 d o s JX\n"
+    if channel == "N":
+        cards += "VIN in 0 SIN(1 0.5 1)\nRS s 0 1k\nRD vp d 1k\n"
+    else:
+        cards += "VIN vp in SIN(3 0.5 1)\nRS s vp 3k\nRD 0 d 1k\n"
+    found = stage(cards + f".model JX {channel}JF(VTO=-2 BETA=2m)\n")
+    against = 2.0 - math.sqrt(1e-3 / 2e-3)
+    expected = 1.0 - against if channel == "N" else 12.0 + against
+    assert found.output.level == pytest.approx(expected, abs=2e-3)
+
+
+def test_area_and_number_of_transistors_count(stage):
+    """Three of a kind share the current: the junction stands n kT/q ln 3 lower."""
+    alone = stage(SINK + ".model QN NPN(BF=50 IS=1e-14)\n").output.level
+    three = stage(SINK.replace(" QN", " QN 3") + ".model QN NPN(BF=50 IS=1e-14)\n").output.level
+    assert alone - three == pytest.approx(0.02585 * math.log(3), abs=1e-3)
+
+
 def test_the_largest_input_keeps_the_transistor_working(stage):
     """Below zero the emitter has no current left: that is where the input ends."""
     allowed = stage(SINK + NPN).allowed
