@@ -79,24 +79,31 @@ def _spans(
     tolerances: Mapping[str, float],
     noise_gain: Range,
 ) -> tuple[Range, Range]:
-    """Return the ranges of frequency and Q: the extreme-value sum over every part."""
-    moved = np.zeros(2)
+    """Return the ranges of frequency and Q: the extreme-value sum over every part.
+
+    On logarithms, on which the square root of a product is a plane: its ends are exact.
+    """
+    up, down = np.zeros(2), np.zeros(2)
+
+    def add(bumped: tuple[float, float] | None, share: float) -> None:
+        """Take in what one part does, moved by `BUMP`."""
+        if bumped is None:
+            return
+        pull = np.log(np.divide(bumped, nominal)) / np.log1p(BUMP)
+        ends = pull * np.log1p(share), pull * np.log1p(-share)
+        up[:] += np.maximum(*ends)
+        down[:] += np.minimum(*ends)
+
     for element in stage.elements:
         share = tolerances.get(element.designator, 0.0)
-        bumped = stage.natural({element.designator: 1.0 + BUMP}, beta) if share else None
-        if bumped is not None:
-            moved += np.abs(np.subtract(bumped, nominal)) / BUMP * share
+        if share:
+            add(stage.natural({element.designator: 1.0 + BUMP}, beta), share)
     if beta is not None and noise_gain.low is not None and noise_gain.high is not None:
         # What sets the gain moves the Q as well, and stands outside these elements.
-        bumped = stage.natural({}, beta * (1.0 + BUMP))
-        if bumped is not None:
-            share = (noise_gain.high - noise_gain.low) / (noise_gain.high + noise_gain.low)
-            moved += np.abs(np.subtract(bumped, nominal)) / BUMP * share
-    frequency, quality = nominal
-    return (
-        Range(frequency - float(moved[0]), frequency + float(moved[0])),
-        Range(quality - float(moved[1]), quality + float(moved[1])),
-    )
+        share = (noise_gain.high - noise_gain.low) / (noise_gain.high + noise_gain.low)
+        add(stage.natural({}, beta * (1.0 + BUMP)), share)
+    low, high = nominal * np.exp(down), nominal * np.exp(up)
+    return Range(float(low[0]), float(high[0])), Range(float(low[1]), float(high[1]))
 
 
 def _other(element: Element, net: str) -> str:

@@ -1,5 +1,7 @@
 """The input side of a stage: DC paths, common-mode range, differential input."""
 
+from typing import TypedDict
+
 from railguard.analysis.available import Reach, input_reach
 from railguard.analysis.bounds import bound
 from railguard.analysis.stage import Bound, Inputs, Part, Pin, Range, Supply, Unknown
@@ -71,7 +73,7 @@ def inputs_of(
         guaranteed=Range(reaches[False].guaranteed, reaches[True].guaranteed),
         high=bounds[True],
         low=bounds[False],
-        differential=_differential(view) if not working and known else None,
+        **_differential(view) if not working and known else {},
     )
 
 
@@ -81,9 +83,30 @@ def _beyond(rail: float, reach: Reach, upper: bool) -> float:
     return max([rail, *listed]) if upper else min([rail, *listed])
 
 
-def _differential(view: View) -> float:
+class _Difference(TypedDict, total=False):
+    differential: float
+    differential_worst: Range
+
+
+def _differential(view: View) -> _Difference:
+    """Return the most that stands between the inputs of a stage no loop holds, and its ends."""
     plus, minus = view.range("plus"), view.range("minus")
-    return max(abs(plus[1] - minus[0]), abs(minus[1] - plus[0]))
+    spread = view.solution.spread
+    p, m = view.at("plus"), view.at("minus")
+    ways = (
+        (abs(plus[1] - minus[0]), spread.high[p] - spread.low[m]),
+        (abs(minus[1] - plus[0]), spread.high[m] - spread.low[p]),
+    )
+    most, moves = max(ways, key=lambda way: way[0])
+    reach = [float(spread.reach(moved)) for _, moved in ways]
+    own = float(spread.reach(moves))
+    return {
+        "differential": most,
+        "differential_worst": Range(
+            max(most - own, 0.0),
+            max(value + moved for (value, _), moved in zip(ways, reach, strict=True)),
+        ),
+    }
 
 
 def _pin(view: View, quantity: str, rails: frozenset[str]) -> Pin:

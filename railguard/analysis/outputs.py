@@ -4,6 +4,7 @@ import numpy as np
 
 from railguard.analysis.available import Reach, current_reach, output_reach
 from railguard.analysis.bounds import bound
+from railguard.analysis.corners import differences, factors
 from railguard.analysis.stage import Bound, Carrier, Current, Output, Part, Range, Supply, Unknown
 from railguard.analysis.surroundings import heaviest_load, load_capacitance
 from railguard.analysis.view import View
@@ -109,6 +110,7 @@ def output_side(
             unsure=view.unsure("output"),
             exact=view.exact("output", upper, "positive" if upper else "negative"),
         )
+    slew = float(view.answers.slew[q])
     error = float((np.abs(spread.high[q]) * spread.delta * spread.error).sum())
     up, down = reaches[True], reaches[False]
     output = Output(
@@ -123,10 +125,32 @@ def output_side(
         high=bounds[True],
         low=bounds[False],
         frequency=_worst_frequency(view),
-        slew=float(view.answers.slew[q]) if known and view.answers.slew[q] > 0 else None,
+        slew=slew if known and slew > 0 else None,
+        slew_worst=_slew_ends(view, slew) if known and slew > 0 else Range(),
         offset=error if known and device is not None else None,
     )
     return _current(view, current_known, load, carriers if current_known else ()), output
+
+
+def _slew_ends(view: View, slew: float) -> Range:
+    """Return the ends of the steepest slope, of each tone at the frequency where it is steepest.
+
+    A wave that is no sine is taken to grow as its fundamental does.
+    """
+    q, spread, tones = view.at("output"), view.solution.spread, view.answers.tones
+    stamps, delta = spread.elements
+    pulls = np.zeros(len(stamps))
+    for tone in (tone for tone in tones if tone.slew[q] > 0):
+        steep = next(worst for worst in tone.steepest if q in worst.picks)
+        row = int(view.answers.rows[q])
+        adjoint, value = steep.factor.adjoint([row]), steep.x[row]
+        if not value:
+            return Range()
+        change = differences(adjoint, stamps) * differences(steep.x[None, :], stamps)
+        change = change[0] * factors(stamps, 2j * np.pi * steep.hertz)
+        pulls += float(tone.slew[q]) * (change / value).real
+    moved = float(np.abs(pulls) @ delta)
+    return Range(max(slew - moved, 0.0), slew + moved)
 
 
 def _rail_ohms(view: View, upper: bool) -> float:

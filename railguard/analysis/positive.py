@@ -1,7 +1,10 @@
 """What a positive loop is judged by: its thresholds, what drives it, what it feeds."""
 
 import msgspec
+import numpy as np
 
+from railguard.analysis.corners import differences, factors
+from railguard.analysis.network import Complex, Real, Stamp
 from railguard.analysis.stage import Loop, Range
 from railguard.analysis.view import View
 
@@ -32,12 +35,15 @@ def with_thresholds(view: View, loop: Loop, after: list[tuple[str, ...]]) -> Loo
     moved, other = ("minus", "plus") if on_minus else ("plus", "minus")
     away = view.level(other) - view.level(moved)
     entry = _entry(view, moved)
-    share, start = entry if entry is not None else (1.0, view.level(moved))
+    _, share, start = entry if entry is not None else ("", 1.0, view.level(moved))
     drive = moved_minus if on_minus else moved_plus
     at = view.level(moved)
     thresholds = _ordered(
         start + (away - abs(beta) * half) / share, start + (away + abs(beta) * half) / share
     )
+    lower, upper = _moves(view, (moved, other), beta, half, entry)
+    if share < 0:
+        lower, upper = upper, lower
     if drive.low is not None and drive.high is not None:
         drive = _ordered(start + (drive.low - at) / share, start + (drive.high - at) / share)
     feeds = any(
@@ -50,6 +56,8 @@ def with_thresholds(view: View, loop: Loop, after: list[tuple[str, ...]]) -> Loo
         beta_plus=beta,
         capacitor_across_plus=across,
         thresholds=thresholds,
+        lower_worst=_around(thresholds.low, lower),
+        upper_worst=_around(thresholds.high, upper),
         drive=drive,
         switched=switched,
         feeds_linear=feeds,
@@ -81,8 +89,62 @@ def _ordered(a: float, b: float) -> Range:
     return Range(min(a, b), max(a, b))
 
 
-def _entry(view: View, quantity: str) -> tuple[float, float] | None:
-    """Return what an input takes of the one signal that moves it at DC, and that signal's level.
+def _around(value: float | None, moved: float) -> Range:
+    return Range() if value is None else Range(value - moved, value + moved)
+
+
+def _moves(
+    view: View,
+    inputs: tuple[str, str],
+    beta: float,
+    half: float,
+    entry: tuple[str, float, float] | None,
+) -> tuple[float, float]:
+    """Return how far the two thresholds move at the most, V: output at its low and its high limit.
+
+    inputs  the one the signal is on, and the other
+    beta    share of the output at the non-inverting input; half: of its swing, V
+    entry   as of `_entry`
+    """
+    solution, answers, amplifier = view.solution, view.answers, view.amplifier
+    spread, passive = solution.spread, solution.passive
+    stamps, _ = spread.elements
+    width = len(spread.delta)
+    name, share, _ = entry if entry is not None else ("", 1.0, 0.0)
+    moved, other = ((spread.high[q] + spread.low[q]) / 2 for q in map(view.at, inputs))
+    away = view.level(inputs[1]) - view.level(inputs[0])
+    of_beta, of_share = np.zeros(width), np.zeros(width)
+    plus = passive.dc.adjoint([passive.network.row(amplifier.plus)])
+    unit = passive.network.right_hand_side([(amplifier.designator, 1.0)])
+    of_beta[: len(stamps)] = _to_elements(plus, passive.dc.forward(unit), stamps)
+    if entry is not None:
+        at = answers.dc.adjoint([int(answers.rows[view.at(inputs[0])])])
+        drive = answers.network.right_hand_side([(name, 1.0)])
+        of_share[: len(stamps)] = _to_elements(at, answers.dc.forward(drive), stamps)
+    else:
+        moved = np.zeros(width)  # the threshold is that of the pin itself
+    # The limits of the output go with its rails.
+    rails = max(spread.reach(spread.high[view.at(pin)]) for pin in ("positive", "negative"))
+    device = amplifier.match.device
+    offset = (device.offset_voltage.best or 0.0) if device is not None else 0.0
+    apart = (abs(beta) * float(rails) + offset) / abs(share)
+    found = []
+    for sign in (-1.0, 1.0):
+        pull = (other - moved + sign * np.sign(beta) * of_beta * half) / share
+        if entry is not None:
+            pull = pull - (away + sign * abs(beta) * half) / share**2 * of_share
+        found.append(float(spread.reach(pull)) + apart)
+    return found[0], found[1]
+
+
+def _to_elements(adjoint: Complex, solved: Complex, stamps: list[Stamp]) -> Real:
+    """Return the derivative of a level to each element, shape (elements,)."""
+    change = differences(adjoint, stamps) * differences(solved[None, :], stamps)
+    return np.asarray((change[0] * factors(stamps, 0j)).real)
+
+
+def _entry(view: View, quantity: str) -> tuple[str, float, float] | None:
+    """Return the one signal that moves an input at DC, what the input takes of it, and its level.
 
     None where no signal, or more than one, reaches it so: thresholds then stand as at the pin.
     """
@@ -92,7 +154,7 @@ def _entry(view: View, quantity: str) -> tuple[float, float] | None:
         return None
     adjoint = answers.dc.adjoint([row])[0].real
     levels = {drive.injection: drive.value for drive in view.solution.prepared.levels}
-    found = []
+    found: list[tuple[str, float, float]] = []
     for tone in answers.tones:
         if tone.tone.name == own or tone.peaks[view.at(quantity)] <= 0:
             continue
@@ -100,8 +162,8 @@ def _entry(view: View, quantity: str) -> tuple[float, float] | None:
             return None
         name = tone.tone.drives[0][0]
         b = answers.network.right_hand_side([(name, 1.0)]).real
-        found.append((float(adjoint @ b), levels.get(name, 0.0)))
-    if len(found) != 1 or abs(found[0][0]) < LEAST_SHARE:
+        found.append((name, float(adjoint @ b), levels.get(name, 0.0)))
+    if len(found) != 1 or abs(found[0][1]) < LEAST_SHARE:
         return None
     return found[0]
 

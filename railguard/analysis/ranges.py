@@ -51,6 +51,7 @@ class ToneAnswer(msgspec.Struct, frozen=True):
 
     up, down  how far each quantity goes above and below its level; alike for a sine
     peaks     the larger of both
+    steepest  as `worst`, by slope instead of size
     """
 
     tone: Tone
@@ -60,6 +61,7 @@ class ToneAnswer(msgspec.Struct, frozen=True):
     hertz: Real
     slew: Real
     worst: tuple[Worst, ...]
+    steepest: tuple[Worst, ...]
 
 
 class Answers(msgspec.Struct, frozen=True, kw_only=True):
@@ -228,16 +230,21 @@ def _tone(network: Network, tone: Tone, rows: Index, factors: dict[float, Factor
     magnitude = np.abs(values)
     best = np.argmax(magnitude, axis=0)
     peaks = magnitude[best, np.arange(len(rows))]
-    slew = np.max(magnitude * (2 * np.pi * frequencies)[:, None], axis=0)
-    worst = tuple(
-        Worst(
-            hertz=float(frequencies[f]),
-            factor=factors[float(frequencies[f])],
-            x=x[f],
-            picks=np.flatnonzero(best == f),
+    slopes = magnitude * (2 * np.pi * frequencies)[:, None]
+    slew, fastest = np.max(slopes, axis=0), np.argmax(slopes, axis=0)
+
+    def at(places: Index) -> tuple[Worst, ...]:
+        return tuple(
+            Worst(
+                hertz=float(frequencies[f]),
+                factor=factors[float(frequencies[f])],
+                x=x[f],
+                picks=np.flatnonzero(places == f),
+            )
+            for f in sorted(set(places.tolist()))
         )
-        for f in sorted(set(best.tolist()))
-    )
+
+    worst = at(best)
     up = down = peaks
     if tone.wave is not None:
         followed = excursion(network, tone.drives[0][0], tone.wave, tone.mean)
@@ -245,5 +252,12 @@ def _tone(network: Network, tone: Tone, rows: Index, factors: dict[float, Factor
             up, down = picked(followed.up, rows), picked(followed.down, rows)
             peaks, slew = np.maximum(up, down), picked(followed.slew, rows)
     return ToneAnswer(
-        tone=tone, up=up, down=down, peaks=peaks, hertz=frequencies[best], slew=slew, worst=worst
+        tone=tone,
+        up=up,
+        down=down,
+        peaks=peaks,
+        hertz=frequencies[best],
+        slew=slew,
+        worst=worst,
+        steepest=worst if len(frequencies) == 1 else at(fastest),
     )

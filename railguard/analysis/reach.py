@@ -4,6 +4,7 @@ import msgspec
 import numpy as np
 
 from railguard.analysis.corners import differences, factors
+from railguard.analysis.network import Complex, Real
 from railguard.analysis.solve import factor
 from railguard.analysis.stage import Loop, Range
 from railguard.analysis.surroundings import MID_HERTZ
@@ -115,10 +116,12 @@ _LOWEST_CORNER = 1e-4
 _HIGHEST_BAND, _BAND_STEPS = 1e4, 17
 """How far above a signal its pass band is looked for, and in how many steps."""
 _HALVINGS = 24
+_STEP = 1e-3
+"""Share of a frequency over which a slope is taken."""
 
 
-def high_pass_of(view: View) -> float | None:
-    """Return the -3 dB corner that coupling capacitors give on the way to the output, hertz.
+def high_pass_of(view: View) -> tuple[float | None, Range]:
+    """Return the -3 dB corner that coupling capacitors give on the way to the output, and its ends.
 
     Against the pass band, which may lie above the signal: a coupling far too small takes most of
     it. None where no signal is stated, or where the stage passes DC.
@@ -127,7 +130,7 @@ def high_pass_of(view: View) -> float | None:
     moved = [t for t in view.tones if t.peaks[q] > 0 and t.hertz[q] > 0]
     row = int(view.answers.rows[q])
     if not moved or row < 0 or not is_ac_coupled(view):
-        return None
+        return None, Range()
     tone = max(moved, key=lambda t: float(t.peaks[q]))
     network = view.answers.network
     b = network.right_hand_side(tone.tone.drives)
@@ -140,9 +143,38 @@ def high_pass_of(view: View) -> float | None:
     largest = max(sizes)
     target = largest / np.sqrt(2.0)
     low, high = _LOWEST_CORNER, float(above[sizes.index(largest)])
+    top = high
     if size(low) >= target:
-        return None
+        return None, Range()
     for _ in range(_HALVINGS):
         middle = float(np.sqrt(low * high))
         low, high = (middle, high) if size(middle) < target else (low, middle)
-    return float(np.sqrt(low * high))
+    corner = float(np.sqrt(low * high))
+    return corner, _corner_span(view, b, row, corner, top)
+
+
+def _corner_span(view: View, b: Complex, row: int, corner: float, top: float) -> Range:
+    """Return the ends of a corner: where the response falls against that at `top`, hertz.
+
+    On the logarithms of frequency and parameters, on which a product of powers is a plane.
+    """
+    network = view.answers.network
+    stamps, delta = view.solution.spread.elements
+
+    def response(hertz: float) -> tuple[float, Real]:
+        """Return ln |H| and its derivatives."""
+        solved = factor(network, hertz)
+        x, adjoint = solved.forward(b), solved.adjoint([row])
+        change = differences(adjoint, stamps) * differences(x[None, :], stamps)
+        pulls = (change[0] * factors(stamps, 2j * np.pi * hertz) / x[row]).real
+        return float(np.log(abs(x[row]))), pulls
+
+    (here, pull), (_, against) = response(corner), response(top)
+    beyond, _ = response(corner * (1.0 + _STEP))
+    slope = (beyond - here) / np.log1p(_STEP)
+    if slope <= 0:
+        return Range()
+    pulls = -(pull - against) / slope
+    more, less = pulls * np.log1p(delta), pulls * np.log1p(-delta)
+    up, down = np.maximum(more, less).sum(), np.minimum(more, less).sum()
+    return Range(corner * float(np.exp(down)), corner * float(np.exp(up)))

@@ -184,6 +184,7 @@ class Supply(msgspec.Struct, frozen=True, kw_only=True):
 class Output(msgspec.Struct, frozen=True, kw_only=True):
     """The output's range. `level` is its DC level; `slew` the steepest demanded dv/dt, V/s.
 
+    slew_worst  with the tolerances of elements
     rss     the worst range where all tolerances add as roots of squares
     sampled what Monte Carlo samples covered, where some were drawn
     offset  worst DC error at the output from offset and bias of this and all stages before, V
@@ -201,6 +202,7 @@ class Output(msgspec.Struct, frozen=True, kw_only=True):
     low: Bound = Bound(upper=False)
     frequency: float | None = None
     slew: float | None = None
+    slew_worst: Range = Range()
     offset: float | None = None
 
 
@@ -293,6 +295,7 @@ class Inputs(msgspec.Struct, frozen=True, kw_only=True):
     high: Bound = Bound(upper=True)
     low: Bound = Bound(upper=False)
     differential: float | None = None
+    differential_worst: Range = Range()
 
 
 class Feedback(msgspec.Struct, frozen=True, kw_only=True):
@@ -352,6 +355,7 @@ class Loop(msgspec.Struct, frozen=True, kw_only=True):
     margins     phase margin with the most and with nothing of what is not listed, degrees
     thresholds  volts of its signal at which a stage with positive feedback switches; of the pin
                 where more than one signal moves it
+    lower_worst, upper_worst  of each threshold, with resistors, rails and its offset at their ends
     drive       the stated signal at that input, in the terms of `thresholds`
     switched    True where that signal goes well past both: no linear stage could follow it
     """
@@ -378,6 +382,8 @@ class Loop(msgspec.Struct, frozen=True, kw_only=True):
     bridges: tuple[str, ...] = ()
     capacitor_across_plus: str = ""
     thresholds: Range = Range()
+    lower_worst: Range = Range()
+    upper_worst: Range = Range()
     drive: Range = Range()
     switched: bool = False
     feeds_linear: bool = False
@@ -432,6 +438,13 @@ Part = Literal["device", "supply", "output", "current", "input", "bias", "loop",
 class Stage(msgspec.Struct, frozen=True, kw_only=True):
     """One op-amp channel in its surroundings.
 
+    A figure that tolerances move has its ends beside it, in a range named `worst` or `..._worst`.
+    These have none: the largest input `allowed`, which is taken at guaranteed limits already;
+    `Output.offset`, which is a worst value; `Loop.margins`, which are bounds; levels and ranges of
+    one `Pin`, whose ends stand in `Inputs`; `Feedback.current`, whose ends stand in `Current`;
+    frequencies that somebody states; and what the netlist itself says, or its DC resistance:
+    loads, capacitances, `Pin.resistance`, `Feedback`.
+
     designator   as in the netlist, hierarchical: `XCH1.XU2`
     schematic    as on the schematic: `U2`
     device       as written: `TL072CP`
@@ -467,7 +480,9 @@ class Stage(msgspec.Struct, frozen=True, kw_only=True):
     feedback: Feedback = Feedback()
     allowed: Allowed | None = None
     dissipation: float | None = None
+    dissipation_worst: Range = Range()
     junction: float | None = None
+    junction_worst: Range = Range()
     gain: tuple[tuple[str, float], ...] = ()
     transfer: tuple[tuple[str, float], ...] = ()
     transfer_worst: tuple[tuple[str, Range], ...] = ()
@@ -477,6 +492,7 @@ class Stage(msgspec.Struct, frozen=True, kw_only=True):
     ac_coupled: bool = False
     band: Range = Range()
     high_pass: float | None = None
+    high_pass_worst: Range = Range()
     filter: Filter | None = None
     case: Case | None = None
     balance: Balance | None = None

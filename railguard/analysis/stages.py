@@ -8,6 +8,7 @@ import numpy as np
 from railguard.analysis.balance import balance_of
 from railguard.analysis.closing import Bands
 from railguard.analysis.filters import filter_of
+from railguard.analysis.heat import heat_of
 from railguard.analysis.inputs import inputs_of
 from railguard.analysis.loops import OPEN_BETA, Margin, loop_of, with_ends
 from railguard.analysis.outputs import output_side
@@ -38,8 +39,7 @@ from railguard.analysis.stage import (
 )
 from railguard.analysis.supplies import Feed
 from railguard.analysis.surroundings import feedback_of, output_load
-from railguard.analysis.switching import is_given, most_current, most_heat
-from railguard.analysis.thermal import case_of, dissipation, junction, package_heat
+from railguard.analysis.thermal import case_of, junction, package_heat
 from railguard.analysis.topology import instrumentation, topology_of
 from railguard.analysis.unseen import Spoiled
 from railguard.analysis.uses import bridges, worked_out_use
@@ -73,7 +73,14 @@ def finished(
 
     allowed  by designator
     """
-    heat = package_heat(drafts)
+    heat, least, most = (
+        package_heat(drafts, own)
+        for own in (
+            lambda stage: stage.dissipation,
+            lambda stage: stage.dissipation_worst.low,
+            lambda stage: stage.dissipation_worst.high,
+        )
+    )
     names = instrumentation(
         {stage.designator: stage.topology for stage in drafts},
         {stage.designator: stage.after for stage in drafts},
@@ -84,7 +91,11 @@ def finished(
             topology=names[stage.designator],
             allowed=allowed.get(stage.designator),
             dissipation=heat[stage.package],
+            dissipation_worst=Range(least[stage.package], most[stage.package]),
             junction=junction(stage.case, heat[stage.package], settings),
+            junction_worst=Range(
+                *(junction(stage.case, end[stage.package], settings) for end in (least, most))
+            ),
         )
         for stage in drafts
     )
@@ -161,6 +172,7 @@ def _stage(
     outer = frozenset(a.output for a in solution.amplifiers if a.designator in loop.holds)
     balance = balance_of(view, settings.tolerances)
     topology = topology_of(amplifier, solution.ways, loop, rails, outer)
+    corner, corner_ends = high_pass_of(view)
     gains, transfers = gains_of(view), gains_of(view, "A")
     if balance is not None and balance.sense:
         topology = "difference"
@@ -177,13 +189,10 @@ def _stage(
     )
     if filtered is not None and filtered.kind == "band-pass" and len(gains) == 1:
         gains = _in_pass_band(gains, filtered, topology, after[view.k])
-    heat = dissipation(device, supply, output, current, load)
-    if heat is None and use in ("comparator", "oscillator", "unused"):
-        most = most_current(amplifier, solution.ways, supply)
-        heat = most_heat(device, supply, most)
-        if is_given(most, current):
-            unknown.pop("current", None)
-    if heat is None and "output" in unknown:
+    heat = heat_of(view, supply, output, current, load, use)
+    if heat.bounded:
+        unknown.pop("current", None)
+    if heat.watts is None and "output" in unknown:
         unknown["dissipation"] = unknown["output"]
     return Stage(
         designator=name,
@@ -200,7 +209,8 @@ def _stage(
         inputs=inputs,
         loop=loop,
         feedback=feedback,
-        dissipation=heat,
+        dissipation=heat.watts,
+        dissipation_worst=heat.worst,
         gain=tuple((gain.net, gain.value) for gain in gains),
         gain_worst=tuple((gain.net, gain.worst) for gain in gains),
         transfer=tuple((gain.net, gain.value) for gain in transfers),
@@ -209,7 +219,8 @@ def _stage(
         generic=amplifier.match.sort == "generic",
         ac_coupled=is_ac_coupled(view),
         band=band_of(view),
-        high_pass=high_pass_of(view),
+        high_pass=corner,
+        high_pass_worst=corner_ends,
         filter=filtered,
         case=case_of(
             device,

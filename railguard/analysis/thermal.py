@@ -1,8 +1,9 @@
 """Heat: quiescent power, the output stage at its worst, and the junction."""
 
 import re
-from collections.abc import Iterable
+from collections.abc import Callable, Iterable
 
+import msgspec
 import numpy as np
 
 from railguard.analysis.stage import Case, Current, Output, Stage, Supply
@@ -81,17 +82,32 @@ def offset_current(device: Device, settings: Settings) -> float | None:
     return listed * bias_current(device, settings) / bias
 
 
-def package_heat(stages: Iterable[Stage]) -> dict[str, float | None]:
+def package_heat(
+    stages: Iterable[Stage], own: Callable[[Stage], float | None]
+) -> dict[str, float | None]:
     """Return the power of each package, W: all its channels at their worst together.
 
+    own  of one channel
     None where one of them is not known. A channel that is not in the netlist counts as idle.
     """
     heat: dict[str, float | None] = {}
     for stage in stages:
-        before = heat.get(stage.package, 0.0)
-        own = stage.dissipation
-        heat[stage.package] = None if before is None or own is None else before + own
+        before, more = heat.get(stage.package, 0.0), own(stage)
+        heat[stage.package] = None if before is None or more is None else before + more
     return heat
+
+
+def at_ends(supply: Supply) -> tuple[Supply, Supply] | None:
+    """Return a stage's supply where its rails are nearest together, and farthest apart."""
+    positive, negative = supply.positive_worst, supply.negative_worst
+    if positive.low is None or positive.high is None:
+        return None
+    if negative.low is None or negative.high is None:
+        return None
+    return (
+        msgspec.structs.replace(supply, positive=positive.low, negative=negative.high),
+        msgspec.structs.replace(supply, positive=positive.high, negative=negative.low),
+    )
 
 
 PINS = {1: (5, 8), 2: (8, 10), 4: (14, 16)}

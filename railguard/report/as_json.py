@@ -155,6 +155,15 @@ class FilterOut(msgspec.Struct):
     gain_spread: EndsOut | None
 
 
+class ThresholdsOut(msgspec.Struct):
+    """Where a stage with positive feedback switches, in volts of its signal."""
+
+    low: float | None
+    high: float | None
+    low_spread: EndsOut | None
+    high_spread: EndsOut | None
+
+
 class SpreadOut(msgspec.Struct):
     """The ends of the stage's figures of the same names; null where a figure has none."""
 
@@ -164,6 +173,10 @@ class SpreadOut(msgspec.Struct):
     bandwidth: EndsOut | None
     phase_margin: EndsOut | None
     loop_gain: EndsOut | None
+    slew: EndsOut | None
+    high_pass: EndsOut | None
+    dissipation: EndsOut | None
+    junction: EndsOut | None
 
 
 class StageOut(msgspec.Struct):
@@ -186,9 +199,13 @@ class StageOut(msgspec.Struct):
     bandwidth: float | None
     phase_margin: float | None
     loop_gain: float | None
+    slew: float | None
+    high_pass: float | None
     dissipation: float | None
+    junction: float | None
     gain: list[GainOut]
     filter: FilterOut | None
+    thresholds: ThresholdsOut | None
     spread: SpreadOut
     file: str | None
     line: int | None
@@ -370,7 +387,15 @@ def _filter(found: Filter | None) -> FilterOut | None:
     )
 
 
-def _spread(loop: Loop) -> SpreadOut:
+def _thresholds(loop: Loop) -> ThresholdsOut | None:
+    low, high = _finite(loop.thresholds.low), _finite(loop.thresholds.high)
+    if low is None and high is None:
+        return None
+    return ThresholdsOut(low, high, _ends(loop.lower_worst), _ends(loop.upper_worst))
+
+
+def _spread(stage: Stage) -> SpreadOut:
+    loop = stage.loop
     return SpreadOut(
         noise_gain=_ends(loop.in_band_worst),
         noise_gain_dc=_ends(loop.noise_gain_worst),
@@ -378,6 +403,10 @@ def _spread(loop: Loop) -> SpreadOut:
         bandwidth=_ends(loop.crossover_worst),
         phase_margin=_ends(loop.phase_margin_worst),
         loop_gain=_ends(loop.loop_gain_worst),
+        slew=_ends(stage.output.slew_worst),
+        high_pass=_ends(stage.high_pass_worst),
+        dissipation=_ends(stage.dissipation_worst),
+        junction=_ends(stage.junction_worst),
     )
 
 
@@ -411,10 +440,14 @@ def _stage(stage: Stage) -> StageOut:
         bandwidth=_finite(loop.crossover),
         phase_margin=_finite(loop.phase_margin),
         loop_gain=_finite(loop.loop_gain),
+        slew=_finite(output.slew),
+        high_pass=_finite(stage.high_pass),
         dissipation=_finite(stage.dissipation),
+        junction=_finite(stage.junction),
         gain=_gains(stage),
         filter=_filter(stage.filter),
-        spread=_spread(loop),
+        thresholds=_thresholds(loop),
+        spread=_spread(stage),
         file=file,
         line=line,
     )

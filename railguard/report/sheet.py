@@ -15,7 +15,7 @@ from railguard.analysis.corners import DEFAULT_CAPACITOR, DEFAULT_RESISTOR
 from railguard.analysis.stage import Bound, Current, Rail, Range, Stage
 from railguard.devices.model import Device, Figure
 from railguard.report.sheet_basis import bases, figure_basis, phase_basis, why
-from railguard.report.words import USUAL_DIGITS, digits_apart, near
+from railguard.report.words import USUAL_DIGITS, digits_apart, near, with_ends
 from railguard.reviewing import DesignReview, Review
 from railguard.rules.finding import Finding
 from railguard.rules.wording import listed, of_gain, of_volts, origin
@@ -148,16 +148,21 @@ def _stage(design: DesignReview, stage: Stage) -> Iterator[Row]:
     yield _ranges(row, "output", "V", stage.output, stage, "output")
     yield _cleaned(row("output current", "A", **_current(stage)))
     yield _ranges(row, "inputs", "V", stage.inputs, stage, "input")
+    yield from _thresholds(stage, row)
+    if stage.high_pass is not None:
+        corner = _solved(stage.high_pass, stage.high_pass_worst)
+        yield row("coupling corner", "Hz", text="-3 dB, behind capacitors in series", **corner)
     yield from _filter(stage, row)
     yield from _dynamics(stage, row)
     yield row(
         "dissipation",
         "W",
-        worst_high=stage.dissipation,
+        demand_high=stage.dissipation,
         text=_junction(stage),
-        worst_basis=why(stage, "dissipation")
+        demand_basis=why(stage, "dissipation")
         or f"whole package, every channel at its worst level; supply current "
         f"{figure_basis(device.supply_current if device else Figure())}",
+        **_ends(stage.dissipation_worst, "rails and output range at their ends"),
         guaranteed_basis=f"thermal resistance {origin(device.theta_basis)}"
         if device is not None and stage.junction is not None
         else "",
@@ -255,7 +260,7 @@ def _solved(value: float | None, ends: Range, told: str = "") -> dict[str, float
     return {
         "demand_high": value,
         **_ends(ends, TOLERANCES),
-        "demand_basis": told or "netlist, solved",
+        "demand_basis": told or ("netlist, solved" if value is not None else ""),
     }
 
 
@@ -274,6 +279,21 @@ def _speeds(device: Device | None) -> str:
     return f"{TOLERANCES}{', gain-bandwidth typical and guaranteed' if both else ''}"
 
 
+def _thresholds(stage: Stage, row: _Maker) -> Iterator[Row]:
+    loop, inputs = stage.loop, stage.inputs
+    basis = f"{TOLERANCES} of resistors and rails, and offset"
+    for name, value, ends in (
+        ("upper threshold", loop.thresholds.high, loop.upper_worst),
+        ("lower threshold", loop.thresholds.low, loop.lower_worst),
+    ):
+        if value is not None:
+            told = {**_solved(value, ends), **_ends(ends, basis)}
+            yield row(name, "V", text="volts of the signal that moves it", **told)
+    if inputs.differential is not None:
+        found = _solved(inputs.differential, inputs.differential_worst)
+        yield row("input difference", "V", **found)
+
+
 def _filter(stage: Stage, row: _Maker) -> Iterator[Row]:
     found = stage.filter
     if found is None:
@@ -288,6 +308,9 @@ def _filter(stage: Stage, row: _Maker) -> Iterator[Row]:
     yield row("gain in pass band", "V/V", **_solved(found.gain, found.gain_worst))
 
 
+_CLOSES = "where the loop closes"
+
+
 def _dynamics(stage: Stage, row: _Maker) -> Iterator[Row]:
     loop, device = stage.loop, stage.family
     speed = device.gain_bandwidth if device is not None else Figure()
@@ -298,6 +321,7 @@ def _dynamics(stage: Stage, row: _Maker) -> Iterator[Row]:
         "slew rate",
         "V/s",
         demand_high=stage.output.slew,
+        **_ends(stage.output.slew_worst, TOLERANCES),
         available_high=slew.typical,
         guaranteed_high=slew.guaranteed,
         demand_basis=why(stage, "output") or origin(stage.output.high.demand_basis),
@@ -317,9 +341,12 @@ def _dynamics(stage: Stage, row: _Maker) -> Iterator[Row]:
     for where, value, ends in (
         ("at DC", loop.noise_gain_dc, loop.noise_gain_worst),
         (at or "in band", loop.noise_gain, loop.in_band_worst),
-        ("where the loop closes", loop.noise_gain_crossover, loop.at_crossover_worst),
+        (_CLOSES, loop.noise_gain_crossover, loop.at_crossover_worst),
     ):
-        yield row("noise gain", "V/V", text=where, **_solved(value, ends, told))
+        if value is None and where == _CLOSES:
+            continue
+        text = where if value is not None else f"{where}: not worked out"
+        yield row("noise gain", "V/V", text=text, **_solved(value, ends, told))
     yield row(
         "loop gain",
         "V/V",
@@ -382,7 +409,8 @@ def _negative(value: float | None) -> float | None:
 def _junction(stage: Stage) -> str:
     if stage.junction is None:
         return ""
-    return f"junction at {stage.junction:.0f} °C in the case of most thermal resistance"
+    at = with_ends(stage.junction, stage.junction_worst, "°C")
+    return f"junction at {at} in the case of most thermal resistance"
 
 
 def _rails(design: DesignReview, stage: Stage) -> list[Rail]:

@@ -2,6 +2,7 @@
 
 import math
 
+import msgspec
 import pytest
 
 INVERTING = "VIN in 0 SIN(0 0.5 1k)\nR1 in n 10k\nR2 n out 100k\nXU1 0 n vp vn out TL072"
@@ -55,10 +56,12 @@ resistor = "0 %"
 
 
 def test_filter_of_two_equal_resistors(stage):
-    """Frequency ~ (R1 R2 C1 C2)^-1/2: 11 %; Q ~ (C1 / C2)^1/2 and flat in equal resistors: 10 %."""
+    """Frequency ~ (R1 R2 C1 C2)^-1/2, Q ~ (C1 / C2)^1/2 and flat in equal resistors: exact ends."""
     found = stage(SALLEN_KEY).filter
-    assert found.frequency_worst.span / 2 == pytest.approx(0.11 * found.frequency, rel=2e-3)
-    assert found.q_worst.span / 2 == pytest.approx(0.10 * found.q, rel=2e-3)
+    assert found.frequency_worst.low == pytest.approx(found.frequency / (1.01 * 1.1), rel=1e-3)
+    assert found.frequency_worst.high == pytest.approx(found.frequency / (0.99 * 0.9), rel=1e-3)
+    assert found.q_worst.low == pytest.approx(found.q * math.sqrt(0.9 / 1.1), rel=1e-3)
+    assert found.q_worst.high == pytest.approx(found.q * math.sqrt(1.1 / 0.9), rel=1e-3)
 
 
 def test_q_follows_the_resistors_that_set_the_gain(stage):
@@ -90,6 +93,94 @@ def test_transfer_of_a_transimpedance_stage(stage):
     assert net == same
     assert abs(nominal) == pytest.approx(1e6, rel=1e-3)
     assert worst.span / 2 == pytest.approx(0.01 * abs(nominal), rel=1e-3)
+
+
+def test_slew_rate_of_a_gain(stage):
+    """5 V at 1 kHz: 31.4 V/ms, 2 % either way."""
+    output = stage(INVERTING).output
+    assert output.slew == pytest.approx(2 * math.pi * 1e3 * 5, rel=1e-3)
+    assert output.slew_worst.low == pytest.approx(output.slew * 0.98, rel=1e-3)
+    assert output.slew_worst.high == pytest.approx(output.slew * 1.02, rel=1e-3)
+
+
+def test_slew_rate_behind_a_low_pass_counts_where_it_is_steepest(stage):
+    """A band up to five times the corner: the swing is largest at DC, the slope at the top."""
+    cards = "R1 in p 10k\nC1 p 0 10n\nXU1 p out vp vn out TL072"
+    top = 5 / (2 * math.pi * 1e-4)
+    output = stage(cards, f'[signals]\n"in" = {{ peak = 1.0, to = {top} }}').output
+    assert output.slew == pytest.approx(2 * math.pi * top / math.sqrt(26), rel=1e-3)
+    # d ln|H| / d ln RC = -25/26 there; 1 % and 10 %.
+    assert output.slew_worst.span / 2 == pytest.approx(output.slew * 0.11 * 25 / 26, rel=1e-3)
+
+
+def test_slew_rate_of_two_tones(design):
+    """1 V at 1 kHz times ten, 1 V at 10 kHz times one: each by its own resistor."""
+    cards = (
+        "V1 a 0 SIN(0 0.1 1k)\nV2 b 0 SIN(0 0.1 10k)\nR1 a n 10k tol=5%\nR2 b n 100k tol=1%\n"
+        "RF n out 100k tol=0%\nXU1 0 n vp vn out TL072"
+    )
+    output = design(cards).stages[0].output
+    first, second = 2 * math.pi * 1e3 * 1.0, 2 * math.pi * 1e4 * 0.1
+    assert output.slew == pytest.approx(first + second, rel=1e-2)
+    moved = 0.05 * first + 0.01 * second
+    assert output.slew_worst.span / 2 == pytest.approx(moved, rel=0.02)
+
+
+def test_dissipation_at_the_ends_of_the_rails(stage):
+    """An idle follower: quiescent current times the supply, 5 % either way."""
+    found = stage("R1 p 0 10k\nXU1 p out vp vn out TL071")
+    for figure, worst in (
+        (found.dissipation, found.dissipation_worst),
+        (found.junction - 25, msgspec.structs.replace(
+            found.junction_worst, low=found.junction_worst.low - 25,
+            high=found.junction_worst.high - 25,
+        )),
+    ):  # fmt: skip
+        assert worst.low == pytest.approx(0.95 * figure, rel=1e-3)
+        assert worst.high == pytest.approx(1.05 * figure, rel=1e-3)
+
+
+def test_corner_of_a_coupling(stage):
+    """1 / (2 pi RC): exact ends."""
+    found = stage("VIN in 0 SIN(0 1 1k)\nC1 in p 100n\nR1 p 0 100k\nXU1 p out vp vn out TL072")
+    assert found.high_pass == pytest.approx(1 / (2 * math.pi * 1e-2), rel=1e-3)
+    assert found.high_pass_worst.low == pytest.approx(found.high_pass / (1.01 * 1.1), rel=2e-3)
+    assert found.high_pass_worst.high == pytest.approx(found.high_pass / (0.99 * 0.9), rel=2e-3)
+
+
+@pytest.mark.parametrize(
+    ("cards", "of"),
+    [
+        # The divider holds beta of the output; the signal is on the other input.
+        ("VIN in 0 SIN(0 2 100)\nR1 p 0 10k\nR2 p out 100k\nXU1 p in vp vn out TL072",
+         lambda r1, r2, out: out * r1 / (r1 + r2)),
+        # The signal comes through R1 against the output through R2.
+        ("VIN in 0 SIN(0 2 100)\nR1 p in 10k\nR2 p out 100k\nXU1 p 0 vp vn out TL072",
+         lambda r1, r2, out: -out * r1 / r2),
+    ],
+)  # fmt: skip
+def test_thresholds_at_the_ends(stage, cards, of):
+    """Schmitt triggers: every corner of 1 % resistors and 5 % rails, the offset beside it."""
+    found = stage(cards)
+    loop = found.loop
+    offset = found.family.offset_voltage.best
+    ends = []
+    for limit, rail in ((13.5, 15.0), (-13.5, -15.0)):  # 1.5 V of drop without load
+        values = [
+            of(10e3 * a, 100e3 * b, limit + c * rail)
+            for a in (0.99, 1.01) for b in (0.99, 1.01) for c in (-0.05, 0.05)
+        ]  # fmt: skip
+        ends.append((of(10e3, 100e3, limit), min(values), max(values)))
+    scale = abs(of(10e3, 100e3, 1.0)) / abs(loop.beta_plus)
+    for nominal, low, high in ends:
+        threshold, worst = min(
+            ((loop.thresholds.low, loop.lower_worst), (loop.thresholds.high, loop.upper_worst)),
+            key=lambda pair: abs(pair[0] - nominal),
+        )
+        assert threshold == pytest.approx(nominal, rel=0.02)
+        span = high - low + 2 * offset * scale
+        assert worst.span == pytest.approx(span, rel=0.03)
+        assert worst.low < threshold < worst.high
 
 
 @pytest.mark.parametrize("cards", [INVERTING, SALLEN_KEY])

@@ -127,12 +127,16 @@ def test_an_offset_current_that_says_nothing(offset, bias):
     assert offset_current(device, Settings()) is None
 
 
+def _watts(stage):
+    return stage.dissipation
+
+
 def test_a_package_has_the_heat_of_its_channels():
     """Together, each package for itself; one channel that is not known makes the package so."""
     watts = {"XU1A": 0.1, "XU1B": 0.2, "XU2A": 0.3, "XU2B": None, "XU3A": None, "XU3B": 0.1}
     stages = [made(name, package=name[1:3], dissipation=heat) for name, heat in watts.items()]
-    assert package_heat(stages) == {"U1": pytest.approx(0.3), "U2": None, "U3": None}
-    assert package_heat([]) == {}
+    assert package_heat(stages, _watts) == {"U1": pytest.approx(0.3), "U2": None, "U3": None}
+    assert package_heat([], _watts) == {}
 
 
 def test_the_junction_stands_above_the_hottest_ambient():

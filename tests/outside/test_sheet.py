@@ -138,7 +138,7 @@ source = { title = "figures of the example" }
 POWER_FIGURES = [
     Cell("output", "demand_low", -6.0, 1e-4, "V"),
     Cell("output current", "demand_low", -3.3e-3, 1e-3, "A"),  # 3.0 mA load, 0.3 mA feedback
-    Cell("dissipation", "worst_high", 44.7e-3, 5e-3, "W"),  # 30 V * 0.5 mA + 9 V * 3.3 mA
+    Cell("dissipation", "demand_high", 44.7e-3, 5e-3, "W"),  # 30 V * 0.5 mA + 9 V * 3.3 mA
 ]
 
 CASES = [

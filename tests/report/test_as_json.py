@@ -54,8 +54,8 @@ def test_keys_stand_in_the_promised_order(report):
     assert list(design["stages"][0]) == [
         "designator", "device", "catalogue", "package", "topology", "supply", "output", "current",
         "input", "input_allowed", "dc_loop", "noise_gain", "noise_gain_dc", "noise_gain_crossover",
-        "bandwidth", "phase_margin", "loop_gain", "dissipation", "gain", "filter", "spread",
-        "file", "line",
+        "bandwidth", "phase_margin", "loop_gain", "slew", "high_pass", "dissipation", "junction",
+        "gain", "filter", "thresholds", "spread", "file", "line",
     ]  # fmt: skip
 
 
