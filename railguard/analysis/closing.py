@@ -175,10 +175,22 @@ def closings(network: Network, off: Off, seen: Mapping[int, Seen]) -> dict[int, 
     for hertz, members in _groups({k: sight.hertz for k, sight in seen.items()}).items():
         solved = _Solved(network, off, hertz)
         for k in members:
-            closing = _closing(solved, k, seen[k])
+            with _beyond_numbers():
+                closing = _closing(solved, k, seen[k])
             if closing is not None:
                 found[k] = closing
     return found
+
+
+def _beyond_numbers() -> np.errstate:
+    """Let what is beyond all numbers be none, in silence: `_range` leaves it out."""
+    return np.errstate(all="ignore")
+
+
+def _range(low: float, high: float) -> Range:
+    """Return a range; an empty one where an end is no number."""
+    low, high = float(low), float(high)
+    return Range(low, high) if np.isfinite(low) and np.isfinite(high) else Range()
 
 
 class Bands:
@@ -193,8 +205,9 @@ class Bands:
         """Return the ends of amplifier number `k` at a frequency; None where it has no loop."""
         if hertz not in self._solved:
             self._solved[hertz] = _Solved(self._network, self._off, hertz)
-        loop = self._solved[hertz].loop(k)
-        return None if loop is None else _in_band(loop)
+        with _beyond_numbers():
+            loop = self._solved[hertz].loop(k)
+            return None if loop is None else _in_band(loop)
 
 
 def _groups(hertz: Mapping[int, float]) -> dict[float, list[int]]:
@@ -298,7 +311,10 @@ class _Loop:
         # (M + U D W')^-1 = N - N U Q W' N with Q = (1 + D W' N U)^-1 D and N = M^-1.
         unity = np.eye(len(picks))
         system = unity + coefficient[:, :, None] * _across(back, left)[None, :, :]
-        rank = np.linalg.solve(system, coefficient[:, :, None] * unity)
+        try:
+            rank = np.linalg.solve(system, coefficient[:, :, None] * unity)
+        except np.linalg.LinAlgError:  # a corner without an answer
+            rank = np.full(system.shape, np.nan, dtype=np.complex128)
         x = self._x - (rank @ w) @ forward.T
         a = self._a - (u @ rank) @ back
         z = self._z - (u @ rank) @ w
@@ -420,11 +436,11 @@ def _closing(solved: _Solved, k: int, seen: Seen) -> Closing | None:
     return Closing(
         hertz=nominal.hertz,
         margin=margin,
-        hertz_worst=Range(hertz[1], hertz[0]),
-        margin_worst=Range(*(margin + float(np.degrees(ends[e])) for e in (-1, -2)))
+        hertz_worst=_range(hertz[1], hertz[0]),
+        margin_worst=_range(*(margin + float(np.degrees(ends[e])) for e in (-1, -2)))
         if seen.sure
         else Range(),
-        bare_worst=Range(hertz[-1], hertz[-2]),
+        bare_worst=_range(hertz[-1], hertz[-2]),
     )
 
 
@@ -510,6 +526,6 @@ def _in_band(loop: _Loop) -> InBand:
     speed = gain_bandwidth(amplifier) or np.inf
     bare = -float(np.log(np.hypot(1.0 / open_loop_gain(amplifier), hertz / speed)))
     return InBand(
-        loop_gain=Range(float(np.exp(value - less)), float(np.exp(value + more))),
-        noise_gain=Range(float(np.exp(bare - value - up)), float(np.exp(bare - value + down))),
+        loop_gain=_range(np.exp(value - less), np.exp(value + more)),
+        noise_gain=_range(np.exp(bare - value - up), np.exp(bare - value + down)),
     )

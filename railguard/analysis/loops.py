@@ -116,8 +116,9 @@ def open_loop(amplifier: Amplifier, hertz: Real) -> Complex:
 
 def _open_loop_at(amplifier: Amplifier, *hertz: float | None) -> list[float | None]:
     """Return |A| at some frequencies; None where one is not known."""
-    known = np.array([np.nan if f is None else f for f in hertz])
-    return [float(a) if np.isfinite(a) else None for a in np.abs(open_loop(amplifier, known))]
+    return [
+        None if f is None else float(np.abs(open_loop(amplifier, np.array([f])))[0]) for f in hertz
+    ]
 
 
 def sweep(network: Network, tops: Sequence[float], dc: Real) -> LoopSweep:

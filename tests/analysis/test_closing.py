@@ -285,3 +285,21 @@ def test_no_sample_of_a_random_network_leaves_its_ends(seed):
             assert worst.low - slack <= values.min()
             assert values.max() <= worst.high + slack
             assert np.ptp(values) > 0.3 * worst.span
+
+
+@pytest.mark.filterwarnings("error")
+@pytest.mark.parametrize("share", ["99.9%", "50%", "0%"])
+def test_a_tolerance_beyond_reason_is_no_fault(stage, share):
+    """A loop that stops closing on the way has no ends; its nominal figures stand."""
+    own = device(rest=f'[tolerances]\nresistor = "{share}"\ncapacitor = "{share}"')
+    loop = stage(LOADED, own).loop
+    assert loop.crossover == pytest.approx(closed(R1, R2, CL, GBW)[0], rel=1e-6)
+    for worst, nominal in (
+        (loop.crossover_worst, loop.crossover),
+        (loop.phase_margin_worst, loop.phase_margin),
+        (loop.loop_gain_worst, loop.loop_gain),
+    ):
+        assert (worst.low is None) == (worst.high is None)
+        if worst.low is not None:
+            slack = 1e-9 * abs(nominal)
+            assert worst.low - slack <= nominal <= worst.high + slack
