@@ -141,7 +141,7 @@ def _bipolar(element: Element, model: Model | None) -> Bipolar | str:
     if not (math.isfinite(gain) and gain > 0):
         return f"whose model gives a current gain of {gain:g}"
     saturation = given.get("is")
-    area = _area(element) * element.parameters.get("m", 1.0)
+    area = area_of(element) * element.parameters.get("m", 1.0)
     usable = saturation is not None and saturation > 0 and area > 0
     collector, base, emitter = element.nets[:3]
     return Bipolar(
@@ -158,7 +158,7 @@ def _bipolar(element: Element, model: Model | None) -> Bipolar | str:
     )
 
 
-def _area(element: Element) -> float:
+def area_of(element: Element) -> float:
     """Return how many times the model's area a device has: named, or a number behind the model."""
     word = element.text.split()[0] if element.text.split() else ""
     plain = re.fullmatch(r"\d+(\.\d*)?", word)
@@ -179,7 +179,7 @@ def _field_effect(element: Element, model: Model | None) -> FieldEffect | str:
     if element.kind == "J":
         # SPICE writes a JFET's law without the half, and its threshold alike for both channels.
         threshold, factor = given.get("vto"), 2.0 * given.get("beta", 0.0)
-        factor *= _area(element)
+        factor *= area_of(element)
     else:
         threshold, factor = given.get("vto"), given.get("kp", 0.0)
         threshold = sign * threshold if threshold is not None else None

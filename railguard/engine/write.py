@@ -12,6 +12,7 @@ from typing import TYPE_CHECKING, Any
 
 import msgspec
 
+from railguard.analysis.transistors import area_of
 from railguard.circuit.model import GROUND, Element, Model
 from railguard.engine.semiconductors import model_for
 from railguard.engine.waves import number, source_text
@@ -240,10 +241,18 @@ def _semiconductor(deck: _Deck, element: Element) -> str:
         return "neither the netlist nor its order code says which polarity it has"
     nodes = [deck.node(net) for net in nets[:wanted]]
     sizes: dict[str, Any] = {}
-    for ours, theirs in (("area", "area"), ("w", "width"), ("l", "length")):
-        size = element.parameters.get(ours)
-        if size is not None and size > 0 and (ours == "area") is (element.kind != "M"):
-            sizes[theirs] = number(size)
+    many = element.parameters.get("m", 1.0)
+    if element.kind != "M":
+        area = area_of(element) * many
+        if area > 0 and area != 1.0:
+            sizes["area"] = number(area)
+    else:
+        for ours, theirs in (("w", "width"), ("l", "length")):
+            size = element.parameters.get(ours)
+            if size is not None and size > 0:
+                sizes[theirs] = number(size)
+        if many >= 2:
+            sizes["multiplier"] = round(many)
     getattr(deck.netlist, element.kind)(deck.name(element.kind), *nodes, model=model, **sizes)
     return ""
 

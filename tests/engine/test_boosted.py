@@ -34,10 +34,27 @@ BOOSTED = {
     "MOSFET": "VIN in 0 SIN(1 0.6 10)\nXU1 in n vp vn o TL072\nRG o g 220\nM1 d g s 0 MN\n"
     "RF s n 1k\nCF n o 1n\nRS s 0 10\nRD vp d 39\n.model MN NMOS(VTO=2 KP=1)",
 }
+BOOSTED |= {
+    "three transistors as one": BOOSTED["sink"].replace("e QN\n", "e QN 3\n"),
+    "four MOSFETs as one": BOOSTED["MOSFET"].replace("0 MN\n", "0 MN m=4\n"),
+}
 CURRENT = 0.03
 """Share of its peak, with a gain that is constant in both."""
 JUNCTION = 0.16
 """V: 0.7 V as practice, where SPICE's IS of 1e-16 A gives 0.8 V and more; curves as tangents."""
+
+
+def test_size_counts_alike_in_both():
+    """Area and number move the output by as much here as there."""
+    for plain, large in (("sink", "three transistors as one"), ("MOSFET", "four MOSFETs as one")):
+        levels = []
+        for name in (plain, large):
+            design = review(f"station\n{BOOSTED[name]}\n{RAILS}").designs[0].design
+            ((stage, done),) = held_against(design)
+            levels.append((stage.output.level, done.level))
+        ours, theirs = (a - b for a, b in zip(*levels, strict=True))
+        assert ours == pytest.approx(theirs, abs=2e-3)
+        assert ours > 0.02
 
 
 def held_against(design):
