@@ -2,7 +2,8 @@
 
 The loop is broken at one amplifier with all others active, so outer loops, balanced loops and
 composite amplifiers are judged as they work. A transistor inside a loop is taken at its
-small-signal sign (follower +, common emitter -); it gives the loop its sign, not its numbers.
+small-signal sign (follower +, common emitter -): that gives the loop its sign. Its numbers come
+from the line of one that is known to work (`analysis.lined`).
 """
 
 from collections.abc import Iterable, Mapping, Sequence
