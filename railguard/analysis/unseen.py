@@ -169,7 +169,7 @@ def _leaving(element: Element, network: Network, told: set[str]) -> list[Unseen]
         found.append(
             Unseen(
                 sort="load",
-                why=f"net {net} leaves the sheet at {element.designator}",
+                why=_leaves(net, element),
                 add=f'[signals] "{net}" or [loads] "{net}"',
                 rows=((row, 1.0),),
                 volts=False,
@@ -177,6 +177,18 @@ def _leaving(element: Element, network: Network, told: set[str]) -> list[Unseen]
             )
         )
     return found
+
+
+def _leaves(net: str, element: Element) -> str:
+    """Say where a net goes that is not followed."""
+    if element.kind in ("S", "W"):
+        return (
+            f"net {net} goes to the switch {element.designator}, whose position the netlist does "
+            "not tell"
+        )
+    if element.kind in ("X", "ic", "opaque"):
+        return f"net {net} goes to {element.designator}, which is not worked out"
+    return f"net {net} leaves the sheet at {element.designator}"
 
 
 def _across(answers: Answers, a: str, b: str) -> tuple[float, float]:

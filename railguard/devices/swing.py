@@ -38,6 +38,10 @@ class _Known(NamedTuple):
     condition: str
 
 
+NOTHING = 1e-12
+"""A; what arithmetic leaves of no current."""
+
+
 def drop(points: Iterable[SwingPoint], amps: float, supply: float | None = None) -> Drop:
     """Return the drop to a rail while the output gives `amps` (A, not negative) at that rail.
 
@@ -52,6 +56,7 @@ def drop(points: Iterable[SwingPoint], amps: float, supply: float | None = None)
     a figure taken from another supply than half to twice the actual one counts as from memory.
     """
     known = tuple(points)
+    amps = amps if amps > NOTHING else 0.0
     typical = _read(known, amps, supply, _typical)
     guaranteed = _read(known, amps, supply, _guaranteed)
     if typical and guaranteed and guaranteed.drop < typical.drop:

@@ -63,9 +63,14 @@ def _noise_gain_gap(stage: Stage) -> Unknown | None:
         return None
     if stage.family.stable_gain.best is None:
         return missing_figure(stage, "least stable gain", "stable_gain")
-    if stage.loop.noise_gain_crossover is None:
+    if stage.loop.noise_gain_crossover is not None:
+        return None
+    if stage.family.gain_bandwidth.best is None:
         return missing_figure(stage, "gain-bandwidth product", "gain_bandwidth")
-    return None
+    return stage.unknown.get("output", NOT_FOLLOWED)
+
+
+NOT_FOLLOWED = Unknown("where its loop closes could not be worked out", "--engine ngspice")
 
 
 def _lead(stage: Stage, wanted: float) -> str:
@@ -110,7 +115,11 @@ def judge_phase_margin(stage: Stage, limits: Limits, design: Design) -> Iterator
         return
     margin, wanted = _margin(stage, limits["wanted"]), limits["wanted"]
     gap = None
-    if margin is None and stage.family is not None:
+    family = stage.family
+    if margin is None and family is not None and loop.crossover is None:
+        known = family.gain_bandwidth.best is not None
+        gap = stage.unknown.get("output", NOT_FOLLOWED) if known else None
+    if margin is None and family is not None and gap is None:
         gap = Unknown(
             f"what {device(stage)} does to the phase here is not listed: gain-bandwidth product, "
             "output resistance or input capacitance",

@@ -118,3 +118,19 @@ def test_inputs_tied_to_rails_and_ground_drive_nothing():
     assert uses == {"XU1A": "linear", "XU1B": "unused", "XU1C": "unused", "XU1D": "unused"}
     assert not [f for f in design.findings if f.severity in ("critical", "major", "minor")]
     assert not missed
+
+
+def test_a_switch_and_a_device_are_named_for_what_they_are():
+    """Neither leaves the sheet: the one has a position, the other an inside, nobody tells."""
+    text = (
+        "gain switch\nVP vdd 0 5\nC1 vdd 0 100n\nVIN in 0 SIN(1 0.1 10)\n"
+        "XU1 in n vdd 0 out MCP6001\n"
+        "R1 out n 9.1k\nR2 n 0 1k\n{more}\n"
+    )
+    for more, words in (
+        ("S1 n x c 0 SW\nR3 x 0 1k\nVC c 0 5\n.model SW SW(RON=1)", "goes to the switch S1, whose"),
+        ("XU9 out out 0 vdd DG419", "goes to XU9, which is not worked out"),
+        ("J1 out 0 CONN", "leaves the sheet at J1"),
+    ):
+        (design,) = review(text.format(more=more), plugins=False).designs
+        assert any(words in note.why for note in design.not_checked), more

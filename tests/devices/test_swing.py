@@ -33,6 +33,12 @@ def test_a_lighter_load_than_any_listed_gains_nothing():
     assert found.guaranteed_basis == "catalogue"
 
 
+def test_what_arithmetic_leaves_of_no_current_drops_nothing():
+    """A rail-to-rail output without load stands at its rail, not 8e-18 V from it."""
+    points = (SwingPoint(0.0, 0.0, 0.05), SwingPoint(1e-3, 0.15))
+    assert drop(points, 5e-17).typical == 0.0
+
+
 def test_beyond_the_heaviest_load_the_last_slope_goes_on_from_memory():
     """Beyond the heaviest load the last slope goes on from memory."""
     found = drop(TWO, 9e-3)

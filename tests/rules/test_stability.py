@@ -2,7 +2,7 @@
 
 import pytest
 
-from railguard.analysis.stage import Current, Feedback, Loop, Range
+from railguard.analysis.stage import Current, Feedback, Loop, Range, Unknown
 from railguard.rules.feedback.size import HIGH
 from railguard.rules.stability import LOAD_CAPACITANCE, NOISE_GAIN, PHASE_MARGIN, TRANSIMPEDANCE
 from tests.rules.stages import (
@@ -57,7 +57,8 @@ def test_noise_gain_of_what_is_not_known_is_listed():
     """An unlisted least gain, an unknown crossover or device are not checked."""
     bare = changed(FAMILY, stable_gain=figure())
     assert "stable_gain" in open_points(NOISE_GAIN, closing_at(1.0, bare))[0].add
-    assert "gain_bandwidth" in open_points(NOISE_GAIN, closing_at(None))[0].add
+    slow = changed(FAMILY, gain_bandwidth=figure())
+    assert "gain_bandwidth" in open_points(NOISE_GAIN, closing_at(None, slow))[0].add
     assert len(open_points(NOISE_GAIN, closing_at(1.0, None))) == 1
     assert outcomes(NOISE_GAIN, closing_at(1.0, use="comparator")) == []
 
@@ -102,6 +103,17 @@ def test_phase_margin_at_a_corner(nominal, low, severity):
         assert one.corner == ("worst-case" if at_corner else "nominal")
         assert one.limit == (low if at_corner else nominal)
         assert ("at a corner of the tolerances" in one.message) == at_corner
+
+
+@pytest.mark.parametrize("rule", [NOISE_GAIN, PHASE_MARGIN])
+def test_a_loop_that_is_not_followed_blames_no_data_sheet(rule):
+    """With its figures listed the device is not what is missing."""
+    why = Unknown("it rests on the transistor Q1", "--engine ngspice")
+    blind = stage(loop=Loop(dc="negative"), unknown={"output": why})
+    assert [p.why for p in open_points(rule, blind)] == [why.why]
+    (point,) = open_points(rule, stage(loop=Loop(dc="negative")))
+    assert "catalogue" not in point.why
+    assert "listed" not in point.why
 
 
 def test_the_remedy_fits_the_cause():
