@@ -9,7 +9,7 @@ from railguard.redline.scene import Candidate, Scene, all_of, with_value
 from railguard.rules.compose import stage_named
 from railguard.rules.finding import Finding
 from railguard.rules.relations import upstream
-from railguard.rules.remedies import level_amplified, own_gain
+from railguard.rules.remedies import fed_both_ways, level_amplified, own_gain
 from railguard.units import si
 
 STEPS = (1.0, 0.97, 0.94, 0.9, 0.86, 0.8, 0.7, 0.55, 0.35)
@@ -121,7 +121,7 @@ def _lowered(
 
 def _raised(stage: Stage, factors: tuple[float, ...], scene: Scene) -> Iterator[Candidate]:
     """Raise the resistors that bring the signal in, or set the gain from the other side."""
-    if stage.topology == "difference":
+    if stage.topology == "difference" or fed_both_ways(stage, scene.design):
         return  # one of them alone would cost the balance
     own = set(stage.feedback.elements)
     inputs = [e for e in scene.on(stage.inputs.minus.net, "R") if e.designator not in own]
@@ -168,6 +168,8 @@ def scaling_resistors(stage: Stage, scene: Scene) -> tuple[Element, ...]:
         _lead, back, _first, fellow = stage.balance.elements
         pair = tuple(e for d in (back, fellow) if (e := scene.elements.get(d)))
         return pair if len(pair) == 2 and all(e.value and e.fitted for e in pair) else ()
+    if fed_both_ways(stage, scene.design):
+        return ()
     own = [e for d in stage.feedback.elements if (e := scene.elements.get(d))]
     resistors = [e for e in own if e.kind == "R" and e.value and e.fitted]
     if not resistors or len(resistors) > 2:

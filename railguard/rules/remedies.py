@@ -3,7 +3,7 @@
 import math
 
 from railguard.analysis.stage import Balance, Bound, Design, Stage
-from railguard.circuit.model import Element
+from railguard.circuit.model import GROUND, Element
 from railguard.units import preferred, si
 
 RAIL_STEP = 0.5
@@ -170,13 +170,41 @@ def smaller_gain(stage: Stage, factor: float, design: Design) -> str:
     if stage.topology == "difference" and stage.balance is not None:
         return f"{words}{_both(stage.balance, factor, design)}"
     resistor = _single_feedback_resistor(stage, design)
-    if resistor is None or resistor.value is None:
+    if resistor is None or resistor.value is None or fed_both_ways(stage, design):
         return words
-    wanted = _feedback_for(stage.topology, resistor.value, gain, target)
+    noise_gain = stage.loop.noise_gain_dc
+    if stage.topology == "non-inverting" and noise_gain is not None and noise_gain >= ONE:
+        gain = noise_gain  # what stands before the input divides, and stays
+    wanted = _feedback_for(stage.topology, resistor.value, gain, gain * factor)
     if wanted is None or wanted <= 0:
         return words
     new = si(fit(wanted, "down"), "Ω")
     return f"{words} ({resistor.designator} = {new} instead of {si(resistor.value, 'Ω')})"
+
+
+def fed_both_ways(stage: Stage, design: Design) -> bool:
+    """Tell whether resistors lead the output to the non-inverting input as well.
+
+    In a current pump the ratios on both sides are one: no resistor is changed alone.
+    """
+    out, plus, minus = stage.output.net, stage.inputs.plus.net, stage.inputs.minus.net
+    stiff = {GROUND, minus, *(rail.net for rail in design.rails)} - {out}
+    around: dict[str, list[str]] = {}
+    for element in design.circuit.elements:
+        if element.kind == "V":
+            stiff |= set(element.nets[:2]) - {out}
+        elif element.kind == "R" and element.fitted:
+            for one, other in (element.nets[:2], element.nets[1::-1]):
+                around.setdefault(one, []).append(other)
+    seen, queue = {plus}, [plus] if plus not in stiff and out != minus else []
+    while queue:
+        for net in around.get(queue.pop(), ()):
+            if net == out:
+                return True
+            if net not in seen and net not in stiff:
+                seen.add(net)
+                queue.append(net)
+    return False
 
 
 def _both(balance: Balance, factor: float, design: Design) -> str:

@@ -6,6 +6,7 @@ from railguard.analysis.stage import Loop, Output, Pair, Range
 from railguard.devices.model import SwingPoint
 from railguard.rules.headroom.ranges import INPUT, OUTPUT
 from tests.rules.stages import (
+    ELEMENTS,
     FAMILY,
     bound,
     changed,
@@ -16,6 +17,7 @@ from tests.rules.stages import (
     low,
     open_points,
     pin,
+    resistor,
     single,
     stage,
 )
@@ -237,6 +239,21 @@ def test_a_gain_that_makes_the_level_as_well(one, words):
     """What the gain multiplies counts from where its ground leg goes."""
     (found,) = findings(OUTPUT, one, design(one, elements=()))
     assert found.remedy == words
+
+
+def test_a_divider_before_the_input_stays_as_it_is():
+    """A third of the signal times 11: of 3.67 the resistor makes only the 11, 11 * 9.5 / 11."""
+    (found,) = findings(OUTPUT, asked(11.0, -3.0, gain=(("in", 3.67),), family=TO_THE_RAILS))
+    assert "from 3.67 to at most 3.17 (R2 = 8.2 kΩ instead of 10 kΩ)" in found.remedy
+
+
+def test_a_current_pump_names_no_resistor():
+    """What leads back to both inputs keeps its ratios, or it is no current source any more."""
+    one = asked(11.0, -3.0, family=TO_THE_RAILS)
+    pump = design(one, elements=(*ELEMENTS, resistor("R3", 1e3, "out", "load"),
+                                 resistor("R4", 10e3, "load", "in")))  # fmt: skip
+    (found,) = findings(OUTPUT, one, pump)
+    assert found.remedy.startswith("Lower the gain from 11 to at most 9.5, or ")
 
 
 def test_an_inverting_stage_wants_a_reference_where_ground_is_one():
