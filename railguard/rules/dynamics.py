@@ -119,7 +119,8 @@ def judge_slew(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome
         f"{si(broken.limit, 'V/s')} {note}, {tail}.",
         nets=(stage.output.net,),
         remedy=f"Fit a device of at least {si(limits['factor'] * slew, 'V/s')}, or lower the "
-        f"amplitude or the band by {si(max(limits['factor'] * slew / broken.limit, 1.0), '')}.",
+        f"amplitude or the band to {percent(min(broken.limit / (limits['factor'] * slew), 1.0))} "
+        "of what it is.",
         source=sheet(stage, broken),
     )
 

@@ -193,7 +193,7 @@ def _output_remedy(
     load = ""
     if broken.margin < 0 and reached_unloaded(stage, broken.demand, bound.upper):
         load = "lighten its load"
-    rail_words = other_rail(stage, bound.upper, -broken.margin, both)
+    rail_words = other_rail(stage, bound.upper, _missing(bound, broken), both)
     other = ""
     precise = bool(broken.at_corner and _moved_by_offset(bound))
     if not (precise or load or gain or shift or rail_words or device):
@@ -203,6 +203,14 @@ def _output_remedy(
     blocked = blocked_leg(stage, design)
     better = "fit a device of less offset voltage" if precise else ""
     return sentence(better, blocked, load, gain, shift, rail_words, device, other)
+
+
+def _missing(bound: Bound, broken: Breach) -> float:
+    """Return what a rail must make room for: up to what is sure to be reached, not to the rail."""
+    best = bound.guaranteed if bound.guaranteed is not None else bound.typical
+    if best is None or broken.at_corner or bound.demand is None:
+        return -broken.margin
+    return max(-broken.margin, bound.demand - best if bound.upper else best - bound.demand)
 
 
 def _moved_by_offset(bound: Bound) -> bool:

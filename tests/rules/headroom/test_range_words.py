@@ -24,7 +24,8 @@ from tests.rules.stages import (
 
 TO_THE_RAILS = changed(FAMILY, rail_to_rail_output=True, rail_to_rail_input=True)
 STUCK = "All of its range lies beyond, so it is stuck there and passes no signal."
-# What is sure to be reached is 9.5 V: a gain of 11 * 9.5 / 11, so R2 of 8.5 kΩ, the next below.
+# What is sure to be reached is 9.5 V, 2.5 V below the rail: a gain of 11 * 9.5 / 11, so R2 of
+# 8.5 kΩ, the next below; a rail of 11 V + 2.5 V.
 GAIN = "Lower the gain from 11 to at most 9.5 (R2 = 8.2 kΩ instead of 10 kΩ)"
 CLOSER = "fit a device whose output comes closer to the rail"
 
@@ -141,19 +142,19 @@ def test_what_is_said_of_an_output(one, message):
     [
         (
             asked(11.0, -3.0),
-            f"{GAIN}, or raise the positive rail to at least 12.5 V, or {CLOSER}.",
+            f"{GAIN}, or raise the positive rail to at least 13.5 V, or {CLOSER}.",
         ),
         (
             asked(3.0, -11.0),
-            f"{GAIN}, or take the negative rail down to at least -12.5 V, or {CLOSER}.",
+            f"{GAIN}, or take the negative rail down to at least -13.5 V, or {CLOSER}.",
         ),
         (
             asked(11.0, -11.0),
-            f"{GAIN}, or move the rails out to at least ±12.5 V, or {CLOSER}.",
+            f"{GAIN}, or move the rails out to at least ±13.5 V, or {CLOSER}.",
         ),
         (
             asked(11.0, -3.0, family=TO_THE_RAILS),
-            f"{GAIN}, or raise the positive rail to at least 12.5 V.",
+            f"{GAIN}, or raise the positive rail to at least 13.5 V.",
         ),
         (asked(9.48, -3.0), f"{CLOSER.capitalize()}."),
         (asked(3.0, -9.48), f"{CLOSER.capitalize()}."),
@@ -161,13 +162,13 @@ def test_what_is_said_of_an_output(one, message):
         (
             asked(11.5, 11.0, level=11.2, inputs=inputs(plus=pin("in", level=11.2 / 11))),
             "Lower the gain from 11 to at most 9.09 (R2 = 7.5 kΩ instead of 10 kΩ), or move the "
-            "output's level (11.2 V) below 10.5 V, or raise the positive rail to at least 13 V, "
+            "output's level (11.2 V) below 10.5 V, or raise the positive rail to at least 14 V, "
             f"or {CLOSER}.",
         ),
         (
             asked(-11.0, -11.5, level=-11.2, gain=(("a", 1.0), ("b", 2.0))),
             "Move the output's level (-11.2 V) above -10.5 V, or take the negative rail down to "
-            f"at least -13 V, or {CLOSER}.",
+            f"at least -14 V, or {CLOSER}.",
         ),
         (
             asked(
@@ -189,13 +190,13 @@ def test_what_is_said_of_an_output(one, message):
                 inputs=inputs(plus=pin("in", level=1.0)),
             ),
             "Lower the gain from 11 to at most 8.9 (R2 = 7.5 kΩ instead of 10 kΩ), or raise the "
-            "positive rail to at least 13 V.",
+            "positive rail to at least 14 V.",
         ),
         # a level on the limit is not outside, but no gain helps there
         (
             asked(11.5, 10.0, level=10.5, inputs=inputs(plus=pin("in", level=10.5))),
             "Move the output's level (10.5 V) below 9.5 V, or raise the positive rail to at least "
-            f"13 V, or {CLOSER}.",
+            f"14 V, or {CLOSER}.",
         ),
         # no device comes past its rail
         (

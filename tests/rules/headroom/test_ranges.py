@@ -127,7 +127,7 @@ def test_the_remedy_names_a_resistor_to_buy():
     assert "lower the gain from 11 to at most 8.86 (R2 = 7.5 kΩ instead of 10 kΩ)" in (
         found.remedy[0].lower() + found.remedy[1:]
     )
-    assert "raise the positive rail to at least 13.5 V" in found.remedy
+    assert "raise the positive rail to at least 14.5 V" in found.remedy
 
 
 def test_no_rail_beyond_the_device_is_proposed():
