@@ -331,8 +331,8 @@ def with_ends(loop: Loop, own_at_dc: Range, bands: Bands, k: int, *, local: bool
     if loop.dc != "negative":
         return loop
     at_dc = own_at_dc
-    if not local and not loop.holds and not _holds(own_at_dc, loop.noise_gain_dc):
-        # Other amplifiers have a share in it: two followers that feed each other's dividers.
+    if not local and not _holds(own_at_dc, loop.noise_gain_dc):
+        # Other amplifiers have a share in it: each feeds the other's divider, or one holds it.
         held = bands.at(k, 0.0)
         at_dc = held.noise_gain if held is not None else Range()
     hertz = _noise_gain_hertz(loop)

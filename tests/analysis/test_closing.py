@@ -55,14 +55,14 @@ def transmission(hertz, r1, r2, load, gbw=GBW):
     return a * seen / (seen + RO) * at_input / (r2 + at_input)
 
 
-def closed(*values):
+def closed(*values, of=transmission):
     """Return (hertz, degrees) where |T| is one, by bisection."""
     low, high = 1e3, 1e8
     for _ in range(80):
         middle = np.sqrt(low * high)
-        above = abs(transmission(middle, *values)) >= 1
+        above = abs(of(middle, *values)) >= 1
         low, high = (middle, high) if above else (low, middle)
-    return low, 180 + np.degrees(np.angle(transmission(low, *values)))
+    return low, 180 + np.degrees(np.angle(of(low, *values)))
 
 
 def vertices(*speeds):
@@ -132,27 +132,34 @@ def test_noise_gain_at_the_crossover_leaves_its_own_speed_out(stage):
     assert loop.at_crossover_worst.high == pytest.approx(max(gains), rel=1e-3)
 
 
+def transimpedance(hertz, cf):
+    """Return T of a transimpedance stage by hand: 100 kilohm and CF, 20 pF and CIN, RO of 200."""
+    s = 2j * np.pi * hertz
+    back, down = 1 / 100e3 + s * cf, s * (20e-12 + CIN)
+    through = back * down / (back + down)
+    return 1 / (1 / A0 + 1j * hertz / 50e6) / (1 + 200 * through) * back / (back + down)
+
+
 def test_a_margin_that_turns_round_has_its_extreme_inside(stage):
-    """Best near the nominal CF of a transimpedance stage: both ends of CF are worse."""
+    """Just below the CF of most margin: both ends of 20 % are worse than what lies between."""
+    tried = np.linspace(0.5e-12, 12e-12, 400)
+    peak = tried[np.argmax([closed(cf, of=transimpedance)[1] for cf in tried])]
+    assert tried[0] < peak < tried[-1]
+    nominal = 0.95 * peak
+    around = [
+        closed(cf, of=transimpedance)[1] for cf in np.linspace(0.8 * nominal, 1.2 * nominal, 201)
+    ]
+    assert max(around[0], around[-1]) < max(around)
+    own = device(rest='[tolerances]\nresistor = "0 %"')
+    own = own.replace(f"{RO}", "200.0").replace(f"{GBW}", "50e6")
     cards = (
-        "IPD 0 n SIN(0 1u 1k)\nRF n out 100k\nCF n out {cf}p tol=20%\nCT n 0 20p tol=0.1%\n"
+        f"IPD 0 n SIN(0 1u 1k)\nRF n out 100k\nCF n out {nominal} tol=20%\nCT n 0 20p tol=0%\n"
         "XU1 0 n vp vn out LISTED"
     )
-    own = device(rest='[tolerances]\nresistor = "0 %"').replace(f"{RO}", "200.0")
-    own = own.replace("5000000.0", "50e6")
-    tried = np.arange(0.8, 12.0, 0.1)
-    margins = [stage(cards.format(cf=cf), own).loop.phase_margin for cf in tried]
-    peak = tried[int(np.argmax(margins))]
-    assert tried[0] < peak < tried[-1], "the margin has a maximum"
-    loop = stage(cards.format(cf=0.95 * peak), own).loop
-    around = [
-        stage(cards.format(cf=cf), own).loop.phase_margin
-        for cf in np.linspace(0.95 * peak * 0.8, 0.95 * peak * 1.2, 41)
-    ]
-    # CT moves it by next to nothing.
+    loop = stage(cards, own).loop
     span = max(around) - min(around)
     assert loop.phase_margin_worst.high == pytest.approx(max(around), abs=0.05 * span)
-    assert loop.phase_margin_worst.low == pytest.approx(min(around), abs=0.05 * span)
+    assert loop.phase_margin_worst.low == pytest.approx(min(around), abs=0.005 * span)
 
 
 def test_an_unlisted_figure_leaves_no_ends(stage):
@@ -174,6 +181,18 @@ def test_noise_gain_where_two_amplifiers_share_a_network(design):
     assert loop.noise_gain_dc == pytest.approx(11, rel=1e-3)
     assert loop.noise_gain_worst.low == pytest.approx(min(ratios), rel=2e-3)
     assert loop.noise_gain_worst.high == pytest.approx(max(ratios), rel=2e-3)
+
+
+def test_noise_gain_of_a_stage_that_another_one_holds(design):
+    """A composite amplifier's outer one, over the inner follower: 1 + 9 k / 1 k."""
+    cards = (
+        "VIN in 0 SIN(0 0.1 1k)\nR1 n 0 1k\nR2 n out 9k\nXU1 in n vp vn a TL072\n"
+        "XU2 a out vp vn out NE5532\nRL out 0 2k"
+    )
+    loop = next(s for s in design(cards).stages if s.designator == "XU1").loop
+    assert loop.holds == ("XU2",)
+    assert loop.noise_gain_worst.low == pytest.approx(1 + 9 * 0.99 / 1.01, rel=2e-3)
+    assert loop.noise_gain_worst.high == pytest.approx(1 + 9 * 1.01 / 0.99, rel=2e-3)
 
 
 @pytest.mark.skipif(shutil.which("ngspice") is None, reason="ngspice is not installed")
@@ -214,22 +233,22 @@ def ratios(networks, index, hertz):
 
 def sampled(networks, index, near):
     """Return (hertz, degrees) where a loop closes last in each network."""
-    grid = np.geomspace(near / 5, near * 5, 60)
+    grid = np.geomspace(near / 4, near * 4, 25)
     sizes = np.array([np.abs(ratios(networks, index, np.full(len(networks), f))) for f in grid])
     falls = (sizes[:-1] >= 1) & (sizes[1:] < 1)
     last = len(grid) - 2 - np.argmax(falls[::-1], axis=0)
     low, high = grid[last], grid[last + 1]
-    for _ in range(30):
+    for _ in range(20):
         middle = np.sqrt(low * high)
         above = np.abs(ratios(networks, index, middle)) >= 1
         low, high = np.where(above, middle, low), np.where(above, high, middle)
     return low, 180 + np.degrees(np.angle(ratios(networks, index, low)))
 
 
-SAMPLES = 120
+SAMPLES = 60
 
 
-@pytest.mark.parametrize("seed", range(10))
+@pytest.mark.parametrize("seed", range(8))
 def test_no_sample_of_a_random_network_leaves_its_ends(seed):
     """Three amplifiers over a ladder and a bridge: bandwidth and phase margin of each.
 
