@@ -112,6 +112,8 @@ def noise_gain_span(view: View, loop: Loop) -> Range:
     return Range(1.0 / (beta + moved), 1.0 / (beta - moved))
 
 
+_NOTHING = 1e-12
+"""V; what arithmetic leaves at an output that no signal moves."""
 _LOWEST_CORNER = 1e-4
 _HIGHEST_BAND, _BAND_STEPS = 1e4, 17
 """How far above a signal its pass band is looked for, and in how many steps."""
@@ -141,6 +143,8 @@ def high_pass_of(view: View) -> tuple[float | None, Range]:
     above = np.geomspace(float(tone.hertz[q]), _HIGHEST_BAND * float(tone.hertz[q]), _BAND_STEPS)
     sizes = [size(float(hertz)) for hertz in above]
     largest = max(sizes)
+    if largest < _NOTHING:
+        return None, Range()
     target = largest / np.sqrt(2.0)
     low, high = _LOWEST_CORNER, float(above[sizes.index(largest)])
     top = high

@@ -5,6 +5,9 @@ import math
 import msgspec
 import pytest
 
+from railguard.reviewing import review
+from tests.faults.generated import designs
+
 INVERTING = "VIN in 0 SIN(0 0.5 1k)\nR1 in n 10k\nR2 n out 100k\nXU1 0 n vp vn out TL072"
 SALLEN_KEY = (
     "VIN in 0 SIN(0 1 1k)\nR1 in a 11.25k\nR2 a p 11.25k\nC1 a out 2n\nC2 p 0 1n\n"
@@ -231,3 +234,11 @@ def test_a_multiple_feedback_low_pass_has_its_gain_at_dc(stage):
         "XU1 0 n vp vn out TL072"
     ).filter
     assert (found.kind, found.gain) == ("low-pass", pytest.approx(2.0, rel=1e-6))
+
+
+def test_what_no_signal_moves_has_no_corner(recwarn):
+    """A reference's buffer under a coupled electrode: its output moves by 1e-20 V at most."""
+    (made,) = designs(1, 70025)
+    stages = review(made.text, plugins=False).designs[0].design.stages
+    assert next(s.high_pass for s in stages if s.designator == "XU1A") is None
+    assert not [w for w in recwarn if issubclass(w.category, RuntimeWarning)]
