@@ -26,6 +26,7 @@ def centred(finding: Finding, scene: Scene) -> Iterator[Candidate]:
     yield from _divided(stage, target, scene)
     yield from _sourced(stage, target, scene)
     yield from _moved(stage, target, scene)
+    yield from _lifted(stage, target, scene)
 
 
 REFERENCE_STEP = 0.05
@@ -111,3 +112,21 @@ def _moved(stage: Stage, target: float, scene: Scene) -> Iterator[Candidate]:
             what=f"tie {tie.designator} to {level.net} instead of {far}: {level.words}",
             choice="the middle of the output's range leaves a signal as much room on both sides",
         )
+
+
+def _lifted(stage: Stage, target: float, scene: Scene) -> Iterator[Candidate]:
+    """Give an inverting stage whose non-inverting input is on ground a level there."""
+    if not stage.topology.startswith("inverting") or stage.inputs.plus.net != GROUND:
+        return
+    near = next(iter(scene.on(stage.inputs.minus.net, "R")), None)
+    scene.forget()
+    level = divider(stage, scene, near, target) if near is not None else None
+    edit = scene.pin(stage, "plus", level.net) if level is not None else None
+    if level is None or edit is None:
+        return
+    yield Candidate(
+        edits=tuple(sorted((edit, *joined(list(level.edits))))),
+        what=f"put the non-inverting input of {stage.schematic} on {level.net} instead of ground: "
+        f"{level.words}",
+        choice="the middle of the output's range leaves a signal as much room on both sides",
+    )

@@ -54,14 +54,15 @@ class Substitute(msgspec.Struct, frozen=True, kw_only=True):
 
 
 class Proposal(msgspec.Struct, frozen=True, kw_only=True):
-    """Changed and added cards that cure one finding, proved by a review of the changed deck.
+    """Changed and added cards that cure or ease one finding, proved by a review of the new deck.
 
     finding    what is cured
     what       the change in one sentence: `C46 of 100 nF from vpp to 0.`
     reason     one line for the hunk: the rule, and why this value
     choice     where several values would do: what speaks for this one, else ""
     edits      in the order of the file, none overlapping another
-    cures      every finding that is gone with it, the one above among them
+    cures      every finding that is gone with it, the one above among them unless it is eased
+    left       what is left of the one above, milder, where no card cures it whole
     instead    devices that would do without the change, where it costs gain; best fit first
     """
 
@@ -71,6 +72,7 @@ class Proposal(msgspec.Struct, frozen=True, kw_only=True):
     choice: str = ""
     edits: tuple[Edit, ...]
     cures: tuple[Finding, ...]
+    left: tuple[Finding, ...] = ()
     instead: tuple[Substitute, ...] = ()
 
 

@@ -27,11 +27,15 @@ SMALL_GAIN = 1e-3
 
 
 class Proved(msgspec.Struct, frozen=True):
-    """A change that cures: the deck with it, its review, and the findings that are gone."""
+    """A change that cures: the deck with it, its review, and the findings that are gone.
+
+    left  what is left of the finding, milder; none where it is gone
+    """
 
     source: Source
     review: DesignReview
     cures: tuple[Finding, ...]
+    left: tuple[Finding, ...] = ()
 
 
 def every(findings: tuple[Finding, ...]) -> Iterator[Finding]:
@@ -80,14 +84,20 @@ def changed(
 def prove(
     review: DesignReview, source: Source, finding: Finding, candidate: Candidate
 ) -> Proved | None:
-    """Review a deck with a candidate's edits; None where it is no cure."""
+    """Review a deck with a candidate's edits; None where it is no cure.
+
+    A range that cannot work and then can, but for a little at one end, is eased.
+    """
     made = changed(review, source, candidate.edits)
     if made is None:
         return None
     after, found = made
     rules = {r.name: r for r in (*RULES, *installed(review).rules)}
     now = tuple(every(found.findings))
-    if any(same(finding, f, rules) or _fewer(finding, f) for f in now):
+    left = tuple(f for f in now if same(finding, f, rules))
+    if not all(_eased(finding, f) for f in left):
+        return None
+    if any(_fewer(finding, f) for f in now if f not in left):
         return None
     before = tuple(every(review.findings))
     if any(not _known(f, before, rules) for f in now) or _left_open(review, found):
@@ -95,7 +105,14 @@ def prove(
     if not candidate.regains and not _gains_kept(review.design, found.design):
         return None
     gone = tuple(b for b in before if not any(same(b, f, rules) for f in now))
-    return Proved(after, found, gone)
+    return Proved(after, found, gone, left)
+
+
+def _eased(before: Finding, now: Finding) -> bool:
+    """Tell whether a finding on an output's range was grave and is a matter of its last end."""
+    if before.rule != "headroom-output" or before.severity not in ("critical", "major"):
+        return False
+    return now.severity in ("minor", "remark")
 
 
 def _fewer(finding: Finding, now: Finding) -> bool:

@@ -85,20 +85,31 @@ def _cure(
     source: Source,
     names: Iterable[str],
     effort: _Effort,
+    *,
+    easing: bool = False,
 ) -> _Cured | None:
+    """Return the first change that cures a finding; the first that eases it where none does.
+
+    easing  True: what eases it will do
+    """
+    eased: _Cured | None = None
     scene = Scene(review.design, source, names)
     tried: set[tuple[object, ...]] = set()
     for candidate in candidates(finding, scene):
         if candidate.edits in tried:
             continue
         if len(tried) >= TRIED or not effort.spend():
-            return None
+            return eased
         tried.add(candidate.edits)
         given = tuple(scene.given)
         proved = prove(review, source, finding, candidate)
-        if proved is not None:
-            return _Cured(_proposal(finding, candidate, proved), proved, given, candidate.regains)
-    return None
+        if proved is None or (proved.left and (eased is not None or not easing)):
+            continue
+        made = _Cured(_proposal(finding, candidate, proved), proved, given, candidate.regains)
+        if not proved.left:
+            return made
+        eased = made
+    return eased
 
 
 def _proposal(finding: Finding, candidate: Candidate, proved: Proved) -> Proposal:
@@ -110,6 +121,7 @@ def _proposal(finding: Finding, candidate: Candidate, proved: Proved) -> Proposa
         choice=f"{candidate.choice[:1].upper()}{candidate.choice[1:]}." if candidate.choice else "",
         edits=candidate.edits,
         cures=proved.cures,
+        left=proved.left,
     )
 
 
@@ -141,7 +153,7 @@ def redline(review: DesignReview, source: Source | None = None) -> Redline:
                 break
             given_up, moved = [], False  # what was in the way may be gone
             continue
-        cured = _cure(finding, now, deck, names, effort)
+        cured = _cure(finding, now, deck, names, effort, easing=True)
         if cured is None:
             given_up.append(finding)
             continue
@@ -165,9 +177,12 @@ def redline(review: DesignReview, source: Source | None = None) -> Redline:
 
 
 def _with_devices(cured: _Cured, review: DesignReview) -> Proposal:
-    """Name the devices that would do without a change that costs gain."""
+    """Name the devices that would do without a change that costs gain, or a source's resistance."""
     proposal = cured.proposal
-    if not cured.regains or proposal.finding.rule not in RANGES:
+    costs = proposal.finding.rule == "bias-current-error" or (
+        cured.regains and proposal.finding.rule in (*RANGES, "headroom-offset")
+    )
+    if not costs:
         return proposal
     return msgspec.structs.replace(proposal, instead=substitutes(proposal.finding, review)[0])
 

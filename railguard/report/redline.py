@@ -60,7 +60,11 @@ def _proposal(number: int, proposal: Proposal, width: int) -> Iterator[tuple[str
     yield f"{number:<{_HANG}}{head}", "bold"
     for line in rest:
         yield f"{'':{_HANG}}{line}", "bold"
-    yield from _said(f"Cures {'; '.join(_named(f) for f in proposal.cures)}.", width, _HANG)
+    if proposal.left:
+        eased = f"Eases {_named(proposal.finding)} to {proposal.left[0].severity}."
+        yield from _said(eased, width, _HANG)
+    if proposal.cures:
+        yield from _said(f"Cures {'; '.join(_named(f) for f in proposal.cures)}.", width, _HANG)
     if proposal.choice:
         yield from _said(proposal.choice, width, _HANG)
     if proposal.instead:

@@ -243,3 +243,43 @@ def test_both_resistors_of_a_difference_amplifier_go_together(tmp_path):
     for proposal in found:
         assert "R4" in proposal.what
         assert "R2" in proposal.what
+
+
+DAC = """converter's output amplifier, 0 V to 8.2 V asked of 5 V
+V5 v5 0 5
+C1 v5 0 100n
+C2 v5 0 10u
+VDAC dac 0 SIN(2.048 2.048 100)
+R1 out n 1k
+R2 n 0 1k
+XU1 dac n v5 0 out AD8605
+RL out 0 10k
+"""
+
+
+def test_a_grave_fault_is_eased_where_a_small_one_stays(tmp_path):
+    """No gain brings an output down to 0 V; that 8.2 V is asked of 5 V is mended all the same."""
+    path = tmp_path / "dac.cir"
+    path.write_text(DAC, encoding="utf-8")
+    first = review(path).designs[0]
+    found = redline(first)
+    eased = next(p for p in found.proposals if p.left)
+    assert (eased.finding.rule, eased.finding.severity) == ("headroom-output", "critical")
+    assert {f.severity for f in eased.left} == {"minor"}
+    assert not found.held
+    assert not [p for p in proposals(first) if p.left]  # what is no cure is no single fix
+
+
+def test_an_inverting_stage_on_ground_gets_a_level(tmp_path):
+    """On a single supply half of what it inverts lies below ground."""
+    path = tmp_path / "inverting.cir"
+    path.write_text(
+        "wave amplifier\nV1 vdd 0 5\nC1 vdd 0 100n\nC2 vdd 0 10u\nVIN in 0 SIN(0 0.1 1k)\n"
+        "C4 in a 1u\nR3 a n 10k\nR4 out n 100k\nXU1 0 n vdd 0 out TLV9001\nC5 out oc 10u\n"
+        "R5 oc 0 10k\n",
+        encoding="utf-8",
+    )
+    found = redline(review(path).designs[0])
+    (proposal,) = [p for p in found.proposals if p.finding.rule == "headroom-output"]
+    assert "instead of ground" in proposal.what
+    assert not found.held
