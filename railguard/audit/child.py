@@ -6,7 +6,6 @@ lists of tasks. Messages out: Ready, then for each file Began (where it is revie
 
 import gc
 import os
-import resource
 import sys
 from multiprocessing.connection import Connection
 
@@ -20,9 +19,6 @@ OUT_OF_MEMORY = 75
 """Exit status of a worker that could get no more memory: it has none left to say more."""
 
 _COLLECTING = (50_000, 20, 100)
-
-_PAGE = resource.getpagesize()
-_UNLIMITED = resource.RLIM_INFINITY
 
 
 def main() -> None:
@@ -64,9 +60,11 @@ def _serve(pipe: Connection) -> None:
 
 def _limit_memory(megabytes: int) -> None:
     """Bound the address space, beyond what is mapped already. Not every system can."""
+    import resource  # POSIX; elsewhere the parent starts no worker
+
     try:
         with open("/proc/self/statm", "rb") as file:  # noqa: PTH123 - no path of the user's
-            mapped = int(file.read().split()[0]) * _PAGE
+            mapped = int(file.read().split()[0]) * resource.getpagesize()
         resource.setrlimit(resource.RLIMIT_AS, (mapped + megabytes * 1_000_000,) * 2)
     except (OSError, ValueError):
         return
@@ -74,9 +72,11 @@ def _limit_memory(megabytes: int) -> None:
 
 def _limit_time(seconds: int) -> None:
     """Let the system end this process when a file has taken its processor time."""
+    import resource
+
     used = resource.getrusage(resource.RUSAGE_SELF)
     soft = int(used.ru_utime + used.ru_stime) + 1 + seconds
-    resource.setrlimit(resource.RLIMIT_CPU, (soft, _UNLIMITED))
+    resource.setrlimit(resource.RLIMIT_CPU, (soft, resource.RLIM_INFINITY))
 
 
 def _failed(task: Task, error: Exception) -> Outcome:

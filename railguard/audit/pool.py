@@ -37,6 +37,9 @@ TICK = 0.25
 
 START_SECONDS = 120.0
 
+BOUNDED = os.name == "posix"
+"""Whether this system can bound what a process takes; a worker without bounds is not started."""
+
 _KEPT_MEMORY = {"MALLOC_MMAP_THRESHOLD_": "67108864", "MALLOC_TRIM_THRESHOLD_": "134217728"}
 """glibc: keep what a review has used for the next one, instead of asking for fresh pages."""
 
@@ -89,6 +92,15 @@ class Pool:
     """A number of workers under one plan."""
 
     def __init__(self, plan: Plan, workers: int) -> None:
+        """Start the workers.
+
+        Raises WorkerError: this system cannot bound them.
+        """
+        if not BOUNDED:
+            raise WorkerError(
+                "This system cannot bound what a worker takes.",
+                remedy="Run the audit on Linux or macOS (WSL too), or on a --cluster of such.",
+            )
         self._plan = plan
         self._decode = msgspec.msgpack.Decoder(Message).decode
         self._again: deque[Task] = deque()

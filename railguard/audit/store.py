@@ -4,7 +4,6 @@ Write-ahead log, a commit at least every 100 files or 2 seconds: at most those a
 run that was not finished is gone on with; the next one after that counts as a new run.
 """
 
-import fcntl
 import json
 import os
 import sqlite3
@@ -15,6 +14,7 @@ from importlib.resources import files
 from pathlib import Path
 from types import TracebackType
 
+from railguard.audit.lock import lock
 from railguard.audit.wire import Found, Outcome
 from railguard.errors import UsageError
 from railguard.words import SEVERITIES
@@ -201,7 +201,7 @@ def _locked(place: Path) -> int:
     except OSError as error:
         raise UsageError(f"{place} cannot be written: {error.strerror}.") from error
     try:
-        fcntl.flock(handle, fcntl.LOCK_EX | fcntl.LOCK_NB)
+        lock(handle)
     except OSError as error:
         os.close(handle)
         raise UsageError(

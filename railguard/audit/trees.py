@@ -14,6 +14,9 @@ from railguard.errors import UsageError
 OPEN_ARCHIVES = 3
 """Archives a worker keeps open: one after another is read, and one may lie in another."""
 
+_HOW = getattr(os, "O_NONBLOCK", 0) | getattr(os, "O_BINARY", 0)
+"""POSIX: a pipe is not waited for. Windows: bytes are taken as they are."""
+
 
 class Tree(Files, Protocol):
     """Files of a deck, any of which can also be opened as an archive."""
@@ -41,7 +44,7 @@ class Folder:
 
     def open(self, path: Path) -> IO[bytes]:
         """Open an ordinary file; never waits for the other end of a pipe."""
-        handle = os.open(self._base / path, os.O_RDONLY | getattr(os, "O_NONBLOCK", 0))
+        handle = os.open(self._base / path, os.O_RDONLY | _HOW)
         return os.fdopen(handle, "rb")
 
     def is_file(self, path: Path) -> bool:

@@ -1,5 +1,6 @@
 """What an include card names, and where that file is."""
 
+import os
 import re
 from pathlib import Path, PurePosixPath
 
@@ -7,6 +8,8 @@ from railguard.deck.source import Files
 
 _PARTS = re.compile(r"\"[^\"]*\"|'[^']*'|\S+")
 _DRIVE = re.compile(r"^[A-Za-z]:")
+HAS_DRIVES = os.name == "nt"
+"""Whether `C:` names a drive of this machine; the root decides what is read of it."""
 _SECTION = re.compile(r"(?i)^\.lib\s+([\w-]+)\s*$")
 
 
@@ -56,7 +59,8 @@ def find(files: Files, folder: Path, target: str, root: Path) -> Path | str:
     told.
     """
     plain = target.replace("\\", "/")
-    if _DRIVE.match(plain) or plain.startswith("//") or "://" in plain:
+    elsewhere = _DRIVE.match(plain) and not HAS_DRIVES
+    if elsewhere or plain.startswith("//") or "://" in plain:
         return "stands on another computer and is not read"
     outside = "lies outside the deck's folder and is not read"
     if not files.real(folder / plain).is_relative_to(root):
