@@ -8,25 +8,13 @@ import pytest
 
 import railguard
 from railguard.notices import NotChecked
+from tests import gauge
 
 ROOT = Path(__file__).parents[1]
 STATION = ROOT / "fixtures" / "station" / "station.cir"
 CLIPPED = ROOT / "fixtures" / "faults" / "headroom-output.cir"
 BOARD = ROOT / "fixtures" / "board" / "gauge_board.cir"
 HEAVY = ("msgspec", "numpy", "click")
-
-STAGE = """gauge output stage
-VIN in 0 SIN(0 0.5 1k)
-R1 in n 10k
-R2 n out {feedback}
-RL out 0 10k
-XU1 0 n vp vn out TL072
-VP vp 0 12
-VN vn 0 -12
-CP vp 0 100n
-CN vn 0 100n
-.end
-"""
 
 
 def python(code):
@@ -96,7 +84,7 @@ def test_a_type_checker_knows_what_review_returns(tmp_path):
 
 def test_a_sound_circuit_gives_its_review():
     """The review comes back, for assertions on its numbers."""
-    found = railguard.assert_sound(STAGE.format(feedback="20k"))
+    found = railguard.assert_sound(gauge.SOUND)
     (stage,) = found.designs[0].design.stages
     assert stage.output.demand.high == pytest.approx(1.0, rel=0.01)
 

@@ -25,9 +25,6 @@ SERIES_OHMS = 100.0
 _JOINS = re.compile(r"(?i)^(?:JP|NT|SJ|W|R)")
 _RATING = re.compile(r"(?i)(?<![\w.])(\d+(?:\.\d+)?)\s*V(?:DC)?(?![\w])")
 
-Tolerance = tuple[float, float, bool]
-"""(volts, share, stated) of a rail's source."""
-
 
 def rail_tolerance(feed: Feed, settings: Settings) -> tuple[float, bool]:
     """Return a rail's tolerance as a share, and whether the user stated it."""

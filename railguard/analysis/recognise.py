@@ -5,7 +5,6 @@ board export whose name the catalogue knows (or which is called just OPAMP), or 
 wired as an amplifier. What is an IC but no op-amp stays opaque.
 """
 
-import re
 from collections import defaultdict
 from collections.abc import Mapping
 from functools import cache
@@ -254,11 +253,3 @@ def _controlled(element: Element, gain: float) -> Amplifier:
         output=output,
         gain=abs(gain),
     )
-
-
-_AUTOMATIC = re.compile(r"(?i)^(n?\d+|net-?[._(].*|n\$\d+|\$n_\d+|nc[_-]?\d*|unconnected.*|\?.*)$")
-
-
-def is_automatic(net: str) -> bool:
-    """Tell whether a net's name was made by a program, not by a person."""
-    return bool(_AUTOMATIC.match(net.rsplit(".", 1)[-1]))

@@ -38,7 +38,6 @@ class Store:
         self._base = _connected(place)
         self._uncommitted = 0
         self._last = time.monotonic()
-        self._ids: dict[str, int] = {}
         finished = self.about("finished")
         self.run = int(self.about("run") or 0)
         if finished != "no":

@@ -13,14 +13,13 @@ import os
 import shutil
 import signal
 import socket
-import sqlite3
 import subprocess
 import sys
 import tempfile
 import time
 from pathlib import Path
 
-from tests.bench.audit_designs import FOLDER_HOLDS, write
+from tests.bench.audit_designs import FOLDER_HOLDS, counted, write
 
 PORT = 8795
 ADDRESS = f"tcp://127.0.0.1:{PORT}"
@@ -104,14 +103,6 @@ def _audit(share: Path, base: Path) -> "subprocess.Popen[bytes]":
     return subprocess.Popen([sys.executable, "-m", "railguard", *words], stderr=subprocess.DEVNULL)
 
 
-def _count(base: Path) -> int:
-    try:
-        with sqlite3.connect(f"file:{base}?mode=ro", uri=True) as reading:
-            return int(reading.execute("SELECT COUNT(*) FROM file").fetchone()[0])
-    except sqlite3.Error:
-        return 0
-
-
 def scale(count: int) -> None:
     """Print a row for 1, 2 and 4 workers."""
     print(f"{count} designs of about 80 cards and 4 op-amps; ms of processor time a design")
@@ -130,7 +121,7 @@ def scale(count: int) -> None:
             last: tuple[float, ...] = ()
             while run.poll() is None:
                 time.sleep(0.2)
-                done = _count(base)
+                done = counted(base)
                 if done and (not first or done > last[0]):
                     last = _state(done, run.pid, cluster)
                     first = first or last
@@ -171,7 +162,7 @@ def memory(count: int) -> None:
         before: tuple[float, ...] = ()
         while run.poll() is None:
             time.sleep(0.5)
-            done = _count(base)
+            done = counted(base)
             if marks and done >= min(marks[0], int(count * 0.97)):
                 marks = [mark for mark in marks[1:] if mark > done]
                 size = sum(_megabytes(worker.pid) for worker in cluster.workers)

@@ -8,6 +8,7 @@ Run: python tests/bench/audit_designs.py FOLDER [COUNT]
 
 import math
 import random
+import sqlite3
 import sys
 from collections.abc import Callable
 from pathlib import Path
@@ -187,3 +188,12 @@ if __name__ == "__main__":
     total = int(sys.argv[2]) if len(sys.argv) > 2 else 10_000
     found = write(Path(sys.argv[1]), total)
     print(f"{total} designs, {len(found)} of them with a fault, in {sys.argv[1]}")
+
+
+def counted(base: Path) -> int:
+    """Return the files an audit has committed so far."""
+    try:
+        with sqlite3.connect(f"file:{base}?mode=ro", uri=True) as reading:
+            return int(reading.execute("SELECT COUNT(*) FROM file").fetchone()[0])
+    except sqlite3.Error:
+        return 0

@@ -17,7 +17,7 @@ import time
 from concurrent.futures import ThreadPoolExecutor
 from pathlib import Path
 
-from tests.bench.audit_designs import design, write
+from tests.bench.audit_designs import counted, design, write
 
 
 def main() -> None:
@@ -91,20 +91,12 @@ def _audited(
     marks = [count * k // 10 for k in range(1, 10)]
     while run.poll() is None:
         time.sleep(0.2)
-        done = _count(base)
+        done = counted(base)
         if marks and done >= marks[0]:
             memory.append((done, _megabytes(run.pid)))
             marks = [mark for mark in marks if mark > done]
     assert run.returncode == 0
     return time.perf_counter() - start, _busy() - before, memory
-
-
-def _count(base: Path) -> int:
-    try:
-        with sqlite3.connect(f"file:{base}?mode=ro", uri=True) as reading:
-            return int(reading.execute("SELECT COUNT(*) FROM file").fetchone()[0])
-    except sqlite3.Error:
-        return 0
 
 
 def _megabytes(pid: int) -> float:

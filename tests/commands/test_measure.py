@@ -7,26 +7,16 @@ from click.testing import CliRunner
 
 from railguard.commands.devices import devices
 from railguard.errors import EngineError, UsageError
+from tests.engine.test_measure import STIFF
 
 needs_ngspice = pytest.mark.skipif(shutil.which("ngspice") is None, reason="ngspice is missing")
-
-MODEL = """* an amplifier whose output knows no load
-.subckt gauge p n vcc vee out
-Rin p n 1e9
-Bgm 0 g i=1e-6*tanh((v(p)-v(n))*10)
-R1 g 0 1e9
-C1 g 0 1.59e-12
-Bout out 0 v=max(min(v(g),v(vcc)-1),v(vee)+1)
-Rq vcc vee 20k
-.ends
-"""
 
 
 @pytest.fixture
 def model(tmp_path):
     """A file with a macromodel."""
     file = tmp_path / "gauge.lib"
-    file.write_text(MODEL, encoding="utf-8")
+    file.write_text(STIFF, encoding="utf-8")
     return file
 
 
@@ -67,7 +57,7 @@ def test_the_written_entry_is_a_users_table(model, tmp_path):
 def test_pins_the_header_does_not_name_can_be_stated(tmp_path):
     """In the order of the card, one name each."""
     file = tmp_path / "odd.lib"
-    file.write_text(MODEL.replace("p n vcc vee out", "out vee p vcc n", 1), encoding="utf-8")
+    file.write_text(STIFF.replace("p n vcc vee out", "out vee p vcc n", 1), encoding="utf-8")
     text = run(file, "--subckt", "gauge", "--supply", 10, "--pins", "out v- in+ v+ in-")
     assert "gain-bandwidth" in text
 
@@ -76,7 +66,7 @@ def test_pins_the_header_does_not_name_can_be_stated(tmp_path):
 def test_a_model_that_gives_nothing_is_an_error(tmp_path):
     """All benches fail: the first one's reason is told."""
     file = tmp_path / "dead.lib"
-    file.write_text(MODEL.replace("v(g)", "3"), encoding="utf-8")
+    file.write_text(STIFF.replace("v(g)", "3"), encoding="utf-8")
     with pytest.raises(UsageError, match=r"gauge could not be measured: as a follower"):
         run(file, "--subckt", "gauge", "--supply", 10)
 
@@ -93,4 +83,4 @@ def test_an_existing_file_is_not_written_over(model):
     """The model itself, for one."""
     with pytest.raises(UsageError, match="exists already"):
         run(model, "--subckt", "gauge", "--write", model)
-    assert model.read_text(encoding="utf-8") == MODEL
+    assert model.read_text(encoding="utf-8") == STIFF

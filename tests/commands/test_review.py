@@ -13,24 +13,14 @@ from click.testing import CliRunner
 from railguard.commands.main import main
 from railguard.commands.review import review
 from railguard.errors import RailguardError
+from tests import gauge
 
 ROOT = Path(__file__).parents[2]
 STATION = ROOT / "fixtures" / "station" / "station.cir"
 CLIPPED = ROOT / "fixtures" / "faults" / "headroom-output.cir"
 OPEN = ROOT / "fixtures" / "board" / "gauge_board.cir"
 
-DECK = """gauge output stage
-VIN in 0 SIN(0 0.5 1k)
-R1 in n 10k
-R2 n out 100k
-RL out 0 600
-XU1 0 n vp vn out TL072
-VP vp 0 12
-VN vn 0 -12
-CP vp 0 100n
-CN vn 0 100n
-.end
-"""
+DECK = gauge.deck(feedback="100k", load="600")
 
 
 def status(*arguments):

@@ -8,6 +8,7 @@ import pytest
 
 from railguard import reviewing
 from railguard.report import terminal
+from tests.gauge import CLIPPED, SOUND
 
 pytest_plugins = ["pytester"]
 
@@ -16,21 +17,6 @@ LOADED = (reviewing, terminal)
 """Runs in this process put the loaded modules back afterwards, and numpy is loaded only once."""
 
 HEAVY = ("msgspec", "numpy", "lark", "click", "rich", "railguard.reviewing")
-
-DECK = """gauge output stage
-VIN in 0 SIN(0 0.5 1k)
-R1 in n 10k
-R2 n out {feedback}
-RL out 0 10k
-XU1 0 n vp vn out TL072
-VP vp 0 12
-VN vn 0 -12
-CP vp 0 100n
-CN vn 0 100n
-.end
-"""
-SOUND = DECK.format(feedback="20k")
-CLIPPED = DECK.format(feedback="470k")
 
 
 @pytest.fixture

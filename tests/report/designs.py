@@ -4,21 +4,12 @@ import datetime as dt
 import shutil
 from pathlib import Path
 
+from tests.gauge import DECK
+
 FIXTURES = Path(__file__).parents[2] / "fixtures"
 DAY = dt.date(2027, 1, 31)
 
-GAUGE = """gauge output stage
-VIN in 0 SIN(0 {peak} 1k)
-R1 in n 10k
-R2 n out 100k
-RL out 0 {load}
-XU1 0 n vp vn out TL072
-VP vp 0 12
-VN vn 0 -12
-CP vp 0 100n
-CN vn 0 100n
-.end
-"""
+GAUGE = DECK.replace("{feedback}", "100k")
 
 PARTLY = """gauge output stage, some of it lost
 .include lost.inc

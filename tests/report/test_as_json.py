@@ -12,22 +12,12 @@ from railguard.analysis.stage import Allowed, Range
 from railguard.report.as_json import Document, document, schema
 from railguard.report.places import from_root
 from railguard.reviewing import review
+from tests import gauge
 
 ROOT = Path(__file__).parents[2]
 SCHEMA = ROOT / "railguard" / "report" / "report.schema.json"
 
-DECK = """station
-VIN in 0 SIN(0 0.5 1k)
-R1 in n 10k
-R2 n out 100k
-RL out 0 600
-XU1 0 n vp vn out TL072
-VP vp 0 12
-VN vn 0 -12
-CP vp 0 100n
-CN vn 0 100n
-.end
-"""
+DECK = gauge.deck(feedback="100k", load="600")
 
 
 @pytest.fixture(scope="module")

@@ -36,7 +36,6 @@ class Change(NamedTuple):
 
     path: str
     before: str
-    deleted: bool
 
 
 @lru_cache(maxsize=1)
@@ -65,7 +64,7 @@ def _parsed(out: bytes) -> Iterator[Change]:
         before = path
         if status[0] in "RC":
             path = next(fields)
-        yield Change(path, before, status[0] == "D")
+        yield Change(path, before)
 
 
 def is_netlist(path: str) -> bool:

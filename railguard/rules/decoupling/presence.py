@@ -25,6 +25,7 @@ from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.severity import ROUNDING
 from railguard.rules.wording import count, listed
 from railguard.units import si
+from railguard.words import Severity
 
 # --- decoupling-absent
 
@@ -40,12 +41,22 @@ def judge_absent(rail: Rail, limits: Limits, design: Design) -> Iterator[Outcome
     if design.kind == "bench":
         yield from _bench(rail, limits, design)
         return
-    yield finding(
+    yield _none_at_the_pins(
         "decoupling-absent",
         "major",
         f"Rail {rail.net} feeds {count(len(rail.packages), 'package')} "
         f"({listed(rail.packages)}) and has no capacitor of {si(limits['least'], 'F')} to "
         f"{si(limits['most'], 'F')} to its return.{_other_sizes(rail)}",
+        rail,
+    )
+
+
+def _none_at_the_pins(rule: str, severity: Severity, message: str, rail: Rail) -> Finding:
+    """Say that no package of a rail has a capacitor at its pins."""
+    return finding(
+        rule,
+        severity,
+        message,
         designators=rail.packages,
         nets=(rail.net,),
         demand=float(len(rail.packages)),
@@ -180,22 +191,14 @@ def judge_behind(rail: Rail, limits: Limits, design: Design) -> Iterator[Outcome
     if not behind:
         return
     through = next((c.behind for c in behind if c.behind), "") or listed(rail.series)
-    yield finding(
+    yield _none_at_the_pins(
         "decoupling-behind-series",
         "minor" if design.kind == "bench" else "major",
         f"The {'capacitor' if len(behind) == 1 else 'capacitors'} "
         f"{listed(c.designator for c in behind)} of rail {rail.net} "
         f"{'stands' if len(behind) == 1 else 'stand'} on the source side of "
         f"{through or 'a series element'}; at the pins of {listed(rail.packages)} there is none.",
-        designators=rail.packages,
-        nets=(rail.net,),
-        demand=float(len(rail.packages)),
-        limit=0.0,
-        margin=-float(len(rail.packages)),
-        basis=("netlist", "practice"),
-        remedy=fit_each(rail, rail.packages),
-        source=PER_PIN_SOURCE,
-        location=rail.location,
+        rail,
     )
 
 

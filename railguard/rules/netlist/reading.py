@@ -14,8 +14,6 @@ from railguard.rules.wording import NO_SOURCE, listed
 from railguard.units import si
 from railguard.words import Kind, Severity
 
-Weight = Callable[[Kind], Severity]
-
 SPICE_SOURCE = "SPICE reads it so: ngspice manual, chapter on circuit description"
 
 

@@ -16,22 +16,6 @@ from railguard.errors import RailguardError
 ROOT = Path(__file__).parents[3]
 CACHE = str(Path.home() / ".cache")
 
-DECK = """gauge output stage
-VIN in 0 SIN(0 0.5 1k)
-R1 in n 10k
-R2 n out {feedback}
-RL out 0 10k
-XU1 0 n vp vn out TL072
-VP vp 0 12
-VN vn 0 -12
-CP vp 0 100n
-CN vn 0 100n
-.end
-"""
-SOUND = DECK.format(feedback="20k")
-CLIPPED = DECK.format(feedback="470k")
-"""Asks for 23.5 V on rails of 12 V."""
-
 USER = """[user]
 name = A Tester
 email = tester@example.org

@@ -4,7 +4,7 @@ import sys
 
 import pytest
 
-from tests.commands.hook.conftest import CLIPPED, DECK, SOUND
+from tests.gauge import CLIPPED, SOUND
 
 LOAD = "RL out 0 {}\n"
 INCLUDING = SOUND.replace(LOAD.format("10k"), '.include "{}"\n')
@@ -415,7 +415,7 @@ def test_a_repository_cannot_bring_its_own_modules(repository):
 def test_hold_level_of_the_hook(repository):
     """What the hook was installed with goes over the settings."""
     repository.hook("install", "--hold-at", "remark")
-    bare = DECK.format(feedback="20k").replace("CN vn 0 100n", "CN vn 0 100n\nR9 out x 1k")
+    bare = SOUND.replace("CN vn 0 100n", "CN vn 0 100n\nR9 out x 1k")
     repository.add("gauge.cir", bare)
     made, told = repository.commit()
     assert not made

@@ -4,7 +4,7 @@ import sys
 
 import pytest
 
-from tests.commands.hook.conftest import SOUND
+from tests.gauge import SOUND
 
 CODE = """import sys
 sys.argv = ["railguard", "hook", "run", *{options!r}]

@@ -12,7 +12,8 @@ import pytest
 
 from railguard.commands.hook.staged import is_netlist
 from railguard.deck.suffixes import NETLISTS
-from tests.commands.hook.conftest import CLIPPED, ROOT, SOUND
+from tests.commands.hook.conftest import ROOT
+from tests.gauge import CLIPPED, SOUND
 
 MANIFEST = (ROOT / ".pre-commit-hooks.yaml").read_text(encoding="utf-8")
 

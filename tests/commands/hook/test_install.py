@@ -11,7 +11,7 @@ import pytest
 
 from railguard.commands.hook import script
 from railguard.errors import RailguardError
-from tests.commands.hook.conftest import CLIPPED, SOUND
+from tests.gauge import CLIPPED, SOUND
 
 OTHER = "#!/bin/sh\necho other hook\n{}\n"
 

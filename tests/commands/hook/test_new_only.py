@@ -6,7 +6,8 @@ import pytest
 from railguard.commands.hook.compare import only_new
 from railguard.reviewing import review
 from railguard.rules.finding import Finding, WaiverNote
-from tests.commands.hook.conftest import CLIPPED, DECK, SOUND
+from tests import gauge
+from tests.gauge import CLIPPED, SOUND
 
 
 def known(repository, text=CLIPPED, path="gauge.cir"):
@@ -28,7 +29,7 @@ def test_a_fault_from_before_lets_pass(repository):
 def test_a_fault_that_got_worse_stops(repository):
     """The same finding with less margin."""
     known(repository)
-    repository.add("gauge.cir", DECK.format(feedback="560k"))
+    repository.add("gauge.cir", gauge.deck(feedback="560k"))
     passed, told = repository.check("--new-only")
     assert not passed
     assert "headroom-output" in told
@@ -37,7 +38,7 @@ def test_a_fault_that_got_worse_stops(repository):
 def test_a_fault_that_got_better_lets_pass(repository):
     """Still a fault, and less of one."""
     known(repository)
-    repository.add("gauge.cir", DECK.format(feedback="330k"))
+    repository.add("gauge.cir", gauge.deck(feedback="330k"))
     assert repository.check("--new-only")[0]
 
 
