@@ -22,7 +22,7 @@ def _concerned() -> bool:
     from railguard.commands.hook.git import GitError, top_folder
     from railguard.commands.hook.staged import concerned
 
-    if any(not word.startswith("-") for word in sys.argv[3:]):
+    if any(not word.startswith("-") or word in ("-h", "--help") for word in sys.argv[3:]):
         return True
     try:
         return concerned(top_folder())

@@ -59,7 +59,10 @@ def audit() -> None:
 @click.option("--hold-at", type=click.Choice(SEVERITIES), help="What puts a design on hold.")
 @options.as_of
 @click.option(
-    "--workers", type=click.IntRange(1, 256), help="Processes at work [one for each core]."
+    "--workers",
+    type=click.IntRange(1, 256),
+    metavar="N",
+    help="Processes at work [one for each core].",
 )
 @click.option(
     "--cluster",
@@ -70,6 +73,7 @@ def audit() -> None:
     "--seconds",
     type=click.IntRange(1, 86_400),
     default=30,
+    metavar="N",
     show_default=True,
     help="Processor time one file may take.",
 )
@@ -77,6 +81,7 @@ def audit() -> None:
     "--megabytes",
     type=click.IntRange(64, 1_000_000),
     default=1024,
+    metavar="N",
     show_default=True,
     help="Memory one file may take.",
 )
@@ -167,7 +172,9 @@ _FORMATS = ("terminal", "html", "csv", "json")
     "base", type=click.Path(exists=True, dir_okay=False, path_type=Path), metavar="FILE"
 )
 @click.option("--as", "form", type=click.Choice(_FORMATS), default="terminal", show_default=True)
-@click.option("--to", "target", type=click.Path(path_type=Path), help="Write it there.")
+@click.option(
+    "--to", "target", type=click.Path(path_type=Path), metavar="FILE", help="Write it there."
+)
 @click.option(
     "--against",
     type=click.Path(exists=True, dir_okay=False, path_type=Path),

@@ -26,11 +26,23 @@ USUAL_SUPPLY = 5.0
 
 @click.command()
 @click.argument("file", type=click.Path(exists=True, dir_okay=False, path_type=Path))
-@click.option("--subckt", "name", required=True, help="Name of the macromodel in FILE.")
-@click.option("--supply", type=click.FloatRange(0.5, 200.0), help="Total supply, V.")
-@click.option("--pins", default="", help='Order of its ports: "in+ in- v+ v- out".')
-@click.option("--write", "target", type=click.Path(path_type=Path), help="Write the entry here.")
-@click.option("--ngspice", "binary", default="", help="Path of the ngspice program.")
+@click.option(
+    "--subckt", "name", required=True, metavar="NAME", help="Name of the macromodel in FILE."
+)
+@click.option("--supply", type=click.FloatRange(0.5, 200.0), metavar="VOLTS", help="Total supply.")
+@click.option(
+    "--pins", default="", metavar="ORDER", help='Order of its ports: "in+ in- v+ v- out".'
+)
+@click.option(
+    "--write",
+    "target",
+    type=click.Path(path_type=Path),
+    metavar="NEWFILE",
+    help="Write the entry here.",
+)
+@click.option(
+    "--ngspice", "binary", default="", metavar="PATH", help="Path of the ngspice program."
+)
 def measure(
     file: Path, name: str, supply: float | None, pins: str, target: Path | None, binary: str
 ) -> None:
