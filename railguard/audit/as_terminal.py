@@ -147,7 +147,7 @@ class _Printer:
         if worst is not None and counts:
             inside = f" of {worst.file}" if worst.file != design.path else ""
             at = f", line {worst.line}{inside}" if worst.line else ""
-            self.paragraph(f"{worst.severity} {worst.rule}{at}: {worst.message}", 6)
+            self.paragraph(f"{worst.severity}: {worst.message} ({worst.rule}{at})", 6)
 
     def families(self, rows: list[Row]) -> None:
         count = self.table(

@@ -176,7 +176,8 @@ def _listed(title: str, lines: list[str], more: int) -> str:
 def _finding(finding: Finding, deck: str) -> str:
     """Return a finding as an item of a list, its remedy and reason below it."""
     place = _clean(words.place(finding.location, deck))
-    lines = [f"- **{finding.severity}** {_clean(finding.rule)}{place}: {_clean(finding.message)}"]
+    about = f"{_clean(finding.rule)}{place}"
+    lines = [f"- **{finding.severity}**: {_clean(finding.message)} ({about})"]
     if finding.remedy:
         lines.append(f"  - {words.FIT}: {_clean(finding.remedy)}")
     if finding.source:
@@ -195,4 +196,4 @@ def _follows(finding: Finding, indent: str) -> Iterable[str]:
 def _waived(finding: Finding) -> str:
     told = words.waiver(finding.waiver) if finding.waiver is not None else ""
     about = ", ".join(finding.designators) or ", ".join(finding.nets)
-    return f"- {finding.severity} {_clean(finding.rule)}, {_clean(about)}: {_clean(told)}"
+    return f"- {_clean(about)}: {_clean(told)} ({finding.severity}, {_clean(finding.rule)})"
