@@ -12,6 +12,7 @@ import msgspec
 from railguard.audit.compare import Comparison
 from railguard.audit.read import Base, Row
 from railguard.audit.store import FORMAT
+from railguard.report.json_text import one_line
 
 
 def pieces(base: Base, changes: Comparison | None, stream: IO[str] | None) -> Iterator[bytes]:
@@ -28,7 +29,7 @@ def pieces(base: Base, changes: Comparison | None, stream: IO[str] | None) -> It
         "settings_files": base.settings_seen(),
         "settings_obeyed": base.about("trusted") == "yes",
     }
-    yield msgspec.json.encode(head)[:-1] + b',\n"designs": ['
+    yield one_line(head)[:-1] + b',\n"designs": ['
     first = True
     for design in base.ranking():
         out = {
@@ -37,7 +38,7 @@ def pieces(base: Base, changes: Comparison | None, stream: IO[str] | None) -> It
             "findings": [msgspec.structs.asdict(f) for f in base.findings(design.id)],
         }
         del out["id"]
-        yield (b"\n" if first else b",\n") + msgspec.json.encode(out)
+        yield (b"\n" if first else b",\n") + one_line(out)
         first = False
     tail: dict[str, object] = {
         "findings_by_family_and_device": [
@@ -49,7 +50,7 @@ def pieces(base: Base, changes: Comparison | None, stream: IO[str] | None) -> It
         "copies": [{"path": r.name, "designs": r.designs} for r in base.copies()],
         "changes": changes,
     }
-    yield b"\n],\n" + msgspec.json.encode(tail)[1:] + b"\n"
+    yield b"\n],\n" + one_line(tail)[1:] + b"\n"
 
 
 def _counted(row: Row) -> dict[str, object]:

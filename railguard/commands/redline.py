@@ -13,6 +13,7 @@ from railguard.errors import UsageError
 from railguard.redline.difference import unified
 from railguard.redline.model import Redline
 from railguard.redline.propose import redline as propose
+from railguard.report.json_text import encoded
 from railguard.report.redline import screen
 from railguard.report.visible import visible
 from railguard.report.words import near
@@ -74,7 +75,7 @@ def redline(
         plain = msgspec.structs.replace(result, data=(), files=())
         wire = {**msgspec.to_builtins(plain), "diff": unified(result.files)}
         del wire["data"], wire["files"]
-        sys.stdout.buffer.write(msgspec.json.format(msgspec.json.encode(wire), indent=1) + b"\n")
+        sys.stdout.buffer.write(encoded(wire))
     else:
         from rich.console import Console
 

@@ -19,15 +19,27 @@ def encoded(value: object, *, order: Literal["sorted"] | None = None) -> bytes:
 
     order  as `msgspec.json.encode` takes it
     """
+    return _escaped(msgspec.json.format(_json(value, order), indent=1)) + b"\n"
+
+
+def one_line(value: object) -> bytes:
+    """Return a value as JSON without any blank or newline."""
+    return _escaped(_json(value))
+
+
+def _json(value: object, order: Literal["sorted"] | None = None) -> bytes:
     try:
-        data = msgspec.json.encode(value, order=order)
+        return msgspec.json.encode(value, order=order)
     except UnicodeEncodeError:
         # A file name that is no UTF-8 reaches Python as lone surrogates, which JSON cannot hold.
-        data = msgspec.json.encode(_mended(msgspec.to_builtins(value)), order=order)
-    text = msgspec.json.format(data, indent=1).decode()
-    if _PLAIN.fullmatch(text) is None:
-        text = "".join(_escape(c) if c > "~" and is_hidden(c) else c for c in text)
-    return text.encode() + b"\n"
+        return msgspec.json.encode(_mended(msgspec.to_builtins(value)), order=order)
+
+
+def _escaped(data: bytes) -> bytes:
+    text = data.decode()
+    if _PLAIN.fullmatch(text) is not None:
+        return data
+    return "".join(_escape(c) if c > "~" and is_hidden(c) else c for c in text).encode()
 
 
 def _escape(character: str) -> str:

@@ -50,6 +50,30 @@ def test_commands_steer_no_screen(tmp_path, command):
 
 
 @POSIX
+@pytest.mark.parametrize("how", ["screen", "json"])
+def test_a_redline_steers_no_screen(tmp_path, how):
+    """Nor does what is proposed for such a netlist."""
+    for path in designs.paths("hostile", tmp_path):
+        _, out, err = said(tmp_path, "redline", "--as", how, str(path))
+        assert out
+        assert steering(out) == set()
+        assert steering(err) == set()
+
+
+@POSIX
+@pytest.mark.parametrize("form", ["terminal", "html", "csv", "json"])
+def test_an_archive_of_such_netlists_steers_no_screen(tmp_path, form):
+    """Titles, nets and names come back out of the audit's file."""
+    (tmp_path / "share").mkdir()
+    designs.paths("hostile", tmp_path / "share")
+    said(tmp_path, "audit", "share", "--to", "a.sqlite", "--workers", "1")
+    status, out, err = said(tmp_path, "audit", "report", "a.sqlite", "--as", form)
+    assert status == 0, err
+    assert "design" in out
+    assert steering(out.removeprefix("\ufeff")) == set()
+
+
+@POSIX
 @pytest.mark.parametrize(
     "text",
     [
