@@ -180,7 +180,6 @@ class Lined:
 
     def __init__(self, part: Part, lines: Mapping[Carried, Line]) -> None:
         """Solve. Raises SolveError."""
-        self._part = part
         self._lines = lines
         solvable = with_lines(part, lines)
         self.network, self._lamps = solvable.network, solvable.lamps
