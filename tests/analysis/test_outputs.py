@@ -36,6 +36,7 @@ def test_what_a_follower_can_do(stage):
     assert (output.high.absolute, output.low.absolute) == near(15.0, -15.0)
     assert (output.high.level, output.high.span, output.low.span) == near(1.0, 4.0, 4.0)
     assert output.high.condition.startswith("2 kΩ")
+    assert (output.high.demand_basis, output.high.absolute_basis) == ("netlist", "netlist")
     given = found.family
     assert current.available_source == pytest.approx(given.source_current.guaranteed)
     assert current.available_sink == pytest.approx(given.sink_current.guaranteed)
@@ -69,6 +70,7 @@ def test_a_stage_that_stands_at_its_limits_has_no_range(stage):
     output = found.output
     assert (output.level, output.demand.high, output.slew, output.offset) == (None,) * 4
     assert (output.high.demand, output.high.level) == (None, None)
+    assert (output.high.typical_basis, output.high.guaranteed_basis) == ("memory", "memory")
     assert 11.9 < output.high.typical < 12.0
     assert output.high.absolute == pytest.approx(15.0)
     assert output.low.typical == pytest.approx(-output.high.typical)

@@ -158,6 +158,7 @@ def test_a_channel_with_swapped_pins_in_a_sound_package():
     whole = design(*pair, packages=(twin,))
     (found,) = findings(REVERSED, twin, whole)
     assert found.designators == ("XU1B",)
+    assert found.message.startswith("U1: the positive supply pin (net -12V) is at -12 V")
     (split,) = findings(SPLIT, twin, whole)
     assert "its positive supply pin on nets +12V and -12V" in split.message
 
@@ -198,3 +199,16 @@ def test_channels_on_two_negative_rails():
     twin = package(channels=("XU1A", "XU1B"), negative=("-12V", "0"))
     (found,) = findings(SPLIT, twin)
     assert "its negative supply pin on nets -12V and 0" in found.message
+
+
+@pytest.mark.parametrize("pin", ["positive", "negative"])
+def test_a_pin_that_nothing_feeds_is_named(pin):
+    """With its package, whatever its channel is called."""
+    supply = changed(SUPPLY, **{pin: None, f"{pin}_net": "vx"})
+    one = stage("XU1A", package="U1", supply=supply)
+    whole = design(one, rails=(unfed("vx"),), packages=(package(channels=("XU1A",)),))
+    (found,) = findings(MISSING, whole.packages[0], whole)
+    assert found.message == (
+        f"Nothing feeds net vx: it is the {pin} supply pin of U1, and no source, regulator or "
+        "connector stands on it."
+    )
