@@ -55,6 +55,7 @@ def test_the_worst_of_a_follower_is_its_own_error(stage):
     assert output.high.default.limit == pytest.approx(10 - 0.05 * 15)
     assert output.low.default.limit == pytest.approx(-10 + 0.05 * 15)
     assert found.current.worst_source == pytest.approx((3 + error) / 2e3 * 1.01, rel=2e-3)
+    assert found.current.worst_sink == pytest.approx((1 + error) / 2e3 * 1.01, rel=2e-3)
 
 
 def test_a_tolerance_of_the_load_moves_the_current_only(stage):
