@@ -1,0 +1,84 @@
+"""Frequency and Q of filters of second order, with their ranges, by the formulas of the books."""
+
+import math
+
+import pytest
+
+UNITY = (
+    "VIN in 0 SIN(0 1 100)\nR1 in a 11.3k\nR2 a p 11.3k\nC1 a out 2n\nC2 p 0 1n\n"
+    "XU1 p out vp vn out TL072"
+)
+GAIN = (
+    "VIN in 0 SIN(0 1 100)\nR1 in a 10k\nR2 a p 10k\nC1 a out 10n\nC2 p 0 10n\nR3 n 0 20k\n"
+    "R4 n out 10k\nXU1 p n vp vn out TL072"
+)
+HIGH = (
+    "VIN in 0 SIN(0 1 9k)\nC1 in a 10n\nC2 a p 10n\nR1 a out 10k\nR2 p 0 40k\n"
+    "XU1 p out vp vn out TL072"
+)
+LOW = (
+    "VIN in 0 SIN(0 1 100)\nR1 in a 10k\nR2 a out 10k\nR3 a n 10k\nC1 a 0 9n\nC2 n out 1n\n"
+    "XU1 0 n vp vn out TL072"
+)
+BAND = (
+    "VIN in 0 SIN(0 1 1.6k)\nR1 in a 10k\nR2 n out 40k\nC1 a out 5n\nC2 a n 5n\n"
+    "XU1 0 n vp vn out TL072"
+)
+
+
+@pytest.mark.parametrize(
+    ("cards", "kind", "hertz", "q", "gain"),
+    [
+        # 1 / (2 pi R sqrt(C1 C2)), Q = sqrt(C1 / C2) / 2
+        (UNITY, "low-pass", 1 / (2 * math.pi * 11.3e3 * math.sqrt(2) * 1e-9), math.sqrt(0.5), 1.0),
+        # equal parts: Q = 1 / (3 - K)
+        (GAIN, "low-pass", 1 / (2 * math.pi * 1e-4), 1 / 1.5, 1.5),
+        # the Q is half the root of R2 over R1
+        (HIGH, "high-pass", 1 / (2 * math.pi * 20e3 * 10e-9), 1.0, 1.0),
+        # 1 / (2 pi sqrt(R2 R3 C1 C2)), Q = sqrt(C1 / C2) / 3 with equal resistors
+        (LOW, "low-pass", 1 / (2 * math.pi * 10e3 * 3e-9), 1.0, 1.0),
+        # 1 / (2 pi C sqrt(R1 R2)), Q = sqrt(R2 / R1) / 2
+        (BAND, "band-pass", 1 / (2 * math.pi * 5e-9 * 20e3), 1.0, 2.0),
+    ],
+)
+def test_a_filter_is_what_its_formula_says(stage, cards, kind, hertz, q, gain):
+    """Source: TI SLOA049, TI SLOD006B ch. 16, from memory; worked by hand."""
+    found = stage(cards).filter
+    assert found.kind == kind
+    assert found.frequency == pytest.approx(hertz, rel=1e-4)
+    assert found.q == pytest.approx(q, rel=1e-4)
+    assert abs(found.gain) == pytest.approx(gain, rel=0.02)
+
+
+@pytest.mark.parametrize(
+    ("cards", "frequency", "q"),
+    [
+        # each part by half its tolerance; equal resistors leave the Q alone
+        (UNITY, 0.5 * (0.02 + 0.2), 0.5 * 0.2),
+        # sensitivities of the Q: Q - 1/2 to the resistors, 2 Q - 1/2 to the capacitors, and Q to
+        # the gain of 1.5, of which a third moves by 2 %
+        (GAIN, 0.5 * (0.02 + 0.2), (2 / 3 - 0.5) * 0.02 + (4 / 3 - 0.5) * 0.2 + 2 / 3 * 0.01),
+    ],
+)
+def test_the_ranges_are_the_sum_over_every_part(stage, cards, frequency, q):
+    """At 1 % and 10 %, to first order."""
+    found = stage(cards).filter
+    for value, span, share in (
+        (found.frequency, found.frequency_worst, frequency),
+        (found.q, found.q_worst, q),
+    ):
+        assert span.high - value == pytest.approx(share * value, rel=0.02)
+        assert value - span.low == pytest.approx(share * value, rel=0.02)
+
+
+@pytest.mark.parametrize(
+    "cards",
+    [
+        UNITY.replace("C1 a out 2n", "C1 a 0 2n"),  # nothing leads back: two sections in a row
+        "VIN in 0 SIN(0 1 100)\nR1 in n 10k\nR2 n out 10k\nC2 n out 1n\nXU1 0 n vp vn out TL072",
+        "VIN in 0 SIN(0 1 100)\nXU1 in out vp vn out TL072",
+    ],
+)
+def test_what_is_no_filter_of_second_order(stage, cards):
+    """One pole, none, or two that no amplifier couples."""
+    assert stage(cards).filter is None
