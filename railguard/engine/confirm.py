@@ -3,17 +3,12 @@
 import msgspec
 
 from railguard.analysis.stage import Bound, Design, Range, Stage, Unknown
-from railguard.engine.operating import Simulated, Simulation
+from railguard.engine.operating import APART, Simulated, Simulation
 
 MET = 0.02
 """A demand counts as met when the simulation comes within this share of its span."""
 SMALLEST = 0.02
 """V within which an output voltage counts as reached whatever its span."""
-
-
-APART = 0.02
-"""V between the inputs from which an amplifier has stopped following; a working loop holds them
-within a few millivolts."""
 
 
 class Outcome(msgspec.Struct, frozen=True):
@@ -124,12 +119,14 @@ def _filled(stage: Stage, simulation: Simulation) -> Stage:
             unknown[part] = Unknown(stage.unknown[part].why, "nothing: it changes with the signal")
     output, current = stage.output, stage.current
     if "output" in bent:
+        # What clips is asked for more than it gives; the demand is what it would have to give.
+        asked = done.output if done.wanted.high is None else done.wanted
         output = msgspec.structs.replace(
             output,
             level=done.level,
-            demand=done.output,
-            high=_at(output.high, done.output.high, done),
-            low=_at(output.low, done.output.low, done),
+            demand=asked,
+            high=_at(output.high, asked.high, asked, done.level),
+            low=_at(output.low, asked.low, asked, done.level),
         )
     if "current" in bent:
         source, sink = max(done.current.high or 0.0, 0.0), max(-(done.current.low or 0.0), 0.0)
@@ -143,5 +140,5 @@ def _filled(stage: Stage, simulation: Simulation) -> Stage:
     return msgspec.structs.replace(stage, output=output, current=current, unknown=unknown)
 
 
-def _at(bound: Bound, value: float | None, done: Simulated) -> Bound:
-    return msgspec.structs.replace(bound, demand=value, level=done.level, span=done.output.span)
+def _at(bound: Bound, value: float | None, asked: Range, level: float) -> Bound:
+    return msgspec.structs.replace(bound, demand=value, level=level, span=asked.span)

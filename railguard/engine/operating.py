@@ -11,12 +11,20 @@ import msgspec
 import numpy as np
 from numpy.typing import NDArray
 
-from railguard.analysis.stage import Design, Range
+from railguard.analysis.stage import Design, Range, Stage
 from railguard.devices.catalogue import Catalogue
 from railguard.engine.bench import Bench, bench_of
 from railguard.engine.ladder import Found, climb
 from railguard.engine.process import Engine
 from railguard.engine.rawfile import Plot
+
+APART = 0.02
+"""V between the inputs from which an amplifier has stopped following; a working loop holds them
+within a few millivolts."""
+EVEN = 0.05
+"""Share by which a noise gain may differ over the band and still tell what an output would do."""
+AT_END = 0.02
+"""Share of its range within which an output stands at an end of it."""
 
 
 class Simulated(msgspec.Struct, frozen=True):
@@ -25,6 +33,8 @@ class Simulated(msgspec.Struct, frozen=True):
     current  out of the output pin
     plus     at its non-inverting input
     apart    largest voltage between its inputs: a few millivolts while its loop works
+    wanted   where its output would be if nothing stopped it; empty where its loop is not known or
+             differs over the band
     meets    False where the run was too short for its tones to meet at their worst
     """
 
@@ -33,6 +43,7 @@ class Simulated(msgspec.Struct, frozen=True):
     level: float
     plus: Range = Range()
     apart: float | None = None
+    wanted: Range = Range()
     meets: bool = True
 
 
@@ -55,25 +66,50 @@ def simulate(design: Design, catalogue: Catalogue, engine: Engine) -> Simulation
     """
     bench = bench_of(design, catalogue)
     found = climb(bench, engine)
-    stages = {name: _simulated(name, bench, found) for name in bench.amplifiers}
+    gains = {stage.designator: _even_gain(stage) for stage in design.stages}
+    stages = {name: _simulated(name, bench, found, gains.get(name)) for name in bench.amplifiers}
     return Simulation(stages, bench.remarks)
 
 
-def _simulated(name: str, bench: Bench, found: Found) -> Simulated:
+def _even_gain(stage: Stage) -> float | None:
+    """Return the noise gain of a stage whose loop is the same from DC to the top of its band."""
+    loop = stage.loop
+    if "loop" in stage.unknown or loop.dc != "negative" or stage.use != "linear":
+        return None
+    if loop.noise_gain is None or loop.noise_gain_dc is None:
+        return None
+    even = abs(loop.noise_gain - loop.noise_gain_dc) <= EVEN * loop.noise_gain_dc
+    return loop.noise_gain_dc if even else None
+
+
+def _simulated(name: str, bench: Bench, found: Found, gain: float | None) -> Simulated:
     level = float(found.levels[bench.output(name)])
     if found.waves is None:
         return Simulated(Range(), Range(), level)
     waves = found.waves
     kept = waves.real("time") >= bench.settled
     plus, minus = (_volts(waves, node)[kept] for node in bench.inputs(name))
+    output = _volts(waves, bench.output(name))[kept]
     return Simulated(
-        output=_range(_volts(waves, bench.output(name))[kept]),
+        output=_range(output),
         current=_range(waves.current(bench.sensed(name))[kept]),
         level=level,
         plus=_range(plus),
         apart=float(np.max(np.abs(plus - minus))),
+        wanted=Range() if gain is None else _wanted(output, plus - minus, gain),
         meets=bench.meets,
     )
+
+
+def _wanted(output: NDArray[np.float64], apart: NDArray[np.float64], gain: float) -> Range:
+    """Return the range an output would cover if it could: its inputs are together then.
+
+    Only where it stands at an end of its range: on an edge it is late, not short.
+    """
+    span = float(np.ptp(output))
+    at_an_end = (output >= output.max() - AT_END * span) | (output <= output.min() + AT_END * span)
+    stopped = at_an_end & (np.abs(apart) > APART)
+    return _range(output + np.where(stopped, gain * apart, 0.0))
 
 
 def _volts(waves: Plot, node: str) -> NDArray[np.float64]:

@@ -1,5 +1,6 @@
 """Findings and open stages held against ngspice."""
 
+import math
 import shutil
 
 import pytest
@@ -77,3 +78,28 @@ def test_a_circuit_ngspice_refuses_costs_only_itself():
     first, second = review([bad, good], engine=engine).designs
     assert any("ngspice" in remark.message for remark in first.design.remarks)
     assert "Confirmed" in messages(second, "headroom-output")[0]
+
+
+def test_a_stage_that_clips_in_the_simulation_is_asked_for_more_than_it_gives():
+    """By hand: a diode drop below 1.9 V, twenty times over, is 25 V and more; 12 V are there."""
+    cards = (
+        "VIN in 0 SIN(1 0.9 10)\nD1 in p DX\nR1 p 0 10k\nXU1 p n vp 0 out LM358\n"
+        "R2 out n 180k\nR3 n 0 9.53k\n.model DX D(IS=1e-14)"
+    )
+    (design,) = [simulated(cards, fill=True, confirm=False)]
+    (stage,) = design.design.stages
+    gain = 1 + 180 / 9.53
+    drop = 0.0259 * math.log(1.3e-3 / 10 / 1e-14)
+    assert stage.output.demand.high == pytest.approx(gain * (1.9 - drop), rel=0.02)
+    (finding,) = [f for f in design.findings if f.rule == "headroom-output"]
+    assert finding.severity in ("critical", "major")
+
+
+def test_a_rectifier_that_rests_at_its_rail_is_not_asked_beyond_it():
+    """While its diode blocks there is no loop, and nobody asks the output for anything."""
+    cards = (
+        "VIN in 0 SIN(0 1 100)\nXU1 in n vp vn o TL072\nD1 o n DX\nR1 n 0 10k\n"
+        ".model DX D(IS=1e-14)"
+    )
+    design = simulated(cards, fill=True, confirm=False)
+    assert [f for f in design.findings if f.severity in ("critical", "major")] == []
