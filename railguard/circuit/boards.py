@@ -6,7 +6,7 @@ from railguard.circuit.model import Element
 from railguard.circuit.sources import Source
 from railguard.circuit.values import is_rating, not_fitted
 from railguard.circuit.waveforms import FUNCTIONS
-from railguard.deck.cards import Assignment, Items
+from railguard.deck.cards import Assignment, Group, Items
 from railguard.deck.lines import Line
 from railguard.deck.numbers import read_number
 
@@ -73,7 +73,8 @@ def _rated(words: list[str]) -> bool:
 
 def _drives(names: Names, rest: Items) -> bool:
     """Tell whether what stands behind two nodes makes a source."""
-    first = rest[2]
+    opened = [i for item in rest for i in (item.items if isinstance(item, Group) else (item,))]
+    first = opened[2] if len(opened) > 2 else None
     if not isinstance(first, str):
         return True
     return first.lower() in _SOURCE_WORDS or names.number(first) is not None

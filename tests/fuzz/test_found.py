@@ -17,6 +17,9 @@ FOUND = {
         "R9 out p 10k\n"
     ),
     "a battery of one node": "gauge\nb x.lib\nb2 x.lib tt\nX1 0 0 0 0 0 TL072\n",
+    "everything in one parenthesis": (
+        "gauge\nVR (   v 2 200)\nIC1 (a b) x(1 2)\nX1 0 0 0 0 0 TL072\n"
+    ),
     "a node of empty quotes": "gauge\nM1 P ` v 2 '' n out 1meg\nR1 P 0 1k\nR2 '' 0 1k\n",
     "steering characters": "gauge\nR1\x9b31m a \u202eb 1k\nX1 a b c d \u2066e ODD\n",
 }
