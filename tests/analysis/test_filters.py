@@ -50,25 +50,31 @@ def test_a_filter_is_what_its_formula_says(stage, cards, kind, hertz, q, gain):
     assert abs(found.gain) == pytest.approx(gain, rel=0.02)
 
 
+R, C = (1.01, 0.99), (1.1, 0.9)
+"""What parts of 1 % and of 10 % may be times their value."""
+
+
 @pytest.mark.parametrize(
-    ("cards", "frequency", "q"),
+    ("cards", "high", "low"),
     [
-        # each part by half its tolerance; equal resistors leave the Q alone
-        (UNITY, 0.5 * (0.02 + 0.2), 0.5 * 0.2),
-        # sensitivities of the Q: Q - 1/2 to the resistors, 2 Q - 1/2 to the capacitors, and Q to
-        # the gain of 1.5, of which a third moves by 2 %
-        (GAIN, 0.5 * (0.02 + 0.2), (2 / 3 - 0.5) * 0.02 + (4 / 3 - 0.5) * 0.2 + 2 / 3 * 0.01),
+        # equal resistors leave the Q alone; the capacitors' ratio is under its root
+        (UNITY, (C[0] / C[1]) ** 0.5, (C[1] / C[0]) ** 0.5),
+        # powers of the Q: Q - 1/2 of the resistors, 2 Q - 1/2 of the capacitors, one of the gain
+        # of 1.5, of which a third moves by 2 %
+        (
+            GAIN,
+            (R[0] / R[1]) ** (1 / 6) * (C[0] / C[1]) ** (5 / 6) / (1 - 0.02 / 3),
+            (R[1] / R[0]) ** (1 / 6) * (C[1] / C[0]) ** (5 / 6) / (1 + 0.02 / 3),
+        ),
     ],
 )
-def test_the_ranges_are_the_sum_over_every_part(stage, cards, frequency, q):
-    """At 1 % and 10 %, to first order."""
+def test_the_ranges_are_those_of_every_part_at_its_worst(stage, cards, high, low):
+    """The frequency goes with one over the root of all four; each part at the end that counts."""
     found = stage(cards).filter
-    for value, span, share in (
-        (found.frequency, found.frequency_worst, frequency),
-        (found.q, found.q_worst, q),
-    ):
-        assert span.high - value == pytest.approx(share * value, rel=0.02)
-        assert value - span.low == pytest.approx(share * value, rel=0.02)
+    assert found.frequency_worst.high == pytest.approx(found.frequency / (R[1] * C[1]), rel=1e-4)
+    assert found.frequency_worst.low == pytest.approx(found.frequency / (R[0] * C[0]), rel=1e-4)
+    assert found.q_worst.high == pytest.approx(found.q * high, rel=1e-3)
+    assert found.q_worst.low == pytest.approx(found.q * low, rel=1e-3)
 
 
 @pytest.mark.parametrize(
