@@ -9,7 +9,7 @@ seen is open, not unbiased.
 import re
 from collections import defaultdict, deque
 from collections.abc import Iterable, Mapping
-from typing import Literal
+from typing import Literal, NamedTuple
 
 import msgspec
 
@@ -35,6 +35,14 @@ class DcPath(msgspec.Struct, frozen=True):
     via: tuple[str, ...]
 
 
+class _Met(NamedTuple):
+    """What stands on a net: (net behind, designator) of what conducts, designators of the rest."""
+
+    conducting: list[tuple[str, str]]
+    unseen: list[str]
+    hanging: list[str]
+
+
 class DcMap:
     """The circuit's nets and what conducts between them at DC."""
 
@@ -58,6 +66,7 @@ class DcMap:
         for amplifier in amplifiers:
             self._outputs[amplifier.output].add(amplifier.designator)
         self._potentials = {GROUND, *stated}
+        self._sorted: dict[str, _Met] = {}
 
     def at(self, net: str) -> list[Element]:
         """Return the elements on a net, amplifiers left out."""
@@ -66,6 +75,21 @@ class DcMap:
     def is_potential(self, net: str) -> bool:
         """Tell whether a net's potential is stated or driven."""
         return net in self._potentials or net in self._outputs
+
+    def _met(self, net: str) -> "_Met":
+        """Sort the elements on a net, once however many inputs are searched from."""
+        found = self._sorted.get(net)
+        if found is None:
+            found = self._sorted[net] = _Met([], [], [])
+            for element in self.at(net):
+                name = element.designator
+                if element.kind in _CONDUCTS and len(element.nets) >= 2:
+                    found.conducting.extend((o, name) for o in element.nets[:2] if o != net)
+                elif element.kind in _NON_LINEAR or _leaves(element):
+                    found.unseen.append(name)
+                else:
+                    found.hanging.append(name)
+        return found
 
     def path(self, net: str, own: str) -> DcPath:
         """Search from the net of an input; `own` is its amplifier's designator."""
@@ -84,16 +108,13 @@ class DcMap:
             if own in drivers:
                 through_own = way
                 continue
-            for element in self.at(at):
-                if element.kind in _CONDUCTS and len(element.nets) >= 2:
-                    for other in element.nets[:2]:
-                        if other not in seen:
-                            seen.add(other)
-                            queue.append((other, (*way, element.designator)))
-                elif element.kind in _NON_LINEAR or _leaves(element):
-                    unseen.append(element.designator)
-                else:
-                    hangs.append(element.designator)
+            met = self._met(at)
+            for other, name in met.conducting:
+                if other not in seen:
+                    seen.add(other)
+                    queue.append((other, (*way, name)))
+            unseen += met.unseen
+            hangs += met.hanging
         if unseen:
             return DcPath("open", tuple(dict.fromkeys(unseen)))
         if through_own is not None:

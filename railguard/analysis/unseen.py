@@ -269,13 +269,18 @@ def spoiled(answers: Answers, things: tuple[Unseen, ...], mid: Factor | None) ->
     moved_dc = _moved(dc, things)
     # What has no DC path moves freely at DC only; at signal frequencies its capacitors hold it.
     moved_ac = _moved(ac, things) & np.array([t.sort != "floating" for t in things])
-    return [
-        Spoiled(
-            tuple(t for k, t in enumerate(things) if moved_dc[q, k]),
-            tuple(t for k, t in enumerate(things) if moved_ac[q, k] and not moved_dc[q, k]),
-        )
-        for q in range(len(rows))
-    ]
+    # Quantities of one part are moved by the same things, mostly: each set is listed once.
+    known: dict[tuple[bytes, bytes], Spoiled] = {}
+    result = []
+    for at_dc, at_ac in zip(moved_dc, moved_ac & ~moved_dc, strict=True):
+        key = at_dc.tobytes(), at_ac.tobytes()
+        if key not in known:
+            known[key] = Spoiled(
+                tuple(things[k] for k in np.flatnonzero(at_dc)),
+                tuple(things[k] for k in np.flatnonzero(at_ac)),
+            )
+        result.append(known[key])
+    return result
 
 
 def _moved(

@@ -67,12 +67,14 @@ def charges_itself(amplifier: Amplifier, ways: Ways) -> bool:
     """Tell whether an output charges a capacitor at the inverting input and sets the other one."""
     if amplifier.minus in ways.held or amplifier.plus in ways.held:
         return False  # whatever is grounded somewhere stands on a grounded input's net
-    on_minus = [e for e in ways.around.get(amplifier.minus, ()) if len(e.nets) >= 2]
-    charged = any(e.kind == "C" and GROUND in e.nets for e in on_minus)
-    by_output = any(e.kind == "R" and amplifier.output in e.nets for e in on_minus)
-    on_plus = ways.around.get(amplifier.plus, ())
-    turned = any(e.kind == "R" and amplifier.output in e.nets for e in on_plus)
-    return charged and by_output and turned
+    on_minus = ways.around.get(amplifier.minus, ())
+    if not any(e.kind == "C" and GROUND in e.nets for e in on_minus):
+        return False
+    # A net may hold hundreds of elements: each is looked through only where the last one says so.
+    return all(
+        any(e.kind == "R" and amplifier.output in e.nets for e in ways.around.get(pin, ()))
+        for pin in (amplifier.minus, amplifier.plus)
+    )
 
 
 def bridges(amplifier: Amplifier, ways: Ways) -> tuple[str, ...]:
