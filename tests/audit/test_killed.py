@@ -18,9 +18,9 @@ KILLS = 10
 
 @pytest.fixture
 def share(tmp_path):
-    """More designs than ten commits hold, of several kinds, with includes and an archive."""
+    """Twice the designs that ten commits hold, of several kinds, with includes and an archive."""
     kinds = (SOUND, CLIPPED, BARE, UNKNOWN, LIBRARY)
-    names = {f"lot{k % 7}/design{k:04}.cir": kinds[k % 5] for k in range(1600)}
+    names = {f"lot{k % 7}/design{k:04}.cir": kinds[k % 5] for k in range(2800)}
     names |= {
         f"bench{k}.cir": f'bench {k}\n.include "lot0/design{7 * k:04}.cir"\n.tran 1u 1m\n.end\n'
         for k in range(5)
