@@ -71,7 +71,7 @@ def keeps_closed(catalogue: Catalogue) -> Closed:
 
     @cache
     def closed(name: str, ports: tuple[str, ...], notes: tuple[str, ...], calls: bool) -> bool:
-        match = catalogue.match(name)
+        match = catalogue.match(name, suggest=False)
         if match.sort == "unknown":
             return not calls and _named_pins(match, ports, notes)
         if match.sort == "generic":

@@ -260,6 +260,8 @@ def bridge_resistors(
     dividers stand between those nets, the two taps that one instrumentation amplifier compares.
     """
     amplifiers = tuple(amplifiers)
+    if not amplifiers:
+        return frozenset()
     resistors = [e for e in elements if e.kind == "R" and e.fitted and e.value]
     ohms = {e.designator: e.value or 0.0 for e in resistors}
     around: dict[str, list[Element]] = defaultdict(list)

@@ -10,6 +10,8 @@ _LEVELS = (
     re.compile(r"^(?P<whole>\d{1,3})(?:\.(?P<part>\d{1,3}))?V?(?P<sign>[+-])$"),
     re.compile(r"(?i)^(?P<sign>[PN])(?P<whole>\d{1,3})V(?P<part>\d{0,3})$"),
 )
+_MAY_STATE = re.compile(r"[Vv+\-]")
+"""What every name of a level holds."""
 HIGHEST_NAMED = 100.0
 
 
@@ -19,6 +21,8 @@ def level_from_name(net: str) -> float | None:
 
     A name counts only with a V or a sign; `N015` and `12` are names a program made.
     """
+    if _MAY_STATE.search(net) is None:
+        return None
     leaf = net.rsplit("/", 1)[-1]
     leaf = leaf.rsplit(".", 1)[-1] if leaf.count(".") and not re.search(r"\d\.\d", leaf) else leaf
     words = [leaf, *re.split(r"[_:]", leaf)]

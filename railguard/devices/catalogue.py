@@ -53,9 +53,9 @@ class Catalogue:
         self._listed = listed
         self._names = names
 
-    def match(self, name: str) -> Match:
-        """Say what a name in a netlist stands for."""
-        found = matching.identify(name, self._names)
+    def match(self, name: str, *, suggest: bool = True) -> Match:
+        """Say what a name in a netlist stands for; with the nearest name, where it is wanted."""
+        found = matching.identify(name, self._names, suggest=suggest)
         return Match(
             name=name,
             sort=found.sort,

@@ -53,8 +53,11 @@ _SEPARATED = re.compile(r"^([A-Z]{1,4})[ _\-](?=\d)")
 _TOKENS = re.compile(r"[/|,;:_()\[\]]+")
 
 
-def identify(name: str, names: Names) -> Found:
-    """Say what a name stands for: an op-amp of the catalogue, another device, or nothing known."""
+def identify(name: str, names: Names, *, suggest: bool = True) -> Found:
+    """Say what a name stands for: an op-amp of the catalogue, another device, or nothing known.
+
+    suggest  False leaves out the name that is one slip away: to find it all names are compared
+    """
     code = normalised(name)
     if not code or (_STAGE_WORDS.search(code) and code not in names.bases):
         return Found(sort="unknown")
@@ -71,7 +74,7 @@ def identify(name: str, names: Names) -> Found:
             return Found(sort=other)
     if found := _by_series(code):
         return found
-    return Found(sort="unknown", nearest=_nearest(code, names))
+    return Found(sort="unknown", nearest=_nearest(code, names) if suggest else "")
 
 
 def normalised(name: str) -> str:

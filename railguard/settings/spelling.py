@@ -34,6 +34,8 @@ def respelt(
     A name the netlist does not have stays as it is: the user's file may state it for another one.
     Where a directive states it, it is a problem, as a directive speaks of its own netlist only.
     """
+    if not (settings.nets or settings.signals or settings.loads or settings.uses or settings.pins):
+        return settings, ()
     net = _Names(nets)
     stage = _Names(())
     for designator in designators:
