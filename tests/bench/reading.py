@@ -3,6 +3,7 @@
 Run: python tests/bench/reading.py
 """
 
+import gc
 import resource
 import shutil
 import subprocess
@@ -10,14 +11,13 @@ import sys
 import tempfile
 import time
 import tracemalloc
-from collections.abc import Callable
 from pathlib import Path
 
 from railguard.circuit.flatten import flatten
 from railguard.deck.files import deck_from_text
 
 SIZES = (1_000, 10_000, 100_000)
-REPEATS = 3
+REPEATS = 5
 
 
 def deck(cards: int) -> str:
@@ -80,9 +80,14 @@ def ngspice(text: str) -> float | None:
         return after.ru_utime + after.ru_stime - before.ru_utime - before.ru_stime
 
 
-def best(measure: Callable[[str], float], text: str) -> float:
-    """Return the least of some measurements: what else the machine does only adds."""
-    return min(measure(text) for _ in range(REPEATS))
+def side_by_side(text: str) -> tuple[float, float]:
+    """Return the least of some measurements of each, taken in turns: other work only adds."""
+    own, their = [], []
+    for _ in range(REPEATS):
+        for found, reader in ((own, ours), (their, pyspice)):
+            gc.collect()  # what the one before left is not this one's work
+            found.append(reader(text))
+    return min(own), min(their)
 
 
 def main() -> None:
@@ -91,7 +96,7 @@ def main() -> None:
     print(f"{'cards':>8} {'seconds':>9} {'us a card':>10} {'PySpice s':>10} {'ngspice s':>10}")
     for size in SIZES:
         text = deck(size)
-        took, theirs = best(ours, text), best(pyspice, text)
+        took, theirs = side_by_side(text)
         simulator = ngspice(text) if size <= 10_000 else None
         last = f"{simulator:>10.3f}" if simulator is not None else f"{'':>10}"
         print(f"{size:>8} {took:>9.3f} {took / size * 1e6:>10.1f} {theirs:>10.3f} {last}")
