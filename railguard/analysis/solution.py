@@ -8,9 +8,10 @@ import numpy as np
 
 from railguard.analysis.available import output_reach
 from railguard.analysis.boost import boosted
-from railguard.analysis.closing import Closing, Off, Seen, closings, off_of
+from railguard.analysis.closing import Closing, Seen, closings
 from railguard.analysis.corners import Nuisance, Spread, spread
 from railguard.analysis.dcpaths import DcMap
+from railguard.analysis.deviations import Off, off_of
 from railguard.analysis.lined import Boost
 from railguard.analysis.lined import Part as Boostable
 from railguard.analysis.loops import (

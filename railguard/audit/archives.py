@@ -89,7 +89,7 @@ _DAMAGE = (
     lzma.LZMAError,
     zlib.error,
     EOFError,
-    NotImplementedError,
+    NotImplementedError,  # zipfile's word for a compression it does not know
     RuntimeError,  # zipfile's word for an encrypted member
     gzip.BadGzipFile,
     ValueError,

@@ -38,7 +38,7 @@ def loaded() -> Library:
         warnings.simplefilter("ignore")
         from PySpice.Spice.NgSpice import Shared
 
-    class Plain(Shared.NgSpiceShared):  # type: ignore[misc]
+    class Plain(Shared.NgSpiceShared):  # type: ignore[misc] # PySpice is untyped
         """PySpice's shared engine, with errors told from notes."""
 
         @staticmethod

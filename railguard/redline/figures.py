@@ -8,6 +8,7 @@ from collections.abc import Callable, Iterator, Mapping
 from railguard.analysis.available import current_reach, input_reach, output_reach
 from railguard.analysis.stage import Stage
 from railguard.devices.model import Device
+from railguard.devices.model import Figure as Listed
 from railguard.redline.model import Figure
 from railguard.rules.finding import Finding
 from railguard.units import si
@@ -102,22 +103,29 @@ def loop_gain(finding: Finding, stage: Stage, device: Device) -> Iterator[tuple[
 
 def bias(finding: Finding, stage: Stage, device: Device) -> Iterator[tuple[Figure, bool]]:
     """Compare the bias current with what the error allows."""
-    value = device.bias_current.best
-    present = stage.family.bias_current.best if stage.family is not None else None
-    if value is None or not present or not finding.demand or not finding.limit:
-        return
-    asked = present * finding.limit / finding.demand
-    yield Figure("bias current", f"at most {si(asked, 'A')}", si(value, "A")), value <= asked
+    return _in_proportion("bias current", "A", finding, stage, device, lambda d: d.bias_current)
 
 
 def offset(finding: Finding, stage: Stage, device: Device) -> Iterator[tuple[Figure, bool]]:
     """Compare the offset voltage with what the range allows."""
-    value = device.offset_voltage.best
-    present = stage.family.offset_voltage.best if stage.family is not None else None
+    return _in_proportion("offset", "V", finding, stage, device, lambda d: d.offset_voltage)
+
+
+def _in_proportion(
+    name: str,
+    unit: str,
+    finding: Finding,
+    stage: Stage,
+    device: Device,
+    listed: Callable[[Device], Listed],
+) -> Iterator[tuple[Figure, bool]]:
+    """Compare a figure that makes an error with what the error may be, from what it makes now."""
+    value = listed(device).best
+    present = listed(stage.family).best if stage.family is not None else None
     if value is None or not present or not finding.demand or not finding.limit:
         return
     asked = present * finding.limit / finding.demand
-    yield Figure("offset", f"at most {si(asked, 'V')}", si(value, "V")), value <= asked
+    yield Figure(name, f"at most {si(asked, unit)}", si(value, unit)), value <= asked
 
 
 def stable(finding: Finding, stage: Stage, device: Device) -> Iterator[tuple[Figure, bool]]:

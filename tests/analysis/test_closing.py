@@ -7,7 +7,8 @@ import msgspec
 import numpy as np
 import pytest
 
-from railguard.analysis.closing import Seen, closings, off_of
+from railguard.analysis.closing import Seen, closings
+from railguard.analysis.deviations import off_of
 from railguard.analysis.loops import crossing, known_parasitics, phase_margin
 from railguard.analysis.network import Network
 from railguard.analysis.recognise import keeps_closed, recognise
