@@ -10,7 +10,7 @@ from collections.abc import Callable
 import msgspec
 
 from railguard.devices.model import UNLISTED_CURRENT, Device, Figure, SwingPoint
-from railguard.devices.swing import Drop, drop
+from railguard.devices.swing import swing
 from railguard.words import Basis
 
 PRACTICE_DROP = (1.0, 2.0)
@@ -72,21 +72,20 @@ def output_reach(
             rail + sign * near, rail + sign * far, "practice", "practice", "common practice"
         )
 
-    def end(level: float) -> Drop:
-        return drop(points, max(current_at(level), 0.0), total)
+    curves = swing(points, total)
 
     def settle(sure: bool) -> tuple[float | None, Basis, str]:
         # The end of the swing is where rail, drop and load line meet. The curves are straight
         # piecewise, so a secant meets them in a few turns.
         level, before = rail, None
         for _ in range(_ROUNDS):
-            dropped = end(level)
+            amps = max(current_at(level), 0.0)
+            dropped = curves.at(amps)
             volts = dropped.guaranteed if sure else dropped.typical
             basis = dropped.guaranteed_basis if sure else dropped.typical_basis
             if volts is None:
                 return None, basis, dropped.condition
-            met = rail + sign * min(volts, total)
-            met += sign * rail_ohms * max(current_at(level), 0.0)
+            met = rail + sign * (min(volts, total) + rail_ohms * amps)
             gap = met - level
             if abs(gap) < 1e-6 * total:
                 break

@@ -5,12 +5,15 @@ from collections.abc import Callable
 import numpy as np
 
 from railguard.analysis.available import Reach
-from railguard.analysis.corners import Flags, Spread
+from railguard.analysis.corners import Spread
 from railguard.analysis.network import Real
 from railguard.analysis.stage import Bound, Pair
 from railguard.words import Basis
 
 CULPRITS = 3
+ALIKE = 9
+"""Decimals of the heaviest weight to which two are compared."""
+TINY = 1e-300
 
 Exact = Callable[[Real], tuple[float, float]]
 """Solves at given shares of all tolerances: (demand, how far the limit has moved)."""
@@ -44,12 +47,24 @@ def bound(
     stated = default = None
     culprits: tuple[str, ...] = ()
     if limit is not None and len(spread.delta):
-        if spread.stated.any():
-            stated = _corner(upper, demand, limit, moves, limit_moves, spread, spread.stated, exact)
-        everything = np.ones(len(spread.delta), dtype=bool)
-        default = _corner(upper, demand, limit, moves, limit_moves, spread, everything, exact)
-        weight = np.abs(limit_moves - moves) * spread.delta
-        order = np.argsort(-weight)[:CULPRITS]
+        room = limit_moves - moves
+        away = np.sign(room) if not upper else -np.sign(room)
+
+        def corner(signs: Real) -> Pair:
+            """Return demand and limit where tolerances leave the least room between them."""
+            if exact is not None:
+                reached, moved = exact(signs)
+                return Pair(reached, limit + moved)
+            shift = signs * spread.delta
+            return Pair(float(demand + moves @ shift), float(limit + limit_moves @ shift))
+
+        if spread.any_stated:
+            stated = corner(away * spread.stated)
+        default = corner(away)
+        weight = np.abs(room) * spread.delta
+        # Two that weigh the same stand in the order of the netlist, whatever rounding does.
+        ranked = np.round(weight / max(weight.max(), TINY), ALIKE)
+        order = np.argsort(-ranked, kind="stable")[:CULPRITS]
         culprits = tuple(dict.fromkeys(spread.parameters[i].name for i in order if weight[i] > 0))
     return Bound(
         upper=upper,
@@ -69,22 +84,3 @@ def bound(
         condition=reach.condition,
         unsure=unsure,
     )
-
-
-def _corner(
-    upper: bool,
-    demand: float,
-    limit: float,
-    moves: Real,
-    limit_moves: Real,
-    spread: Spread,
-    mask: Flags,
-    exact: Exact | None,
-) -> Pair:
-    """Return demand and limit where tolerances leave the least room between them."""
-    room = (limit_moves - moves) if upper else (moves - limit_moves)
-    if exact is not None:
-        reached, moved = exact(-np.sign(room) * mask)
-        return Pair(reached, limit + moved)
-    shift = -np.sign(room) * spread.delta * mask
-    return Pair(float(demand + moves @ shift), float(limit + limit_moves @ shift))

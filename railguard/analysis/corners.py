@@ -1,9 +1,9 @@
 """What tolerances do to every quantity: extreme values through adjoint sensitivities.
 
-For y = c.x with M x = b, one adjoint row a = c.M^-1 gives the derivative to every element:
-dy/dln R = g (a_i - a_j)(x_i - x_j), dy/dln C = -sC (a_i - a_j)(x_i - x_j), dy/dV = a_row. The
-extreme value is the sum of the magnitudes times the tolerances; a margin's extreme value uses
-the difference of the sensitivities of its two sides, so what moves both together cancels.
+`analysis.sensitivity` gives the derivative to every element; that to a source is the adjoint's
+entry in its row. The extreme value is the sum of the magnitudes times the tolerances; a margin's
+extreme value uses the difference of the sensitivities of its two sides, so what moves both
+together cancels.
 
 Source  ECSS-Q-HB-30-01A, Worst case analysis (method: extreme value analysis, RSS)
 """
@@ -11,6 +11,7 @@ Source  ECSS-Q-HB-30-01A, Worst case analysis (method: extreme value analysis, R
 import fnmatch
 import re
 from collections.abc import Iterable, Mapping
+from functools import cached_property
 
 import msgspec
 import numpy as np
@@ -18,6 +19,7 @@ import numpy.typing as npt
 
 from railguard.analysis.network import Network, Real, Stamp
 from railguard.analysis.ranges import Answers
+from railguard.analysis.sensitivity import Elements
 from railguard.circuit.model import Element
 from railguard.devices.names import schematic_name
 from railguard.settings.model import Tolerances
@@ -51,7 +53,7 @@ class Parameter(msgspec.Struct, frozen=True):
         return self.spread or ((self.row, self.value),)
 
 
-class Spread(msgspec.Struct, frozen=True, kw_only=True):
+class Spread(msgspec.Struct, frozen=True, kw_only=True, dict=True):
     """Everything that may be off, and by how much.
 
     parameters  shape (parameters,)
@@ -68,17 +70,25 @@ class Spread(msgspec.Struct, frozen=True, kw_only=True):
     high: Real
     low: Real
 
-    @property
-    def elements(self) -> tuple[list[Stamp], Real]:
-        """Return the elements among the parameters, and the share each may be off."""
-        stamps = [p.stamp for p in self.parameters if p.stamp is not None]
-        return stamps, self.delta[: len(stamps)]
+    @cached_property
+    def elements(self) -> Elements:
+        """The elements among the parameters: the first of them."""
+        return Elements.of(p.stamp for p in self.parameters if p.stamp is not None)
 
     @property
+    def tolerances(self) -> Real:
+        """Return the share each element may be off, shape (elements,)."""
+        return self.delta[: len(self.elements)]
+
+    @cached_property
     def shares(self) -> dict[str, float]:
-        """Return the share each element may be off, by designator."""
-        stamps, delta = self.elements
-        return {s.designator: float(d) for s, d in zip(stamps, delta, strict=True)}
+        """The share each element may be off, by designator."""
+        return dict(zip(self.elements.names, self.tolerances.tolist(), strict=True))
+
+    @cached_property
+    def any_stated(self) -> bool:
+        """True where the user or a card states any of them."""
+        return bool(self.stated.any())
 
     @property
     def names(self) -> tuple[str, ...]:
@@ -174,32 +184,13 @@ def spread(
     )
 
 
-def factors(stamps: list[Stamp], s: complex) -> npt.NDArray[np.complex128]:
-    """Return -dM/dln p of each element for its unit pattern, shape (elements,)."""
-    return np.array(
-        [stamp.value if stamp.kind == "R" else (-s if stamp.kind == "C" else s) * stamp.value
-         for stamp in stamps],
-        dtype=np.complex128,
-    )  # fmt: skip
-
-
-def differences(
-    vectors: npt.NDArray[np.complex128], stamps: list[Stamp]
-) -> npt.NDArray[np.complex128]:
-    """Return each vector's difference across each element, shape (vectors, elements)."""
-    padded = np.concatenate([vectors, np.zeros((len(vectors), 1))], axis=1)
-    a = np.array([stamp.a for stamp in stamps], dtype=np.int64)
-    b = np.array([-1 if stamp.kind == "L" else stamp.b for stamp in stamps], dtype=np.int64)
-    return np.asarray(padded[:, a] - padded[:, b])
-
-
 def _elements(answers: Answers, stamps: list[Stamp]) -> tuple[Real, Real]:
     count = len(answers.rows)
     if not stamps:
         return np.zeros((count, 0)), np.zeros((count, 0))
-    adjoint = answers.dc.adjoint([int(r) for r in answers.rows])
-    level = differences(adjoint, stamps) * differences(answers.x[None, :].astype(complex), stamps)
-    dc = (level * factors(stamps, 0j)).real
+    elements = Elements.of(stamps)
+    adjoint = answers.dc.adjoint(answers.rows.tolist())
+    dc = elements.pulls(adjoint, answers.x.astype(complex), 0j).real
     peaks = np.zeros_like(dc)
     for tone in answers.tones:
         for worst in tone.worst:
@@ -209,9 +200,8 @@ def _elements(answers: Answers, stamps: list[Stamp]) -> tuple[Real, Real]:
             if not alive.any():
                 continue
             picks, rows, values = worst.picks[alive], rows[alive], values[alive]
-            adjoint = worst.factor.adjoint([int(r) for r in rows])
-            change = differences(adjoint, stamps) * differences(worst.x[None, :], stamps)
-            change = change * factors(stamps, 2j * np.pi * worst.hertz)
+            adjoint = worst.factor.adjoint(rows.tolist())
+            change = elements.pulls(adjoint, worst.x, 2j * np.pi * worst.hertz)
             direction = np.conj(values) / np.abs(values)
             peaks[picks] += (direction[:, None] * change).real
     return dc + peaks, dc - peaks
@@ -241,7 +231,7 @@ def _levels(
 ) -> tuple[Real, list[Parameter], list[float], list[bool]]:
     """Derivatives to rails, offsets and bias currents: they move the DC level only."""
     network: Network = answers.network
-    adjoint = answers.dc.adjoint([int(r) for r in answers.rows]).real
+    adjoint = answers.dc.adjoint(answers.rows.tolist()).real
     columns: list[Real] = []
     entries: list[Parameter] = []
     delta: list[float] = []

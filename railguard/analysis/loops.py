@@ -7,6 +7,7 @@ from the line of one that is known to work (`analysis.lined`).
 """
 
 from collections.abc import Iterable, Mapping, Sequence
+from functools import cached_property
 
 import msgspec
 import numpy as np
@@ -42,7 +43,7 @@ BASE_OHMS = 1e3
 CURRENT_GAIN = 100.0
 
 
-class LoopSweep(msgspec.Struct, frozen=True):
+class LoopSweep(msgspec.Struct, frozen=True, dict=True):
     """Loop transmission of all amplifiers over frequency.
 
     hertz   shape (frequencies,)
@@ -56,6 +57,15 @@ class LoopSweep(msgspec.Struct, frozen=True):
     a_beta: Complex
     dc: Real
     local: Mapping[int, tuple[float, Complex]] = {}
+
+    @cached_property
+    def phase(self) -> Real:
+        """The phase of each loop without jumps, degrees, shape (frequencies, amplifiers)."""
+        return _phase(self.a_beta)
+
+    def margin(self, column: int, f: float) -> float:
+        """Return `phase_margin` of one amplifier's loop."""
+        return 180.0 + _at(self.hertz, self.phase[:, column], f)
 
 
 class Margin(msgspec.Struct, frozen=True):
@@ -218,10 +228,14 @@ def _at(hertz: Real, values: Real, f: float) -> float:
     return float(np.interp(np.log(f), np.log(hertz), values))
 
 
+def _phase(a_beta: Complex) -> Real:
+    """Return the phase over frequency, the first axis, without jumps, degrees."""
+    return np.asarray(np.degrees(np.unwrap(np.angle(a_beta), axis=0)))
+
+
 def phase_margin(hertz: Real, a_beta: Complex, f: float) -> float:
     """Return 180 degrees plus the loop's phase at `f`, degrees."""
-    degrees = np.degrees(np.unwrap(np.angle(a_beta)))
-    return 180.0 + _at(hertz, degrees, f)
+    return 180.0 + _at(hertz, _phase(a_beta), f)
 
 
 def crossover_margins(network: Network, crossovers: Mapping[str, float]) -> dict[str, float]:
@@ -295,7 +309,6 @@ def loop_of(
         in_band = float(np.max(noise_gain[swept.hertz <= f_cross], initial=1.0 / beta_dc))
     else:
         in_band = 1.0 / beta_dc
-    phase = np.degrees(np.unwrap(np.angle(a_beta)))
     return Loop(
         dc="negative",
         beta_dc=beta_dc,
@@ -313,8 +326,13 @@ def loop_of(
         band=top,
         loop_gain=_at(swept.hertz, magnitude, max(top, LOWEST_HERTZ)) if top and known else None,
         points=tuple(
-            (float(f), float(n), float(g), float(p))
-            for f, n, g, p in zip(swept.hertz, noise_gain, np.abs(a), phase, strict=True)
+            zip(
+                swept.hertz.tolist(),
+                noise_gain.tolist(),
+                np.abs(a).tolist(),
+                swept.phase[:, column].tolist(),
+                strict=True,
+            )
         )
         if known
         else (),

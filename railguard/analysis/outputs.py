@@ -4,7 +4,6 @@ import numpy as np
 
 from railguard.analysis.available import Reach, current_reach, output_reach
 from railguard.analysis.bounds import bound
-from railguard.analysis.corners import differences, factors
 from railguard.analysis.stage import Bound, Carrier, Current, Output, Part, Range, Supply, Unknown
 from railguard.analysis.surroundings import heaviest_load, load_capacitance
 from railguard.analysis.view import View
@@ -138,18 +137,16 @@ def _slew_ends(view: View, slew: float) -> Range:
     A wave that is no sine is taken to grow as its fundamental does.
     """
     q, spread, tones = view.at("output"), view.solution.spread, view.answers.tones
-    stamps, delta = spread.elements
-    pulls = np.zeros(len(stamps))
+    pulls = np.zeros(len(spread.elements))
     for tone in (tone for tone in tones if tone.slew[q] > 0):
         steep = next(worst for worst in tone.steepest if q in worst.picks)
         row = int(view.answers.rows[q])
         adjoint, value = steep.factor.adjoint([row]), steep.x[row]
         if not value:
             return Range()
-        change = differences(adjoint, stamps) * differences(steep.x[None, :], stamps)
-        change = change[0] * factors(stamps, 2j * np.pi * steep.hertz)
+        change = spread.elements.pulls(adjoint, steep.x, 2j * np.pi * steep.hertz)[0]
         pulls += float(tone.slew[q]) * (change / value).real
-    moved = float(np.abs(pulls) @ delta)
+    moved = float(np.abs(pulls) @ spread.tolerances)
     return Range(max(slew - moved, 0.0), slew + moved)
 
 

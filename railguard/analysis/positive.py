@@ -3,8 +3,6 @@
 import msgspec
 import numpy as np
 
-from railguard.analysis.corners import differences, factors
-from railguard.analysis.network import Complex, Real, Stamp
 from railguard.analysis.stage import Loop, Range
 from railguard.analysis.view import View
 
@@ -108,19 +106,18 @@ def _moves(
     """
     solution, answers, amplifier = view.solution, view.answers, view.amplifier
     spread, passive = solution.spread, solution.passive
-    stamps, _ = spread.elements
-    width = len(spread.delta)
+    elements, width = spread.elements, len(spread.delta)
     name, share, _ = entry if entry is not None else ("", 1.0, 0.0)
     moved, other = ((spread.high[q] + spread.low[q]) / 2 for q in map(view.at, inputs))
     away = view.level(inputs[1]) - view.level(inputs[0])
     of_beta, of_share = np.zeros(width), np.zeros(width)
     plus = passive.dc.adjoint([passive.network.row(amplifier.plus)])
     unit = passive.network.right_hand_side([(amplifier.designator, 1.0)])
-    of_beta[: len(stamps)] = _to_elements(plus, passive.dc.forward(unit), stamps)
+    of_beta[: len(elements)] = elements.pulls(plus, passive.dc.forward(unit), 0j)[0].real
     if entry is not None:
         at = answers.dc.adjoint([int(answers.rows[view.at(inputs[0])])])
         drive = answers.network.right_hand_side([(name, 1.0)])
-        of_share[: len(stamps)] = _to_elements(at, answers.dc.forward(drive), stamps)
+        of_share[: len(elements)] = elements.pulls(at, answers.dc.forward(drive), 0j)[0].real
     else:
         moved = np.zeros(width)  # the threshold is that of the pin itself
     # The limits of the output go with its rails.
@@ -135,12 +132,6 @@ def _moves(
             pull = pull - (away + sign * abs(beta) * half) / share**2 * of_share
         found.append(float(spread.reach(pull)) + apart)
     return found[0], found[1]
-
-
-def _to_elements(adjoint: Complex, solved: Complex, stamps: list[Stamp]) -> Real:
-    """Return the derivative of a level to each element, shape (elements,)."""
-    change = differences(adjoint, stamps) * differences(solved[None, :], stamps)
-    return np.asarray((change[0] * factors(stamps, 0j)).real)
 
 
 def _entry(view: View, quantity: str) -> tuple[str, float, float] | None:

@@ -17,6 +17,7 @@ from railguard.analysis.solve import Factor, factor
 from railguard.analysis.transient import excursion
 
 QUANTITIES = ("output", "current", "plus", "minus", "positive", "negative")
+_PLACE = {quantity: place for place, quantity in enumerate(QUANTITIES)}
 """Per amplifier: output volts, output amperes (out of the pin), both inputs, both supply pins."""
 
 LONGEST_PERIOD = 16
@@ -90,7 +91,7 @@ class Answers(msgspec.Struct, frozen=True, kw_only=True):
 
 def quantity_at(amplifier: int, quantity: str) -> int:
     """Return the index of one amplifier's quantity."""
-    return amplifier * len(QUANTITIES) + QUANTITIES.index(quantity)
+    return amplifier * len(_PLACE) + _PLACE[quantity]
 
 
 def quantity_rows(network: Network, amplifiers: tuple[Amplifier, ...]) -> Index:

@@ -3,7 +3,6 @@
 import msgspec
 import numpy as np
 
-from railguard.analysis.corners import differences, factors
 from railguard.analysis.network import Complex, Real
 from railguard.analysis.solve import factor
 from railguard.analysis.stage import Loop, Range
@@ -67,7 +66,7 @@ def gains_of(view: View, unit: str = "V") -> tuple[Gain, ...]:
         return ()
     dc = answers.dc.adjoint([row])
     mid = view.solution.mid.adjoint([row])
-    stamps, delta = view.solution.spread.elements
+    spread = view.solution.spread
     gains = []
     for entry in view.solution.prepared.entries:
         if entry.unit != unit or not any(name in network.injections for name, _ in entry.drives):
@@ -80,11 +79,10 @@ def gains_of(view: View, unit: str = "V") -> tuple[Gain, ...]:
             continue
         adjoint, solved = (dc, answers.dc) if passes else (mid, view.solution.mid)
         s = 0j if passes else 2j * np.pi * MID_HERTZ
-        change = differences(adjoint, stamps) * differences(solved.forward(b)[None, :], stamps)
-        change = change[0] * factors(stamps, s)
+        change = spread.elements.pulls(adjoint, solved.forward(b), s)[0]
         # A magnitude changes by what lies in its own direction.
         turn = 1.0 if passes else np.conj(at_mid) / abs(at_mid)
-        moved = float(np.abs((turn * change).real) @ delta)
+        moved = float(np.abs((turn * change).real) @ spread.tolerances)
         gains.append(Gain(entry.label, gain, Range(gain - moved, gain + moved)))
     return tuple(gains)
 
@@ -101,11 +99,10 @@ def noise_gain_span(view: View, loop: Loop) -> Range:
         return Range()
     rows = [passive.network.row(amplifier.minus), passive.network.row(amplifier.plus)]
     adjoint = passive.dc.adjoint(rows)
-    stamps, delta = view.solution.spread.elements
+    spread = view.solution.spread
     unit = passive.network.right_hand_side([(amplifier.designator, 1.0)])
-    solved = passive.dc.forward(unit)[None, :]
-    change = differences(adjoint[:1] - adjoint[1:], stamps) * differences(solved, stamps)
-    moved = float(np.abs((change[0] * factors(stamps, 0j)).real) @ delta)
+    change = spread.elements.pulls(adjoint[:1] - adjoint[1:], passive.dc.forward(unit), 0j)
+    moved = float(np.abs(change[0].real) @ spread.tolerances)
     beta = float((adjoint[0] - adjoint[1])[branch].real)
     if beta <= moved:
         return Range()
@@ -163,14 +160,13 @@ def _corner_span(view: View, b: Complex, row: int, corner: float, top: float) ->
     On the logarithms of frequency and parameters, on which a product of powers is a plane.
     """
     network = view.answers.network
-    stamps, delta = view.solution.spread.elements
+    elements, delta = view.solution.spread.elements, view.solution.spread.tolerances
 
     def response(hertz: float) -> tuple[float, Real]:
         """Return ln |H| and its derivatives."""
         solved = factor(network, hertz)
         x, adjoint = solved.forward(b), solved.adjoint([row])
-        change = differences(adjoint, stamps) * differences(x[None, :], stamps)
-        pulls = (change[0] * factors(stamps, 2j * np.pi * hertz) / x[row]).real
+        pulls = (elements.pulls(adjoint, x, 2j * np.pi * hertz)[0] / x[row]).real
         return float(np.log(abs(x[row]))), pulls
 
     (here, pull), (_, against) = response(corner), response(top)

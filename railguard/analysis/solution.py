@@ -25,7 +25,6 @@ from railguard.analysis.loops import (
     crossover_margins,
     known_parasitics,
     local_betas,
-    phase_margin,
     small_signal,
     sweep,
 )
@@ -152,7 +151,8 @@ def solve(
         signs = np.where([a.designator in forced for a in amplifiers], signs, lined)
     signs, through = _through_diodes(elements, amplifiers, signs)
     swept = sweep(loop_network, tops, signs)
-    passive = passive_view(network)
+    if network is not passive.of:
+        passive = passive_view(network)
     local = local_betas(passive.network, swept, amplifiers)
     swept = msgspec.structs.replace(swept, local=local) if local else swept
     options = options or Options()
@@ -312,7 +312,7 @@ def _margins(
             continue
         at = crossing(swept.hertz, np.abs(swept.a_beta[:, k]))
         if at is not None:
-            sights[k] = at, phase_margin(swept.hertz, swept.a_beta[:, k], at)
+            sights[k] = at, swept.margin(k, at)
     if not sights:
         return {}, {}
     names = {k: amplifiers[k].designator for k in sights}

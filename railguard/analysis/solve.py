@@ -41,8 +41,10 @@ class _Dense:
         return np.asarray(self._inverse @ b, dtype=np.complex128)
 
     def adjoint(self, rows: list[int]) -> Complex:
-        picked = np.array(self._inverse[rows, :], dtype=np.complex128)
-        picked[np.array(rows) < 0] = 0.0
+        picked = np.zeros((len(rows), self._inverse.shape[1]), dtype=np.complex128)
+        for place, row in enumerate(rows):
+            if row >= 0:
+                picked[place] = self._inverse[row]
         return picked
 
 

@@ -27,8 +27,12 @@ BRIDGE_SPREAD = 1.1
 
 
 class Passive(msgspec.Struct, frozen=True):
-    """The circuit with every amplifier's output held: factors at DC and in mid-band."""
+    """The circuit with every amplifier's output held: factors at DC and in mid-band.
 
+    of  the network it is a view of
+    """
+
+    of: Network
     network: Network
     dc: Factor
     mid: Factor
@@ -46,7 +50,7 @@ class Passive(msgspec.Struct, frozen=True):
 def passive_view(active: Network) -> Passive:
     """Build the passive view of a circuit from its network."""
     network = active.again(frozenset(a.designator for a in active.amplifiers))
-    return Passive(network, factor(network, 0.0), factor(network, MID_HERTZ))
+    return Passive(active, network, factor(network, 0.0), factor(network, MID_HERTZ))
 
 
 class Ways:

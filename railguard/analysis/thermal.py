@@ -2,9 +2,9 @@
 
 import re
 from collections.abc import Callable, Iterable
+from functools import lru_cache
 
 import msgspec
-import numpy as np
 
 from railguard.analysis.stage import Case, Current, Output, Stage, Supply
 from railguard.devices.model import Device
@@ -12,7 +12,6 @@ from railguard.settings.model import Settings
 
 ROOM = 25.0
 """Degrees Celsius where no ambient is stated."""
-_STEPS = 21
 
 
 def hottest(settings: Settings) -> float:
@@ -39,12 +38,19 @@ def dissipation(
         return None
     if low is None or high is None or level is None or current.demand_source is None:
         return None
-    amps = current.source.level or 0.0
+    positive, negative = supply.positive, supply.negative
     slope = 1.0 / load if load else 0.0
-    volts = np.clip(np.linspace(low, high, _STEPS), supply.negative, supply.positive)
-    line = amps + slope * (volts - level)
-    stage = np.where(line > 0, (supply.positive - volts) * line, (supply.negative - volts) * line)
-    return supply.total * iq + float(np.max(stage))
+    # amperes = rest + slope * volts: the power is a parabola on each side of no current.
+    rest = (current.source.level or 0.0) - slope * level
+    ends = [min(max(end, negative), positive) for end in (low, high)]
+    tops = [(rail - rest / slope) / 2 for rail in (positive, negative)] if slope else []
+    between = [volts for volts in tops if ends[0] < volts < ends[1]]
+
+    def power(volts: float) -> float:
+        amps = rest + slope * volts
+        return ((positive if amps > 0 else negative) - volts) * amps
+
+    return supply.total * iq + max(power(volts) for volts in (*ends, *between))
 
 
 DOUBLING = 10.0
@@ -136,6 +142,7 @@ def case_of(device: Device | None, channels: int | None, text: str) -> Case | No
     return Case(name, device.theta[name])
 
 
+@lru_cache(maxsize=1024)
 def _letters(text: str) -> str:
     return re.sub(r"[^A-Z0-9]", "", text.upper())
 

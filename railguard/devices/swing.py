@@ -5,6 +5,7 @@ what a saturated transistor and an emitter resistor both come to over a small ra
 """
 
 from collections.abc import Callable, Iterable
+from functools import lru_cache
 from itertools import pairwise
 from typing import NamedTuple
 
@@ -55,10 +56,30 @@ def drop(points: Iterable[SwingPoint], amps: float, supply: float | None = None)
     `supply` (total, V) picks the points tested nearest to it where a sheet lists several supplies;
     a figure taken from another supply than half to twice the actual one counts as from memory.
     """
-    known = tuple(points)
-    amps = amps if amps > NOTHING else 0.0
-    typical = _read(known, amps, supply, _typical)
-    guaranteed = _read(known, amps, supply, _guaranteed)
+    return swing(tuple(points), supply).at(amps)
+
+
+class Swing:
+    """The two curves of one output at one supply, made once and read at many currents."""
+
+    def __init__(self, points: tuple[SwingPoint, ...], supply: float | None) -> None:
+        """Take the data sheet's points, and the total supply, V, as `drop` does."""
+        self._typical = _Curve(points, supply, _typical)
+        self._guaranteed = _Curve(points, supply, _guaranteed)
+
+    def at(self, amps: float) -> Drop:
+        """Return the drop to the rail at a current, A, as `drop` says."""
+        amps = amps if amps > NOTHING else 0.0
+        return _judged(self._typical.at(amps), self._guaranteed.at(amps))
+
+
+@lru_cache(maxsize=256)
+def swing(points: tuple[SwingPoint, ...], supply: float | None) -> Swing:
+    """Return the curves of an output; those of one device are asked for stage after stage."""
+    return Swing(points, supply)
+
+
+def _judged(typical: _Known | None, guaranteed: _Known | None) -> Drop:
     if typical and guaranteed and guaranteed.drop < typical.drop:
         guaranteed = guaranteed._replace(drop=typical.drop, basis="memory")
     said = guaranteed or typical
@@ -82,31 +103,38 @@ def _guaranteed(point: SwingPoint) -> tuple[float | None, Basis]:
     return point.guaranteed, point.guaranteed_basis
 
 
-def _read(
-    points: tuple[SwingPoint, ...], amps: float, supply: float | None, side: Side
-) -> _Known | None:
-    listed = tuple(point for point in points if side(point)[0] is not None)
-    curve = _curve(_at_supply(listed, supply), supply, side)
-    if not curve:
-        return None
-    if amps <= curve[0].amps:
-        return curve[0]
-    for left, right in pairwise(curve):
-        if amps <= right.amps:
-            share = (amps - left.amps) / (right.amps - left.amps)
-            basis: Basis = "memory" if "memory" in (left.basis, right.basis) else right.basis
-            between = left.drop + share * (right.drop - left.drop)
-            return _Known(amps, between, basis, right.condition)
-    if curve[-1].amps <= LIGHT:
-        return curve[-1] if amps <= LIGHT else None
-    last = curve[-1]
-    slope = _last_slope(curve)
-    if slope is None:
-        slope = _listed_slope(listed, side) or _scaled_slope(points, supply, last)
-    if slope is None:
-        slope = _single_slope(last)
-    condition = f"carried on beyond {last.condition}" if last.condition else ""
-    return _Known(amps, last.drop + slope * (amps - last.amps), "memory", condition)
+class _Curve:
+    """One side's drop over current, made monotone, and the slope it goes on with."""
+
+    def __init__(self, points: tuple[SwingPoint, ...], supply: float | None, side: Side) -> None:
+        listed = tuple(point for point in points if side(point)[0] is not None)
+        self._known = _curve(_at_supply(listed, supply), supply, side)
+        self._slope: float | None = None
+        if self._known and self._known[-1].amps > LIGHT:
+            last, slope = self._known[-1], _last_slope(self._known)
+            if slope is None:
+                slope = _listed_slope(listed, side) or _scaled_slope(points, supply, last)
+            self._slope = _single_slope(last) if slope is None else slope
+
+    def at(self, amps: float) -> _Known | None:
+        if not self._known:
+            return None
+        last = self._known[-1]
+        if amps <= self._known[0].amps:
+            return self._known[0]
+        if amps > last.amps:
+            return self._beyond(last, amps)
+        left, right = next(pair for pair in pairwise(self._known) if amps <= pair[1].amps)
+        share = (amps - left.amps) / (right.amps - left.amps)
+        basis: Basis = "memory" if "memory" in (left.basis, right.basis) else right.basis
+        between = left.drop + share * (right.drop - left.drop)
+        return _Known(amps, between, basis, right.condition)
+
+    def _beyond(self, last: _Known, amps: float) -> _Known | None:
+        if self._slope is None:
+            return last if amps <= LIGHT else None
+        condition = f"carried on beyond {last.condition}" if last.condition else ""
+        return _Known(amps, last.drop + self._slope * (amps - last.amps), "memory", condition)
 
 
 def _at_supply(points: tuple[SwingPoint, ...], supply: float | None) -> tuple[SwingPoint, ...]:
