@@ -1,7 +1,7 @@
 """The four resistors of a difference amplifier, and the sense resistor they stand across."""
 
 from railguard.analysis.corners import tolerance_of
-from railguard.analysis.stage import Balance
+from railguard.analysis.loop import Balance
 from railguard.analysis.surroundings import Ways
 from railguard.analysis.view import View
 from railguard.circuit.model import GROUND, Element

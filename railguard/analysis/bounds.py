@@ -5,9 +5,9 @@ from collections.abc import Callable
 import numpy as np
 
 from railguard.analysis.available import Reach
+from railguard.analysis.bound import Bound, Pair
 from railguard.analysis.corners import Spread
 from railguard.analysis.network import Real
-from railguard.analysis.stage import Bound, Pair
 from railguard.words import Basis
 
 CULPRITS = 3

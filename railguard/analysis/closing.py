@@ -16,10 +16,10 @@ import msgspec
 import numpy as np
 import numpy.typing as npt
 
+from railguard.analysis.bound import Range
 from railguard.analysis.deviations import Off
 from railguard.analysis.network import Complex, Network, Real, gain_bandwidth, open_loop_gain
 from railguard.analysis.solve import DENSE_LIMIT, factor
-from railguard.analysis.stage import Range
 
 TOGETHER = 0.05
 """Natural logarithm of the ratio of frequencies up to which one factorisation serves both."""

@@ -2,7 +2,9 @@
 
 import msgspec
 
-from railguard.analysis.stage import Current, Output, Range, Supply
+from railguard.analysis.bound import Range
+from railguard.analysis.rail import Supply
+from railguard.analysis.stage import Current, Output
 from railguard.analysis.switching import is_given, most_current, most_heat
 from railguard.analysis.thermal import at_ends, dissipation
 from railguard.analysis.view import View

@@ -3,8 +3,10 @@
 from typing import TypedDict
 
 from railguard.analysis.available import Reach, input_reach
+from railguard.analysis.bound import Bound, Range
 from railguard.analysis.bounds import bound
-from railguard.analysis.stage import Bound, Inputs, Part, Pin, Range, Supply, Unknown
+from railguard.analysis.rail import Supply
+from railguard.analysis.stage import Inputs, Part, Pin, Unknown
 from railguard.analysis.surroundings import divider_at, series_resistance
 from railguard.analysis.view import View
 

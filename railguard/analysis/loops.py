@@ -12,7 +12,9 @@ from functools import cached_property
 import msgspec
 import numpy as np
 
+from railguard.analysis.bound import Range
 from railguard.analysis.closing import Bands, Closing, InBand
+from railguard.analysis.loop import Loop
 from railguard.analysis.network import (
     Complex,
     Network,
@@ -23,7 +25,6 @@ from railguard.analysis.network import (
 )
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.solve import factor, return_ratios
-from railguard.analysis.stage import Loop, Range
 from railguard.circuit.model import Control, Element
 
 OPEN_BETA = 1e-6

@@ -3,8 +3,10 @@
 import numpy as np
 
 from railguard.analysis.available import Reach, current_reach, output_reach
+from railguard.analysis.bound import Bound, Range
 from railguard.analysis.bounds import bound
-from railguard.analysis.stage import Bound, Carrier, Current, Output, Part, Range, Supply, Unknown
+from railguard.analysis.rail import Supply
+from railguard.analysis.stage import Carrier, Current, Output, Part, Unknown
 from railguard.analysis.surroundings import heaviest_load, load_capacitance
 from railguard.analysis.view import View
 

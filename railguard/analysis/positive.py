@@ -3,7 +3,8 @@
 import msgspec
 import numpy as np
 
-from railguard.analysis.stage import Loop, Range
+from railguard.analysis.bound import Range
+from railguard.analysis.loop import Loop
 from railguard.analysis.view import View
 
 LEAST_SHARE = 1e-3

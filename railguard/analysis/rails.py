@@ -9,9 +9,10 @@ from collections import defaultdict
 from collections.abc import Iterable, Mapping
 from typing import Literal
 
+from railguard.analysis.bound import Range
 from railguard.analysis.dcpaths import is_capacitor, leaves_sheet
+from railguard.analysis.rail import Capacitor, Package, Rail
 from railguard.analysis.recognise import Amplifier
-from railguard.analysis.stage import Capacitor, Package, Rail, Range
 from railguard.analysis.supplies import DEFAULT_RAIL_TOLERANCE, Feed
 from railguard.circuit.model import GROUND, Element
 from railguard.circuit.rails import level_from_name

@@ -3,9 +3,10 @@
 import msgspec
 import numpy as np
 
+from railguard.analysis.bound import Range
+from railguard.analysis.loop import Loop
 from railguard.analysis.network import Complex, Real
 from railguard.analysis.solve import factor
-from railguard.analysis.stage import Loop, Range
 from railguard.analysis.surroundings import MID_HERTZ
 from railguard.analysis.view import View
 

@@ -1,7 +1,8 @@
-"""What the analysis hands to the rules: rails, packages, stages and the design as a whole.
+"""What the analysis hands to the rules: stages, and the design as a whole.
 
-Plain frozen values; nothing here computes. Volts are relative to ground, currents positive,
-everything SI. A number that was not worked out is None, and `Stage.unknown` says why.
+Rails stand in `rail`, loops in `loop`, a figure against its limits in `bound`. Plain frozen values;
+nothing here computes. Volts are relative to ground, currents positive, everything SI. A number that
+was not worked out is None, and `Stage.unknown` says why.
 """
 
 from collections.abc import Mapping
@@ -9,176 +10,15 @@ from typing import Literal
 
 import msgspec
 
+from railguard.analysis.bound import Bound, Range
+from railguard.analysis.loop import Balance, Feedback, Filter, Loop
+from railguard.analysis.rail import Package, Rail, Supply
 from railguard.circuit.model import Circuit
 from railguard.devices.model import Device
 from railguard.location import Location
 from railguard.notices import Problem, Remark
 from railguard.settings.model import Settings
-from railguard.words import Basis, Kind, Use
-
-
-class Range(msgspec.Struct, frozen=True):
-    """The lowest and the highest value of a quantity."""
-
-    low: float | None = None
-    high: float | None = None
-
-    @property
-    def span(self) -> float | None:
-        """Width of the range."""
-        return None if self.low is None or self.high is None else self.high - self.low
-
-
-class Pair(msgspec.Struct, frozen=True):
-    """A demand and the limit it meets, at one corner of the tolerances."""
-
-    demand: float
-    limit: float
-
-
-class Bound(msgspec.Struct, frozen=True, kw_only=True):
-    """One side of one quantity, and everything that stands against it.
-
-    upper        True: demand must stay below the limits; False: above them
-    demand       nominal
-    level        the DC level alone, nominal
-    span         of the whole demanded range (both sides)
-    typical      the typical limit
-    guaranteed   what the data sheet guarantees
-    absolute     the rail itself, or an absolute maximum; `absolute_basis` where it came from
-    stated       demand and guaranteed limit at the worst corner of tolerances the user stated
-    default      the same with default tolerances, offset and bias added
-    typical_basis, guaranteed_basis   where each limit came from
-    demand_basis  where the demand came from, the least trusted of its parts
-    culprits     designators that move the corner most, worst first
-    condition    the load, current or supply the limit was taken at, in words
-    unsure       how far the demand may be off by what is assumed: less beyond a limit is no proof
-    """
-
-    upper: bool
-    demand: float | None = None
-    level: float | None = None
-    span: float | None = None
-    typical: float | None = None
-    guaranteed: float | None = None
-    absolute: float | None = None
-    stated: Pair | None = None
-    default: Pair | None = None
-    typical_basis: Basis = "catalogue"
-    guaranteed_basis: Basis = "catalogue"
-    absolute_basis: Basis = "netlist"
-    demand_basis: Basis = "netlist"
-    culprits: tuple[str, ...] = ()
-    condition: str = ""
-    unsure: float = 0.0
-
-    @property
-    def best(self) -> float | None:
-        """The guaranteed limit, or the typical one where none is guaranteed."""
-        return self.guaranteed if self.guaranteed is not None else self.typical
-
-    @property
-    def best_basis(self) -> Basis:
-        """Where `best` came from."""
-        return self.guaranteed_basis if self.guaranteed is not None else self.typical_basis
-
-
-class Capacitor(msgspec.Struct, frozen=True):
-    """A capacitor between a rail and another net.
-
-    farads   None where its value is unknown
-    to       the net of its other end
-    behind   designator of a series element between it and the supply pins, or ""
-    rating   V, where the card states one
-    reversed  True where the card states a polarity and the level is the other way round
-    """
-
-    designator: str
-    farads: float | None
-    to: str
-    behind: str = ""
-    rating: float | None = None
-    reversed: bool = False
-    location: Location | None = None
-
-
-class Rail(msgspec.Struct, frozen=True, kw_only=True):
-    """A net that feeds supply pins.
-
-    sign        "positive" or "negative": the pins it feeds
-    level       volts; None: nothing states it
-    worst       with the rail's tolerance
-    basis       where the level came from
-    origin      in words: `VP`, `the net's name`, `railguard.toml`
-    tolerance   share, and whether the user stated it
-    named       the level its name says, where it says one
-    returns     nets that count as its return: ground, or the opposite rail where no ground is used
-    decoupling  capacitors from the rail to a return
-    across      capacitors from the rail to another rail
-    packages    designators of packages fed
-    ideal       True where an ideal source holds it directly
-    series      designators between its source and its pins
-    feed        "stated": a level is known; "outside": the net leaves what can be seen; "nothing":
-                nothing on it could give it a level
-    drop        V lost in `series` at the current its pins draw
-    """
-
-    net: str
-    sign: Literal["positive", "negative"]
-    level: float | None = None
-    worst: Range = Range()
-    basis: Basis = "netlist"
-    origin: str = ""
-    tolerance: float = 0.0
-    tolerance_stated: bool = False
-    named: float | None = None
-    returns: tuple[str, ...] = ("0",)
-    decoupling: tuple[Capacitor, ...] = ()
-    across: tuple[Capacitor, ...] = ()
-    upstream: tuple[Capacitor, ...] = ()
-    packages: tuple[str, ...] = ()
-    ideal: bool = False
-    series: tuple[str, ...] = ()
-    feed: Literal["stated", "outside", "nothing"] = "outside"
-    drop: float | None = None
-    location: Location | None = None
-
-
-class Package(msgspec.Struct, frozen=True, kw_only=True):
-    """What is soldered: its channels and the nets of its supply pins."""
-
-    designator: str
-    device: str
-    family: str
-    channels: tuple[str, ...]
-    positive: tuple[str, ...]
-    negative: tuple[str, ...]
-    size: int | None = None
-    location: Location | None = None
-
-
-class Supply(msgspec.Struct, frozen=True, kw_only=True):
-    """The rails of one stage, at its pins.
-
-    total_low, total_high  total supply with the rails' tolerances
-    """
-
-    positive: float | None = None
-    negative: float | None = None
-    positive_net: str = ""
-    negative_net: str = ""
-    basis: Basis = "netlist"
-    positive_worst: Range = Range()
-    negative_worst: Range = Range()
-    tolerance_stated: bool = False
-    pins: bool = True
-
-    @property
-    def total(self) -> float | None:
-        """V+ minus V-."""
-        if self.positive is None or self.negative is None:
-            return None
-        return self.positive - self.negative
+from railguard.words import Kind, Use
 
 
 class Output(msgspec.Struct, frozen=True, kw_only=True):
@@ -298,97 +138,6 @@ class Inputs(msgspec.Struct, frozen=True, kw_only=True):
     differential_worst: Range = Range()
 
 
-class Feedback(msgspec.Struct, frozen=True, kw_only=True):
-    """The network between output and inverting input.
-
-    elements     designators on the way from the output to the inverting input
-    resistance   of that way at DC, ohm; 0 for a wire; None: no DC way
-    seen         resistance at the inverting input to AC ground, output counted as ground, ohm
-    load         resistance the network is to the output, ohm
-    capacitance  across the feedback resistance, F
-    current      peak current into the network, A
-    """
-
-    elements: tuple[str, ...] = ()
-    resistance: float | None = None
-    seen: float | None = None
-    load: float | None = None
-    capacitance: float | None = None
-    current: float | None = None
-
-
-class Balance(msgspec.Struct, frozen=True, kw_only=True):
-    """The four resistors of a difference amplifier.
-
-    elements   from the input to the inverting input, back from the output, and their fellows
-    gain       of the difference, V/V
-    tolerance  sum of the four, as a share; `stated` where each is
-    reference  volts the output counts from
-    sense      designator of the small resistor, or the source, the two inputs stand across, or ""
-    """
-
-    elements: tuple[str, ...]
-    gain: float
-    tolerance: float
-    stated: bool
-    reference: float = 0.0
-    sense: str = ""
-
-
-class Loop(msgspec.Struct, frozen=True, kw_only=True):
-    """The stage's own loop, all other stages active.
-
-    dc          sign of the feedback at DC
-    beta_dc     feedback factor at DC, output to (inverting minus non-inverting input)
-    noise_gain  |1/beta| at the top of the stated band, or the largest in band
-    crossover   hertz where |A beta| is one: the bandwidth
-    phase_margin  degrees; None where it hangs on a figure nobody lists
-    band        top of the stated band, hertz
-    loop_gain   |A beta| at the top of the band
-    points      (hertz, |1/beta|, |A|, phase of A beta in degrees) for drawing
-    holds       designators of other stages that hold the DC level where its own loop does not
-    bridges     switches and unseen devices that may lead the output back where the loop is open
-    noise_gain_worst  of `noise_gain_dc`, at the resistors' tolerances
-    in_band_worst, at_crossover_worst  of `noise_gain` and `noise_gain_crossover`, with capacitors
-    crossover_worst, phase_margin_worst, loop_gain_worst  with all tolerances, and the least and the
-                typical gain-bandwidth product listed; unknown where the nominal figure is
-    margins     phase margin with the most and with nothing of what is not listed, degrees
-    thresholds  volts of its signal at which a stage with positive feedback switches; of the pin
-                where more than one signal moves it
-    lower_worst, upper_worst  of each threshold, with resistors, rails and its offset at their ends
-    drive       the stated signal at that input, in the terms of `thresholds`
-    switched    True where that signal goes well past both: no linear stage could follow it
-    """
-
-    dc: Literal["negative", "positive", "open"] | None = None
-    beta_dc: float | None = None
-    beta_plus: float | None = None
-    noise_gain: float | None = None
-    noise_gain_dc: float | None = None
-    noise_gain_crossover: float | None = None
-    crossover: float | None = None
-    phase_margin: float | None = None
-    noise_gain_worst: Range = Range()
-    in_band_worst: Range = Range()
-    at_crossover_worst: Range = Range()
-    crossover_worst: Range = Range()
-    phase_margin_worst: Range = Range()
-    loop_gain_worst: Range = Range()
-    margins: Range = Range()
-    band: float | None = None
-    loop_gain: float | None = None
-    points: tuple[tuple[float, float, float, float], ...] = ()
-    holds: tuple[str, ...] = ()
-    bridges: tuple[str, ...] = ()
-    capacitor_across_plus: str = ""
-    thresholds: Range = Range()
-    lower_worst: Range = Range()
-    upper_worst: Range = Range()
-    drive: Range = Range()
-    switched: bool = False
-    feeds_linear: bool = False
-
-
 class Allowed(msgspec.Struct, frozen=True):
     """The largest input that keeps every stage inside its ranges, and what limits it.
 
@@ -408,21 +157,6 @@ class Unknown(msgspec.Struct, frozen=True):
 
     why: str
     add: str
-
-
-class Filter(msgspec.Struct, frozen=True):
-    """A recognised filter stage: hertz, quality factor, magnitude of the gain in its pass band.
-
-    frequency_worst, q_worst, gain_worst  with every part around it at its tolerance
-    """
-
-    kind: str
-    frequency: float
-    q: float
-    gain: float = 1.0
-    frequency_worst: Range = Range()
-    q_worst: Range = Range()
-    gain_worst: Range = Range()
 
 
 class Case(msgspec.Struct, frozen=True):

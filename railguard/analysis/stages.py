@@ -6,13 +6,16 @@ import msgspec
 import numpy as np
 
 from railguard.analysis.balance import balance_of
+from railguard.analysis.bound import Range
 from railguard.analysis.closing import Bands
 from railguard.analysis.filters import filter_of
 from railguard.analysis.heat import heat_of
 from railguard.analysis.inputs import inputs_of
+from railguard.analysis.loop import Filter, Loop
 from railguard.analysis.loops import OPEN_BETA, Margin, loop_of, with_ends
 from railguard.analysis.outputs import output_side
 from railguard.analysis.positive import with_thresholds
+from railguard.analysis.rail import Supply
 from railguard.analysis.reach import (
     Gain,
     band_of,
@@ -24,19 +27,7 @@ from railguard.analysis.reach import (
 )
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.solution import Solution, stated_use
-from railguard.analysis.stage import (
-    Allowed,
-    Filter,
-    Inputs,
-    Loop,
-    Output,
-    Part,
-    Pin,
-    Range,
-    Stage,
-    Supply,
-    Unknown,
-)
+from railguard.analysis.stage import Allowed, Inputs, Output, Part, Pin, Stage, Unknown
 from railguard.analysis.supplies import Feed
 from railguard.analysis.surroundings import feedback_of, output_load
 from railguard.analysis.thermal import case_of, junction, package_heat

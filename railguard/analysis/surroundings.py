@@ -12,11 +12,12 @@ import msgspec
 import numpy as np
 
 from railguard.analysis.dcpaths import DcMap, is_capacitor, leaves_sheet
+from railguard.analysis.loop import Feedback
 from railguard.analysis.network import Network
 from railguard.analysis.ranges import Answers
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.solve import Factor, factor
-from railguard.analysis.stage import Divider, Feedback
+from railguard.analysis.stage import Divider
 from railguard.circuit.model import GROUND, Element
 
 MID_HERTZ = 1000.0

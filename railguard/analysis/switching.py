@@ -5,8 +5,9 @@ bound its current whatever lies behind them: a base, a lamp, a timing capacitor.
 inside what the device gives, nothing need be simulated.
 """
 
+from railguard.analysis.rail import Supply
 from railguard.analysis.recognise import Amplifier
-from railguard.analysis.stage import Current, Supply
+from railguard.analysis.stage import Current
 from railguard.analysis.surroundings import Ways
 from railguard.devices.model import Device
 

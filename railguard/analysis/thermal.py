@@ -6,7 +6,8 @@ from functools import lru_cache
 
 import msgspec
 
-from railguard.analysis.stage import Case, Current, Output, Stage, Supply
+from railguard.analysis.rail import Supply
+from railguard.analysis.stage import Case, Current, Output, Stage
 from railguard.devices.model import Device
 from railguard.settings.model import Settings
 

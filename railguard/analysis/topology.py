@@ -1,7 +1,7 @@
 """Names of stages for people. Rules rest on the algebra, never on these."""
 
+from railguard.analysis.loop import Loop
 from railguard.analysis.recognise import Amplifier
-from railguard.analysis.stage import Loop
 from railguard.analysis.surroundings import Ways
 from railguard.circuit.model import GROUND, Element
 

@@ -5,8 +5,8 @@ switches something is a comparator; positive feedback round a capacitor that its
 is a relaxation oscillator. Everything else is taken as a linear stage.
 """
 
+from railguard.analysis.loop import Loop
 from railguard.analysis.recognise import Amplifier
-from railguard.analysis.stage import Loop
 from railguard.analysis.surroundings import Ways
 from railguard.analysis.topology import Around
 from railguard.circuit.model import GROUND

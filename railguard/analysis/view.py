@@ -1,12 +1,13 @@
 """One amplifier's numbers in the solved circuit, and why some of them are not known."""
 
+from railguard.analysis.bound import Range
 from railguard.analysis.bounds import Exact
 from railguard.analysis.network import Real
 from railguard.analysis.ranges import Answers, ToneAnswer
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.sampling import evaluate, exact_corners
 from railguard.analysis.solution import Solution
-from railguard.analysis.stage import Range, Unknown
+from railguard.analysis.stage import Unknown
 from railguard.analysis.unseen import Spoiled
 from railguard.words import Basis
 

@@ -2,7 +2,8 @@
 
 import msgspec
 
-from railguard.analysis.stage import Bound, Design, Range, Stage, Unknown
+from railguard.analysis.bound import Bound, Range
+from railguard.analysis.stage import Design, Stage, Unknown
 from railguard.engine.operating import APART, Simulated, Simulation
 
 MET = 0.02

@@ -11,7 +11,8 @@ import msgspec
 import numpy as np
 from numpy.typing import NDArray
 
-from railguard.analysis.stage import Design, Range, Stage
+from railguard.analysis.bound import Range
+from railguard.analysis.stage import Design, Stage
 from railguard.devices.catalogue import Catalogue
 from railguard.engine.bench import Bench, bench_of
 from railguard.engine.ladder import Found, climb

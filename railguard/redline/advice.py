@@ -9,7 +9,8 @@ from collections.abc import Iterator
 import msgspec
 
 from railguard.analysis.design import analyse
-from railguard.analysis.stage import Design, Package, Stage
+from railguard.analysis.rail import Package
+from railguard.analysis.stage import Design, Stage
 from railguard.devices import catalogue
 from railguard.devices.catalogue import Catalogue
 from railguard.devices.match import spell_out

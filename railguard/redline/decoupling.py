@@ -3,7 +3,7 @@
 import re
 from collections.abc import Iterator
 
-from railguard.analysis.stage import Capacitor, Rail
+from railguard.analysis.rail import Capacitor, Rail
 from railguard.circuit.model import GROUND, Element
 from railguard.redline.cards import replaced
 from railguard.redline.model import Edit

@@ -3,7 +3,8 @@
 import math
 from collections.abc import Iterator
 
-from railguard.analysis.stage import Bound, Stage
+from railguard.analysis.bound import Bound
+from railguard.analysis.stage import Stage
 from railguard.circuit.model import GROUND, Element
 from railguard.redline.scene import Candidate, Scene, all_of, with_value
 from railguard.rules.compose import stage_named

@@ -3,7 +3,8 @@
 from collections.abc import Iterator
 from difflib import get_close_matches
 
-from railguard.analysis.stage import Design, Rail
+from railguard.analysis.rail import Rail
+from railguard.analysis.stage import Design
 from railguard.circuit.model import GROUND
 from railguard.redline.cards import replaced
 from railguard.redline.scene import Candidate, Role, Scene, with_value

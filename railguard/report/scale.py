@@ -10,7 +10,8 @@ from typing import Literal
 
 import msgspec
 
-from railguard.analysis.stage import Bound, Range, Stage
+from railguard.analysis.bound import Bound, Range
+from railguard.analysis.stage import Stage
 from railguard.units import si
 
 Role = Literal[

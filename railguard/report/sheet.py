@@ -4,68 +4,24 @@ Rows first (plain values); `report.sheet_forms` writes them, and every form show
 that the sheet filed as review evidence and the one on the screen say the same.
 """
 
-import math
 from collections.abc import Iterator
 from typing import Protocol
 
 import msgspec
 
 from railguard import __version__
+from railguard.analysis.bound import Bound, Range
 from railguard.analysis.corners import DEFAULT_CAPACITOR, DEFAULT_RESISTOR
-from railguard.analysis.stage import Bound, Current, Rail, Range, Stage
+from railguard.analysis.rail import Rail
+from railguard.analysis.stage import Current, Stage
 from railguard.devices.model import Device, Figure
 from railguard.report.sheet_basis import bases, figure_basis, phase_basis, why
-from railguard.report.words import USUAL_DIGITS, digits_apart, near, with_ends
+from railguard.report.sheet_row import PARTS, Row, cleaned
+from railguard.report.words import near, with_ends
 from railguard.reviewing import DesignReview, Review
 from railguard.rules.finding import Finding
 from railguard.rules.wording import listed, of_gain, of_volts, origin
 from railguard.units import percent, si
-
-PARTS = ("demand", "worst", "rss", "sampled", "available", "guaranteed")
-"""What is given of a quantity: nominal demand; extreme values; root of squares; Monte Carlo; what
-the device does typically; what its data sheet guarantees."""
-HEADINGS = {
-    "demand": "asked",
-    "worst": "worst",
-    "rss": "RSS",
-    "sampled": "sampled",
-    "available": "typical",
-    "guaranteed": "guaranteed",
-}
-BASES = ("demand", "worst", "available", "guaranteed")
-NEXT_TO_NOTHING = 1e-9
-"""Share of the other end of a range below which a number is rounding of the solution."""
-
-
-class Row(msgspec.Struct, frozen=True, kw_only=True):
-    """One line of the sheet. Numbers in SI units; None: not worked out, and the basis says why.
-
-    *_low, *_high  the two ends; a single figure stands in high
-    *_basis        where the figures of that kind came from
-    text           what is no number
-    """
-
-    file: str
-    designator: str
-    quantity: str
-    unit: str = ""
-    demand_low: float | None = None
-    demand_high: float | None = None
-    worst_low: float | None = None
-    worst_high: float | None = None
-    rss_low: float | None = None
-    rss_high: float | None = None
-    sampled_low: float | None = None
-    sampled_high: float | None = None
-    available_low: float | None = None
-    available_high: float | None = None
-    guaranteed_low: float | None = None
-    guaranteed_high: float | None = None
-    text: str = ""
-    demand_basis: str = ""
-    worst_basis: str = ""
-    available_basis: str = ""
-    guaranteed_basis: str = ""
 
 
 class _Maker(Protocol):
@@ -146,7 +102,7 @@ def _stage(design: DesignReview, stage: Stage) -> Iterator[Row]:
         for net, gain in gains:
             yield row("gain", unit, text=f"from {net}", **_solved(gain, ends.get(net, Range())))
     yield _ranges(row, "output", "V", stage.output, stage, "output")
-    yield _cleaned(row("output current", "A", **_current(stage)))
+    yield cleaned(row("output current", "A", **_current(stage)))
     yield _ranges(row, "inputs", "V", stage.inputs, stage, "input")
     yield from _thresholds(stage, row)
     if stage.high_pass is not None:
@@ -220,7 +176,7 @@ def _ranges(row: _Maker, quantity: str, unit: str, part: object, stage: Stage, n
         found: Range = getattr(part, kind, Range())
         fields |= {f"{kind}_low": found.low, f"{kind}_high": found.high}
     bounds: tuple[Bound, Bound] = (part.high, part.low)  # type: ignore[attr-defined]
-    return _cleaned(row(quantity, unit, **fields, **bases(bounds, stage, name)))
+    return cleaned(row(quantity, unit, **fields, **bases(bounds, stage, name)))
 
 
 def _current(stage: Stage) -> dict[str, float | str | None]:
@@ -372,7 +328,7 @@ def _largest(row: Row, stage: Stage) -> Row:
     if allowed is None:
         reason = "no signal reaches it alone, or none keeps every stage in range"
         return msgspec.structs.replace(row, text=f"not worked out: {reason}")
-    return _cleaned(
+    return cleaned(
         msgspec.structs.replace(
             row,
             guaranteed_low=allowed.low,
@@ -426,53 +382,3 @@ def _decoupling(row: Row, rail: Rail) -> Row:
         text=f"{rail.net} to {listed(rail.returns) or '0'}: {fitted}, for {packages}",
         demand_basis="netlist, which knows no distance",
     )
-
-
-def _cleaned(row: Row) -> Row:
-    """Write what is only rounding of the solution as zero, and no basis where there is no worst."""
-    changes: dict[str, float | str] = {}
-    if row.worst_low is None and row.worst_high is None:
-        changes["worst_basis"] = ""
-    for part in PARTS:
-        low, high = getattr(row, f"{part}_low"), getattr(row, f"{part}_high")
-        for name, value, other in (("low", low, high), ("high", high, low)):
-            if value and other and abs(value) < NEXT_TO_NOTHING * abs(other):
-                changes[f"{part}_{name}"] = 0.0
-    return msgspec.structs.replace(row, **changes) if changes else row
-
-
-def range_of(row: Row, part: str) -> str:
-    """Return one kind of figure of a row in words: `-9 V to 9 V`, or "" where there is none."""
-    low, high = getattr(row, f"{part}_low"), getattr(row, f"{part}_high")
-    known = [v for v in (low, high) if v is not None and math.isfinite(v)]
-    if not known:
-        return ""
-    ends = [si(value, row.unit, digits_of(row)) for value in known]
-    return " to ".join(dict.fromkeys(ends))
-
-
-def digits_of(row: Row) -> int:
-    """Return the digits that tell a figure from its ends; of a range the usual ones."""
-    figures = [v for v in (row.demand_high, row.available_high) if v is not None]
-    ends = [v for v in (row.worst_low, row.worst_high) if v is not None]
-    if row.demand_low is not None or len(ends) < len(("low", "high")) or not figures:
-        return USUAL_DIGITS
-    # A figure may stand beside another one, as a bandwidth beside the band.
-    return max(digits_apart((*ends, figure), row.unit) for figure in figures)
-
-
-def basis_of(row: Row) -> str:
-    """Say where the figures of a row came from, kind by kind; a common basis once."""
-    every = {part: str(getattr(row, f"{part}_basis")) for part in BASES}
-    told = {part: text for part, text in every.items() if text}
-    if len(told) == 1:
-        return "".join(told.values())
-    return "; ".join(f"{HEADINGS[part]}: {text}" for part, text in told.items())
-
-
-def cells(row: Row) -> tuple[str, ...]:
-    """Return a row as a page shows it: quantity, asked, worst, typical, guaranteed, basis."""
-    parts = [range_of(row, part) for part in BASES]
-    first = parts[0] or ("" if any(parts) else row.text)
-    note = "" if first is row.text else row.text
-    return (row.quantity, first, *parts[1:], "; ".join(filter(None, (note, basis_of(row)))))

@@ -1,6 +1,7 @@
 """Where the figures of the stage sheet came from, in words."""
 
-from railguard.analysis.stage import Bound, Stage
+from railguard.analysis.bound import Bound
+from railguard.analysis.stage import Stage
 from railguard.devices.model import Figure
 from railguard.rules.wording import listed, origin
 from railguard.words import Basis

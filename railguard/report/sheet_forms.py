@@ -16,7 +16,7 @@ from rich.text import Text
 from railguard import __version__
 from railguard.report.escaping import csv_cell, markdown
 from railguard.report.json_text import encoded
-from railguard.report.sheet import HEADINGS, PARTS, Row, basis_of, digits_of, range_of
+from railguard.report.sheet_row import HEADINGS, PARTS, Row, basis_of, digits_of, range_of
 from railguard.report.visible import encodable, visible
 from railguard.report.wrapping import wrapped
 from railguard.units import si

@@ -4,7 +4,9 @@ from collections import Counter
 from collections.abc import Iterable, Sequence
 from pathlib import Path
 
-from railguard.analysis.stage import Range, Stage, Supply
+from railguard.analysis.bound import Range
+from railguard.analysis.rail import Supply
+from railguard.analysis.stage import Stage
 from railguard.circuit.model import GROUND
 from railguard.location import Location
 from railguard.report.grouping import OpenGroup

@@ -3,7 +3,8 @@
 from collections.abc import Iterable, Iterator
 from typing import Literal, cast
 
-from railguard.analysis.stage import Design, Package, Part, Rail, Stage, Unknown
+from railguard.analysis.rail import Package, Rail
+from railguard.analysis.stage import Design, Part, Stage, Unknown
 from railguard.location import Location
 from railguard.notices import NotChecked
 from railguard.rules.finding import Finding

@@ -3,7 +3,8 @@
 import math
 from collections.abc import Iterator
 
-from railguard.analysis.stage import Bound, Design, Stage
+from railguard.analysis.bound import Bound
+from railguard.analysis.stage import Design, Stage
 from railguard.rules.compose import breach_finding, missing_figure, open_point, stage_finding
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.relations import in_ring

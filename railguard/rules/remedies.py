@@ -2,7 +2,9 @@
 
 import math
 
-from railguard.analysis.stage import Balance, Bound, Design, Stage
+from railguard.analysis.bound import Bound
+from railguard.analysis.loop import Balance
+from railguard.analysis.stage import Design, Stage
 from railguard.circuit.model import GROUND, Element
 from railguard.units import preferred, si
 

@@ -5,7 +5,7 @@ from typing import Literal
 
 import msgspec
 
-from railguard.analysis.stage import Bound
+from railguard.analysis.bound import Bound
 from railguard.words import SEVERITIES, Basis, Severity
 
 Broken = Literal["absolute", "typical", "guaranteed", "default-corner", "reserve"]

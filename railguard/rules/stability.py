@@ -2,7 +2,8 @@
 
 from collections.abc import Iterator
 
-from railguard.analysis.stage import Bound, Design, Stage, Unknown
+from railguard.analysis.bound import Bound
+from railguard.analysis.stage import Design, Stage, Unknown
 from railguard.rules.compose import breach_finding, missing_figure, open_point, stage_finding
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.remedies import LEAST_CAPACITOR, compensation, fit

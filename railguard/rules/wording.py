@@ -2,7 +2,8 @@
 
 from collections.abc import Iterable
 
-from railguard.analysis.stage import Carrier, Stage, Supply
+from railguard.analysis.rail import Supply
+from railguard.analysis.stage import Carrier, Stage
 from railguard.rules.severity import Breach
 from railguard.units import si
 from railguard.words import Basis

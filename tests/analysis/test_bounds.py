@@ -4,9 +4,9 @@ import numpy as np
 import pytest
 
 from railguard.analysis.available import Reach
+from railguard.analysis.bound import Pair
 from railguard.analysis.bounds import bound
 from railguard.analysis.corners import Parameter, Spread
-from railguard.analysis.stage import Pair
 
 REACH = Reach(10.5, 9.5, "memory", "practice", "10 kΩ load")
 NAMES = ("R1", "R2", "VP", "VN")

@@ -3,7 +3,9 @@
 import msgspec
 import pytest
 
-from railguard.analysis.stage import Bound, Case, Current, Output, Range, Supply
+from railguard.analysis.bound import Bound, Range
+from railguard.analysis.rail import Supply
+from railguard.analysis.stage import Case, Current, Output
 from railguard.analysis.thermal import (
     bias_current,
     case_of,

@@ -8,8 +8,10 @@ import jsonschema
 import msgspec
 import pytest
 
-from railguard.analysis.stage import Allowed, Range
-from railguard.report.as_json import Document, document, schema
+from railguard.analysis.bound import Range
+from railguard.analysis.stage import Allowed
+from railguard.report.as_json import document, schema
+from railguard.report.json_types import Document
 from railguard.report.places import from_root
 from railguard.reviewing import review
 from tests import gauge

@@ -9,9 +9,10 @@ from pathlib import Path
 import pytest
 from rich.console import Console
 
-from railguard.analysis.stage import Range
+from railguard.analysis.bound import Range
 from railguard.report import sheet_forms as forms
-from railguard.report.sheet import PARTS, Row, basis_of, range_of, rows
+from railguard.report.sheet import rows
+from railguard.report.sheet_row import PARTS, Row, basis_of, range_of
 from railguard.report.words import with_ends
 from railguard.reviewing import review
 

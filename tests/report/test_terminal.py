@@ -8,7 +8,7 @@ import pytest
 from rich.cells import cell_len
 from rich.console import Console
 
-from railguard.analysis.stage import Range
+from railguard.analysis.bound import Range
 from railguard.report.scale import limit_words, output_scale
 from railguard.report.terminal import print_on, terminal
 from railguard.reviewing import review

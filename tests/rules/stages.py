@@ -8,22 +8,10 @@ from typing import Any
 
 import msgspec
 
-from railguard.analysis.stage import (
-    Bound,
-    Capacitor,
-    Current,
-    Design,
-    Feedback,
-    Inputs,
-    Loop,
-    Output,
-    Package,
-    Pin,
-    Rail,
-    Range,
-    Stage,
-    Supply,
-)
+from railguard.analysis.bound import Bound, Range
+from railguard.analysis.loop import Feedback, Loop
+from railguard.analysis.rail import Capacitor, Package, Rail, Supply
+from railguard.analysis.stage import Current, Design, Inputs, Output, Pin, Stage
 from railguard.circuit.model import Circuit, Element
 from railguard.circuit.sources import Source
 from railguard.devices.model import Device, Figure, SheetSource

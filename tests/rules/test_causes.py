@@ -2,7 +2,8 @@
 
 import pytest
 
-from railguard.analysis.stage import Feedback, Output
+from railguard.analysis.loop import Feedback
+from railguard.analysis.stage import Output
 from railguard.devices.model import SwingPoint
 from railguard.location import Location
 from railguard.rules.causes import merge, order

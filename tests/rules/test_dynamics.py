@@ -2,7 +2,8 @@
 
 import pytest
 
-from railguard.analysis.stage import Filter, Loop, Range
+from railguard.analysis.bound import Range
+from railguard.analysis.loop import Filter, Loop
 from railguard.rules.dynamics import COUPLING, FILTER, LOOP_GAIN, SLEW
 from tests.rules.stages import (
     FAMILY,

@@ -4,7 +4,9 @@ from typing import get_args
 
 import pytest
 
-from railguard.analysis.stage import Current, Loop, Output, Part, Range, Unknown
+from railguard.analysis.bound import Range
+from railguard.analysis.loop import Loop
+from railguard.analysis.stage import Current, Output, Part, Unknown
 from railguard.notices import NotChecked
 from railguard.rules.registry import RULES
 from railguard.words import SEVERITIES

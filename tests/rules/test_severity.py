@@ -2,7 +2,7 @@
 
 import pytest
 
-from railguard.analysis.stage import Pair
+from railguard.analysis.bound import Pair
 from railguard.rules.severity import TABLE, breach, capped, evidence, far_beyond, soften
 from tests.rules.stages import bound
 

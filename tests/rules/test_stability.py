@@ -2,7 +2,9 @@
 
 import pytest
 
-from railguard.analysis.stage import Current, Feedback, Loop, Range, Unknown
+from railguard.analysis.bound import Range
+from railguard.analysis.loop import Feedback, Loop
+from railguard.analysis.stage import Current, Unknown
 from railguard.rules.feedback.size import HIGH
 from railguard.rules.stability import LOAD_CAPACITANCE, NOISE_GAIN, PHASE_MARGIN, TRANSIMPEDANCE
 from tests.rules.stages import (

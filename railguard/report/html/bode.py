@@ -8,7 +8,7 @@ import math
 from collections.abc import Iterator, Sequence
 from xml.etree import ElementTree as ET
 
-from railguard.analysis.stage import Loop
+from railguard.analysis.loop import Loop
 from railguard.report.html.svg import node, picture
 from railguard.report.words import with_ends
 from railguard.units import si

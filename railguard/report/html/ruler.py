@@ -9,7 +9,7 @@ import itertools
 from collections.abc import Iterator
 from xml.etree import ElementTree as ET
 
-from railguard.analysis.stage import Range
+from railguard.analysis.bound import Range
 from railguard.report.html.svg import node, picture
 from railguard.report.scale import Role, Scale, asked_volts, limit_words, shown_limit
 from railguard.units import si

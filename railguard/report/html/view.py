@@ -5,8 +5,9 @@ from collections.abc import Iterable, Iterator
 import msgspec
 from markupsafe import Markup
 
-from railguard.analysis.stage import Rail, Stage
-from railguard.report import sheet, words
+from railguard.analysis.rail import Rail
+from railguard.analysis.stage import Stage
+from railguard.report import sheet, sheet_row, words
 from railguard.report.grouping import OpenGroup, blocks, open_groups, with_consequences
 from railguard.report.html import bode, drawing, ruler, svg
 from railguard.report.html.listing import Listing, Places, listings
@@ -296,7 +297,7 @@ def _numbers(review: DesignReview) -> dict[str, tuple[tuple[str, ...], ...]]:
     alone = Review(designs=(review,), settings=review.design.settings)
     found: dict[str, tuple[tuple[str, ...], ...]] = {}
     for row in sheet.rows(alone):
-        found[row.designator] = (*found.get(row.designator, ()), sheet.cells(row))
+        found[row.designator] = (*found.get(row.designator, ()), sheet_row.cells(row))
     return found
 
 

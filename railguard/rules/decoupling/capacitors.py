@@ -2,7 +2,7 @@
 
 from collections.abc import Iterable
 
-from railguard.analysis.stage import Capacitor, Rail
+from railguard.analysis.rail import Capacitor, Rail
 from railguard.circuit.model import GROUND
 from railguard.rules.protocol import Limit, Limits
 from railguard.rules.severity import ROUNDING

@@ -2,7 +2,8 @@
 
 from collections.abc import Iterable, Iterator
 
-from railguard.analysis.stage import Capacitor, Design, Rail
+from railguard.analysis.rail import Capacitor, Rail
+from railguard.analysis.stage import Design
 from railguard.notices import NotChecked
 from railguard.rules.compose import finding
 from railguard.rules.decoupling.capacitors import (

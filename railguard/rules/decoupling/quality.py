@@ -3,7 +3,8 @@
 import math
 from collections.abc import Iterator
 
-from railguard.analysis.stage import Capacitor, Design, Package, Rail, Stage
+from railguard.analysis.rail import Capacitor, Package, Rail
+from railguard.analysis.stage import Design, Stage
 from railguard.notices import NotChecked
 from railguard.rules.compose import channels_of, finding, stage_finding
 from railguard.rules.decoupling.capacitors import (

@@ -4,7 +4,8 @@ from collections.abc import Iterator
 
 from msgspec.structs import replace
 
-from railguard.analysis.stage import Bound, Carrier, Design, Stage, Unknown
+from railguard.analysis.bound import Bound
+from railguard.analysis.stage import Carrier, Design, Stage, Unknown
 from railguard.devices.model import UNLISTED_CURRENT
 from railguard.rules.compose import (
     breach_finding,

@@ -2,7 +2,8 @@
 
 from collections.abc import Iterator
 
-from railguard.analysis.stage import Design, Package, Stage
+from railguard.analysis.rail import Package
+from railguard.analysis.stage import Design, Stage
 from railguard.analysis.thermal import hottest
 from railguard.notices import NotChecked
 from railguard.rules.compose import OWN_TABLE, channels_of, finding, first_unknown

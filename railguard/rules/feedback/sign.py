@@ -2,7 +2,8 @@
 
 from collections.abc import Iterator
 
-from railguard.analysis.stage import Design, Loop, Stage, Unknown
+from railguard.analysis.loop import Loop
+from railguard.analysis.stage import Design, Stage, Unknown
 from railguard.rules.compose import open_point, stage_finding
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.wording import listed

@@ -9,7 +9,8 @@ from collections.abc import Iterator
 
 import msgspec
 
-from railguard.analysis.stage import Bound, Design, Stage, Unknown
+from railguard.analysis.bound import Bound
+from railguard.analysis.stage import Design, Stage, Unknown
 from railguard.devices.model import Device
 from railguard.rules.compose import first_unknown, open_point, stage_finding
 from railguard.rules.drive.current import FAR_FACTOR

@@ -2,7 +2,8 @@
 
 from collections.abc import Iterator
 
-from railguard.analysis.stage import Bound, Design, Stage, Unknown
+from railguard.analysis.bound import Bound
+from railguard.analysis.stage import Design, Stage, Unknown
 from railguard.circuit.model import GROUND
 from railguard.rules.compose import (
     breach_finding,

@@ -2,7 +2,9 @@
 
 from collections.abc import Iterator
 
-from railguard.analysis.stage import Bound, Design, Package, Pair, Rail, Stage
+from railguard.analysis.bound import Bound, Pair
+from railguard.analysis.rail import Package, Rail
+from railguard.analysis.stage import Design, Stage
 from railguard.devices.model import Device
 from railguard.notices import NotChecked
 from railguard.rules.compose import (

@@ -2,7 +2,8 @@
 
 from collections.abc import Iterable
 
-from railguard.analysis.stage import Design, Package, Stage
+from railguard.analysis.rail import Package
+from railguard.analysis.stage import Design, Stage
 from railguard.devices.model import Device
 from railguard.notices import NotChecked
 from railguard.rules.compose import channels_of, first_unknown

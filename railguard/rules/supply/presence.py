@@ -2,7 +2,8 @@
 
 from collections.abc import Iterator
 
-from railguard.analysis.stage import Design, Package, Rail, Stage
+from railguard.analysis.rail import Package, Rail
+from railguard.analysis.stage import Design, Stage
 from railguard.rules.compose import (
     finding,
     rail_at,

@@ -8,7 +8,7 @@ from xml.etree import ElementTree as ET
 import pytest
 from msgspec.structs import replace
 
-from railguard.analysis.stage import Range
+from railguard.analysis.bound import Range
 from railguard.report.html import bode, drawing, ruler, svg
 from railguard.report.html.view import page
 from railguard.report.html.wiring import Nets, wiring

@@ -2,7 +2,9 @@
 
 import pytest
 
-from railguard.analysis.stage import Loop, Output, Range
+from railguard.analysis.bound import Range
+from railguard.analysis.loop import Loop
+from railguard.analysis.stage import Output
 from railguard.rules.bias.errors import CURRENT_ERROR, LEVEL
 from railguard.settings.model import Settings
 from tests.rules.stages import (

@@ -2,7 +2,8 @@
 
 import pytest
 
-from railguard.analysis.stage import Feedback, Unknown
+from railguard.analysis.loop import Feedback
+from railguard.analysis.stage import Unknown
 from railguard.rules.bias.path import NO_DC_PATH
 from tests.rules.stages import findings, inputs, open_points, outcomes, pin, single, stage
 

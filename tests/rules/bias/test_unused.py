@@ -2,7 +2,8 @@
 
 import pytest
 
-from railguard.analysis.stage import Loop, Range
+from railguard.analysis.bound import Range
+from railguard.analysis.loop import Loop
 from railguard.rules.bias.unused import UNUSED
 from tests.rules.stages import findings, inputs, outcomes, pin, single, stage
 

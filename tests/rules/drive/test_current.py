@@ -2,7 +2,9 @@
 
 import pytest
 
-from railguard.analysis.stage import Current, Loop, Pair, Unknown
+from railguard.analysis.bound import Pair
+from railguard.analysis.loop import Loop
+from railguard.analysis.stage import Current, Unknown
 from railguard.devices.model import UNLISTED_CURRENT
 from railguard.rules.drive.current import CURRENT
 from tests.rules.stages import amps, findings, open_points, outcomes, stage, unknown_device

@@ -2,7 +2,8 @@
 
 import pytest
 
-from railguard.analysis.stage import Current, Range
+from railguard.analysis.bound import Range
+from railguard.analysis.stage import Current
 from railguard.devices.model import Figure
 from railguard.rules.drive.outputs import ABOVE_RAIL, CAPACITIVE, JOINED, TIED
 from tests.rules.stages import (

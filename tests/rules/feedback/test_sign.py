@@ -2,7 +2,9 @@
 
 import pytest
 
-from railguard.analysis.stage import Feedback, Loop, Range, Unknown
+from railguard.analysis.bound import Range
+from railguard.analysis.loop import Feedback, Loop
+from railguard.analysis.stage import Unknown
 from railguard.rules.feedback.sign import OPEN, REVERSED
 from tests.rules.stages import findings, open_points, outcomes, stage
 

@@ -4,7 +4,9 @@ import math
 
 import pytest
 
-from railguard.analysis.stage import Current, Feedback, Loop, Output, Pair, Range
+from railguard.analysis.bound import Pair, Range
+from railguard.analysis.loop import Feedback, Loop
+from railguard.analysis.stage import Current, Output
 from railguard.rules.feedback.size import HIGH, LOW
 from tests.rules.stages import (
     FAMILY,

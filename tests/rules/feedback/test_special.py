@@ -2,7 +2,9 @@
 
 import pytest
 
-from railguard.analysis.stage import Feedback, Loop, Output, Range
+from railguard.analysis.bound import Range
+from railguard.analysis.loop import Feedback, Loop
+from railguard.analysis.stage import Output
 from railguard.rules.feedback.special import CURRENT_TYPE, MATCHING
 from railguard.settings.model import Settings, Tolerances
 from tests.rules.stages import (

@@ -2,7 +2,7 @@
 
 import pytest
 
-from railguard.analysis.stage import Range
+from railguard.analysis.bound import Range
 from railguard.rules.headroom.limits import DIFFERENTIAL, LOAD, OFFSET, REVERSAL
 from railguard.settings.model import Load, Settings
 from tests.rules.stages import (

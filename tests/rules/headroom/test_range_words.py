@@ -2,7 +2,9 @@
 
 import pytest
 
-from railguard.analysis.stage import Loop, Output, Pair, Range
+from railguard.analysis.bound import Pair, Range
+from railguard.analysis.loop import Loop
+from railguard.analysis.stage import Output
 from railguard.devices.model import SwingPoint
 from railguard.rules.headroom.ranges import INPUT, OUTPUT
 from tests.rules.stages import (

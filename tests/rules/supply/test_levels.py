@@ -2,7 +2,7 @@
 
 import pytest
 
-from railguard.analysis.stage import Range
+from railguard.analysis.bound import Range
 from railguard.rules.compose import OWN_TABLE
 from railguard.rules.supply.levels import DROP, NAME_DISAGREES, RANGE
 from railguard.rules.supply.presence import MISSING, REVERSED

@@ -2,7 +2,8 @@
 
 import pytest
 
-from railguard.analysis.stage import Rail, Unknown
+from railguard.analysis.rail import Rail
+from railguard.analysis.stage import Unknown
 from railguard.circuit.model import Element
 from railguard.rules.supply.presence import MISSING, REVERSED, SPLIT
 from tests.rules.stages import (
