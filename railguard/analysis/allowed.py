@@ -5,7 +5,7 @@ from collections.abc import Sequence
 import msgspec
 import numpy as np
 
-from railguard.analysis.network import Complex, Real
+from railguard.analysis.equations import Complex, Real
 from railguard.analysis.solution import Solution
 from railguard.analysis.stage import Allowed, Stage
 

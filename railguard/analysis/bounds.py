@@ -7,7 +7,7 @@ import numpy as np
 from railguard.analysis.available import Reach
 from railguard.analysis.bound import Bound, Pair
 from railguard.analysis.corners import Spread
-from railguard.analysis.network import Real
+from railguard.analysis.equations import Real
 from railguard.words import Basis
 
 CULPRITS = 3

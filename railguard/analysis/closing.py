@@ -1,39 +1,31 @@
 """Where a loop closes, and what tolerances do to it: bandwidth, phase margin, loop gain.
 
-With z the voltage between an amplifier's inputs per unit in its own row, its loop transmission is
-T = -z / (1 + z) (as in `solve.return_ratios`); one forward and one adjoint solution give the
-derivative of ln T to every element and to frequency. The derivatives choose a corner; the corner
-itself is solved, by a change of low rank to the factorisation at hand, so its value is exact and
-not of first order. Where a quantity turns round inside a tolerance its extreme lies inside the
-box: the triangle under the derivative, from its zero to the corner, is added.
-
-Source  d(M^-1) = -M^-1 dM M^-1; change of low rank: Sherman, Morrison and Woodbury
+The derivatives of its transmission (`transmission`) choose a corner; the corner itself is solved.
+Where a quantity turns round inside a tolerance its extreme lies inside the box: the triangle under
+the derivative, from its zero to the corner, is added.
 """
 
 from collections.abc import Mapping
 
 import msgspec
 import numpy as np
-import numpy.typing as npt
 
 from railguard.analysis.bound import Range
 from railguard.analysis.deviations import Off
-from railguard.analysis.network import Complex, Network, Real, gain_bandwidth, open_loop_gain
-from railguard.analysis.solve import DENSE_LIMIT, factor
+from railguard.analysis.equations import Real
+from railguard.analysis.network import Network
+from railguard.analysis.stamping import gain_bandwidth, open_loop_gain
+from railguard.analysis.transmission import TAIL, Moved, Solved, Transmission
 
 TOGETHER = 0.05
 """Natural logarithm of the ratio of frequencies up to which one factorisation serves both."""
 NEAR = 0.15
 """The same up to which a loop is followed from where it was solved, to second order."""
 MOST_TRIES = 5
-TAIL = 1e-3
-"""Share of an excursion its smallest parts may make together: they count to first order."""
 MOST_TURNS = 3
 """Corners tried for one end of a quantity: each where the derivatives at the last one point."""
 FLAT = 1e-3
 """A loop gain that falls by less than this per neper of frequency crosses one nowhere exactly."""
-
-Index = npt.NDArray[np.int64]
 
 
 class Seen(msgspec.Struct, frozen=True):
@@ -73,7 +65,7 @@ def closings(network: Network, off: Off, seen: Mapping[int, Seen]) -> dict[int, 
     """Return where loops close, by index of the amplifier."""
     found = {}
     for hertz, members in _groups({k: sight.hertz for k, sight in seen.items()}).items():
-        solved = _Solved(network, off, hertz)
+        solved = Solved(network, off, hertz)
         for k in members:
             with _beyond_numbers():
                 closing = _closing(solved, k, seen[k])
@@ -99,12 +91,12 @@ class Bands:
     def __init__(self, network: Network, off: Off) -> None:
         """Take the network the loops are looked at in, and what moves them."""
         self._network, self._off = network, off
-        self._solved: dict[float, _Solved] = {}
+        self._solved: dict[float, Solved] = {}
 
     def at(self, k: int, hertz: float) -> InBand | None:
         """Return the ends of amplifier number `k` at a frequency; None where it has no loop."""
         if hertz not in self._solved:
-            self._solved[hertz] = _Solved(self._network, self._off, hertz)
+            self._solved[hertz] = Solved(self._network, self._off, hertz)
         with _beyond_numbers():
             loop = self._solved[hertz].loop(k)
             return None if loop is None else _in_band(loop)
@@ -122,146 +114,6 @@ def _groups(hertz: Mapping[int, float]) -> dict[float, list[int]]:
     return groups
 
 
-class _Moved(msgspec.Struct, frozen=True):
-    """ln T of one loop at some shares: its value and derivatives.
-
-    value            ln T, shape (corners,)
-    first, second    its derivatives to the logarithm of frequency
-    gradient         its derivative to each share, shape (corners, parameters)
-    """
-
-    value: Complex
-    first: Complex
-    second: Complex
-    gradient: Complex
-
-
-class _Solved:
-    """A network factored at one frequency."""
-
-    def __init__(self, network: Network, off: Off, hertz: float) -> None:
-        self.network, self.off, self.hertz = network, off, hertz
-        self.s = 2j * np.pi * hertz
-        self.factor = factor(network, hertz)
-        # A coefficient's factor: 1 for a conductance, s for what stores energy.
-        self.unit = np.where(off.storing, self.s, 1.0)
-
-    def loop(self, k: int) -> "_Loop | None":
-        """Return one amplifier's loop; None where it has none."""
-        amplifier = self.network.amplifiers[k]
-        row = self.network.outputs.get(amplifier.designator, -1)
-        if row < 0 or amplifier.designator in self.network.forced:
-            return None
-        return _Loop(self, k, row)
-
-    def stored(self, x: Complex) -> Complex:
-        """Return C x of some solutions, shape (solutions, unknowns)."""
-        if self.network.size <= DENSE_LIMIT:
-            return np.asarray(x @ self.network.c.T)
-        out = np.zeros(x.shape, dtype=np.complex128)
-        for row, column, value in self.network.entries()[1]:
-            out[:, row] += value * x[:, column]
-        return out
-
-
-def _across(vectors: Complex, at: Index, second: Real | float = -1.0) -> Complex:
-    """Return what each vector has at the first rows, and `second` times at the second ones.
-
-    returns  shape (vectors, parameters)
-    """
-    padded = np.concatenate([vectors, np.zeros((len(vectors), 1))], axis=1)
-    return np.asarray(padded[:, at[:, 0]] + second * padded[:, at[:, 1]])
-
-
-class _Loop:
-    """One amplifier's loop at one frequency, and what moves it."""
-
-    def __init__(self, solved: _Solved, k: int, row: int) -> None:
-        network, off = solved.network, solved.off
-        self.solved, self.k = solved, k
-        amplifier = network.amplifiers[k]
-        unit = np.zeros(network.size, dtype=np.complex128)
-        unit[row] = 1.0
-        self._x = solved.factor.forward(unit)[None, :]
-        rows = solved.factor.adjoint([network.row(amplifier.plus), network.row(amplifier.minus)])
-        self._a = (rows[0] - rows[1])[None, :]
-        self._z = self._a[:, row]
-        stored = solved.stored(self._x)
-        again = solved.factor.forward(stored.T).T
-        none = np.zeros((1, len(off.value)))
-        self.nominal = self._derived(self._x, self._a, self._z, none, stored, solved.stored(again))
-
-    def moved(self, shares: Real) -> _Moved:
-        """Return the loop with its parameters off by some shares, shape (corners, parameters).
-
-        What moves it least counts to first order, all else exactly.
-        """
-        solved, off = self.solved, self.solved.off
-        pulls = self.nominal.gradient[0] * shares
-        picks, rest = _weighty(np.abs(pulls).max(axis=0, initial=0.0))
-        left, right, second = off.left[picks], off.right[picks], off.second[picks]
-        change = off.change(shares)[:, picks]
-        coefficient = change * solved.unit[picks]
-        storage = np.where(off.storing[picks], change, 0.0)
-        u, w = _across(self._a, left)[0], _across(self._x, right, second)[0]
-        entering = _patterns(left, solved.network.size)
-        forward = solved.factor.forward(entering)
-        leaving = solved.factor.adjoint([int(row) for row in right.ravel()])
-        back = leaving[0::2] + second[:, None] * leaving[1::2]
-        # (M + U D W')^-1 = N - N U Q W' N with Q = (1 + D W' N U)^-1 D and N = M^-1.
-        unity = np.eye(len(picks))
-        system = unity + coefficient[:, :, None] * _across(back, left)[None, :, :]
-        try:
-            rank = np.linalg.solve(system, coefficient[:, :, None] * unity)
-        except np.linalg.LinAlgError:  # a corner without an answer
-            rank = np.full(system.shape, np.nan, dtype=np.complex128)
-        x = self._x - (rank @ w) @ forward.T
-        a = self._a - (u @ rank) @ back
-        z = self._z - (u @ rank) @ w
-        stored = solved.stored(x) + (storage * _across(x, right, second)) @ entering.T
-        again = solved.factor.forward(stored.T).T
-        again = again - np.einsum("ekl,el->ek", rank, stored @ back.T) @ forward.T
-        curved = solved.stored(again) + (storage * _across(again, right, second)) @ entering.T
-        moved = self._derived(x, a, z, shares, stored, curved)
-        return msgspec.structs.replace(moved, value=moved.value + pulls[:, rest].sum(axis=1))
-
-    def _derived(
-        self, x: Complex, a: Complex, z: Complex, shares: Real, stored: Complex, curved: Complex
-    ) -> _Moved:
-        """Return ln T and its derivatives.
-
-        x, a    forward and adjoint solution of each corner, shape (corners, unknowns)
-        z       volts between the inputs, shape (corners,)
-        stored  C x of each corner; curved: C M^-1 C x
-        """
-        off, s = self.solved.off, self.solved.s
-        scale = z * (1.0 + z)
-        # dz/ds = -a C x, and d2z/ds2 = 2 a C M^-1 C x.
-        first, second = -(a * stored).sum(axis=1) / scale, 2 * (a * curved).sum(axis=1) / scale
-        along = s * first
-        bend = s * s * (second - first * first * (1.0 + 2.0 * z)) + along
-        gradient = -_across(a, off.left) * _across(x, off.right, off.second) / scale[:, None]
-        gradient = gradient * off.slope(shares) * self.solved.unit
-        return _Moved(np.log(-z / (1.0 + z)), along, bend, gradient)
-
-
-def _weighty(weight: Real) -> tuple[Index, Index]:
-    """Return the parameters that make up a sum but for its tail, and those in the tail."""
-    order = np.argsort(-weight)
-    left_over = weight.sum() - np.cumsum(weight[order])
-    kept = int(np.count_nonzero(left_over > TAIL * weight.sum())) + 1
-    return order[:kept], order[kept:]
-
-
-def _patterns(rows: Index, size: int) -> Complex:
-    """Return plus one and minus one at each pair of rows, shape (size, pairs)."""
-    columns = np.zeros((size + 1, len(rows)), dtype=np.complex128)
-    pairs = np.arange(len(rows))
-    columns[rows[:, 0], pairs] = 1.0
-    columns[rows[:, 1], pairs] -= 1.0
-    return columns[:size]
-
-
 class _Crossed(msgspec.Struct, frozen=True):
     """A loop where its gain is one.
 
@@ -275,7 +127,7 @@ class _Crossed(msgspec.Struct, frozen=True):
     turn: Real
 
 
-def _crossed(loop: _Loop, moved: _Moved, corner: int) -> _Crossed | float | None:
+def _crossed(loop: Transmission, moved: Moved, corner: int) -> _Crossed | float | None:
     """Return where a loop's gain is one; the way there, in nepers, where that is far; or None."""
     value, first, second = moved.value[corner], moved.first[corner], moved.second[corner]
     if first.real > -FLAT or not np.isfinite(value):
@@ -296,14 +148,14 @@ def _crossed(loop: _Loop, moved: _Moved, corner: int) -> _Crossed | float | None
     )
 
 
-def _followed(loop: _Loop, moved: _Moved, corner: int, shares: Real) -> _Crossed | None:
+def _followed(loop: Transmission, moved: Moved, corner: int, shares: Real) -> _Crossed | None:
     """Return where a loop closes at one corner, solved anew where that is far."""
     found = _crossed(loop, moved, corner)
     for _ in range(MOST_TRIES):
         if not isinstance(found, float):
             return found
         solved = loop.solved
-        there = _Solved(solved.network, solved.off, solved.hertz * float(np.exp(found)))
+        there = Solved(solved.network, solved.off, solved.hertz * float(np.exp(found)))
         again = there.loop(loop.k)
         if again is None:
             return None
@@ -312,7 +164,7 @@ def _followed(loop: _Loop, moved: _Moved, corner: int, shares: Real) -> _Crossed
     return None
 
 
-def _closing(solved: _Solved, k: int, seen: Seen) -> Closing | None:
+def _closing(solved: Solved, k: int, seen: Seen) -> Closing | None:
     loop = solved.loop(k)
     if loop is None:
         return None
@@ -344,7 +196,7 @@ def _closing(solved: _Solved, k: int, seen: Seen) -> Closing | None:
     )
 
 
-def _ends(loop: _Loop, nominal: _Crossed, pulls: Real, speeds: int) -> list[float] | None:
+def _ends(loop: Transmission, nominal: _Crossed, pulls: Real, speeds: int) -> list[float] | None:
     """Return how far quantities of a loop move over all that may be off: up and down, by turns.
 
     pulls    their derivatives at nominal, shape (quantities, parameters), one line for the way up
@@ -401,7 +253,7 @@ def _inside(start: Real, end: Real, shares: Real) -> float:
     return float((0.5 * down * np.abs(shares[turned]) * down / (up + down)).sum())
 
 
-def _in_band(loop: _Loop) -> InBand:
+def _in_band(loop: Transmission) -> InBand:
     """Return the ends of |T| and of |A| / |T| at the loop's own frequency."""
     off, hertz = loop.solved.off, loop.solved.hertz
     amplifier = loop.solved.network.amplifiers[loop.k]

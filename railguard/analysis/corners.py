@@ -17,7 +17,8 @@ import msgspec
 import numpy as np
 import numpy.typing as npt
 
-from railguard.analysis.network import Network, Real, Stamp
+from railguard.analysis.equations import Real, Stamp
+from railguard.analysis.network import Network
 from railguard.analysis.ranges import Answers
 from railguard.analysis.sensitivity import Elements
 from railguard.circuit.model import Element

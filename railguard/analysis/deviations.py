@@ -6,8 +6,10 @@ import msgspec
 import numpy as np
 import numpy.typing as npt
 
-from railguard.analysis.network import Network, Real, gain_bandwidth
+from railguard.analysis.equations import Real
+from railguard.analysis.network import Network
 from railguard.analysis.recognise import Amplifier
+from railguard.analysis.stamping import gain_bandwidth
 
 STEADY = 0.02
 """Share, in the mean of what moves a quantity, up to which its logarithm is followed on those of

@@ -15,8 +15,8 @@ import msgspec
 import numpy as np
 
 from railguard.analysis.bound import Range
+from railguard.analysis.equations import Complex, Real
 from railguard.analysis.loop import Filter
-from railguard.analysis.network import Complex, Real
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.surroundings import Ways
 from railguard.circuit.model import GROUND, Element

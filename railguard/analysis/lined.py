@@ -10,6 +10,7 @@ from collections.abc import Iterable, Mapping, Sequence
 import msgspec
 import numpy as np
 
+from railguard.analysis.equations import Complex, Real
 from railguard.analysis.lamps import MOST_VOLTS, drop_of, lamps_at
 from railguard.analysis.lamps import elements_of as elements_of_lamp
 from railguard.analysis.lamps import injection_of as volts_of_lamp
@@ -30,11 +31,12 @@ from railguard.analysis.lines import (
     steering,
     taken,
 )
-from railguard.analysis.network import Complex, Network, Parasitics, Real
+from railguard.analysis.network import Network
 from railguard.analysis.ranges import Answers, Clamp, answer
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.signals import Drive, Prepared
 from railguard.analysis.stage import Carrier
+from railguard.analysis.stamping import Parasitics
 from railguard.analysis.transistors import (
     BASE_EMITTER_SPREAD,
     Bipolar,

@@ -14,17 +14,12 @@ import numpy as np
 
 from railguard.analysis.bound import Range
 from railguard.analysis.closing import Bands, Closing, InBand
+from railguard.analysis.equations import Complex, Real
 from railguard.analysis.loop import Loop
-from railguard.analysis.network import (
-    Complex,
-    Network,
-    Parasitics,
-    Real,
-    gain_bandwidth,
-    open_loop_gain,
-)
+from railguard.analysis.network import Network
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.solve import factor, return_ratios
+from railguard.analysis.stamping import Parasitics, gain_bandwidth, open_loop_gain
 from railguard.circuit.model import Control, Element
 
 OPEN_BETA = 1e-6

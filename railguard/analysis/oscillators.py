@@ -20,10 +20,12 @@ import msgspec
 import numpy as np
 
 from railguard.analysis.dcpaths import leaves_sheet
-from railguard.analysis.network import OPEN_LOOP_GAIN, Complex, Network, Real
+from railguard.analysis.equations import Complex, Real
+from railguard.analysis.network import Network
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.signals import Prepared
 from railguard.analysis.solve import return_ratios
+from railguard.analysis.stamping import OPEN_LOOP_GAIN
 from railguard.analysis.surroundings import Ways
 from railguard.circuit.model import GROUND, Element
 from railguard.words import Use

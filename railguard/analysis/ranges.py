@@ -10,7 +10,8 @@ import msgspec
 import numpy as np
 import numpy.typing as npt
 
-from railguard.analysis.network import Complex, Network, Real
+from railguard.analysis.equations import Complex, Real
+from railguard.analysis.network import Network
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.signals import Prepared, Tone
 from railguard.analysis.solve import Factor, factor

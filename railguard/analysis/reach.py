@@ -4,8 +4,8 @@ import msgspec
 import numpy as np
 
 from railguard.analysis.bound import Range
+from railguard.analysis.equations import Complex, Real
 from railguard.analysis.loop import Loop
-from railguard.analysis.network import Complex, Real
 from railguard.analysis.solve import factor
 from railguard.analysis.surroundings import MID_HERTZ
 from railguard.analysis.view import View

@@ -9,7 +9,7 @@ import msgspec
 import numpy as np
 
 from railguard.analysis.corners import Spread
-from railguard.analysis.network import Complex, Real
+from railguard.analysis.equations import Complex, Real
 from railguard.analysis.ranges import Answers
 
 STACK = 128

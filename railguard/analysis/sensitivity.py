@@ -11,7 +11,7 @@ import msgspec
 import numpy as np
 import numpy.typing as npt
 
-from railguard.analysis.network import Complex, Real, Stamp
+from railguard.analysis.equations import Complex, Real, Stamp
 
 Index = npt.NDArray[np.int64]
 

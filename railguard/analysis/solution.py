@@ -12,6 +12,7 @@ from railguard.analysis.closing import Closing, Seen, closings
 from railguard.analysis.corners import Nuisance, Spread, spread
 from railguard.analysis.dcpaths import DcMap
 from railguard.analysis.deviations import Off, off_of
+from railguard.analysis.equations import Real
 from railguard.analysis.lined import Boost
 from railguard.analysis.lined import Part as Boostable
 from railguard.analysis.loops import (
@@ -28,7 +29,7 @@ from railguard.analysis.loops import (
     small_signal,
     sweep,
 )
-from railguard.analysis.network import Network, Real, open_loop_gain
+from railguard.analysis.network import Network
 from railguard.analysis.oscillators import Oscillators, oscillators
 from railguard.analysis.rails import rail_tolerance
 from railguard.analysis.ranges import Answers, Clamp, quantity_at, standing_levels
@@ -36,6 +37,7 @@ from railguard.analysis.recognise import Amplifier
 from railguard.analysis.sampling import Sampled, monte_carlo
 from railguard.analysis.signals import Prepared
 from railguard.analysis.solve import Factor, factor, return_ratios
+from railguard.analysis.stamping import open_loop_gain
 from railguard.analysis.supplies import Feed
 from railguard.analysis.surroundings import (
     MID_HERTZ,

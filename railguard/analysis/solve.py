@@ -11,7 +11,8 @@ import numpy as np
 import numpy.typing as npt
 from numpy.lib.stride_tricks import sliding_window_view
 
-from railguard.analysis.network import Complex, Network, Real
+from railguard.analysis.equations import Complex, Real
+from railguard.analysis.network import Network
 from railguard.errors import SolveError
 
 DENSE_LIMIT = 250

@@ -10,7 +10,8 @@ import itertools
 import msgspec
 import numpy as np
 
-from railguard.analysis.network import Network, Real
+from railguard.analysis.equations import Real
+from railguard.analysis.network import Network
 from railguard.analysis.solve import Stepper
 from railguard.circuit.sources import (
     AmplitudeModulated,

@@ -13,8 +13,9 @@ import msgspec
 import numpy as np
 
 from railguard.analysis.dcpaths import is_linear, leaves_sheet
+from railguard.analysis.equations import Complex, Real
 from railguard.analysis.lined import Boost
-from railguard.analysis.network import Complex, Network, Real
+from railguard.analysis.network import Network
 from railguard.analysis.ranges import QUANTITIES, Answers
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.signals import Unstated

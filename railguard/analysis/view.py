@@ -2,7 +2,7 @@
 
 from railguard.analysis.bound import Range
 from railguard.analysis.bounds import Exact
-from railguard.analysis.network import Real
+from railguard.analysis.equations import Real
 from railguard.analysis.ranges import Answers, ToneAnswer
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.sampling import evaluate, exact_corners

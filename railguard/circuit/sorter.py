@@ -27,6 +27,7 @@ _KNOWN = frozenset(
      "loadbias", "preprocess", "global_param", "machine", "endmachine", "watch", "list", "view"}
 )  # fmt: skip
 _GLUED_COMMA = re.compile(r"[^\s,],\s*[A-Za-z_]\w*\s*=(?!=)")
+_CONDITION_WORD = re.compile(r"^\.[^\s(]*\s*")
 _PARAMETERS = frozenset({"param", "params", "parameter", "parameters", "global_param"})
 
 
@@ -301,9 +302,12 @@ class _Sorter:
 
     def true(self, line: Line) -> bool:
         """Work a condition out from the parameters met so far, of this scope and those outside."""
-        text = line.text.split(None, 1)[1] if len(line.text.split(None, 1)) > 1 else ""
-        if line.text.split("(")[0].strip().lower() in (".if", ".elseif", ".elif"):
-            text = line.text[line.text.index("(") :]
+        text = _CONDITION_WORD.sub("", line.text)
+        if not text:
+            self.problem(
+                "netlist-expression", "The condition is empty; its cards are left out.", line
+            )
+            return False
         stack = list(reversed(self.stack))
         known: dict[str, float] = {}
 

@@ -12,7 +12,7 @@ from railguard.analysis.available import (
     current_reach,
     input_reach,
 )
-from railguard.analysis.network import OPEN_LOOP_GAIN
+from railguard.analysis.stamping import OPEN_LOOP_GAIN
 from railguard.devices.model import Device, Figure, SwingPoint
 from railguard.devices.swing import drop
 

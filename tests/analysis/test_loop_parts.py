@@ -14,8 +14,9 @@ from railguard.analysis.loops import (
     phase_margin,
     small_signal,
 )
-from railguard.analysis.network import Network, Parasitics
+from railguard.analysis.network import Network
 from railguard.analysis.recognise import Amplifier
+from railguard.analysis.stamping import Parasitics
 from railguard.circuit.model import Control, Element
 from railguard.devices import catalogue
 from railguard.devices.model import Figure

@@ -282,6 +282,7 @@ def test_messages_speak_the_trade(card, words):
     ("cards", "rule", "words"),
     [
         (".if (1)\nR1 a 0 1k", "netlist-end", "not closed by .endif"),
+        (".if\nR1 a 0 1k\n.endif", "netlist-expression", "The condition is empty"),
         (".else\nR1 a 0 1k", "netlist-card", ".else without .if"),
         ("R1 a 0 1k\n.ends", "netlist-end", "closes no subcircuit"),
         (".subckt s p q\nR1 p q 1\n.ends t\nX1 a 0 s", "netlist-end", "closes the subcircuit s"),

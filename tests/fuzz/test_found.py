@@ -21,6 +21,7 @@ FOUND = {
         "gauge\nVR (   v 2 200)\nIC1 (a b) x(1 2)\nX1 0 0 0 0 0 TL072\n"
     ),
     "a node of empty quotes": "gauge\nM1 P ` v 2 '' n out 1meg\nR1 P 0 1k\nR2 '' 0 1k\n",
+    "a condition without one": "gauge\nV1 a 0 5\n.if\nR1 a 0 1k\n.endif\nX1 0 0 a 0 b TL072\n",
     "steering characters": "gauge\nR1\x9b31m a \u202eb 1k\nX1 a b c d \u2066e ODD\n",
 }
 
