@@ -14,8 +14,10 @@ from railguard.analysis.bound import Range
 from railguard.analysis.deviations import Off
 from railguard.analysis.equations import Real
 from railguard.analysis.network import Network
+from railguard.analysis.sensitivity import TAIL
 from railguard.analysis.stamping import gain_bandwidth, open_loop_gain
-from railguard.analysis.transmission import TAIL, Moved, Solved, Transmission
+from railguard.analysis.transmission import Moved, Solved, Transmission
+from railguard.analysis.vertices import inside
 
 TOGETHER = 0.05
 """Natural logarithm of the ratio of frequencies up to which one factorisation serves both."""
@@ -220,7 +222,7 @@ def _ends(loop: Transmission, nominal: _Crossed, pulls: Real, speeds: int) -> li
                 return None
             reached, there = _told(corner, nominal, speed=e < speeds)
             reached, there = signs[e] * reached, np.where(pulls[e] == 0, 0.0, signs[e] * there)
-            reached += _inside(pulls[e], there, shares[place])
+            reached += inside(pulls[e], there, shares[place])
             # A share that now pulls the other way may be better off at its other end.
             back = float((np.abs(there) * (off.most - off.least))[there * shares[place] < 0].sum())
             if reached > best[e] and back > TAIL * reached:
@@ -241,18 +243,6 @@ def _told(corner: _Crossed, nominal: _Crossed, *, speed: bool) -> tuple[float, R
     return turned - 2 * np.pi * round(turned / (2 * np.pi)), corner.turn
 
 
-def _inside(start: Real, end: Real, shares: Real) -> float:
-    """Return how far a quantity rises above a corner it was led to, where it turned on the way.
-
-    start, end  its derivatives to every share, at nominal and at the corner
-    """
-    turned = (start * shares > 0) & (end * shares < 0)
-    if not turned.any():
-        return 0.0
-    up, down = np.abs(start[turned]), np.abs(end[turned])
-    return float((0.5 * down * np.abs(shares[turned]) * down / (up + down)).sum())
-
-
 def _in_band(loop: Transmission) -> InBand:
     """Return the ends of |T| and of |A| / |T| at the loop's own frequency."""
     off, hertz = loop.solved.off, loop.solved.hertz
@@ -268,7 +258,7 @@ def _in_band(loop: Transmission) -> InBand:
         moved = loop.moved(shares)
         sums = np.array(
             [
-                max(sign * float(reached.real - value) + _inside(start, sign * end, share), 0.0)
+                max(sign * float(reached.real - value) + inside(start, sign * end, share), 0.0)
                 for sign, reached, start, end, share in zip(
                     (1.0, -1.0) * 2, moved.value, pulls, moved.gradient.real, shares, strict=True
                 )

@@ -8,6 +8,7 @@ from railguard.analysis.bounds import bound
 from railguard.analysis.rail import Supply
 from railguard.analysis.stage import Carrier, Current, Output, Part, Unknown
 from railguard.analysis.surroundings import heaviest_load, load_capacitance
+from railguard.analysis.vertices import Answer, ends
 from railguard.analysis.view import View
 
 _NO_SUPPLY = Unknown("its supply pins leave it no supply voltage", "see the finding on its supply")
@@ -127,29 +128,29 @@ def output_side(
         low=bounds[False],
         frequency=_worst_frequency(view),
         slew=slew if known and slew > 0 else None,
-        slew_worst=_slew_ends(view, slew) if known and slew > 0 else Range(),
+        slew_worst=_slew_ends(view) if known and slew > 0 else Range(),
         offset=error if known and device is not None else None,
     )
     return _current(view, current_known, load, carriers if current_known else ()), output
 
 
-def _slew_ends(view: View, slew: float) -> Range:
+def _slew_ends(view: View) -> Range:
     """Return the ends of the steepest slope, of each tone at the frequency where it is steepest.
 
     A wave that is no sine is taken to grow as its fundamental does.
     """
-    q, spread, tones = view.at("output"), view.solution.spread, view.answers.tones
-    pulls = np.zeros(len(spread.elements))
-    for tone in (tone for tone in tones if tone.slew[q] > 0):
-        steep = next(worst for worst in tone.steepest if q in worst.picks)
-        row = int(view.answers.rows[q])
-        adjoint, value = steep.factor.adjoint([row]), steep.x[row]
+    q, spread = view.at("output"), view.solution.spread
+    row = int(view.answers.rows[q])
+    answers = []
+    for tone in (tone for tone in view.answers.tones if tone.slew[q] > 0):
+        at = next(worst for worst in tone.steepest if q in worst.picks)
+        value = complex(at.x[row])
         if not value:
             return Range()
-        change = spread.elements.pulls(adjoint, steep.x, 2j * np.pi * steep.hertz)[0]
-        pulls += float(tone.slew[q]) * (change / value).real
-    moved = float(np.abs(pulls) @ spread.tolerances)
-    return Range(max(slew - moved, 0.0), slew + moved)
+        weight = float(tone.slew[q]) / abs(value)
+        adjoint, s = at.factor.adjoint([row])[0], 2j * np.pi * at.hertz
+        answers.append(Answer(adjoint, at.factor, at.x, s, value, weight))
+    return ends(spread.elements, spread.tolerances, answers)
 
 
 def _rail_ohms(view: View, upper: bool) -> float:

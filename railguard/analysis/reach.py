@@ -8,6 +8,7 @@ from railguard.analysis.equations import Complex, Real
 from railguard.analysis.loop import Loop
 from railguard.analysis.solve import factor
 from railguard.analysis.surroundings import MID_HERTZ
+from railguard.analysis.vertices import Answer, ends
 from railguard.analysis.view import View
 
 
@@ -67,7 +68,6 @@ def gains_of(view: View, unit: str = "V") -> tuple[Gain, ...]:
         return ()
     dc = answers.dc.adjoint([row])
     mid = view.solution.mid.adjoint([row])
-    spread = view.solution.spread
     gains = []
     for entry in view.solution.prepared.entries:
         if entry.unit != unit or not any(name in network.injections for name, _ in entry.drives):
@@ -78,13 +78,13 @@ def gains_of(view: View, unit: str = "V") -> tuple[Gain, ...]:
         gain = at_dc if passes else abs(at_mid)
         if abs(gain) <= 1e-6:
             continue
-        adjoint, solved = (dc, answers.dc) if passes else (mid, view.solution.mid)
-        s = 0j if passes else 2j * np.pi * MID_HERTZ
-        change = spread.elements.pulls(adjoint, solved.forward(b), s)[0]
-        # A magnitude changes by what lies in its own direction.
-        turn = 1.0 if passes else np.conj(at_mid) / abs(at_mid)
-        moved = float(np.abs((turn * change).real) @ spread.tolerances)
-        gains.append(Gain(entry.label, gain, Range(gain - moved, gain + moved)))
+        spread = view.solution.spread
+        if passes:
+            found = Answer(dc[0], answers.dc, answers.dc.forward(b), 0j, complex(at_dc))
+        else:
+            solved, s = view.solution.mid, 2j * np.pi * MID_HERTZ
+            found = Answer(mid[0], solved, solved.forward(b), s, at_mid)
+        gains.append(Gain(entry.label, gain, ends(spread.elements, spread.tolerances, [found])))
     return tuple(gains)
 
 
@@ -102,12 +102,12 @@ def noise_gain_span(view: View, loop: Loop) -> Range:
     adjoint = passive.dc.adjoint(rows)
     spread = view.solution.spread
     unit = passive.network.right_hand_side([(amplifier.designator, 1.0)])
-    change = spread.elements.pulls(adjoint[:1] - adjoint[1:], passive.dc.forward(unit), 0j)
-    moved = float(np.abs(change[0].real) @ spread.tolerances)
-    beta = float((adjoint[0] - adjoint[1])[branch].real)
-    if beta <= moved:
+    across = adjoint[0] - adjoint[1]
+    found = Answer(across, passive.dc, passive.dc.forward(unit), 0j, complex(across[branch]))
+    beta = ends(spread.elements, spread.tolerances, [found])
+    if beta.low is None or beta.high is None or beta.low <= 0:
         return Range()
-    return Range(1.0 / (beta + moved), 1.0 / (beta - moved))
+    return Range(1.0 / beta.high, 1.0 / beta.low)
 
 
 _NOTHING = 1e-12

@@ -16,6 +16,8 @@ from railguard.analysis.equations import Complex, Real, Stamp
 Index = npt.NDArray[np.int64]
 
 
+TAIL = 1e-3
+"""Share of an excursion its smallest parts may make together: they count to first order."""
 _STORAGE = {"R": 0.0, "C": -1.0, "L": 1.0}
 
 
@@ -53,16 +55,31 @@ class Elements(msgspec.Struct, frozen=True):
         """Return the derivative of some quantities to the logarithm of each element's value.
 
         adjoint  their rows of M^-1, shape (quantities, unknowns)
-        x        the solution, shape (unknowns,)
+        x        the solution, shape (unknowns,); or one for each quantity
         s        complex frequency, 1/s
         returns  shape (quantities, elements)
         """
         factor = self.conductance + s * self.storage
-        return np.asarray(self._across(adjoint) * (self._across(x[None, :]) * factor))
+        return np.asarray(self.across(adjoint) * (self.across(np.atleast_2d(x)) * factor))
 
-    def _across(self, vectors: Complex) -> Complex:
+    def across(self, vectors: Complex) -> Complex:
         """Return each vector's difference across each element, shape (vectors, elements)."""
         count, size = vectors.shape
         grounded = np.zeros((count, size + 1), dtype=vectors.dtype)
         grounded[:, :size] = vectors
         return np.asarray(grounded[:, self.first] - grounded[:, self.second])
+
+
+def weighty(weight: Real) -> tuple[Index, Index]:
+    """Return the parameters that make up a sum but for its tail, and those in the tail."""
+    heavy = weight * len(weight) > TAIL * weight.sum()
+    return np.flatnonzero(heavy), np.flatnonzero(~heavy)
+
+
+def patterns(first: Index, second: Index, size: int) -> Complex:
+    """Return plus one at the first and minus one at the second rows, shape (size, pairs)."""
+    columns = np.zeros((size + 1, len(first)), dtype=np.complex128)
+    pairs = np.arange(len(first))
+    columns[first, pairs] = 1.0
+    columns[second, pairs] -= 1.0
+    return columns[:size]

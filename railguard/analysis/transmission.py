@@ -15,10 +15,8 @@ import numpy.typing as npt
 from railguard.analysis.deviations import Off
 from railguard.analysis.equations import Complex, Real
 from railguard.analysis.network import Network
+from railguard.analysis.sensitivity import patterns, weighty
 from railguard.analysis.solve import DENSE_LIMIT, factor
-
-TAIL = 1e-3
-"""Share of an excursion its smallest parts may make together: they count to first order."""
 
 Index = npt.NDArray[np.int64]
 
@@ -104,13 +102,13 @@ class Transmission:
         """
         solved, off = self.solved, self.solved.off
         pulls = self.nominal.gradient[0] * shares
-        picks, rest = _weighty(np.abs(pulls).max(axis=0, initial=0.0))
+        picks, rest = weighty(np.abs(pulls).max(axis=0, initial=0.0))
         left, right, second = off.left[picks], off.right[picks], off.second[picks]
         change = off.change(shares)[:, picks]
         coefficient = change * solved.unit[picks]
         storage = np.where(off.storing[picks], change, 0.0)
         u, w = _across(self._a, left)[0], _across(self._x, right, second)[0]
-        entering = _patterns(left, solved.network.size)
+        entering = patterns(left[:, 0], left[:, 1], solved.network.size)
         forward = solved.factor.forward(entering)
         leaving = solved.factor.adjoint([int(row) for row in right.ravel()])
         back = leaving[0::2] + second[:, None] * leaving[1::2]
@@ -149,20 +147,3 @@ class Transmission:
         gradient = -_across(a, off.left) * _across(x, off.right, off.second) / scale[:, None]
         gradient = gradient * off.slope(shares) * self.solved.unit
         return Moved(np.log(-z / (1.0 + z)), along, bend, gradient)
-
-
-def _weighty(weight: Real) -> tuple[Index, Index]:
-    """Return the parameters that make up a sum but for its tail, and those in the tail."""
-    order = np.argsort(-weight)
-    left_over = weight.sum() - np.cumsum(weight[order])
-    kept = int(np.count_nonzero(left_over > TAIL * weight.sum())) + 1
-    return order[:kept], order[kept:]
-
-
-def _patterns(rows: Index, size: int) -> Complex:
-    """Return plus one and minus one at each pair of rows, shape (size, pairs)."""
-    columns = np.zeros((size + 1, len(rows)), dtype=np.complex128)
-    pairs = np.arange(len(rows))
-    columns[rows[:, 0], pairs] = 1.0
-    columns[rows[:, 1], pairs] -= 1.0
-    return columns[:size]
