@@ -80,7 +80,9 @@ def gains_of(view: View, unit: str = "V") -> tuple[Gain, ...]:
             continue
         spread = view.solution.spread
         if passes:
-            found = Answer(dc[0], answers.dc, answers.dc.forward(b), 0j, complex(at_dc))
+            found = Answer(
+                dc[0], answers.dc, answers.dc.forward(b), 0j, complex(at_dc), signed=True
+            )
         else:
             solved, s = view.solution.mid, 2j * np.pi * MID_HERTZ
             found = Answer(mid[0], solved, solved.forward(b), s, at_mid)
@@ -103,7 +105,9 @@ def noise_gain_span(view: View, loop: Loop) -> Range:
     spread = view.solution.spread
     unit = passive.network.right_hand_side([(amplifier.designator, 1.0)])
     across = adjoint[0] - adjoint[1]
-    found = Answer(across, passive.dc, passive.dc.forward(unit), 0j, complex(across[branch]))
+    found = Answer(
+        across, passive.dc, passive.dc.forward(unit), 0j, complex(across[branch]), signed=True
+    )
     beta = ends(spread.elements, spread.tolerances, [found])
     if beta.low is None or beta.high is None or beta.low <= 0:
         return Range()

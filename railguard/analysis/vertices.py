@@ -24,12 +24,15 @@ MOST_TURNS = 3
 STEADY = 0.0125
 """How far, against its way, a quantity may bend on the logarithms of what moves it to be followed
 on them: its ends are then within a percent of the way."""
+WIDE = 0.5
+"""Natural logarithm: what moves further, as the rest of two alike does, is no product of powers."""
 TINY = 1e-300
 
 
 class Answer(msgspec.Struct, frozen=True):
-    """One entry of a solution: signed at DC, else its magnitude counts.
+    """One entry of a solution.
 
+    signed   True: a level, which has a sign; else its magnitude counts
     adjoint  its row of M^-1, shape (unknowns,); factor M, factored at s, 1/s; x the solution
     weight   what the whole is per unit of it
     """
@@ -40,13 +43,14 @@ class Answer(msgspec.Struct, frozen=True):
     s: complex
     value: complex
     weight: float = 1.0
+    signed: bool = False
 
     def told(self, values: Complex, pulls: Complex) -> tuple[Real, Real]:
         """Return the weighed sizes of values, and how derivatives of each move them.
 
         values  shape (corners,); pulls of shape (corners, elements)
         """
-        if not self.s:
+        if self.signed:
             return self.weight * values.real, self.weight * pulls.real
         sizes = np.abs(values)
         # A magnitude changes by what lies in its own direction.
@@ -112,10 +116,10 @@ def _steady(nominal: float, slope: Real, aside: float, tolerances: Real) -> Rang
     up = np.log1p(tolerances)
     rising = np.where(pulls > 0, pulls * up, -pulls * down)
     falling = np.where(pulls > 0, pulls * down, -pulls * up)
-    bent = float(falling @ down) + (aside / nominal) ** 2
-    if bent > STEADY * float(falling.sum()):
+    fall, rise = float(falling.sum()), float(rising.sum())
+    if rise > WIDE or float(falling @ down) + (aside / nominal) ** 2 > STEADY * fall:
         return None
-    low, high = nominal * float(np.exp(-falling.sum())), nominal * float(np.exp(rising.sum()))
+    low, high = nominal * float(np.exp(-fall)), nominal * float(np.exp(rise))
     return Range(min(low, high), max(low, high))
 
 

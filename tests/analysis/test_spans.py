@@ -115,6 +115,15 @@ def test_slew_rate_of_a_gain(stage):
     assert output.slew_worst.high == pytest.approx(output.slew * 1.01 / 0.99, rel=1e-5)
 
 
+def test_slew_rate_of_an_edge_that_is_turned_round(stage):
+    """1 V in 10 us, ten times, downwards: the slope has no sign."""
+    cards = INVERTING.replace("SIN(0 0.5 1k)", "PULSE(-0.5 0.5 0 10u 10u 50u 200u)")
+    output = stage(cards).output
+    assert output.slew == pytest.approx(1e6, rel=0.01)
+    assert output.slew_worst.low == pytest.approx(output.slew * 0.99 / 1.01, rel=1e-3)
+    assert output.slew_worst.high == pytest.approx(output.slew * 1.01 / 0.99, rel=1e-3)
+
+
 def test_slew_rate_behind_a_low_pass_counts_where_it_is_steepest(stage):
     """A band up to five times the corner: the swing is largest at DC, the slope at the top."""
     cards = "R1 in p 10k\nC1 p 0 10n\nXU1 p out vp vn out TL072"
