@@ -89,7 +89,7 @@ def ends(elements: Elements, tolerances: Real, answers: Sequence[Answer]) -> Ran
             return Range()
         if not any(one.s for one in answers):
             # Resistances alone: each moves a level one way over all of its tolerance.
-            most[todo] = reached
+            most = np.maximum(reached, 0.0)
             break
         toward = signs[todo, None] * np.sum([corner.slopes() for corner in corners], axis=0)
         start = signs[todo, None] * slope
