@@ -46,16 +46,15 @@ def output_side(
         unknown["output"] = unknown["current"] = _NO_SUPPLY
         known = False
     level, (low, high) = view.level("output"), view.range("output")
-    amps, amps_high = view.level("current"), view.range("current")[1]
-    if not current_known:
-        amps, amps_high = 0.0, 0.0
+    # What the netlist shows of its load counts where it does not show all.
+    amps, (amps_low, amps_high) = view.level("current"), view.range("current")
     slope = 1.0 / load if load else 0.0
     if known and high - level > 1e-9:
         slope = max(slope, (amps_high - amps) / (high - level))
 
     # A transistor takes base current one way only: beyond what is asked nothing is added to it.
     carriers = view.solution.boost.drives.get(amplifier.designator, ())
-    most = max(amps_high, 0.0), min(view.range("current")[0] if current_known else 0.0, 0.0)
+    most = max(amps_high, 0.0), min(amps_low, 0.0)
 
     def line(volts: float) -> float:
         at = amps + slope * (volts - level) if known else slope * volts

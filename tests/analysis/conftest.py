@@ -6,6 +6,7 @@ import pytest
 
 from railguard.analysis.design import analyse
 from railguard.analysis.recognise import keeps_closed
+from railguard.analysis.solution import Options
 from railguard.analysis.stage import Design, Stage
 from railguard.circuit.flatten import flatten
 from railguard.deck.files import deck_from_text
@@ -25,12 +26,14 @@ CN vn 0 100n
 def design() -> Callable[..., Design]:
     """Analyse a netlist's cards, split supply of 15 V added unless told otherwise."""
 
-    def build(cards: str, settings: str = "", supply: str = SPLIT) -> Design:
+    def build(
+        cards: str, settings: str = "", supply: str = SPLIT, options: Options | None = None
+    ) -> Design:
         stated = parse(settings, "railguard.toml")
         devices = catalogue.load(stated.devices)
         circuit = flatten(deck_from_text(f"title\n{cards}\n{supply}"), keeps_closed(devices))
         stated, _ = apply(stated, circuit.directives)
-        return analyse(circuit, stated, devices)
+        return analyse(circuit, stated, devices, options or Options())
 
     return build
 

@@ -8,6 +8,7 @@ the upper and lower case of a word that stands for a state.
 
     python tests/bench/mutants.py rules/severity rules/bias            the modules, or whole rooms
     python tests/bench/mutants.py analysis/loops --sample 300 --tests tests/outside
+    python tests/bench/mutants.py analysis/loops --again lived.txt     what an earlier run printed
 
 Every survivor is printed as the line it stands on and the line it became.
 """
@@ -19,6 +20,7 @@ import importlib
 import inspect
 import os
 import random
+import re
 import signal
 import sys
 import textwrap
@@ -286,13 +288,15 @@ def main() -> None:
     parser.add_argument("--sample", type=int, help="at most so many changes of each module")
     parser.add_argument("--seed", type=int, default=12, help="of the sample")
     parser.add_argument("--seconds", type=float, default=20.0, help="of tests a change, at most")
+    parser.add_argument("--again", type=Path, help="only the survivors this file was printed with")
     asked = parser.parse_args()
     chance = random.Random(asked.seed)
+    again = None if asked.again is None else _survivors(asked.again.read_text("utf-8"))
     tried: list[Mutant] = []
     for name in asked.modules:
         at = PACKAGE / name
         for path in sorted(at.rglob("*.py")) if at.is_dir() else [at.with_suffix(".py")]:
-            made = list(mutants_of(path))
+            made = [m for m in mutants_of(path) if again is None or _known_by(m) in again]
             if asked.sample and len(made) > asked.sample:
                 made = sorted(chance.sample(made, asked.sample), key=made.index)
             tried += made
@@ -304,9 +308,21 @@ def main() -> None:
 
 def told(mutant: Mutant, outcome: str) -> str:
     """Return a change no test noticed: where it stands, the line before and after."""
-    where = f"{mutant.path.relative_to(PACKAGE).as_posix()}, line {mutant.lines.start}"
+    path, function, before, after = _known_by(mutant)
     word = "" if outcome == "survived" else f" ({outcome})"
-    return f"{where}, {mutant.function}{word}\n    {mutant.before}\n  > {mutant.after}"
+    return f"{path}, line {mutant.lines.start}, {function}{word}\n    {before}\n  > {after}"
+
+
+def _known_by(mutant: Mutant) -> tuple[str, str, str, str]:
+    """Return what tells a change apart when lines have moved."""
+    path = mutant.path.relative_to(PACKAGE).as_posix()
+    return path, mutant.function, mutant.before, mutant.after
+
+
+def _survivors(printed: str) -> set[tuple[str, str, str, str]]:
+    """Read back what `told` wrote."""
+    found = re.findall(r"(?m)^(\S+), line \d+, (\S+).*\n    (.*)\n  > (.*)$", printed)
+    return {(path, function, before, after) for path, function, before, after in found}
 
 
 def figures(outcomes: list[tuple[Mutant, str]]) -> Iterator[str]:
