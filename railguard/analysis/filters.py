@@ -54,6 +54,8 @@ def filter_of(
     inner = _inner(pin, amplifier, ways)
     if inner is None:
         return None
+    if any(e.kind == "L" for net in (pin, inner) for e in ways.around.get(net, ())):
+        return None  # of third order
     around = {id(e): e for net in (pin, inner) for e in _passive(net, ways)}
     stage = _Stage(pin, inner, amplifier, tuple(around.values()))
     beta = beta_minus if positive else None
@@ -96,7 +98,7 @@ def _spans(
         down[:] += np.minimum(*ends)
 
     for element in stage.elements:
-        share = tolerances.get(element.designator, 0.0)
+        share = tolerances.get(element.designator)
         if share:
             add(stage.natural({element.designator: 1.0 + BUMP}, beta), share)
     if beta is not None and noise_gain.low is not None and noise_gain.high is not None:
@@ -129,12 +131,15 @@ def _inner(pin: str, amplifier: Amplifier, ways: Ways) -> str | None:
 
 
 def _multiple_feedback(amplifier: Amplifier, inner: str, ways: Ways) -> str:
-    """A capacitor from the inner net to the pin cuts DC: band-pass; a resistor passes it."""
-    to_pin = [e.kind for e in _passive(inner, ways) if _other(e, inner) == amplifier.minus]
-    to_output = [e.kind for e in _passive(inner, ways) if _other(e, inner) == amplifier.output]
-    if "R" in to_pin:
+    """A resistor from the inner net to the pin passes DC; else a capacitor in front cuts the band.
+
+    Both others lead back to the output and to the pin through capacitors.
+    """
+    around = [(_other(e, inner), e.kind) for e in _passive(inner, ways)]
+    if (amplifier.minus, "R") in around:
         return "low-pass"
-    return "band-pass" if "C" in to_output else "high-pass"
+    own = (amplifier.minus, amplifier.output, GROUND)
+    return "high-pass" if any(k == "C" and n not in own for n, k in around) else "band-pass"
 
 
 class _Stage(msgspec.Struct, frozen=True):
@@ -191,7 +196,8 @@ class _Stage(msgspec.Struct, frozen=True):
         """Return the gain in the pass band of a multiple-feedback stage, V/V, from its signal.
 
         At DC, far above, or at the natural frequency. Several nets may feed it, a reference under a
-        small resistor among them, which makes a large gain: the smallest counts.
+        small resistor among them, which makes a large gain: the smallest counts. What passes a
+        high-pass comes through a capacitor.
         """
         s = 2j * np.pi * {"low-pass": 0.0, "high-pass": FAR_ABOVE * hertz}.get(kind, hertz)
         g, c = self._matrices(scales, None)
@@ -201,7 +207,7 @@ class _Stage(msgspec.Struct, frozen=True):
             value = (element.value or 0.0) * scales.get(element.designator, 1.0)
             inside = [index[n] for n in element.nets[:2] if n in index]
             outside = [n for n in element.nets[:2] if n not in index and n != GROUND]
-            if inside and outside:
+            if inside and outside and (element.kind == "C" or kind != "high-pass"):
                 fed[outside[0]][inside[0]] += 1.0 / value if element.kind == "R" else s * value
         if not fed:
             return None
@@ -217,9 +223,9 @@ class _Stage(msgspec.Struct, frozen=True):
             return None
         moved = 0.0
         for element in self.elements:
-            share = tolerances.get(element.designator, 0.0)
+            share = tolerances.get(element.designator)
             bumped = self.passed(kind, hertz, {element.designator: 1.0 + BUMP}) if share else None
-            if bumped is not None:
+            if share and bumped is not None:
                 moved += abs(bumped - nominal) / BUMP * share
         return nominal, Range(nominal - moved, nominal + moved)
 

@@ -25,16 +25,16 @@ def with_thresholds(view: View, loop: Loop, after: list[tuple[str, ...]]) -> Loo
         ),
         "",
     )
-    row = network.outputs.get(amplifier.designator, -1)
+    row = network.outputs[amplifier.designator]
     beta = float(solution.passive.dc.adjoint([network.row(amplifier.plus)])[0, row].real)
     half = (view.range("output")[1] - view.range("output")[0]) / 2
     moved_plus, moved_minus = (_signal(view, quantity) for quantity in ("plus", "minus"))
     # The signal is on one input; the other one carries a standing level, or the two thresholds.
-    on_minus = bool(moved_minus.span or not moved_plus.span)
+    on_minus = moved_minus[0] < moved_minus[1] or not moved_plus[0] < moved_plus[1]
     moved, other = ("minus", "plus") if on_minus else ("plus", "minus")
     away = view.level(other) - view.level(moved)
     entry = _entry(view, moved)
-    _, share, start = entry if entry is not None else ("", 1.0, view.level(moved))
+    share, start = (1.0, view.level(moved)) if entry is None else entry[1:]
     drive = moved_minus if on_minus else moved_plus
     at = view.level(moved)
     thresholds = _ordered(
@@ -43,8 +43,7 @@ def with_thresholds(view: View, loop: Loop, after: list[tuple[str, ...]]) -> Loo
     lower, upper = _moves(view, (moved, other), beta, half, entry)
     if share < 0:
         lower, upper = upper, lower
-    if drive.low is not None and drive.high is not None:
-        drive = _ordered(start + (drive.low - at) / share, start + (drive.high - at) / share)
+    drive = _ordered(*(start + (volts - at) / share for volts in drive))
     feeds = any(
         amplifier.designator in reached and solution.amplifiers[j].designator not in solution.forced
         for j, reached in enumerate(after)
@@ -54,10 +53,10 @@ def with_thresholds(view: View, loop: Loop, after: list[tuple[str, ...]]) -> Loo
         loop,
         beta_plus=beta,
         capacitor_across_plus=across,
-        thresholds=thresholds,
-        lower_worst=_around(thresholds.low, lower),
-        upper_worst=_around(thresholds.high, upper),
-        drive=drive,
+        thresholds=Range(*thresholds),
+        lower_worst=_around(thresholds[0], lower),
+        upper_worst=_around(thresholds[1], upper),
+        drive=Range(*drive),
         switched=switched,
         feeds_linear=feeds,
     )
@@ -71,25 +70,23 @@ WHOLE_BETA = 0.99
 """Share of the output that comes back from which on a stage latches."""
 
 
-def _switched(thresholds: Range, drive: Range) -> bool:
+def _switched(thresholds: tuple[float, float], drive: tuple[float, float]) -> bool:
     """Tell whether a signal goes well past both thresholds.
 
     With its inputs exchanged the stage would be linear, and its output stand at both limits at just
     those levels: a linear stage would be asked for what it cannot give, a comparator switches.
     """
-    low, high = thresholds.low, thresholds.high
-    if low is None or high is None or drive.low is None or drive.high is None:
-        return False
+    low, high = thresholds
     past = CLEAR_SHARE * (high - low)
-    return drive.low <= low - past and drive.high >= high + past
+    return drive[0] <= low - past and drive[1] >= high + past
 
 
-def _ordered(a: float, b: float) -> Range:
-    return Range(min(a, b), max(a, b))
+def _ordered(a: float, b: float) -> tuple[float, float]:
+    return min(a, b), max(a, b)
 
 
-def _around(value: float | None, moved: float) -> Range:
-    return Range() if value is None else Range(value - moved, value + moved)
+def _around(value: float, moved: float) -> Range:
+    return Range(value - moved, value + moved)
 
 
 def _moves(
@@ -108,14 +105,15 @@ def _moves(
     solution, answers, amplifier = view.solution, view.answers, view.amplifier
     spread, passive = solution.spread, solution.passive
     elements, width = spread.elements, len(spread.delta)
-    name, share, _ = entry if entry is not None else ("", 1.0, 0.0)
     moved, other = ((spread.high[q] + spread.low[q]) / 2 for q in map(view.at, inputs))
     away = view.level(inputs[1]) - view.level(inputs[0])
     of_beta, of_share = np.zeros(width), np.zeros(width)
     plus = passive.dc.adjoint([passive.network.row(amplifier.plus)])
     unit = passive.network.right_hand_side([(amplifier.designator, 1.0)])
     of_beta[: len(elements)] = elements.pulls(plus, passive.dc.forward(unit), 0j)[0].real
+    share = 1.0
     if entry is not None:
+        name, share, _ = entry
         at = answers.dc.adjoint([int(answers.rows[view.at(inputs[0])])])
         drive = answers.network.right_hand_side([(name, 1.0)])
         of_share[: len(elements)] = elements.pulls(at, answers.dc.forward(drive), 0j)[0].real
@@ -129,8 +127,7 @@ def _moves(
     found = []
     for sign in (-1.0, 1.0):
         pull = (other - moved + sign * np.sign(beta) * of_beta * half) / share
-        if entry is not None:
-            pull = pull - (away + sign * abs(beta) * half) / share**2 * of_share
+        pull -= (away + sign * abs(beta) * half) / share**2 * of_share
         found.append(float(spread.reach(pull)) + apart)
     return found[0], found[1]
 
@@ -145,7 +142,12 @@ def _entry(view: View, quantity: str) -> tuple[str, float, float] | None:
     if row < 0:
         return None
     adjoint = answers.dc.adjoint([row])[0].real
-    levels = {drive.injection: drive.value for drive in view.solution.prepared.levels}
+    # What another stage without a loop drives moves round the middle of that stage's range.
+    levels = {
+        a.designator: float(answers.level[answers.at(k, "output")])
+        for k, a in enumerate(answers.amplifiers)
+    }
+    levels.update((drive.injection, drive.value) for drive in view.solution.prepared.levels)
     found: list[tuple[str, float, float]] = []
     for tone in answers.tones:
         if tone.tone.name == own or tone.peaks[view.at(quantity)] <= 0:
@@ -154,18 +156,18 @@ def _entry(view: View, quantity: str) -> tuple[str, float, float] | None:
             return None
         name = tone.tone.drives[0][0]
         b = answers.network.right_hand_side([(name, 1.0)]).real
-        found.append((name, float(adjoint @ b), levels.get(name, 0.0)))
+        found.append((name, float(adjoint @ b), levels[name]))
     if len(found) != 1 or abs(found[0][1]) < LEAST_SHARE:
         return None
     return found[0]
 
 
-def _signal(view: View, quantity: str) -> Range:
+def _signal(view: View, quantity: str) -> tuple[float, float]:
     """Return what the signals alone do at an input, the stage's own output at its middle."""
     q, level = view.at(quantity), view.level(quantity)
     own = view.amplifier.designator
     others = [tone for tone in view.answers.tones if tone.tone.name != own]
-    return Range(
+    return (
         level - sum(float(tone.down[q]) for tone in others),
         level + sum(float(tone.up[q]) for tone in others),
     )

@@ -104,8 +104,8 @@ def quantity_rows(network: Network, amplifiers: tuple[Amplifier, ...]) -> Index:
             network.outputs.get(a.designator, -1),
             network.row(a.plus),
             network.row(a.minus),
-            network.row(a.positive) if a.positive else -1,
-            network.row(a.negative) if a.negative else -1,
+            network.row(a.positive),
+            network.row(a.negative),
         ]
     return np.array(rows, dtype=np.int64)
 
@@ -213,7 +213,7 @@ def _common_period(answers: tuple[ToneAnswer, ...], rows: Index) -> tuple[Real, 
     time = np.arange(0.0, 1.0, 1.0 / (SAMPLES_A_TURN * round(max(turns))))
     total = np.zeros((len(time), len(rows)))
     for turn, a in zip(turns, answers, strict=True):
-        phasor = np.where(rows >= 0, a.worst[0].x[rows], 0)
+        phasor = a.worst[0].x[rows]  # of ground too, whose sum of peaks is zero all the same
         total += np.real(np.exp(2j * np.pi * round(turn) * time)[:, None] * phasor[None, :])
     return np.maximum(total.max(axis=0), 0.0), np.maximum(-total.min(axis=0), 0.0)
 

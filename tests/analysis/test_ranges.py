@@ -139,14 +139,74 @@ def test_unknown_load_leaves_the_current_open(design):
     assert "output" not in found.unknown
 
 
-def test_sines_with_a_common_period_keep_their_real_peak(stage):
-    """sin(t) + sin(2t) never reaches two: its largest value is 1.7602."""
-    cards = """
-V1 a 0 SIN(0 1 1k)
-V2 b 0 SIN(0 1 2k)
-R1 a n 10k
-R2 b n 10k
-R3 n out 10k
-XU1 0 n vp vn out TL072
-"""
-    assert stage(cards).output.demand.high == pytest.approx(1.7602, rel=1e-3)
+SUM = "R1 a n 10k\nR2 b n 10k\nR3 n out 10k\nXU1 0 n vp vn out TL072\nRL out 0 10k"
+
+
+@pytest.mark.parametrize("hertz", [1000, 0.5])
+@pytest.mark.parametrize("turned", [False, True])
+def test_sines_with_a_common_period_keep_their_real_peak(stage, hertz, turned):
+    """sin(t) + sin(2t) never reaches two: its largest value is 1.7602, either way.
+
+    So it is of the current, whatever else goes further, and of the first net of a deck.
+    """
+    sines = f"V1 a 0 SIN(0 1 {hertz})\nV2 b 0 SIN(0 1 {2 * hertz})"
+    cards = "\n".join((f"{sines}\n{SUM}").splitlines()[:: -1 if turned else 1])
+    found = stage(cards)
+    assert found.output.demand.high == pytest.approx(1.7602, rel=1e-3)
+    assert found.output.demand.low == pytest.approx(-1.7602, rel=1e-3)
+    for amps in (found.current.demand_source, found.current.demand_sink):
+        assert amps == pytest.approx(1.7602 / 5e3, rel=2e-3)
+
+
+def test_a_slow_sine_below_two_fast_ones_leaves_their_real_peak(stage):
+    """A tenth of a volt beside the 1.7602 V of two that turn forty and eighty times in its time."""
+    cards = (
+        "V1 a 0 SIN(0 1 40k)\nV2 b 0 SIN(0 1 80k)\nV3 c 0 SIN(0 0.1 1k)\nR4 c n 10k\n"
+        f"{SUM}".replace("TL072", "OPAMP")
+    )
+    assert stage(cards).output.demand.high == pytest.approx(1.8602, rel=5e-3)
+
+
+@pytest.mark.parametrize(
+    ("sources", "settings"),
+    [
+        # what the user states has no phase
+        (
+            "J1 a\nJ2 b",
+            '[signals]\n"a" = { low = -1, high = 1, from = 1e3, to = 1e3 }\n'
+            '"b" = { low = -1, high = 1, from = 2e3, to = 2e3 }',
+        ),
+        # nor has the envelope of a carrier: 0.5 V twice, at 1 kHz and 50 Hz
+        ("V1 a 0 AM(0.5 1 50 1k)\nV2 b 0 SIN(0 1 525)", ""),
+    ],
+)
+def test_what_has_no_phase_meets_at_its_peaks(stage, sources, settings):
+    """Two volts, though their frequencies are one to two."""
+    found = stage(f"{sources}\n{SUM}", settings)
+    assert found.output.demand.high == pytest.approx(2.0, rel=3e-3)
+    assert found.output.demand.low == pytest.approx(-2.0, rel=3e-3)
+
+
+def test_a_slope_is_off_by_what_moves_it_where_it_is_steepest(stage):
+    """Two signals that come together, a low-pass of 1 kHz: largest at 100 Hz, steepest at 10 kHz.
+
+    Far above the corner the gain goes with one over R and C: 100 of 101 parts of 11 %.
+    """
+    settings = (
+        '[signals]\n"a" = { low = -1, high = 1, from = 100, to = 100, group = "g" }\n'
+        '"b" = { low = -1, high = 1, from = 10e3, to = 10e3, group = "g" }'
+    )
+    cards = "RA a p 20k\nRB b p 20k\nC1 p 0 15.915n\nXU1 p out vp vn out TL072\nRL out 0 10k"
+    output = stage(cards, settings).output
+    assert output.frequency == pytest.approx(100.0)
+    assert output.slew == pytest.approx(2 * math.pi * 10e3 / math.hypot(1, 10), rel=2e-3)
+    assert output.slew_worst.span / 2 == pytest.approx(output.slew * 0.11 * 100 / 101, rel=0.01)
+
+
+def test_the_quiescent_current_drops_on_what_stands_before_the_pins(stage):
+    """1.4 mA a channel on 100 ohm, towards ground from either side; one channel, no load."""
+    cards = "VIN in 0 1\nXU1 in out vp vn out TL071"
+    found = stage(cards, supply="VP rp 0 15\nRP rp vp 100\nVN rn 0 -15\nRN rn vn 100\n")
+    amps = found.family.supply_current.typical
+    assert found.supply.positive == pytest.approx(15 - 100 * amps, rel=1e-4)
+    assert found.supply.negative == pytest.approx(-15 + 100 * amps, rel=1e-4)
