@@ -162,7 +162,7 @@ def spread(
     stamps, shares, flags = [], [], []
     for stamp in network.stamps:
         element = by_name.get(stamp.designator)
-        if element is None or element.kind == "link" or stamp.designator in exempt:
+        if element is None or stamp.designator in exempt:
             continue
         share, is_stated = tolerance_of(element, stated)
         if share > 0:
@@ -246,11 +246,11 @@ def _levels(
         stated.append(is_stated)
     for amplifier in answers.amplifiers:
         nuisance = nuisances.get(amplifier.designator)
-        row = network.outputs.get(amplifier.designator, -1)
-        if nuisance is None or row < 0 or amplifier.designator in network.forced:
+        own = network.outputs.get(amplifier.designator)
+        if nuisance is None or own is None or amplifier.designator in network.forced:
             continue
-        columns.append(adjoint[:, row])
-        entries.append(Parameter(f"offset of {amplifier.designator}", None, row, 1.0))
+        columns.append(adjoint[:, own])
+        entries.append(Parameter(f"offset of {amplifier.designator}", None, own, 1.0))
         delta.append(nuisance.offset)
         # A bias current into a net without DC path has no level: that is a finding of its own.
         at = [
@@ -259,9 +259,7 @@ def _levels(
         ]
         for rows, amps in _currents((at[0], at[1]), nuisance):
             columns.append(np.sum([sign * adjoint[:, r] for r, sign in rows], axis=0))
-            entries.append(
-                Parameter(f"bias current of {amplifier.designator}", None, -1, 1.0, rows)
-            )
+            entries.append(Parameter(f"bias current of {amplifier.designator}", spread=rows))
             delta.append(amps)
     stated += [False] * (len(entries) - len(stated))
     stacked = np.stack(columns, axis=1) if columns else np.zeros((len(answers.rows), 0))

@@ -224,8 +224,10 @@ class _Stage(msgspec.Struct, frozen=True):
         moved = 0.0
         for element in self.elements:
             share = tolerances.get(element.designator)
-            bumped = self.passed(kind, hertz, {element.designator: 1.0 + BUMP}) if share else None
-            if share and bumped is not None:
+            if not share:
+                continue
+            bumped = self.passed(kind, hertz, {element.designator: 1.0 + BUMP})
+            if bumped is not None:
                 moved += abs(bumped - nominal) / BUMP * share
         return nominal, Range(nominal - moved, nominal + moved)
 

@@ -171,6 +171,9 @@ MOVING = {
         "VIN in 0 SIN(0.5 1 20k)\nL1 in a 10m\nR1 a p 1k\nC1 p 0 4.7n\nR2 p 0 10k\nR3 n 0 1k\n"
         "R4 n out 2k\nXU1 p n vp vn out TL072"
     ),
+    "output at the first net": (
+        "C2 out n 8.2n\nR2 n out 20k\nR1 in n 10k\nVIN in 0 SIN(0.2 1 1k)\nXU1 0 n vp vn out TL072"
+    ),
     "two tones that meet": (
         "V1 a 0 SIN(0 1 1k)\nV2 b 0 SIN(0 0.5 7.3137k)\nR1 a n 10k\nR2 b n 22k\nR3 n out 15k\n"
         "C3 n out 2.2n\nXU1 0 n vp vn out TL072"
@@ -207,6 +210,105 @@ def test_derivatives_are_what_a_small_change_does(design, name):
         ):
             seen = (ends - before) / share
             assert said[:, column] == pytest.approx(seen, rel=2e-3, abs=2e-4 * scale)
+
+
+def test_an_exact_part_leaves_those_after_it(design):
+    """A bridge's own resistor has no tolerance; each other parameter keeps its name."""
+    answers, _ = _solved(design, CIRCUITS["inverting"])
+    elements = design(CIRCUITS["inverting"]).circuit.elements
+    made = spread(
+        answers, elements, frozenset({"R1"}), Tolerances(), {"VP": (15.0, 0.05, True)}, {}
+    )
+    assert made.names == ("R2", "CP", "CN", "VP")
+    assert made.shares == {"R2": 0.01, "CP": 0.1, "CN": 0.1}
+    assert made.stated.tolist() == [False, False, False, True]
+    assert made.error.tolist() == [False] * 4
+
+
+TIED = "VIN in 0 1\nXU1 in out vp vn out TL072\nXU2 in out vp vn out TL072"
+LATER = (
+    "VIN in 0 SIN(0 1 100)\nXU1 in 0 vp vn a TL072\nR1 a n 10k\nR2 n out 10k\n"
+    "XU2 0 n vp vn out TL072"
+)
+HANGING = "VIN in 0 SIN(0 1 1k)\nC1 in p 100n\nXU1 p out vp vn out TL072"
+
+
+@pytest.mark.parametrize(
+    ("cards", "names"),
+    [
+        # an output that something else holds moves nothing
+        (TIED, ["offset of XU1"] + ["bias current of XU1"] * 2),
+        # each of two that work
+        (
+            LATER.replace("in 0 vp", "in a vp"),
+            ["offset of XU1"] + ["bias current of XU1"] * 2
+            + ["offset of XU2", "bias current of XU2"],
+        ),
+        # into a net that nothing leads away from no current flows
+        (HANGING, ["offset of XU1", "bias current of XU1"]),
+    ],
+)  # fmt: skip
+def test_whose_errors_count(design, cards, names):
+    """One entry for the offset and one for each input that is no ground."""
+    answers, _ = _solved(design, cards)
+    wrong = {a.designator: Nuisance(1e-3, 1e-6) for a in answers.amplifiers}
+    every = frozenset(e.designator for e in design(cards).circuit.elements)
+    made = spread(answers, design(cards).circuit.elements, every, Tolerances(), {}, wrong)
+    assert list(made.names) == names
+
+
+def test_nothing_that_may_be_off_moves_nothing(design):
+    """No parameter, a derivative to none for each of an amplifier's six quantities."""
+    answers, _ = _solved(design, CIRCUITS["inverting"])
+    made = spread(answers, (), frozenset(), Tolerances(), {}, {})
+    assert (made.names, made.high.shape, made.low.shape) == ((), (6, 0), (6, 0))
+    assert (made.stated.dtype, made.error.dtype) == (bool, bool)
+    assert not made.any_stated
+
+
+def test_a_comparator_before_a_stage_leaves_it_its_errors(design):
+    """At a noise gain of two; what switches has no offset to pass on."""
+    found = design(LATER).stages[1]
+    bias = found.family.bias_current.best * 10e3
+    expected = 2 * found.family.offset_voltage.best + bias
+    assert found.output.offset == pytest.approx(expected, rel=0.01)
+
+
+def test_a_band_that_does_not_begin_at_rest_has_its_ends(stage):
+    """Behind a capacitor nothing arrives at DC; at the top of the band both resistors count."""
+    settings = '[signals]\n"in" = { low = -0.5, high = 0.5, to = 1e3 }'
+    cards = "J1 in\nC1 in m 100u\nR1 m n 10k\nR2 n out 100k\nXU1 0 n vp vn out BARE"
+    output = stage(cards, BARE + settings).output
+    assert output.demand.high == pytest.approx(5.0, rel=1e-3)
+    assert output.worst.high == pytest.approx(5.0 * 1.02, rel=1e-3)
+
+
+BARE = """
+[[devices]]
+family = "BARE"
+technology = "cmos"
+names = { 1 = ["BARE"] }
+source = { title = "made for this test: it has no errors" }
+"""
+
+
+def test_the_offset_told_is_the_amplifiers_alone(stage):
+    """At a noise gain of eleven; what the resistors do to the level of 5 V is not in it."""
+    cards = CIRCUITS["inverting"].replace("SIN(0 0.5 1k)", "0.5")
+    assert stage(cards.replace("TL072", "BARE"), BARE).output.offset == 0.0
+    found = stage(cards)
+    bias = found.family.bias_current.best * 100e3
+    assert found.output.offset == pytest.approx(
+        11 * found.family.offset_voltage.best + bias, rel=0.01
+    )
+
+
+def test_a_bias_current_into_the_first_net_counts(stage):
+    """The order of the cards changes nothing: what a megohm makes of it is in the offset."""
+    cards = ["RS p in 1meg", "VIN in 0 1", "XU1 p out vp vn out LM358", "RL out 0 10k"]
+    found = stage("\n".join(cards))
+    assert found.output.offset == pytest.approx(stage("\n".join(cards[::-1])).output.offset)
+    assert found.output.offset > 1e6 * found.family.bias_current.best
 
 
 def _disturbed(design, cards, nuisance, stated=False):
