@@ -157,7 +157,7 @@ def local_betas(
     inner = [
         (column, branch, amplifier)
         for column, amplifier in enumerate(amplifiers)
-        if (branch := passive.outputs.get(amplifier.designator, -1)) >= 0
+        if (branch := passive.outputs.get(amplifier.designator)) is not None
         and swept.dc[column] / open_loop_gain(amplifier) > MULTIPLIED
     ]
     if not inner:
@@ -315,9 +315,7 @@ def loop_of(
         phase_margin=margin.value,
         at_crossover_worst=at_cross_worst,
         crossover_worst=closing.hertz_worst if closing is not None and known else Range(),
-        phase_margin_worst=closing.margin_worst
-        if closing is not None and margin.value is not None
-        else Range(),
+        phase_margin_worst=closing.margin_worst if closing is not None else Range(),
         margins=Range(margin.least, margin.most),
         band=top,
         loop_gain=_at(swept.hertz, magnitude, max(top, LOWEST_HERTZ)) if top and known else None,

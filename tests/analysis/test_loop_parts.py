@@ -6,6 +6,7 @@ import pytest
 
 from railguard.analysis.loops import (
     BASE_OHMS,
+    LoopSweep,
     bounding_parasitics,
     conducting,
     crossing,
@@ -49,8 +50,9 @@ def part(kind, designator, *nets, **fields):
 def test_diodes_conduct_where_only_the_sign_is_asked_for():
     """Those that are fitted; everything else stays, in its order."""
     others = (part("R", "R1", "a", "b", value=1e3), part("D", "D2", "a", "b", fitted=False))
-    made = conducting((others[0], part("D", "D1", "a", "k"), others[1]))
-    assert made == (others[0], part("R", "D1", "a", "k", value=BASE_OHMS), others[1])
+    for nets in (("a", "k"), ("a", "k", "case")):
+        made = conducting((others[0], part("D", "D1", *nets), others[1]))
+        assert made == (others[0], part("R", "D1", "a", "k", value=BASE_OHMS), others[1])
 
 
 @pytest.mark.parametrize("kind", ["Q", "J", "M"])
@@ -126,6 +128,9 @@ def test_a_phase_margin_is_what_is_left_of_half_a_turn():
     assert phase_margin(hertz, a_beta, 10.0) == pytest.approx(60.0)
     assert phase_margin(hertz, a_beta, 1e3) == pytest.approx(0.0)
     assert phase_margin(hertz, a_beta, 1e4) == pytest.approx(-30.0)
+    both = LoopSweep(hertz=hertz, a_beta=np.stack([-a_beta, a_beta], axis=1), dc=np.ones(2))
+    assert both.margin(1, 10.0) == pytest.approx(60.0)
+    assert both.margin(1, 1e3) == pytest.approx(0.0)
 
 
 def test_what_is_not_listed_of_an_amplifier_is_nothing_or_the_most_there_is():

@@ -1,5 +1,8 @@
 """Loop sign, noise gain, bandwidth and phase margin against hand calculation."""
 
+import itertools
+import math
+
 import pytest
 
 
@@ -86,6 +89,73 @@ RC vp c 1k
     assert design(cards).stages[0].loop.dc == "positive"
 
 
+INVERTING = "VIN in 0 AC 1\nR1 in n 10k\nR2 n out 100k\nXU1 0 n vp vn out TL072"
+
+
+def test_the_points_of_a_drawing(stage):
+    """Hertz, 1/beta of eleven, |A| of the one pole, and its phase: by hand below and above it."""
+    found = stage(INVERTING)
+    assert found.loop.noise_gain == pytest.approx(11.0, rel=1e-6)
+    rest, gbw = found.family.open_loop_gain.typical, found.family.gain_bandwidth.typical
+    for hertz, noise_gain, a, phase in found.loop.points:
+        lag = hertz * rest / gbw
+        assert noise_gain == pytest.approx(11.0, rel=1e-6)
+        assert a == pytest.approx(rest / math.hypot(1, lag), rel=1e-6)
+        # what its input adds to it is under a degree below 100 kHz
+        if hertz < 1e5:
+            assert phase == pytest.approx(-math.degrees(math.atan(lag)), abs=0.5)
+
+
+def test_a_noise_gain_that_falls_before_the_first_hertz_counts_at_rest(stage):
+    """A millifarad across 100 kilohm has no share in the eleven at DC, where offsets count."""
+    loop = stage(f"{INVERTING}\nC2 n out 1m").loop
+    assert loop.noise_gain == loop.noise_gain_dc == pytest.approx(11.0, rel=1e-6)
+    assert loop.noise_gain_worst.low == pytest.approx(1 + 10 * 0.99 / 1.01, rel=1e-3)
+
+
+def test_the_ends_of_a_noise_gain_stand_where_it_is_largest(stage):
+    """It rises to a hundred and falls again before the loop closes: 1 kilohm, 100 nF, 100 pF."""
+    cards = INVERTING.replace("R1 in n 10k", "C1 in a 100n\nR1 a n 1k") + "\nC2 n out 100p"
+    loop = stage(cards).loop
+    # by hand where both corners, 1.592 kHz and 15.92 kHz, are passed alike: 1 + Z2 / Z1 there
+    s = 2j * math.pi * loop.points[20][0]
+    by_hand = abs(1 + 100e3 / (1 + s * 100e3 * 100e-12) / (1e3 + 1 / (s * 100e-9)))
+    assert loop.noise_gain == pytest.approx(by_hand, rel=1e-3)
+    worst = loop.in_band_worst
+    assert 0.9 * loop.noise_gain < worst.low < 0.99 * loop.noise_gain
+    assert 1.01 * loop.noise_gain < worst.high < 1.1 * loop.noise_gain
+
+
+def test_a_margin_that_hangs_on_what_is_not_listed_has_no_ends(stage):
+    """A nanofarad at an output of unknown resistance: between nothing and the most there is."""
+    loop = stage("VIN in 0 SIN(0 1 100)\nXU1 in out vp vn out TL072\nCL out 0 1n").loop
+    assert loop.phase_margin is None
+    assert (loop.phase_margin_worst.low, loop.phase_margin_worst.high) == (None, None)
+    # a pole of 200 ohm and 1 nF at 796 kHz, where the loop then closes at some 1.46 MHz
+    assert loop.margins.low == pytest.approx(28.7, abs=1.0)
+    assert loop.margins.high == pytest.approx(90.0, abs=0.1)
+
+
+def test_a_stage_that_halves_the_feedback_is_in_the_ends(design):
+    """Three equal resistors, half of the output turned round on one: (1 - 1/2) / 3, so six.
+
+    Its own network would say three; its five resistors of 1 % move it by some 5 %.
+    """
+    cards = (
+        "VIN in 0 SIN(0 1 100)\nR1 n 0 10k\nR2 n out 10k\nR3 n s 10k\nXU1 in n vp vn out TL072\n"
+        "RA out m 10k\nRB m s 5k\nXU2 0 m vp vn s TL072"
+    )
+    loop = design(cards).stages[0].loop
+    assert loop.noise_gain_dc == pytest.approx(6.0, rel=1e-4)
+
+    def noise_gain(a, b, c, d, e):
+        return (1 / a + 1 / b + 1 / c) / (1 / b - e / d / 2 / c)
+
+    corners = [noise_gain(*signs) for signs in itertools.product((0.99, 1.01), repeat=5)]
+    assert loop.noise_gain_worst.low == pytest.approx(min(corners), rel=2e-3)
+    assert loop.noise_gain_worst.high == pytest.approx(max(corners), rel=2e-3)
+
+
 FAST = """
 [[devices]]
 family = "FAST50"
@@ -126,6 +196,8 @@ GAIN_OF_FIVE = "RA m 0 1k\nRB m out 4k\nXU2 a m vp vn out NE5532"
 @pytest.mark.parametrize(
     ("inner", "local", "outer"),
     [
+        # first of all cards: its divider is the first net
+        (f"{GAIN_OF_FIVE}\n* first", 5.0, 2.0),
         # The outer one's loop has the inner one's gain in it: five of the divider's ten.
         (GAIN_OF_FIVE, 5.0, 2.0),
         ("XU2 a out vp vn out NE5532", 1.0, 10.0),
@@ -133,10 +205,16 @@ GAIN_OF_FIVE = "RA m 0 1k\nRB m out 4k\nXU2 a m vp vn out NE5532"
 )
 def test_local_and_composite_loop_are_told_apart(design, inner, local, outer):
     """The inner amplifier has its own network's noise gain, the outer one is held by the inner."""
-    found = {s.designator: s for s in design(COMPOSITE.format(inner=inner)).stages}
+    cards = COMPOSITE.format(inner=inner)
+    if "* first" in inner:
+        cards = inner + COMPOSITE.format(inner="")
+    found = {s.designator: s for s in design(cards).stages}
     assert found["XU2"].loop.noise_gain_dc == pytest.approx(local, rel=1e-3)
     assert found["XU2"].loop.noise_gain == pytest.approx(local, rel=1e-3)
     assert found["XU2"].loop.holds == ()
+    # one plus a ratio of two resistors of 1 %
+    worst = found["XU2"].loop.noise_gain_worst
+    assert worst.span / 2 == pytest.approx(0.02 * (local - 1), rel=1e-2)
     assert found["XU1"].loop.noise_gain_dc == pytest.approx(outer, rel=1e-3)
     assert found["XU1"].loop.holds == ("XU2",)
     assert found["XU1"].topology == "non-inverting"
