@@ -4,7 +4,7 @@ import pytest
 
 from railguard.analysis.bound import Pair
 from railguard.analysis.loop import Loop
-from railguard.analysis.stage import Current, Unknown
+from railguard.analysis.stage import Carrier, Current, Unknown
 from railguard.devices.model import UNLISTED_CURRENT
 from railguard.rules.drive.current import CURRENT
 from tests.rules.stages import amps, findings, open_points, outcomes, stage, unknown_device
@@ -123,6 +123,60 @@ def test_what_to_do_about_too_much_current(load, demand, guaranteed, into):
     choices += ["put a buffer behind the stage", "fit a device that gives more current"]
     text = ", or ".join(choices)
     assert found.remedy == f"{text[0].upper()}{text[1:]}."
+
+
+def carrying(verb="source", demand=6e-3, takes=5e-3, guaranteed=5e-3, others=()):
+    """Make a stage that drives a transistor of a gain of 50, whose base takes most of it."""
+    carrier = Carrier(designators=("Q1",), carries=0.31, takes=takes, gain=50)
+    side = amps(demand, guaranteed=guaranteed, condition="2 kΩ load")
+    current = Current(
+        **{"source": amps(), "sink": amps(), verb: side},
+        demand_source=demand if verb == "source" else 0.0,
+        demand_sink=demand if verb == "sink" else 0.0,
+        load=1000.0,
+        into="RL",
+        carriers=(*others, carrier),
+    )
+    return stage(current=current)
+
+
+@pytest.mark.parametrize("verb", ["source", "sink"])
+def test_a_base_that_takes_too_much_wants_a_transistor_of_more_gain(verb):
+    """5 of 6 mA are its base's: 310 mA over the 4 mA that are left for it, the next value up."""
+    small = Carrier(designators=("Q2",), carries=0.5, takes=1e-3, gain=500)
+    (found,) = findings(CURRENT, carrying(verb, others=(small,)))
+    assert found.message == (
+        f"U1 must {verb} 6 mA into the base of Q1, which carries 310 mA at a current gain of 50 "
+        "(as its model states); a TL072 is known to give 5 mA (guaranteed, 2 kΩ load, data sheet), "
+        "so 1 mA is not covered."
+    )
+    assert found.remedy == (
+        "Fit one for Q1 with a gain of at least 82 at 310 mA, or put a second transistor in front "
+        "of Q1, a Darlington, or fit a device that gives more current."
+    )
+
+
+def test_a_gain_that_no_transistor_has_is_not_asked_for():
+    """What is not the base's, 1 mA, is all the device gives."""
+    (found,) = findings(CURRENT, carrying(guaranteed=1e-3))
+    assert found.remedy == (
+        "Put a second transistor in front of Q1, a Darlington, or fit a device that gives more "
+        "current."
+    )
+
+
+def test_a_base_that_takes_less_than_half_is_not_what_it_goes_into():
+    """2.9 of 6 mA: the load is named, and to be raised."""
+    (found,) = findings(CURRENT, carrying(takes=2.9e-3))
+    assert "into RL" in found.message
+    assert found.remedy.startswith("Raise what the output works into from 1 kΩ")
+
+
+def test_a_load_of_half_an_ohm_is_a_load():
+    """6 mA where 5 are known to be given: 0.6 ohm, the next value up."""
+    current = Current(source=amps(6e-3), sink=amps(), load=0.5)
+    (found,) = findings(CURRENT, stage(current=current))
+    assert "from 500 mΩ to at least 620 mΩ" in found.remedy
 
 
 def test_an_output_into_nothing_named():
