@@ -65,7 +65,7 @@ def _sides(
         wanted = share * (bound.span or 0.0)
         broken = breach(bound, wanted, scale=scale, cap=cap_of(stage))
         if stage.family is None and broken is not None and broken.broken == "absolute":
-            broken = breach(bound, wanted, scale=scale, cap=beyond)
+            broken = breach(bound, scale=scale, cap=beyond)
         if broken is not None:
             sides.append((bound, broken))
     return sorted(sides, key=lambda side: gravity(side[1]))
@@ -208,8 +208,8 @@ def _output_remedy(
 
 def _missing(bound: Bound, broken: Breach) -> float:
     """Return what a rail must make room for: up to what is sure to be reached, not to the rail."""
-    best = bound.guaranteed if bound.guaranteed is not None else bound.typical
-    if best is None or broken.at_corner or bound.demand is None:
+    best = bound.best
+    if best is None or bound.demand is None:
         return -broken.margin
     return max(-broken.margin, bound.demand - best if bound.upper else best - bound.demand)
 
@@ -221,10 +221,10 @@ def _moved_by_offset(bound: Bound) -> bool:
 
 def _has_room(bound: Bound, opposite: Bound) -> bool:
     """Tell whether the demanded span fits between the limits, moved as a whole."""
-    ends = [b.guaranteed if b.guaranteed is not None else b.typical for b in (bound, opposite)]
-    if bound.span is None or ends[0] is None or ends[1] is None:
+    end, other = bound.best, opposite.best
+    if bound.span is None or end is None or other is None:
         return False
-    return 0 < bound.span <= abs(ends[0] - ends[1])
+    return 0 < bound.span <= abs(end - other)
 
 
 def _volts(value: float, bound: Bound) -> str:

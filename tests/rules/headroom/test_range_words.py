@@ -4,7 +4,8 @@ import pytest
 
 from railguard.analysis.bound import Pair, Range
 from railguard.analysis.loop import Loop
-from railguard.analysis.stage import Output
+from railguard.analysis.rail import Supply
+from railguard.analysis.stage import Carrier, Current, Output
 from railguard.devices.model import SwingPoint
 from railguard.rules.headroom.ranges import INPUT, OUTPUT
 from tests.rules.stages import (
@@ -205,6 +206,16 @@ def test_what_is_said_of_an_output(one, message):
             asked(12.0, -3.0, family=changed(FAMILY, supply_high=24.0)),
             "Lower the gain from 11 to at most 8.71 (R2 = 7.5 kΩ instead of 10 kΩ).",
         ),
+        (
+            asked(3.0, -12.0, family=changed(FAMILY, supply_high=24.0)),
+            "Lower the gain from 11 to at most 8.71 (R2 = 7.5 kΩ instead of 10 kΩ).",
+        ),
+        # 13 V and what is lost of a typical rail of 12 V: 1.5 V
+        (
+            asked(13.0, -3.0, upper={"guaranteed": None}),
+            "Lower the gain from 11 to at most 8.88 (R2 = 7.5 kΩ instead of 10 kΩ), or raise the "
+            "positive rail to at least 14.5 V.",
+        ),
     ],
 )
 def test_what_is_proposed_for_an_output(one, remedy):
@@ -242,6 +253,59 @@ def test_a_gain_that_makes_the_level_as_well(one, words):
     """What the gain multiplies counts from where its ground leg goes."""
     (found,) = findings(OUTPUT, one, design(one, elements=()))
     assert found.remedy == words
+
+
+NOWHERE = single_supply(1.0, -1.0, 3e-14, 2.0, plus=1.5e-14)
+
+
+@pytest.mark.parametrize("unknown", [{"typical": None, "guaranteed": None}, {"span": None}])
+def test_where_the_range_would_fit_is_not_known_without_both_limits(unknown):
+    """What swings round ground on one supply could be moved, if there were room for it."""
+    output = NOWHERE.output
+    end = {"low": changed(output.low, span=None)} if "span" in unknown else {
+        "high": changed(output.high, **unknown)
+    }  # fmt: skip
+    one = changed(NOWHERE, output=changed(output, **end))
+    (found,) = findings(OUTPUT, one, design(one, elements=()))
+    assert found.remedy == "Attenuate or shift its signal so that the output stays above 0 V."
+
+
+def test_below_ground_the_same_is_said_of_the_other_side():
+    """On -5 V alone a signal round ground has to stay below it."""
+    side = {"level": -3e-14, "span": 2.0}
+    one = changed(
+        NOWHERE,
+        supply=Supply(positive=0.0, negative=-5.0, positive_net="0", negative_net="-5V"),
+        inputs=inputs(plus=pin("in", level=-1.5e-14)),
+        output=Output(
+            net="out",
+            level=-3e-14,
+            demand=Range(-1.0, 1.0),
+            high=bound(True, demand=1.0, typical=0.0, guaranteed=0.0, absolute=0.0, **side),
+            low=bound(False, demand=-1.0, typical=None, absolute=-5.0, **side),
+        ),
+    )
+    (found,) = findings(OUTPUT, one, design(one, elements=()))
+    assert found.remedy == "Attenuate or shift its signal so that the output stays below 0 V."
+
+
+def test_what_a_transistor_takes_of_the_swing_is_told():
+    """A volt between base and emitter that nobody states is common practice."""
+    carrier = Carrier(designators=("Q1",), carries=0.3, gain=50, volts=0.7, volts_stated=False)
+    one = asked(11.0, -3.0)
+    (found,) = findings(OUTPUT, changed(one, current=Current(carriers=(carrier,))))
+    assert found.message.endswith(
+        "so 500 mV is missing. That counts 700 mV from base to emitter of Q1 (common practice)."
+    )
+
+
+def test_a_level_that_a_capacitor_would_keep_out_of_the_gain():
+    """11 V of 1 V at its input, all of it level: the leg to ground wants a capacitor."""
+    one = asked(11.5, 10.5, level=11.0, ac_coupled=True, inputs=inputs(plus=pin("in", level=1.0)))
+    (found,) = findings(OUTPUT, one)
+    assert found.remedy.startswith(
+        "Put a capacitor in series with R1, so that the level is not amplified, or "
+    )
 
 
 def test_a_divider_before_the_input_stays_as_it_is():

@@ -190,6 +190,22 @@ def test_no_device_comes_past_its_rail_known_or_not():
     assert [f.severity for f in findings(INPUT, wide)] == ["minor"]
 
 
+@pytest.mark.parametrize(("coupled", "severity"), [(False, "minor"), (True, "major")])
+def test_an_unknown_device_at_zero_scale(coupled, severity):
+    """50 mV below the rail a sensor rests on are 1 % of 5 V: little, if it may rest there."""
+    side = {"level": 0.0, "span": 0.0, "typical_basis": "practice", "guaranteed_basis": "practice"}
+    output = Output(
+        net="out",
+        level=0.0,
+        demand=Range(-0.05, -0.05),
+        high=bound(True, demand=0.0, typical=4.0, guaranteed=3.0, absolute=5.0, **side),
+        low=bound(False, demand=-0.05, typical=1.0, guaranteed=2.0, absolute=0.0, **side),
+    )
+    (found,) = findings(OUTPUT, unknown_device(output=output, supply=single(), ac_coupled=coupled))
+    assert found.severity == severity
+    assert "its negative rail is at 0 V" in found.message
+
+
 def test_an_unknown_signal_is_not_checked():
     """A stage whose range was not worked out is listed, with what to state."""
     one = asked(None, None)
