@@ -176,7 +176,7 @@ def _output_remedy(
     opposite = stage.output.low if bound.upper else stage.output.high
     share = share_that_fits(stage, bound, opposite)
     one = len(stage.gain) == 1 or stage.balance is not None
-    if broken.broken != "reserve" and (one or not outside):
+    if one or not outside:
         gain = smaller_gain(stage, share, design)
     nominal = broken.broken != "reserve" and not broken.at_corner
     if outside or (not gain and nominal and _has_room(bound, opposite)):
