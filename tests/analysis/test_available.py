@@ -180,6 +180,8 @@ def test_what_is_guaranteed_gives_the_condition_and_each_figure_its_own_basis():
     reach = output_reach(device(swing_high=points), 12.0, -5.0, True, into(950.0))
     assert (reach.typical_basis, reach.guaranteed_basis) == ("memory", "user")
     assert reach.condition == "1 kΩ"
+    light = output_reach(device(swing_high=points), 12.0, -5.0, True, lambda _: 0.0)
+    assert (light.typical_basis, light.guaranteed_basis) == ("catalogue", "user")
 
 
 def test_a_swing_of_another_supply_is_guaranteed_from_memory_only():

@@ -87,6 +87,13 @@ def test_three_culprits_the_heaviest_first():
     assert two.culprits == ("A",)
 
 
+def test_microvolts_are_ranked_as_volts_are():
+    """What is compared is each one's share of the heaviest, however small that is."""
+    small = 1e-9
+    found = made(moves=np.array(MOVES) * small, limit_moves=np.array(LIMIT_MOVES) * small)
+    assert found.culprits == made().culprits == ("VP", "R2", "R1")
+
+
 def test_a_culprit_is_named_once():
     """Two entries of one part are one part."""
     assert made(names=("R1", "R2", "VP", "VP")).culprits == ("VP", "R2", "R1")

@@ -47,6 +47,8 @@ def test_what_a_follower_can_do(stage):
     other = stage(FOLLOWER.replace("TL072", "LM358")).current
     assert (other.available_source, other.available_sink) == (20e-3, 10e-3)
     assert current.source.absolute is None
+    # nothing is assumed of a follower
+    assert (output.high.unsure, current.source.unsure, current.sink.unsure) == (0.0, 0.0, 0.0)
 
 
 def test_the_worst_of_a_follower_is_its_own_error(stage):
