@@ -94,6 +94,16 @@ def test_microvolts_are_ranked_as_volts_are():
     assert found.culprits == made().culprits == ("VP", "R2", "R1")
 
 
+def test_of_many_alike_the_first_are_named():
+    """In the order of the netlist, as many as there may be."""
+    names = tuple(f"R{k}" for k in range(200))
+    found = made(
+        names=names, delta=(0.01,) * 200, stated=(False,) * 200, moves=np.ones(200),
+        limit_moves=np.zeros(200),
+    )  # fmt: skip
+    assert found.culprits == ("R0", "R1", "R2")
+
+
 def test_a_culprit_is_named_once():
     """Two entries of one part are one part."""
     assert made(names=("R1", "R2", "VP", "VP")).culprits == ("VP", "R2", "R1")

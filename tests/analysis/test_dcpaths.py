@@ -83,6 +83,20 @@ def test_a_net_on_nothing_floats():
     assert path() == DcPath("floating", ())
 
 
+def test_a_search_through_nets_on_nothing_comes_to_an_end():
+    """A chain and a ring of resistors: no net is gone through twice."""
+    chain = (part("R", "R1", "in", "a"), part("R", "R2", "a", "b"), part("R", "R3", "b", "c"))
+    assert path(*chain, part("C", "C4", "c", "0")) == DcPath("floating", ("C4",))
+    assert path(*chain, part("R", "R4", "c", "a")) == DcPath("floating", ())
+
+
+def test_something_unseen_on_the_way_leaves_it_open():
+    """Nearer than where the way ends as well as there."""
+    near = (part("open", "J1", "in"), part("R", "R1", "in", "a"), part("C", "C1", "a", "0"))
+    assert path(*near) == DcPath("open", ("J1",))
+    assert path(*near, part("open", "J2", "a")) == DcPath("open", ("J1", "J2"))
+
+
 def test_what_is_not_fitted_is_not_there():
     """Neither as a path nor as something the net hangs on."""
     assert path(part("R", "R1", "in", "0", fitted=False)) == DcPath("floating", ())

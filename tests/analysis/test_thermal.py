@@ -181,6 +181,9 @@ def test_no_case_where_none_is_listed():
         (-8.0, 8.0, 0.0, 0.0, 1000.0, 25e-3),  # sourced: 5 V into 1 kilohm, 5 V left
         (-8.0, 0.0, 0.0, 0.0, 1000.0, 25e-3),  # sunk
         (0.0, 2.0, 0.0, 0.0, 1000.0, 16e-3),  # 2 V: 8 V left, 2 mA
+        # a load to 5 V sourced from there up: 2.5 V across it at 7.5 V, sunk below it: at -2.5 V
+        (5.0, 10.0, 7.0, 2e-3, 1000.0, 6.25e-3),
+        (-10.0, 4.0, 0.0, -5e-3, 1000.0, 56.25e-3),
         (0.0, 0.0, 0.0, 3e-3, None, 30e-3),  # 3 mA at rest
         (0.0, 0.0, 0.0, -3e-3, None, 30e-3),
         (-50.0, -20.0, -20.0, 3e-3, None, 60e-3),  # beyond the rail it stands at the rail
