@@ -95,13 +95,13 @@ def test_microvolts_are_ranked_as_volts_are():
 
 
 def test_of_many_alike_the_first_are_named():
-    """In the order of the netlist, as many as there may be."""
-    names = tuple(f"R{k}" for k in range(200))
+    """In the order of the netlist, as many as there may be: every third weighs most."""
+    names = tuple(f"R{k}" for k in range(600))
     found = made(
-        names=names, delta=(0.01,) * 200, stated=(False,) * 200, moves=np.ones(200),
-        limit_moves=np.zeros(200),
+        names=names, delta=(0.01,) * 600, stated=(False,) * 600,
+        moves=np.tile([0.5, 1.0, 0.25], 200), limit_moves=np.zeros(600),
     )  # fmt: skip
-    assert found.culprits == ("R0", "R1", "R2")
+    assert found.culprits == ("R1", "R4", "R7")
 
 
 def test_a_culprit_is_named_once():

@@ -72,6 +72,17 @@ def test_a_meant_comparator_is_a_remark(use, stated):
     assert found.remedy == ""
 
 
+def test_a_signal_no_linear_stage_could_follow_shows_a_comparator():
+    """It is told with its numbers; an oscillator has no such signal."""
+    (found,) = findings(REVERSED, looped(use="comparator", switched=True, drive=Range(-3.0, 5.0)))
+    assert found.message.endswith(
+        "It is a comparator, as its signal shows, which goes from -3 V to 5 V: no linear stage "
+        "could follow it."
+    )
+    (other,) = findings(REVERSED, looped(use="oscillator", switched=True))
+    assert other.message.endswith("It is an oscillator, as what it drives shows.")
+
+
 def test_a_comparator_by_its_load_that_never_switches_is_a_mistake():
     """What an output drives shows a comparator only where its signal does switch it."""
     small = {"drive": Range(-0.5, 0.5), "use": "comparator"}

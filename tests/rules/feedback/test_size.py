@@ -303,7 +303,30 @@ def test_a_network_without_a_single_resistor_back_is_not_compensated():
     one = at_ratio(5.0, capacitance=1e-9)
     tee = changed(one, feedback=changed(one.feedback, resistance=None))
     (found,) = findings(HIGH, tee)
-    assert "pF across" not in found.remedy
+    assert found.remedy == (
+        "Divide by 10 the feedback network, which keeps the gain: R1 = 100 Ω and R2 = 1 kΩ."
+    )
+
+
+def test_the_capacitor_that_leaves_65_degrees_is_enough_as_well():
+    """2.30 pF, less than the 10 pF that undo the pole."""
+    assert findings(HIGH, at_ratio(5.0, capacitance=2.4e-12)) == []
+    assert len(findings(HIGH, at_ratio(5.0, capacitance=2.2e-12))) == 1
+
+
+def test_an_equal_resistance_at_the_other_input_takes_the_bias_current_away():
+    """Of 1 megohm against 0.96 megohm 40 kilohm count, of which 50 do no harm."""
+    for ohms, count in ((1e6, 0), (0.96e6, 0), (0.94e6, 1)):
+        both = inputs(plus=pin("p", resistance=ohms), minus=pin("n", resistance=1e6))
+        assert len(findings(HIGH, changed(seeing(1e6), inputs=both))) == count
+
+
+@pytest.mark.parametrize("missing", ["typical", "guaranteed"])
+def test_one_figure_of_an_output_is_enough_for_its_network(missing):
+    """Twice either of them is too much."""
+    side = amps(**{missing: None})
+    (found,) = findings(LOW, taking(20e-3, current=Current(source=side, sink=side)))
+    assert found.limit == (10e-3 if missing == "guaranteed" else 5e-3)
 
 
 @pytest.mark.parametrize(

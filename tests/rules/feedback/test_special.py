@@ -3,7 +3,7 @@
 import pytest
 
 from railguard.analysis.bound import Range
-from railguard.analysis.loop import Feedback, Loop
+from railguard.analysis.loop import Balance, Feedback, Loop
 from railguard.analysis.stage import Output
 from railguard.rules.feedback.special import CURRENT_TYPE, MATCHING
 from railguard.settings.model import Settings, Tolerances
@@ -90,6 +90,20 @@ def test_stated_tolerances_weigh_more_or_clear_it():
     assert findings(MATCHING, one, good) == []
 
 
+@pytest.mark.parametrize(
+    ("span", "reference", "words"),
+    [(0.5, 0.0, "40 % of its span"), (0.5, 2.5, "8 % of the 2.5 V it is to show")],
+)
+def test_a_current_is_shown_from_its_reference(span, reference, words):
+    """200 mV of 0.5 V of span, or of what the level stands over the reference at most."""
+    balance = Balance(
+        elements=("R1", "R2", "R3", "R4"), gain=10.0, tolerance=0.04, stated=False,
+        reference=reference, sense="RS",
+    )  # fmt: skip
+    (found,) = findings(MATCHING, changed(difference(span=span), balance=balance))
+    assert words in found.message
+
+
 def test_weights_that_differ_on_purpose_and_unknown_ranges_are_not_judged():
     """A subtractor with two gains is no difference amplifier; without a range nothing is said."""
     assert outcomes(MATCHING, difference(gains=(1.0, -3.0))) == []
@@ -126,6 +140,7 @@ def test_what_is_missing_of_a_current_feedback_device_is_named():
     (point,) = open_points(CURRENT_TYPE, with_resistor(10.0, bare))
     assert point.rule == "feedback-current-type"
     assert point.why == "the stated feedback resistor of TL072 is not in the catalogue"
+    assert point.add == "add feedback_resistor to a [[devices]] table of railguard.toml"
 
 
 def test_a_guaranteed_resistor_has_its_own_basis():
