@@ -92,6 +92,15 @@ def test_fewer_than_packages_is_minor_and_says_what_a_netlist_cannot_tell():
     assert found.remedy.startswith("Fit 1 more of 100 nF")
 
 
+def test_a_house_may_want_two_for_each_package():
+    """One of two is told, two of two are not."""
+    one, two = rail(), rail(decoupling=(capacitor("C1"), capacitor("C2")))
+    (found,) = findings(FEW, one, whole(one), per_package=2.0)
+    assert (found.demand, found.limit) == (2.0, 1.0)
+    assert found.remedy.startswith("Fit 1 more of 100 nF")
+    assert findings(FEW, two, whole(two), per_package=2.0) == []
+
+
 def test_few_is_silent_where_none_is_or_on_a_bench():
     """None at all is another rule's; a bench is told once."""
     assert outcomes(FEW, BARE, whole(BARE)) == []
@@ -115,6 +124,18 @@ def test_a_capacitor_behind_a_ferrite_does_not_decouple():
     assert found.severity == "major"
     assert "source side of FB1" in found.message
     assert outcomes(ABSENT, one, whole(one)) == []
+    (found,) = findings(BEHIND, one, whole(one, kind="bench"))
+    assert found.severity == "minor"
+
+
+@pytest.mark.parametrize(
+    ("series", "words"), [(("FB1", "R9"), "FB1 and R9"), ((), "a series element")]
+)
+def test_what_stands_between_is_the_rail_s_where_a_capacitor_does_not_tell(series, words):
+    """As far as anything is known of it."""
+    one = rail(decoupling=(), upstream=(capacitor(),), series=series)
+    (found,) = findings(BEHIND, one, whole(one))
+    assert f"stands on the source side of {words}; at the pins" in found.message
 
 
 def test_capacitors_on_both_sides_are_sound():
@@ -141,6 +162,17 @@ def test_rails_decoupled_only_to_each_other_make_one_finding():
     assert (found.severity, found.nets) == ("minor", ("+12V", "-12V"))
     assert findings(ACROSS, minus, both) == []
     assert outcomes(ABSENT, plus, both) == []
+
+
+def test_a_rail_whose_partner_has_its_own_stands_alone():
+    """The negative rail has one to ground: only the other goes without."""
+    plus = rail(decoupling=(), across=(capacitor("C3", to="-12V"),))
+    minus = rail("-12V", -12.0, across=(capacitor("C3", to="+12V"),))
+    both = whole(minus, plus)
+    (found,) = findings(ACROSS, plus, both)
+    assert found.nets == ("+12V",)
+    assert found.message == ("Rail +12V of U1 is decoupled only by C3 to the other rail, not to 0.")
+    assert findings(ACROSS, minus, both) == []
 
 
 def test_across_is_silent_with_a_capacitor_to_the_return_or_on_a_bench():

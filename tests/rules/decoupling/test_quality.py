@@ -129,6 +129,13 @@ def test_a_fast_device_is_judged_on_the_rails_it_stands_on():
     assert [f.nets for f in found] == [("-12V",)]
 
 
+def test_half_of_a_sensor_is_no_reference():
+    """A capacitor there would take its signal; a divider of which one is no sensor's is judged."""
+    one = referred(0.0)
+    assert outcomes(REFERENCE, one, design(one, bridges=frozenset({"R5", "R6"}))) == []
+    assert len(findings(REFERENCE, one, design(one, bridges=frozenset({"R5", "R7"})))) == 1
+
+
 def test_an_oscillator_s_divider_is_no_reference():
     """Its thresholds follow the rail, and so does its swing."""
     assert outcomes(REFERENCE, referred(0.0, use="oscillator")) == []
