@@ -78,6 +78,34 @@ def test_figures_from_memory_weigh_less():
     assert [f.severity for f in judged(far)] == ["major"]
 
 
+def test_an_absolute_maximum_from_memory_is_critical_however_far():
+    """42 V by half: what is far beyond a recommended range alone would be major."""
+    vague = changed(FAMILY, supply_basis={})
+    for total in (42.5, 60.0):
+        (found,) = judged(design(changed(on(total).stages[0], family=vague)))
+        assert (found.severity, found.limit) == ("critical", 42.0)
+
+
+@pytest.mark.parametrize(
+    ("total", "family", "remedy"),
+    [
+        (45.0, FAMILY, "Lower the total supply to at most 36 V, or fit a device made for a higher"),
+        (
+            45.0,
+            changed(FAMILY, supply_high=None),
+            "Lower the total supply to at most 42 V, or fit a device made for a higher",
+        ),
+        (5.0, FAMILY, "Raise the total supply to at least 7 V, or fit a device made for a lower"),
+    ],
+)
+def test_what_to_do_about_a_supply(total, family, remedy):
+    """Into the recommended range, where there is one; it says where its own level is from."""
+    one = on(total, basis="user").stages[0]
+    (found,) = judged(design(changed(one, family=family)))
+    assert found.remedy == f"{remedy} supply."
+    assert found.basis == ("user", "catalogue")
+
+
 def test_a_corner_of_default_tolerances_is_minor():
     """Only where the rails' tolerance is stated does its corner weigh more."""
     (found,) = judged(on(35.0, (33.0, 37.0)))
@@ -227,6 +255,7 @@ def test_a_drop_nobody_knows_is_listed_under_its_rail():
     (point,) = open_points(DROP, rail(series=("FB1",)))
     assert (point.subject, point.rule) == ("+12V", "supply-drop")
     assert point.why == "the current through FB1 or its resistance is not known"
+    assert point.add == "state what the rail is held at under load"
 
 
 @pytest.mark.parametrize(

@@ -5,6 +5,7 @@ import pytest
 from railguard.analysis.rail import Rail
 from railguard.analysis.stage import Unknown
 from railguard.circuit.model import Element
+from railguard.location import Location
 from railguard.rules.supply.presence import MISSING, REVERSED, SPLIT
 from tests.rules.stages import (
     SUPPLY,
@@ -40,8 +41,12 @@ def test_a_supplied_package_is_quiet():
 def test_a_rail_nothing_feeds_is_missing_once_for_all_its_packages():
     """One dead net is one finding that names every package on it."""
     stages = [
-        stage(name, supply=changed(SUPPLY, positive=None, positive_net="vp"))
-        for name in ("XU1", "XU2")
+        stage(
+            name,
+            supply=changed(SUPPLY, positive=None, positive_net="vp"),
+            location=Location("station.cir", line),
+        )
+        for name, line in (("XU1", 12), ("XU2", 13))
     ]
     packages = tuple(package(s.package, channels=(s.designator,), positive=("vp",)) for s in stages)
     whole = design(*stages, rails=(unfed(packages=("U1", "U2")),), packages=packages)
@@ -52,6 +57,10 @@ def test_a_rail_nothing_feeds_is_missing_once_for_all_its_packages():
     assert found.designators == ("XU1", "XU2")
     assert found.nets == ("vp",)
     assert found.message.startswith("Nothing feeds net vp: it is the positive supply pins of U1")
+    assert found.location == Location("station.cir", 3)
+    nowhere = changed(whole, rails=(unfed(packages=("U1", "U2"), location=None),))
+    (found,) = findings(MISSING, packages[0], nowhere)
+    assert found.location == stages[0].location == Location("station.cir", 12)
 
 
 def test_a_rail_that_leaves_the_sheet_is_not_checked():
@@ -85,6 +94,9 @@ def test_no_volts_between_the_pins():
     assert len(findings(MISSING, whole.packages[0], whole)) == 1
     borderline = design(supplied(0.2, 0.0))
     assert findings(MISSING, borderline.packages[0], borderline) == []
+    stated = design(supplied(0.05, 0.0, basis="user"))
+    (found,) = findings(MISSING, stated.packages[0], stated)
+    assert found.basis == ("user",)
 
 
 def test_a_symbol_without_supply_pins_is_not_checked():
@@ -119,6 +131,27 @@ def test_one_rail_of_the_wrong_sign():
     (found,) = findings(REVERSED, whole.packages[0], whole)
     assert "net +12V has the wrong sign" in found.message
     assert found.remedy == "Turn the source that feeds +12V."
+    assert findings(MISSING, whole.packages[0], whole) == []
+
+
+def test_a_single_supply_of_the_wrong_sign():
+    """The negative pin stands at ground, as it should."""
+    whole = design(supplied(-5.0, 0.0))
+    (found,) = findings(REVERSED, whole.packages[0], whole)
+    assert "(net +12V) is at -5 V, below the negative one (net -12V) at 0 V" in found.message
+
+
+def test_a_reversed_channel_behind_one_of_unknown_supply():
+    """Each is told: the one as not checked, the other as a fault."""
+    pair = (
+        stage("XU1A", package="U1", supply=changed(SUPPLY, positive=None, positive_net="VX")),
+        stage("XU1B", package="U1", supply=changed(SUPPLY, positive=-12.0, negative=12.0)),
+    )
+    twin = package(channels=("XU1A", "XU1B"), positive=("VX", "+12V"))
+    whole = design(*pair, packages=(twin,))
+    (found,) = findings(REVERSED, twin, whole)
+    assert found.designators == ("XU1B",)
+    assert len(open_points(REVERSED, twin, whole)) == 1
 
 
 def test_a_dead_supply_is_not_called_reversed():
