@@ -48,6 +48,17 @@ def test_noise_gain_names_the_capacitor_and_a_cure():
     (found,) = findings(NOISE_GAIN, closing_at(1.0, feedback=network))
     assert "The 100 pF across the feedback bring it down there." in found.message
     assert "2.4 kΩ or less" in found.remedy
+    tee = changed(network, resistance=None)
+    (found,) = findings(NOISE_GAIN, closing_at(1.0, feedback=tee))
+    assert found.remedy.endswith("between the inputs, small against the feedback resistor.")
+
+
+def test_a_gain_bandwidth_product_nobody_lists_says_what_to_add():
+    """Without it nobody knows where the loop closes."""
+    slow = changed(DECOMPENSATED, gain_bandwidth=figure())
+    (point,) = open_points(NOISE_GAIN, closing_at(None, slow))
+    assert point.why == "the gain-bandwidth product of TL072 is not in the catalogue"
+    assert point.add == "add gain_bandwidth to a [[devices]] table of railguard.toml"
 
 
 def test_a_unity_gain_stable_device_is_quiet():
@@ -160,6 +171,13 @@ def test_capacitance_straight_at_the_output(farads, gain, severity):
     assert [f.severity for f in findings(LOAD_CAPACITANCE, charging(farads, gain=gain))] == (
         [severity] if severity else []
     )
+
+
+@pytest.mark.parametrize("use", ["unused", "comparator"])
+def test_the_load_of_what_no_loop_holds_is_no_matter(use):
+    """A channel that is not used, and one that switches."""
+    assert outcomes(LOAD_CAPACITANCE, charging(10e-9, use=use)) == []
+    assert len(findings(LOAD_CAPACITANCE, charging(10e-9))) == 1
 
 
 def test_an_unlisted_capacitance_is_common_practice():
