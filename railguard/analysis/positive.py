@@ -156,7 +156,7 @@ def _entry(view: View, quantity: str) -> tuple[str, float, float] | None:
             return None
         name = tone.tone.drives[0][0]
         b = answers.network.right_hand_side([(name, 1.0)]).real
-        found.append((name, float(adjoint @ b), levels[name]))
+        found.append((name, float(adjoint @ b), levels.get(name, 0.0)))
     if len(found) != 1 or abs(found[0][1]) < LEAST_SHARE:
         return None
     return found[0]
