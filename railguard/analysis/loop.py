@@ -80,6 +80,8 @@ class Loop(msgspec.Struct, frozen=True, kw_only=True):
     crossover_worst, phase_margin_worst, loop_gain_worst  with all tolerances, and the least and the
                 typical gain-bandwidth product listed; unknown where the nominal figure is
     margins     phase margin with the most and with nothing of what is not listed, degrees
+    least_ohms  output resistance that common practice takes at least, which the upper of the
+                margins rests on: none is listed, and a capacitor hangs on it; None: none taken
     thresholds  volts of its signal at which a stage with positive feedback switches; of the pin
                 where more than one signal moves it
     lower_worst, upper_worst  of each threshold, with resistors, rails and its offset at their ends
@@ -102,6 +104,7 @@ class Loop(msgspec.Struct, frozen=True, kw_only=True):
     phase_margin_worst: Range = Range()
     loop_gain_worst: Range = Range()
     margins: Range = Range()
+    least_ohms: float | None = None
     band: float | None = None
     loop_gain: float | None = None
     points: tuple[tuple[float, float, float, float], ...] = ()

@@ -19,22 +19,13 @@ from railguard.analysis.loop import Loop
 from railguard.analysis.network import Network
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.solve import factor, return_ratios
-from railguard.analysis.stamping import Parasitics, gain_bandwidth, open_loop_gain
+from railguard.analysis.stamping import gain_bandwidth, open_loop_gain
 from railguard.circuit.model import Control, Element
 
 OPEN_BETA = 1e-6
 """A feedback factor below this is no feedback: the loop gain of any op-amp is then below one."""
 LOWEST_HERTZ = 1.0
 POINTS = 41
-POINTS_A_DECADE = 8
-"""Points near a crossover that what is not listed may shift."""
-SURE_DEGREES = 5.0
-"""A phase margin is given where what is not listed moves it by less than this."""
-LARGEST_INPUT_FARADS = 20e-12
-LARGEST_OUTPUT_OHMS = 200.0
-"""What an unlisted input capacitance and output resistance may be at most: common practice."""
-SHIFT_LOW, SHIFT_HIGH = 1e-3, 4.0
-"""How far what is not listed may move a crossover: microfarads at an output take it far down."""
 BASE_OHMS = 1e3
 CURRENT_GAIN = 100.0
 
@@ -69,12 +60,14 @@ class Margin(msgspec.Struct, frozen=True):
 
     value  None where it hangs on a figure nobody lists
     least  with the largest values common practice knows for what is not listed
-    most   with nothing of it
+    most   with nothing of it, but for `ohms`
+    ohms   the least output resistance taken for `most`, where a capacitor hangs on it; None: none
     """
 
     value: float | None = None
     least: float | None = None
     most: float | None = None
+    ohms: float | None = None
 
 
 def conducting(elements: Iterable[Element]) -> tuple[Element, ...]:
@@ -180,32 +173,6 @@ def local_betas(
     }
 
 
-def known_parasitics(amplifiers: Iterable[Amplifier]) -> dict[str, Parasitics]:
-    """Return what is listed of input capacitance and output resistance."""
-    return _parasitics(amplifiers, 0.0, 0.0)
-
-
-def bounding_parasitics(amplifiers: Iterable[Amplifier]) -> dict[str, Parasitics]:
-    """Return the same with the largest values for what is not listed."""
-    return _parasitics(amplifiers, LARGEST_INPUT_FARADS, LARGEST_OUTPUT_OHMS)
-
-
-def _parasitics(
-    amplifiers: Iterable[Amplifier], farads: float, ohms: float
-) -> dict[str, Parasitics]:
-    found = {}
-    for amplifier in amplifiers:
-        device = amplifier.match.device
-        if device is None:
-            continue
-        listed_c = device.input_capacitance.best
-        listed_r = device.output_resistance.best
-        found[amplifier.designator] = Parasitics(
-            farads if listed_c is None else listed_c, ohms if listed_r is None else listed_r
-        )
-    return found
-
-
 def crossing(hertz: Real, magnitude: Real) -> float | None:
     """Return the highest frequency at which a magnitude falls through one, hertz; None: never.
 
@@ -232,35 +199,6 @@ def _phase(a_beta: Complex) -> Real:
 def phase_margin(hertz: Real, a_beta: Complex, f: float) -> float:
     """Return 180 degrees plus the loop's phase at `f`, degrees."""
     return 180.0 + _at(hertz, _phase(a_beta), f)
-
-
-def crossover_margins(network: Network, crossovers: Mapping[str, float]) -> dict[str, float]:
-    """Return the phase margin of each amplifier in `network`, its crossover found anew near by."""
-    if not crossovers:
-        return {}
-    # One grid for all, so that loops that close near one another share their points.
-    steps = {
-        step
-        for f in crossovers.values()
-        for step in range(
-            int(np.floor(np.log10(SHIFT_LOW * f) * POINTS_A_DECADE)),
-            int(np.ceil(np.log10(SHIFT_HIGH * f) * POINTS_A_DECADE)) + 1,
-        )
-    }
-    hertz = np.array([10.0 ** (step / POINTS_A_DECADE) for step in sorted(steps)])
-    ratios = return_ratios(network, hertz)
-    margins = {}
-    for column, amplifier in enumerate(network.amplifiers):
-        near = crossovers.get(amplifier.designator)
-        if near is None:
-            continue
-        beyond = 10.0 ** (1.0 / POINTS_A_DECADE)
-        own = (hertz >= near * SHIFT_LOW / beyond) & (hertz <= near * SHIFT_HIGH * beyond)
-        f, t = hertz[own], ratios[own, column]
-        at = crossing(f, np.abs(t))
-        if at is not None:
-            margins[amplifier.designator] = phase_margin(f, t, at)
-    return margins
 
 
 def loop_of(
@@ -317,6 +255,7 @@ def loop_of(
         crossover_worst=closing.hertz_worst if closing is not None and known else Range(),
         phase_margin_worst=closing.margin_worst if closing is not None else Range(),
         margins=Range(margin.least, margin.most),
+        least_ohms=margin.ohms,
         band=top,
         loop_gain=_at(swept.hertz, magnitude, max(top, LOWEST_HERTZ)) if top and known else None,
         points=tuple(

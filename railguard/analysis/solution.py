@@ -8,7 +8,7 @@ import numpy as np
 
 from railguard.analysis.available import output_reach
 from railguard.analysis.boost import boosted
-from railguard.analysis.closing import Closing, Seen, closings
+from railguard.analysis.closing import Closing
 from railguard.analysis.corners import Nuisance, Spread, spread
 from railguard.analysis.dcpaths import DcMap
 from railguard.analysis.deviations import Off, off_of
@@ -17,18 +17,14 @@ from railguard.analysis.lined import Boost
 from railguard.analysis.lined import Part as Boostable
 from railguard.analysis.loops import (
     OPEN_BETA,
-    SURE_DEGREES,
     LoopSweep,
     Margin,
-    bounding_parasitics,
     conducting,
-    crossing,
-    crossover_margins,
-    known_parasitics,
     local_betas,
     small_signal,
     sweep,
 )
+from railguard.analysis.margins import known_parasitics, margins_of
 from railguard.analysis.network import Network
 from railguard.analysis.oscillators import Oscillators, oscillators
 from railguard.analysis.rails import rail_tolerance
@@ -43,6 +39,7 @@ from railguard.analysis.surroundings import (
     MID_HERTZ,
     Passive,
     Ways,
+    load_capacitance,
     passive_view,
 )
 from railguard.analysis.thermal import bias_current, offset_current
@@ -160,7 +157,8 @@ def solve(
     options = options or Options()
     spread_of = _spread(answers, prepared, amplifiers, feeds, settings, exempt, boost)
     off = off_of(loop_network, spread_of.shares)
-    margins, closing = _margins(swept, loop_network, amplifiers, forced, off)
+    charged = frozenset(a.designator for a in amplifiers if load_capacitance(a, ways))
+    margins, closing = margins_of(swept, loop_network, off, charged)
     return Solution(
         exact=options.exact,
         sampled=monte_carlo(answers, spread_of, options.samples, options.seed)
@@ -295,48 +293,6 @@ def _stated(prepared: Prepared, feeds: Mapping[str, Feed], settings: Settings) -
         for net in element.nets[:2]
     }
     return nets
-
-
-def _margins(
-    swept: LoopSweep,
-    loop_network: Network,
-    amplifiers: tuple[Amplifier, ...],
-    forced: frozenset[str],
-    off: Off,
-) -> tuple[dict[str, Margin], dict[str, Closing]]:
-    """Return phase margins, and where each loop closes with the ends of both.
-
-    With what is listed, and the least with the largest unlisted terms.
-    """
-    sights = {}
-    for k, amplifier in enumerate(amplifiers):
-        if amplifier.designator in forced or amplifier.match.device is None:
-            continue
-        at = crossing(swept.hertz, np.abs(swept.a_beta[:, k]))
-        if at is not None:
-            sights[k] = at, swept.margin(k, at)
-    if not sights:
-        return {}, {}
-    names = {k: amplifiers[k].designator for k in sights}
-    bounding = loop_network.again(forced, bounding_parasitics(amplifiers))
-    bounds = crossover_margins(bounding, {names[k]: at for k, (at, _) in sights.items()})
-    seen = {
-        k: Seen(
-            at,
-            margin,
-            names[k] in bounds and abs(bounds[names[k]] - margin) <= SURE_DEGREES,
-        )
-        for k, (at, margin) in sights.items()
-    }
-    found = closings(loop_network, off, seen)
-    margins = {}
-    for k, sight in seen.items():
-        margin = found[k].margin if k in found else sight.margin
-        least = bounds.get(names[k])
-        margins[names[k]] = Margin(
-            margin if sight.sure else None, None if least is None else min(margin, least), margin
-        )
-    return margins, {names[k]: closing for k, closing in found.items()}
 
 
 def _spread(

@@ -3,8 +3,10 @@
 from collections.abc import Iterator
 
 from railguard.analysis.bound import Bound
+from railguard.analysis.margins import LEAST_OUTPUT_OHMS
 from railguard.analysis.stage import Design, Stage, Unknown
 from railguard.rules.compose import breach_finding, missing_figure, open_point, stage_finding
+from railguard.rules.finding import Finding
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.remedies import LEAST_CAPACITOR, compensation, fit
 from railguard.rules.severity import TABLE, Broken, breach, evidence
@@ -129,6 +131,9 @@ def judge_phase_margin(stage: Stage, limits: Limits, design: Design) -> Iterator
     yield from open_point("stability-phase-margin", stage, ("loop", "device"), gap)
     if margin is None:
         return
+    if loop.phase_margin is None and loop.least_ohms is not None and margin < wanted:
+        yield _charged(stage, margin, limits)
+        return
     low = loop.phase_margin_worst.low
     at_corner = low is not None and low < limits["least"] <= margin
     if margin >= wanted and not at_corner:
@@ -142,7 +147,7 @@ def judge_phase_margin(stage: Stage, limits: Limits, design: Design) -> Iterator
     elif at_corner:
         row = "default-corner"
     held = low if at_corner and low is not None else margin
-    does = "oscillates" if held <= 0 else "rings" if held >= limits["least"] else "rings long"
+    does = _does(held, limits["least"])
     load = stage.current.load_capacitance
     with_load = f" with {si(load, 'F')} at its output" if load else ""
     then = f", {si(low, '°')} at a corner of the tolerances" if at_corner else ""
@@ -164,6 +169,42 @@ def judge_phase_margin(stage: Stage, limits: Limits, design: Design) -> Iterator
         f"{cited(stage, bases[0] if bases else 'practice')}",
         corner="worst-case" if at_corner else "nominal",
     )
+
+
+def _charged(stage: Stage, most: float, limits: Limits) -> Finding:
+    """Tell of a capacitor at an output whose resistance is not listed, but never so small.
+
+    It is major: what outputs usually have is six times as much, and leaves half as much margin.
+
+    most  phase margin with the least output resistance, degrees
+    """
+    ohms, wanted = stage.loop.least_ohms, limits["wanted"]
+    least = "by common practice"
+    if ohms is not None and ohms < LEAST_OUTPUT_OHMS:
+        least = "which emitters make at its supply current"
+    return stage_finding(
+        "stability-phase-margin",
+        stage,
+        TABLE["typical"]["memory"],
+        f"{stage.schematic} drives {si(stage.current.load_capacitance, 'F')} straight from its "
+        f"output. The output resistance of {device(stage)} is not listed; with the least it may "
+        f"have, {si(ohms, 'Ω')} {least}, its loop keeps a phase margin of {si(most, '°')}, so it "
+        f"{_does(most, limits['least'])}; {si(wanted, '°')} is wanted.",
+        nets=(stage.output.net,),
+        demand=wanted,
+        limit=most,
+        margin=most - wanted,
+        unit="°",
+        basis=("netlist", *dict.fromkeys((*_bases(stage), "practice"))),
+        remedy=_phase_remedy(stage),
+        source="Texas Instruments TIDU535 designs for more than 45°; least output resistance: "
+        f"{NO_SOURCE}",
+    )
+
+
+def _does(margin: float, least: float) -> str:
+    """Say what a loop with some phase margin does."""
+    return "oscillates" if margin <= 0 else "rings" if margin >= least else "rings long"
 
 
 def _margin(stage: Stage, wanted: float) -> float | None:
@@ -227,7 +268,8 @@ PHASE_MARGIN = Rule(
     "ch. 8",
     silent="Comparators, oscillators, unused channels. What tolerances leave between the least and "
     "the wanted margin: that is what the reserve is for. Where a figure that matters is not listed "
-    "the margin is not known and listed as not checked.",
+    "the margin is not known and listed as not checked, unless a capacitor stands straight at the "
+    "output and even 10 Ω of output resistance leave too little.",
     limits=(
         _WANTED,
         Limit(

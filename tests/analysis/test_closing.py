@@ -9,7 +9,8 @@ import pytest
 
 from railguard.analysis.closing import Seen, closings
 from railguard.analysis.deviations import off_of
-from railguard.analysis.loops import crossing, known_parasitics, phase_margin
+from railguard.analysis.loops import crossing, phase_margin
+from railguard.analysis.margins import known_parasitics
 from railguard.analysis.network import Network
 from railguard.analysis.recognise import keeps_closed, recognise
 from railguard.analysis.solve import return_ratios

@@ -7,14 +7,13 @@ import pytest
 from railguard.analysis.loops import (
     BASE_OHMS,
     LoopSweep,
-    bounding_parasitics,
     conducting,
     crossing,
-    known_parasitics,
     open_loop,
     phase_margin,
     small_signal,
 )
+from railguard.analysis.margins import bounding_parasitics, easing_ohms, known_parasitics
 from railguard.analysis.network import Network
 from railguard.analysis.recognise import Amplifier
 from railguard.analysis.stamping import Parasitics
@@ -143,3 +142,20 @@ def test_what_is_not_listed_of_an_amplifier_is_nothing_or_the_most_there_is():
     listed = Parasitics(7e-12, 90.0)
     assert known_parasitics(every) == {"XU1": listed, "XU2": Parasitics(0.0, 0.0)}
     assert bounding_parasitics(every) == {"XU1": listed, "XU2": Parasitics(20e-12, 200.0)}
+
+
+def test_an_output_resistance_that_is_not_listed_is_at_least_so_much():
+    """10 ohm; 26 mV / 2 at 5 mA are 2.6 ohm. What a sheet answers is not guessed."""
+    bare = {"output_resistance": Figure(), "load_capacitance": Figure()}
+    every = (
+        amplifier("XU1"),
+        amplifier("XU2", **bare, supply_current=Figure(0.2e-3)),
+        amplifier("XU3", **bare, supply_current=Figure(4e-3, 5e-3)),
+        amplifier("XU4", **bare, supply_current=Figure()),
+        amplifier("XU5", **bare | {"load_capacitance": Figure(float("inf"))}),
+    )
+    assert easing_ohms(every) == {
+        "XU2": 10.0,
+        "XU3": pytest.approx(2.6),
+        "XU4": 10.0,
+    }

@@ -262,3 +262,34 @@ def test_thresholds_are_volts_of_the_signal(stage, cards, low, high):
     loop = stage(cards + "\nRL out 0 1meg", supply=supply).loop
     assert loop.thresholds.low == pytest.approx(low, rel=0.01, abs=0.01)
     assert loop.thresholds.high == pytest.approx(high, rel=0.01)
+
+
+def test_a_capacitor_at_an_output_whose_resistance_is_not_listed(stage):
+    """A follower's loop is GBW / f and a pole at 1 / 2 pi R C: the least R leaves the most margin.
+
+    The least that a TL072 of 2.5 mA may have is 26 mV / 5 mA = 5.2 ohm.
+    """
+    found = stage("VIN in 0 AC 1\nXU1 in out vp vn out TL072\nCL out 0 22n")
+    gbw = found.family.gain_bandwidth.typical
+    assert found.family.supply_current.guaranteed == 2.5e-3
+    assert found.loop.least_ohms == pytest.approx(5.2)
+    pole = 1 / (2 * math.pi * 5.2 * 22e-9)
+    # f sqrt(1 + (f / pole)^2) = GBW
+    square = (math.sqrt(1 + 4 * (gbw / pole) ** 2) - 1) / 2 * pole**2
+    expected = 90 - math.degrees(math.atan(math.sqrt(square) / pole))
+    assert found.loop.margins.high == pytest.approx(expected, abs=0.5)
+    assert found.loop.margins.low < 10
+
+
+@pytest.mark.parametrize(
+    "cards",
+    [
+        "XU1 in out vp vn out TL072\nR1 out a 100\nCL a 0 22n",
+        "XU1 in out vp vn out OP1177\nCL out 0 22n",
+    ],
+)
+def test_nothing_is_taken_behind_a_resistor_or_where_a_load_is_listed(stage, cards):
+    """Nothing of it leaves all the margin there is."""
+    found = stage("VIN in 0 AC 1\n" + cards)
+    assert found.loop.least_ohms is None
+    assert found.loop.margins.high > 80

@@ -2,7 +2,7 @@
 
 import numpy as np
 
-from railguard.analysis.loops import known_parasitics
+from railguard.analysis.margins import known_parasitics
 from railguard.analysis.network import Network
 from railguard.analysis.recognise import keeps_closed, recognise
 from railguard.analysis.signals import prepare

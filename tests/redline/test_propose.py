@@ -283,3 +283,20 @@ def test_an_inverting_stage_on_ground_gets_a_level(tmp_path):
     (proposal,) = [p for p in found.proposals if p.finding.rule == "headroom-output"]
     assert "instead of ground" in proposal.what
     assert not found.held
+
+
+def test_a_capacitor_at_an_output_is_parted_from_it():
+    """What a sheet does not list is judged by the least there is, and a resistor cures it."""
+    text = """capacitor at a buffer of the river gauge
+VP vp 0 5
+CP vp 0 100n
+VIN level 0 SIN(1.5 1 10)
+XU1 level out vp 0 out TLV9002
+CL out 0 220n
+RL out 0 100k
+"""
+    before = review(text, plugins=False).designs[0]
+    assert {f.rule for f in before.findings if f.severity == "major"} == {"stability-phase-margin"}
+    found = {p.finding.rule: p for p in proposals(before)}["stability-phase-margin"]
+    assert found.what.startswith("Add R1 of ")
+    assert "between the output of U1 and out" in found.what

@@ -180,6 +180,27 @@ def test_the_load_of_what_no_loop_holds_is_no_matter(use):
     assert len(findings(LOAD_CAPACITANCE, charging(10e-9))) == 1
 
 
+@pytest.mark.parametrize(
+    ("degrees", "ohms", "severities", "words"),
+    [
+        (46.0, 10.0, ["minor"], "is known to stand 100 pF (common practice)"),
+        (44.0, 10.0, ["major"], "the least it may have, 10 Ω by common practice, its loop keeps"),
+        (12.0, 2.6, ["major"], "2.6 Ω which emitters make at its supply current, its loop"),
+        (44.0, None, ["minor"], "U1's loop closes at 1 MHz with a phase margin of 44°"),
+    ],
+)
+def test_a_capacitor_rings_with_the_least_output_resistance(degrees, ohms, severities, words):
+    """Below the margin wanted with the least resistance there can be; else what is usual counts."""
+    bare = changed(FAMILY, load_capacitance=figure(), output_resistance=figure())
+    loop = Loop(dc="negative", crossover=1e6, margins=Range(3.0, degrees), least_ohms=ohms)
+    one = stage(family=bare, loop=loop, current=Current(load_capacitance=100e-9))
+    found = [*findings(PHASE_MARGIN, one), *findings(LOAD_CAPACITANCE, one)]
+    assert [f.severity for f in found] == severities
+    assert words in found[0].message
+    assert ("practice" in found[0].basis) == (ohms is not None)
+    assert "Fit 47 Ω between the output of U1" in found[0].remedy
+
+
 def test_an_unlisted_capacitance_is_common_practice():
     """A hundred picofarads by common practice make a minor finding."""
     bare = changed(FAMILY, load_capacitance=figure())
