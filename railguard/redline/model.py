@@ -63,6 +63,8 @@ class Proposal(msgspec.Struct, frozen=True, kw_only=True):
     edits      in the order of the file, none overlapping another
     cures      every finding that is gone with it, the one above among them unless it is eased
     left       what is left of the one above, milder, where no card cures it whole
+    uncovered  findings that were there and could not be seen: of a stage that did not work, of a
+               deck that was not known for a board. They are milder than the one above
     instead    devices that would do without the change, where it costs gain; best fit first
     """
 
@@ -73,6 +75,7 @@ class Proposal(msgspec.Struct, frozen=True, kw_only=True):
     edits: tuple[Edit, ...]
     cures: tuple[Finding, ...]
     left: tuple[Finding, ...] = ()
+    uncovered: tuple[Finding, ...] = ()
     instead: tuple[Substitute, ...] = ()
 
 
@@ -110,6 +113,7 @@ class Redline(msgspec.Struct, frozen=True, kw_only=True):
     proposals  in the order they were laid over each other
     gone       findings that are in no review of the changed deck
     remaining  those that are still there
+    uncovered  those of them that could not be seen before
     held       True where one of those stands at the hold level or above
     verdict    of the changed deck
     files      the changed files
@@ -124,6 +128,7 @@ class Redline(msgspec.Struct, frozen=True, kw_only=True):
     advice: tuple[Advice, ...] = ()
     gone: tuple[Finding, ...] = ()
     remaining: tuple[Finding, ...] = ()
+    uncovered: tuple[Finding, ...] = ()
     files: tuple[Changed, ...] = ()
     data: tuple[tuple[str, bytes], ...] = ()
     why: str = ""

@@ -38,7 +38,10 @@ def _swapped(
     if edits:
         listed = names[0] if len(names) == 1 else f"{', '.join(names[:-1])} and {names[-1]}"
         yield Candidate(
-            edits=tuple(sorted(edits)), what=f"swap the {words} of {listed}", regains=True
+            edits=tuple(sorted(edits)),
+            what=f"swap the {words} of {listed}",
+            regains=True,
+            wakes=True,
         )
 
 
@@ -56,7 +59,7 @@ def turned_source(finding: Finding, scene: Scene) -> Iterator[Candidate]:
         if len(made) == 2:
             yield Candidate(
                 edits=tuple(sorted(made)), what=f"turn the source {element.designator} round",
-                regains=True,
+                regains=True, wakes=True,
             )  # fmt: skip
 
 
@@ -135,6 +138,7 @@ def fed(finding: Finding, scene: Scene) -> Iterator[Candidate]:
                 yield Candidate(
                     edits=tuple(sorted(made)),
                     what=f"put the supply pin on {rail} instead of {net}",
-                    choice=f"{rail} is the fed rail whose name is nearest",
+                    choice=f"of the fed rails the one whose name is nearest is {rail}",
                     regains=True,
+                    wakes=True,
                 )

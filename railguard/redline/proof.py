@@ -3,6 +3,10 @@
 A change counts as a cure where its finding is gone, no finding is there that was not there before
 or is worse than it was, nothing that was judged is left open, and every stage still does what it
 did (its gains), unless gain is what is to be changed.
+
+What could not be seen before is not new, and is named beside the change: what is to be said of a
+stage that works for the first time, where that is milder than what kept it from working; and what a
+review of the old deck says too once it is taken for what the new one is, a board or a bench.
 """
 
 from collections.abc import Iterator
@@ -29,13 +33,15 @@ SMALL_GAIN = 1e-3
 class Proved(msgspec.Struct, frozen=True):
     """A change that cures: the deck with it, its review, and the findings that are gone.
 
-    left  what is left of the finding, milder; none where it is gone
+    left       what is left of the finding, milder; none where it is gone
+    uncovered  what is seen only now
     """
 
     source: Source
     review: DesignReview
     cures: tuple[Finding, ...]
     left: tuple[Finding, ...] = ()
+    uncovered: tuple[Finding, ...] = ()
 
 
 def every(findings: tuple[Finding, ...]) -> Iterator[Finding]:
@@ -100,12 +106,38 @@ def prove(
     if any(_fewer(finding, f) for f in now if f not in left):
         return None
     before = tuple(every(review.findings))
-    if any(not _known(f, before, rules) for f in now) or _left_open(review, found):
+    woken = finding.designators if candidate.wakes else ()
+    new = tuple(f for f in now if not _known(f, before, rules))
+    if any(not _wakes_to(finding, f, woken) for f in new):
+        alike = tuple(every(_taken_as(review, source, found).findings))
+        if any(not _wakes_to(finding, f, woken) and not _known(f, alike, rules) for f in new):
+            return None
+    if _left_open(review, found, woken):
         return None
     if not candidate.regains and not _gains_kept(review.design, found.design):
         return None
     gone = tuple(b for b in before if not any(same(b, f, rules) for f in now))
-    return Proved(after, found, gone, left)
+    return Proved(after, found, gone, left, new)
+
+
+def _wakes_to(finding: Finding, now: Finding, woken: tuple[str, ...]) -> bool:
+    """Tell whether a finding is only a matter of a stage that works for the first time."""
+    rank = SEVERITIES.index(now.severity)
+    return (
+        bool(now.designators)
+        and set(now.designators) <= set(woken)
+        and rank > SEVERITIES.index(finding.severity)
+        and rank >= SEVERITIES.index("minor")
+    )
+
+
+def _taken_as(review: DesignReview, source: Source, other: DesignReview) -> DesignReview:
+    """Return the review of a deck taken for a board or a bench, as another one is."""
+    kind = other.design.kind
+    if kind == review.design.kind or kind not in ("board", "bench"):
+        return review
+    settings = msgspec.structs.replace(review.design.settings, kind=kind)
+    return review_deck(source.deck(), settings, installed(review))[0]
 
 
 def _eased(before: Finding, now: Finding) -> bool:
@@ -131,10 +163,16 @@ def _known(finding: Finding, before: tuple[Finding, ...], rules: dict[str, Rule]
     return any(same(b, finding, rules) and SEVERITIES.index(b.severity) <= rank for b in before)
 
 
-def _left_open(before: DesignReview, after: DesignReview) -> bool:
-    """Tell whether something that was judged is not any more: silence is no cure."""
+def _left_open(before: DesignReview, after: DesignReview, woken: tuple[str, ...]) -> bool:
+    """Tell whether something that was judged is not any more: silence is no cure.
+
+    woken  stages that did not work before, of which nothing was judged
+    """
     open_before = {(note.subject, note.rule) for note in before.not_checked}
-    if any((note.subject, note.rule) not in open_before for note in after.not_checked):
+    if any(
+        (note.subject, note.rule) not in open_before and note.subject not in woken
+        for note in after.not_checked
+    ):
         return True
     names = [s.designator for s in before.design.stages]
     return names != [s.designator for s in after.design.stages]

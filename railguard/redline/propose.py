@@ -122,6 +122,7 @@ def _proposal(finding: Finding, candidate: Candidate, proved: Proved) -> Proposa
         edits=candidate.edits,
         cures=proved.cures,
         left=proved.left,
+        uncovered=proved.uncovered,
     )
 
 
@@ -171,6 +172,7 @@ def redline(review: DesignReview, source: Source | None = None) -> Redline:
         advice=tuple(advise(f, now, tried=effort.left > 0) for f in causes(now)),
         gone=tuple(f for f in first if not any(same(f, other, rules) for other in last)),
         remaining=last,
+        uncovered=tuple(f for f in last if not any(same(other, f, rules) for other in first)),
         files=_changed(source, deck, tags),
         data=tuple(deck.files.items()),
     )

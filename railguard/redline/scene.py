@@ -45,12 +45,15 @@ class Candidate(msgspec.Struct, frozen=True, kw_only=True):
     what     the change in words, without a full stop
     choice   what speaks for this value where several would do
     regains  True where the change is one of gain, so that gains may differ afterwards
+    wakes    True where a stage works for the first time and no value was chosen for it: what is to
+             be said of it then was there and could not be seen
     """
 
     edits: tuple[Edit, ...]
     what: str
     choice: str = ""
     regains: bool = False
+    wakes: bool = False
 
 
 class Scene:

@@ -32,7 +32,7 @@ def _lines(redline: Redline, width: int) -> Iterator[tuple[str, str]]:
     if redline.files:
         yield "", ""
         for line in unified(redline.files).splitlines():
-            yield line, _STYLES.get(line[:1], "")
+            yield line.expandtabs(), _STYLES.get(line[:1], "")
     if redline.advice:
         yield "", ""
         yield "Not by a card", "bold"
@@ -65,6 +65,9 @@ def _proposal(number: int, proposal: Proposal, width: int) -> Iterator[tuple[str
         yield from _said(eased, width, _HANG)
     if proposal.cures:
         yield from _said(f"Cures {'; '.join(_named(f) for f in proposal.cures)}.", width, _HANG)
+    if proposal.uncovered:
+        seen = "; ".join(_named(f) for f in proposal.uncovered)
+        yield from _said(f"Seen only then: {seen}.", width, _HANG)
     if proposal.choice:
         yield from _said(proposal.choice, width, _HANG)
     if proposal.instead:
@@ -108,6 +111,8 @@ def _named(finding: Finding) -> str:
 
 def _after(redline: Redline) -> str:
     gone = f"{plural(len(redline.gone), 'finding')} gone, none new"
+    if redline.uncovered:
+        gone = f"{gone}, {len(redline.uncovered)} seen only now"
     left = (
         f"{count_words(redline.remaining)} left ({'; '.join(_named(f) for f in redline.remaining)})"
         if redline.remaining

@@ -300,3 +300,55 @@ RL out 0 100k
     found = {p.finding.rule: p for p in proposals(before)}["stability-phase-margin"]
     assert found.what.startswith("Add R1 of ")
     assert "between the output of U1 and out" in found.what
+
+
+SWAPPED = """amplifier of the river gauge, its inputs exchanged
+VP vp 0 12
+VN vn 0 -12
+CP vp 0 100n
+CN vn 0 100n
+VIN level 0 SIN(0 1.5 40)
+R1 0 n 10k
+R2 n out 10k
+XU1 n level vp vn out OP27G
+RL out 0 20k
+"""
+
+
+def test_what_a_stage_shows_once_it_works_was_there_before():
+    """Nothing is judged of a loop that is turned round, so its resistors are seen only then."""
+    before = review(SWAPPED, plugins=False).designs[0]
+    found = {p.finding.rule: p for p in proposals(before)}["feedback-reversed"]
+    assert found.what == "Swap the inputs of U1."
+    assert [(f.rule, f.severity) for f in found.uncovered] == [("feedback-high", "remark")]
+    whole = redline(before)
+    assert [p.finding.rule for p in whole.proposals][:2] == ["feedback-reversed", "feedback-high"]
+    assert not whole.remaining
+    assert not whole.uncovered
+
+
+def test_a_grave_fault_that_shows_only_then_is_no_cure():
+    """With its inputs the right way round the output would be asked for more than its rail."""
+    loud = SWAPPED.replace("SIN(0 1.5 40)", "SIN(0 9 40)")
+    before = review(loud, plugins=False).designs[0]
+    assert "feedback-reversed" not in {p.finding.rule for p in proposals(before)}
+
+
+def test_a_deck_that_is_known_for_a_board_only_now_has_nothing_new():
+    """The first capacitor on a rail tells a board, whose values are held to a series."""
+    bare = """gauge buffer
+VP raw 0 5
+LFB1 raw vp 10u
+CP raw 0 100n
+RS level in 10.3k
+VIN level 0 SIN(1.5 1 10)
+XU1 in out vp 0 out TLV9001
+RL out 0 100k
+"""
+    before = review(bare, plugins=False).designs[0]
+    assert before.design.kind == "unstated"
+    assert "netlist-value-series" not in {f.rule for f in every(before.findings)}
+    found = [p for p in proposals(before) if p.finding.rule.startswith("decoupling")]
+    assert {f.rule for p in found for f in p.uncovered} == {"netlist-value-series"}
+    whole = redline(before)
+    assert "netlist-value-series" in {p.finding.rule for p in whole.proposals}
