@@ -1,15 +1,19 @@
-"""A divider before an input, where the signal itself is too large for the stage."""
+"""A divider before an input, where the signal itself is too large for the stage.
+
+Where a filter's network leads to the input, what brings the signal in is made a divider of the same
+resistance or capacitance, so that the filter stays as it is (Thevenin).
+"""
 
 import math
 from collections.abc import Iterator
 
 from railguard.analysis.stage import Stage
-from railguard.circuit.model import GROUND
+from railguard.circuit.model import GROUND, Element
 from railguard.redline.decoupling import joined
 from railguard.redline.gain import shares_that_fit
 from railguard.redline.isolation import own_network
 from railguard.redline.level import references
-from railguard.redline.scene import Candidate, Scene
+from railguard.redline.scene import UNITS, Candidate, Scene, with_value
 from railguard.rules.feedback.size import BOLTZMANN_4KT
 from railguard.rules.finding import Finding
 from railguard.units import si
@@ -73,5 +77,94 @@ def _divided(stage: Stage, to: str, share: float, shunt: float, scene: Scene) ->
         f"gets that much less; {si(source, 'Ω')} at the input make {si(noise, 'V')}/√Hz of noise: "
         f"smaller resistors would load the source below {si(lower + upper, 'Ω')}, larger ones make "
         "more noise and bias error",
+        regains=True,
+    )
+
+
+def divided_entry(finding: Finding, scene: Scene) -> Iterator[Candidate]:
+    """Divide the signal where it enters a filter's network, the filter left as it is."""
+    stage = scene.stage(finding)
+    if stage is None or not own_network_at_filter(stage, scene):
+        return
+    entry = _entry(stage, scene)
+    if entry is None:
+        return
+    element, net = entry
+    for to in (GROUND, *(level.net for level in references(stage, scene))):
+        for step in STEPS:
+            for share in shares_that_fit(finding, stage, scene):
+                made = _entered(element, net, to, share * step, scene)
+                if made is not None:
+                    yield made
+
+
+def own_network_at_filter(stage: Stage, scene: Scene) -> bool:
+    """Tell whether the output leads into the network before its non-inverting input."""
+    return stage.inputs.plus.net != GROUND and bool(_before(stage, scene) & _beside(stage, scene))
+
+
+def _beside(stage: Stage, scene: Scene) -> set[str]:
+    """Return the nets one element away from the output."""
+    out = stage.output.net
+    return {n for e in scene.on(out, "RC") for n in e.nets[:2]} - {out, stage.inputs.minus.net}
+
+
+def _walls(stage: Stage, scene: Scene) -> set[str]:
+    """Return the nets where a network ends: what something holds."""
+    walls = {GROUND, stage.inputs.minus.net, *(r.net for r in scene.design.rails)}
+    walls |= {s.output.net for s in scene.design.stages}
+    walls |= {s.name for s in scene.design.settings.signals}
+    return walls | {n for e in scene.design.circuit.elements if e.kind == "V" for n in e.nets[:2]}
+
+
+def _before(stage: Stage, scene: Scene) -> set[str]:
+    """Return the nets of the network before the non-inverting input."""
+    walls, found, queue = _walls(stage, scene), set[str](), [stage.inputs.plus.net]
+    while queue:
+        net = queue.pop()
+        if net in walls or net in found:
+            continue
+        found.add(net)
+        queue += [n for e in scene.on(net, "RC") for n in e.nets[:2]]
+    return found
+
+
+def _entry(stage: Stage, scene: Scene) -> tuple[Element, str] | None:
+    """Return the one element that brings the signal in, and its net inside the network."""
+    inside = _before(stage, scene)
+    found = []
+    for element in scene.design.circuit.elements:
+        if element.kind not in ("R", "C") or not element.value or not element.fitted:
+            continue
+        own = [n for n in element.nets[:2] if n in inside]
+        far = [n for n in element.nets[:2] if n not in inside]
+        if len(own) == len(far) == 1 and far[0] != stage.output.net and not scene.stands(far[0]):
+            found.append((element, own[0]))
+    return found[0] if len(found) == 1 else None
+
+
+def _entered(element: Element, net: str, to: str, share: float, scene: Scene) -> Candidate | None:
+    """Part the element that brings the signal in into one in its place and one to a level."""
+    scene.forget()
+    kind, value = element.kind, element.value or 0.0
+    unit = UNITS[kind]
+    # Both together are what the one was: in parallel for a resistor, and for a capacitor as well.
+    if kind == "R":
+        series = scene.fit("R", value / share, "up", element)
+        across = scene.fit("R", value * series / (series - value), at=element)
+        real = across / (series + across)
+    else:
+        series = scene.fit("C", value * share, "down", element)
+        across = scene.fit("C", value - series, at=element)
+        real = series / (series + across)
+    edit, added = scene.value(element, series), scene.added(kind, (net, to), across, element)
+    if edit is None or added is None:
+        return None
+    return Candidate(
+        edits=tuple(sorted((edit, added[0]))),
+        what=f"{with_value(element, series)} and add {added[1]} of {si(across, unit)} from {net} "
+        f"to {to}",
+        choice=f"{si(100 * real, '%')} of the signal is the most that fits; both together are the "
+        f"{si(value, unit)} that stood there, so the filter stays as it is",
         regains=True,
     )

@@ -25,8 +25,24 @@ def centred(finding: Finding, scene: Scene) -> Iterator[Candidate]:
     target = pin.level + ((reach.high + reach.low) / 2 - stage.output.level) / gain
     yield from _divided(stage, target, scene)
     yield from _sourced(stage, target, scene)
+    yield from _legged(stage, (reach.high + reach.low) / 2, gain, scene)
     yield from _moved(stage, target, scene)
     yield from _lifted(stage, target, scene)
+
+
+def level_outside(finding: Finding, scene: Scene) -> Iterator[Candidate]:
+    """Change the reference of a ground leg that takes the level itself beyond the range.
+
+    No gain is at fault then; any other source may be the signal, so that its gain is tried first.
+    """
+    stage = scene.stage(finding)
+    if stage is None or stage.output.level is None:
+        return
+    reach, gain = stage.output.available, stage.loop.noise_gain_dc
+    if reach.low is None or reach.high is None or not gain:
+        return
+    if not reach.low < stage.output.level < reach.high:
+        yield from _legged(stage, (reach.high + reach.low) / 2, gain, scene)
 
 
 REFERENCE_STEP = 0.05
@@ -35,24 +51,52 @@ REFERENCE_STEP = 0.05
 
 def _sourced(stage: Stage, target: float, scene: Scene) -> Iterator[Candidate]:
     """Give the reference that sets the level another voltage."""
-    pin, rails = stage.inputs.plus, {r.net for r in scene.design.rails}
+    pin = stage.inputs.plus
     ties = [e for e in scene.on(pin.net, "R") if e.value]
-    nets = [pin.net, *(n for e in ties for n in e.nets[:2] if n != pin.net)]
+    nets = {pin.net, *(n for e in ties for n in e.nets[:2])}
+    for source in _standing(nets, scene):
+        yield from _set(source, target, stage, scene)
+
+
+def _legged(stage: Stage, middle: float, gain: float, scene: Scene) -> Iterator[Candidate]:
+    """Give the reference behind the ground leg of a non-inverting stage another voltage.
+
+    What it adds to the output is itself, turned over, times the gain less one.
+    """
+    net, level = stage.inputs.minus.net, stage.output.level
+    if stage.topology != "non-inverting" or level is None or gain <= 1:
+        return
+    own = set(stage.feedback.elements)
+    legs = [e for e in scene.on(net, "R") if e.value and e.designator not in own]
+    for source in _standing({n for e in legs for n in e.nets[:2]} - {net}, scene):
+        stands = source.source.level if source.source is not None else 0.0
+        stands = stands if source.nets[0] != GROUND else -stands
+        yield from _set(source, stands + (level - middle) / (gain - 1), stage, scene)
+
+
+def _standing(nets: set[str], scene: Scene) -> Iterator[Element]:
+    """Yield the sources of a standing level on some nets that are no rails."""
+    nets = nets - {r.net for r in scene.design.rails} - {GROUND}
     for source in scene.design.circuit.elements:
-        held = set(source.nets[:2]) & set(nets) - rails - {GROUND}
-        if source.kind != "V" or not held or source.source is None or source.source.dc is None:
+        if source.kind != "V" or source.source is None or source.source.dc is None:
             continue
-        volts = round(target / REFERENCE_STEP) * REFERENCE_STEP
-        volts = volts if source.nets[0] != GROUND else -volts
-        edit = scene.level(source, volts)
-        if edit is not None:
-            yield Candidate(
-                edits=(edit,),
-                what=f"{source.designator} = {si(volts, 'V')} instead of "
-                f"{si(source.source.dc, 'V')}, the reference of {stage.schematic}",
-                choice="the middle of the output's range leaves a signal as much room on both "
-                "sides",
-            )
+        if nets & set(source.nets[:2]):
+            yield source
+
+
+def _set(source: Element, target: float, stage: Stage, scene: Scene) -> Iterator[Candidate]:
+    """Give a reference a level, in steps that references come in."""
+    before = source.source.dc if source.source is not None else None
+    volts = round(target / REFERENCE_STEP) * REFERENCE_STEP
+    volts = volts if source.nets[0] != GROUND else -volts
+    edit = scene.level(source, volts)
+    if edit is not None and before is not None and abs(volts - before) >= REFERENCE_STEP / 2:
+        yield Candidate(
+            edits=(edit,),
+            what=f"{source.designator} = {si(volts, 'V')} instead of {si(before, 'V')}, the "
+            f"reference of {stage.schematic}",
+            choice="the middle of the output's range leaves a signal as much room on both sides",
+        )
 
 
 def _divided(stage: Stage, target: float, scene: Scene) -> Iterator[Candidate]:

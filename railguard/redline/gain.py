@@ -6,6 +6,8 @@ from collections.abc import Iterator
 from railguard.analysis.bound import Bound
 from railguard.analysis.stage import Stage
 from railguard.circuit.model import GROUND, Element
+from railguard.redline import pairs
+from railguard.redline.pairs import STEPS
 from railguard.redline.scene import Candidate, Scene, all_of, with_value
 from railguard.rules.compose import stage_named
 from railguard.rules.finding import Finding
@@ -13,10 +15,12 @@ from railguard.rules.relations import upstream
 from railguard.rules.remedies import fed_both_ways, level_amplified, own_gain
 from railguard.units import si
 
-STEPS = (1.0, 0.97, 0.94, 0.9, 0.86, 0.8, 0.7, 0.55, 0.35)
-"""Shares of the gain worked out that are tried in turn: load and offset take their part."""
 TRIED_BEFORE = 4
 """Stages before the one that clips whose gain is tried."""
+MOST_RAISED = 30.0
+"""Times a resistor at an input may grow; beyond, the gain is one and something else is wrong."""
+LEAST_OHMS = 10.0
+"""A resistor below this is a wire, and sets no gain: common practice, no source."""
 
 
 def fitted(finding: Finding, scene: Scene) -> Iterator[Candidate]:
@@ -28,6 +32,8 @@ def fitted(finding: Finding, scene: Scene) -> Iterator[Candidate]:
     own = [stage] if finding.rule != "headroom-input" else []
     before = [s for s in (stage_named(d, scene.design) for d in _nearest(stage, scene)) if s]
     for one in [*own, *before[:TRIED_BEFORE]]:
+        yield from pairs.balanced(one, scene)
+        yield from pairs.common_leg(one, factors, scene)
         yield from _lowered(one, factors, scene, finding)
     for one in own:
         yield from _raised(one, factors, scene)
@@ -91,7 +97,7 @@ def _lowered(
         values = []
         for element in resistors:
             wanted = _resistance(stage, element, share)
-            if wanted is None or wanted <= 0:
+            if wanted is None or wanted < LEAST_OHMS:
                 return
             values.append(scene.fit("R", wanted, "down", element))
         key = tuple(values)
@@ -131,6 +137,8 @@ def _raised(stage: Stage, factors: tuple[float, ...], scene: Scene) -> Iterator[
         return
     element = inputs[0]
     for share in sorted({f * step for f in factors for step in STEPS}, reverse=True):
+        if share * MOST_RAISED < 1:
+            return
         ohms = scene.fit("R", (element.value or 0.0) / share, "up", element)
         edit = scene.value(element, ohms)
         if edit is not None:

@@ -162,8 +162,11 @@ def smaller_gain(stage: Stage, factor: float, design: Design) -> str:
     """
     if not 0 < factor < 1:
         return ""
-    gain = own_gain(stage)
-    if stage.topology == "follower" and (gain is None or gain > 1 / ONE):
+    gain, noise_gain = own_gain(stage), stage.loop.noise_gain_dc
+    unity = stage.topology == "follower" or (
+        stage.topology.startswith("Sallen-Key") and noise_gain is not None and noise_gain < ONE
+    )
+    if unity and (gain is None or gain > 1 / ONE):
         return f"attenuate its signal to at most {si(100 * factor, '%')} of what it is"
     if gain is None:
         return f"lower the gain to {si(100 * factor, '%')} of what it is"
@@ -174,7 +177,6 @@ def smaller_gain(stage: Stage, factor: float, design: Design) -> str:
     resistor = _single_feedback_resistor(stage, design)
     if resistor is None or resistor.value is None or fed_both_ways(stage, design):
         return words
-    noise_gain = stage.loop.noise_gain_dc
     if stage.topology == "non-inverting" and noise_gain is not None and noise_gain >= ONE:
         gain = noise_gain  # what stands before the input divides, and stays
     wanted = _feedback_for(stage.topology, resistor.value, gain, gain * factor)
