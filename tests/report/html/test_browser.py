@@ -41,7 +41,7 @@ RL o1 0 100
 R3 o1 n2 10k
 R4 n2 o2 10k
 XU2 0 n2 vp vn o2 LM358
-C9 o2 0 100n
+C9 o2 0 10n
 VP vp 0 12
 VN vn 0 -12
 .end
