@@ -3,14 +3,16 @@
 import math
 from collections.abc import Iterator
 
+from railguard.analysis.stage import Stage
 from railguard.circuit.model import GROUND
 from railguard.redline.decoupling import joined
-from railguard.redline.isolation import isolated
+from railguard.redline.isolation import isolated, parted
 from railguard.redline.model import Edit
 from railguard.redline.network import scaled_down
 from railguard.redline.scene import Candidate, Scene, all_of, with_value
 from railguard.rules.finding import Finding
-from railguard.rules.stability import across_feedback
+from railguard.rules.stability.logarithmic import Amplifying, amplifying, emitter_ohms
+from railguard.rules.stability.margin import across_feedback
 from railguard.units import si
 
 FACTORS = (1.0, 1.5, 2.2, 3.3, 4.7, 10.0, 22.0, 47.0, 100.0)
@@ -25,6 +27,10 @@ def phase(finding: Finding, scene: Scene) -> Iterator[Candidate]:
     """Win phase margin: isolate the load, put a capacitor across the feedback, shrink it."""
     stage = scene.stage(finding)
     if stage is None:
+        return
+    transistor = amplifying(stage, scene.design)
+    if transistor is not None:
+        yield from emitter_resistor(stage, transistor, scene)
         return
     if stage.current.load_capacitance:
         yield from isolated(finding, scene)
@@ -77,6 +83,10 @@ def lead(finding: Finding, scene: Scene) -> Iterator[Candidate]:
     stage = scene.stage(finding)
     if stage is None or not finding.limit or not stage.loop.crossover:
         return
+    transistor = amplifying(stage, scene.design)
+    if transistor is not None:
+        yield from emitter_resistor(stage, transistor, scene)
+        return
     out, net = stage.output.net, stage.inputs.minus.net
     for element in [e for e in scene.on(out, "C") if set(e.nets[:2]) == {out, net} and e.value]:
         for share in (0.47, 0.22, 0.1, 0.047):
@@ -104,6 +114,42 @@ def lead(finding: Finding, scene: Scene) -> Iterator[Candidate]:
                 choice="they raise the noise gain at the crossover only; noise rises there too, "
                 "the signal's gain stays",
             )
+
+
+def emitter_resistor(stage: Stage, found: Amplifying, scene: Scene) -> Iterator[Candidate]:
+    """Keep a transistor in the feedback from amplifying: a resistor before its emitter.
+
+    The logarithm stays at the emitter, with all that hangs there.
+    """
+    start = emitter_ohms(stage)
+    if start is None or not stage.feedback.capacitance:
+        return
+    there = scene.elements.get(found.resistor)
+    for factor in FACTORS[:5]:
+        scene.forget()
+        ohms = scene.fit("R", start * factor, "up", there)
+        choice = (
+            f"the transistor then amplifies by less where the loop closes; {si(ohms, 'Ω')} take "
+            "more of the output's range the more current the logarithm is of"
+        )
+        if there is not None:
+            edit = scene.value(there, ohms)
+            if edit is not None and ohms > found.ohms:
+                yield Candidate(
+                    edits=(edit,), what=with_value(there, ohms), choice=choice, regains=True
+                )
+            continue
+        made = parted(stage, scene, ohms)
+        if made is None:
+            return
+        edits, name, value = made
+        yield Candidate(
+            edits=edits,
+            what=f"add {name} of {si(value, 'Ω')} between the output of {stage.schematic} and the "
+            f"emitter of {found.transistor}",
+            choice=choice,
+            regains=True,
+        )
 
 
 def current_type(finding: Finding, scene: Scene) -> Iterator[Candidate]:

@@ -8,7 +8,7 @@ import msgspec
 from railguard.analysis.stage import Design
 from railguard.errors import PluginError, UsageError
 from railguard.notices import NotChecked
-from railguard.rules import dynamics, stability
+from railguard.rules import dynamics
 from railguard.rules.bias import errors, path, unused
 from railguard.rules.causes import merge
 from railguard.rules.decoupling import presence, quality
@@ -19,6 +19,7 @@ from railguard.rules.headroom import limits as beyond
 from railguard.rules.headroom import ranges
 from railguard.rules.netlist import circuit, reading
 from railguard.rules.protocol import Limits, Outcome, Rule
+from railguard.rules.stability import load, margin, noise_gain
 from railguard.rules.supply import levels
 from railguard.rules.supply import presence as supplies
 from railguard.settings.model import Settings
@@ -41,7 +42,9 @@ RULES: tuple[Rule, ...] = (
     *size.RULES,
     *special.RULES,
     *dynamics.RULES,
-    *stability.RULES,
+    *noise_gain.RULES,
+    *margin.RULES,
+    *load.RULES,
     *reading.RULES,
     *circuit.RULES,
 )

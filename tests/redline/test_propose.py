@@ -352,3 +352,23 @@ RL out 0 100k
     assert {f.rule for p in found for f in p.uncovered} == {"netlist-value-series"}
     whole = redline(before)
     assert "netlist-value-series" in {p.finding.rule for p in whole.proposals}
+
+
+@pytest.mark.parametrize(
+    ("feedback", "what"),
+    [
+        ("Q1 n 0 out QN", "Add R2 of 1.4 kΩ between the output of U1 and the emitter of Q1."),
+        ("Q1 n 0 e QN\nR2 e out 100", "R2 = 1.4 kΩ instead of 100 Ω."),
+    ],
+)
+def test_a_logarithm_keeps_its_shape_and_gets_an_emitter_resistor(feedback, what):
+    """What amplifies in its loop is damped; nothing is put between the inputs."""
+    before = review(
+        "logarithm of the turbidity meter\nVP vp 0 12\nVN vn 0 -12\nC1 vp 0 100n\n"
+        f"C2 vn 0 100n\nVIN in 0 SIN(2 1.9 10)\nR1 in n 10k\n{feedback}\nC3 n out 47p\n"
+        "XU1 0 n vp vn out OPA2134\nRL out 0 10k\n.model QN NPN(BF=200 IS=1e-14)\n",
+        plugins=False,
+    ).designs[0]
+    found = next(p for p in proposals(before) if p.finding.rule == "stability-noise-gain")
+    assert found.what == what
+    assert {f.rule for f in found.cures} == {"stability-noise-gain", "stability-phase-margin"}

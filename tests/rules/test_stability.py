@@ -5,8 +5,12 @@ import pytest
 from railguard.analysis.bound import Range
 from railguard.analysis.loop import Feedback, Loop
 from railguard.analysis.stage import Current, Unknown
+from railguard.reviewing import review
 from railguard.rules.feedback.size import HIGH
-from railguard.rules.stability import LOAD_CAPACITANCE, NOISE_GAIN, PHASE_MARGIN, TRANSIMPEDANCE
+from railguard.rules.stability.load import LOAD_CAPACITANCE, TRANSIMPEDANCE
+from railguard.rules.stability.logarithmic import amplifying
+from railguard.rules.stability.margin import PHASE_MARGIN
+from railguard.rules.stability.noise_gain import NOISE_GAIN
 from tests.rules.stages import (
     FAMILY,
     changed,
@@ -293,3 +297,58 @@ def test_the_resistor_between_the_inputs_is_the_next_one_down():
     network = Feedback(elements=("R2",), resistance=10e3)
     (found,) = findings(NOISE_GAIN, closing_at(1.1, feedback=network))
     assert "2.4 kΩ or less" in found.remedy
+
+
+LOGARITHM = """logarithm of the turbidity meter's current
+VP vp 0 12
+VN vn 0 -12
+C1 vp 0 100n
+C2 vn 0 100n
+VIN in 0 SIN(2 1.9 10)
+R1 in n 10k
+{feedback}
+C3 n {across} 47p
+XU1 0 n vp vn out {device}
+RL out 0 10k
+.model QN NPN(BF=200 IS=1e-14)
+"""
+STRAIGHT = "Q1 n 0 out QN"
+
+
+def logarithmic(feedback=STRAIGHT, device="OPA2134", across="out"):
+    """Review a logarithmic amplifier."""
+    text = LOGARITHM.format(feedback=feedback, device=device, across=across)
+    return review(text, plugins=False).designs[0]
+
+
+def test_a_transistor_that_amplifies_in_the_loop_wants_an_emitter_resistor():
+    """3.3 / (2 pi 8 MHz 47 pF) = 1.4 kilohm: with it the loop closes at a noise gain of 0.96.
+
+    Resistor and capacitor between the inputs would slow it at every current.
+    """
+    found = {f.rule: f for f in logarithmic().findings}
+    told = found["stability-noise-gain"]
+    assert told.message.endswith("Q1 in its feedback amplifies there.")
+    for finding in (told, found["stability-phase-margin"]):
+        assert finding.remedy == (
+            "Fit 1.5 kΩ between the output of U1 and the emitter of Q1, and the 47 pF from the "
+            "output itself to the inverting input."
+        )
+    there = logarithmic("Q1 n 0 e QN\nRE e out 100")
+    assert there.findings[0].remedy.startswith("Fit 1.5 kΩ in place of RE (100 Ω), and the 47 pF")
+    mended = logarithmic("Q1 n 0 e QN\nRE e out 1.5k")
+    assert not [f for f in mended.findings if f.family == "stability"]
+    assert mended.design.stages[0].loop.noise_gain_crossover == pytest.approx(0.96, abs=0.015)
+
+
+def test_a_decompensated_device_is_none_for_a_logarithm():
+    """No emitter resistor makes five of a gain of one."""
+    (found,) = [f for f in logarithmic(device="OP37").findings if f.family == "stability"]
+    assert found.remedy == "Fit a device stable at a gain of one."
+
+
+@pytest.mark.parametrize("feedback", ["Q1 n n out QN", "R9 n out 10k\nQ1 vp 0 n QN"])
+def test_a_transistor_that_divides_is_no_such_case(feedback):
+    """One wired as a diode, and one that only stands near."""
+    (stage_,) = logarithmic(feedback).design.stages
+    assert amplifying(stage_, logarithmic(feedback).design) is None

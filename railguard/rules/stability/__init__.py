@@ -1,0 +1,1 @@
+"""Stability: noise gain, phase margin, capacitive load, transimpedance stages."""
