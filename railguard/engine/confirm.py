@@ -118,7 +118,7 @@ def _filled(stage: Stage, simulation: Simulation) -> Stage:
     for part in ("loop", "dissipation"):
         if part in bent:
             unknown[part] = Unknown(stage.unknown[part].why, "nothing: it changes with the signal")
-    output, current = stage.output, stage.current
+    output, current, inputs = stage.output, stage.current, stage.inputs
     if "output" in bent:
         # What clips is asked for more than it gives; the demand is what it would have to give.
         asked = done.output if done.wanted.high is None else done.wanted
@@ -129,6 +129,10 @@ def _filled(stage: Stage, simulation: Simulation) -> Stage:
             high=_at(output.high, asked.high, asked, done.level),
             low=_at(output.low, asked.low, asked, done.level),
         )
+        if inputs.plus.level is None:
+            # What the gain multiplies is the way from there: a remedy is worked out from it.
+            plus = msgspec.structs.replace(inputs.plus, level=done.rest)
+            inputs = msgspec.structs.replace(inputs, plus=plus)
     if "current" in bent:
         source, sink = max(done.current.high or 0.0, 0.0), max(-(done.current.low or 0.0), 0.0)
         current = msgspec.structs.replace(
@@ -138,7 +142,9 @@ def _filled(stage: Stage, simulation: Simulation) -> Stage:
             source=msgspec.structs.replace(current.source, demand=source),
             sink=msgspec.structs.replace(current.sink, demand=sink),
         )
-    return msgspec.structs.replace(stage, output=output, current=current, unknown=unknown)
+    return msgspec.structs.replace(
+        stage, output=output, current=current, inputs=inputs, unknown=unknown
+    )
 
 
 def _at(bound: Bound, value: float | None, asked: Range, level: float) -> Bound:

@@ -31,6 +31,8 @@ AT_END = 0.02
 class Simulated(msgspec.Struct, frozen=True):
     """What one amplifier did, V and A; ranges are empty where no run of its signals settled.
 
+    level    of the output at the operating point; where it would be, if something stops it there
+    rest     of the non-inverting input there
     current  out of the output pin
     plus     at its non-inverting input
     apart    largest voltage between its inputs: a few millivolts while its loop works
@@ -42,6 +44,7 @@ class Simulated(msgspec.Struct, frozen=True):
     output: Range
     current: Range
     level: float
+    rest: float | None = None
     plus: Range = Range()
     apart: float | None = None
     wanted: Range = Range()
@@ -84,9 +87,12 @@ def _even_gain(stage: Stage) -> float | None:
 
 
 def _simulated(name: str, bench: Bench, found: Found, gain: float | None) -> Simulated:
+    at_rest, held = (float(found.levels.get(node, 0.0)) for node in bench.inputs(name))
     level = float(found.levels[bench.output(name)])
+    if gain is not None and abs(at_rest - held) > APART:
+        level += gain * (at_rest - held)
     if found.waves is None:
-        return Simulated(Range(), Range(), level)
+        return Simulated(Range(), Range(), level, at_rest)
     waves = found.waves
     kept = waves.real("time") >= bench.settled
     plus, minus = (_volts(waves, node)[kept] for node in bench.inputs(name))
@@ -95,6 +101,7 @@ def _simulated(name: str, bench: Bench, found: Found, gain: float | None) -> Sim
         output=_range(output),
         current=_range(waves.current(bench.sensed(name))[kept]),
         level=level,
+        rest=at_rest,
         plus=_range(plus),
         apart=float(np.max(np.abs(plus - minus))),
         wanted=Range() if gain is None else _wanted(output, plus - minus, gain),

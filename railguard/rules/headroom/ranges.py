@@ -175,7 +175,7 @@ def _output_remedy(
     gain = shift = ""
     opposite = stage.output.low if bound.upper else stage.output.high
     share = share_that_fits(stage, bound, opposite)
-    one = len(stage.gain) == 1 or stage.balance is not None
+    one = len(stage.gain) <= 1 or stage.balance is not None
     if one or not outside:
         gain = smaller_gain(stage, share, design)
     nominal = broken.broken != "reserve" and not broken.at_corner
