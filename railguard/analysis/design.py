@@ -7,6 +7,7 @@ import msgspec
 from railguard.analysis.allowed import allowed_inputs
 from railguard.analysis.clamping import clamps_of, followers_replaced
 from railguard.analysis.kind import kind_of
+from railguard.analysis.loaded import loads_of
 from railguard.analysis.network import Network
 from railguard.analysis.parts import Part, independent, source_levels
 from railguard.analysis.rails import packages_of, rails_of
@@ -16,7 +17,7 @@ from railguard.analysis.signals import Prepared, prepare
 from railguard.analysis.singular import explained
 from railguard.analysis.solution import Options, Solution, solve
 from railguard.analysis.solve import factor
-from railguard.analysis.stage import Design, Stage, Unrecognised
+from railguard.analysis.stage import Design, Loaded, Stage, Unrecognised
 from railguard.analysis.stages import drafts_of, finished, unsolved
 from railguard.analysis.supplies import Feed, feeds, supply_nets
 from railguard.analysis.surroundings import MID_HERTZ, bridge_resistors
@@ -86,6 +87,7 @@ def analyse(
             )
             for element, match in (*found.unknown, *found.others)
         ),
+        loads=tuple(load for one in done for load in one.loads),
         bridges=exempt,
         problems=tuple(problems),
         remarks=tuple(remarks),
@@ -97,11 +99,13 @@ class _Done(msgspec.Struct, frozen=True):
 
     first     its stages before any output was held to what it reaches
     solution  None where it has none
+    loads     stated loads behind its outputs
     """
 
     stages: tuple[Stage, ...]
     first: tuple[Stage, ...] = ()
     solution: Solution | None = None
+    loads: tuple[Loaded, ...] = ()
     problems: tuple[Problem, ...] = ()
 
 
@@ -125,7 +129,7 @@ class _Worker:
     def worked_out(self, part: Part) -> _Done:
         """Return a part's stages; what stands behind a saturated output takes its real level."""
         try:
-            solution = self._solved(part, {})
+            solution = settled = self._solved(part, {})
         except SolveError as error:
             problem = _unsolvable(error, part)
             return _Done(
@@ -135,9 +139,10 @@ class _Worker:
         clamps: dict[str, Clamp] = {}
         while len(found := clamps_of(stages, clamps)) > len(clamps):
             clamps = found
-            real = self._drafts(part, self._solved(part, clamps))
+            settled = self._solved(part, clamps)
+            real = self._drafts(part, settled)
             stages = followers_replaced(stages, real, frozenset(clamps))
-        return _Done(stages, first, solution)
+        return _Done(stages, first, solution, loads_of(settled, stages, self._settings))
 
     def _solved(self, part: Part, clamps: dict[str, Clamp]) -> Solution:
         return solve(

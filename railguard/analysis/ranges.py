@@ -4,7 +4,7 @@ Superposition: the DC solution, plus for every tone the largest peak over its ba
 different groups are taken to meet at their worst, so their peaks add.
 """
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 
 import msgspec
 import numpy as np
@@ -132,11 +132,7 @@ def answer(
         tones.append(Tone(name=name, drives=((name, clamp.half),), frequencies=(clamp.hertz,)))
     factors: dict[float, Factor] = {0.0: dc}
     answers = tuple(_tone(network, tone, rows, factors) for tone in tones)
-    up = sum((a.up for a in answers), np.zeros(len(rows)))
-    down = sum((a.down for a in answers), np.zeros(len(rows)))
-    together = _common_period(answers, rows)
-    if together is not None:
-        up, down = np.minimum(up, together[0]), np.minimum(down, together[1])
+    up, down = _summed(answers, rows)
     slew = sum((a.slew for a in answers), np.zeros(len(rows)))
     return Answers(
         network=network,
@@ -150,6 +146,26 @@ def answer(
         slew=slew,
         tones=answers,
     )
+
+
+def swings(answers: Answers, nets: Sequence[str]) -> dict[str, tuple[float, float]]:
+    """Return the range, V, that some nets cover, by net: low and high."""
+    rows = np.array([answers.network.row(net) for net in nets], dtype=np.int64)
+    factors: dict[float, Factor] = {0.0: answers.dc}
+    tones = tuple(_tone(answers.network, a.tone, rows, factors) for a in answers.tones)
+    level, (up, down) = picked(answers.x, rows), _summed(tones, rows)
+    ends = zip((level - down).tolist(), (level + up).tolist(), strict=True)
+    return dict(zip(nets, ends, strict=True))
+
+
+def _summed(answers: tuple[ToneAnswer, ...], rows: Index) -> tuple[Real, Real]:
+    """Return how far quantities go up and down where all tones meet at their worst."""
+    up = sum((a.up for a in answers), np.zeros(len(rows)))
+    down = sum((a.down for a in answers), np.zeros(len(rows)))
+    together = _common_period(answers, rows)
+    if together is not None:
+        up, down = np.minimum(up, together[0]), np.minimum(down, together[1])
+    return up, down
 
 
 def standing_levels(

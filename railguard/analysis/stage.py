@@ -250,8 +250,18 @@ class Unrecognised(msgspec.Struct, frozen=True):
     location: Location | None = None
 
 
+class Loaded(msgspec.Struct, frozen=True, kw_only=True):
+    """A stated load behind resistors: what it gets, V, and the designators that drive it."""
+
+    net: str
+    volts: Range
+    drivers: tuple[str, ...]
+
+
 class Design(msgspec.Struct, frozen=True, kw_only=True):
     """Everything the rules may look at.
+
+    loads    stated loads with a limit of their own that stand on no output, but behind one
 
     bridges  designators of the resistors of sensor bridges: no parts off the shelf
     """
@@ -263,6 +273,7 @@ class Design(msgspec.Struct, frozen=True, kw_only=True):
     rails: tuple[Rail, ...]
     packages: tuple[Package, ...]
     stages: tuple[Stage, ...]
+    loads: tuple[Loaded, ...] = ()
     unrecognised: tuple[Unrecognised, ...] = ()
     bridges: frozenset[str] = frozenset()
     problems: tuple[Problem, ...] = ()

@@ -2,7 +2,8 @@
 
 from collections.abc import Iterator
 
-from railguard.analysis.stage import Design, Stage
+from railguard.analysis.bound import Range
+from railguard.analysis.stage import Design, Loaded, Stage
 from railguard.notices import NotChecked
 from railguard.rules.compose import (
     finding,
@@ -13,7 +14,7 @@ from railguard.rules.compose import (
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.remedies import fit
 from railguard.rules.severity import ROUNDING, TABLE, evidence
-from railguard.rules.wording import NO_SOURCE, capital, cited, device, origin
+from railguard.rules.wording import NO_SOURCE, capital, cited, device, listed, origin
 from railguard.rules.working import standstill
 from railguard.settings.model import Load
 from railguard.units import percent, si
@@ -217,35 +218,47 @@ def judge_load(subject: Design, limits: Limits, design: Design) -> Iterator[Outc
     for load in subject.settings.loads:
         if load.max_volts is None:
             continue
-        stage = next((s for s in subject.stages if s.output.net == load.net), None)
-        if stage is None or stage.output.demand.high is None or stage.output.demand.low is None:
+        driven = _driven(load.net, subject)
+        if driven is None:
             why = f"the voltage on net {load.net} was not worked out"
-            add = "put the load on the net of an op-amp's output, and state the signals"
+            add = "put the load on the net of an op-amp's output, or behind resistors of one, and "
+            add += "state the signals"
             yield NotChecked(load.net, "headroom-load", why, add)
             continue
-        yield from _load(stage, load, load.max_volts)
+        yield from _load(driven, load, load.max_volts, subject)
 
 
-def _load(stage: Stage, load: Load, most: float) -> Iterator[Outcome]:
-    high, low = stage.output.demand.high or 0.0, stage.output.demand.low or 0.0
-    reach = stage.output.available
-    if reach.high is not None:
-        high = min(high, reach.high)
-    if reach.low is not None:
-        low = max(low, reach.low)
+def _driven(net: str, design: Design) -> Loaded | None:
+    """Return what a load gets: from the output it stands on, as far as that goes, or behind one."""
+    stage = next((s for s in design.stages if s.output.net == net), None)
+    if stage is None:
+        return next((found for found in design.loads if found.net == net), None)
+    high, low, reach = stage.output.demand.high, stage.output.demand.low, stage.output.available
+    if high is None or low is None:
+        return None
+    high = high if reach.high is None else min(high, reach.high)
+    low = low if reach.low is None else max(low, reach.low)
+    return Loaded(net=net, volts=Range(low, high), drivers=(stage.designator,))
+
+
+def _load(driven: Loaded, load: Load, most: float, design: Design) -> Iterator[Outcome]:
+    stages = [s for s in design.stages if s.designator in driven.drivers]
+    high, low = driven.volts.high or 0.0, driven.volts.low or 0.0
     worst = max(high, -low if low < 0 else 0.0)
     if worst <= most * (1 + ROUNDING):
         return
-    basis = stage.output.high.demand_basis
+    basis = stages[0].output.high.demand_basis
+    names = listed(stage.schematic for stage in stages)
+    verb = "drives" if len(stages) == 1 else "drive"
     message = (
-        f"the load on net {load.net} stands {si(most, 'V')} (as stated), and {stage.schematic} "
-        f"drives it to {si(high if worst == high else low, 'V')}, {si(worst - most, 'V')} beyond."
+        f"the load on net {load.net} stands {si(most, 'V')} (as stated), and {names} {verb} it to "
+        f"{si(high if worst == high else low, 'V')}, {si(worst - most, 'V')} beyond."
     )
     yield finding(
         "headroom-load",
         TABLE["absolute"][evidence(basis)],
         capital(message),
-        designators=(stage.designator,),
+        designators=driven.drivers,
         nets=(load.net,),
         demand=worst,
         limit=most,
@@ -253,10 +266,10 @@ def _load(stage: Stage, load: Load, most: float) -> Iterator[Outcome]:
         unit="V",
         basis=(basis, "user"),
         remedy=f"Divide the output by {si(worst / most, '')} before the load, run "
-        f"{stage.schematic} on a rail of {si(most, 'V')}, or clamp the net through a series "
+        f"{names} on a rail of {si(most, 'V')}, or clamp the net through a series "
         "resistor.",
         source="the load's own limit, as stated",
-        location=stage.location,
+        location=stages[0].location,
     )
 
 
@@ -267,8 +280,8 @@ LOAD = Rule(
     judges="The voltage an output drives a stated load to against the load's own max-volts.",
     reason="An amplifier on ±12 V destroys a converter input that stands 3.3 V.",
     source="the load's own limit, as stated",
-    silent="Loads without max-volts. A load that does not hang on an output is listed as not "
-    "checked.",
+    silent="Loads without max-volts. A load that hangs on no output, not even behind resistors, is "
+    "listed as not checked.",
     judge=judge_load,
 )
 
