@@ -84,7 +84,7 @@ def test_what_can_be_judged(cards, judged):
 
 
 def test_two_signals_meet_within_their_period():
-    """out = 5 (1 + 0.2 sin x) - 2 (0.2 sin 2 x), and the divider's 1 / 2.01 of it."""
+    """Out = 5 (1 + 0.2 sin x) - 2 (0.2 sin 2 x), and the divider's 1 / 2.01 of it."""
     cards = "VB b 0 SIN(0 0.2 20)\nR5 b n 10k\nR3 out adc 10k\nR4 adc 0 10k\n"
     text = (TITLE + RAILS + GAIN + cards + LIMIT).replace("SIN(2 1.5 {hertz})", "SIN(1 0.2 10)")
     low, high, _ = ends(review(text, plugins=False).designs[0])

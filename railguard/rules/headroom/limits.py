@@ -174,10 +174,16 @@ def judge_offset(stage: Stage, limits: Limits, design: Design) -> Iterator[Outco
         margin=limits["share"] * reach - 2 * abs(error),
         unit="V",
         basis=("netlist", basis),
-        remedy="Couple the stages through a capacitor, give the gain a capacitor in its ground leg "
-        "so that it is one at DC, or fit a device of less offset.",
+        remedy=_STEADY if stage.band.low == 0 else _MOVING,
         source=cited(stage, basis),
     )
+
+
+_STEADY = "Fit a device of less offset and bias current: its signal goes down to DC."
+_MOVING = (
+    "Couple the stages through a capacitor, give the gain a capacitor in its ground leg so that it "
+    "is one at DC, or fit a device of less offset."
+)
 
 
 OFFSET = Rule(

@@ -96,6 +96,16 @@ def test_an_unknown_offset_is_not_judged():
     assert outcomes(OFFSET, drifting(None)) == []
 
 
+@pytest.mark.parametrize(
+    ("low", "words"), [(0.0, "Fit a device of less offset"), (10.0, "Couple the stages"),
+                       (None, "Couple the stages")],
+)  # fmt: skip
+def test_no_capacitor_is_asked_for_where_dc_counts(low, words):
+    """A bridge's signal would not come through one."""
+    (found,) = findings(OFFSET, drifting(6.0, band=Range(low, 100.0)))
+    assert found.remedy.startswith(words)
+
+
 def loaded(most, high=5.0, net="out", **fields):
     """Make a design whose output drives a load with a limit of its own."""
     one = stage(
