@@ -150,7 +150,7 @@ def _checks(bound: Bound, reserve: float) -> Iterator[_Check]:
 
 
 def _fails(bound: Bound, check: _Check) -> bool:
-    slack = ROUNDING * max(abs(check.limit), abs(check.demand))
+    slack = ROUNDING * max(abs(check.limit), abs(check.demand), bound.span or 0.0)
     return _room(bound, check.demand, check.limit) - check.wanted < -slack
 
 

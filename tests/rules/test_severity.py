@@ -277,3 +277,12 @@ def test_what_nothing_moves_and_does_not_rest_is_measured_against_nothing():
     unknown = breach(bound(False, demand=0.0, typical=0.02, absolute=0.0), scale=5.0)
     assert unknown is not None
     assert unknown.severity == "critical"
+
+
+@pytest.mark.parametrize(("demand", "row"), [(-2e-16, "typical"), (-1e-6, "absolute")])
+def test_what_arithmetic_leaves_of_zero_is_at_the_rail(demand, row):
+    """Of a span of 2.5 V: zero is short of what the output reaches, and not below its rail."""
+    one = bound(
+        False, demand=demand, level=1.25, span=2.5, absolute=0.0, typical=0.006, guaranteed=None
+    )
+    assert breach(one).broken == row

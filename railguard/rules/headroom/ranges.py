@@ -183,6 +183,9 @@ def _output_remedy(
         side = "below" if bound.upper else "above"
         target = broken.limit if outside else level + broken.limit - broken.demand
         shift = f"move the output's level ({_volts(level, bound)}) {side} {si(target, 'V')}"
+        if _volts(level, bound) == si(target, "V"):  # three digits do not tell them apart
+            way, far = "down" if bound.upper else "up", si(abs(target - level), "V")
+            shift = f"move the output's level ({_volts(level, bound)}) {way} by {far}"
         if stage.topology.startswith("inverting") and stage.inputs.plus.net == GROUND:
             shift += ", by a reference at its non-inverting input instead of ground"
     device = ""

@@ -7,6 +7,7 @@ from railguard.analysis.loop import Loop
 from railguard.analysis.rail import Supply
 from railguard.analysis.stage import Carrier, Current, Output
 from railguard.devices.model import SwingPoint
+from railguard.reviewing import review
 from railguard.rules.headroom.ranges import INPUT, OUTPUT
 from tests.rules.stages import (
     ELEMENTS,
@@ -487,3 +488,15 @@ def test_one_end_that_was_worked_out_is_enough_to_judge_by(rule):
     sides = {"high": high(11.0, span=16.0), "low": low(None)}
     one = stage(output=Output(net="out", **sides), inputs=inputs(**sides))
     assert len(findings(rule, one)) == 1
+
+
+def test_a_level_is_moved_by_what_its_three_digits_do_not_show():
+    """Zero asked of an output that reaches down to 5 mV: 1 V and 1.005 V are written alike."""
+    text = (
+        "level output of the gauge\nVP vp 0 15\nC1 vp 0 100n\nVIN in 0 SIN(1 1 10)\n"
+        "XU1 in out vp 0 out LM358\nRL out 0 10k\n"
+    )
+    (found,) = [
+        f for f in review(text, plugins=False).designs[0].findings if f.rule == "headroom-output"
+    ]
+    assert "Move the output's level (1 V) up by 5 mV" in found.remedy
