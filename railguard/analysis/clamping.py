@@ -17,6 +17,8 @@ from railguard.analysis.stage import Stage
 def clamps_of(stages: Sequence[Stage], known: Mapping[str, Clamp]) -> dict[str, Clamp]:
     """Return the outputs asked beyond what they typically reach, and what they do instead.
 
+    Of a device without a listed swing, beyond its rails.
+
     known  clamps found before: they stay. New ones are added from the front of the chain only,
            because what a saturated stage asks of the ones behind it is not real.
     """
@@ -36,7 +38,10 @@ def clamps_of(stages: Sequence[Stage], known: Mapping[str, Clamp]) -> dict[str, 
 
 def _clamp(stage: Stage) -> Clamp | None:
     low, high = stage.output.demand.low, stage.output.demand.high
-    least, most = stage.output.available.low, stage.output.available.high
+    reach, supply = stage.output.available, stage.supply
+    # Where no typical swing is listed an output may come close to its rails, and never beyond.
+    least = reach.low if reach.low is not None else supply.negative
+    most = reach.high if reach.high is not None else supply.positive
     if low is None or high is None or least is None or most is None or least >= most:
         return None
     if high <= most and low >= least:

@@ -108,3 +108,17 @@ def test_a_load_that_gets_too_much_is_critical_and_gets_a_divider():
     assert told.severity == "critical"
     assert (told.demand, told.limit) == (pytest.approx(10.49, abs=0.01), 3.3)
     assert told.designators == ("XU1",)
+
+
+def test_an_output_without_a_listed_typical_swing_ends_at_its_rail():
+    """A sensor of 10 V at a follower on 5 V: the converter gets no more than the supply."""
+    text = (
+        f"{TITLE}V5 v5 0 5\nC1 v5 0 100n\nVIN in 0 SIN(5 5 10)\nR1 in p 100k\n"
+        "XU1 p out v5 0 out MCP6021\nR2 out adc 100\n* railguard: load adc 1meg max-volts=5.3\n"
+    )
+    found = review(text, plugins=False).designs[0]
+    (stage,) = found.design.stages
+    assert (stage.output.available.high, stage.output.demand.high) == (None, pytest.approx(10.0))
+    _, high, _ = ends(found)
+    assert high == pytest.approx(5.0, rel=1e-3)
+    assert "headroom-load" not in {f.rule for f in found.findings}

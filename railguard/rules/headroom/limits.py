@@ -242,8 +242,10 @@ def _driven(net: str, design: Design) -> Loaded | None:
     high, low, reach = stage.output.demand.high, stage.output.demand.low, stage.output.available
     if high is None or low is None:
         return None
-    high = high if reach.high is None else min(high, reach.high)
-    low = low if reach.low is None else max(low, reach.low)
+    most = reach.high if reach.high is not None else stage.supply.positive
+    least = reach.low if reach.low is not None else stage.supply.negative
+    high = high if most is None else min(high, most)
+    low = low if least is None else max(low, least)
     return Loaded(net=net, volts=Range(low, high), drivers=(stage.designator,))
 
 

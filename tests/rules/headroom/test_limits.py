@@ -139,6 +139,14 @@ def test_a_load_gets_no_more_than_the_output_reaches():
     assert found.demand == 10.5
 
 
+def test_a_load_gets_no_more_than_the_rail_where_no_swing_is_listed():
+    """Twelve volts of the usual stage's supply."""
+    one = stage(output=changed(stage().output, demand=Range(0.0, 20.0), available=Range()))
+    whole = design(one, settings=Settings(loads=(Load(net="out", ohms=1e4, max_volts=3.3),)))
+    (found,) = judged(whole)
+    assert found.demand == 12.0
+
+
 def test_a_load_elsewhere_is_not_checked():
     """A load that does not hang on an output is listed."""
     whole = loaded(3.3, net="elsewhere")
