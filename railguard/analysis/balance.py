@@ -2,7 +2,7 @@
 
 from railguard.analysis.corners import tolerance_of
 from railguard.analysis.loop import Balance
-from railguard.analysis.surroundings import Ways
+from railguard.analysis.surroundings import Ways, divider_at
 from railguard.analysis.view import View
 from railguard.circuit.model import GROUND, Element
 from railguard.settings.model import Tolerances
@@ -13,7 +13,7 @@ SENSE_SHARE = 0.1
 """A resistor between the two inputs is a sense resistor below this share of those it feeds."""
 
 
-def balance_of(view: View, stated: Tolerances) -> Balance | None:
+def balance_of(view: View, stated: Tolerances, rails: frozenset[str]) -> Balance | None:
     """Return the balanced resistors round a stage, or None where it has no such four.
 
     One from the output and one from an input meet at the inverting input, two of the same ratio at
@@ -35,13 +35,19 @@ def balance_of(view: View, stated: Tolerances) -> Balance | None:
         ends = {_far(lead, amplifier.minus), _far(first, amplifier.plus)}
         four = (lead, back, first, second)
         told = [tolerance_of(e, stated) for e in four]
+        at = _far(second, amplifier.plus)
+        bare = divider_at(at, ways, rails) if at not in ways.held | ways.outputs else None
         found = Balance(
             elements=tuple(e.designator for e in four),
             gain=_ohms(back) / _ohms(lead),
             tolerance=sum(share for share, _ in told),
             stated=all(is_stated for _, is_stated in told),
-            reference=_level(_far(second, amplifier.plus), view),
+            reference=_level(at, view),
             sense=_sense(ends, SENSE_SHARE * min(_ohms(lead), _ohms(first)), ways),
+            source=() if bare is None else bare.elements,
+            source_ohms=0.0 if bare is None else bare.resistance,
+            source_farads=0.0 if bare is None else bare.bypass,
+            fellow=_ohms(second),
         )
         pairs.append(found)
     return next((f for f in pairs if f.sense), next(iter(pairs), None))

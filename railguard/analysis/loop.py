@@ -37,6 +37,9 @@ class Balance(msgspec.Struct, frozen=True, kw_only=True):
     tolerance  sum of the four, as a share; `stated` where each is
     reference  volts the output counts from
     sense      designator of the small resistor, or the source, the two inputs stand across, or ""
+    source     resistors of a bare divider that the reference comes from, else none; `source_ohms`
+               stand in series with `fellow`, ohm, the resistor at the reference, and
+               `source_farads` from there to a return
     """
 
     elements: tuple[str, ...]
@@ -45,6 +48,10 @@ class Balance(msgspec.Struct, frozen=True, kw_only=True):
     stated: bool
     reference: float = 0.0
     sense: str = ""
+    source: tuple[str, ...] = ()
+    source_ohms: float = 0.0
+    source_farads: float = 0.0
+    fellow: float = 0.0
 
 
 class Filter(msgspec.Struct, frozen=True):

@@ -161,7 +161,7 @@ def _stage(
             "see the finding on it",
         )
     outer = frozenset(a.output for a in solution.amplifiers if a.designator in loop.holds)
-    balance = balance_of(view, settings.tolerances)
+    balance = balance_of(view, settings.tolerances, rails)
     topology = topology_of(amplifier, solution.ways, loop, rails, outer)
     corner, corner_ends = high_pass_of(view)
     gains, transfers = gains_of(view), gains_of(view, "A")

@@ -23,6 +23,8 @@ _REASONS = {
 
 def no_card(finding: Finding, design: Design) -> str:
     """Return why no card can cure a finding; "" where one may."""
+    if finding.rule == "feedback-matching" and finding.basis == ("netlist",):
+        return "the reference wants an amplifier of its own"
     if finding.rule not in CURES:
         return _REASONS.get(finding.rule, "only who drew it knows what was meant")
     if finding.rule == "supply-missing" and not any(

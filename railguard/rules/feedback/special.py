@@ -1,10 +1,13 @@
 """Feedback of current-feedback devices, and the matching of difference amplifiers."""
 
+import math
 from collections.abc import Iterator
 
+from railguard.analysis.loop import Balance
 from railguard.analysis.stage import Design, Stage
 from railguard.devices.model import Figure
 from railguard.rules.compose import missing_figure, open_point, stage_finding
+from railguard.rules.finding import Finding
 from railguard.rules.protocol import Limit, Limits, Outcome, Rule
 from railguard.rules.severity import ROUNDING, TABLE, evidence
 from railguard.rules.wording import NO_SOURCE, cited, device, listed
@@ -117,7 +120,11 @@ DEFAULT_TOLERANCE = 0.01
 
 
 def judge_matching(stage: Stage, limits: Limits, design: Design) -> Iterator[Outcome]:
-    """Judge the common-mode error a difference amplifier's resistor tolerance allows."""
+    """Judge what a difference amplifier's reference and its resistors' tolerance leave of it."""
+    soft = _soft_reference(stage, limits)
+    if soft is not None:
+        yield soft
+        return  # what tolerance adds is small beside it
     if stage.topology != "difference" or stage.use != "linear" or stage.loop.dc != "negative":
         return
     balance = stage.balance
@@ -154,6 +161,52 @@ def judge_matching(stage: Stage, limits: Limits, design: Design) -> Iterator[Out
         remedy=_matched(stage, tolerance * limits["share"] * span / error),
         source="Texas Instruments SLPS785 (RES11A), CMRR section: (1 + G) / 4t",
     )
+
+
+def _soft_reference(stage: Stage, limits: Limits) -> Finding | None:
+    """Tell of a reference that comes from a bare divider, which costs the four their balance."""
+    balance = stage.balance
+    works = stage.use == "linear" and stage.loop.dc == "negative"
+    if not works or balance is None or not balance.source:
+        return None
+    share = balance.source_ohms / balance.fellow
+    corner = 0.0
+    if balance.source_farads:
+        corner = 1 / (2 * math.pi * balance.source_ohms * balance.source_farads)
+    held = bool(corner and stage.band.low and stage.band.low > corner)
+    if share <= limits["reference"] or held:
+        return None
+    fellow = balance.fellow + balance.source_ohms
+    first = balance.fellow / balance.gain
+    common = (1 + balance.gain) * fellow / (first + fellow) - balance.gain
+    rejection = _decibels(balance.gain / common)
+    name = balance.elements[3]
+    return stage_finding(
+        "feedback-matching",
+        stage,
+        "minor",
+        f"{stage.schematic}'s reference comes from the divider {listed(balance.source)}: its "
+        f"{si(balance.source_ohms, 'Ω')} stand in series with {name}, so the one signal is "
+        f"multiplied by {si(balance.gain + common, '')} and the other by {si(balance.gain, '')}; "
+        f"{si(rejection, 'dB')} of common-mode rejection are left.",
+        nets=(stage.output.net,),
+        demand=share,
+        limit=limits["reference"],
+        margin=limits["reference"] - share,
+        unit="",
+        basis=("netlist",),
+        remedy=_stiffened(balance, name),
+        source="Analog Devices AD620 data sheet: the reference terminal wants a low resistance, "
+        "from memory",
+    )
+
+
+def _stiffened(balance: Balance, name: str) -> str:
+    buffered = f"Buffer the divider with an amplifier before {name}"
+    rest = balance.fellow - balance.source_ohms
+    if rest < balance.source_ohms:
+        return f"{buffered}."
+    return f"{buffered}, or fit {si(rest, 'Ω')} there, which both together make the old value."
 
 
 FINEST = 0.0005
@@ -209,7 +262,8 @@ MATCHING = Rule(
     name="feedback-matching",
     family="feedback",
     looks_at="stage",
-    judges="The common-mode error of a difference amplifier at its resistors' tolerance.",
+    judges="The common-mode error of a difference amplifier at its resistors' tolerance, and with "
+    "a divider as its reference.",
     reason="Four resistors of tolerance t leave a rejection of (1 + G) / 4t: 34 dB at a gain of "
     "one with 1 %.",
     source="Texas Instruments SLPS785 (RES11A); S. Franco, Design with Operational Amplifiers, "
@@ -229,6 +283,13 @@ MATCHING = Rule(
             unit="",
             meaning="share beyond which the error is no question of accuracy: major where the "
             "tolerances are stated, minor where they are the default",
+            source=NO_SOURCE,
+        ),
+        Limit(
+            name="reference",
+            default=0.02,
+            unit="",
+            meaning="resistance of what the reference comes from, as a share of the resistor there",
             source=NO_SOURCE,
         ),
         Limit(

@@ -5,6 +5,7 @@ import pytest
 from railguard.analysis.bound import Range
 from railguard.analysis.loop import Balance, Feedback, Loop
 from railguard.analysis.stage import Output
+from railguard.reviewing import review
 from railguard.rules.feedback.special import CURRENT_TYPE, MATCHING
 from railguard.settings.model import Settings, Tolerances
 from tests.rules.stages import (
@@ -187,3 +188,64 @@ def test_what_is_said_of_a_difference_amplifier():
         "by 200 mV, 5 % of its span."
     )
     assert found.basis == ("netlist", "assumed")
+
+
+DIFFERENCE = """bridge of the river gauge, its difference amplifier
+V5 v5 0 5
+C1 v5 0 100n
+C2 v5 0 10u
+VA a 0 SIN(2.5 0.2 10)
+VB b 0 SIN(2.5 0.2 33)
+R1 a n 10k
+R2 n out 10k
+R3 b p 10k
+R4 p ref 10k
+{reference}
+XU1 p n v5 0 out OPA2333
+RL out 0 100k
+"""
+BARE = "R5 v5 ref 10k\nR6 ref 0 10k"
+
+
+def referred(reference):
+    """Review a difference amplifier with some reference."""
+    return review(DIFFERENCE.format(reference=reference), plugins=False).designs[0]
+
+
+def told(reference):
+    """Return what feedback-matching says of a bare divider."""
+    found = [f for f in referred(reference).findings if f.rule == "feedback-matching"]
+    return [f for f in found if "divider" in f.message]
+
+
+def test_a_bare_divider_as_reference_costs_the_balance():
+    """15 kohm where 10 belong: (1 + 1) 15 / 25 = 1.2 against 1, and 20 log 5 = 14 dB."""
+    (found,) = told(BARE)
+    gains = dict(referred(BARE).design.stages[0].gain)
+    assert gains["b"] == pytest.approx(1.2, rel=1e-3)
+    assert gains["a"] == pytest.approx(-1.0, rel=1e-3)
+    assert found.severity == "minor"
+    assert "multiplied by 1.2 and the other by 1; 14 dB of common-mode rejection" in found.message
+    assert found.remedy.endswith("or fit 5 kΩ there, which both together make the old value.")
+
+
+@pytest.mark.parametrize(
+    ("reference", "count"),
+    [
+        ("VR ref 0 2.5", 0),
+        (f"{BARE.replace('ref', 'tap')}\nXU2 tap ref v5 0 ref OPA2333", 0),
+        ("R5 v5 ref 390\nR6 ref 0 390", 0),  # 195 ohm are 1.95 %
+        ("R5 v5 ref 430\nR6 ref 0 430", 1),
+        (f"{BARE}\nC6 ref 0 100u", 0),  # 0.3 Hz, and nothing below 10 Hz counts
+        (f"{BARE}\nC6 ref 0 1u", 1),  # 32 Hz
+    ],
+)
+def test_what_a_reference_may_be(reference, count):
+    """A source, an output, a stiff divider, one that a capacitor holds at all that counts."""
+    assert len(told(reference)) == count
+
+
+def test_a_divider_as_large_as_the_resistor_there_is_buffered():
+    """No smaller resistor makes up for it."""
+    (found,) = told("R5 v5 ref 15k\nR6 ref 0 15k")
+    assert found.remedy == "Buffer the divider with an amplifier before R4."
