@@ -119,3 +119,12 @@ def test_a_source_of_zero_volts_holds_a_rail_at_ground(design):
     supply = "V1 bat 0 5\nVM bat vcc 0\nV2 vee 0 0\nC1 vcc 0 100n"
     levels = {r.net: r.level for r in design(cards, supply=supply).rails}
     assert levels == {"vcc": pytest.approx(5.0), "vee": pytest.approx(0.0)}
+
+
+def test_a_return_that_carries_no_current_stands_at_ground(design):
+    """A loop-powered part: what arithmetic leaves of zero is zero, as a reader sees it."""
+    cards = "RL lm 0 250\nR9 v5 lm 1k\nV9 in lm 2\nRS in p 1k\nR2 p lm 1meg\nXU1 p o v5 lm o OPA333"
+    supply = "VLOOP v24 0 24\nRA v24 b 100k\nRB b 0 100k\nV1 v5 lm 5\nC1 v5 lm 100n"
+    (stage,) = design(cards, supply=supply).stages
+    assert stage.supply.negative == 0.0
+    assert stage.supply.positive == 5.0
