@@ -264,6 +264,9 @@ def _in_band(loop: Transmission) -> InBand:
                 )
             ]
         )
+        # Where it turns round on the way, the corner of the other way may be the further one.
+        turned = moved.value.real[[1, 0, 3, 2]] - value
+        sums = np.maximum(sums, np.array([1.0, -1.0, 1.0, -1.0]) * turned)
     more, less, up, down = (float(v) for v in sums)
     speed = gain_bandwidth(amplifier) or np.inf
     bare = -float(np.log(np.hypot(1.0 / open_loop_gain(amplifier), hertz / speed)))

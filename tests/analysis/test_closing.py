@@ -1,6 +1,7 @@
 """Where loops close at the ends of their tolerances: formulas, ngspice, samples solved anew."""
 
 import itertools
+import math
 import shutil
 
 import msgspec
@@ -324,3 +325,62 @@ def test_a_tolerance_beyond_reason_is_no_fault(stage, share):
         if worst.low is not None:
             slack = 1e-9 * abs(nominal)
             assert worst.low - slack <= nominal <= worst.high + slack
+
+
+MARGIN = (
+    "VIN in 0 SIN(0 1m 100)\nR1 in n 10k tol=0%\nR2 n out 10k tol=0%\nRX n x 500 tol=0%\n"
+    "CX x 0 {farads} tol={share}%\nXU1 0 n vp vn out FAST"
+)
+RESONANCE = (
+    "VIN in 0 SIN(0 1m 10k)\nR1 n 0 1meg tol=0%\nR2 n out 10k tol=0%\nRX n x {ohms} tol=0%\n"
+    "LX x y 15.915494m tol=0%\nCX y 0 {farads} tol={share}%\nXU1 in n vp vn out FAST"
+)
+QUICK = """
+[[devices]]
+family = "FAST"
+technology = "cmos"
+gain_bandwidth = { typical = 50e6 }
+input_capacitance = { typical = 0.01e-12 }
+output_resistance = { typical = 0.1 }
+names = { 1 = ["FAST"] }
+source = { title = "made for this test" }
+"""
+
+
+@pytest.mark.parametrize("picofarads", [10, 16, 20])
+def test_a_margin_that_turns_round_inside_a_tolerance(stage, picofarads):
+    """A lag between 2.27 and 25 MHz takes most where the loop closes between them.
+
+    The capacitor that does so lies inside its 50 %, and no corner shows it: solved at 41 values.
+    """
+    farads = picofarads * 1e-12
+    solved = [
+        stage(MARGIN.format(farads=farads * (0.5 + k / 40), share=0), QUICK).loop.phase_margin
+        for k in range(41)
+    ]
+    worst = stage(MARGIN.format(farads=farads, share=50), QUICK).loop.phase_margin_worst
+    assert min(solved) < min(solved[0], solved[-1]) - 0.05
+    assert min(solved) - 0.6 < worst.low < min(solved) + 0.05
+    assert worst.high == pytest.approx(max(solved), abs=0.01)
+
+
+@pytest.mark.parametrize("ohms", [500, 1000])
+@pytest.mark.parametrize("detuned", [1.0, 1.1])
+def test_a_noise_gain_with_a_peak_inside_a_tolerance(stage, ohms, detuned):
+    """A series resonance at the inverting input, by hand: 1 + R2 over its resistance at the top.
+
+    At the edge of 40 % it is lowest on the side that the slope at nominal does not point to.
+    """
+    top, henry = 10e3, 15.915494e-3
+    farads = detuned / ((2 * math.pi * top) ** 2 * henry)
+
+    def noise_gain(value):
+        leg = ohms + 1j * (2 * math.pi * top * henry - 1 / (2 * math.pi * top * value))
+        return abs(1 + 10e3 / leg + 10e3 / 1e6)
+
+    loop = stage(RESONANCE.format(farads=farads, share=40, ohms=ohms), QUICK).loop
+    assert loop.noise_gain == pytest.approx(noise_gain(farads), rel=1e-3)
+    ends = [noise_gain(farads * 0.6), noise_gain(farads * 1.4)]
+    assert loop.in_band_worst.low == pytest.approx(min(ends), rel=1e-3)
+    peak = 1 + 10e3 / ohms
+    assert 0.999 * peak < loop.in_band_worst.high < 1.12 * peak

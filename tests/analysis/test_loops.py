@@ -1,5 +1,6 @@
 """Loop sign, noise gain, bandwidth and phase margin against hand calculation."""
 
+import cmath
 import itertools
 import math
 
@@ -294,3 +295,28 @@ def test_nothing_is_taken_behind_a_resistor_or_where_a_load_is_listed(stage, car
     found = stage("VIN in 0 AC 1\n" + cards)
     assert found.loop.least_ohms is None
     assert found.loop.margins.high > 80
+
+
+def test_a_margin_below_nothing_is_told_as_such(stage):
+    """Two sections of 10 kilohm and 100 pF in a row behind the one pole: by hand, past half a turn.
+
+    H = 1 / (1 + 3 x + x^2) with x = s R C, where |GBW / f| |H| is one.
+    """
+    cards = (
+        "VIN in 0 SIN(0 1m 100)\nXU1 in m vp vn out FAST50\nR1 out a 10k\nC1 a 0 100p\n"
+        "R2 a m 10k\nC2 m 0 99.99p"
+    )
+
+    def transmission(hertz):
+        x = 2j * math.pi * hertz * 10e3 * 100e-12
+        return 50e6 / (1j * hertz) / (1 + 3 * x + x**2)
+
+    low, high = 1e5, 1e7
+    while high / low > 1 + 1e-9:
+        middle = math.sqrt(low * high)
+        low, high = (middle, high) if abs(transmission(middle)) > 1 else (low, middle)
+    loop = stage(cards, FAST).loop
+    lag = math.degrees(cmath.phase(transmission(low)))
+    assert lag > 0  # it has turned by more than half
+    assert loop.crossover == pytest.approx(low, rel=1e-3)
+    assert loop.phase_margin == pytest.approx(lag - 180, abs=0.1)
