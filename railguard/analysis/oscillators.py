@@ -150,12 +150,9 @@ def _concerned(
     nets |= {net for a in inner for net in (a.plus, a.minus)}
     for net in nets & ways.held:
         met |= {id(e): e for e in ways.around.get(net, ()) if e.kind in ("V", "battery")}
-    own = {id(a.element) for a in inner}
     bent = {e.designator.partition(" ")[0] for e in met.values() if e.kind in _BENDS}
     return tuple(
-        e
-        for e in elements
-        if id(e) in met or id(e) in own or e.designator.partition(" ")[0] in bent
+        e for e in elements if id(e) in met or e.designator.partition(" ")[0] in bent
     ), inner
 
 

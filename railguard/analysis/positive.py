@@ -149,7 +149,7 @@ def _entry(view: View, quantity: str) -> tuple[str, float, float] | None:
     }
     levels.update((drive.injection, drive.value) for drive in view.solution.prepared.levels)
     found: list[tuple[str, float, float]] = []
-    for tone in answers.tones:
+    for tone in view.tones:
         if tone.tone.name == own or tone.peaks[view.at(quantity)] <= 0:
             continue
         if len(tone.tone.drives) != 1:

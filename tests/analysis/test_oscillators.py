@@ -44,6 +44,13 @@ def test_a_circuit_that_swings_with_an_ideal_amplifier_is_an_oscillator(stage, c
     assert stage(cards).use == "oscillator"
 
 
+def test_a_bridge_that_stands_on_a_reference_is_an_oscillator(stage):
+    """A source that stands still is as good as ground, at either resistor."""
+    cards = WIEN.format(gain="{gain}k").replace("R2 p 0", "R2 p ref").replace("RG n 0", "RG n ref")
+    for gain, use in ((22, "oscillator"), (18, "linear")):
+        assert stage(f"{cards.format(gain=gain)}\nVREF ref 0 1").use == use
+
+
 @pytest.mark.parametrize("cards", [WIEN.format(gain="18k"), PHASE_SHIFT.format(gain="220k")])
 def test_below_the_gain_it_takes_it_is_an_amplifier(stage, cards):
     """A Wien bridge under three and a phase shift under 29 die out."""

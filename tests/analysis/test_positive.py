@@ -184,3 +184,20 @@ def test_a_signal_that_switches_clears_both_thresholds(stage, level, peak, refer
     """By a tenth of the hysteresis, on either side."""
     cards = INVERTING.replace("SIN(0 2", f"SIN({level} {peak}").replace("R1 p 0", "R1 p d")
     assert judged(stage, f"{cards}\nVD d 0 {reference}").switched is switched
+
+
+def test_a_pair_of_followers_before_it_is_no_second_signal(design):
+    """A boosted follower before it: thresholds in volts of its source, a tenth of 13.5 V."""
+    cards = (
+        "VIN in 0 SIN(0 3 100)\nXU1 in e vp vn o TL072\nQ1 vp o e QN\nQ2 vn o e QP\nR1 p e 10k\n"
+        "R2 p out 100k\nXU2 p 0 vp vn out TL072\nRL out 0 1meg\n"
+        ".model QN NPN(BF=100)\n.model QP PNP(BF=60)"
+    )
+    loop = design(cards).stages[1].loop
+    assert (loop.thresholds.low, loop.thresholds.high) == (
+        pytest.approx(-1.35, rel=1e-3), pytest.approx(1.35, rel=1e-3),
+    )  # fmt: skip
+    assert (loop.drive.low, loop.drive.high) == (
+        pytest.approx(-3.0, rel=1e-3), pytest.approx(3.0, rel=1e-3),
+    )  # fmt: skip
+    assert loop.switched
