@@ -288,10 +288,6 @@ def _share_at_minus(view: View) -> float | None:
     return float(passive.dc.adjoint([row])[0, branch].real)
 
 
-DUST = 1e-12
-"""V; a rail nearer to ground than this stands there, but for what arithmetic leaves."""
-
-
 def _supply(view: View, feeds: Mapping[str, Feed], unknown: dict[Part, Unknown]) -> Supply:
     amplifier = view.amplifier
     if not amplifier.has_supply:
@@ -308,8 +304,6 @@ def _supply(view: View, feeds: Mapping[str, Feed], unknown: dict[Part, Unknown])
         feed = feeds.get(net)
         held = net == GROUND or (feed is not None and feed.held)
         level = view.level(quantity) if held else None
-        if level is not None and abs(level) < DUST:
-            level = 0.0
         levels.append(level)
         if not held:
             unknown["supply"] = Unknown(

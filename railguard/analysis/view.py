@@ -11,6 +11,19 @@ from railguard.analysis.stage import Unknown
 from railguard.analysis.unseen import Spoiled
 from railguard.words import Basis
 
+DUST_SHARE = 1e-9
+"""Share of a swing below which one of its ends is zero, but for what arithmetic leaves."""
+DUST_VOLTS = 1e-12
+"""The same for a voltage, whatever it swings by."""
+
+
+def _settled(value: float, quantity: str, span: float = 0.0) -> float:
+    """Return a value; zero where it is that but for arithmetic."""
+    dust = DUST_SHARE * span
+    if quantity != "current":
+        dust = max(dust, DUST_VOLTS)
+    return 0.0 if abs(value) <= dust else value
+
 
 class View:
     """One amplifier's numbers in the solved circuit."""
@@ -35,12 +48,14 @@ class View:
 
     def level(self, quantity: str) -> float:
         """Return its DC level."""
-        return float(self.answers.level[self.at(quantity)])
+        return _settled(float(self.answers.level[self.at(quantity)]), quantity)
 
     def range(self, quantity: str) -> tuple[float, float]:
         """Return its lowest and highest value, nominal."""
         q = self.at(quantity)
-        return float(self.answers.low[q]), float(self.answers.high[q])
+        low, high = float(self.answers.low[q]), float(self.answers.high[q])
+        span = high - low
+        return _settled(low, quantity, span), _settled(high, quantity, span)
 
     def spoil(self, quantity: str) -> Spoiled:
         """Return what the netlist does not tell that moves it."""

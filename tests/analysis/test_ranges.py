@@ -211,3 +211,20 @@ def test_the_quiescent_current_drops_on_what_stands_before_the_pins(stage):
     amps = found.family.supply_current.typical
     assert found.supply.positive == pytest.approx(15 - 100 * amps, rel=1e-4)
     assert found.supply.negative == pytest.approx(-15 + 100 * amps, rel=1e-4)
+
+
+@pytest.mark.parametrize("device", ["LM358", "MCP6001"])
+def test_what_arithmetic_leaves_of_zero_is_zero(design, device):
+    """A shunt's current from nothing on: no end lies below ground, so nothing is beyond it.
+
+    Unequal resistors leave some 1e-17 V there, which a limit of 0 V would take for a breach.
+    """
+    for ohms in ("2.8k", "2.94k", "3.09k", "3.3k", "49.9k"):
+        cards = (
+            f"ISH 0 sh PWL(0 0 1 2 2 0)\nR5 sh 0 25m\nR1 sh p 1k\nR2 n 0 1k\nR3 n out {ohms}\n"
+            f"C3 n out 15n\nXU1 p n vp 0 out {device}"
+        )
+        (found,) = design(cards, supply="VP vp 0 3.3\nC1 vp 0 100n").stages
+        assert found.output.demand.low == 0.0
+        assert found.inputs.low.demand == 0.0
+        assert found.output.demand.high == pytest.approx(0.05 * (1 + float(ohms[:-1])), rel=3e-3)
