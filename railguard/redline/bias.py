@@ -192,7 +192,7 @@ def parked(finding: Finding, scene: Scene) -> Iterator[Candidate]:
     minus = scene.pin(stage, "minus", scene.local(out, stage))
     if plus is None or minus is None:
         return
-    wanted = wanted_level(stage)
+    wanted = wanted_level(stage, scene)
     middle = f", near the {si(wanted, 'V')} in the middle of its range" if wanted else ""
     yield Candidate(
         edits=tuple(sorted((plus, minus, *joined(edits)))),

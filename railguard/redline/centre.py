@@ -86,7 +86,10 @@ def _standing(nets: set[str], scene: Scene) -> Iterator[Element]:
 
 def _set(source: Element, target: float, stage: Stage, scene: Scene) -> Iterator[Candidate]:
     """Give a reference a level, in steps that references come in."""
-    before = source.source.dc if source.source is not None else None
+    before, supply = source.source.dc if source.source is not None else None, stage.supply
+    low, high = supply.negative, supply.positive
+    if low is not None and high is not None and not low <= target <= high:
+        return  # no reference on these rails gives it
     volts = round(target / REFERENCE_STEP) * REFERENCE_STEP
     volts = volts if source.nets[0] != GROUND else -volts
     edit = scene.level(source, volts)

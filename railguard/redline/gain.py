@@ -19,6 +19,8 @@ TRIED_BEFORE = 4
 """Stages before the one that clips whose gain is tried."""
 MOST_RAISED = 30.0
 """Times a resistor at an input may grow; beyond, the gain is one and something else is wrong."""
+AT_AN_END = 0.02
+"""Share of the swing by which the level a gain counts from may lie beyond a limit."""
 LEAST_OHMS = 10.0
 """A resistor below this is a wire, and sets no gain: common practice, no source."""
 
@@ -81,6 +83,9 @@ def _shares(bound: Bound, level: float, reserve: float) -> Iterator[float]:
         if demand is None or limit is None or demand == level:
             continue
         kept = room_kept if bound.upper else -room_kept
+        outside = level - limit if bound.upper else limit - level
+        if 0 <= outside < AT_AN_END * (bound.span or 0.0):
+            continue  # zero of a signal on the rail itself: no gain brings it in, or takes it out
         if (demand > level) == bound.upper:
             yield (limit - kept - level) / (demand - level)
 

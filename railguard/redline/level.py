@@ -22,16 +22,35 @@ class Level(msgspec.Struct, frozen=True):
     words: str = ""
 
 
-def wanted_level(stage: Stage) -> float | None:
-    """Return the middle of what both the inputs and, at a gain of one, the output allow, V."""
-    lows = [v for v in (stage.inputs.available.low, stage.output.available.low) if v is not None]
-    highs = [v for v in (stage.inputs.available.high, stage.output.available.high) if v is not None]
+def wanted_level(stage: Stage, scene: Scene) -> float | None:
+    """Return the middle of what the inputs allow, and the output at what it makes of it, V."""
+    gain = grounded_gain(stage, scene)
+    inner, outer = stage.inputs.available, stage.output.available
+    lows = [v for v in (inner.low, _share(outer.low, gain)) if v is not None]
+    highs = [v for v in (inner.high, _share(outer.high, gain)) if v is not None]
     supply = stage.supply
     if supply.positive is None or supply.negative is None:
         return None
     low = max([supply.negative, *lows])
-    high = min([supply.positive, *highs])
+    high = min([supply.positive / gain, *highs])
     return (low + high) / 2 if high > low else (supply.positive + supply.negative) / 2
+
+
+def _share(volts: float | None, gain: float) -> float | None:
+    return None if volts is None else volts / gain
+
+
+def grounded_gain(stage: Stage, scene: Scene) -> float:
+    """Return what multiplies the level of a non-inverting input: one where no DC leg is grounded.
+
+    With a leg to another potential the level wanted is not multiplied from ground; it is near that
+    potential.
+    """
+    gain, net = stage.loop.noise_gain_dc, stage.inputs.minus.net
+    if not gain or net == stage.output.net:
+        return 1.0
+    legs = [e for e in scene.on(net, "R") if GROUND in e.nets[:2]]
+    return max(gain, 1.0) if legs else 1.0
 
 
 def is_allowed(volts: float, stage: Stage) -> bool:
@@ -51,7 +70,7 @@ def levels(stage: Stage, scene: Scene, after: Element | Stage) -> list[Level]:
     if is_allowed(0.0, stage):
         found.append(Level(GROUND, 0.0))
     found += references(stage, scene)
-    made = divider(stage, scene, after, wanted_level(stage))
+    made = divider(stage, scene, after, wanted_level(stage, scene))
     if made is not None and not (found and found[0].net == GROUND):
         found.append(made)
     return found

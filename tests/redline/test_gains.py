@@ -3,7 +3,7 @@
 import pytest
 
 from railguard.redline import gain
-from railguard.redline.propose import proposals
+from railguard.redline.propose import proposals, redline
 from railguard.redline.scene import Scene
 from railguard.redline.source import of_review
 from railguard.reviewing import review, review_deck
@@ -135,3 +135,36 @@ def test_a_follower_in_a_filter_has_no_gain_to_lower():
     )
     (found,) = [f for f in before.findings if f.rule == "headroom-output"]
     assert found.remedy.startswith("Attenuate its signal to at most ")
+
+
+def test_a_signal_from_zero_to_beyond_the_rail_is_divided():
+    """No gain brings zero up from the rail, so that end is left out; a tenth of a volt is minor."""
+    before = reviewed(
+        "* railguard: signal SENS low=0 high=10 to=10\nJ1 SENS 0 CONN2\nR1 SENS p 100\n"
+        "XU1 p out vp 0 out MCP6021"
+    )
+    found = redline(before)
+    eased = next(p for p in found.proposals if p.finding.rule == "headroom-output")
+    assert eased.what.startswith("Divide the input of U1 by ")
+    assert {f.severity for f in eased.left} == {"minor"}
+    assert not found.held
+
+
+def test_an_input_before_a_gain_gets_a_level_that_the_output_can_show():
+    """Twice 1.25 V are the middle of 5 V; twice the middle itself would be the rail."""
+    before = reviewed(
+        "VIN in 0 SIN(0 0.5 100)\nC3 in p 1u\nR2 n 0 10k\nR3 n out 10k\nXU1 p n vp 0 out MCP6001"
+    )
+    found, after = answer(before, "bias-no-dc-path")
+    assert "a level of 1.2" in found.what
+    assert after.design.stages[0].output.level == pytest.approx(2.5, abs=0.1)
+
+
+def test_no_reference_is_asked_for_beyond_the_rails():
+    """A pump into a load on a single supply: -1.4 V is no level that 5 V make."""
+    before = reviewed(
+        "V1 low 0 2.5\nR1 low n 10k\nR2 n out 10k\nR3 0 p 10k\nR4 p out 10k\nR5 p 0 1k\n"
+        "XU1 p n vp 0 out MCP6002"
+    )
+    assert "headroom-output" in {f.rule for f in before.findings}
+    assert not [p for p in proposals(before) if "V1 = -" in p.what]
