@@ -4,6 +4,7 @@ from railguard.analysis.bound import Bound
 from railguard.analysis.stage import Stage
 from railguard.devices.model import Figure
 from railguard.rules.wording import listed, origin
+from railguard.units import si
 from railguard.words import Basis
 
 
@@ -54,8 +55,10 @@ def phase_basis(stage: Stage) -> str:
         "input capacitance": device.input_capacitance,
     }
     known = [f"{name} {figure_basis(f)}" for name, f in figures.items() if f.best is not None]
-    missing = [name for name, f in figures.items() if f.best is None]
-    return "; ".join([*known, *(f"{name} not listed" for name in missing)])
+    missing = [f"{name} not listed" for name, f in figures.items() if f.best is None]
+    least = stage.loop.least_ohms
+    taken = [] if least is None else [f"at least {si(least, 'Ω')} of output resistance taken"]
+    return "; ".join([*known, *missing, *taken])
 
 
 def why(stage: Stage, part: str) -> str:

@@ -192,3 +192,18 @@ def test_a_common_basis_is_said_once():
     two = Row(file="", designator="", quantity="q", demand_basis="a", guaranteed_basis="b")
     assert basis_of(one) == "netlist"
     assert basis_of(two) == "asked: a; guaranteed: b"
+
+
+def test_the_least_output_resistance_taken_is_named():
+    """The upper bound of a margin rests on it where a capacitor stands at the output."""
+    text = (
+        "level buffer\nVP vp 0 5\nC1 vp 0 100n\nVIN in 0 SIN(2 1 10)\n"
+        "XU1 in out vp 0 out TLV9002\n{load}RL out 0 10k\n"
+    )
+    told = {}
+    for load in ("C2 out 0 100n\n", ""):
+        sheet = rows(review(text.format(load=load), plugins=False))
+        (margin,) = [row for row in sheet if row.quantity == "phase margin"]
+        told[load] = margin.available_basis
+    assert told["C2 out 0 100n\n"].endswith("; at least 10 Ω of output resistance taken")
+    assert "taken" not in told[""]
