@@ -66,14 +66,19 @@ def output_side(
         and supply.negative is not None
         and supply.positive > supply.negative
     ):
+        above, below = _rail_ohms(view, True), _rail_ohms(view, False)
+        # The pins' levels hold what it gives at rest, and its reach counts all of it.
+        rest = amps if current_known else 0.0
+        positive = supply.positive + above * max(rest, 0.0)
+        negative = supply.negative - below * max(-rest, 0.0)
         for upper in (True, False):
             reaches[upper] = output_reach(
                 device,
-                supply.positive,
-                supply.negative,
+                positive,
+                negative,
                 upper,
                 line if upper else lambda volts: -line(volts),
-                _rail_ohms(view, upper),
+                above if upper else below,
             )
     q = view.at("output")
     spread = view.solution.spread

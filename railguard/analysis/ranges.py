@@ -185,7 +185,10 @@ def standing(
     draws: Mapping[str, float],
     held: Mapping[str, Clamp],
 ) -> tuple[Factor, Real]:
-    """Return the factor at DC and the DC solution; the arguments are those of `answer`."""
+    """Return the factor at DC and the DC solution; the arguments are those of `answer`.
+
+    What an output gives at DC comes from its rails: a resistor in a rail's way loses more by it.
+    """
     levels = [(d.injection, complex(d.value)) for d in prepared.levels]
     levels += [(name, complex(clamp.middle)) for name, clamp in held.items()]
     b = network.right_hand_side(levels)
@@ -194,6 +197,15 @@ def standing(
         if row >= 0:
             b[row] -= amps
     dc = factor(network, 0.0)
+    x = dc.forward(b).real
+    if not draws:
+        return dc, x
+    for amplifier in network.amplifiers:
+        branch = network.outputs.get(amplifier.designator, -1)
+        amps = float(x[branch]) if branch >= 0 else 0.0
+        net = amplifier.positive if amps > 0 else amplifier.negative
+        if net in draws and (row := network.row(net)) >= 0:
+            b[row] -= amps
     return dc, dc.forward(b).real
 
 

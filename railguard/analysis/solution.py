@@ -243,12 +243,15 @@ def stated_use(amplifier: Amplifier, settings: Settings) -> Use | None:
 
 
 def _quiescent(amplifiers: tuple[Amplifier, ...], feeds: Mapping[str, Feed]) -> dict[str, float]:
-    """Return the quiescent current each rail gives, A; positive is taken from the net."""
+    """Return the quiescent current each rail gives, A; positive is taken from the net.
+
+    Every rail that something holds is in it: the outputs' currents come from there too.
+    """
     draws: dict[str, float] = {}
     for amplifier in amplifiers:
         device = amplifier.match.device
-        amps = device.supply_current.typical if device is not None else None
-        if not amps or not amplifier.has_supply:
+        amps = (device.supply_current.typical if device is not None else None) or 0.0
+        if not amplifier.has_supply:
             continue
         for net, sign in ((amplifier.positive, 1.0), (amplifier.negative, -1.0)):
             if net != GROUND and net in feeds and feeds[net].held:

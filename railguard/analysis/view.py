@@ -55,6 +55,8 @@ class View:
         q = self.at(quantity)
         low, high = float(self.answers.low[q]), float(self.answers.high[q])
         span = high - low
+        if span <= DUST_SHARE * max(abs(low), abs(high)):
+            low = high = self.level(quantity)  # it stands still
         return _settled(low, quantity, span), _settled(high, quantity, span)
 
     def spoil(self, quantity: str) -> Spoiled:

@@ -128,3 +128,37 @@ def test_a_return_that_carries_no_current_stands_at_ground(design):
     (stage,) = design(cards, supply=supply).stages
     assert stage.supply.negative == 0.0
     assert stage.supply.positive == 5.0
+
+
+@pytest.mark.parametrize(
+    ("volts", "positive", "negative"),
+    [(4.0, 12 - 0.1 - 1.0, -11.9), (-4.0, 11.9, -12 + 0.1 + 1.0), (0.0, 11.9, -11.9)],
+)
+def test_what_an_output_gives_at_rest_comes_through_the_rail(design, volts, positive, negative):
+    """10 mA into 400 ohm, and 1 mA of its own, over 100 ohm in each rail: 1.1 V are lost."""
+    supply = "V1 r1 0 12\nR1 r1 vp 100\nV2 r2 0 -12\nR2 r2 vn 100\nC1 vp 0 1u\nC2 vn 0 1u"
+    cards = f"VIN in 0 {volts}\nXU1 in out vp vn out OPA197\nRL out 0 400"
+    (stage,) = design(cards, supply=supply).stages
+    assert stage.family.supply_current.typical == 1e-3
+    assert stage.supply.positive == pytest.approx(positive, abs=1e-3)
+    assert stage.supply.negative == pytest.approx(negative, abs=1e-3)
+
+
+def test_a_neighbour_s_output_takes_from_the_rail_they_share(design):
+    """What one channel gives at rest is missing to what the other reaches."""
+    supply = "V1 r1 0 12\nR1 r1 vp 100\nC1 vp 0 1u"
+    cards = "VA a 0 {volts}\nXU1 a oa vp 0 oa OPA197\nRA oa 0 400\nVB b 0 6\n"
+    cards += "XU2 b ob vp 0 ob OPA197\nRB ob 0 100k"
+    reached = []
+    for volts in (0, 4):
+        stages = design(cards.format(volts=volts), supply=supply).stages
+        reached.append(next(s for s in stages if s.designator == "XU2").output.available.high)
+    assert reached[0] - reached[1] == pytest.approx(1.0, abs=0.01)
+
+
+def test_a_return_of_its_own_carries_only_what_leaves_it(design):
+    """Load and amplifier return to the same net: over its resistor to ground nothing flows."""
+    cards = "RS lm 0 250\nVIN in lm 2\nXU1 in out v5 lm out OPA197\nRL out lm 1k"
+    (stage,) = design(cards, supply="V1 v5 lm 5\nC1 v5 lm 1u").stages
+    assert stage.supply.negative == pytest.approx(0.0, abs=1e-6)
+    assert stage.supply.positive == pytest.approx(5.0, abs=1e-6)
