@@ -303,6 +303,15 @@ def test_the_offset_told_is_the_amplifiers_alone(stage):
     )
 
 
+@pytest.mark.parametrize("lower", ["V1 mid 0 6", "V1 0 mid -6"])
+def test_both_of_two_stacked_sources_move_a_rail(stage, lower):
+    """Whichever way round the lower one is drawn: 5 % of 12 V off a limit 2 V below them."""
+    cards = "VIN in 0 SIN(6 1 100)\nXU1 in out vp 0 out BARE\nRL out 0 10k"
+    high = stage(cards, BARE, supply=f"V2 vp mid 6\n{lower}\n").output.high
+    assert high.default.limit == pytest.approx(10.0 - 0.6)
+    assert set(high.culprits) == {"V1", "V2"}
+
+
 def test_a_bias_current_into_the_first_net_counts(stage):
     """The order of the cards changes nothing: what a megohm makes of it is in the offset."""
     cards = ["RS p in 1meg", "VIN in 0 1", "XU1 p out vp vn out LM358", "RL out 0 10k"]

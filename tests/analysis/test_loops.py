@@ -320,3 +320,28 @@ def test_a_margin_below_nothing_is_told_as_such(stage):
     assert lag > 0  # it has turned by more than half
     assert loop.crossover == pytest.approx(low, rel=1e-3)
     assert loop.phase_margin == pytest.approx(lag - 180, abs=0.1)
+
+
+def test_a_trigger_in_an_outer_loop_amplifies_nothing(design):
+    """Its output stands at a limit: ten times its gain would turn the other's loop round.
+
+    What is left of the other's feedback is the divider of three equal resistors.
+    """
+    cards = (
+        "VIN in 0 SIN(0 1 100)\nXU1 r 0 vp vn o1 TL072\nRB o1 r 100k\nRA o2 r 10k\nRF o2 n 10k\n"
+        "RI in n 10k\nRX o1 n 10k\nXU2 0 n vp vn o2 TL072"
+    )
+    trigger, amplifier = (s.loop for s in design(cards).stages)
+    assert (trigger.dc, amplifier.dc) == ("positive", "negative")
+    assert amplifier.noise_gain_dc == pytest.approx(3.0, rel=1e-4)
+    # 13.5 V through 100 kilohm against 10 kilohm
+    assert trigger.thresholds.high == pytest.approx(1.35, rel=1e-3)
+
+
+@pytest.mark.parametrize("device", ["XQ9981", "OPAMP"])
+def test_a_device_without_a_figure_closes_its_loop_nowhere_known(stage, device):
+    """However much the network takes, so that a gain of 200,000 alone would fall through one."""
+    cards = f"VIN in 0 SIN(0 1m 100)\nXU1 in m vp vn out {device}\nR1 out m 1meg\nC1 m 0 1u"
+    loop = stage(cards).loop
+    assert (loop.crossover, loop.phase_margin) == (None, None)
+    assert (loop.margins.low, loop.margins.high) == (None, None)
