@@ -146,6 +146,15 @@ def test_a_connector_beside_the_load_leaves_the_load(stage, level):
         assert None not in (side.typical, side.guaranteed)
 
 
+@pytest.mark.parametrize(("hertz", "known"), [(0.2, True), (10, True), (10e3, False)])
+def test_what_is_unseen_behind_a_capacitor_counts_at_the_signal_s_frequency(stage, hertz, known):
+    """1 nF to 1 kilohm and a connector: a thousandth of its current gets through at 160 Hz."""
+    cards = FOLLOWER.replace("2 100)", f"2 {hertz})")
+    found = stage(f"{cards}\nC9 out x 1n\nR9 x 0 1k\nJ9 x 0 CONN_2")
+    assert ("current" not in found.unknown) is known
+    assert "output" not in found.unknown
+
+
 def test_a_capacitor_takes_from_the_swing_as_its_impedance_does(stage):
     """7.96 nF at 10 kHz are 2 kilohm: the swing is the one listed there, however small the tone."""
     farads = 1 / (2 * math.pi * 10e3 * 2e3)
