@@ -51,6 +51,19 @@ def test_junction_by_hand(stage):
     assert found.case.name.endswith("-8")
 
 
+def test_both_channels_heat_their_package(design):
+    """10 V at 5 mA twice, and both quiescent currents; either channel is told the whole."""
+    cards = (
+        "VIN in 0 5\nXU1A in o1 vp vn o1 TL072\nR1 o1 0 1k\nXU1B in o2 vp vn o2 TL072\nR2 o2 0 1k"
+    )
+    first, second = design(cards).stages
+    watts = 2 * (30.0 * first.family.supply_current.best + 10.0 * 5e-3)
+    assert first.package == second.package == "U1"
+    assert first.dissipation == second.dissipation == pytest.approx(watts, rel=1e-3)
+    assert first.junction == pytest.approx(25.0 + watts * first.case.resistance, rel=1e-3)
+    assert first.dissipation_worst.low < watts < first.dissipation_worst.high
+
+
 def test_hottest_ambient_counts(stage):
     """The stated range's upper end."""
     hot = stage(BUFFER.format(device="TL072"), "[conditions]\nambient = [-20, 60]")
