@@ -37,14 +37,12 @@ class Drive(msgspec.Struct, frozen=True):
 
     injection: str
     value: float
-    basis: Basis = "netlist"
 
 
 class Tone(msgspec.Struct, frozen=True, kw_only=True):
     """What moves together: complex amplitudes by injection, at each frequency of a band.
 
     frequencies  hertz; 0 is a slow change
-    net          the net it arrives at, for the report
     wave, mean   a time function that is no sine, and the level it is superposed on: followed
                  through time, the drives then serve for sensitivities only
     """
@@ -52,7 +50,6 @@ class Tone(msgspec.Struct, frozen=True, kw_only=True):
     name: str
     drives: tuple[tuple[str, complex], ...]
     frequencies: tuple[float, ...]
-    net: str = ""
     basis: Basis = "netlist"
     wave: Wave | None = None
     mean: float = 0.0
@@ -115,7 +112,7 @@ class _Builder:
         self.tones: list[Tone] = []
         self.unstated: list[Unstated] = []
         self.entries: list[Entry] = []
-        self.coherent: dict[float, list[tuple[str, complex, str]]] = defaultdict(list)
+        self.coherent: dict[float, list[tuple[str, complex]]] = defaultdict(list)
         self.missing: list[str] = []
 
     def holder(self, net: str, to: str = GROUND) -> tuple[str, float] | None:
@@ -168,10 +165,9 @@ def prepare(elements: tuple[Element, ...], settings: Settings, feeds: dict[str, 
     for frequency, drives in build.coherent.items():
         build.tones.append(
             Tone(
-                name=" and ".join(name for name, _, _ in drives),
-                drives=tuple((name, amplitude) for name, amplitude, _ in drives),
+                name=" and ".join(name for name, _ in drives),
+                drives=tuple(drives),
                 frequencies=(frequency,),
-                net=drives[0][2],
             )
         )
     return Prepared(
@@ -197,11 +193,11 @@ def _inputs(entries: list[Entry]) -> tuple[Entry, ...]:
 def _hold_rails(build: _Builder, settings: Settings, feeds: dict[str, Feed]) -> set[str]:
     """Give every stated or named net a source; return the deck sources that are overruled."""
     overruled = set()
-    levels = {net: (level.volts, "user") for net, level in settings.nets.items()}
+    levels = {net: level.volts for net, level in settings.nets.items()}
     for feed in feeds.values():
         if feed.level is not None and feed.at not in levels:
-            levels[feed.at] = (feed.level, feed.basis)
-    for net, (volts, basis) in levels.items():
+            levels[feed.at] = feed.level
+    for net, volts in levels.items():
         if net not in build.nets:
             build.missing.append(f"net {net}")
             continue
@@ -209,9 +205,7 @@ def _hold_rails(build: _Builder, settings: Settings, feeds: dict[str, Feed]) -> 
         if held is None:
             held = build.add("V", f"rail {net}", (net, GROUND), None), 1.0
         overruled.add(held[0])
-        build.levels[held[0]] = Drive(
-            held[0], held[1] * volts, "user" if basis == "user" else "netlist"
-        )
+        build.levels[held[0]] = Drive(held[0], held[1] * volts)
     return overruled
 
 
@@ -241,12 +235,11 @@ def _add_signals(build: _Builder, settings: Settings) -> set[str]:
         for name, level in levels:
             before = build.levels.get(name)
             total = level + (before.value if before else 0.0)
-            build.levels[name] = Drive(name, total, "user")
+            build.levels[name] = Drive(name, total)
         tone = Tone(
             name=f"signal {signal.name}",
             drives=tuple((name, factor * half) for name, factor in drives),
             frequencies=band(signal.start, signal.stop),
-            net=nets[0],
             basis="user",
         )
         groups[signal.group or f"#{number}"].append(tone)
@@ -298,7 +291,6 @@ def _together(tones: list[Tone]) -> Tone:
         name=" and ".join(tone.name for tone in tones),
         drives=tuple(drive for tone in tones for drive in tone.drives),
         frequencies=tuple(frequencies),
-        net=tones[0].net,
         basis="user",
     )
 
@@ -325,13 +317,12 @@ def _deck_source(build: _Builder, element: Element, source: Source) -> None:
                     name=name,
                     drives=((name, amplitude),),
                     frequencies=(frequency,),
-                    net=net,
                     wave=source.wave,
                     mean=level,
                 )
             )
         else:
-            build.coherent[frequency].append((name, amplitude, net))
+            build.coherent[frequency].append((name, amplitude))
     probes = source.ac is not None and source.ac[0] != 0
     if probes and not tones and not level:
         build.entries.append(Entry(2, net, ((name, 1.0),), level, _UNITS[element.kind]))

@@ -1,5 +1,7 @@
 """Stated signals: between two nets, as currents, in groups."""
 
+import math
+
 import pytest
 
 INA = """
@@ -54,6 +56,88 @@ def test_signals_of_one_group_happen_at_once(stage):
     together = stage(DIFFERENCE, text.format(g=', group = "line"'))
     assert apart.output.demand.high == pytest.approx(2.0, rel=1e-3)
     assert together.output.demand.high == pytest.approx(0.0, abs=1e-3)
+
+
+FOLLOWER = "XU1 in out vp vn out TL072"
+
+
+@pytest.mark.parametrize("source", ["VIN in 0 0", "VIN 0 in 0", "J1 in", "BT1 0 in 9V"])
+def test_a_signal_moves_its_net_whatever_holds_it(stage, source):
+    """A source of the deck either way round, a battery, or one that is made for it."""
+    found = stage(
+        f"{source}\n{FOLLOWER}\nRL out 0 2k", '[signals]\n"in" = { low = 1, high = 3, to = 100 }'
+    )
+    assert found.output.demand.low == pytest.approx(1.0, rel=1e-4)
+    assert found.output.demand.high == pytest.approx(3.0, rel=1e-4)
+
+
+@pytest.mark.parametrize(("card", "volts"), [("BT1 in 0 3V", 3.0), ("BT1 0 in 3V", -3.0)])
+def test_a_battery_is_a_level(stage, card, volts):
+    """As its value says, its first pin positive."""
+    assert stage(f"{card}\n{FOLLOWER}\nRL out 0 2k").output.level == pytest.approx(volts, rel=1e-4)
+
+
+def test_a_stated_load_is_one_of_the_circuit(stage):
+    """2 kilohm and a nanofarad at 10 kHz: 0.5 mA and 63 uA at a right angle."""
+    settings = '[loads]\n"out" = { ohms = 2e3, farads = 1e-9 }'
+    current = stage(f"VIN in 0 SIN(0 1 10k)\n{FOLLOWER}", settings).current
+    assert (current.load, current.load_capacitance) == (pytest.approx(2e3), 1e-9)
+    assert current.demand_source == pytest.approx(math.hypot(0.5e-3, 2e-5 * math.pi), rel=2e-3)
+
+
+def test_what_the_user_states_of_nets_that_are_not_there_is_told(design):
+    """Each by its sort; the rest of it counts."""
+    settings = (
+        '[signals]\n"nowhere" = { low = 1, high = 3, to = 100 }\n[loads]\n"gone" = { ohms = 1 }\n'
+        '[nets]\n"void" = { volts = 1 }'
+    )
+    remarks = [r.message for r in design(f"VIN in 0 1\n{FOLLOWER}", settings).remarks]
+    assert (
+        "railguard.toml states what this deck does not have: load gone, net void, signal nowhere."
+        in remarks
+    )
+
+
+def test_half_of_a_source_s_resistance_is_at_either_end(stage):
+    """1 kilohm between the inputs of a difference of 9.5 kilohm each: 10 kilohm, so a gain of one.
+
+    Both ends at 2.5 V: a volt of signal is a volt at the output, less for any other share.
+    """
+    cards = "R1 a n 9.5k\nR2 n out 10k\nR3 b p 9.5k\nR4 p 0 10k\nXU1 p n vp vn out OPAMP"
+    settings = (
+        '[signals]\n"s" = { between = ["b", "a"], peak = 1, common = 2.5, ohms = 1000, to = 20 }'
+    )
+    output = stage(cards, settings).output
+    assert output.demand.high == pytest.approx(1.0, rel=1e-4)
+    assert output.level == pytest.approx(0.0, abs=1e-3)
+    # one that stands off its middle moves the level as well
+    output = stage(cards, settings.replace("peak = 1", "low = 0, high = 2")).output
+    assert output.level == pytest.approx(1.0, rel=1e-4)
+    assert output.demand.low == pytest.approx(0.0, abs=1e-3)
+
+
+def test_a_carrier_that_is_modulated_counts_at_its_highest_frequency(stage):
+    """10 kHz, and five times 1 kHz of deviation: 15 kHz of 1 V round 0.5 V."""
+    output = stage(f"VIN in 0 SFFM(0.5 1 10k 5 1k)\n{FOLLOWER}\nRL out 0 2k").output
+    assert output.frequency == pytest.approx(15e3)
+    assert (output.demand.low, output.demand.high) == (
+        pytest.approx(-0.5, rel=1e-3), pytest.approx(1.5, rel=1e-3),
+    )  # fmt: skip
+    assert output.slew == pytest.approx(2 * math.pi * 15e3, rel=3e-3)
+
+
+def test_a_reference_beside_a_probe_is_no_signal(stage):
+    """The gain is that from the probe alone."""
+    cards = "VIN in 0 AC 1\nVR ref 0 1\nR1 in n 10k\nR2 n out 100k\nXU1 ref n vp vn out TL072"
+    found = stage(cards)
+    assert found.gain == (("in", pytest.approx(-10.0, rel=1e-3)),)
+
+
+def test_a_battery_without_a_value_says_what_to_state(stage):
+    """Its net, as a level or as a signal."""
+    unknown = stage(f"BT1 in 0 CR2032\n{FOLLOWER}\nRL out 0 2k").unknown["output"]
+    assert unknown.why == "BT1 states no value"
+    assert unknown.add == '[nets] or [signals] "in"'
 
 
 def test_a_band_keeps_its_worst_point_with_its_frequency(stage):
