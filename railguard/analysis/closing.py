@@ -258,7 +258,10 @@ def _in_band(loop: Transmission) -> InBand:
         moved = loop.moved(shares)
         sums = np.array(
             [
-                max(sign * float(reached.real - value) + inside(start, sign * end, share), 0.0)
+                max(
+                    sign * float(reached.real - value) + inside(start, sign * end, share),
+                    inside(-sign * end, -start, share),  # the same from nominal's side
+                )
                 for sign, reached, start, end, share in zip(
                     (1.0, -1.0) * 2, moved.value, pulls, moved.gradient.real, shares, strict=True
                 )
