@@ -114,6 +114,7 @@ def test_a_supply_nobody_states_leaves_the_demand(stage):
     found = stage(FOLLOWER, supply="VP vp 0 15\nJ1 vn 0 CONN\n")
     assert (found.output.high.demand, found.output.low.demand) == near(3.0, -1.0)
     assert (found.output.high.typical, found.output.low.absolute) == (None, None)
+    assert (found.output.high.upper, found.output.low.upper) == (True, False)
     assert "supply" in found.unknown
 
 
@@ -282,6 +283,22 @@ def test_a_pin_at_ground_loses_nothing(stage):
     cards = cards.replace("RL out 0", "VM mid 0 15\nRL out mid")
     output = stage(cards, supply="VP vp 0 30\n").output
     assert (output.available.low, output.available.high) == near(3.0, 27.0)
+
+
+BOTH = "VP rp 0 15\nRP rp vp 100\nVN rn 0 -15\nRN rn vn 100\n"
+
+
+@pytest.mark.parametrize("level", [5, -5])
+@pytest.mark.parametrize("more", ["", "\nJ1 out 0 CONN_2"])
+def test_what_flows_at_rest_is_lost_once_on_either_side(stage, level, more):
+    """2.5 mA through 100 ohm: the swing is that of the same stage at rest at ground."""
+    found = stage(FOLLOWER.replace("SIN(1 2", f"SIN({level} 0.1") + more, supply=BOTH).output
+    still = stage(FOLLOWER.replace("SIN(1 2", "SIN(0 0.1"), supply=BOTH).output
+    assert (found.available.low, found.available.high) == (
+        pytest.approx(still.available.low, abs=1e-3),
+        pytest.approx(still.available.high, abs=1e-3),
+    )
+    assert still.available.high == pytest.approx(-still.available.low)
 
 
 def test_a_device_nobody_knows_has_practice_and_no_errors(stage):
