@@ -264,6 +264,18 @@ def test_a_level_that_rises_in_minutes_has_a_slope(stage):
     assert (standing.slew, standing.slew_worst.low, standing.slew_worst.high) == (None,) * 3
 
 
+def test_a_signal_that_does_not_arrive_leaves_the_slope(design):
+    """Two followers with a resistor between their outputs: each has its own, with its ends."""
+    cards = (
+        "VA a 0 SIN(0 1 100)\nVB b 0 SIN(0 1 150)\nXU1 a out vp vn out TL072\n"
+        "XU2 b o2 vp vn o2 TL072\nR1 out o2 10k"
+    )
+    for found, hertz in zip(design(cards).stages, (100, 150), strict=True):
+        slope = pytest.approx(2 * math.pi * hertz, rel=1e-4)
+        assert found.output.slew == found.output.slew_worst.low == slope
+        assert found.output.slew_worst.high == slope
+
+
 def test_a_resistor_before_the_pin_takes_from_the_swing(stage):
     """100 ohm: 0.14 V for its own 1.4 mA, then 100 ohm in series with 2 kilohm.
 
