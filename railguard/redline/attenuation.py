@@ -82,7 +82,10 @@ def _divided(stage: Stage, to: str, share: float, shunt: float, scene: Scene) ->
 
 
 def divided_entry(finding: Finding, scene: Scene) -> Iterator[Candidate]:
-    """Divide the signal where it enters a filter's network, the filter left as it is."""
+    """Divide the signal where it enters a filter's network, the filter left as it is.
+
+    The gain of such a filter sets its quality too, so this comes before a smaller one.
+    """
     stage = scene.stage(finding)
     if stage is None or not own_network_at_filter(stage, scene):
         return
@@ -90,7 +93,11 @@ def divided_entry(finding: Finding, scene: Scene) -> Iterator[Candidate]:
     if entry is None:
         return
     element, net = entry
-    for to in (GROUND, *(level.net for level in references(stage, scene))):
+    levels = sorted(
+        (abs(volts - (stage.inputs.plus.level or 0.0)), to)
+        for to, volts in ((GROUND, 0.0), *((r.net, r.volts) for r in references(stage, scene)))
+    )
+    for _, to in levels:  # the nearest to where the signal rests moves its level least
         for step in STEPS:
             for share in shares_that_fit(finding, stage, scene):
                 made = _entered(element, net, to, share * step, scene)

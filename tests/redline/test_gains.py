@@ -114,6 +114,19 @@ def test_a_signal_is_divided_where_it_enters_a_filter(cards, entry):
     assert now.output.demand.high - now.output.level < 2.5
 
 
+def test_the_gain_that_sets_a_filter_s_quality_is_left_alone():
+    """Equal capacitors: Q = 1 / (3 - K), so a smaller gain would be another filter."""
+    before = reviewed(
+        "VIN in 0 SIN(2.5 3 10)\nR1 in a 15.8k\nR2 a p 15.8k\nC3 a out 100n\nC4 p 0 100n\n"
+        "R3 ref n 10k\nR4 n out 5.9k\nXU1 p n vp 0 out MCP6002"
+    )
+    found, after = answer(before)
+    assert found.what.startswith("R1 = ")
+    assert found.what.endswith(" from a to ref.")
+    values = {e.designator: e.value for e in after.design.circuit.elements}
+    assert (values["R3"], values["R4"]) == (10e3, 5.9e3)
+
+
 def test_no_resistor_becomes_a_wire():
     """A gain of one is no value of R2: what is proposed for it is a resistor that can be bought."""
     before = reviewed(
