@@ -352,3 +352,14 @@ def test_a_transistor_that_divides_is_no_such_case(feedback):
     """One wired as a diode, and one that only stands near."""
     (stage_,) = logarithmic(feedback).design.stages
     assert amplifying(stage_, logarithmic(feedback).design) is None
+
+
+@pytest.mark.parametrize("device", ["AD847", "LT1357", "LM8261"])
+def test_a_device_made_for_any_load_is_taken_at_its_word(device):
+    """No least output resistance is held against it."""
+    text = (
+        "buffer before a cable\nVP vp 0 12\nVN vn 0 -12\nC1 vp 0 100n\nC2 vn 0 100n\n"
+        f"VIN in 0 SIN(0 1 1k)\nXU1 in out vp vn out {device}\nCL out 0 100n\nRL out 0 10k\n"
+    )
+    found = review(text, plugins=False).designs[0].findings
+    assert not [f for f in found if f.family == "stability"]
