@@ -1,5 +1,7 @@
 """One amplifier's numbers in the solved circuit, and why some of them are not known."""
 
+from functools import cached_property
+
 from railguard.analysis.bound import Range
 from railguard.analysis.bounds import Exact
 from railguard.analysis.equations import Real
@@ -9,12 +11,17 @@ from railguard.analysis.sampling import evaluate, exact_corners
 from railguard.analysis.solution import Solution
 from railguard.analysis.stage import Unknown
 from railguard.analysis.unseen import Spoiled
+from railguard.units import si
 from railguard.words import Basis
 
 DUST_SHARE = 1e-9
 """Share of a swing below which one of its ends is zero, but for what arithmetic leaves."""
 DUST_VOLTS = 1e-12
 """The same for a voltage, whatever it swings by."""
+
+
+DRIFT_SHARE = 0.02
+"""Share of the supply that the lower rail may move by with the signal and still stand."""
 
 
 def _settled(value: float, quantity: str, span: float = 0.0) -> float:
@@ -66,9 +73,24 @@ class View:
     def known(self, quantity: str) -> bool:
         """A quantity that something unseen moves at DC has no number.
 
-        A small-signal probe leaves the deck's own DC level, which is stated.
+        A small-signal probe leaves the deck's own DC level, which is stated. Where the signal moves
+        the rails, no voltage has a number that could be held against them.
         """
+        if quantity != "current" and self.drift:
+            return False
         return all(thing.sort == "signal" for thing in self.spoil(quantity).dc)
+
+    @cached_property
+    def drift(self) -> float:
+        """Return how far the signal moves the negative rail, V; 0: as good as not.
+
+        A positive rail that moves alone is a supply that comes and goes, as a battery's.
+        """
+        if not self.amplifier.has_supply:
+            return 0.0
+        low, high = self.range("negative")
+        total = self.level("positive") - self.level("negative")
+        return high - low if high - low > DRIFT_SHARE * abs(total) else 0.0
 
     def basis(self, quantity: str) -> Basis:
         """Return where its range comes from: the user's signals, the deck or an assumed gain."""
@@ -131,6 +153,12 @@ class View:
 
     def why(self, quantity: str) -> Unknown | None:
         """Return why it is not fully known, or None."""
+        if quantity != "current" and self.drift:
+            return Unknown(
+                f"the signal moves its negative rail by {si(self.drift, 'V')}, and only one that "
+                "stands still is followed",
+                "the same circuit with that rail as ground, node 0",
+            )
         things = [*self.spoil(quantity).dc, *self.spoil(quantity).ac]
         if not things:
             return None

@@ -162,3 +162,42 @@ def test_a_return_of_its_own_carries_only_what_leaves_it(design):
     (stage,) = design(cards, supply="V1 v5 lm 5\nC1 v5 lm 1u").stages
     assert stage.supply.negative == pytest.approx(0.0, abs=1e-6)
     assert stage.supply.positive == pytest.approx(5.0, abs=1e-6)
+
+
+TWO_WIRE = """VLOOP lp 0 24
+RL lm 0 250
+D1 lp vin DX
+V1 v5 com 5
+C1 v5 com 100n
+VSET set com PWL(0 {low} 10 2.0)
+R1 set p 100k
+R2 p lm 4.99k
+XU1 p com v5 com g OPA333
+Q1 vin g e QN
+RE e com 100
+RS com lm 50
+C3 g com 1n
+.model QN NPN(BF=200)
+.model DX D(IS=1e-8)"""
+
+
+@pytest.mark.parametrize(("low", "moves"), [(0.4, True), (1.9, False)])
+def test_rails_that_the_signal_moves_are_not_taken_for_standing(design, low, moves):
+    """The return of a two-wire transmitter rides on its loop's current: so do its inputs.
+
+    Held against a level that stood still they lay beyond it.
+    """
+    (stage,) = design(TWO_WIRE.format(low=low), supply="").stages
+    assert ("input" in stage.unknown) == moves
+    assert (stage.inputs.low.demand is None) == moves
+    assert (stage.output.demand.low is None) == moves
+    if moves:
+        assert "the signal moves its negative rail by " in stage.unknown["input"].why
+
+
+def test_a_battery_that_comes_and_goes_is_a_supply(design):
+    """Its lower end stands still."""
+    cards = "VIN in 0 SIN(2 1 10)\nXU1 in out vp 0 out MCP6002\nRL out 0 10k"
+    (stage,) = design(cards, supply="VB vp 0 PWL(0 4.5 10 5.5 20 4.5)\nC1 vp 0 100n").stages
+    assert "input" not in stage.unknown
+    assert stage.inputs.low.demand == pytest.approx(1.0, abs=1e-6)
