@@ -68,7 +68,7 @@ def _settled(part: Part, chosen: Sequence[Carried]) -> dict[Carried, Line]:
     for _ in range(STEPS):
         solvable = with_lines(part, lines)
         network = solvable.network
-        x = standing(network, solvable.prepared, part.draws, solvable.held)[1]
+        x = standing(network, solvable.prepared, part.draws, solvable.held).x
         moved = {}
         for one, line in lines.items():
             amps = total(current(one, line, network), x).real

@@ -68,8 +68,9 @@ def output_side(
     ):
         above, below = _rail_ohms(view, True), _rail_ohms(view, False)
         # The pins' levels hold what it gives at rest, and its reach counts all of it.
-        positive = supply.positive + above * max(amps, 0.0)
-        negative = supply.negative - below * max(-amps, 0.0)
+        rest = amps if amplifier.designator in view.answers.drawn else 0.0
+        positive = supply.positive + above * max(rest, 0.0)
+        negative = supply.negative - below * max(-rest, 0.0)
         for upper in (True, False):
             reaches[upper] = output_reach(
                 device,

@@ -66,12 +66,21 @@ class ToneAnswer(msgspec.Struct, frozen=True):
     steepest: tuple[Worst, ...]
 
 
+class Standing(msgspec.Struct, frozen=True):
+    """An operating point: the factor at DC, the solution, and whose outputs load their rails."""
+
+    factor: Factor
+    x: Real
+    drawn: frozenset[str] = frozenset()
+
+
 class Answers(msgspec.Struct, frozen=True, kw_only=True):
     """The solved circuit.
 
     rows    row of each quantity in x; -1 where there is none. Shape (amplifiers * 6,)
     x       DC solution, shape (unknowns,)
     level   DC value of each quantity; high, low: its range; slew: its steepest slope per second
+    drawn   amplifiers whose output's current at rest is taken from their rails in `x`
     """
 
     network: Network
@@ -84,6 +93,7 @@ class Answers(msgspec.Struct, frozen=True, kw_only=True):
     low: Real
     slew: Real
     tones: tuple[ToneAnswer, ...]
+    drawn: frozenset[str] = frozenset()
 
     def at(self, amplifier: int, quantity: str) -> int:
         """Return the index of one amplifier's quantity."""
@@ -125,7 +135,8 @@ def answer(
     Raises  SolveError
     """
     rows = quantity_rows(network, amplifiers)
-    dc, x = standing(network, prepared, draws, held)
+    stands = standing(network, prepared, draws, held)
+    dc, x = stands.factor, stands.x
     level = picked(x, rows)
     tones = [*prepared.tones]
     for name, clamp in held.items():
@@ -145,6 +156,7 @@ def answer(
         low=level - down,
         slew=slew,
         tones=answers,
+        drawn=stands.drawn,
     )
 
 
@@ -175,8 +187,8 @@ def standing_levels(
     draws: Mapping[str, float],
 ) -> Real:
     """Return the DC value of every quantity, shape (amplifiers * 6,); as `answer`, no tones."""
-    _, x = standing(network, prepared, draws, {})
-    return picked(x, quantity_rows(network, amplifiers))
+    stands = standing(network, prepared, draws, {})
+    return picked(stands.x, quantity_rows(network, amplifiers))
 
 
 def standing(
@@ -184,8 +196,8 @@ def standing(
     prepared: Prepared,
     draws: Mapping[str, float],
     held: Mapping[str, Clamp],
-) -> tuple[Factor, Real]:
-    """Return the factor at DC and the DC solution; the arguments are those of `answer`.
+) -> Standing:
+    """Return the operating point; the arguments are those of `answer`.
 
     What an output gives at DC comes from its rails: a resistor in a rail's way loses more by it.
     """
@@ -199,14 +211,34 @@ def standing(
     dc = factor(network, 0.0)
     x = dc.forward(b).real
     if not draws:
-        return dc, x
+        return Standing(dc, x)
+    given = {}
     for amplifier in network.amplifiers:
         branch = network.outputs.get(amplifier.designator, -1)
         amps = float(x[branch]) if branch >= 0 else 0.0
         net = amplifier.positive if amps > 0 else amplifier.negative
-        if net in draws and (row := network.row(net)) >= 0:
-            b[row] -= amps
-    return dc, dc.forward(b).real
+        if net in draws and network.row(net) >= 0:
+            given[amplifier.designator] = network.row(net), network.row(amplifier.output), amps
+    loaded = dc.forward(_less(b, given)).real
+    # No output gives what would take its pin past itself: it is at its limit, and no one's level.
+    able = {name: one for name, one in given.items() if _passes(loaded, *one)}
+    if len(able) < len(given):
+        loaded = dc.forward(_less(b, able)).real
+    return Standing(dc, loaded, frozenset(able))
+
+
+def _less(b: Complex, given: Mapping[str, tuple[int, int, float]]) -> Complex:
+    """Return a right-hand side with what outputs give taken from their pins."""
+    less = b.copy()
+    for pin, _, amps in given.values():
+        less[pin] -= amps
+    return less
+
+
+def _passes(x: Real, pin: int, out: int, amps: float) -> bool:
+    """Tell whether a supply pin still stands beyond the output it feeds."""
+    level = float(x[out]) if out >= 0 else 0.0
+    return bool(x[pin] >= level if amps > 0 else x[pin] <= level)
 
 
 def picked(x: Real, rows: Index) -> Real:

@@ -144,6 +144,20 @@ def test_what_an_output_gives_at_rest_comes_through_the_rail(design, volts, posi
     assert stage.supply.negative == pytest.approx(negative, abs=1e-3)
 
 
+def test_a_rail_too_weak_for_its_output_is_not_turned_round(design):
+    """47 kohm before 17 uA and a load of 0.12 mA: 5.7 V would be lost of 5 V.
+
+    The output clips long before; what stands at the pin then nobody can say, and it is not below
+    ground. The level that its own current leaves is given, and the drop is told.
+    """
+    supply = "V1 r1 0 5\nR1 r1 vp 47k\nC1 vp 0 1u"
+    cards = "VIN in 0 2.5\nXU1 in out vp 0 out OPA333\nRL out 0 20k"
+    (stage,) = design(cards, supply=supply).stages
+    own = stage.family.supply_current.typical
+    assert stage.supply.positive == pytest.approx(5 - 47e3 * own, abs=1e-3)
+    assert stage.output.available.high < 2.5
+
+
 def test_a_neighbour_s_output_takes_from_the_rail_they_share(design):
     """What one channel gives at rest is missing to what the other reaches."""
     supply = "V1 r1 0 12\nR1 r1 vp 100\nC1 vp 0 1u"
