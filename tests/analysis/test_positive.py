@@ -173,6 +173,7 @@ def test_a_wire_back_to_the_input_is_a_path_without_a_capacitor(stage):
         (0, 1.2, 0, True),
         (0, 1.1, 0, False),
         (0.5, 1.2, 0, False),
+        (0.4, 1.2, 0, False),  # -0.8 V
         (-0.5, 1.2, 0, False),
         # the same round ten elevenths of the reference
         (30 / 11, 1.2, 3, True),
