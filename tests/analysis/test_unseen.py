@@ -37,6 +37,12 @@ def test_a_diode_that_conducts_bends_what_rests_on_it(stage, sine, diode, conduc
     assert why == (expected if conducts else {})
 
 
+def test_ground_stands_at_nothing_whatever_current_flows(stage):
+    """2 A into half an ohm are no volts at the anode of a diode from ground."""
+    cards = f"VIN in 0 SIN(1 0.1 100)\n{FOLLOWER}\nD1 0 p DX\n.model DX D"
+    assert "output" not in stage(cards.replace("RL out 0 10k", "RL out 0 0.5")).unknown
+
+
 @pytest.mark.parametrize("card", ["M1 out g 0 0 MX", "Q1 out g 0 QX", "J1 out g 0 JX"])
 def test_a_transistor_that_is_not_followed_takes_what_nobody_knows(stage, card):
     """At the output: the current is open, the range is not."""
