@@ -154,11 +154,7 @@ class Network:
 
     def row(self, net: str) -> int:
         """Return the row of a net's voltage; -1 for ground or a net nobody is on."""
-        return -1 if net == GROUND else self.rows.get(net, -1)
-
-    def has(self, net: str) -> bool:
-        """Tell whether a net exists."""
-        return net == GROUND or net in self.rows
+        return self.rows.get(net, -1)
 
     def right_hand_side(self, drives: Iterable[tuple[str, complex]]) -> Complex:
         """Return b for some (injection, volts or amperes), shape (unknowns,)."""

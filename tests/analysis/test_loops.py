@@ -345,3 +345,13 @@ def test_a_device_without_a_figure_closes_its_loop_nowhere_known(stage, device):
     loop = stage(cards).loop
     assert (loop.crossover, loop.phase_margin) == (None, None)
     assert (loop.margins.low, loop.margins.high) == (None, None)
+
+
+def test_the_capacitance_of_an_input_counts_at_the_first_net_too(stage):
+    """10 pF of its own at the input of 100 kilohm: the order of the cards changes nothing."""
+    own = FAST.replace("0.01e-12", "10e-12")
+    cards = ["RF n out 100k", "CF n out 1.1p", "IPD 0 n SIN(0 1u 1k)", "XU1 0 n vp vn out FAST50"]
+    first, last = (stage("\n".join(cards[::way]), own).loop for way in (1, -1))
+    assert first.phase_margin == pytest.approx(last.phase_margin, abs=1e-6)
+    # without it the loop would close at nearly 50 MHz with all of its margin
+    assert first.noise_gain_crossover == pytest.approx(1 + 10 / 1.1, rel=0.05)

@@ -91,3 +91,32 @@ def test_the_largest_gain_is_a_magnitude_with_its_ends_in_order():
     assert _largest(gains) == (2.0, Range(1.8, 2.3))
     assert _largest(gains[:1]) == (1.0, Range(0.9, 1.1))
     assert _largest([]) == (0.0, Range())
+
+
+def test_a_controlled_source_is_an_amplifier_of_its_own_gain(design):
+    """100,000 behind a divider of ten: 10 / (1 + 1e-4), and it stands in the equations once."""
+    cards = (
+        "VIN in 0 SIN(0 1 100)\nE1 out 0 in n 1e5\nR1 n 0 1k\nR2 n out 9k\n"
+        "XU1 out o2 vp vn o2 OPAMP\nRL o2 0 10k"
+    )
+    first, second = design(cards).stages
+    assert first.designator == "E1"
+    assert first.output.demand.high == pytest.approx(10 / (1 + 1e-4), rel=1e-6)
+    assert second.output.demand.high == pytest.approx(10 / (1 + 1e-4), rel=1e-4)
+
+
+def test_a_deck_that_is_all_ground_has_a_stage_of_which_nothing_is_known(stage):
+    """No unknown at all is no reason to stop."""
+    found = stage("XU1 0 0 0 0 0 TL072\nR1 0 0 1k", supply="")
+    assert found.unknown["loop"].why == "the output of XU1 is tied to 0, which something else holds"
+    assert (found.output.demand.high, found.current.demand_source) == (None, None)
+
+
+@pytest.mark.parametrize("card", ["G1 out 0 VALUE={V(in)*1m}", "B1 out 0 I=V(in)*1m"])
+def test_an_expression_is_not_worked_out(stage, card):
+    """What it takes of the output is open; the volts are the follower's."""
+    found = stage(f"{FOLLOWER}\n{card}")
+    name = card.split()[0]
+    assert f"{name} is an expression" in found.unknown["current"].why
+    assert found.output.demand.high == pytest.approx(3.0, rel=1e-4)
+    assert "output" not in found.unknown
