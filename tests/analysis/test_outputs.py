@@ -274,6 +274,7 @@ def test_a_signal_that_does_not_arrive_leaves_the_slope(design):
         slope = pytest.approx(2 * math.pi * hertz, rel=1e-4)
         assert found.output.slew == found.output.slew_worst.low == slope
         assert found.output.slew_worst.high == slope
+        assert found.loop.band == hertz
 
 
 def test_a_resistor_before_the_pin_takes_from_the_swing(stage):
