@@ -2,8 +2,15 @@
 
 import pytest
 
+from railguard.analysis.recognise import keeps_closed, recognise
+from railguard.analysis.supplies import Feed, feeds, supply_nets
+from railguard.circuit.flatten import flatten
 from railguard.circuit.rails import level_from_name
+from railguard.deck.files import deck_from_text
+from railguard.devices import catalogue
 from railguard.reviewing import review
+from railguard.settings.file import parse
+from railguard.settings.model import Settings
 
 FOLLOWER = "VIN in 0 SIN(2 1 1k)\nXU1 in out vcc 0 out MCP6002\n"
 
@@ -215,3 +222,62 @@ def test_a_battery_that_comes_and_goes_is_a_supply(design):
     (stage,) = design(cards, supply="VB vp 0 PWL(0 4.5 10 5.5 20 4.5)\nC1 vp 0 100n").stages
     assert "input" not in stage.unknown
     assert stage.inputs.low.demand == pytest.approx(1.0, abs=1e-6)
+
+
+def fed(cards, settings="", net="vp"):
+    """Return what feeds one supply net of a follower on it and ground."""
+    stated = parse(settings, "railguard.toml")
+    devices = catalogue.load()
+    text = f"t\n{cards}\nVIN in 0 1\nXU1 in o {net} 0 o MCP6002\n.end\n"
+    circuit = flatten(deck_from_text(text), keeps_closed(devices))
+    amplifiers = recognise(circuit, devices, stated).amplifiers
+    return feeds(supply_nets(amplifiers), circuit.elements, stated, amplifiers)[net]
+
+
+RAW = '[nets]\n"raw" = { volts = 5, tolerance = "2 %" }'
+STATED = {"basis": "user", "origin": "railguard.toml", "tolerance": 0.02}
+
+
+@pytest.mark.parametrize(
+    ("cards", "settings", "fields"),
+    [
+        # what the user states, at the pin's own net, behind a ferrite, behind one large resistor
+        ("C1 vp 0 1u", RAW.replace("raw", "vp"), {"level": 5.0, "at": "vp", **STATED}),
+        ("L1 raw vp 1u", RAW, {"level": 5.0, "at": "raw", "series": ("L1",), **STATED}),
+        ("RS raw vp 10k", RAW, {"at": "raw", "series": ("RS",), **STATED}),
+        # a source, straight, behind all that counts as in series, behind one large resistor
+        ("VP vp 0 5", "", {"origin": "VP", "source": "VP", "at": "vp"}),
+        ("VP a 0 5\nR1 a b 1k\nL1 b vp 1u", "",
+         {"origin": "VP", "source": "VP", "at": "a", "series": ("L1", "R1")}),
+        ("VP a 0 5\nR1 a vp 1001", "",
+         {"origin": "VP", "source": "VP", "at": "a", "series": ("R1",)}),
+        ("BT1 a 0 3V\nR1 a vp 10k", "",
+         {"origin": "BT1", "source": "BT1", "at": "a", "series": ("R1",)}),
+        ("BT1 vp 0 3V", "", {"origin": "BT1", "source": "BT1", "at": "vp"}),
+        ("H1 vp 0 VX 5\nVX x 0 1\nRX x 0 1", "", {"origin": "H1", "source": "H1", "at": "vp"}),
+        # an amplifier's output behind a resistor
+        ("VR r 0 4\nXU2 r q vcc 0 q MCP6002\nV2 vcc 0 5\nR1 q vp 10", "",
+         {"origin": "the output of XU2", "source": "XU2", "at": "q", "series": ("R1",)}),
+        # a net's name behind a coil
+        ("L1 +5V vp 1u\nC1 +5V 0 1u", "",
+         {"level": 5.0, "origin": "its name", "at": "+5V", "series": ("L1",)}),
+    ],
+)  # fmt: skip
+def test_what_feeds_a_supply_net(cards, settings, fields):
+    """Level, origin, where it is stated, and what stands between: nearest to the pin first."""
+    usual = {"net": "vp", "level": None, "basis": "netlist"}
+    assert fed(cards, settings) == Feed(**{**usual, **fields})
+
+
+def test_what_feeds_nothing():
+    """Neither two large resistors nor one to ground."""
+    for cards in ("VP a 0 5\nR1 a b 10k\nR2 b vp 10k", "R1 vp 0 10k", "VP a 0 5\nR1 a vp 101k"):
+        found = fed(cards)
+        assert (found.held, found.basis, found.level, found.at) == (False, "assumed", None, "vp")
+
+
+def test_a_rail_is_positive_or_negative_by_the_pins_it_feeds(design):
+    """Ground is no rail."""
+    cards = "VIN in 0 1\nXU1 in a vp vn a TL072\nXU2 in b vp 0 b TL072"
+    amplifiers = recognise(design(cards).circuit, catalogue.load(), Settings()).amplifiers
+    assert supply_nets(amplifiers) == {"vp": "positive", "vn": "negative"}
