@@ -270,8 +270,13 @@ def test_what_feeds_a_supply_net(cards, settings, fields):
 
 
 def test_what_feeds_nothing():
-    """Neither two large resistors nor one to ground."""
-    for cards in ("VP a 0 5\nR1 a b 10k\nR2 b vp 10k", "R1 vp 0 10k", "VP a 0 5\nR1 a vp 101k"):
+    """Neither two large resistors, nor one to ground, nor a battery that does not say its volts."""
+    for cards in (
+        "BT1 vp 0 CR2032",
+        "VP a 0 5\nR1 a b 10k\nR2 b vp 10k",
+        "R1 vp 0 10k",
+        "VP a 0 5\nR1 a vp 101k",
+    ):
         found = fed(cards)
         assert (found.held, found.basis, found.level, found.at) == (False, "assumed", None, "vp")
 
