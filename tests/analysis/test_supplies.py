@@ -286,3 +286,48 @@ def test_a_rail_is_positive_or_negative_by_the_pins_it_feeds(design):
     cards = "VIN in 0 1\nXU1 in a vp vn a TL072\nXU2 in b vp 0 b TL072"
     amplifiers = recognise(design(cards).circuit, catalogue.load(), Settings()).amplifiers
     assert supply_nets(amplifiers) == {"vp": "positive", "vn": "negative"}
+
+
+@pytest.mark.parametrize(
+    ("tie", "returns"),
+    [("RT agnd 0 0", ("0", "agnd")), ("FB1 agnd 0 600R", ("0", "agnd")), ("RT agnd 0 1k", ("0",))],
+)
+def test_a_ground_behind_a_tie_or_a_ferrite_is_a_return(design, tie, returns):
+    """A capacitor to it decouples; behind 1 kilohm it does not."""
+    (rail,) = design(FOLLOWER, supply=f"V1 vcc 0 5\nC1 vcc agnd 100n\n{tie}").rails
+    assert rail.returns == returns
+    assert [c.designator for c in rail.decoupling] == (["C1"] if "agnd" in returns else [])
+
+
+def test_a_ferrite_keeps_a_capacitor_from_the_pins(design):
+    """What stands before it is upstream, whatever its card says of its ohms."""
+    (rail,) = design(FOLLOWER, supply="V1 bat 0 5\nFB1 bat vcc 600R\nC1 bat 0 100n").rails
+    assert [(c.designator, c.behind) for c in rail.upstream] == [("C1", "FB1")]
+    assert rail.decoupling == ()
+    assert rail.series == ("FB1",)
+    assert rail.drop == pytest.approx(0.0, abs=1e-3)
+
+
+def test_both_rails_with_their_ends_and_their_cards(design):
+    """5 % either way, at the line of the source that feeds each; a dual has two channels."""
+    found = design("VIN in 0 1\nXU1 in out vp vn out TL072", supply="V1 vp 0 15\nV2 vn 0 -12")
+    rails = {r.net: r for r in found.rails}
+    assert (rails["vp"].sign, rails["vn"].sign) == ("positive", "negative")
+    for net, volts, line in (("vp", 15.0, 4), ("vn", -12.0, 5)):
+        worst = rails[net].worst
+        assert sorted((worst.low, worst.high)) == pytest.approx(
+            sorted((volts * 0.95, volts * 1.05))
+        )
+        assert worst.low < worst.high
+        assert rails[net].location.line == line
+        assert rails[net].drop == 0.0
+    (package,) = found.packages
+    assert (package.designator, package.size, package.channels) == ("U1", 2, ("XU1",))
+
+
+def test_a_rail_nobody_states_has_no_drop(design):
+    """Though the equations give its net a level; its place is the first card on it."""
+    found = design(FOLLOWER, supply="C1 vcc 0 100n\nJ1 vcc 0 CONN_2")
+    (rail,) = found.rails
+    assert (rail.level, rail.drop, rail.feed) == (None, None, "outside")
+    assert rail.location.line == 3
