@@ -150,6 +150,23 @@ def test_a_pair_of_which_one_rests_is_a_follower(stage):
     assert found.current.carriers[0].designators == ("Q1",)
 
 
+def test_a_pair_of_which_one_rests_at_the_end_of_the_range_is_a_follower(stage):
+    """From 0 to 10 V the PNP never conducts either: 100 mA over the NPN's own gain."""
+    found = stage(PAIR.format(level=5))
+    assert found.current.demand_source == pytest.approx(0.1 / 101, rel=0.01)
+    assert found.current.carriers[0].designators == ("Q1",)
+
+
+def test_an_output_that_pulls_an_emitter_drives_no_base(stage):
+    """A base on ground: what flows through the emitter resistor is a load like any other."""
+    cards = (
+        "VIN in 0 SIN(-5 1 10)\nXU1 in o vp vn o TL072\nRE o e 1k\nQ1 c 0 e QN\nRC vp c 1k\n" + NPN
+    )
+    found = stage(cards)
+    assert found.current.carriers == ()
+    assert found.current.demand_sink == pytest.approx((6 - 0.7) / 1e3, rel=0.02)
+
+
 LEFT = {
     "stops conducting": SINK.replace("SIN(1 0.8 10)", "SIN(0 0.8 10)") + NPN,
     "saturates": SINK.replace("RC vp c 20", "RC vp c 200") + NPN,

@@ -85,3 +85,30 @@ def test_area_by_name_or_place(tail, area):
     text = f"title\nQ1 c b e QN{tail}\nR1 c 0 1k\n.model QN NPN\n.end\n"
     circuit = flatten(deck_from_text(text), lambda *_: False)
     assert area_of(next(e for e in circuit.elements if e.kind == "Q")) == area
+
+
+def test_a_junction_fet_in_numbers_and_areas():
+    """SPICE's law of a JFET is beta (vgs - vto)^2, without a half; area and M multiply it."""
+    found = read("J1 c b e JN 3 m=2", ".model JN NJF(VTO=-2 BETA=1m CGS=4p CGD=1p)")
+    assert found.factor == pytest.approx(2 * 1e-3 * 3 * 2)
+    assert (found.to_source, found.to_drain) == (4e-12, 1e-12)
+    assert read("J1 c b e JN", ".model JN NJF(VTO=-2 BETA=1m CGS=4p)").to_drain == 0.0
+
+
+@pytest.mark.parametrize(
+    ("card", "model"),
+    [
+        ("J1 c b e JN", ".model JN NJF(VTO=-2)"),
+        ("M1 c b e 0 MN W=1m L=0", ".model MN NMOS(VTO=2 KP=1m)"),
+    ],
+)
+def test_a_channel_without_its_factor_is_not_worked_with(card, model):
+    """No BETA; a length of nothing."""
+    assert read(card, model) == "whose model gives no VTO and KP"
+
+
+def test_an_oxide_alone_has_no_overlap():
+    """Two thirds of it at the source, nothing at the drain."""
+    found = read("M1 c b e 0 MN W=1m L=10u", ".model MN NMOS(VTO=1 KP=20u TOX=1e-7)")
+    assert found.to_source == pytest.approx(2 / 3 * OXIDE_PERMITTIVITY / 1e-7 * 1e-8)
+    assert found.to_drain == 0.0
