@@ -73,6 +73,9 @@ def test_two_outputs_over_resistors():
         ("R3 out adc 10k\nD1 adc 0 DZ\n.model DZ D(BV=3.3)", False),
         ("C3 out adc 1u\nR4 adc 0 10k", True),
         ("R3 elsewhere adc 10k\nR4 elsewhere 0 10k", False),
+        ("R3 elsewhere adc 10k\nR4 elsewhere 0 10k\nJ1 adc out CONN2", False),
+        ("R3 out m 5k\nR5 m adc 5k\nR4 adc 0 3.3k", True),
+        ("R3 out adc 10k\nR4 adc 0 10k\nRX n x 10k\nCX x ext 1u\nJX ext 0 CONN2", False),
     ],
 )
 def test_what_can_be_judged(cards, judged):
@@ -81,6 +84,16 @@ def test_what_can_be_judged(cards, judged):
     left = [n for n in found.not_checked if n.rule == "headroom-load"]
     assert bool(found.design.loads) == judged
     assert bool(left) != judged
+
+
+def test_a_load_on_a_net_nobody_has_hides_no_other():
+    """It is left open by itself."""
+    cards = "R3 out adc 10k\nR4 adc 0 10k"
+    found = reviewed(cards, limit="* railguard: load ghost 1meg max-volts=3.3\n" + LIMIT)
+    assert [load.net for load in found.design.loads] == ["adc"]
+    assert [n.why for n in found.not_checked if n.rule == "headroom-load"] == [
+        "the voltage on net ghost was not worked out"
+    ]
 
 
 def test_two_signals_meet_within_their_period():

@@ -297,6 +297,13 @@ def test_nothing_is_taken_behind_a_resistor_or_where_a_load_is_listed(stage, car
     assert found.loop.margins.high > 80
 
 
+def test_nothing_is_taken_where_only_the_input_makes_it_unsure(stage):
+    """Megohms at an input whose capacitance is not listed leave the margin open: no load does."""
+    loop = stage("VIN in 0 AC 1\nR1 in n 1meg\nR2 n out 1meg\nXU1 0 n vp vn out TL072").loop
+    assert loop.phase_margin is None
+    assert loop.least_ohms is None
+
+
 def test_a_margin_below_nothing_is_told_as_such(stage):
     """Two sections of 10 kilohm and 100 pF in a row behind the one pole: by hand, past half a turn.
 
