@@ -87,6 +87,12 @@ class Row(msgspec.Struct, frozen=True):
     detail: str = ""
 
 
+def _no_audit(place: Path) -> UsageError:
+    return UsageError(
+        f"{place} is no audit's file.", remedy="Make one: railguard audit ROOT --to FILE."
+    )
+
+
 class Base:
     """An audit's file, opened for reading."""
 
@@ -98,12 +104,15 @@ class Base:
         self._place = place
         try:
             self._base = sqlite3.connect(f"file:{quote(str(place))}?mode=ro", uri=True)
+        except sqlite3.Error as error:
+            raise _no_audit(place) from error
+        try:
             format_ = self.about("format")
         except sqlite3.Error as error:
-            raise UsageError(
-                f"{place} is no audit's file.", remedy="Make one: railguard audit ROOT --to FILE."
-            ) from error
+            self._base.close()
+            raise _no_audit(place) from error
         if format_ != FORMAT:
+            self._base.close()
             raise UsageError(
                 f"{place} was written in the format {format_ or '(none)'}, not {FORMAT}.",
                 remedy="Audit again with this railguard.",

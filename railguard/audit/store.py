@@ -10,6 +10,7 @@ import sqlite3
 import time
 from collections import Counter
 from collections.abc import Iterable
+from contextlib import ExitStack, closing
 from importlib.resources import files
 from pathlib import Path
 from types import TracebackType
@@ -35,7 +36,11 @@ class Store:
         Raises UsageError: it cannot be opened, is no audit, or another audit is writing it.
         """
         self._lock = _locked(place)
-        self._base = _connected(place)
+        try:
+            self._base = _connected(place)
+        except UsageError:
+            os.close(self._lock)
+            raise
         self._uncommitted = 0
         self._last = time.monotonic()
         finished = self.about("finished")
@@ -211,20 +216,35 @@ def _locked(place: Path) -> int:
 
 def _connected(place: Path) -> sqlite3.Connection:
     """Open the file for writing."""
-    try:
-        base = sqlite3.connect(place, isolation_level="DEFERRED", timeout=1.0)
-        tables = {row[0] for row in base.execute("SELECT name FROM sqlite_master")}
-        if tables and "about" not in tables:
-            base.close()
-            raise UsageError(f"{place} is no audit's file.", remedy="Name another with --to.")
-        base.execute("PRAGMA journal_mode = WAL")
-        base.execute("PRAGMA synchronous = NORMAL")
-        base.executescript(schema())
-    except sqlite3.Error as error:
-        raise UsageError(
-            f"{place} cannot be written: {error}.", remedy="Name another with --to."
-        ) from error
-    return base
+    with ExitStack() as opened:
+        try:
+            base = opened.enter_context(
+                closing(sqlite3.connect(place, isolation_level="DEFERRED", timeout=1.0))
+            )
+            tables = {row[0] for row in base.execute("SELECT name FROM sqlite_master")}
+            if tables and "about" not in tables:
+                raise UsageError(f"{place} is no audit's file.", remedy="Name another with --to.")
+            if tables:
+                _same_format(place, base)
+            base.execute("PRAGMA journal_mode = WAL")
+            base.execute("PRAGMA synchronous = NORMAL")
+            base.executescript(schema())
+        except sqlite3.Error as error:
+            raise UsageError(
+                f"{place} cannot be written: {error}.", remedy="Name another with --to."
+            ) from error
+        opened.pop_all()  # it stays open
+        return base
+
+
+def _same_format(place: Path, base: sqlite3.Connection) -> None:
+    """Refuse a file that another railguard wrote otherwise."""
+    for (written,) in base.execute("SELECT value FROM about WHERE name = 'format'"):
+        if written != FORMAT:
+            raise UsageError(
+                f"{place} was written in the format {written}, not {FORMAT}.",
+                remedy="Name another with --to.",
+            )
 
 
 def schema() -> str:

@@ -2,11 +2,16 @@
 
 import csv
 import io
+import sqlite3
+from contextlib import closing
 from html.parser import HTMLParser
+from pathlib import Path
 
 import pytest
 from click.testing import CliRunner
 
+from railguard.audit.read import Base
+from railguard.audit.store import Store
 from railguard.commands.audit import audit
 from railguard.errors import UsageError
 from tests.audit.designs import BARE, CLIPPED, SOUND, UNKNOWN, put
@@ -145,3 +150,23 @@ def test_a_file_that_is_no_audit_is_refused(tmp_path):
     result = CliRunner().invoke(audit, ["report", str(tmp_path / "text.txt")])
     assert isinstance(result.exception, UsageError)
     assert "is no audit's file" in str(result.exception)
+
+
+@pytest.mark.skipif(not Path("/proc/self/fd").is_dir(), reason="no list of open files here")
+@pytest.mark.parametrize("opened", [Base, Store])
+@pytest.mark.parametrize("kind", ["text", "another database", "another format"])
+def test_a_file_that_is_refused_is_let_go(tmp_path, opened, kind):
+    """Neither the file nor its lock stays open: on some systems nobody could move it."""
+    place = tmp_path / "refused"
+    if kind == "text":
+        place.write_text("no audit\n" * 100)
+    else:
+        with closing(sqlite3.connect(place)) as base:
+            table = "mine" if kind == "another database" else "about"
+            base.execute(f"CREATE TABLE {table} (name, value)")
+            base.execute(f"INSERT INTO {table} VALUES ('format', 'other/7')")
+            base.commit()
+    with pytest.raises(UsageError) as refused:
+        opened(place)
+    held = {str(link.readlink()) for link in Path("/proc/self/fd").iterdir() if link.exists()}
+    assert str(place) not in held, refused.value
